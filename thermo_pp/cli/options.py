@@ -1,0 +1,265 @@
+"""Options: sets that several commands share; each is a decorator and arrives as one object."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import wraps
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeVar
+
+import click
+
+from thermo_pp.errors import StudyError
+from thermo_pp.names import (
+    DEFAULT_LOW_MODES,
+    DEFAULT_ONSET_CM,
+    DEFAULT_STANDARD_STATE,
+    ENERGY_UNITS,
+    FORMATS,
+    LOW_MODES,
+    EnergyUnit,
+    Format,
+    LowModes,
+)
+
+if TYPE_CHECKING:
+    from thermo_pp.conditions import StandardState, Treatment
+
+Command = TypeVar("Command", bound=Callable[..., Any])
+OUTPUTS = click.Path(exists=True, path_type=Path)
+STUDY = click.Path(exists=True, dir_okay=False, path_type=Path)
+
+
+@dataclass(frozen=True)
+class Treating:
+    """What the treatment options say; None where an option is not given."""
+
+    standard_state: StandardState | None
+    low_modes: LowModes | None
+    onset_cm: float | None
+    frequency_scale: float | None
+
+    def treatment(self) -> Treatment:
+        """Return the defaults with what is given."""
+        from thermo_pp.conditions import Treatment
+
+        given = {name: value for name, value in vars(self).items() if value is not None}
+        if "frequency_scale" in given:
+            given["zero_point_scale"] = given["frequency_scale"]
+        return Treatment(**given)
+
+    def keys(self) -> dict[str, Any]:
+        """Return what is given by the keys of a study's ``[treatment]``."""
+        given = {
+            "standard_state": None if self.standard_state is None else self.standard_state.text,
+            "low_modes": self.low_modes,
+            "onset": self.onset_cm,
+            "frequency_scale": self.frequency_scale,
+        }
+        return {name: value for name, value in given.items() if value is not None}
+
+
+@dataclass(frozen=True)
+class Showing:
+    """What the output options say."""
+
+    format: Format
+    energy_unit: EnergyUnit
+    path: Path | None
+    strict: bool
+    quiet: bool
+
+
+def temperature_options(command: Command) -> Command:
+    """Add -T and --temperature-range; the command gets `temperature_k`, a tuple of K, or None."""
+
+    @click.option(
+        "-T",
+        "--temperature",
+        "temperatures",
+        multiple=True,
+        metavar="T",
+        callback=_temperatures,
+        help='A temperature: 298.15 (K), "25 degC". Repeatable.',
+    )
+    @click.option(
+        "--temperature-range",
+        nargs=3,
+        metavar="START STOP STEP",
+        callback=_temperature_range,
+        help="Temperatures from START to STOP, STOP included.",
+    )
+    @wraps(command)
+    def with_temperatures(
+        *args: Any,
+        temperatures: tuple[float, ...] | None,
+        temperature_range: tuple[float, ...] | None,
+        **others: Any,
+    ) -> Any:
+        if temperatures and temperature_range:
+            raise click.UsageError("give either --temperature or --temperature-range")
+        return command(*args, temperature_k=temperatures or temperature_range, **others)
+
+    return with_temperatures  # type: ignore[return-value]
+
+
+def treatment_options(command: Command) -> Command:
+    """Add the options of the treatment; the command gets `treating`."""
+
+    @click.option(
+        "--standard-state",
+        metavar="STATE",
+        callback=_standard_state,
+        help='"1 bar", "1 atm", "1 mol/L" or any other pressure or concentration.  '
+        f"[default: the study's, else {DEFAULT_STANDARD_STATE}]",
+    )
+    @click.option(
+        "--low-modes",
+        type=click.Choice(LOW_MODES),
+        help=f"How soft modes are treated.  [default: the study's, else {DEFAULT_LOW_MODES}]",
+    )
+    @click.option(
+        "--onset",
+        metavar="WAVENUMBER",
+        callback=_onset,
+        help='Onset of that treatment: 100 (cm^-1), "50 cm^-1".  '
+        f"[default: the study's, else {DEFAULT_ONSET_CM:g}]",
+    )
+    @click.option(
+        "--frequency-scale",
+        metavar="FACTOR",
+        callback=_scale,
+        help="Factor of all wavenumbers, zero-point energy included.  [default: the study's, else 1]",
+    )
+    @wraps(command)
+    def with_treatment(
+        *args: Any,
+        standard_state: StandardState | None,
+        low_modes: LowModes | None,
+        onset: float | None,
+        frequency_scale: float | None,
+        **others: Any,
+    ) -> Any:
+        treating = Treating(standard_state, low_modes, onset, frequency_scale)
+        return command(*args, treating=treating, **others)
+
+    return with_treatment  # type: ignore[return-value]
+
+
+def output_options(command: Command) -> Command:
+    """Add the options of what is shown and where; the command gets `showing`."""
+
+    @click.option(
+        "--energy-unit",
+        type=click.Choice(ENERGY_UNITS),
+        default="kJ/mol",
+        show_default=True,
+        help="Unit of energies in tables; JSON names its units in its keys.",
+    )
+    @click.option(
+        "--format",
+        "format_name",
+        type=click.Choice(FORMATS),
+        default="table",
+        show_default=True,
+        help="How the answer is written.",
+    )
+    @click.option(
+        "-o",
+        "--output",
+        "path",
+        type=click.Path(dir_okay=False, path_type=Path),
+        help="Write the answer to this file instead of standard output.",
+    )
+    @click.option("--strict", is_flag=True, help="Let findings of severity error end the run.")
+    @click.option("--quiet", is_flag=True, help="Write no findings and hints to standard error.")
+    @wraps(command)
+    def with_output(
+        *args: Any,
+        energy_unit: EnergyUnit,
+        format_name: Format,
+        path: Path | None,
+        strict: bool,
+        quiet: bool,
+        **others: Any,
+    ) -> Any:
+        showing = Showing(format_name, energy_unit, path, strict, quiet)
+        return command(*args, showing=showing, **others)
+
+    return with_output  # type: ignore[return-value]
+
+
+def _temperatures(
+    ctx: click.Context, parameter: click.Parameter, value: tuple[str, ...]
+) -> tuple[float, ...] | None:
+    from thermo_pp.conditions import temperature
+
+    return _usage(
+        lambda: tuple(temperature(_number(text), where="--temperature") for text in value)
+    )
+
+
+def _temperature_range(
+    ctx: click.Context, parameter: click.Parameter, value: tuple[str, str, str] | None
+) -> tuple[float, ...] | None:
+    if value is None:
+        return None
+    from thermo_pp.conditions import temperature_range
+
+    start, stop, step = (_number(text) for text in value)
+    return _usage(lambda: temperature_range(start, stop, step, where="--temperature-range"))
+
+
+def _standard_state(
+    ctx: click.Context, parameter: click.Parameter, value: str | None
+) -> StandardState | None:
+    if value is None:
+        return None
+    from thermo_pp.conditions import standard_state
+
+    return _usage(lambda: standard_state(value, where="--standard-state"))
+
+
+def _onset(ctx: click.Context, parameter: click.Parameter, value: str | None) -> float | None:
+    return None if value is None else _positive(value, "1/cm", "--onset")
+
+
+def _scale(ctx: click.Context, parameter: click.Parameter, value: str | None) -> float | None:
+    return None if value is None else _positive(value, None, "--frequency-scale")
+
+
+def _positive(text: str, unit: str | None, where: str) -> float:
+    """Return a number above 0, in `unit` (None: a pure number)."""
+    import math
+
+    from thermo_pp.units import quantity
+
+    value = _number(text)
+    if unit is None:
+        if isinstance(value, str) or not math.isfinite(value):
+            raise click.BadParameter(f"{text!r} is not a number")
+    else:
+        value = _usage(lambda: quantity(value, unit, where=where))
+    if float(value) <= 0.0:
+        raise click.BadParameter(f"{text!r} is not above 0")
+    return float(value)
+
+
+def _number(text: str) -> float | str:
+    """Return a bare number as a float, everything else (a quantity) untouched."""
+    try:
+        return float(text)
+    except ValueError:
+        return text
+
+
+Value = TypeVar("Value")
+
+
+def _usage(make: Callable[[], Value]) -> Value:
+    """Return what `make` makes of an option; what is wrong with it is wrong usage."""
+    try:
+        return make()
+    except StudyError as error:
+        raise click.BadParameter(f"{error.what}\n  mend: {error.mend}") from error

@@ -1,0 +1,1 @@
+"""Sourced tables: literals with their origin, no code."""

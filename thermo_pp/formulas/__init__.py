@@ -1,0 +1,1 @@
+"""Formulas: pure functions, arrays in, arrays out; no file, record, setting or print."""

@@ -1,0 +1,413 @@
+"""Partition functions of an ideal gas: translation, rotation, electronic states; J/mol, J/(mol K).
+
+Sources: McQuarrie, *Statistical Mechanics* (1976), and Herzberg II (1945), both from memory; the
+algebra was derived and checked against CODATA's Sackur-Tetrode constant and against level sums.
+Temperatures may have any shape; whatever belongs to a structure (mass, rotational temperatures,
+symmetry number, levels) broadcasts against them, with its own last axis where it has one.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from thermo_pp.names import RotorKind
+from thermo_pp.units import (
+    ATOMIC_MASS_KG,
+    BAR_PA,
+    BOLTZMANN_J_K,
+    GAS_J_MOL_K,
+    KELVIN_PER_CM,
+    PLANCK_J_S,
+)
+
+FloatArray = NDArray[np.float64]
+
+LINEAR_ANGSTROM = 0.03
+"""A structure is linear where no atom lies farther than this from its axis."""
+AUTO_TEMPERATURE_K = 298.15
+AUTO_GIBBS_J_MOL = 10.0
+"""The classical rotor is replaced where that changes G at `AUTO_TEMPERATURE_K` by more."""
+
+NO_SPIN_WEIGHTS = (1.0, 1.0)
+SPIN_WEIGHTS: dict[int, tuple[float, float]] = {
+    1: (1 / 2, 3 / 2),
+    2: (4 / 3, 2 / 3),
+    3: (1 / 2, 3 / 2),
+}
+"""Of even and odd rotational levels of H2, D2 and T2 by mass number: 1:3, 6:3 and 1:3, their mean 1.
+
+No other rotor is light enough at ordinary temperatures for its nuclear spins to matter.
+"""
+
+_THETA_U_A2 = PLANCK_J_S**2 / (8.0 * math.pi**2 * BOLTZMANN_J_K * ATOMIC_MASS_KG * 1e-20)
+_LEVELS_BELOW = 60.0
+"""Rotor levels are summed up to this many kT: the rest is below 1e-23 of the sum."""
+
+
+class Share(NamedTuple):
+    """What one kind of motion adds to H, S and Cp.
+
+    Attributes
+    ----------
+    enthalpy_j_mol : shape (...)
+        J/mol; for translation with the pV term.
+    entropy_j_mol_k, heat_capacity_j_mol_k : shape (...)
+        J/(mol K); the heat capacity of translation at constant pressure.
+    """
+
+    enthalpy_j_mol: FloatArray
+    entropy_j_mol_k: FloatArray
+    heat_capacity_j_mol_k: FloatArray
+
+
+@dataclass(frozen=True)
+class RigidRotor:
+    """A rigid rotor.
+
+    Attributes
+    ----------
+    kind : {"atom", "linear", "nonlinear"}
+    theta_k : tuple of float
+        Rotational temperatures h c B / k, K, the largest first: none, one or three.
+    symmetry_number : int
+    quantum : bool
+        Whether the level sum (linear) or the quantum correction (nonlinear) replaces the
+        classical rotor.
+    spin_weights : (float, float)
+        Weights of even and odd levels in the level sum, their mean 1.
+    """
+
+    kind: RotorKind
+    theta_k: tuple[float, ...]
+    symmetry_number: int = 1
+    quantum: bool = False
+    spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS
+
+    def __post_init__(self) -> None:
+        if len(self.theta_k) != {"atom": 0, "linear": 1, "nonlinear": 3}[self.kind]:
+            raise ValueError(f"{len(self.theta_k)} rotational temperatures for rotor {self.kind!r}")
+        if any(not theta > 0.0 for theta in self.theta_k) or self.symmetry_number < 1:
+            raise ValueError("rotational temperatures and symmetry number must be above 0")
+
+
+def translation(temperature_k: ArrayLike, mass_u: ArrayLike) -> Share:
+    """Return the share of translation of an ideal gas at 1 bar (Sackur-Tetrode).
+
+    S = R [ln((2 pi m k T / h^2)^(3/2) k T / p) + 5/2],  H = 5/2 R T,  Cp = 5/2 R
+
+    Another standard state is applied afterwards (`conditions.StandardState`).
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+        K, above 0.
+    mass_u : broadcasts against it
+        Mass of the molecule, u, above 0.
+
+    Returns
+    -------
+    Share of shape (...)
+
+    Raises
+    ------
+    ValueError
+        At or below 0.
+    """
+    t, m = _positive(temperature_k, "temperature"), _positive(mass_u, "mass")
+    volume = BOLTZMANN_J_K * t / BAR_PA
+    log_q = 1.5 * np.log(2.0 * math.pi * ATOMIC_MASS_KG * m * BOLTZMANN_J_K * t / PLANCK_J_S**2)
+    entropy = GAS_J_MOL_K * (log_q + np.log(volume) + 2.5)
+    heat_capacity = np.full_like(entropy, 2.5 * GAS_J_MOL_K)
+    return Share(heat_capacity * t, entropy, heat_capacity)
+
+
+def rotational_temperatures(moments_u_a2: ArrayLike) -> FloatArray:
+    """Return h^2 / (8 pi^2 I k) of each moment of inertia.
+
+    Parameters
+    ----------
+    moments_u_a2 : shape (...)
+        u A^2, above 0.
+
+    Returns
+    -------
+    shape (...)
+        K.
+    """
+    return np.asarray(_THETA_U_A2 / _positive(moments_u_a2, "moment of inertia"))
+
+
+def linear_rotation(
+    temperature_k: ArrayLike, theta_k: ArrayLike, symmetry_number: ArrayLike
+) -> Share:
+    """Return the share of a classical linear rotor.
+
+    q = T/(sigma Theta),  H = R T,  S = R (ln q + 1),  Cv = R
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    theta_k, symmetry_number : broadcast against it
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    sigma = _positive(symmetry_number, "symmetry number")
+    entropy = GAS_J_MOL_K * (np.log(t / (theta * sigma)) + 1.0)
+    heat_capacity = np.full_like(entropy, GAS_J_MOL_K)
+    return Share(heat_capacity * t, entropy, heat_capacity)
+
+
+def linear_rotation_levels(
+    temperature_k: ArrayLike,
+    theta_k: ArrayLike,
+    symmetry_number: ArrayLike = 1.0,
+    spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS,
+) -> Share:
+    """Return the share of a linear rotor as the sum over its levels.
+
+    q = (1/sigma) sum_J w_J (2J+1) exp(-J(J+1) Theta/T)
+
+    The symmetry number divides the whole sum, and w_J is 1 but for H2, D2 and T2, where without it
+    H of H2 at 298 K would be 0.03 kJ/mol too low (even and odd levels in equilibrium).
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    theta_k, symmetry_number : broadcast against it
+    spin_weights : (float, float)
+        w_J of even and odd J, their mean 1: the entropy of the nuclear spins themselves is left out.
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    sigma = _positive(symmetry_number, "symmetry number")
+    widest = float(np.max(t, initial=1.0)) / float(np.min(theta, initial=1e6))
+    j = np.arange(math.ceil(math.sqrt(_LEVELS_BELOW * widest)) + 3, dtype=np.float64)
+    degeneracy = (2.0 * j + 1.0) * np.where(j % 2.0 == 0.0, *spin_weights)
+    return _levels(t, degeneracy, theta[..., np.newaxis] * (j * (j + 1.0)), sigma)
+
+
+def nonlinear_rotation(
+    temperature_k: ArrayLike, theta_k: ArrayLike, symmetry_number: ArrayLike
+) -> Share:
+    """Return the share of a classical nonlinear rotor.
+
+    q = (sqrt(pi)/sigma) sqrt(T^3/(A B C)),  H = 3/2 R T,  S = R (ln q + 3/2),  Cv = 3/2 R
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    theta_k : shape (..., 3)
+        Rotational temperatures, K; without the last axis it broadcasts against the temperatures.
+    symmetry_number : broadcasts against the temperatures
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    log_q = 0.5 * (np.log(math.pi) + 3.0 * np.log(t) - np.log(theta).sum(axis=-1))
+    sigma = _positive(symmetry_number, "symmetry number")
+    entropy = GAS_J_MOL_K * (log_q - np.log(sigma) + 1.5)
+    heat_capacity = np.full_like(entropy, 1.5 * GAS_J_MOL_K)
+    return Share(heat_capacity * t, entropy, heat_capacity)
+
+
+def nonlinear_correction(temperature_k: ArrayLike, theta_k: ArrayLike) -> Share:
+    """Return what the leading quantum term adds to the classical nonlinear rotor.
+
+    q = q_cl (1 + a/T),  a = (1/12) [2A + 2B + 2C - AB/C - BC/A - CA/B],
+    dH = -R a/(1 + a/T),  dS = R ln(1 + a/T) + dH/T,  dCv = -R (a/(T + a))^2
+
+    a is positive for every rigid body. It is the leading term: good where T is well above a.
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    theta_k : shape (..., 3)
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    product = theta.prod(axis=-1)
+    a = (2.0 * theta.sum(axis=-1) - product * (theta**-2.0).sum(axis=-1)) / 12.0
+    enthalpy = -GAS_J_MOL_K * a * t / (t + a)
+    entropy = GAS_J_MOL_K * np.log1p(a / t) + enthalpy / t
+    return Share(enthalpy, entropy, -GAS_J_MOL_K * (a / (t + a)) ** 2)
+
+
+def rotation(
+    temperature_k: ArrayLike,
+    kind: RotorKind,
+    theta_k: ArrayLike,
+    symmetry_number: ArrayLike,
+    quantum: bool,
+    spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS,
+) -> Share:
+    """Return the share of rigid rotors of one kind; nothing for atoms.
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    kind : {"atom", "linear", "nonlinear"}
+    theta_k : shape (..., 0), (..., 1) or (..., 3)
+        Rotational temperatures, K; without the last axis it broadcasts against the temperatures.
+    symmetry_number : broadcasts against the temperatures
+    quantum : bool
+        Level sum (linear) or quantum correction (nonlinear) in place of the classical rotor.
+    spin_weights : (float, float)
+        Of even and odd levels in the level sum.
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, theta = _positive(temperature_k, "temperature"), np.asarray(theta_k, dtype=np.float64)
+    if kind == "atom":
+        none = np.zeros(np.broadcast_shapes(t.shape, theta.shape[:-1], np.shape(symmetry_number)))
+        return Share(none, none, none)
+    if kind == "linear":
+        if quantum:
+            return linear_rotation_levels(t, theta[..., 0], symmetry_number, spin_weights)
+        return linear_rotation(t, theta[..., 0], symmetry_number)
+    classical = nonlinear_rotation(t, theta, symmetry_number)
+    if not quantum:
+        return classical
+    correction = nonlinear_correction(t, theta)
+    return Share(*(one + two for one, two in zip(classical, correction, strict=True)))
+
+
+def quantum_rotor_changes(rotor: RigidRotor) -> bool:
+    """Tell whether leaving the classical rotor changes G at 298.15 K by more than 0.01 kJ/mol."""
+    if rotor.kind == "atom":
+        return False
+    gibbs = []
+    for quantum in (False, True):
+        share = rotation(
+            AUTO_TEMPERATURE_K,
+            rotor.kind,
+            rotor.theta_k,
+            rotor.symmetry_number,
+            quantum,
+            rotor.spin_weights,
+        )
+        gibbs.append(float(share.enthalpy_j_mol - AUTO_TEMPERATURE_K * share.entropy_j_mol_k))
+    return abs(gibbs[1] - gibbs[0]) > AUTO_GIBBS_J_MOL
+
+
+def electronic(temperature_k: ArrayLike, degeneracies: ArrayLike, levels_cm: ArrayLike) -> Share:
+    """Return the share of electronic states, counted from the level at 0.
+
+    q = sum_i g_i exp(-e_i/kT),  U = N_A <e>,  S = R ln q + U/T,  Cv = (<e^2> - <e>^2)/(R T^2)
+
+    Parameters
+    ----------
+    temperature_k : shape (...)
+    degeneracies, levels_cm : shape (..., l)
+        Degeneracies, above 0, and energies, cm^-1; without the last axis they broadcast against
+        the temperatures.
+
+    Returns
+    -------
+    Share of shape (...)
+    """
+    t, g = _positive(temperature_k, "temperature"), _positive(degeneracies, "degeneracy")
+    return _levels(t, g, KELVIN_PER_CM * np.asarray(levels_cm, dtype=np.float64))
+
+
+def principal_moments(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> FloatArray:
+    """Return the three principal moments of inertia.
+
+    Parameters
+    ----------
+    masses_u : shape (n,)
+    positions_angstrom : shape (n, 3)
+
+    Returns
+    -------
+    shape (3,)
+        u A^2, ascending, never below 0.
+    """
+    return _inertia(masses_u, positions_angstrom)[0]
+
+
+def rotor_kind(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> RotorKind:
+    """Tell an atom, a linear and a nonlinear structure apart.
+
+    Linear means that no atom lies farther than `LINEAR_ANGSTROM` from the axis of the smallest
+    moment of inertia.
+
+    Parameters
+    ----------
+    masses_u : shape (n,)
+    positions_angstrom : shape (n, 3)
+    """
+    x = np.asarray(positions_angstrom, dtype=np.float64)
+    if len(x) == 1:
+        return "atom"
+    return "linear" if distance_from_axis(masses_u, x) <= LINEAR_ANGSTROM else "nonlinear"
+
+
+def distance_from_axis(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> float:
+    """Return the largest distance of an atom from the axis of the smallest moment of inertia, A."""
+    _, axes, x = _inertia(masses_u, positions_angstrom)
+    across = x - np.outer(x @ axes[:, 0], axes[:, 0])
+    return float(np.sqrt((across**2).sum(axis=1)).max())
+
+
+def rigid_rotor(
+    masses_u: ArrayLike, positions_angstrom: ArrayLike, symmetry_number: int = 1
+) -> RigidRotor:
+    """Return a structure's classical rotor; if linear, of the mean of the two large moments."""
+    kind = rotor_kind(masses_u, positions_angstrom)
+    if kind == "atom":
+        return RigidRotor(kind, (), symmetry_number)
+    moments = principal_moments(masses_u, positions_angstrom)
+    if kind == "linear":
+        moments = moments[1:].mean(keepdims=True)
+    return RigidRotor(kind, tuple(rotational_temperatures(moments).tolist()), symmetry_number)
+
+
+def _inertia(
+    masses_u: ArrayLike, positions_angstrom: ArrayLike
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return moments, axes (columns) and the positions from the centre of mass."""
+    m = _positive(masses_u, "mass")
+    x = np.asarray(positions_angstrom, dtype=np.float64)
+    x = x - (m @ x) / m.sum()
+    second = (x * m[:, np.newaxis]).T @ x
+    moments, axes = np.linalg.eigh(np.trace(second) * np.eye(3) - second)
+    return np.maximum(moments, 0.0), axes, x
+
+
+def _levels(t: FloatArray, g: FloatArray, theta: FloatArray, divisor: ArrayLike = 1.0) -> Share:
+    """Share of levels (last axis) of degeneracy `g` at `theta` kelvin, the sum over `divisor`."""
+    x = theta / t[..., np.newaxis]
+    terms = g * np.exp(-x)
+    q = terms.sum(axis=-1)
+    mean = (terms * x).sum(axis=-1) / q
+    variance = (terms * (x - mean[..., np.newaxis]) ** 2).sum(axis=-1) / q
+    return Share(
+        np.asarray(GAS_J_MOL_K * t * mean),
+        np.asarray(GAS_J_MOL_K * (np.log(q / np.asarray(divisor)) + mean)),
+        np.asarray(GAS_J_MOL_K * variance),
+    )
+
+
+def _positive(value: ArrayLike, what: str) -> FloatArray:
+    array = np.asarray(value, dtype=np.float64)
+    if not np.all(array > 0.0):
+        raise ValueError(f"{what} must be above 0, got {array[~(array > 0.0)].flat[0]}")
+    return array

@@ -1,0 +1,414 @@
+"""The effective rate of a study: exact, approximate, what controls it, and where its sign changes."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from typing import TYPE_CHECKING, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.errors import Finding
+from thermo_pp.kinetics.approximate import approximate
+from thermo_pp.kinetics.closed import decay_shares
+from thermo_pp.kinetics.controls import Sensitivity, activation, sensitivity, standard_activation
+from thermo_pp.kinetics.edges import LogRate
+from thermo_pp.kinetics.free import steady_state
+from thermo_pp.kinetics.model import Model, Rates
+from thermo_pp.kinetics.network import write_side
+from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, SignChange, StepRate
+from thermo_pp.kinetics.steps import rate_unit
+from thermo_pp.kinetics.windows import crossings, scan_temperatures, sign_changes
+from thermo_pp.kinetics.words import words
+from thermo_pp.names import DEFINITIONS, Definition, Severity
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from thermo_pp.conditions import Conditions, Treatment
+    from thermo_pp.mechanism import Mechanism
+    from thermo_pp.species import SpeciesModel
+
+FloatArray = NDArray[np.float64]
+SLOW_SHARE_BELOW = 0.95
+NEXT_DECAY_BELOW = 20.0
+RETURN_ABOVE = 0.05
+HIGH_PRESSURE_CONTROL = 0.1
+_CONTROLLING = 0.1
+_FARTHEST_SHIFT_KJ_MOL = 100.0
+
+
+class StudyLike(Protocol):
+    """What the effective rate needs of a study."""
+
+    @property
+    def treatment(self) -> Treatment: ...  # noqa: D102
+    @property
+    def conditions(self) -> Conditions: ...  # noqa: D102
+    @property
+    def mechanism(self) -> Mechanism: ...  # noqa: D102
+    @property
+    def species(self) -> Mapping[str, SpeciesModel]: ...  # noqa: D102
+    @property
+    def findings(self) -> tuple[Finding, ...]: ...  # noqa: D102
+
+
+def effective(study: StudyLike) -> EffectiveRate:
+    """Return the effective rate of a study over its temperatures.
+
+    Raises
+    ------
+    StudyError
+        The network is not linear, has no way from reactant to product, or holds species that are
+        out of balance.
+    """
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1):  # the matrices are small: threads would only wait for each other
+        return _effective(study)
+
+
+def _effective(study: StudyLike) -> EffectiveRate:
+    model = Model(study.mechanism, study.conditions, study.treatment, study.species)
+    grid = np.array(study.conditions.temperature_k)
+    rates = model.at(grid)
+    definitions = rates.definitions()
+    scan = scan_temperatures(float(grid.min()), float(grid.max()))
+    wide = model.at(scan)
+    for looked_at in (rates, wide):
+        looked_at.check()
+    changes = _sign_changes(model, wide, definitions, scan)
+    approximations = approximate(rates, wide, definitions, scan)
+    found: dict[Definition, Rate | None] = dict.fromkeys(DEFINITIONS)
+    for definition in definitions:
+        found[definition] = _rate(
+            definition, rates, changes[definition], approximations[definition]
+        )
+    steps = _step_rates(rates)
+    findings = (
+        *study.findings,
+        *rates.steps.findings,
+        *_findings(found, rates, study.mechanism.where),
+    )
+    net, coefficient = _net_reaction(rates)
+    result = EffectiveRate(
+        temperature_k=grid,
+        subject=study.mechanism.catalyst or study.mechanism.reactant or "",
+        net_reaction=net,
+        reactant_coefficient=coefficient,
+        standard_state=study.treatment.standard_state.text,
+        rates=found,
+        steps=steps,
+        held_mol_l=_held(rates),
+        findings=tuple(dict.fromkeys(findings)),
+    )
+    return replace(result, words=words(result))
+
+
+def _sign_changes(
+    model: Model, wide: Rates, definitions: Sequence[Definition], scan: FloatArray
+) -> dict[Definition, tuple[SignChange, ...]]:
+    """Return where each Arrhenius energy changes its sign."""
+
+    def curves(temperature_k: FloatArray) -> FloatArray:
+        rates = model.at(temperature_k)
+        return np.stack([rates.rate(name).energy_j_mol for name in definitions], axis=1)
+
+    values = np.stack([wide.rate(name).energy_j_mol for name in definitions], axis=1)
+    roots = crossings(curves, scan, values)
+    return {name: sign_changes(roots[k], scan, values[:, k]) for k, name in enumerate(definitions)}
+
+
+def _rate(
+    definition: Definition,
+    rates: Rates,
+    changes: tuple[SignChange, ...],
+    approximations: tuple[Approximation, ...],
+) -> Rate:
+    log_rate = rates.rate(definition)
+    network, model = rates.network, rates.model
+    t = network.temperature_k
+    sensed = sensitivity(log_rate, network, rates.steps.names)
+    states = {name: model.species[name].at(t[:1]).standard_state for name in sensed.orders}
+    rate = Rate(
+        definition=definition,
+        rate_constant=log_rate.sign * np.exp(log_rate.log),
+        unit="s^-1",
+        arrhenius_energy_kj_mol=log_rate.energy_j_mol / 1000.0,
+        activation=activation(log_rate, t),
+        standard_activation=standard_activation(
+            log_rate, sensed.orders, t, model.conditions, states
+        ),
+        sign_changes=changes,
+        control=sensed.control,
+        saddles=sensed.saddles,
+        orders=sensed.orders,
+        approximations=approximations,
+        sign_shift_kj_mol=_sign_shifts(definition, rates, log_rate, sensed),
+    )
+    if definition == "pool":
+        return _with_pool(rate, rates)
+    if definition == "cycle":
+        _, states_of, shares = rates.cycle
+        names = [network.states[k][0][0] for k in states_of]
+        populations = {name: shares[:, k] for k, name in enumerate(names)}
+        return replace(rate, populations=populations, resting_state=_largest(populations))
+    if definition == "free" and len(rates.products) > 1:
+        return replace(rate, branching=_branching(rates, rates.free[1]))
+    return rate
+
+
+def _with_pool(rate: Rate, rates: Rates) -> Rate:
+    pool, network = rates.pool, rates.network
+    names = [network.states[k][0][0] for k in pool.members]
+    populations = {name: pool.populations[:, k] for k, name in enumerate(names)}
+    ratio, headline = np.full(len(rate.rate_constant), np.nan), rate.rate_constant.copy()
+    if len(names) > 1:
+        for k, (log_decay, shares) in enumerate(_decay_shares(rates)):
+            ratio[k] = np.exp(log_decay[1] - log_decay[0])
+            if ratio[k] < NEXT_DECAY_BELOW or pool.slow_share[k] < SLOW_SHARE_BELOW:
+                headline[k] = np.exp(log_decay[int(np.argmax(shares))])
+    return replace(
+        rate,
+        populations=populations,
+        resting_state=_largest(populations),
+        slow_share=pool.slow_share,
+        next_decay_ratio=ratio,
+        inverse_mean_time=np.exp(pool.log_inverse_mean_time),
+        headline=headline,
+        branching=_branching(rates, pool.branching) if len(rates.products) > 1 else None,
+    )
+
+
+def _decay_shares(rates: Rates) -> list[tuple[FloatArray, FloatArray]]:
+    """Return at each temperature ln of the pool's decay constants, slowest first, and their coefficients."""
+    if rates.model.conditions.driven:
+        return rates.pool.decay_shares()
+    return decay_shares(rates.network, rates.start, rates.pool.members, rates.pool_decays)
+
+
+def _branching(rates: Rates, shares: FloatArray) -> dict[str, FloatArray]:
+    names = [
+        write_side([(name, float(count)) for name, count in rates.network.states[k]])
+        for k in rates.products
+    ]
+    return {name: shares[:, k] for k, name in enumerate(names)}
+
+
+def _largest(populations: Mapping[str, FloatArray]) -> tuple[str, ...]:
+    names = list(populations)
+    best = np.argmax(np.stack(list(populations.values())), axis=0)
+    return tuple(names[int(k)] for k in best)
+
+
+def _sign_shifts(
+    definition: Definition, rates: Rates, log_rate: LogRate, sensed: Sensitivity
+) -> dict[str, FloatArray]:
+    """Return by how much each controlling state would have to move for E_a to vanish, by the secant rule."""
+    names = [n for n, x in sensed.control.items() if np.any(np.abs(x) > _CONTROLLING)]
+    shifts: dict[str, FloatArray] = {}
+    for name in names:
+        energy = log_rate.energy_j_mol
+        control = sensed.control[name]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            now = np.where(np.abs(control) > _CONTROLLING, -energy / control, np.nan)
+        farthest = _FARTHEST_SHIFT_KJ_MOL * 1000.0
+        before, at_before = np.zeros_like(now), energy
+        with np.errstate(divide="ignore", invalid="ignore"):
+            for _ in range(_SECANT_STEPS):
+                usable = np.isfinite(now) & (np.abs(now) <= 2.0 * farthest)
+                at_now = rates.moved(name, np.where(usable, now, 0.0)).rate(definition).energy_j_mol
+                if np.all(~usable | (np.abs(at_now) < _NO_ENERGY_J_MOL)):
+                    break
+                step = at_now * (now - before) / (at_now - at_before)
+                moving = np.abs(at_now) >= _NO_ENERGY_J_MOL
+                before, at_before = now, at_now
+                now = np.where(moving, now - step, now)
+        done = usable & (np.abs(at_now) < _NO_ENERGY_J_MOL) & (np.abs(now) <= farthest)
+        shifts[name] = np.where(done, now, np.nan) / 1000.0
+    return shifts
+
+
+_SECANT_STEPS = 30
+_NO_ENERGY_J_MOL = 1e-3
+
+
+def _step_rates(rates: Rates) -> tuple[StepRate, ...]:
+    """Return every step's constants, and how reversible it is in the steady state."""
+    network = rates.network
+    b = len(network.temperature_k)
+    if rates.model.mechanism.catalyst is not None:
+        _, members, shares = rates.cycle
+        with np.errstate(divide="ignore"):
+            levels = {state: np.log(shares[:, k]) for k, state in enumerate(members)}
+    else:
+        levels = steady_state(network, rates.start, rates.products, rates.amounts())
+    reversibility = {step: np.full(b, np.nan) for step in range(len(rates.model.mechanism.steps))}
+    inside = {edge.step for edge in network.edges}
+    for number, edge in enumerate(network.edges):
+        if edge.tail in levels and edge.head in levels:
+            forth = levels[edge.tail] + network.log_forward[:, number].astype(np.float64)
+            back = levels[edge.head] + network.log_reverse[:, number].astype(np.float64)
+            reversibility[edge.step] = _ratio(forth, back)
+    held = _log_held(rates)
+    found = []
+    for number, step in enumerate(rates.model.mechanism.steps):
+        forward, reverse = rates.steps.log_forward[:, number], rates.steps.log_reverse[:, number]
+        if number not in inside:
+            forth, back = forward.copy(), reverse.copy()
+            for log, side in ((forth, step.reactants), (back, step.products)):
+                for name, count in side.items():
+                    log += count * held[name]
+            reversibility[number] = _ratio(forth, back)
+        found.append(
+            StepRate(
+                equation=step.equation,
+                forward_rate_constant=np.exp(forward),
+                reverse_rate_constant=np.exp(reverse),
+                forward_unit=rate_unit(step.reactants),
+                reverse_unit=rate_unit(step.products),
+                reversibility=reversibility[number],
+                limited=rates.steps.limited[:, number],
+            )
+        )
+    return tuple(found)
+
+
+def _ratio(forth: FloatArray, back: FloatArray) -> FloatArray:
+    """Return the smaller over the larger of two fluxes given as logarithms; nan where there are none."""
+    with np.errstate(invalid="ignore"):
+        return np.asarray(np.exp(-np.abs(forth - back)))
+
+
+def _log_held(rates: Rates) -> dict[str, FloatArray]:
+    """Return ln of the free concentration of every held species."""
+    network, energies = rates.network, rates.energies
+    t = network.temperature_k
+    found: dict[str, FloatArray] = {}
+    for name, held in rates.model.conditions.held.items():
+        if held.form != "equilibrium":
+            found[name] = np.log(held.concentration_mol_l(t))
+            continue
+        log = -energies.reduced[:, energies.index(name)]
+        for member, share in network.equilibrium[name].items():
+            log = log + float(share) * network.potential[:, network.species.index(member)]
+        found[name] = np.asarray(log, dtype=np.float64)
+    return found
+
+
+def _held(rates: Rates) -> dict[str, FloatArray]:
+    return {name: np.exp(log) for name, log in _log_held(rates).items()}
+
+
+def _net_reaction(rates: Rates) -> tuple[str, int]:
+    """Return the net reaction as text, and the reactant's coefficient in it."""
+    network = rates.network
+    if rates.model.mechanism.catalyst is not None:
+        return _turnovers(rates), 1
+    away = network.exchanged_from(rates.start)
+    reactions = []
+    for state in rates.products:
+        changes = dict.fromkeys(
+            (name for name, _ in (*network.states[rates.start], *network.states[state])), 0.0
+        )
+        for name, count in network.states[rates.start]:
+            changes[name] -= count
+        for name, given in zip(network.held, away[state], strict=True):
+            changes[name] = changes.get(name, 0.0) + given
+        for name, count in network.states[state]:
+            changes[name] += count
+        reactions.append(_reaction(changes))
+    return "; ".join(reactions), 1
+
+
+def _turnovers(rates: Rates) -> str:
+    """Return the net reactions of the catalyst's closed ways, one for each product."""
+    network, products = rates.network, rates.model.mechanism.products
+    reactions: list[str] = []
+    shown: set[str] = set()
+    for turn in rates.turns:
+        changes = dict(zip(network.held, turn.given, strict=True))
+        changes |= dict(zip(network.absent, turn.absent, strict=True))
+        made = {name for name in products if changes[name] > 0}
+        if made - shown and turn.product:
+            shown |= made
+            reactions.append(_reaction(changes))
+    return "; ".join(reactions)
+
+
+def _reaction(changes: Mapping[str, float]) -> str:
+    left = [(name, -count) for name, count in changes.items() if count < 0]
+    right = [(name, count) for name, count in changes.items() if count > 0]
+    return f"{write_side(left)} = {write_side(right)}"
+
+
+def _findings(
+    found: Mapping[Definition, Rate | None], rates: Rates, file: str
+) -> tuple[Finding, ...]:
+    """Return what the reader of the numbers should doubt."""
+    findings: list[Finding] = []
+    t = rates.network.temperature_k
+
+    def add(code: str, severity: Severity, what: str, mend: str) -> None:
+        findings.append(Finding(code, severity, file, None, what, mend))
+
+    pool, relaxing = found["pool"], found["relaxation"]
+    if pool is not None and pool.slow_share is not None and pool.next_decay_ratio is not None:
+        mixed = (pool.next_decay_ratio < NEXT_DECAY_BELOW) | (pool.slow_share < SLOW_SHARE_BELOW)
+        if mixed.any():
+            add(
+                "several-decays",
+                "warning",
+                f"the pool does not decay with one constant at {_temperatures(t[mixed])}: the share of the "
+                f"slowest decay is {pool.slow_share[mixed].min():.3g} at the least, and the next one is "
+                f"{pool.next_decay_ratio[mixed].min():.3g} times faster at the least",
+                "compare with a measurement that resolves the decays, or with the headline constant",
+            )
+    if pool is not None and relaxing is not None:
+        differ = np.abs(relaxing.rate_constant / pool.rate_constant - 1.0) > RETURN_ABOVE
+        if differ.any():
+            add(
+                "product-returns",
+                "warning",
+                "with the product staying, the relaxation differs from the pool's decay by more than "
+                f"5 % at {_temperatures(t[differ])}",
+                "compare with the relaxation constant where the product is not taken away",
+            )
+    for definition, rate in found.items():
+        if rate is not None and np.any(rate.rate_constant < 0.0):
+            backwards = rate.rate_constant < 0.0
+            add(
+                "runs-backwards",
+                "warning",
+                f"{definition}: the net reaction runs backwards at {_temperatures(t[backwards])}",
+                "check the held amounts of reactants and products",
+            )
+    if rates.model.treatment.phase == "gas":
+        for number, step in enumerate(rates.model.mechanism.steps):
+            name = rates.steps.names[number]
+            one_side = 1 in (sum(step.reactants.values()), sum(step.products.values()))
+            if one_side and any(
+                rate is not None and np.any(np.abs(rate.control[name]) > HIGH_PRESSURE_CONTROL)
+                for rate in found.values()
+            ):
+                add(
+                    "high-pressure-limit",
+                    "note",
+                    f"high-pressure limit assumed for step {step.equation!r}, which controls the rate",
+                    "at low pressure declare a fall-off rate constant for it",
+                )
+    else:
+        add(
+            "solvation-slope",
+            "note",
+            "the temperature derivative of the solvation terms is not in H, S and E_a unless the energies hold it",
+            "read E_a with that in mind",
+        )
+    return tuple(findings)
+
+
+def _temperatures(values: FloatArray) -> str:
+    if len(values) == 1:
+        return f"{values[0]:g} K"
+    return f"{len(values)} temperatures from {values.min():g} K to {values.max():g} K"

@@ -1,0 +1,386 @@
+"""Elimination of states without a subtraction, and its derivative.
+
+A network of first-order steps is reduced state by state: the ways through an eliminated state n are shared out among
+the ways that remain,
+
+    q_ij <- q_ij + q_in q_nj / S_n,      S_n = sum of all ways out of n,
+
+and the way back to where one came from is dropped (Grassmann, Taksar, Heyman, Oper. Res. 1985, 33, 1107). Only sums,
+products and quotients of positive numbers occur, so every result keeps its relative accuracy whatever the rates are.
+
+Two things are added here. Ways carry a *label*, the net change of the surroundings along them; a way back to the same
+state with a label that is not zero is one run of a cycle and feeds the reward of that state, times
+-expm1(-affinity): no flux is ever a difference of two. And every operation is kept on a tape, along which the
+derivative of one result's logarithm is taken back to the logarithms of all rates.
+
+Only the ways that exist are worked on: an elimination costs the number of ways in times the number of ways out.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.kinetics.scaled import FloatArray, Scaled, fraction
+
+Label = tuple[int | Fraction, ...]
+Indices = NDArray[np.intp]
+Run = Callable[[Label], Scaled | None]
+"""Worth of one run of a closed way with this label; None where it is nothing or is counted the other way round."""
+
+
+@dataclass(frozen=True, eq=False)
+class Passage:
+    """The ways in and out of an eliminated state n, labels summed; only those that exist.
+
+    Attributes
+    ----------
+    rows : shape (r,)
+        Rows that lead to n.
+    into : Scaled, shape (b, r)
+        q_in.
+    columns : shape (c,)
+        States that n leads to.
+    out : Scaled, shape (b, c)
+        q_nj/S_n.
+    end_columns : shape (e,)
+        Ends that n leads to.
+    ends : Scaled, shape (b, e)
+        The same into the ends.
+    leaving : Scaled, shape (b,)
+        S_n.
+    """
+
+    rows: Indices
+    into: Scaled
+    columns: Indices
+    out: Scaled
+    end_columns: Indices
+    ends: Scaled
+    leaving: Scaled
+
+
+@dataclass(frozen=True, eq=False)
+class _Record:
+    """What is needed to take a derivative back through the elimination of one state."""
+
+    n: int
+    rows: Indices
+    columns: Indices
+    end_columns: Indices
+    shares_out: dict[Label, FloatArray]  # of the ways out of n in S_n, (b, c)
+    shares_end: FloatArray  # of the ends of n in S_n, (b, e), rewards 0
+    through: list[tuple[Label, Label, Label, FloatArray]]  # in, out, sum, share in the new way
+    kept: dict[Label, FloatArray]  # share of the old way in the new way, (b, r, c)
+    runs: list[tuple[Label, Label, Label, Indices, Indices, FloatArray]]
+    # in, out, sum, places in rows and in columns, share in the new reward
+    to_ends: dict[Label, FloatArray]  # share of the way through n in the new end, (b, r, e)
+    ends_kept: FloatArray
+    reward_kept: FloatArray | None  # share of the old reward where runs were added, (b, rows)
+
+
+class Reduction:
+    """A network on the way to its answer.
+
+    Rows are `sources` rows that are never eliminated, then the states; state columns carry labels, end columns do not.
+
+    Parameters
+    ----------
+    ways : dict of label to Scaled, shape (b, sources + n, n)
+        Rates from each row to each state; copied.
+    ends : Scaled, shape (b, sources + n, k)
+        Rates, or rewards, from each row into each end; copied.
+    exits : shape (k,), 1 or 0
+        Which ends are ways out of a state; the others are rewards and take no part in S_n.
+    sources : int
+    run : callable, optional
+        Worth of one run of a closed way, by its label.
+    reward : int
+        The end column that runs feed.
+    """
+
+    def __init__(
+        self,
+        ways: Mapping[Label, Scaled],
+        ends: Scaled,
+        exits: FloatArray,
+        *,
+        sources: int = 0,
+        run: Run | None = None,
+        reward: int = 0,
+    ) -> None:
+        self.ways = {label: way.copy() for label, way in ways.items()}
+        self.ends = ends.copy()
+        self.exits = np.asarray(exits, dtype=np.float64)
+        self.sources = sources
+        self.run = run
+        self.reward = reward
+        self.left = next(iter(ways.values())).shape[2]
+        self._tape: list[_Record] = []
+
+    def eliminate_to(self, left: int, *, tape: bool = True) -> list[Passage]:
+        """Eliminate the last states until `left` are left; return how each was passed, in the order of states."""
+        return [self._eliminate(tape) for _ in range(self.left - left)][::-1]
+
+    def _eliminate(self, tape: bool) -> Passage:
+        n = self.left - 1
+        s = self.sources
+        row = s + n
+        rows = _present([way.mantissa[:, :row, n] for way in self.ways.values()])
+        columns = _present([way.mantissa[:, row, :n] for way in self.ways.values()])
+        end_columns = _present([self.ends.mantissa[:, row, :]])
+        into = _existing({label: way[:, rows, n] for label, way in self.ways.items()})
+        out = _existing({label: way[:, row, columns] for label, way in self.ways.items()})
+        end_out = self.ends[:, row, end_columns]
+        exits = self.exits[end_columns]
+        leaving = _leaving(out, end_out, exits)
+        below = leaving[:, np.newaxis]
+        relative = {label: way / below for label, way in out.items()}
+        relative_end = end_out / below
+        self.left = n
+        passage = Passage(
+            rows,
+            _total(into, len(rows), leaving),
+            columns,
+            _total(relative, len(columns), leaving),
+            end_columns,
+            relative_end,
+            leaving,
+        )
+        block = np.ix_(rows, columns)
+        added, runs = self._through(into, relative, rows, columns)
+        kept, through = {}, []
+        for label, terms in added.items():
+            if label not in self.ways:
+                self.ways[label] = Scaled.zeros(next(iter(self.ways.values())).shape)
+            old = self.ways[label][:, block[0], block[1]]
+            new = _add_up([old, *(term for _, _, term in terms)])
+            self.ways[label][:, block[0], block[1]] = new
+            if tape:
+                kept[label] = fraction(old, new)
+                through += [(a, b, label, fraction(term, new)) for a, b, term in terms]
+        end_block = np.ix_(rows, end_columns)
+        old_ends = self.ends[:, end_block[0], end_block[1]]
+        parts = {label: _outer(way, relative_end) for label, way in into.items()}
+        new_ends = _add_up([old_ends, *parts.values()])
+        self.ends[:, end_block[0], end_block[1]] = new_ends
+        run_records, reward_kept = self._reward(runs, rows, tape)
+        if tape:
+            self._tape.append(
+                _Record(
+                    n=n,
+                    rows=rows,
+                    columns=columns,
+                    end_columns=end_columns,
+                    shares_out={label: fraction(way, below) for label, way in out.items()},
+                    shares_end=np.where(exits, fraction(end_out, below), 0.0),
+                    through=through,
+                    kept=kept,
+                    runs=run_records,
+                    to_ends={label: fraction(part, new_ends) for label, part in parts.items()},
+                    ends_kept=fraction(old_ends, new_ends),
+                    reward_kept=reward_kept,
+                )
+            )
+        return passage
+
+    def _through(
+        self,
+        into: Mapping[Label, Scaled],
+        relative: Mapping[Label, Scaled],
+        rows: Indices,
+        columns: Indices,
+    ) -> tuple[_Added, _Runs]:
+        """Return what goes through the eliminated state, by the label of the whole way, and the runs of cycles."""
+        place_in_rows, place_in_columns = np.nonzero(
+            (rows - self.sources)[:, np.newaxis] == columns[np.newaxis, :]
+        )
+        back = (slice(None), place_in_rows, place_in_columns)
+        added: _Added = {}
+        runs: _Runs = []
+        for label_in, way_in in into.items():
+            for label_out, way_out in relative.items():
+                term = _outer(way_in, way_out)
+                label = tuple(a + b for a, b in zip(label_in, label_out, strict=True))
+                if len(place_in_rows):
+                    worth = self.run(label) if self.run is not None else None
+                    if worth is not None:
+                        gain = term[back] * worth[:, np.newaxis]
+                        runs.append(
+                            (label_in, label_out, label, place_in_rows, place_in_columns, gain)
+                        )
+                    term[back] = Scaled.zeros((len(term.mantissa), len(place_in_rows)))
+                added.setdefault(label, []).append((label_in, label_out, term))
+        return added, runs
+
+    def _reward(
+        self, runs: _Runs, rows: Indices, tape: bool
+    ) -> tuple[list[tuple[Label, Label, Label, Indices, Indices, FloatArray]], FloatArray | None]:
+        """Add the runs of cycles to the rewards of the states that they return to."""
+        if not runs:
+            return [], None
+        old = self.ends[:, rows, self.reward]
+        new = old.copy()
+        for *_, places, _, gain in runs:
+            new[:, places] = new[:, places] + gain
+        self.ends[:, rows, self.reward] = new
+        if not tape:
+            return [], None
+        records = [(*run[:5], fraction(run[5], new[:, run[3]])) for run in runs]
+        return records, fraction(old, new)
+
+    def gradient(self, ways: Mapping[Label, FloatArray], ends: FloatArray) -> Gradient:
+        """Take a derivative back to the network before any elimination.
+
+        Parameters
+        ----------
+        ways, ends : shape (b, sources + left, left) by label; (b, sources + left, k)
+            Derivative of the answer by the logarithms of what is left; labels that are missing are 0.
+        """
+        b, all_rows, n = next(iter(self.ways.values())).shape
+        top = self.sources + self.left
+        by_ways = {label: np.zeros((b, all_rows, n)) for label in self.ways}
+        for label, given in ways.items():
+            by_ways[label][:, :top, : self.left] = given
+        by_ends = np.zeros((b, all_rows, ends.shape[2]))
+        by_ends[:, :top] = ends
+        worths: dict[Label, FloatArray] = {}
+        for record in reversed(self._tape):
+            self._back(record, by_ways, by_ends, worths)
+        return Gradient(by_ways, by_ends, worths)
+
+    def _back(
+        self,
+        record: _Record,
+        by_ways: dict[Label, FloatArray],
+        by_ends: FloatArray,
+        worths: dict[Label, FloatArray],
+    ) -> None:
+        rows, columns, end_columns = record.rows, record.columns, record.end_columns
+        row = self.sources + record.n
+        b = len(by_ends)
+        leaving = np.zeros(b)
+        into = {label: np.zeros((b, len(rows))) for label in by_ways}
+        out = {label: np.zeros((b, len(columns))) for label in by_ways}
+        if record.reward_kept is not None:
+            gain = by_ends[:, rows, self.reward]
+            by_ends[:, rows, self.reward] = gain * record.reward_kept
+            for label_in, label_out, label, in_rows, in_columns, share in record.runs:
+                term = gain[:, in_rows] * share
+                into[label_in][:, in_rows] += term
+                out[label_out][:, in_columns] += term
+                total = term.sum(axis=1)
+                leaving -= total
+                worths[label] = worths.get(label, np.zeros(b)) + total
+        block = (slice(None), rows[:, np.newaxis], columns[np.newaxis, :])
+        weights = {label: by_ways[label][block] for label in record.kept}
+        for label, share in record.kept.items():
+            by_ways[label][block] = weights[label] * share
+        for label_in, label_out, label, share in record.through:
+            term = weights[label] * share
+            into[label_in] += term.sum(axis=2)
+            by_column = term.sum(axis=1)
+            out[label_out] += by_column
+            leaving -= by_column.sum(axis=1)
+        end_block = (slice(None), rows[:, np.newaxis], end_columns[np.newaxis, :])
+        weight = by_ends[end_block]
+        by_ends[end_block] = weight * record.ends_kept
+        ends = np.zeros((b, len(end_columns)))
+        for label, share in record.to_ends.items():
+            term = weight * share
+            into[label] += term.sum(axis=2)
+            by_end = term.sum(axis=1)
+            ends += by_end
+            leaving -= by_end.sum(axis=1)
+        for label, share in record.shares_out.items():
+            out[label] += leaving[:, np.newaxis] * share
+        ends += leaving[:, np.newaxis] * record.shares_end
+        for label in by_ways:
+            by_ways[label][:, rows, record.n] = into[label]
+            by_ways[label][:, row, columns] = out[label]
+        by_ends[:, row, end_columns] = ends
+
+
+_Added = dict[Label, list[tuple[Label, Label, Scaled]]]
+_Runs = list[tuple[Label, Label, Label, Indices, Indices, Scaled]]
+
+
+@dataclass(frozen=True, eq=False)
+class Gradient:
+    """Derivative of one logarithm by the logarithms of what a network began with.
+
+    Attributes
+    ----------
+    ways : dict of label to shape (b, rows, n)
+    ends : shape (b, rows, k)
+    worths : dict of label to shape (b,)
+        By the logarithm of what one run with that label is worth.
+    """
+
+    ways: dict[Label, FloatArray]
+    ends: FloatArray
+    worths: dict[Label, FloatArray]
+
+
+def _present(mantissas: Sequence[FloatArray]) -> Indices:
+    """Return the places (last axis) at which any number is not 0."""
+    found = np.zeros(mantissas[0].shape[1], np.bool_)
+    for mantissa in mantissas:
+        found |= mantissa.any(axis=0)
+    return np.flatnonzero(found)
+
+
+def _existing(by_label: dict[Label, Scaled]) -> dict[Label, Scaled]:
+    return {label: way for label, way in by_label.items() if way.mantissa.any()}
+
+
+def _leaving(out: Mapping[Label, Scaled], ends: Scaled, exits: FloatArray) -> Scaled:
+    """Return S_n, shape (b,)."""
+    parts = [way.sum(axis=1) for way in out.values()]
+    places = np.flatnonzero(exits)
+    if len(places):
+        parts.append(ends[:, places].sum(axis=1))
+    return _add_up(parts)
+
+
+def _total(by_label: Mapping[Label, Scaled], size: int, like: Scaled) -> Scaled:
+    if not by_label:
+        return Scaled.zeros((len(like.mantissa), size))
+    return _add_up(list(by_label.values()))
+
+
+def _add_up(terms: Sequence[Scaled]) -> Scaled:
+    total = terms[0]
+    for term in terms[1:]:
+        total = total + term
+    return total
+
+
+def _outer(rows: Scaled, columns: Scaled) -> Scaled:
+    """Return the products of (b, r) and (b, c), shape (b, r, c)."""
+    return rows[:, :, np.newaxis] * columns[:, np.newaxis, :]
+
+
+def fill_saving_order(neighbours: Mapping[int, set[int]], first: int) -> list[int]:
+    """Return states so that eliminating from the last on makes few new ways; `first` stays first.
+
+    At each turn the state with the fewest neighbours left is eliminated.
+    """
+    near: dict[int, set[int]] = {k: set() for k in neighbours}
+    for k, others in neighbours.items():
+        for other in others - {k}:
+            near[k].add(other)
+            near[other].add(k)  # a way may exist in one direction only
+    eliminated: list[int] = []
+    while len(near) > 1:
+        state = min((k for k in near if k != first), key=lambda k: (len(near[k]), k))
+        around = near.pop(state)
+        for k in around:
+            near[k] |= around
+            near[k] -= {k, state}
+        eliminated.append(state)
+    return [first, *reversed(eliminated)]

@@ -1,0 +1,34 @@
+"""The literals of every choice a user can make, so that ``--help`` needs no other module."""
+
+from __future__ import annotations
+
+from typing import Literal, get_args
+
+Severity = Literal["note", "warning", "error"]
+LowModes = Literal["harmonic", "raised", "rotor-entropy", "rotor-enthalpy"]
+Rotor = Literal["auto", "classical"]
+RotorKind = Literal["atom", "linear", "nonlinear"]
+Kind = Literal["minimum", "saddle"]
+Phase = Literal["gas", "solution"]
+Masses = Literal["program", "average"]
+Tunnelling = Literal["none", "wigner", "eckart"]
+EnergyUnit = Literal["kJ/mol", "kcal/mol", "eV", "hartree"]
+Format = Literal["table", "csv", "markdown", "latex", "json"]
+Origin = Literal["printed", "derived", "declared"]
+Definition = Literal["free", "pool", "relaxation", "cycle"]
+
+SEVERITIES: tuple[Severity, ...] = get_args(Severity)
+"""From the mildest to the worst."""
+LOW_MODES: tuple[LowModes, ...] = get_args(LowModes)
+ROTORS: tuple[Rotor, ...] = get_args(Rotor)
+PHASES: tuple[Phase, ...] = get_args(Phase)
+MASSES: tuple[Masses, ...] = get_args(Masses)
+TUNNELLING: tuple[Tunnelling, ...] = get_args(Tunnelling)
+ENERGY_UNITS: tuple[EnergyUnit, ...] = get_args(EnergyUnit)
+FORMATS: tuple[Format, ...] = get_args(Format)
+DEFINITIONS: tuple[Definition, ...] = get_args(Definition)
+
+DEFAULT_LOW_MODES: LowModes = "rotor-entropy"
+DEFAULT_ONSET_CM = 100.0
+DEFAULT_STANDARD_STATE = "1 bar"
+DEFAULT_TEMPERATURE_K = 298.15

@@ -1,0 +1,1 @@
+"""Output: tables and figures from results; nothing is computed here."""

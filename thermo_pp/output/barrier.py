@@ -1,0 +1,218 @@
+"""The JSON answer and the CSV tables of ``barrier``; `barrier_tables` has those for people."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import asdict
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.conditions import Treatment
+from thermo_pp.errors import Finding
+from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate
+from thermo_pp.names import DEFINITIONS, Definition, EnergyUnit
+from thermo_pp.output.json_text import answer
+from thermo_pp.output.notes import kelvin
+from thermo_pp.output.tables import (
+    ENTROPY_UNIT,
+    Block,
+    Cell,
+    Column,
+    Table,
+    defined,
+    energy_column,
+    in_unit,
+    unit_heading,
+)
+
+FloatArray = NDArray[np.float64]
+
+_KEYS: dict[Definition, str] = {
+    "free": "per_free_reactant",
+    "pool": "per_pool",
+    "relaxation": "relaxation",
+    "cycle": "cycle",
+}
+
+
+def keys(
+    effective: EffectiveRate, treatment: Treatment, findings: Sequence[Finding]
+) -> dict[str, Any]:
+    """Return the JSON answer."""
+    rates = {name: effective.rates.get(name) for name in DEFINITIONS}
+    return answer(
+        "barrier",
+        findings,
+        treatment,
+        temperature_k=effective.temperature_k,
+        net_reaction=effective.net_reaction,
+        reactant_coefficient=effective.reactant_coefficient,
+        held_mol_l=effective.held_mol_l,
+        rates={_KEYS[name]: rate and _rate(rate) for name, rate in rates.items()},
+        steps=[vars(step) for step in effective.steps],
+        words=" ".join(effective.words),
+    )
+
+
+def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> list[Block]:
+    """Return the tables for CSV: rates, controls and orders, approximations, steps; full digits."""
+    every = range(len(effective.temperature_k))
+    rates = rates_of(effective)
+    constants = [
+        ("standard state", effective.standard_state),
+        ("soft modes", treatment.low_modes),
+    ]
+    activation = _activation_columns(unit, "")
+    standard = _activation_columns(unit, "standard ")
+    columns = [
+        *(Column("definition"), Column("T", "K"), Column("k"), Column("unit")),
+        energy_column("Ea", unit),
+        *activation,
+        *standard,
+        *(Column("slow share"), Column("next decay ratio")),
+        *(Column("inverse mean time", "s⁻¹"), Column("headline", "s⁻¹"), Column("resting state")),
+    ]
+    rows: list[list[Cell]] = [
+        [
+            *(name, float(effective.temperature_k[k]), defined(rate.rate_constant[k])),
+            rate.unit,
+            in_unit(rate.arrhenius_energy_kj_mol[k], unit),
+            *activation_cells(rate.activation, k, unit),
+            *activation_cells(rate.standard_activation, k, unit),
+            *(cell_at(rate.slow_share, k), cell_at(rate.next_decay_ratio, k)),
+            *(cell_at(rate.inverse_mean_time, k), cell_at(rate.headline, k)),
+            None if rate.resting_state is None else rate.resting_state[k],
+        ]
+        for name, rate in rates.items()
+        for k in every
+    ]
+    controls: list[list[Cell]] = [
+        [name, float(effective.temperature_k[k]), what, species, defined(values[k])]
+        for name, rate in rates.items()
+        for what, family in (("control", rate.control), ("order", rate.orders))
+        for species, values in family.items()
+        for k in every
+    ]
+    approximations: list[list[Cell]] = [
+        [
+            *(name, float(effective.temperature_k[k]), one.name),
+            *(defined(one.rate_constant[k]), defined(one.ratio[k])),
+        ]
+        for name, rate in rates.items()
+        for one in rate.approximations
+        for k in every
+    ]
+    head = [Column("definition"), Column("T", "K")]
+    return [
+        Table("rates", columns, rows, constants=constants),
+        Table("control", [*head, Column("what"), Column("species"), Column("value")], controls),
+        Table(
+            "approximations",
+            [*head, Column("approximation"), Column("k", "s⁻¹"), Column("ratio")],
+            approximations,
+        ),
+        steps_table(effective, every, people=False),
+    ]
+
+
+def rates_of(effective: EffectiveRate) -> dict[Definition, Rate]:
+    """Return the rates that apply, in their fixed order."""
+    found = {name: effective.rates.get(name) for name in DEFINITIONS}
+    return {name: rate for name, rate in found.items() if rate is not None}
+
+
+def steps_table(effective: EffectiveRate, shown: Sequence[int], *, people: bool) -> Table:
+    """Return the steps; units stand in cells, because they differ from step to step."""
+    columns = [
+        *([] if people else [Column("T", "K")]),
+        Column("Step"),
+        Column("forward", digits=3),
+        Column("unit"),
+        Column("reverse", digits=3),
+        Column("unit"),
+        Column("reversibility", general=3),
+        Column("limited"),
+    ]
+    rows: list[list[Cell]] = [
+        [
+            *([] if people else [float(effective.temperature_k[k])]),
+            step.equation,
+            defined(step.forward_rate_constant[k]),
+            unit_heading(step.forward_unit),
+            defined(step.reverse_rate_constant[k]),
+            unit_heading(step.reverse_unit),
+            defined(step.reversibility[k]),
+            "yes" if step.limited[k] else "no",
+        ]
+        for k in shown
+        for step in effective.steps
+    ]
+    title = f"Steps at {kelvin(effective.temperature_k[shown[0]])}" if people else "steps"
+    return Table(title, columns, rows)
+
+
+def activation_cells(activation: Activation | None, k: int, unit: EnergyUnit) -> list[Cell]:
+    """Return H, S and G at temperature `k`."""
+    if activation is None:
+        return [None, None, None]
+    return [
+        in_unit(activation.enthalpy_kj_mol[k], unit),
+        defined(activation.entropy_j_mol_k[k]),
+        in_unit(activation.gibbs_kj_mol[k], unit),
+    ]
+
+
+def cell_at(values: FloatArray | None, k: int) -> float | None:
+    """Return the value at temperature `k`, None where there is none."""
+    return None if values is None else defined(values[k])
+
+
+def _activation_columns(unit: EnergyUnit, kind: str) -> list[Column]:
+    return [
+        energy_column(f"{kind}H‡", unit),
+        Column(f"{kind}S‡", ENTROPY_UNIT),
+        energy_column(f"{kind}G‡", unit),
+    ]
+
+
+def _rate(rate: Rate) -> dict[str, Any]:
+    standard = rate.standard_activation
+    keys: dict[str, Any] = {
+        "rate_constant": rate.rate_constant,
+        "unit": rate.unit,
+        "arrhenius_energy_kj_mol": rate.arrhenius_energy_kj_mol,
+        **_activation(rate.activation),
+        "standard_activation": None if standard is None else _activation(standard),
+        "sign_changes": [asdict(change) for change in rate.sign_changes],
+        "control": rate.control,
+        "sign_shift_kj_mol": rate.sign_shift_kj_mol,
+        "orders": rate.orders,
+        "approximations": [_approximation(one) for one in rate.approximations],
+    }
+    if rate.definition == "pool":
+        for name in ("slow_share", "next_decay_ratio", "inverse_mean_time", "headline"):
+            keys[name] = getattr(rate, name)
+    for name in ("resting_state", "populations", "branching"):
+        if getattr(rate, name) is not None:
+            keys[name] = getattr(rate, name)
+    return keys
+
+
+def _activation(activation: Activation) -> dict[str, Any]:
+    return {f"activation_{name}": value for name, value in vars(activation).items()}
+
+
+def _approximation(approximation: Approximation) -> dict[str, Any]:
+    keys: dict[str, Any] = {
+        "name": approximation.name,
+        "rate_constant": approximation.rate_constant,
+        "ratio": approximation.ratio,
+        "windows_k": [[window.from_k, window.to_k] for window in approximation.windows],
+        "windows_open": [[window.open_below, window.open_above] for window in approximation.windows],
+    }
+    for name in ("determining_saddle", "determining_state"):
+        if getattr(approximation, name) is not None:
+            keys[name] = getattr(approximation, name)
+    return keys

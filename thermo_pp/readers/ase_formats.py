@@ -1,0 +1,215 @@
+"""Structures and energies that ASE reads: trajectories, JSON data bases, extended XYZ; no modes.
+
+Only formats with a mark of their own are read, through ASE's reader of exactly that format; none of
+them executes or unpickles anything. ASE's energies come in eV of CODATA 2014; ASE's own number
+undoes that.
+"""
+
+from __future__ import annotations
+
+import io
+import math
+import re
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
+from thermo_pp.errors import Finding
+from thermo_pp.readers.text import CUT_SHORT, Text
+from thermo_pp.records import Calculation
+from thermo_pp.sources import Source
+
+NAME = "ase"
+LOOKS_FOR = "an ASE trajectory, an ASE data base in JSON, extended XYZ with 'Properties='"
+
+Atoms = Any  # ase.Atoms, which is not imported for its type: its methods carry none
+Images = Callable[[Source], tuple[int, Atoms]]
+"""Returns how many structures a file holds, and the last one."""
+
+_TRAJECTORY = b"- of UlmASE-Trajectory"
+_EXTENDED_XYZ = re.compile(rb"\s*\d+[ \t]*\r?\n[^\r\n]*\bProperties=\"?species:S:1:pos:R:3")
+_DATA_BASE = re.compile(rb'\s*\{\s*"\d+"\s*:\s*\{')
+_DATA_BASE_KEYS = (b'"unique_id"', b'"positions"', b'"numbers"', b'"ctime"')
+
+
+def sniff(head: bytes) -> bool:
+    """Tell whether `head`, the first 64 KiB of a file, is one of the formats read here."""
+    return _format(head) is not None
+
+
+def _format(head: bytes) -> Images | None:
+    if head.startswith(_TRAJECTORY):
+        return _trajectory
+    if _EXTENDED_XYZ.match(head):
+        return _extended_xyz
+    if _DATA_BASE.match(head) and all(key in head for key in _DATA_BASE_KEYS):
+        return _data_base
+    return None
+
+
+def _trajectory(source: Source) -> tuple[int, Atoms]:
+    from ase.io import trajectory
+
+    open_trajectory: Any = trajectory.TrajectoryReader
+    reader = open_trajectory(io.BytesIO(source.data))
+    return len(reader), reader[-1]
+
+
+def _extended_xyz(source: Source) -> tuple[int, Atoms]:
+    from ase.io.extxyz import read_extxyz
+
+    lines = _lines(source.data)
+    frames = _frames(lines)
+    last = "\n".join(lines[frames[-1] :])
+    return len(frames), next(read_extxyz(io.StringIO(last), index=slice(None)))
+
+
+def _lines(data: bytes) -> list[str]:
+    return [line.rstrip("\r") for line in data.decode("utf-8").split("\n")]
+
+
+def _frames(lines: list[str]) -> list[int]:
+    """Return at which of the lines, from 0, the structures of an extended XYZ file begin.
+
+    Raises
+    ------
+    ValueError
+        A line that is no number of atoms, or one that promises more lines than there are.
+    """
+    frames, at = [], 0
+    while at < len(lines):
+        if lines[at].strip():
+            frames.append(at)
+            at += int(lines[at]) + 1
+            if at >= len(lines) or at <= frames[-1]:
+                raise ValueError(f"line {frames[-1] + 1} promises more atoms than there are")
+        at += 1
+    return frames
+
+
+def _data_base(source: Source) -> tuple[int, Atoms]:
+    from ase.db import jsondb
+
+    open_data_base: Any = jsondb.JSONDatabase
+    rows = list(open_data_base(io.StringIO(source.data.decode("utf-8"))).select())
+    return len(rows), rows[-1].toatoms()
+
+
+def read(source: Source) -> Calculation:
+    """Read the last structure of one file, and its energy.
+
+    Raises
+    ------
+    ReadError
+        Whatever ASE raises, a file without a structure, a periodic cell, an atom of no element, an
+        energy, a mass or a position that cannot be.
+    """
+    text = Text(source)
+    images = _format(source.head)
+    if images is None:
+        raise text.error(0, "none of the formats that are read through ASE", mend=CUT_SHORT)
+    try:
+        count, atoms = images(source)
+    except Exception as error:  # whatever it is, the file is not what it claims to be
+        reason = f"{type(error).__name__}: {error}".strip()
+        raise text.error(0, f"ASE cannot read this file: {reason[:200]}", mend=CUT_SHORT) from error
+    numbers = _numbers(text, atoms)
+    printed = atoms.has("masses")
+    masses = atoms.get_masses() if printed else _most_abundant(numbers)
+    if not np.all(np.isfinite(atoms.positions)) or not np.all(masses > 0.0):
+        raise text.error(0, "a position that is not finite, or a mass not above 0", mend=CUT_SHORT)
+    energy = _energy(text, atoms)
+    places = _places(text)
+    if energy is None:
+        places.pop("energy_hartree", None)
+    return Calculation(
+        path=source.name,
+        sha256=source.sha256,
+        program="ASE",
+        numbers=numbers,
+        positions_angstrom=atoms.positions,
+        masses_u=masses,
+        masses_origin="printed" if printed else "derived",
+        charge=_whole(text, atoms, "charge"),
+        multiplicity=_whole(text, atoms, "multiplicity"),
+        energy_hartree=energy,
+        kind_of_job=() if energy is None else ("energy",),
+        where={name: text.line_number(place) for name, place in places.items()},
+        findings=_findings(source.name, count),
+    )
+
+
+def _numbers(text: Text, atoms: Atoms) -> NDArray[np.int64]:
+    numbers = np.asarray(atoms.numbers, dtype=np.int64)
+    if not len(numbers) or np.any(numbers < 1) or np.any(numbers >= len(SYMBOLS)):
+        raise text.error(0, "an atom of no element, or no atom at all", mend="remove dummy atoms")
+    if np.any(atoms.pbc):
+        raise text.error(
+            0, "a periodic structure", mend="give a molecule without a periodic cell (pbc = F F F)"
+        )
+    return numbers
+
+
+def _most_abundant(numbers: NDArray[np.int64]) -> NDArray[np.float64]:
+    return np.array([ISOTOPES[SYMBOLS[z]][MOST_ABUNDANT[z]] for z in numbers])
+
+
+def _energy(text: Text, atoms: Atoms) -> float | None:
+    """Return the energy in hartree, None where the file has none."""
+    from ase.units import Hartree
+
+    value = None if atoms.calc is None else atoms.calc.results.get("energy")
+    if value is None:
+        return None
+    try:
+        energy = float(value) / 27.211386245981
+    except (TypeError, ValueError):
+        energy = math.nan
+    if not math.isfinite(energy):
+        raise text.error(0, f"energy {str(value)[:80]} is not a finite number", mend=CUT_SHORT)
+    return energy
+
+
+def _whole(text: Text, atoms: Atoms, key: str) -> int | None:
+    """Return the whole number that the file states as `key`, None where it states none."""
+    value = atoms.info.get(key)
+    if value is None:
+        return None
+    try:
+        number = float(value)
+    except (TypeError, ValueError):
+        number = math.nan
+    if not abs(number) < 1000.0 or number != round(number):
+        raise text.error(0, f"{key} {str(value)[:80]} is not a small whole number", mend=CUT_SHORT)
+    return round(number)
+
+
+def _places(text: Text) -> dict[str, int]:
+    """Return where the last structure and its energy stand; nothing in a binary file."""
+    if _EXTENDED_XYZ.match(text.data):
+        at = text.next_line(0, _frames(_lines(text.data))[-1] + 1)
+        return {"positions_angstrom": text.next_line(at), "energy_hartree": at}
+    if _DATA_BASE.match(text.data):
+        return {
+            "positions_angstrom": text.last(b'"positions"'),
+            "energy_hartree": text.last(b'"energy"'),
+        }
+    return {}
+
+
+def _findings(name: str, count: int) -> tuple[Finding, ...]:
+    if count == 1:
+        return ()
+    return (
+        Finding(
+            "last-of-several-structures",
+            "note",
+            name,
+            None,
+            f"{count} structures in this file; the last one is taken",
+            "give a file with one structure where another one is meant",
+        ),
+    )

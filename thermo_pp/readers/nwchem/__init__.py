@@ -1,0 +1,299 @@
+"""NWChem text outputs: HF, DFT, MP2 and coupled-cluster energies, optimisations, frequencies; several tasks in a file.
+
+What is taken of a file with several tasks
+
+- With a frequency task: the geometry, masses and modes of the last one. The energy is the one that task computed at
+  its reference geometry (never at a displaced one), unless a later task has one of the same molecule at the same
+  geometry, charge and multiplicity whose method is not lower (HF < DFT < MP2 < CCSD < CCSD(T)), or an earlier one has
+  a correlated one that is higher. Method, basis and the rest of the level are those of that energy; where they are not
+  those of the modes a finding says so.
+- Without one: the geometry of the last task, its energy, or a higher correlated one of an earlier task at the same
+  geometry, charge and multiplicity.
+
+Formats were checked on NWChem 7.0.2.
+"""
+
+from __future__ import annotations
+
+import re
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.errors import Finding, ReadError
+from thermo_pp.names import Severity
+from thermo_pp.readers.nwchem import geometry, levels, states, tasks, vibrations
+from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
+from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
+from thermo_pp.readers.nwchem.states import State
+from thermo_pp.readers.nwchem.tasks import Task
+from thermo_pp.readers.nwchem.vibrations import Vibrations
+from thermo_pp.readers.text import Text
+from thermo_pp.records import Calculation
+from thermo_pp.sources import Source
+
+__all__ = ["LOOKS_FOR", "NAME", "PRINTED_CONSTANTS", "read", "sniff"]
+
+NAME = "nwchem"
+LOOKS_FOR = "'Northwest Computational Chemistry Package (NWChem)'"
+
+_BANNER = re.compile(
+    rb"^[ \t]+Northwest Computational Chemistry Package \(NWChem\) (\S+)\r?\n[ \t]+-{20}",
+    re.MULTILINE,
+)
+_CONVERGED = b"Optimization converged"
+_UNCONVERGED = b"Failed to converge in maximum number"
+
+
+class Doubt(NamedTuple):
+    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
+
+    code: str
+    severity: Severity
+    at: int
+    what: str
+    mend: str
+
+
+def sniff(head: bytes) -> bool:
+    """Tell whether `head`, the first 64 KiB of a file, is this program's."""
+    return _BANNER.search(head) is not None
+
+
+def read(source: Source) -> Calculation:
+    """Read one output.
+
+    Raises
+    ------
+    ReadError
+        Names file and line: no normal end, an SCF that did not converge, an energy that is missing or not known to
+        this reader, values printed twice that do not agree, anything damaged.
+    """
+    text = Text(source)
+    all_tasks = tasks.tasks(text)
+    analysed = [task for task in all_tasks if task.kind == "frequencies"]
+    main = analysed[-1] if analysed else all_tasks[-1]
+    tasks.check_known(text, main)
+    blocks = Blocks(text)
+    modes: Vibrations | None = None
+    own: State | None
+    if analysed:
+        table = vibrations.atoms(text, main)
+        shape = states.block_of(text, blocks, main, table)
+        modes = vibrations.vibrations(text, main, table)
+        own = states.reference(text, main, shape)
+        masses, masses_at = table.masses_u, table.at
+    else:
+        own = states.final(text, blocks, main)
+        shape = own.geometry
+        masses, masses_at = geometry.element_masses(text, shape)
+    taken, failed = states.best(text, blocks, all_tasks, main, own, shape)
+    at = {"positions_angstrom": shape.at, "masses_u": masses_at}
+    doubts = [_failed(text, task, error) for task, error in failed]
+    if taken is not None:
+        at |= taken.level.at | {"energy_hartree": taken.energy.at}
+    run = _own_run(all_tasks, main, shape)
+    optimised = None
+    if run is not None:
+        optimised, at["optimised"] = _outcome(text, run)
+        if not optimised:
+            doubts.append(_not_converged(at["optimised"]))
+    if modes is not None:
+        at |= modes.at
+        doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
+    doubts += _ghosts(text, shape, modes)
+    doubts += _left_out(blocks, all_tasks, main, shape)
+    banner = _BANNER.search(text.data)
+    if banner is not None:
+        at["program_version"] = banner.start(1)
+    thermochemistry = {} if modes is None else modes.thermochemistry
+    places = at | {f"printed {key}": value[2] for key, value in thermochemistry.items()}
+    lines = text.line_numbers(places | {f"doubt {i}": doubt.at for i, doubt in enumerate(doubts)})
+    level = None if taken is None else taken.level
+    real = shape.real if shape.ghosts else slice(None)
+    return Calculation(
+        path=source.name,
+        sha256=source.sha256,
+        program=NAME,
+        program_version=None if banner is None else banner.group(1).decode("utf-8", "replace"),
+        method=None if level is None else level.method,
+        basis=None if level is None else level.basis,
+        dispersion=None if level is None else level.dispersion,
+        solvent=None if level is None else level.solvent,
+        grid=None if level is None else level.grid,
+        frozen_core=None if level is None else level.frozen_core,
+        numbers=shape.numbers[real],
+        positions_angstrom=shape.positions_angstrom[real],
+        masses_u=masses[real],
+        masses_origin="printed",
+        charge=None if level is None else level.charge,
+        multiplicity=None if level is None else level.multiplicity,
+        energy_hartree=None if taken is None else taken.energy.value_hartree,
+        energy_label=None if taken is None else taken.energy.label,
+        wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
+        modes=None if modes is None else modes.modes,
+        hessian_hartree_bohr2=None if modes is None else modes.hessian_hartree_bohr2,
+        optimised=optimised,
+        kind_of_job=_kinds(all_tasks),
+        printed={}
+        if modes is None
+        else modes.printed({k: lines[f"printed {k}"] for k in thermochemistry}),
+        where={field: lines[field] for field in at},
+        findings=tuple(
+            Finding(
+                doubt.code, doubt.severity, source.name, lines[f"doubt {i}"], doubt.what, doubt.mend
+            )
+            for i, doubt in enumerate(doubts)
+        ),
+    )
+
+
+def _kinds(all_tasks: list[Task]) -> tuple[str, ...]:
+    kinds = {task.kind for task in all_tasks}
+    return tuple(k for k in ("energy", "gradient", "optimisation", "frequencies") if k in kinds)
+
+
+def _own_run(all_tasks: list[Task], main: Task, shape: Geometry) -> Task | None:
+    """Return the optimisation whose last geometry is `shape`: its block stands in that task."""
+    runs = [task for task in all_tasks if task.kind == "optimisation"]
+    return next((task for task in runs if task is main or task.start < shape.at < task.end), None)
+
+
+def _outcome(text: Text, run: Task) -> tuple[bool, int]:
+    """Return whether an optimisation reached its thresholds, and the offset at which the program says so."""
+    at = text.data.rfind(_CONVERGED, run.start, run.end)
+    if at >= 0 and run.failed is None:
+        return True, at
+    at = text.data.rfind(_UNCONVERGED, run.start, run.end)
+    return False, max(at, run.failed_at) if at < 0 else at
+
+
+def _not_converged(at: int) -> Doubt:
+    return Doubt(
+        "optimisation-not-converged",
+        "warning",
+        at,
+        "the optimisation did not reach its thresholds",
+        "optimise on from the last geometry, with more steps",
+    )
+
+
+def _failed(text: Text, task: Task, error: ReadError) -> Doubt:
+    return Doubt(
+        "task-not-read",
+        "warning",
+        task.failed_at if task.failed is not None else task.headings[0][0],
+        f"this task is not read: {error.what} ({error.where})",
+        "rerun that task, or give a file without it",
+    )
+
+
+def _modes_doubts(
+    text: Text,
+    blocks: Blocks,
+    modes: Vibrations,
+    masses: NDArray[np.float64],
+    taken: State | None,
+    own: State | None,
+    run: Task | None,
+) -> list[Doubt]:
+    """Return what is doubtful about the frequencies: their level, their geometry, their printed masses."""
+    found: list[Doubt] = []
+    if taken is None:
+        found.append(
+            Doubt(
+                "no-energy",
+                "warning",
+                modes.at["modes"],
+                "no energy at the geometry of the modes in this file",
+                "name an output with the energy of this geometry, or rerun the frequency task alone",
+            )
+        )
+    if own is not None and taken is not None and taken is not own:
+        found.append(
+            Doubt(
+                "energy-of-another-task",
+                "note",
+                taken.energy.at,
+                f"the energy is {_words(taken)}, the modes are {_words(own)}: two tasks of this file",
+                "nothing, where that is meant; else give the tasks as files of their own",
+            )
+        )
+    if own is not None and run is not None and not _same_printed_level(text, run, own):
+        ended = states.final(text, blocks, run)
+        if _words(ended) != _words(own):
+            found.append(
+                Doubt(
+                    "frequencies-of-another-level",
+                    "warning",
+                    modes.at["modes"],
+                    f"the geometry was optimised with {_words(ended)}, the frequencies are {_words(own)}: "
+                    "no stationary point of theirs",
+                    "optimise with the level of the frequencies",
+                )
+            )
+    weight = float(modes.thermochemistry["molecular_weight"][0])
+    if abs(weight - float(masses.sum())) > 2e-4:
+        found.append(
+            Doubt(
+                "printed-masses-differ",
+                "warning",
+                modes.thermochemistry["molecular_weight"][2],
+                f"the printed thermochemistry is for a mass of {weight} u, the modes are for {masses.sum():.4f} u",
+                "do not use the printed thermochemistry; isotopes were given to the frequency task only",
+            )
+        )
+    return found
+
+
+def _same_printed_level(text: Text, run: Task, own: State) -> bool:
+    """Tell, for HF and DFT, whether two tasks printed the same functional and basis set."""
+    names = run.names & own.task.names
+    if states.may_be_correlated(text, run) or own.energy.label not in ("HF", "DFT"):
+        return False
+    if (tasks.DFT if own.energy.label == "DFT" else tasks.SCF) not in names:
+        return False
+    mine = levels.printed_level(text, own.task, own.energy.at)
+    return mine == levels.printed_level(text, run, run.end)
+
+
+def _words(state: State) -> str:
+    return "/".join(part for part in (state.level.method, state.level.basis) if part)
+
+
+def _ghosts(text: Text, shape: Geometry, modes: Vibrations | None) -> list[Doubt]:
+    if not shape.ghosts:
+        return []
+    if modes is not None:
+        raise text.error(
+            shape.at,
+            "frequencies of a molecule with ghost atoms are not read",
+            mend="rerun the frequency task without ghost atoms",
+        )
+    return [
+        Doubt(
+            "ghost-atoms",
+            "warning",
+            shape.at,
+            "ghost atoms carry basis functions here: the energy is not that of the molecule's own basis",
+            "use it for counterpoise corrections only",
+        )
+    ]
+
+
+def _left_out(blocks: Blocks, all_tasks: list[Task], main: Task, shape: Geometry) -> list[Doubt]:
+    """Return a finding where another task is of other atoms."""
+    for task in all_tasks:
+        block = None if task is main else next(blocks.before(task.end), None)
+        if block is not None and not block.same_atoms(shape):
+            return [
+                Doubt(
+                    "other-molecule-left-out",
+                    "note",
+                    block.at,
+                    "a task of another molecule stands in this file; it is left out",
+                    "give each molecule a file of its own",
+                )
+            ]
+    return []

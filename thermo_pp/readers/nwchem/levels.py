@@ -1,0 +1,271 @@
+"""Level of theory of one NWChem energy, charge and multiplicity: what the module printed before it and after it."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+from thermo_pp.data.elements import SYMBOLS
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy
+from thermo_pp.readers.nwchem.geometry import Geometry
+from thermo_pp.readers.nwchem.tasks import Task
+from thermo_pp.readers.text import Text
+
+_NAMED = re.compile(r"(\S.*\S) Method XC (?:Potential|Functional)")
+_PART = re.compile(r"(\S.*\S) +(\d+\.\d+)(?: (?:local|non-local))?")
+_RANGE = re.compile(r"(Alpha|Beta|Gamma|Short-Range HF) *: *(\S+)")
+_PBE_X = "PerdewBurkeErnzerhof Exchange Functional"
+_PBE_C = {"Perdew 1991 LDA Correlation Functional": 1.0}
+_PBE_C |= {"PerdewBurkeErnz. Correlation Functional": 1.0}
+_BECKE, _LYP = "Becke 1988 Exchange Functional", "Lee-Yang-Parr Correlation Functional"
+_FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
+    ("HF", {"Hartree-Fock (Exact) Exchange": 1.0}),
+    (
+        "SVWN5",
+        {"Slater Exchange Functional": 1.0, "VWN V Correlation Functional": 1.0},
+    ),
+    ("BLYP", {_BECKE: 1.0, _LYP: 1.0}),
+    ("PBE", {_PBE_X: 1.0, **_PBE_C}),
+    ("PBE0", {"Hartree-Fock (Exact) Exchange": 0.25, _PBE_X: 0.75, **_PBE_C}),
+)
+"""Functionals that the program prints by their parts only."""
+_SUMMARY = b'Summary of "ao basis"'
+_ALPHA = re.compile(rb"alpha electrons =\s*(\d+)\s*\r?\n\s*beta  electrons =\s*(\d+)")
+_FROZEN = (
+    re.compile(rb"Frozen core +=\s*(\d+)"),
+    re.compile(rb"number of core +(\d+)"),
+    re.compile(rb"Alpha frozen cores :\s*(\d+)"),
+)
+_FROZEN_VIRTUALS = re.compile(
+    rb"(?:Frozen virtuals +=|frozen virtuals :|number of deleted )\s*(\d+)"
+)
+_DIRECT = re.compile(rb"Active occupied range: +(\d+) -")
+_RESOLVED = re.compile(rb"Nr\. of occupied MOs correlated: +(\d+)")
+_OCCUPIED = re.compile(rb"Total Occ: +(\d+\.\d+)")
+_CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
+"""Up to which atomic number an atom has how many core orbitals."""
+
+
+@dataclass(frozen=True)
+class Level:
+    """Level of theory of one energy, charge and multiplicity; `at`: field -> offset of the line that says so."""
+
+    method: str
+    basis: str | None
+    dispersion: str | None
+    solvent: str | None
+    grid: str | None
+    frozen_core: str | None
+    charge: int | None
+    multiplicity: int | None
+    at: dict[str, int]
+
+
+def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> Level:
+    """Return the level of theory of an energy of a task."""
+    at: dict[str, int] = {"method": energy.at}
+    before = text.part(task.start, energy.solution.at)
+    grid: str | None = None
+    dispersion: str | None = "none"
+    frozen: str | None = "none"
+    if energy.solution.label == "DFT":
+        method = _functional(before, at)
+        grid = _grid(before, at)
+        dispersion = _dispersion(before, energy, at)
+        if energy.at != energy.solution.at:
+            method += " + MP2"
+            frozen = _frozen(text, energy, geometry, at)
+    else:
+        method = energy.label
+        if energy.rank >= CORRELATED:
+            frozen = _frozen(text, energy, geometry, at)
+    charge, multiplicity = _state(before, energy.solution.label, at)
+    return Level(
+        method=method,
+        basis=_basis(before, geometry, at),
+        dispersion=dispersion,
+        solvent=_solvent(before, energy, at),
+        grid=grid,
+        frozen_core=frozen,
+        charge=charge,
+        multiplicity=multiplicity,
+        at=at,
+    )
+
+
+def printed_level(text: Text, task: Task, before: int) -> bytes:
+    """Return what a task printed last of its functional and basis set before an offset, to be compared."""
+    blocks = ((b"XC Information", b"Grid Information"), (_SUMMARY, b"\n\n"))
+    found = b""
+    for mark, closing in blocks:
+        place = text.data.rfind(mark, task.start, before)
+        if place >= 0:
+            found += text.data[place : text.data.find(closing, place, place + 8192)]
+    return found.replace(b"\r", b"")
+
+
+def _functional(before: Text, at: dict[str, int]) -> str:
+    """Return the name of the functional, or its parts where they have no name here."""
+    place = before.need_last(b"XC Information", lacking="no functional of the DFT module")
+    at["method"] = line = before.next_line(place, 2)
+    named = _NAMED.fullmatch(before.line(line).strip())
+    if named is not None:
+        return named.group(1).upper()
+    parts: dict[str, float] = {}
+    while match := _PART.fullmatch(before.line(line).strip()):
+        parts[match.group(1)] = float(match.group(2))
+        line = before.next_line(line)
+    if not parts:
+        raise before.expected(line, "a functional or its parts")
+    for name, known in _FUNCTIONALS:
+        if parts == known:
+            return name
+    text = " + ".join(f"{share:g} {part}" for part, share in parts.items())
+    following = before.find(b"Grid Information", line)
+    rest = before.data[line:following].decode("utf-8", "replace") if following >= 0 else ""
+    ranges = ", ".join(f"{name} {value}" for name, value in _RANGE.findall(rest))
+    return f"{text}; {ranges}" if ranges else text
+
+
+def _grid(before: Text, at: dict[str, int]) -> str | None:
+    mark = b"Grid used for XC integration:"
+    place = before.last(mark)
+    words = before.rest(place + len(mark)).split() if place >= 0 else []
+    if not words:
+        return None
+    at["grid"] = place
+    return words[0].decode("utf-8", "replace")
+
+
+def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str:
+    """Return the name of the correction; the program prints its part beside every energy that has one."""
+    full = energy.solution.full
+    data = before.data
+    place = data.find(b"Dispersion correction =", full, full + 700)
+    if place < 0:
+        exchange_hole = data.find(b"XDM dispersion energy", max(before.start, full - 2000), full)
+        if exchange_hole < 0:
+            return "none"
+        at["dispersion"] = exchange_hole
+        return "XDM"
+    at["dispersion"] = place
+    block = data.rfind(b"Dispersion Parameters", before.start, full)
+    if block < 0:
+        return "unknown dispersion correction"
+    at["dispersion"] = block
+    for mark, name in ((b"DFT-D3BJ Model", "D3(BJ)"), (b"DFT-D3 Model", "D3")):
+        if data.find(mark, block, block + 300) >= 0:
+            return name
+    return "D2"
+
+
+def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
+    full = energy.solution.full
+    if before.data.find(b"COSMO energy =", full, full + 700) < 0:
+        return "none"
+    at["solvent"] = before.data.find(b"COSMO energy =", full)
+    near = before.data[max(0, full - 1500) : full + 1500]
+    model = "SMD" if b"COSMO-SMD solvation results" in near else "COSMO"
+    mark = b"dielectric constant -eps-     ="
+    place = before.last(mark)
+    if place < 0:
+        return model
+    at["solvent"] = place
+    dielectric = float(before.exact_text(place + len(mark), "the dielectric constant"))
+    name = before.data.rfind(b"solvname_short:", before.start, place)
+    words = before.rest(name).split() if name >= 0 else []
+    solvent = f"{words[1].decode('utf-8', 'replace')}, " if len(words) == 2 else ""
+    return f"{model}({solvent}dielectric {dielectric:g})"
+
+
+def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) -> str | None:
+    """Return "none" or "frozen", with what is unusual about it; None where the file does not say."""
+    start, end = energy.solution.at, energy.end
+    count: int | None = None
+    for pattern in _FROZEN:
+        if match := pattern.search(text.data, start, end):
+            count, at["frozen_core"] = int(match.group(1)), match.start()
+            break
+    else:
+        if match := _DIRECT.search(text.data, start, end):
+            count, at["frozen_core"] = int(match.group(1)) - 1, match.start()
+        elif match := _RESOLVED.search(text.data, start, end):
+            occupied = _OCCUPIED.search(text.data, start, end)
+            if occupied is not None:
+                count = round(float(occupied.group(1)) / 2.0) - int(match.group(1))
+                at["frozen_core"] = match.start()
+    if count is None:
+        return None
+    virtuals = _FROZEN_VIRTUALS.search(text.data, start, end)
+    extra = ""
+    if virtuals is not None and int(virtuals.group(1)):
+        extra = f", {int(virtuals.group(1))} virtual orbitals too"
+    if count == 0:
+        return "none" + extra
+    cores = sum(next(n for last, n in _CORES if z <= last) for z in geometry.numbers)
+    return ("frozen" if count == cores else f"frozen: {count} orbitals") + extra
+
+
+def _state(before: Text, label: str, at: dict[str, int]) -> tuple[int | None, int | None]:
+    """Return charge and multiplicity, None where they are not printed."""
+    charge = multiplicity = None
+    place = before.last(b"Charge           :" if label == "DFT" else b" charge          =")
+    if place >= 0:
+        at["charge"] = place
+        charge = _whole(before, place, "the charge")
+    if label == "DFT":
+        place = before.last(b"Spin multiplicity:")
+        if place >= 0:
+            at["multiplicity"] = place
+            multiplicity = _whole(before, place, "the multiplicity")
+        return charge, multiplicity
+    if charge is None:
+        return None, None
+    window = max(before.start, place - 400), place
+    place = before.data.rfind(b"open shells     =", *window)
+    if place >= 0:
+        at["multiplicity"] = place
+        return charge, _whole(before, place, "the number of open shells") + 1
+    spins = _ALPHA.search(before.data, *window)
+    if spins is not None:
+        at["multiplicity"] = spins.start()
+        multiplicity = int(spins.group(1)) - int(spins.group(2)) + 1
+    return charge, multiplicity
+
+
+def _whole(before: Text, place: int, what: str) -> int:
+    """Return the whole number that follows the `:` or `=` of a line."""
+    line = before.rest(place)
+    value = float(before.exact_text(place + max(line.find(b":"), line.find(b"=")) + 1, what))
+    if value != int(value):
+        raise before.expected(place, f"{what}, a whole number")
+    return int(value)
+
+
+def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
+    """Return the library's name of the basis set, or the name by element; None where one has no name."""
+    place = before.last(_SUMMARY)
+    if place < 0:
+        place = before.data.rfind(_SUMMARY, 0, before.end)
+    if place < 0:
+        return None
+    heading = before.rest(place)
+    line = before.next_line(place, 4)
+    names: dict[str, str] = {}
+    polarised = False
+    while words := before.line(line).split():
+        everywhere = words[-3:] == ["on", "all", "atoms"]
+        polarised = polarised or everywhere or bool(set(words[-1]) & set("dfghi"))
+        names[words[0]] = " ".join(words[1:-3])
+        line = before.next_line(line)
+    if not names or any(name in ("", "user specified") for name in names.values()):
+        return None
+    at["basis"] = before.next_line(place, 4)
+    real = {tag: name for tag, name in names.items() if tag[:2].lower() != "bq"}
+    if len(set(real.values())) == 1:
+        text = next(iter(real.values()))
+    else:
+        symbols = dict(zip(geometry.tags, (SYMBOLS[z] for z in geometry.numbers), strict=True))
+        by_element = {(symbols.get(tag, tag), name) for tag, name in real.items()}
+        text = ", ".join(f"{symbol}: {name}" for symbol, name in sorted(by_element))
+    return f"{text} (cartesian)" if polarised and b"(cartesian)" in heading else text

@@ -1,0 +1,182 @@
+"""States of an NWChem output: one geometry with the energy that one task has there, and the best of several."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from thermo_pp.errors import ReadError
+from thermo_pp.readers.nwchem import energies, levels, tasks
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, Solution
+from thermo_pp.readers.nwchem.geometry import Blocks, Geometry, belongs
+from thermo_pp.readers.nwchem.levels import Level
+from thermo_pp.readers.nwchem.tasks import Task
+from thermo_pp.readers.nwchem.vibrations import Atoms
+from thermo_pp.readers.text import CUT_SHORT, Text
+
+_SUMMARY = b"\n@ "
+
+
+@dataclass(frozen=True, eq=False)
+class State:
+    """One geometry with the energy that one task has there, its level of theory, charge and multiplicity."""
+
+    task: Task
+    geometry: Geometry
+    energy: Energy
+    level: Level
+
+    def same(self, other: State) -> bool:
+        """Tell whether both are one molecule in one geometry, charge and multiplicity."""
+        mine, its = self.level, other.level
+        return (
+            self.geometry.same(other.geometry)
+            and mine.charge == its.charge
+            and mine.multiplicity == its.multiplicity
+        )
+
+
+def block_of(text: Text, blocks: Blocks, task: Task, table: Atoms) -> Geometry:
+    """Return the geometry block of a frequency task's atom table, which has more digits and the nuclear charges."""
+    for block in blocks.before(task.start):
+        if table.same(block):
+            return block
+    for block in blocks.before(table.at):
+        if table.same(block):
+            return block
+    raise text.error(
+        table.at,
+        "the atoms of this table are not those of any geometry block before it",
+        mend="an atom is lost or damaged here; rerun or re-copy the output",
+    )
+
+
+def reference(text: Text, task: Task, geometry: Geometry) -> State | None:
+    """Return the state of a frequency task at its own geometry, displaced ones left out.
+
+    None where the task computed no energy, its Hessian being that of an earlier one.
+    """
+    if not task.names & {tasks.SCF, tasks.DFT}:
+        return None
+    for solution in energies.solutions(text, task):
+        if _at(text, geometry, solution):
+            return _state(text, task, geometry, solution)
+    raise text.error(
+        task.headings[0][0],
+        "no energy of this frequency task belongs to the geometry of its modes",
+        mend=CUT_SHORT,
+    )
+
+
+def final(text: Text, blocks: Blocks, task: Task) -> State:
+    """Return the state that a task ended with: of an optimisation its last geometry.
+
+    Raises
+    ------
+    ReadError
+        No energy, one that did not converge, or one whose geometry is not in the file.
+    """
+    if task.failed is not None and task.kind != "optimisation":
+        raise text.error(
+            task.failed_at, f"the program says: {task.failed}", mend="mend the input and rerun it"
+        )
+    last = next(energies.solutions(text, task, backwards=True), None)
+    if last is None:
+        raise text.error(task.headings[0][0], "no energy in this task", mend=CUT_SHORT)
+    if task.kind == "optimisation":
+        geometry = next(blocks.before(task.end))
+        for solution in energies.solutions(text, task, backwards=True):
+            if _at(text, geometry, solution):
+                state = _state(text, task, geometry, solution)
+                _check_summary(text, state)
+                return state
+    else:
+        for geometry in blocks.before(last.at):
+            if _at(text, geometry, last):
+                return _state(text, task, geometry, last)
+    raise text.error(
+        last.at,
+        "no geometry before this energy has the nuclear repulsion printed with it"
+        if task.kind != "optimisation"
+        else "no energy of this optimisation belongs to its last geometry",
+        mend=CUT_SHORT,
+    )
+
+
+def _at(text: Text, geometry: Geometry, solution: Solution) -> bool:
+    if solution.repulsion_hartree is None:
+        return True
+    return belongs(text, geometry, solution.repulsion_hartree)
+
+
+def _state(text: Text, task: Task, geometry: Geometry, solution: Solution) -> State:
+    energy = energies.energy(text, task, solution)
+    return State(task, geometry, energy, levels.level(text, task, energy, geometry))
+
+
+def _check_summary(text: Text, state: State) -> None:
+    """Compare the energy with that of the optimisation's own last line of summary, eight decimals."""
+    place = text.data.rfind(_SUMMARY, state.task.start, state.task.end)
+    if place < 0:
+        return
+    printed = text.floats(place + len(_SUMMARY), 1, "the energy of the last step", skip=1)[0]
+    if abs(printed - state.energy.value_hartree) > 1.1e-8:
+        raise text.error(
+            place + 1,
+            f"the last step has the energy {printed:.8f}, but the last geometry "
+            f"{state.energy.value_hartree:.8f} (line {text.line_number(state.energy.at)})",
+            mend=CUT_SHORT,
+        )
+
+
+def best(
+    text: Text,
+    blocks: Blocks,
+    all_tasks: list[Task],
+    main: Task,
+    own: State | None,
+    geometry: Geometry,
+) -> tuple[State | None, list[tuple[Task, ReadError]]]:
+    """Return the state whose energy is taken, and the tasks that might have had a better one but failed.
+
+    See the docstring of the reader for the rule.
+    """
+    found = own
+    failed: list[tuple[Task, ReadError]] = []
+    for task in all_tasks:
+        later = task.start > main.start
+        if task is main or not (later or own is None or may_be_correlated(text, task)):
+            continue
+        try:
+            tasks.check_known(text, task)
+            state = reference(text, task, geometry) if task.kind == "frequencies" else None
+            state = state or final(text, blocks, task)
+        except ReadError as error:
+            failed.append((task, error))
+            continue
+        if found is None:
+            if state.geometry.same(geometry):
+                found = state
+        elif state.same(found) and _better(state, found, later or own is None):
+            found = state
+    return found, failed
+
+
+def _better(state: State, found: State, later: bool) -> bool:
+    if later:
+        return state.energy.rank >= found.energy.rank
+    return state.energy.rank > found.energy.rank and state.energy.rank >= CORRELATED
+
+
+def may_be_correlated(text: Text, task: Task) -> bool:
+    """Tell whether a task may have a correlated energy; told from its last solution's part of the text."""
+    if task.names & {tasks.MP2, tasks.RIMP2, tasks.TCE}:
+        return True
+    if tasks.SCF not in task.names or tasks.DFT in task.names:
+        return False
+    last: Iterator[Solution] = energies.solutions(text, task, backwards=True)
+    try:
+        solution = next(last, None)
+        return solution is not None and energies.energy(text, task, solution).rank >= CORRELATED
+    except ReadError:
+        return True

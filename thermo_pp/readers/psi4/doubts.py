@@ -1,0 +1,79 @@
+"""What is doubtful about a Psi4 output that is read all the same."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from thermo_pp.errors import Finding
+from thermo_pp.names import Severity
+from thermo_pp.readers.psi4 import levels
+from thermo_pp.readers.psi4.choice import Chosen
+from thermo_pp.readers.psi4.jobs import Evaluation
+from thermo_pp.readers.text import Text
+
+
+def findings(text: Text, chosen: Chosen) -> tuple[Finding, ...]:
+    """Return the findings about what was chosen of the file."""
+    found = [*_ghosts(text, chosen), *_unconverged(text, chosen), *_left_out(text, chosen)]
+    if chosen.analysis is not None:
+        found += _levels(text, chosen)
+    return tuple(found)
+
+
+def _finding(text: Text, severity: Severity, code: str, at: int, what: str, mend: str) -> Finding:
+    return Finding(code, severity, text.source.name, text.line_number(at), what, mend)
+
+
+def _ghosts(text: Text, chosen: Chosen) -> list[Finding]:
+    count = chosen.shape.ghosts
+    if not count:
+        return []
+    atoms = "ghost atom is" if count == 1 else "ghost atoms are"
+    what = f"{count} {atoms} left out: the energy has their basis functions too"
+    mend = "set it against energies of the same basis functions only"
+    return [_finding(text, "warning", "ghost-atoms", chosen.shape.table_at, what, mend)]
+
+
+def _unconverged(text: Text, chosen: Chosen) -> list[Finding]:
+    if chosen.run is None or chosen.run.converged:
+        return []
+    what = "the optimisation did not reach its thresholds"
+    mend = "optimise on from the last geometry, with more steps"
+    return [_finding(text, "warning", "optimisation-not-converged", chosen.run.at, what, mend)]
+
+
+def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
+    for one in chosen.tasks.real:
+        if not np.array_equal(chosen.tasks.shapes[one].numbers, chosen.shape.numbers):
+            what = "a task of another molecule stands in this file; it is left out"
+            mend = "give each molecule a file of its own"
+            return [_finding(text, "note", "other-molecule-left-out", one.start, what, mend)]
+    return []
+
+
+def _levels(text: Text, chosen: Chosen) -> list[Finding]:
+    """Compare the level of the modes with that of the energy and that of the optimisation."""
+    found: list[Finding] = []
+    modes = _words(text, chosen, chosen.base)
+    energy = levels.level(chosen.part, chosen.energy, chosen.shape.numbers)
+    mine = f"{energy.method}/{energy.basis}"
+    if mine != modes:
+        what = f"the modes are of {modes}, the energy of the same geometry is of {mine}"
+        mend = "nothing, if this is meant"
+        at = chosen.energy.at
+        found.append(_finding(text, "note", "modes-of-another-level", at, what, mend))
+    if chosen.run is not None and chosen.run.converged:
+        ended = _words(text, chosen, chosen.run.last)
+        if ended != modes:
+            what = f"the geometry was optimised with {ended}, the frequencies are of {modes}: "
+            what += "no stationary point of theirs"
+            mend = "optimise with the level of the frequencies"
+            code = "frequencies-of-another-level"
+            found.append(_finding(text, "warning", code, chosen.base.start, what, mend))
+    return found
+
+
+def _words(text: Text, chosen: Chosen, one: Evaluation) -> str:
+    part = text.part(one.start, one.end)
+    level = levels.level(part, levels.best_energy(part), chosen.shape.numbers)
+    return f"{level.method}/{level.basis}"

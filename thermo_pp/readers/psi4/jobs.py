@@ -1,0 +1,249 @@
+"""How a Psi4 output is divided: its end, its input, the geometries it evaluated, its optimisations.
+
+A geometry that finite differences displaced is marked as such and never chosen; of a series of
+finite differences only the first geometry, the undisplaced reference, counts.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.data.elements import NUMBERS
+from thermo_pp.errors import ReadError
+from thermo_pp.readers.text import CUT_SHORT, Text
+from thermo_pp.units import BOHR_ANGSTROM
+
+FloatArray = NDArray[np.float64]
+
+BANNER = b"An Open-Source Ab Initio Electronic Structure Package"
+
+MOST_ANGSTROM = 1e6
+"""No coordinate of a molecule is larger."""
+
+_END = re.compile(rb"^\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)", re.MULTILINE)
+_EXCEPTION = re.compile(
+    rb"^(?:PsiException|[\w.]*(?:Error|Exception)|[\w.]*exceptions\.\w+): *(\S[^\r\n]*)"
+    rb"|^Fatal Error: *(\S[^\r\n]*)",
+    re.MULTILINE,
+)
+_INPUT = re.compile(rb"==> Input (?:File|QCSchema) <==\s+(-{40,})\r?\n")
+_CALL = re.compile(
+    r"\b(energy|optimi[sz]e|opt|gradient|hessian|frequenc(?:y|ies)|freq|propert(?:y|ies)|prop)"
+    r"\s*\(\s*(?:name\s*=\s*)?(['\"])(.+?)\2"
+)
+_MODEL = re.compile(r"'model': \{[^}]*'method': '([^']+)'")
+_GEOMETRY = re.compile(
+    rb"Geometry \(in (Angstrom|Bohr)\), charge = (-?\d{1,3}), multiplicity = (\d{1,3}):"
+)
+_RUNNING = re.compile(rb"^  Running in \S+ symmetry", re.MULTILINE)
+_SYMBOL = re.compile(r"([A-Za-z]{1,2})(?:[\d_]\w*)?")
+_GHOST = re.compile(r"Gh\(|\(Gh\)")
+_SERIES = re.compile(
+    rb"^  (?:(Using finite-differences of)|Computing (?:gradient|second-derivative) from)",
+    re.MULTILINE,
+)
+_OPTIMISER = re.compile(
+    rb"OPTKING \d|Structure for next step:|(Final optimized geometry and variables:)|"
+    rb"(Could not converge geometry optimization)"
+)
+
+
+@dataclass(frozen=True)
+class Asked:
+    """What an input asks for: task and method as it writes them, lower case, and their line."""
+
+    task: str
+    method: str
+    at: int
+
+
+@dataclass(frozen=True)
+class Evaluation:
+    """One SCF and what followed it: a part of the file, and whether its geometry is displaced."""
+
+    start: int
+    end: int
+    displaced: bool
+
+
+@dataclass(frozen=True, eq=False)
+class Geometry:
+    """A printed geometry, in angstrom; `masses_u` is None where the table has no masses.
+
+    Ghost atoms are left out and counted in `ghosts`.
+    """
+
+    numbers: NDArray[np.int64]
+    positions_angstrom: FloatArray
+    masses_u: FloatArray | None
+    charge: int
+    multiplicity: int
+    ghosts: int
+    at: int
+    table_at: int
+
+    def same(self, other: Geometry) -> bool:
+        """Tell whether `other` is the same molecule in the same state, and in shape to 1e-5 A."""
+        if (self.charge, self.multiplicity) != (other.charge, other.multiplicity):
+            return False
+        if not np.array_equal(self.numbers, other.numbers):
+            return False
+        return bool(np.allclose(_distances(self), _distances(other), rtol=0.0, atol=1e-5))
+
+
+@dataclass(frozen=True)
+class Optimisation:
+    """One optimisation: whether it converged, its last evaluation, where its end is told."""
+
+    converged: bool
+    last: Evaluation
+    at: int
+
+
+def _distances(geometry: Geometry) -> FloatArray:
+    x = geometry.positions_angstrom
+    return np.asarray(np.linalg.norm(x[:, None, :] - x[None, :, :], axis=-1))
+
+
+def check_end(text: Text) -> None:
+    """Check that every run in the file ended normally.
+
+    Raises
+    ------
+    ReadError
+        No end, an end before the text's own end, or a job that ended in an error.
+    """
+    ends = list(_END.finditer(text.data, text.start, text.end))
+    if not ends or ends[-1].start() < text.last(BANNER):
+        raise text.error(
+            len(text.data.rstrip()),
+            "no normal end of the job (looked for '*** Psi4 exiting successfully')",
+            mend="the output is cut short here, or the job still runs; rerun or re-copy it",
+        )
+    before = text.start
+    for end in ends:
+        if end.group(1) == b"encountered an error":
+            raise _failure(text.part(before, end.start()))
+        before = end.end()
+
+
+def _failure(run: Text) -> ReadError:
+    """Return the error in which the run ended: the first reason that it printed."""
+    unfinished = run.find(b"** Wave function not converged to")
+    if unfinished >= 0:
+        what = "the coupled-cluster iterations did not converge"
+        return run.error(unfinished, what, mend="rerun with more iterations")
+    reason = _EXCEPTION.search(run.data, run.start, run.end)
+    if reason is None:
+        return run.error(run.end, "the job ended in an error", mend="mend the job and rerun it")
+    said = (reason.group(1) or reason.group(2)).decode("utf-8", "replace").strip()
+    what = f"the job ended in an error: {said[:200]}"
+    return run.error(reason.start(), what, mend="mend the job and rerun it")
+
+
+def inputs(text: Text) -> tuple[list[tuple[int, int]], tuple[Asked, ...]]:
+    """Return the parts of the file that repeat an input, and what these inputs ask for."""
+    parts: list[tuple[int, int]] = []
+    asked: list[Asked] = []
+    for match in _INPUT.finditer(text.data, text.start, text.end):
+        stop = text.data.find(b"\n" + match.group(1), match.end())
+        stop = text.end if stop < 0 else stop
+        parts.append((match.start(), stop))
+        at = match.end()
+        for line in text.data[match.end() : stop].split(b"\n"):
+            code = line.decode("utf-8", "replace").partition("#")[0].lower()
+            asked.extend(Asked(call.group(1), call.group(3), at) for call in _CALL.finditer(code))
+            asked.extend(Asked("energy", call.group(1), at) for call in _MODEL.finditer(code))
+            at += len(line) + 1
+    return parts, tuple(asked)
+
+
+def evaluations(text: Text, echoes: list[tuple[int, int]]) -> list[Evaluation]:
+    """Return every geometry at which an SCF was started, in the order of the file."""
+    starts = []
+    for running in _RUNNING.finditer(text.data, text.start, text.end):
+        at = text.last(b"Geometry (in ", running.start())
+        if at >= 0 and not any(a <= running.start() < b for a, b in echoes):
+            starts.append(at)
+    marks = [(match.start(), match.group(1)) for match in _SERIES.finditer(text.data)]
+    found, within, number, mark = [], False, 0, 0
+    for start, end in pairwise([*starts, text.end]):
+        while mark < len(marks) and marks[mark][0] < start:
+            within, number = marks[mark][1] is not None, 0
+            mark += 1
+        found.append(Evaluation(start, end, displaced=within and number > 0))
+        number += 1
+    return found
+
+
+def geometry(text: Text, start: int) -> Geometry:
+    """Return the geometry whose heading stands at `start`."""
+    heading = _GEOMETRY.match(text.data, start)
+    if heading is None:
+        raise text.expected(
+            start, "a heading 'Geometry (in Angstrom), charge = 0, multiplicity = 1:'"
+        )
+    factor = BOHR_ANGSTROM if heading.group(1) == b"Bohr" else 1.0
+    rule = text.need(b"------------", start, lacking="no table of the geometry")
+    line = table = text.next_line(rule)
+    numbers, rows, ghosts = [], [], 0
+    while text.rest(line).strip():
+        if _GHOST.search(text.line(line)):
+            ghosts += 1
+        else:
+            words = text.line(line).split()
+            symbol = _SYMBOL.fullmatch(words[0])
+            number = None if symbol is None else NUMBERS.get(symbol.group(1).capitalize())
+            if number is None or len(words) not in (4, 5):
+                raise text.expected(line, "an element, three coordinates and a mass")
+            numbers.append(number)
+            rows.append(text.floats(line, len(words) - 1, "coordinates and a mass", skip=1))
+        line = text.next_line(line)
+    if not rows or len({len(row) for row in rows}) != 1:
+        raise text.expected(line, "a table of the geometry")
+    table_array = np.array(rows)
+    if np.max(np.abs(table_array)) > MOST_ANGSTROM or np.any(table_array[:, 3:] <= 0.0):
+        raise text.error(table, "coordinates or masses out of all bounds", mend=CUT_SHORT)
+    return Geometry(
+        numbers=np.array(numbers, dtype=np.int64),
+        positions_angstrom=table_array[:, :3] * factor,
+        masses_u=table_array[:, 3] if table_array.shape[1] == 4 else None,
+        charge=int(heading.group(2)),
+        multiplicity=int(heading.group(3)),
+        ghosts=ghosts,
+        at=start,
+        table_at=table,
+    )
+
+
+def optimisations(text: Text, real: list[Evaluation]) -> list[Optimisation]:
+    """Return the optimisations of the file; `real` are its evaluations of its own geometries."""
+    found: list[Optimisation] = []
+    unfinished: int | None = None
+    for match in _OPTIMISER.finditer(text.data, text.start, text.end):
+        converged, failed = match.group(1) is not None, match.group(2) is not None
+        if not (converged or failed):
+            unfinished = match.start()
+        elif converged or unfinished is not None:
+            found.append(_optimisation(text, real, converged, match.start()))
+            unfinished = None
+    if unfinished is not None:
+        found.append(_optimisation(text, real, False, unfinished))
+    return found
+
+
+def _optimisation(text: Text, real: list[Evaluation], converged: bool, at: int) -> Optimisation:
+    before = [one for one in real if one.start < at]
+    if not before:
+        raise text.error(at, "an optimisation without a geometry before it", mend=CUT_SHORT)
+    return Optimisation(converged, before[-1], at)
+
+
+def steps_on(text: Text, start: int, end: int) -> bool:
+    """Tell whether an optimiser takes a step between `start` and `end`."""
+    return _OPTIMISER.search(text.data, start, end) is not None

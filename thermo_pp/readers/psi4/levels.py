@@ -1,0 +1,348 @@
+"""Level of theory and energies of one Psi4 evaluation, and which of its energies is the best one.
+
+An evaluation is one SCF with whatever followed it at the same geometry. Energies that are no
+method's own result (spin-component-scaled ones beside MP2, for instance) are left aside; an energy
+of a method that is not listed here is an error where that evaluation is wanted, never passed over
+for a lower one.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.readers.text import Text
+
+RANKS: dict[str, int] = {
+    "HF": 0,
+    "DFT": 0,
+    "MP2": 1,
+    "OMP2": 2,
+    "MP3": 3,
+    "MP4(SDQ)": 4,
+    "MP4(SDTQ)": 5,
+    "CCSD": 6,
+    "CCSD(T)": 7,
+    "CBS": 8,
+}
+"""The energies that are read, and which is the better one of one geometry."""
+CALLED: dict[str, str | None] = {
+    "scf": None,
+    "hf": None,
+    "dft": None,
+    "mp2": "MP2",
+    "omp2": "OMP2",
+    "mp3": "MP3",
+    "mp4(sdq)": "MP4(SDQ)",
+    "mp4": "MP4(SDTQ)",
+    "ccsd": "CCSD",
+    "ccsd(t)": "CCSD(T)",
+}
+"""What an input calls a method, and which energy must then be in the output; functionals beside."""
+
+_SCF = re.compile(rb"^[ \t]*@(?:DF-|CD-)?(?:R|U|RO|CU)(HF|KS) Final Energy:", re.MULTILINE)
+_FUNCTIONAL = re.compile(
+    rb"=> (?:Composite Functional: ([^\r\n]+?)|([^\r\n]+?) Composite Functional) <="
+)
+_STARRED = re.compile(rb"^[ \t]*\* (\S+) total energy\b", re.MULTILINE)
+_TABLED = re.compile(rb"^[ \t]*(?:DF-|CD-)?(\S+) Total Energy \(a\.u\.\)", re.MULTILINE)
+_ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
+"""First part of the labels of energies that are printed beside the wanted one."""
+_UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
+_INVENTED = "ANONYMOUS"
+_EXTRAPOLATED = b"==> CBS <=="
+_DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
+_DISPERSION = re.compile(rb": Empirical Dispersion <=\s+([^\r\n]*)")
+_GRIMME = re.compile(r"Grimme's -(\w+)(?: \((.*)\))? Dispersion Correction")
+_DAMPING = {
+    None: "",
+    "zero-damping": "",
+    "BJ-damping": "(BJ)",
+    "zero-damping, short-range refitted": "M",
+    "BJ-damping, short-range refitted": "M(BJ)",
+}
+_PCM_SOLVENT = re.compile(rb"^[ \t]*Solvent name\s*[:.=]+\s*([^\r\n]+)", re.MULTILINE)
+_CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
+"""Up to which atomic number an atom has how many core orbitals."""
+_FROZEN_COUNT = re.compile(rb"Number of frozen core orbitals:\s*(\d+)")
+_FROZEN_TABLE = re.compile(
+    rb"^[ \t]*(?:IRREP[ \t]+)?(?:# MOs[ \t]+)?(# FZDC|FC)[ \t]", re.MULTILINE
+)
+
+
+@dataclass(frozen=True)
+class Energy:
+    """One energy that a method printed: its label, its value in hartree, the offset of its line."""
+
+    label: str
+    value: float
+    at: int
+
+    @property
+    def rank(self) -> int:
+        """Place of the label in `RANKS`."""
+        return RANKS[self.label]
+
+
+@dataclass(frozen=True)
+class Level:
+    """Level of theory of one energy; `at` has the offset of the line that says so, by field."""
+
+    method: str
+    basis: str | None
+    dispersion: str | None
+    solvent: str | None
+    grid: str | None
+    frozen_core: str | None
+    at: dict[str, int]
+
+
+def best_energy(part: Text) -> Energy:
+    """Return the best energy of the evaluation `part`.
+
+    Raises
+    ------
+    ReadError
+        No energy, or one of a method that is not known here.
+    """
+    return max(energies(part), key=lambda energy: (energy.rank, energy.at))
+
+
+def energies(part: Text) -> list[Energy]:
+    """Return the energies of the evaluation `part`, the SCF's first."""
+    found = [_scf_energy(part)]
+    extrapolated = part.find(_EXTRAPOLATED)
+    if extrapolated >= 0:
+        at = part.need(b"  total ", extrapolated, lacking="no extrapolated energy")
+        return [Energy("CBS", part.number(at, "the extrapolated energy"), at)]
+    if found[0].label == "DFT":
+        return [_double_hybrid(part) or found[0]]
+    for pattern in (_STARRED, _TABLED):
+        for match in pattern.finditer(part.data, part.start, part.end):
+            label = match.group(1).decode("utf-8", "replace")
+            if label.split("-")[0] in _ASIDE:
+                continue
+            if label not in RANKS:
+                raise part.error(
+                    match.end(),
+                    f"an energy of the method {label!r}, which the Psi4 reader does not know",
+                    mend=f"energies of {', '.join(RANKS)} are read; give a file with one of them",
+                )
+            value = part.number(match.end(), f"the {label} energy")
+            found.append(Energy(label, value, match.end()))
+    for start in part.all(b"==> DF-MP2 Energies <=="):
+        at = part.need(b"Total Energy", start, lacking="no DF-MP2 total energy")
+        found.append(Energy("MP2", part.number(at + 12, "the DF-MP2 total energy"), at))
+    return found
+
+
+def unconverged(part: Text) -> int | None:
+    """Return where the evaluation `part` says that its SCF did not converge, None if nowhere."""
+    places = [part.find(mark) for mark in _UNCONVERGED]
+    return max(places) if max(places) >= 0 else None
+
+
+def is_printed(text: Text, label: str) -> bool:
+    """Tell whether an energy of the correlated method `label` stands anywhere in `text`."""
+    if label == "MP2" and text.find(b"==> DF-MP2 Energies <==") >= 0:
+        return True
+    wanted = label.encode()
+    return any(
+        match.group(1) == wanted
+        for pattern in (_STARRED, _TABLED)
+        for match in pattern.finditer(text.data, text.start, text.end)
+    )
+
+
+def is_extrapolated(text: Text) -> bool:
+    """Tell whether an energy extrapolated to the basis-set limit stands anywhere in `text`."""
+    return text.find(_EXTRAPOLATED) >= 0
+
+
+def is_functional(text: Text, method: str) -> bool:
+    """Tell whether `method`, as an input names it, is a density functional that was used."""
+    asked = re.sub(r"\W", "", method.upper())
+    for match in _FUNCTIONAL.finditer(text.data, text.start, text.end):
+        used = (match.group(1) or match.group(2)).decode("utf-8", "replace")
+        used = re.sub(r"\W", "", used.upper())
+        if used and (asked.startswith(used) or used.startswith(asked)):
+            return True
+    return False
+
+
+def _scf_energy(part: Text) -> Energy:
+    at = unconverged(part)
+    if at is not None:
+        raise part.error(
+            at,
+            "the SCF did not converge, so there is no energy",
+            mend="rerun with more iterations or another starting guess",
+        )
+    matches = list(_SCF.finditer(part.data, part.start, part.end))
+    if not matches:
+        raise part.error(
+            part.start,
+            "no final SCF energy for this geometry (looked for 'Final Energy:')",
+            mend="check in the output that the SCF ran to its end",
+        )
+    label = "DFT" if matches[-1].group(1) == b"KS" else "HF"
+    final = part.number(matches[-1].end(), "the final SCF energy")
+    at = part.find(b"    Total Energy =", matches[-1].end())
+    if at >= 0:
+        total = part.number(part.data.index(b"=", at), "the total SCF energy")
+        if abs(total - final) > 1e-8:
+            raise part.error(
+                at,
+                f"total energy {total!r} differs from the final energy {final!r} printed above it",
+                mend="the output is damaged here; rerun or re-copy it",
+            )
+    return Energy(label, final, matches[-1].end())
+
+
+def _double_hybrid(part: Text) -> Energy | None:
+    at = part.last(_DOUBLE_HYBRID)
+    if at >= 0:
+        value = part.number(at + len(_DOUBLE_HYBRID), "the double-hybrid energy")
+        return Energy("DFT", value, at)
+    hybrid = re.compile(rb"MP2 Hybrid\s*=\s*TRUE").search(part.data, part.start, part.end)
+    if hybrid is not None:
+        raise part.error(
+            hybrid.start(),
+            "a double-hybrid functional without its final energy "
+            f"(looked for {_DOUBLE_HYBRID.decode()!r})",
+            mend="check in the output that the MP2 part ran to its end",
+        )
+    return None
+
+
+def level(part: Text, energy: Energy, numbers: NDArray[np.int64]) -> Level:
+    """Return the level of theory of `energy`, one of the energies of the evaluation `part`."""
+    at = {"method": energy.at}
+    method, grid = energy.label, None
+    frozen: str | None = "none"
+    if energy.label == "DFT":
+        method, at["method"] = functional(part)
+        grid = _grid(part, at)
+    elif energy.label != "HF":
+        frozen = _frozen_core(part, numbers, at)
+    basis = None
+    primary = part.find(b"==> Primary Basis <==")
+    if energy.label == "CBS":
+        method, basis = _extrapolation(part)
+        at["basis"] = at["method"] = part.find(_EXTRAPOLATED)
+    elif primary >= 0:
+        at["basis"] = part.need(b"Basis Set:", primary, lacking="no name of the basis set")
+        basis = part.line(at["basis"]).partition(":")[2].strip() or None
+        if basis is not None and basis.startswith(_INVENTED):
+            at["basis"] = part.need(b"Blend:", primary, lacking="no names of the basis sets")
+            basis = part.line(at["basis"]).partition(":")[2].strip() or None
+    return Level(method, basis, _dispersion(part, at), _solvent(part, at), grid, frozen, at)
+
+
+def _extrapolation(part: Text) -> tuple[str, str]:
+    """Return methods and basis sets of an extrapolation's stages, without the reference's own."""
+    line = part.need(b"Stage ", part.find(_EXTRAPOLATED), lacking="no table of the stages")
+    line = part.next_line(line, 2)
+    stages: list[tuple[str, str]] = []
+    while b" / " in part.rest(line):
+        left, _, right = part.line(line).partition(" / ")
+        stages.append((" ".join(left.split()[1:]).upper(), right.split()[0]))
+        line = part.next_line(line)
+    if not stages:
+        raise part.expected(line, "stages of an extrapolation")
+    stages = stages[1:] or stages
+    method = " + ".join(method for method, _ in stages)
+    return f"{method}/CBS", " + ".join(basis for _, basis in stages)
+
+
+def functional(part: Text) -> tuple[str, int]:
+    """Return the name of the functional of the evaluation `part` and where it stands."""
+    match = _FUNCTIONAL.search(part.data, part.start, part.end)
+    if match is None:
+        raise part.error(
+            part.start,
+            "a DFT energy without the name of its functional (looked for 'Composite Functional')",
+            mend="check that this is a whole Psi4 output",
+        )
+    name = match.group(1) or match.group(2)
+    return name.decode("utf-8", "replace").upper(), match.start()
+
+
+def _dispersion(part: Text, at: dict[str, int]) -> str:
+    """Return the name of the dispersion correction; Psi4 prints a block wherever it uses one."""
+    match = _DISPERSION.search(part.data, part.start, part.end)
+    if match is not None:
+        at["dispersion"] = match.start(1)
+        text = match.group(1).decode("utf-8", "replace").strip()
+        known = _GRIMME.fullmatch(text)
+        if known is None or known.group(2) not in _DAMPING:
+            return text
+        return known.group(1) + _DAMPING[known.group(2)]
+    nonlocal_part = part.find(b"=> VV10 Non-Local Parameters <=")
+    if nonlocal_part >= 0:
+        at["dispersion"] = nonlocal_part
+        return "VV10"
+    return "none"
+
+
+def _solvent(part: Text, at: dict[str, int]) -> str:
+    """Return the solvent model; Psi4 prints the energy of a continuum wherever it uses one."""
+    place = part.find(b"PCM Polarization Energy")
+    if place < 0:
+        return "none"
+    at["solvent"] = place
+    name = _PCM_SOLVENT.search(part.data, part.start, part.end)
+    return "PCM" if name is None else f"PCM({name.group(1).decode('utf-8', 'replace').strip()})"
+
+
+def _grid(part: Text, at: dict[str, int]) -> str | None:
+    start = part.find(b"=> Molecular Quadrature <=")
+    if start < 0:
+        return None
+    at["grid"] = start
+    words = []
+    for mark in (b"Radial Points", b"Spherical Points"):
+        place = part.need(mark, start, lacking=f"no {mark.decode().lower()} of the grid")
+        words.append(part.number_text(place, "the number of grid points"))
+    place = part.find(b"Pruning Scheme", start)
+    pruning = part.line(place).partition("=")[2].strip().lower() if place >= 0 else ""
+    return f"({words[0]},{words[1]})" + (f" pruning {pruning}" if pruning else "")
+
+
+def _frozen_core(part: Text, numbers: NDArray[np.int64], at: dict[str, int]) -> str | None:
+    """Return "none", "frozen", or how many orbitals are frozen where that is not the usual core.
+
+    None where the file does not say. The usual core is the noble gas before each atom.
+    """
+    count = _frozen_orbitals(part, at)
+    if count is None or count == 0:
+        return None if count is None else "none"
+    usual = sum(next(core for last, core in _CORES if z <= last) for z in numbers)
+    return "frozen" if count == usual else f"frozen: {count} orbitals"
+
+
+def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
+    """Return how many orbitals are frozen; each of Psi4's correlation modules has its own table."""
+    counted = _FROZEN_COUNT.search(part.data, part.start, part.end)
+    if counted is not None:
+        at["frozen_core"] = counted.start()
+        return int(counted.group(1))
+    place = part.find(b"CLASS    FOCC")
+    if place >= 0:
+        at["frozen_core"] = place
+        return int(part.floats(part.next_line(place), 1, "a number of frozen orbitals", skip=1)[0])
+    table = _FROZEN_TABLE.search(part.data, part.start, part.end)
+    if table is None:
+        return None
+    at["frozen_core"] = table.start(1)
+    columns = part.line(table.start(1)).replace("# ", "#").split()
+    column = columns.index("FC" if table.group(1) == b"FC" else "#FZDC")
+    total = 0
+    line = part.next_line(table.start(1), 2)
+    while len(part.rest(line).split()) == len(columns):
+        total += int(part.floats(line, 1, "a number of frozen orbitals", skip=column)[0])
+        line = part.next_line(line)
+    return total

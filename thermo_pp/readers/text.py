@@ -1,0 +1,194 @@
+"""Text of an output with its line numbers: every search has a miss, every error a place.
+
+Searches run on the bytes of the file (fast), line numbers are counted only where they are asked
+for.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Mapping, Sequence
+
+import numpy as np
+
+from thermo_pp.errors import ReadError
+from thermo_pp.sources import Source
+
+CUT_SHORT = "the output is cut short or damaged here; rerun or re-copy it"
+_NUMBER = re.compile(rb"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][+-]?\d+)?")
+
+
+class Text:
+    """The bytes of one output, searched by marks; positions are byte offsets.
+
+    Parameters
+    ----------
+    source : Source
+    start, end : int
+        The part of the file that is searched, the whole unless given.
+    """
+
+    def __init__(self, source: Source, start: int = 0, end: int | None = None) -> None:
+        self.source = source
+        self.data = source.data
+        self.start = start
+        self.end = len(source.data) if end is None else end
+
+    def part(self, start: int, end: int | None = None) -> Text:
+        """Return the same text, searched from `start` to `end` only."""
+        return Text(self.source, start, self.end if end is None else end)
+
+    def find(self, mark: bytes, start: int | None = None) -> int:
+        """Return where `mark` first stands at or after `start`, -1 where it does not."""
+        return self.data.find(mark, self.start if start is None else start, self.end)
+
+    def last(self, mark: bytes, end: int | None = None) -> int:
+        """Return where `mark` last stands before `end`, -1 where it does not."""
+        return self.data.rfind(mark, self.start, self.end if end is None else end)
+
+    def all(self, mark: bytes) -> list[int]:
+        """Return every place at which `mark` stands."""
+        places, at = [], self.find(mark)
+        while at >= 0:
+            places.append(at)
+            at = self.find(mark, at + len(mark))
+        return places
+
+    def need(
+        self, mark: bytes, start: int | None = None, *, lacking: str, mend: str = CUT_SHORT
+    ) -> int:
+        """Return where `mark` first stands at or after `start`; ReadError `lacking` where it does not."""
+        at = self.find(mark, start)
+        if at < 0:
+            begin = self.start if start is None else start
+            raise self.error(
+                begin, f"{lacking} after this line (looked for {mark.decode()!r})", mend=mend
+            )
+        return at
+
+    def need_last(self, mark: bytes, *, lacking: str, mend: str = CUT_SHORT) -> int:
+        """Return where `mark` last stands; ReadError `lacking` where it does not."""
+        at = self.last(mark)
+        if at < 0:
+            raise self.error(self.end, f"{lacking} (looked for {mark.decode()!r})", mend=mend)
+        return at
+
+    def line_number(self, at: int) -> int:
+        """Return the 1-based line number of the byte offset `at`."""
+        return self.data.count(b"\n", 0, at) + 1
+
+    def line_numbers(self, places: Mapping[str, int]) -> dict[str, int]:
+        """Return the 1-based line number of each byte offset, the line ends counted once for all of them."""
+        numbers: dict[str, int] = {}
+        data = np.frombuffer(self.data, dtype=np.uint8)
+        line, counted = 1, 0
+        for name, at in sorted(places.items(), key=lambda item: item[1]):
+            while at - counted > 8192:  # in parts that fit the cache
+                stop = min(at, counted + 65536)
+                line += int(np.count_nonzero(data[counted:stop] == 10))
+                counted = stop
+            line += self.data.count(b"\n", counted, at)
+            counted = at
+            numbers[name] = line
+        return numbers
+
+    def line(self, at: int) -> str:
+        """Return the whole line in which the byte offset `at` lies, without its end."""
+        begin = self.data.rfind(b"\n", 0, at) + 1
+        stop = self.data.find(b"\n", at)
+        return (
+            self.data[begin : len(self.data) if stop < 0 else stop]
+            .decode("utf-8", "replace")
+            .rstrip("\r")
+        )
+
+    def next_line(self, at: int, skip: int = 1) -> int:
+        """Return the offset at which the line `skip` lines further begins; ReadError at the end of the file."""
+        for _ in range(skip):
+            stop = self.data.find(b"\n", at, self.end)
+            if stop < 0:
+                raise self.error(at, "the text ends here, more lines were expected", mend=CUT_SHORT)
+            at = stop + 1
+        return at
+
+    def blank_line(self, at: int) -> int:
+        """Return where the first empty line after `at` begins; the end of the part where there is none."""
+        stop = self.data.find(b"\n\n", at, self.end)
+        if stop < 0:
+            stop = self.data.find(b"\n\r\n", at, self.end)
+        return self.end if stop < 0 else stop + 1
+
+    def rest(self, at: int) -> bytes:
+        """Return the line's bytes from `at` on."""
+        stop = self.data.find(b"\n", at)
+        return self.data[at : len(self.data) if stop < 0 else stop]
+
+    def number(self, at: int, what: str) -> float:
+        """Return the first number on the line at or after `at`; ReadError where there is none."""
+        return float(self.number_text(at, what))
+
+    def number_text(self, at: int, what: str) -> str:
+        """Return the digits of the first number on the line at or after `at`, with `e` for the exponent."""
+        match = _NUMBER.search(self.rest(at))
+        if match is None:
+            raise self.expected(at, what)
+        return match.group().decode().lower().replace("d", "e")
+
+    def exact_text(self, at: int, what: str, suffix: bytes = b"") -> str:
+        """Return the first word of the line from `at` on, which must be a number; ReadError where it is not.
+
+        Unlike `number_text` this takes no later number for one that is damaged (stars, NaN). A `suffix` that sticks
+        to the number (a unit, a parenthesis) is left out.
+        """
+        words = self.rest(at).split(None, 1)
+        word = words[0].removesuffix(suffix) if words else b""
+        if _NUMBER.fullmatch(word) is None:
+            raise self.expected(at, what)
+        return word.decode().lower().replace("d", "e")
+
+    def floats(self, at: int, count: int, what: str, skip: int = 0) -> list[float]:
+        """Return `count` numbers of the line from `at` on after `skip` words; ReadError where they are not numbers."""
+        words = self.rest(at).split()[skip : skip + count]
+        try:
+            values = [float(word.replace(b"D", b"e").replace(b"d", b"e")) for word in words]
+        except ValueError:
+            raise self.expected(at, what) from None
+        if len(values) != count or not math.isfinite(sum(values)):
+            raise self.expected(at, what)
+        return values
+
+    def rows(self, at: int, counts: Sequence[int], what: str) -> tuple[list[float], int]:
+        """Return the numbers of the lines from `at` on, one after the other, and where the next begins.
+
+        Line i has `counts[i]` words; ReadError at the first line that has not, or not all of them numbers.
+        """
+        end, wanted = self.blank_line(at), sum(counts)
+        words = self.data[at:end].replace(b"D", b"e").split()
+        if len(words) != wanted:  # no blank line behind them
+            end = self.next_line(at, len(counts))
+            words = self.data[at:end].replace(b"D", b"e").split()
+        try:
+            values = list(map(float, words))
+        except ValueError:
+            values = [math.nan]
+        if len(words) == wanted and math.isfinite(sum(values)):
+            return values, end
+        for count in counts:
+            if len(self.rest(at).split()) != count:
+                raise self.expected(at, f"{what}, {count} words")
+            self.floats(at, count, what)
+            at = self.next_line(at)
+        raise self.expected(at, what)
+
+    def expected(self, at: int, what: str) -> ReadError:
+        """Return the error that `what` was expected on this line."""
+        return self.error(
+            at, f"expected {what}, found {self.line(at).strip()[:80]!r}", mend=CUT_SHORT
+        )
+
+    def error(self, at: int, what: str, *, mend: str) -> ReadError:
+        """Return the error `what` at the line of `at`."""
+        return ReadError(
+            what, where=f"{self.source.name}:{self.line_number(min(at, len(self.data)))}", mend=mend
+        )

@@ -1,0 +1,31 @@
+"""Species: what stands in a mechanism, computed from outputs or declared, and its H, S and G.
+
+From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes`` and ``electronic`` settle
+one structure; ``result`` is what is handed on, ``rows`` its tables; ``structure``, ``declared`` and
+``direct`` are the ways in, ``many`` the one for thousands of structures at once.
+"""
+
+from thermo_pp.species.declared import Declared, parse_composition
+from thermo_pp.species.direct import (
+    choice,
+    parse_imaginary,
+    solution_finding,
+    thermochemistry,
+)
+from thermo_pp.species.electronic import parse_levels
+from thermo_pp.species.result import SpeciesModel, Thermochemistry, low_mode_spread_kj_mol
+from thermo_pp.species.structure import Structure
+
+__all__ = [
+    "Declared",
+    "SpeciesModel",
+    "Structure",
+    "Thermochemistry",
+    "choice",
+    "low_mode_spread_kj_mol",
+    "parse_composition",
+    "parse_imaginary",
+    "parse_levels",
+    "solution_finding",
+    "thermochemistry",
+]

@@ -1,0 +1,220 @@
+"""Modes: how many a structure must have, which of them is a reaction coordinate, which are real."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.errors import Finding, StudyError
+from thermo_pp.formulas.normal_modes import normal_modes
+from thermo_pp.formulas.partition import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
+from thermo_pp.names import Kind
+from thermo_pp.records import Calculation
+from thermo_pp.species.ideal_gas import seal
+
+FloatArray = NDArray[np.float64]
+
+NOISE_CM = 100.0
+"""Only smaller imaginary modes are called noise in a message."""
+
+
+@dataclass(frozen=True, eq=False)
+class SortedModes:
+    """The modes of a structure, each with its part.
+
+    Attributes
+    ----------
+    kind : {"minimum", "saddle"}
+    wavenumbers_cm : shape (m,)
+        All of them, ascending, imaginary ones negative.
+    reaction_coordinate : shape (m,), bool
+        The one mode of a saddle point that enters nothing.
+    made_real : shape (m,), bool
+        Imaginary modes taken as real.
+    findings : tuple of Finding
+    """
+
+    kind: Kind
+    wavenumbers_cm: FloatArray
+    reaction_coordinate: NDArray[np.bool_]
+    made_real: NDArray[np.bool_]
+    findings: tuple[Finding, ...]
+
+    def __post_init__(self) -> None:
+        seal(self)
+
+    @property
+    def real_cm(self) -> FloatArray:
+        """The wavenumbers that enter H, S and G, all above 0."""
+        return np.abs(self.wavenumbers_cm[~self.reaction_coordinate])
+
+    @property
+    def imaginary_cm(self) -> float | None:
+        """The wavenumber of the reaction coordinate, negative; None for a minimum."""
+        found = self.wavenumbers_cm[self.reaction_coordinate]
+        return float(found[0]) if len(found) else None
+
+
+def place(calculation: Calculation, key: str) -> str:
+    """Return file and line of a field, the file alone where the line is not known."""
+    line = calculation.where.get(key)
+    return calculation.path if line is None else f"{calculation.path}:{line}"
+
+
+def wavenumbers(calculation: Calculation, masses_u: FloatArray, *, name: str) -> FloatArray:
+    """Return all wavenumbers with the given masses, ascending, imaginary ones negative.
+
+    Those of the output where the masses are the output's or there is no Hessian; the caller makes
+    sure that this is what the user wants.
+
+    Raises
+    ------
+    StudyError
+        No modes, or not 3N-6 (3N-5, 0) of them.
+    """
+    n, positions = len(calculation.numbers), calculation.positions_angstrom
+    found = calculation.wavenumbers_cm
+    hessian = calculation.hessian_hartree_bohr2
+    if hessian is not None and not (
+        found is not None and np.array_equal(masses_u, calculation.masses_u)
+    ):
+        found = normal_modes(hessian, masses_u, positions).wavenumbers_cm
+    if found is None:
+        if n == 1:
+            return np.empty(0)
+        raise StudyError(
+            f"{name}: the output has no vibrational modes",
+            where=calculation.path,
+            mend="name the output of a frequency job; a single point can stand beside it as energy",
+        )
+    kind = rotor_kind(masses_u, positions)
+    expected = {"atom": 0, "linear": 3 * n - 5, "nonlinear": 3 * n - 6}[kind]
+    if len(found) != expected:
+        what = f"{name}: {len(found)} modes where {_shape(kind, n)} has {expected}"
+        mend = "use a frequency job of the whole molecule"
+        if kind != "atom" and len(found) == 6 * n - 11 - expected:
+            width = distance_from_axis(masses_u, positions)
+            what += f"; its atoms lie up to {width:.3f} Å from the axis"
+            mend = (
+                f"optimise it more tightly: below {LINEAR_ANGSTROM} Å it counts as linear, and "
+                "modes and geometry must agree"
+            )
+        raise StudyError(what, where=place(calculation, "wavenumbers_cm"), mend=mend)
+    if np.any(found == 0.0):
+        raise StudyError(
+            f"{name}: a mode of 0 cm^-1, which has no finite entropy",
+            where=place(calculation, "wavenumbers_cm"),
+            mend="optimise more tightly and run the frequency job again",
+        )
+    return np.sort(found)
+
+
+def sort_modes(
+    calculation: Calculation,
+    wavenumbers_cm: FloatArray,
+    kind: Kind | None,
+    real_below_cm: float | None,
+    *,
+    name: str,
+) -> SortedModes:
+    """Decide which imaginary mode is the reaction coordinate and which are taken as real.
+
+    A minimum has no imaginary mode, a saddle point one: the largest. Any other stops the work,
+    unless it is smaller than `real_below_cm`. Where `kind` is None, one imaginary mode (not smaller
+    than that) means a saddle point, with a note.
+
+    Raises
+    ------
+    StudyError
+        Too many imaginary modes, or none at a saddle point; it names file, line and modes.
+    """
+    imaginary = wavenumbers_cm < 0.0
+    sizes = np.abs(wavenumbers_cm)
+    small = imaginary & (sizes < (real_below_cm or 0.0))
+    findings: list[Finding] = []
+    asked = kind
+    line = calculation.where.get("wavenumbers_cm")
+    if kind is None:
+        large = wavenumbers_cm[imaginary & ~small]
+        kind = "saddle" if len(large) == 1 else "minimum"
+        if kind == "saddle":
+            findings.append(
+                Finding(
+                    code="taken-as-saddle",
+                    severity="note",
+                    file=calculation.path,
+                    line=line,
+                    what=f"{name}: one imaginary mode ({_listed(large)} cm^-1), taken as a saddle "
+                    "point",
+                    mend='say kind="minimum" or kind="saddle"; a minimum must have none',
+                )
+            )
+    coordinate = np.zeros_like(imaginary)
+    if kind == "saddle":
+        if not np.any(imaginary):
+            raise StudyError(
+                f"{name} is used as a saddle point, but has no imaginary mode",
+                where=place(calculation, "wavenumbers_cm"),
+                mend="name the output of a saddle point, or use it as a minimum",
+            )
+        coordinate[int(np.argmin(wavenumbers_cm))] = True
+    extra = imaginary & ~coordinate
+    refused = extra & ~small
+    if np.any(refused):
+        raise _refusal(calculation, wavenumbers_cm, imaginary, refused, asked, real_below_cm, name)
+    if np.any(extra):
+        findings.append(
+            Finding(
+                code="imaginary-taken-as-real",
+                severity="warning",
+                file=calculation.path,
+                line=line,
+                what=f"{name}: imaginary modes of {_listed(wavenumbers_cm[extra])} cm^-1 taken as "
+                f"real (below {real_below_cm:g} cm^-1)",
+                mend="optimise more tightly, or with a finer grid, until they are gone",
+            )
+        )
+    return SortedModes(kind, wavenumbers_cm, coordinate, extra, tuple(findings))
+
+
+def _refusal(
+    calculation: Calculation,
+    wavenumbers_cm: FloatArray,
+    imaginary: NDArray[np.bool_],
+    refused: NDArray[np.bool_],
+    kind: Kind | None,
+    real_below_cm: float | None,
+    name: str,
+) -> StudyError:
+    """Return the error of imaginary modes that must not be there."""
+    count = int(np.sum(imaginary))
+    listed = _listed(wavenumbers_cm[imaginary])
+    modes = f"{count} imaginary mode{'' if count == 1 else 's'} ({listed} cm^-1)"
+    if kind == "saddle":
+        what = f"{name} is a saddle point with {modes}; it must have exactly one"
+        mend = "optimise it again along the smaller ones"
+    elif kind == "minimum":
+        what = f"{name} is a minimum with {modes}; it must have none"
+        mend = (
+            "displace it along them and optimise again; a saddle point stands in a step's through"
+        )
+    else:
+        what = f"{name} has {modes}; a minimum has none, a saddle point exactly one"
+        mend = "displace it along those that do not belong and optimise again"
+    if real_below_cm is not None:
+        what += f"; only those below {real_below_cm:g} cm^-1 may be taken as real"
+    largest = float(np.abs(wavenumbers_cm[refused]).max())
+    if largest < NOISE_CM:
+        real = f'imaginary = {{ real_below = "{int(largest) + 1} cm^-1" }}'
+        mend += f"; if they are numerical noise, take them as real: {real}"
+    return StudyError(what, where=place(calculation, "wavenumbers_cm"), mend=mend)
+
+
+def _listed(wavenumbers_cm: FloatArray) -> str:
+    return ", ".join(f"{value:.1f}" for value in wavenumbers_cm)
+
+
+def _shape(kind: str, n: int) -> str:
+    return "an atom" if kind == "atom" else f"a {kind} structure of {n} atoms"

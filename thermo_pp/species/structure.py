@@ -1,0 +1,339 @@
+"""Structure: one computed structure, checked once, and its H, S and G at any temperature."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections import Counter
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from thermo_pp.conditions import StandardState, Treatment
+from thermo_pp.data.elements import SYMBOLS
+from thermo_pp.errors import Finding, StudyError
+from thermo_pp.formulas.partition import (
+    NO_SPIN_WEIGHTS,
+    SPIN_WEIGHTS,
+    RigidRotor,
+    quantum_rotor_changes,
+    rigid_rotor,
+)
+from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
+from thermo_pp.names import Kind, LowModes, Origin
+from thermo_pp.records import Calculation
+from thermo_pp.species.electronic import electronic_energy, electronic_levels, settled_charge
+from thermo_pp.species.ideal_gas import IdealGas, shares, totals
+from thermo_pp.species.masses import chosen_masses, mass_findings
+from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
+from thermo_pp.species.result import Thermochemistry
+from thermo_pp.species.rows import mode_table, part_rows
+from thermo_pp.units import GAS_J_MOL_K, HARTREE_KJ_MOL
+
+FloatArray = NDArray[np.float64]
+
+SLOPE_DIFFERS_KJ_MOL = 0.5
+"""A soft-mode part of the slope enthalpy beyond this is a finding."""
+
+
+@dataclass(frozen=True, eq=False)
+class Structure:
+    """One structure of an output, with everything that does not depend on temperature settled.
+
+    Attributes
+    ----------
+    name : str
+    kind : {"minimum", "saddle"}
+    composition : mapping of str to int
+    charge, multiplicity : int
+        The multiplicity is None only where electronic levels are declared.
+    treatment : Treatment
+    calculation : Calculation
+        The frequency job.
+    energy_hartree : float
+        Of the frequency job, or of the single point given.
+    gas : IdealGas
+        The numbers that H, S and G are computed from.
+    modes : SortedModes
+    rotor : RigidRotor
+    symmetry : Symmetry
+        As found from the geometry, whatever is declared.
+    symmetry_number : int
+    symmetry_origin : {"derived", "declared"}
+    degeneracy : int
+        2 where both hands of a chiral structure are present.
+    files : tuple of str
+    findings : tuple of Finding
+    """
+
+    name: str
+    kind: Kind
+    composition: Mapping[str, int]
+    charge: int
+    multiplicity: int | None
+    treatment: Treatment
+    calculation: Calculation
+    energy_hartree: float
+    gas: IdealGas
+    modes: SortedModes
+    rotor: RigidRotor
+    symmetry: Symmetry
+    symmetry_number: int
+    symmetry_origin: Origin
+    degeneracy: int
+    files: tuple[str, ...]
+    findings: tuple[Finding, ...] = field(default=())
+
+    @property
+    def imaginary_cm(self) -> float | None:
+        """Wavenumber of a saddle point's reaction coordinate, negative; None for a minimum."""
+        return self.modes.imaginary_cm
+
+    @classmethod
+    def make(
+        cls,
+        calculation: Calculation,
+        treatment: Treatment,
+        *,
+        name: str,
+        kind: Kind | None = None,
+        energy: Calculation | None = None,
+        charge: int | None = None,
+        multiplicity: int | None = None,
+        levels: Sequence[Sequence[Any]] | None = None,
+        symmetry_number: int | None = None,
+        isotopes: Mapping[Any, str] | None = None,
+        where: str = "",
+    ) -> Structure:
+        """Check one calculation and settle its masses, modes, rotor, symmetry and levels.
+
+        Parameters
+        ----------
+        calculation : Calculation
+            A frequency job; of a single atom any job.
+        treatment : Treatment
+        name : str
+        kind : {"minimum", "saddle"} or None
+            None: one imaginary mode means saddle, with a note.
+        energy : Calculation or None
+            A single point whose energy is taken; that it is the same structure is checked by the
+            pairing, here only that it has the same atoms.
+        charge, multiplicity : int or None
+            Where the output does not say.
+        levels : sequence of (degeneracy, energy) or None
+            Electronic levels, cm^-1 or a text with a unit, the lowest at 0; they replace the
+            multiplicity.
+        symmetry_number : int or None
+            In place of the one found.
+        isotopes : mapping or None
+            Atom number (from 1) or element -> isotope.
+        where : str
+            File and key of the study, or option, for messages.
+
+        Returns
+        -------
+        Structure
+
+        Raises
+        ------
+        StudyError
+            No energy, no modes or a wrong number of them, imaginary modes that must not be there,
+            charge or multiplicity unknown or impossible, isotopes without a Hessian.
+        """
+        where = where or calculation.path
+        own_charge = settled_charge(calculation, charge, name, where)
+        own_levels, spin, notes = electronic_levels(
+            calculation, own_charge, multiplicity, levels, name, where
+        )
+        masses = chosen_masses(calculation, treatment.masses, isotopes, where=where)
+        notes += mass_findings(calculation, masses, isotopes, name, where)
+        found = wavenumbers(calculation, masses, name=name)
+        modes = sort_modes(calculation, found, kind, treatment.real_below_cm, name=name)
+        symmetry = rotational_symmetry(calculation.numbers, calculation.positions_angstrom, masses)
+        sigma = symmetry.order
+        if symmetry_number is not None:
+            if symmetry_number < 1:
+                raise StudyError(
+                    f"{name}: symmetry number {symmetry_number} is below 1",
+                    where=where,
+                    mend="give the order of the rotation group, 1 or more",
+                )
+            sigma = symmetry_number
+        rotor = rigid_rotor(masses, calculation.positions_angstrom, sigma)
+        if treatment.rotor == "auto":
+            rotor = dataclasses.replace(rotor, spin_weights=_spin_weights(calculation, masses))
+            rotor = dataclasses.replace(rotor, quantum=quantum_rotor_changes(rotor))
+        hands = 2 if symmetry.chiral and not treatment.enantiopure else 1
+        if isotopes is None:
+            notes += _symmetry_findings(calculation, symmetry, sigma, name)
+        return cls(
+            name=name,
+            kind=modes.kind,
+            composition=dict(Counter(SYMBOLS[z] for z in calculation.numbers)),
+            charge=own_charge,
+            multiplicity=spin,
+            treatment=treatment,
+            calculation=calculation,
+            energy_hartree=electronic_energy(calculation, energy, name),
+            gas=IdealGas(
+                mass_u=float(masses.sum()),
+                rotor=rotor.kind,
+                theta_k=np.array(rotor.theta_k),
+                symmetry_number=sigma,
+                quantum_rotor=rotor.quantum,
+                wavenumbers_cm=modes.real_cm,
+                degeneracies=np.array([level[0] for level in own_levels], dtype=np.float64),
+                levels_cm=np.array([level[1] for level in own_levels]),
+                hands=hands,
+                spin_weights=rotor.spin_weights,
+            ),
+            modes=modes,
+            rotor=rotor,
+            symmetry=symmetry,
+            symmetry_number=sigma,
+            symmetry_origin="derived" if symmetry_number is None else "declared",
+            degeneracy=hands,
+            files=(calculation.path,) if energy is None else (calculation.path, energy.path),
+            findings=(*notes, *modes.findings),
+        )
+
+    def at(
+        self,
+        temperature_k: ArrayLike,
+        *,
+        low_modes: LowModes | None = None,
+        standard_state: StandardState | None = None,
+    ) -> Thermochemistry:
+        """Return H, S and G at the temperatures.
+
+        Parameters
+        ----------
+        temperature_k : shape (t,) or ()
+            K, above 0.
+        low_modes, standard_state
+            In place of the treatment's own.
+
+        Returns
+        -------
+        Thermochemistry
+            Arrays of shape (t,); of shape (1,) for one temperature.
+        """
+        t = np.atleast_1d(np.asarray(temperature_k, dtype=np.float64))
+        used = low_modes or self.treatment.low_modes
+        state = standard_state or self.treatment.standard_state
+        part = shares(t, self.gas, self.treatment, used)
+        total = totals(part)
+        electronic_j_mol = 1000.0 * self.energy_hartree * HARTREE_KJ_MOL
+        log_ratio = state.log_ratio_to_bar(t)
+        enthalpy = electronic_j_mol + total.enthalpy_j_mol
+        entropy = total.entropy_j_mol_k - GAS_J_MOL_K * log_ratio
+        slope = enthalpy + total.slope_excess_j_mol - GAS_J_MOL_K * t * state.log_ratio_slope
+        return Thermochemistry(
+            name=self.name,
+            temperature_k=t,
+            electronic_kj_mol=electronic_j_mol / 1000.0,
+            zero_point_kj_mol=float(total.zero_point_j_mol) / 1000.0,
+            enthalpy_kj_mol=enthalpy / 1000.0,
+            entropy_j_mol_k=entropy,
+            gibbs_kj_mol=(enthalpy - t * entropy) / 1000.0,
+            heat_capacity_j_mol_k=total.heat_capacity_j_mol_k,
+            slope_enthalpy_kj_mol=slope / 1000.0,
+            low_modes=used,
+            standard_state=state,
+            symmetry_number=self.symmetry_number,
+            symmetry_origin=self.symmetry_origin,
+            rotor=self.rotor.kind,
+            degeneracy=self.degeneracy,
+            findings=(*self.findings, *self._findings_at(t, total.slope_excess_j_mol, used)),
+            rows=part_rows(t, part, self.gas, self.treatment, used, state),
+            mode_table=mode_table(part, self.modes, self.treatment, used),
+        )
+
+    def _findings_at(
+        self, t: FloatArray, slope_excess_j_mol: FloatArray, low_modes: LowModes
+    ) -> tuple[Finding, ...]:
+        """Return the findings that depend on temperature."""
+        found = []
+        worst = int(np.argmax(np.abs(slope_excess_j_mol))) if t.size else 0
+        if t.size and abs(slope_excess_j_mol.flat[worst]) > 1000.0 * SLOPE_DIFFERS_KJ_MOL:
+            found.append(
+                Finding(
+                    code="slope-differs",
+                    severity="note",
+                    file=self.calculation.path,
+                    line=None,
+                    what=f"{self.name}: -T² d(G/T)/dT differs from H by "
+                    f"{slope_excess_j_mol.flat[worst] / 1000.0:.2f} kJ/mol at {t.flat[worst]:g} K, "
+                    f"because {low_modes} takes S of soft modes from rotors, H from oscillators",
+                    mend='low_modes = "rotor-enthalpy" treats both alike; apparent quantities take '
+                    "the slope of G in any case",
+                )
+            )
+        hottest = max(self.rotor.theta_k, default=0.0)
+        if (
+            t.size
+            and t.min() < hottest
+            and not (self.rotor.kind == "linear" and self.rotor.quantum)
+        ):
+            found.append(
+                Finding(
+                    code="rotor-too-cold",
+                    severity="warning",
+                    file=self.calculation.path,
+                    line=None,
+                    what=f"{self.name}: {t.min():g} K is below its rotational temperature of "
+                    f"{hottest:.1f} K, where a classical rotor is a poor one",
+                    mend="leave out the lowest temperatures",
+                )
+            )
+        return tuple(found)
+
+
+def _spin_weights(calculation: Calculation, masses: FloatArray) -> tuple[float, float]:
+    """Return the weights of even and odd rotational levels: of H2, D2 and T2 not the same."""
+    like = list(calculation.numbers) == [1, 1] and round(masses[0]) == round(masses[1])
+    return SPIN_WEIGHTS.get(round(masses[0]), NO_SPIN_WEIGHTS) if like else NO_SPIN_WEIGHTS
+
+
+def _symmetry_findings(
+    calculation: Calculation, symmetry: Symmetry, sigma: int, name: str
+) -> tuple[Finding, ...]:
+    """Compare with the printed symmetry number; say where the tolerance decides."""
+    notes = []
+    printed = calculation.printed.get("symmetry_number")
+    if printed is not None and round(printed.value) != sigma:
+        off = round(printed.value) == 1
+        notes.append(
+            Finding(
+                code="symmetry-differs",
+                severity="note" if off else "warning",
+                file=calculation.path,
+                line=printed.line,
+                what=f"{name}: the program used symmetry number {printed.text}, here it is {sigma}",
+                mend="nothing, where symmetry was off in the program"
+                if off
+                else "check the geometry; declare symmetry_number where the program is right",
+            )
+        )
+    tolerance = symmetry.tolerance_angstrom
+    near = [
+        at
+        for at in (symmetry.changes_at_angstrom, symmetry.mirror_at_angstrom)
+        if at is not None and tolerance < at <= 2.0 * tolerance
+    ]
+    if near:
+        notes.append(
+            Finding(
+                code="symmetry-borderline",
+                severity="note",
+                file=calculation.path,
+                line=calculation.where.get("positions_angstrom"),
+                what=f"{name}: symmetry number {symmetry.order}"
+                f"{', chiral' if symmetry.chiral else ''} within {tolerance:g} Å, another one from "
+                f"{min(near):.3f} Å",
+                mend="optimise more tightly, or declare symmetry_number",
+            )
+        )
+    return tuple(notes)

@@ -1,0 +1,354 @@
+"""The keys of the study file: one model, from which schema, docs and every check follow."""
+
+from __future__ import annotations
+
+from typing import Annotated, Any, Literal
+
+import msgspec
+from msgspec import UNSET, Meta, UnsetType
+
+from thermo_pp.names import (
+    DEFAULT_LOW_MODES,
+    DEFAULT_ONSET_CM,
+    DEFAULT_STANDARD_STATE,
+    LowModes,
+    Masses,
+    Phase,
+    Rotor,
+)
+
+Quantity = str | float
+"""A text of one number and its unit; a bare number is in the unit that the docs name."""
+
+
+Positive = Annotated[float, Meta(gt=0.0)]
+Whole = Annotated[int, Meta(ge=1)]
+Levels = Annotated[list[tuple[Whole, Quantity]], Meta(min_length=1)]
+Pairs = Annotated[list[tuple[Quantity, Quantity]], Meta(min_length=1)]
+
+
+class Keys(msgspec.Struct, frozen=True, forbid_unknown_fields=True):
+    """A table of the file: unknown keys are refused."""
+
+
+class RealBelowKeys(Keys, frozen=True, kw_only=True):
+    """What is done with a small imaginary mode."""
+
+    real_below: Annotated[
+        Quantity, Meta(description="imaginary modes smaller than this are taken as real / cm^-1")
+    ]
+
+
+Imaginary = Literal["refuse"] | RealBelowKeys
+
+
+class TreatmentKeys(Keys, frozen=True, kw_only=True):
+    """How a structure becomes H, S and G."""
+
+    standard_state: Annotated[
+        str, Meta(description='a pressure or a concentration: "1 bar", "1 atm", "1 mol/L"')
+    ] = DEFAULT_STANDARD_STATE
+    phase: Annotated[Phase, Meta(description='"gas" or "solution"')] = "gas"
+    low_modes: Annotated[
+        LowModes,
+        Meta(
+            description='soft modes: "harmonic", "raised", "rotor-entropy" or "rotor-enthalpy"',
+        ),
+    ] = DEFAULT_LOW_MODES
+    onset: Annotated[
+        Quantity, Meta(description="where the treatment of soft modes sets in / cm^-1")
+    ] = f"{DEFAULT_ONSET_CM:g} cm^-1"
+    rotor: Annotated[
+        Rotor,
+        Meta(
+            description='"auto": quantum rotor where that changes G by more than 0.01 kJ/mol; '
+            '"classical": never'
+        ),
+    ] = "auto"
+    masses: Annotated[
+        Masses, Meta(description='"program": those the calculation used; "average": of the element')
+    ] = "program"
+    imaginary: Annotated[
+        Imaginary,
+        Meta(
+            description="imaginary modes that should not be there: refused, or "
+            '`{ real_below = "30 cm^-1" }` takes smaller ones as real'
+        ),
+    ] = "refuse"
+    frequency_scale: Annotated[
+        Positive, Meta(description="factor of the wavenumbers in thermal terms")
+    ] = 1.0
+    zero_point_scale: Annotated[
+        Positive | UnsetType,
+        Meta(
+            description="factor of the wavenumbers in the zero-point energy; "
+            "the same as `frequency_scale` unless given",
+        ),
+    ] = UNSET
+    enantiopure: Annotated[
+        bool, Meta(description="true: only one hand of every chiral structure is present")
+    ] = False
+
+
+class RangeKeys(Keys, frozen=True, kw_only=True, rename={"from_": "from"}):
+    """A range of temperatures."""
+
+    from_: Annotated[Quantity, Meta(description="first temperature / K")]
+    to: Annotated[Quantity, Meta(description="last temperature, included / K")]
+    step: Annotated[
+        Quantity, Meta(description="width, which must divide the range; kelvin only / K")
+    ]
+
+
+Temperatures = Annotated[list[Quantity], Meta(min_length=1)] | RangeKeys
+
+
+class ConditionsKeys(Keys, frozen=True, kw_only=True):
+    """Temperatures, and what is held constant."""
+
+    temperatures: Annotated[
+        Temperatures | UnsetType,
+        Meta(
+            description="a list, its order kept, each once, or a range `{ from, to, step }`; "
+            "required unless the command line gives temperatures / K"
+        ),
+    ] = UNSET
+    held: Annotated[
+        dict[str, str],
+        Meta(
+            description="species -> free concentration that stays constant: a concentration, "
+            'a partial pressure (gas only), or "equilibrium" with those held at stated values'
+        ),
+    ] = {}
+    driven: Annotated[
+        bool, Meta(description="true: held species may be out of balance with each other")
+    ] = False
+
+
+class SpeciesKeys(Keys, frozen=True, kw_only=True):
+    """One species, saddle points included: read from outputs, or declared."""
+
+    frequencies: Annotated[
+        str | UnsetType,
+        Meta(description="output of the frequency job; a species has this or `composition`"),
+    ] = UNSET
+    energy: Annotated[
+        str | UnsetType,
+        Meta(
+            description="output of a single point at the same geometry, whose energy is used; "
+            "the frequency job's own energy unless given"
+        ),
+    ] = UNSET
+    charge: Annotated[
+        int | UnsetType, Meta(description="charge, where the output does not say it")
+    ] = UNSET
+    multiplicity: Annotated[
+        Whole | UnsetType,
+        Meta(description="spin multiplicity, where the output does not say it"),
+    ] = UNSET
+    levels: Annotated[
+        Levels | UnsetType,
+        Meta(
+            description="electronic levels in place of the multiplicity, "
+            '`[[5, "0 cm^-1"], [3, "158.265 cm^-1"]]` (degeneracy, energy / cm^-1)',
+        ),
+    ] = UNSET
+    symmetry_number: Annotated[
+        Whole | UnsetType,
+        Meta(description="rotational symmetry number; found from the geometry unless given"),
+    ] = UNSET
+    isotopes: Annotated[
+        dict[str, str] | UnsetType,
+        Meta(
+            description="atom (counted from 1, in the order of the output) or element -> isotope: "
+            '`{ 3 = "D", C = "13C" }`; needs a Hessian'
+        ),
+    ] = UNSET
+    imaginary: Annotated[
+        Imaginary | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
+    ] = UNSET
+    standard_state: Annotated[
+        str | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
+    ] = UNSET
+    composition: Annotated[
+        str | UnsetType,
+        Meta(
+            description="formula of a declared species, its charge at the end: "
+            '"H2SO4", "H3O+", "SO4^2-"'
+        ),
+    ] = UNSET
+    enthalpy: Annotated[
+        Quantity | UnsetType,
+        Meta(description="enthalpy of a declared species, required for one / kJ/mol"),
+    ] = UNSET
+    entropy: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="entropy of a declared species at its standard state, required for one; "
+            "may be negative / J/mol/K"
+        ),
+    ] = UNSET
+    heat_capacity: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="heat capacity of a declared species; without it enthalpy and entropy are "
+            "constant in temperature / J/mol/K"
+        ),
+    ] = UNSET
+    temperature: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="where enthalpy and entropy of a declared species hold, 298.15 K unless "
+            "given; matters only with `heat_capacity` / K"
+        ),
+    ] = UNSET
+    relative_to: Annotated[
+        dict[str, int] | UnsetType,
+        Meta(
+            description="`{ A = 1, W = 1 }`: enthalpy, entropy and heat capacity of a declared "
+            "species are differences from this sum; required beside species that are read"
+        ),
+    ] = UNSET
+
+
+class ArrheniusKeys(Keys, frozen=True, kw_only=True):
+    """A declared rate constant that depends on temperature: k = A (T/298.15 K)^n exp(-E/RT)."""
+
+    A: Annotated[str, Meta(description="factor, in the unit of the rate constant")]
+    n: Annotated[float, Meta(description="power of T/298.15 K")] = 0.0
+    E: Annotated[Quantity, Meta(description="energy, may be negative / kJ/mol")]
+
+
+class StepKeys(Keys, frozen=True, kw_only=True):
+    """One reversible step, with exactly one of `through`, `barrier`, `rate` and `arrhenius`."""
+
+    equation: Annotated[
+        str, Meta(description='what becomes what, `"SO3 + 2 W = C2"`, spaces around + and counts')
+    ]
+    through: Annotated[
+        str | UnsetType, Meta(description="the saddle point, a species of this file")
+    ] = UNSET
+    barrier: Annotated[
+        Literal["none"] | UnsetType,
+        Meta(description='"none": the rate is the collision or diffusion limit of two molecules'),
+    ] = UNSET
+    rate: Annotated[
+        str | UnsetType,
+        Meta(
+            description="forward rate constant, the same at all temperatures, in the unit that the "
+            'left side asks for: "1e9 L/mol/s", "1e-11 cm^3/s", "5 s^-1"'
+        ),
+    ] = UNSET
+    arrhenius: Annotated[
+        ArrheniusKeys | UnsetType,
+        Meta(
+            description="forward rate constant A (T/298.15 K)^n exp(-E/RT): "
+            '`{ A = "1e11 L/mol/s", n = 0.5, E = "-2 kJ/mol" }`'
+        ),
+    ] = UNSET
+    viscosity: Annotated[
+        Quantity | Pairs | UnsetType,
+        Meta(
+            description='viscosity for the diffusion limit in solution: "0.89 mPa s", or pairs of '
+            "temperature and viscosity / Pa s",
+        ),
+    ] = UNSET
+    tunnelling: Annotated[Literal["none"], Meta(description='"none": no tunnelling')] = "none"
+
+
+class EffectiveKeys(Keys, frozen=True, kw_only=True):
+    """The question: from which species to which."""
+
+    reactant: Annotated[
+        str | UnsetType, Meta(description="whose loss is asked for; this or `catalyst`")
+    ] = UNSET
+    catalyst: Annotated[
+        str | UnsetType, Meta(description="whose turnover frequency is asked for")
+    ] = UNSET
+    product: Annotated[
+        str | Annotated[list[str], Meta(min_length=1)],
+        Meta(description="what is made: one species, or a list"),
+    ]
+
+
+class PathKeys(Keys, frozen=True, kw_only=True):
+    """A path of the profile; without any, paths are found from the steps."""
+
+    name: Annotated[str, Meta(min_length=1, description="name of the path")]
+    steps: Annotated[
+        list[int],
+        Meta(
+            min_length=1,
+            description="its steps, counted from 1, in their order; each is run in the direction "
+            "that goes on, a negative number backward",
+        ),
+    ]
+
+
+def _one_of(*names: str, also: tuple[str, ...] = ()) -> dict[str, Any]:
+    """Return the schema of "exactly one of these keys", with `also` beside all but the first."""
+    return {"oneOf": [{"required": [name, *(also if k else ())]} for k, name in enumerate(names)]}
+
+
+_SpeciesTable = Annotated[
+    SpeciesKeys,
+    Meta(
+        extra_json_schema=_one_of("frequencies", "composition", also=("enthalpy", "entropy")),
+    ),
+]
+_StepTable = Annotated[
+    StepKeys, Meta(extra_json_schema=_one_of("through", "barrier", "rate", "arrhenius"))
+]
+_EffectiveTable = Annotated[EffectiveKeys, Meta(extra_json_schema=_one_of("reactant", "catalyst"))]
+
+
+class StudyKeys(Keys, frozen=True, kw_only=True):
+    """The whole file."""
+
+    title: Annotated[
+        str | UnsetType, Meta(description="stands over every table; the file's name unless given")
+    ] = UNSET
+    outputs: Annotated[
+        str,
+        Meta(description="folder of the outputs, from the study's own; files are named from it"),
+    ] = "."
+    treatment: TreatmentKeys = TreatmentKeys()
+    conditions: ConditionsKeys = ConditionsKeys()
+    species: Annotated[
+        dict[str, _SpeciesTable], Meta(description="a table `[species.NAME]` for every species")
+    ]
+    steps: Annotated[
+        list[_StepTable], Meta(min_length=1, description="a table `[[steps]]` for every step")
+    ]
+    effective: _EffectiveTable | UnsetType = UNSET
+    paths: Annotated[
+        list[PathKeys], Meta(description="a table `[[paths]]` for every declared path")
+    ] = []
+
+
+NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
+    ("species", "conformers"): (
+        "several conformers of a species are not taken yet",
+        'name one structure: frequencies = "..." and, if need be, energy = "..."',
+    ),
+    ("steps", "tunnelling"): (
+        'tunnelling other than "none" is not taken yet',
+        'leave the key out, or write tunnelling = "none"',
+    ),
+    ("steps", "barrier"): (
+        "a barrier of a stated height is not taken yet",
+        'write barrier = "none" for a step without one, through = "..." for its saddle point, or '
+        "declare a saddle point species with enthalpy and entropy",
+    ),
+}
+"""Table and key that a later version takes -> what is said now, and the way round it."""
+
+
+def json_schema() -> dict[str, Any]:
+    """Return the JSON Schema of the study file, for editors."""
+    schema = msgspec.json.schema(StudyKeys)
+    return {
+        "$schema": "https://json-schema.org/draft/2020-12/schema",
+        "title": "thermo_pp study file",
+        **schema,
+    }

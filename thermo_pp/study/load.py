@@ -1,0 +1,191 @@
+"""Loading a study: from the TOML file and its outputs to species, steps and conditions."""
+
+from __future__ import annotations
+
+import os
+import re
+import tomllib
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any
+
+from thermo_pp.conditions import Conditions, Treatment
+from thermo_pp.errors import Finding, StudyError
+from thermo_pp.graph import check_reach
+from thermo_pp.loops import equilibrium_of
+from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
+from thermo_pp.paths import find_paths
+from thermo_pp.species import SpeciesModel
+from thermo_pp.study.check import check_keys
+from thermo_pp.study.members import make_species
+from thermo_pp.study.parts import make_conditions, make_question, make_steps, make_treatment
+
+if TYPE_CHECKING:
+    from thermo_pp.kinetics.results import EffectiveRate
+    from thermo_pp.profile import Profile
+
+_AT_LINE = re.compile(r"\s*\(at (?:line (\d+), column \d+|end of document)\)")
+
+
+@dataclass(frozen=True, eq=False)
+class Study:
+    """A study, loaded and checked.
+
+    Attributes
+    ----------
+    title : str
+    path : Path
+        The study file, as it was named.
+    treatment : Treatment
+        The study's own; a species may have its own standard state and its own word on imaginary
+        modes.
+    conditions : Conditions
+    mechanism : Mechanism
+    species : mapping of str to SpeciesModel
+        Saddle points included, in the order of the file.
+    findings : tuple of Finding
+        Of the outputs, of the pairs of frequency job and single point, of the levels of theory and
+        of the mechanism.
+    """
+
+    title: str
+    path: Path
+    treatment: Treatment
+    conditions: Conditions
+    mechanism: Mechanism
+    species: Mapping[str, SpeciesModel]
+    findings: tuple[Finding, ...] = field(default=())
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "species", MappingProxyType(dict(self.species)))
+
+    @classmethod
+    def load(
+        cls,
+        path: str | os.PathLike[str],
+        *,
+        temperatures: Iterable[Any] | None = None,
+        treatment: Mapping[str, Any] | None = None,
+    ) -> Study:
+        """Read a study file and every output that it names.
+
+        Parameters
+        ----------
+        path : str or PathLike
+        temperatures : iterable or None
+            In place of the file's, K or texts with a unit.
+        treatment : mapping or None
+            Keys of ``[treatment]`` in place of the file's: ``{"low_modes": "harmonic"}``.
+
+        Raises
+        ------
+        StudyError
+            Whatever is wrong with the file, named with its key; see ``docs/study-file.md``.
+        ReadError
+            An output that cannot be read as what it claims to be.
+        """
+        file = os.fspath(path)
+        data = read_toml(Path(file), file)
+        if treatment:
+            options = {"treatment": dict(treatment)}
+            check_keys({**options, **_EMPTY}, "options")
+            data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
+        keys = check_keys(data, file)
+        own = make_treatment(keys.treatment, file)
+        steps = make_steps(keys.steps, own.phase, file)
+        check_names(steps, keys.species, where=file)
+        question = make_question(keys, steps, file)
+        conditions = make_conditions(keys.conditions, steps, own.phase, temperatures, file)
+        saddles = {step.through for step in steps if step.through is not None}
+        members = make_species(keys, own, saddles, file)
+        mechanism = Mechanism(
+            steps,
+            {name: model.composition for name, model in members.species.items()},
+            charge={name: model.charge for name, model in members.species.items()},
+            where=file,
+            **question,
+        )
+        findings = [*members.findings, *check_mechanism(mechanism)]
+        findings += _check_network(mechanism, conditions)
+        return cls(
+            title=keys.title if isinstance(keys.title, str) else Path(file).stem,
+            path=Path(file),
+            treatment=own,
+            conditions=conditions,
+            mechanism=mechanism,
+            species=members.species,
+            findings=tuple(dict.fromkeys(findings)),
+        )
+
+    def profile(self, **options: Any) -> Profile:
+        """Return relative H, S and G of every state; see `thermo_pp.profile.profile`."""
+        from thermo_pp.profile import profile
+
+        return profile(self, **options)
+
+    def effective(self, **options: Any) -> EffectiveRate:
+        """Return the effective rate; see `thermo_pp.kinetics.effective.effective`."""
+        from thermo_pp.kinetics.effective import effective
+
+        return effective(self, **options)
+
+
+_EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}
+"""What a study must have, for checking options alone."""
+
+
+def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
+    """Return a table of the file, an empty one where it is missing or, for the check to see, none."""
+    table = data.get(name, {})
+    return table if isinstance(table, Mapping) else {}
+
+
+def _check_network(mechanism: Mechanism, conditions: Conditions) -> tuple[Finding, ...]:
+    """Check what needs no energies: equilibrium species, declared paths, the way to the product."""
+    equilibrium_of(mechanism, conditions.held, driven=conditions.driven)
+    catalyst = mechanism.catalyst
+    if catalyst in conditions.held:
+        raise StudyError(
+            f"the catalyst {catalyst!r} is held",
+            where=f"{mechanism.where} [conditions] held.{catalyst}",
+            mend="take it out of held: a turnover frequency is per total catalyst",
+        )
+    if mechanism.paths or catalyst is not None:
+        find_paths(mechanism, conditions.held, most=1)
+    return check_reach(mechanism, conditions.held)
+
+
+def read_toml(path: Path, file: str) -> dict[str, Any]:
+    """Read a TOML file; StudyError with its line where it is none."""
+    try:
+        data = path.read_bytes()
+    except OSError as error:
+        raise StudyError(
+            f"the study file cannot be read: {error.strerror or error}",
+            where=file,
+            mend="name a study file (TOML); docs/study-file.md shows one",
+        ) from None
+    try:
+        text = data.decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        line = data.count(b"\n", 0, error.start) + 1
+        raise StudyError(
+            f"byte 0x{data[error.start]:02x} is not UTF-8",
+            where=f"{file}:{line}",
+            mend="save the file as UTF-8",
+        ) from None
+    try:
+        return tomllib.loads(text)
+    except (ValueError, RecursionError) as error:
+        reason = str(error) if isinstance(error, ValueError) else "tables too deep in each other"
+        found = _AT_LINE.search(reason)
+        place = file
+        if found is not None:
+            place = f"{file}:{found.group(1) or len(text.splitlines())}"
+        raise StudyError(
+            f"not TOML: {_AT_LINE.sub('', reason)}",
+            where=place,
+            mend="mend the syntax of this line; texts stand in quotes, lists in brackets",
+        ) from None

@@ -1,0 +1,329 @@
+"""The species of a study: read from the outputs it names, or declared."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Collection, Mapping
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+
+from thermo_pp import conditions as made
+from thermo_pp.audit.levels import level_findings
+from thermo_pp.conditions import Treatment
+from thermo_pp.errors import Finding, StudyError
+from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind
+from thermo_pp.nearest import suggestion
+from thermo_pp.pairing import pair
+from thermo_pp.readers import read_source
+from thermo_pp.records import Calculation
+from thermo_pp.sources import open_source
+from thermo_pp.species import Declared, SpeciesModel, Structure
+from thermo_pp.study.check import place
+from thermo_pp.study.keys import SpeciesKeys, StudyKeys
+from thermo_pp.study.parts import given, real_below
+from thermo_pp.units import quantity
+
+_READ_ONLY = ("energy", "multiplicity", "levels", "symmetry_number", "isotopes", "imaginary")
+_DECLARED_ONLY = (
+    "enthalpy",
+    "entropy",
+    "heat_capacity",
+    "temperature",
+    "relative_to",
+)
+
+
+@dataclass(frozen=True, eq=False)
+class Members:
+    """What the species of a study came to.
+
+    Attributes
+    ----------
+    species : dict of str to SpeciesModel
+        In the order of the file.
+    findings : tuple of Finding
+        Of the outputs, the pairs, the species and the levels of theory.
+    """
+
+    species: dict[str, SpeciesModel]
+    findings: tuple[Finding, ...]
+
+
+@dataclass(eq=False)
+class _Maker:
+    """Makes the species of one study; every output is read once."""
+
+    keys: StudyKeys
+    treatment: Treatment
+    saddles: Collection[str]
+    file: str
+    folder: Path
+    outputs: Path
+    read: dict[str, Calculation] = field(default_factory=dict)
+    done: dict[str, SpeciesModel] = field(default_factory=dict)
+    findings: list[Finding] = field(default_factory=list)
+    frequencies: dict[str, Calculation] = field(default_factory=dict)
+    energies: dict[str, Calculation] = field(default_factory=dict)
+
+
+def make_species(
+    keys: StudyKeys, treatment: Treatment, saddles: Collection[str], file: str
+) -> Members:
+    """Read or make every species of a study.
+
+    Parameters
+    ----------
+    keys : StudyKeys
+    treatment : Treatment
+        The study's; a species may have its own standard state and its own word on imaginary modes.
+    saddles : collection of str
+        Names of the saddle points.
+    file : str
+        The study file.
+
+    Raises
+    ------
+    StudyError
+        A species that is neither read nor declared or both, a missing file or one outside the
+        study's folder, a single point that does not belong to its frequency job, scales that are
+        mixed.
+    """
+    folder = Path(file).parent
+    outputs = folder / keys.outputs
+    if not os.path.isdir(outputs):  # noqa: PTH112 (nor is it a folder)
+        raise StudyError(
+            f"there is no folder {str(outputs)!r}",
+            where=place(file, "outputs"),
+            mend="name the folder of the outputs, from the folder of the study file",
+        )
+    maker = _Maker(keys, treatment, saddles, file, folder, outputs)
+    for name, member in keys.species.items():
+        _check_member(name, member, keys.species, file)
+    for name in keys.species:
+        _make(maker, name, ())
+    found = [finding for calc in maker.read.values() for finding in calc.findings]
+    found += maker.findings
+    found += [finding for model in maker.done.values() for finding in model.findings]
+    found += level_findings([*maker.frequencies.values()], "frequencies")
+    found += level_findings([*maker.energies.values()], "energies")
+    found += _same_file(maker.frequencies, file)
+    if treatment.phase == "solution" and maker.frequencies:
+        found.append(_solvation(file))
+    return Members({name: maker.done[name] for name in keys.species}, tuple(found))
+
+
+def _check_member(
+    name: str, member: SpeciesKeys, species: Mapping[str, SpeciesKeys], file: str
+) -> None:
+    """Check which keys stand together; no output is opened yet."""
+    is_read = given(member.frequencies) is not None
+    is_declared = given(member.composition) is not None
+    where = place(file, "species", name)
+    if is_read == is_declared:
+        has = (
+            "both frequencies and composition" if is_read else "neither frequencies nor composition"
+        )
+        raise StudyError(
+            f"{name} has {has}",
+            where=where,
+            mend='name its output (frequencies = "...") or declare it (composition = "...", '
+            'enthalpy = "...", entropy = "...")',
+        )
+    for key in _DECLARED_ONLY if is_read else _READ_ONLY:
+        if given(getattr(member, key)) is not None:
+            kind = "read from an output" if is_read else "declared"
+            raise StudyError(
+                f"{key} has no meaning for a species that is {kind}",
+                where=place(file, "species", name, key),
+                mend="take the key out",
+            )
+    if is_read:
+        return
+    for key in ("enthalpy", "entropy"):
+        if given(getattr(member, key)) is None:
+            raise StudyError(
+                f"the key {key!r} is missing",
+                where=where,
+                mend="a declared species has composition, enthalpy and entropy",
+            )
+    if given(member.relative_to) is None:
+        computed = [other for other, keys in species.items() if given(keys.frequencies) is not None]
+        if computed:
+            raise StudyError(
+                f"{name} is declared beside species that are read ({computed[0]}): "
+                "their enthalpies do not have one zero",
+                where=where,
+                mend="say what its values are differences from: "
+                f"relative_to = {{ {computed[0]} = 1, ... }}",
+            )
+
+
+def _make(maker: _Maker, name: str, on_the_way: tuple[str, ...]) -> SpeciesModel:
+    """Return a species, made where it is not yet; those it is relative to come first."""
+    if name in maker.done:
+        return maker.done[name]
+    member = maker.keys.species[name]
+    where = place(maker.file, "species", name)
+    state = given(member.standard_state)
+    standard_state = (
+        maker.treatment.standard_state
+        if state is None
+        else made.standard_state(state, where=f"{where} standard_state")
+    )
+    kind: Kind = "saddle" if name in maker.saddles else "minimum"
+    if given(member.composition) is not None:
+        model = _declared(maker, name, member, kind, standard_state, on_the_way)
+    else:
+        model = _structure(maker, name, member, kind, standard_state)
+    maker.done[name] = model
+    return model
+
+
+def _structure(
+    maker: _Maker,
+    name: str,
+    member: SpeciesKeys,
+    kind: Kind,
+    standard_state: made.StandardState,
+) -> SpeciesModel:
+    where = place(maker.file, "species", name)
+    calc = _calculation(maker, str(member.frequencies), f"{where} frequencies")
+    energy = None
+    if given(member.energy) is not None:
+        energy = _calculation(maker, str(member.energy), f"{where} energy")
+        maker.findings += pair(calc, energy, where=f"{where} energy").findings
+    imaginary = given(member.imaginary)
+    treatment = replace(maker.treatment, standard_state=standard_state)
+    if imaginary is not None:
+        below = real_below(imaginary, f"{where} imaginary.real_below")
+        treatment = replace(treatment, real_below_cm=below)
+    maker.frequencies[name] = calc
+    maker.energies[name] = calc if energy is None else energy
+    return Structure.make(
+        calc,
+        treatment,
+        name=name,
+        kind=kind,
+        energy=energy,
+        charge=given(member.charge),
+        multiplicity=given(member.multiplicity),
+        levels=given(member.levels),
+        symmetry_number=given(member.symmetry_number),
+        isotopes=given(member.isotopes),
+        where=where,
+    )
+
+
+def _declared(
+    maker: _Maker,
+    name: str,
+    member: SpeciesKeys,
+    kind: Kind,
+    standard_state: made.StandardState,
+    on_the_way: tuple[str, ...],
+) -> SpeciesModel:
+    where = place(maker.file, "species", name)
+
+    def number(key: str, unit: str) -> float:
+        return quantity(getattr(member, key), unit, where=f"{where} {key}")
+
+    reference = []
+    for other, count in (given(member.relative_to) or {}).items():
+        at = f"{where} relative_to.{other}"
+        if other not in maker.keys.species:
+            raise StudyError(
+                f"unknown species {other!r}",
+                where=at,
+                mend=suggestion(other, maker.keys.species, "species"),
+            )
+        if count == 0:
+            raise StudyError("0 of a species", where=at, mend="leave it out, or state how many")
+        if other == name or other in on_the_way:
+            raise StudyError(
+                f"{name} is relative to itself" + ("" if other == name else f", by way of {other}"),
+                where=at,
+                mend="let relative_to lead to species that are read, or that have no relative_to",
+            )
+        reference.append((_make(maker, other, (*on_the_way, name)), count))
+    temperature = given(member.temperature)
+    return Declared.make(
+        str(member.composition),
+        name=name,
+        kind=kind,
+        enthalpy_kj_mol=number("enthalpy", "kJ/mol"),
+        entropy_j_mol_k=number("entropy", "J/mol/K"),
+        standard_state=standard_state,
+        heat_capacity_j_mol_k=(
+            None if given(member.heat_capacity) is None else number("heat_capacity", "J/mol/K")
+        ),
+        temperature_k=(
+            DEFAULT_TEMPERATURE_K
+            if temperature is None
+            else made.temperature(temperature, where=f"{where} temperature")
+        ),
+        charge=given(member.charge),
+        reference=tuple(reference),
+        where=where,
+    )
+
+
+def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
+    """Read the output `name` once."""
+    path = _inside(maker, name, where)
+    if str(path) not in maker.read:
+        maker.read[str(path)] = read_source(open_source(path))
+    return maker.read[str(path)]
+
+
+def _inside(maker: _Maker, name: str, where: str) -> Path:
+    """Return the path of an output; StudyError where it is not there or outside the folders."""
+    path = maker.outputs / name
+    allowed = (_plain(maker.outputs), _plain(maker.folder))
+    if not any(_plain(path).is_relative_to(folder) for folder in allowed):
+        raise StudyError(
+            f"{name!r} is outside the folder {str(maker.outputs)!r}",
+            where=where,
+            mend="name a file of that folder, or let `outputs` name the folder it is in",
+        )
+    if not os.path.isfile(path):  # noqa: PTH113 (a name too long is no file, not an OSError)
+        there = sorted(p.name for p in maker.outputs.iterdir() if p.is_file())
+        raise StudyError(
+            f"there is no file {str(path)!r}", where=where, mend=suggestion(name, there, "files")
+        )
+    return path
+
+
+def _plain(path: Path) -> Path:
+    """Return the absolute path without ``..``; links are not followed."""
+    return Path(os.path.normpath(path.absolute()))
+
+
+def _solvation(file: str) -> Finding:
+    return Finding(
+        "solvation-derivative",
+        "warning",
+        file,
+        None,
+        "the phase is a solution, and how solvation depends on temperature is not in H, S and the "
+        "Arrhenius energies",
+        "declare the species whose solvation was computed at several temperatures",
+    )
+
+
+def _same_file(frequencies: Mapping[str, Calculation], file: str) -> list[Finding]:
+    """Find species that are read from one and the same frequency job."""
+    users: dict[str, list[str]] = {}
+    for name, calc in frequencies.items():
+        users.setdefault(calc.sha256, []).append(name)
+    return [
+        Finding(
+            "same-file-twice",
+            "warning",
+            file,
+            None,
+            f"{' and '.join(names)} are read from the same frequency job",
+            "name the output of each species",
+        )
+        for names in users.values()
+        if len(names) > 1
+    ]

@@ -1,0 +1,287 @@
+"""Parts of a study that need no output: its treatment, conditions, steps and question."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from itertools import pairwise
+from typing import Any, TypedDict
+
+from msgspec import UNSET, UnsetType
+
+from thermo_pp import conditions as made
+from thermo_pp.conditions import Conditions, Treatment
+from thermo_pp.errors import StudyError
+from thermo_pp.mechanism import Step, parse_equation
+from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase
+from thermo_pp.nearest import suggestion
+from thermo_pp.study.check import place
+from thermo_pp.study.keys import (
+    ConditionsKeys,
+    Quantity,
+    RealBelowKeys,
+    StepKeys,
+    StudyKeys,
+    TreatmentKeys,
+)
+from thermo_pp.units import quantity
+
+
+class Question(TypedDict):
+    """What is asked of the mechanism: the fields of a Mechanism of these names."""
+
+    reactant: str | None
+    products: tuple[str, ...]
+    catalyst: str | None
+    paths: tuple[tuple[int, ...], ...]
+    path_names: tuple[str, ...]
+
+
+def make_treatment(keys: TreatmentKeys, file: str) -> Treatment:
+    """Turn ``[treatment]`` into a Treatment."""
+    scale = keys.frequency_scale
+    zero_point_scale = keys.zero_point_scale
+    return Treatment(
+        standard_state=made.standard_state(
+            keys.standard_state, where=place(file, "treatment", "standard_state")
+        ),
+        phase=keys.phase,
+        low_modes=keys.low_modes,
+        onset_cm=above_zero(keys.onset, "1/cm", place(file, "treatment", "onset")),
+        rotor=keys.rotor,
+        masses=keys.masses,
+        real_below_cm=real_below(keys.imaginary, place(file, "treatment", "imaginary.real_below")),
+        frequency_scale=scale,
+        zero_point_scale=scale if isinstance(zero_point_scale, UnsetType) else zero_point_scale,
+        enantiopure=keys.enantiopure,
+    )
+
+
+def real_below(value: str | RealBelowKeys, where: str) -> float | None:
+    """Turn the word on imaginary modes into cm^-1, None where all are refused."""
+    return above_zero(value.real_below, "1/cm", where) if isinstance(value, RealBelowKeys) else None
+
+
+def above_zero(value: Any, unit: str, where: str) -> float:
+    """Turn a value into a number above 0 in `unit`."""
+    number = quantity(value, unit, where=where)
+    if number <= 0.0:
+        raise StudyError(f"{value!r} is not above 0", where=where, mend="write a value above 0")
+    return number
+
+
+def make_conditions(
+    keys: ConditionsKeys,
+    steps: Sequence[Step],
+    phase: Phase,
+    temperatures: Iterable[Any] | None,
+    file: str,
+) -> Conditions:
+    """Turn ``[conditions]`` into Conditions; `temperatures` stand in place of the file's."""
+    where = place(file, "conditions", "temperatures")
+    wanted = keys.temperatures
+    if temperatures is not None:
+        kelvin = made.temperatures(temperatures, where="options temperatures")
+    elif isinstance(wanted, UnsetType):
+        raise StudyError(
+            "the key 'temperatures' is missing",
+            where=place(file, "conditions"),
+            mend='write temperatures = { from = "280 K", to = "360 K", step = "5 K" }, or a list',
+        )
+    elif isinstance(wanted, list):
+        kelvin = made.temperatures(wanted, where=where)
+    else:
+        kelvin = made.temperature_range(wanted.from_, wanted.to, wanted.step, where=where)
+    known = list(dict.fromkeys(name for step in steps for name in step.species))
+    held = {}
+    for name, value in keys.held.items():
+        where = place(file, "conditions", "held", name)
+        if name not in known:
+            raise StudyError(
+                f"unknown species {name!r}", where=where, mend=suggestion(name, known, "species")
+            )
+        held[name] = made.held(value, where=where)
+        if phase == "solution" and held[name].form == "pressure":
+            raise StudyError(
+                f"{value!r} is a partial pressure, and the phase is a solution",
+                where=where,
+                mend='write a concentration, for instance "0.5 mol/L"',
+            )
+    return Conditions(kelvin, held, keys.driven)
+
+
+def make_steps(keys: Sequence[StepKeys], phase: Phase, file: str) -> tuple[Step, ...]:
+    """Turn ``[[steps]]`` into Steps."""
+    return tuple(_step(step, number, phase, file) for number, step in enumerate(keys))
+
+
+def _step(keys: StepKeys, number: int, phase: Phase, file: str) -> Step:
+    where = place(file, "steps", number)
+    reactants, products = parse_equation(
+        keys.equation, where=place(file, "steps", number, "equation")
+    )
+    given = [
+        name
+        for name in ("through", "barrier", "rate", "arrhenius")
+        if not isinstance(getattr(keys, name), UnsetType)
+    ]
+    if len(given) != 1:
+        has = f"has {' and '.join(given)}" if given else "says nothing of its rate"
+        raise StudyError(
+            f"the step {keys.equation!r} {has}",
+            where=where,
+            mend='give exactly one of through = "TS", barrier = "none", rate = "..." and '
+            'arrhenius = { A = "...", E = "..." }',
+        )
+    step = Step(
+        keys.equation,
+        reactants,
+        products,
+        through=keys.through if isinstance(keys.through, str) else None,
+        barrierless=not isinstance(keys.barrier, UnsetType),
+        rate=_rate(keys, sum(reactants.values()), number, file),
+        viscosity=_viscosity(keys.viscosity, place(file, "steps", number, "viscosity")),
+        tunnelling=keys.tunnelling,
+        where=where,
+    )
+    _check_viscosity(step, phase)
+    return step
+
+
+def rate_unit(molecules: int) -> str:
+    """Return the unit of a rate constant of a step with so many molecules on its left side.
+
+    >>> rate_unit(1), rate_unit(2), rate_unit(3)
+    ('1/s', 'L/mol/s', 'L^2/mol^2/s')
+    """
+    if molecules == 1:
+        return "1/s"
+    power = "" if molecules == 2 else f"^{molecules - 1}"
+    return f"L{power}/mol{power}/s"
+
+
+def _rate(
+    keys: StepKeys, molecules: int, number: int, file: str
+) -> tuple[float, float, float] | None:
+    """Return A, n and E of a declared rate constant, None where the step has none."""
+    unit = rate_unit(molecules)
+    if not isinstance(keys.rate, UnsetType):
+        return above_zero(keys.rate, unit, place(file, "steps", number, "rate")), 0.0, 0.0
+    if isinstance(keys.arrhenius, UnsetType):
+        return None
+    factor = above_zero(keys.arrhenius.A, unit, place(file, "steps", number, "arrhenius", "A"))
+    energy = quantity(
+        keys.arrhenius.E, "kJ/mol", where=place(file, "steps", number, "arrhenius", "E")
+    )
+    return factor, keys.arrhenius.n, energy
+
+
+def _viscosity(
+    value: Quantity | list[tuple[Quantity, Quantity]] | UnsetType, where: str
+) -> tuple[tuple[float, float], ...] | None:
+    """Return pairs of temperature / K and viscosity / Pa s; one pair where it is constant."""
+    if isinstance(value, UnsetType):
+        return None
+    if not isinstance(value, list):
+        return ((DEFAULT_TEMPERATURE_K, above_zero(value, "Pa*s", where)),)
+    pairs = tuple(
+        (made.temperature(kelvin, where=where), above_zero(eta, "Pa*s", where))
+        for kelvin, eta in value
+    )
+    if any(later[0] <= sooner[0] for sooner, later in pairwise(pairs)):
+        raise StudyError(
+            "the temperatures of the viscosity do not rise",
+            where=where,
+            mend="list the pairs by temperature, each temperature once",
+        )
+    return pairs
+
+
+def _check_viscosity(step: Step, phase: Phase) -> None:
+    """Refuse a viscosity that would be left unused, and a diffusion limit without one."""
+    where = f"{step.where} viscosity"
+    if step.viscosity is None:
+        if step.barrierless and phase == "solution":
+            raise StudyError(
+                f"the step {step.equation!r} has no viscosity",
+                where=where,
+                mend='the diffusion limit needs one: viscosity = "0.89 mPa s", '
+                "or pairs over temperature",
+            )
+        return
+    unused = ""
+    if phase == "gas":
+        unused = "the phase is a gas"
+    elif step.rate is not None:
+        unused = "the step has a declared rate constant"
+    elif max(step.molecules) < 2:
+        unused = "no two molecules meet in the step"
+    if unused:
+        raise StudyError(
+            f"a viscosity has no use here: {unused}", where=where, mend="take the viscosity out"
+        )
+
+
+def make_question(keys: StudyKeys, steps: Sequence[Step], file: str) -> Question:
+    """Turn ``[effective]`` and ``[[paths]]`` into what is asked of the mechanism."""
+    question = Question(reactant=None, products=(), catalyst=None, paths=(), path_names=())
+    effective = keys.effective
+    known = list(dict.fromkeys(name for step in steps for name in step.species))
+    if not isinstance(effective, UnsetType):
+        given = [
+            name
+            for name in ("reactant", "catalyst")
+            if not isinstance(getattr(effective, name), UnsetType)
+        ]
+        if len(given) != 1:
+            raise StudyError(
+                "both a reactant and a catalyst" if given else "neither a reactant nor a catalyst",
+                where=place(file, "effective"),
+                mend="give exactly one of reactant and catalyst",
+            )
+        start = _known(getattr(effective, given[0]), known, place(file, "effective", given[0]))
+        products = [effective.product] if isinstance(effective.product, str) else effective.product
+        where = place(file, "effective", "product")
+        for name in products:
+            _known(name, known, where)
+            if name == start or products.count(name) > 1:
+                twice = f"is the {given[0]} too" if name == start else "is listed twice"
+                raise StudyError(
+                    f"the product {name!r} {twice}", where=where, mend="name what is made, once"
+                )
+        question["reactant"] = start if given[0] == "reactant" else None
+        question["catalyst"] = start if given[0] == "catalyst" else None
+        question["products"] = tuple(products)
+    for number, path in enumerate(keys.paths):
+        where = place(file, "paths", number, "steps")
+        for entry in path.steps:
+            if not 1 <= abs(entry) <= len(steps):
+                raise StudyError(
+                    f"there is no step {entry}",
+                    where=where,
+                    mend=f"steps count from 1 to {len(steps)}; a negative number runs one backward",
+                )
+        if path.name in question["path_names"]:
+            raise StudyError(
+                f"two paths are called {path.name!r}",
+                where=place(file, "paths", number, "name"),
+                mend="give each path a name of its own",
+            )
+        question["path_names"] += (path.name,)
+        # 0-based; the complement of a number stands for the step run backward
+        question["paths"] += (tuple(n - 1 if n > 0 else n for n in path.steps),)
+    return question
+
+
+def _known(name: str, known: Sequence[str], where: str) -> str:
+    if name not in known:
+        raise StudyError(
+            f"{name!r} is not made or used by any step",
+            where=where,
+            mend=suggestion(name, known, "species"),
+        )
+    return name
+
+
+def given(value: Any) -> Any:
+    """Return the value of a key, None where the file does not have it."""
+    return None if value is UNSET else value
