@@ -75,6 +75,7 @@ class Plan:
     standard_state: str = "1 bar"
     phase: str = "gas"
     driven: bool = False
+    product_of_one_turn: int = 1  # of all listed products, in the net reaction of a cycle
 
     def text(self) -> str:
         """Return the study file."""
@@ -394,8 +395,8 @@ class Reference:
     def cycle(self) -> mp.mpf:
         with mp.workdps(self.digits):
             share = self.cycle_shares()
-            gain = sum(share[a] * k * given for a, _, k, given in self.ways if a in share and k)
-            return gain
+            made = sum(share[a] * k * given for a, _, k, given in self.ways if a in share and k)
+            return made / self.plan.product_of_one_turn
 
     def rate(self, definition: str) -> mp.mpf:
         value: mp.mpf = getattr(self, definition)()

@@ -40,12 +40,11 @@ def turns(network: Network, catalyst: int) -> list[Turn]:
 
     Ways without product come last.
     """
-    inside = set(network.reached(catalyst))
     found = network.given_off_from(catalyst)
     h = len(network.held)
     closed = []
     for edge, off in zip(network.edges, network.off, strict=True):
-        if edge.tail in inside and edge.head in inside:
+        if edge.tail in found and edge.head in found:
             change = found[edge.tail] + off - found[edge.head]
             if change.any():
                 closed.append(-change if change[-1] < 0.0 else change)

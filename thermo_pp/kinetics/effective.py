@@ -327,11 +327,20 @@ def _turnovers(rates: Rates) -> str:
     network, products = rates.network, rates.model.mechanism.products
     reactions: list[str] = []
     shown: set[str] = set()
-    for turn in rates.turns:
-        changes = dict(zip(network.held, turn.given, strict=True))
-        changes |= dict(zip(network.absent, turn.absent, strict=True))
+    runs = [np.concatenate([turn.given, turn.absent]) for turn in rates.turns]
+    first = runs[0]
+    # a way that only turns one product into another is shown after a run that makes it
+    ways = [run for run, turn in zip(runs, rates.turns, strict=True) if turn.product]
+    ways += [
+        first + sign * run
+        for run, turn in zip(runs, rates.turns, strict=True)
+        for sign in (1, -1)
+        if not turn.product
+    ]
+    for way in ways:
+        changes = dict(zip((*network.held, *network.absent), way, strict=True))
         made = {name for name in products if changes[name] > 0}
-        if made - shown and turn.product:
+        if made - shown:
             shown |= made
             reactions.append(_reaction(changes))
     return "; ".join(reactions)

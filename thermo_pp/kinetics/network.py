@@ -158,13 +158,14 @@ class Network:
         return np.column_stack([self.exchange, absent, self.product_change])
 
     def given_off_from(self, start: int) -> dict[int, FloatArray]:
-        """Return for each state what was given off on a way from `start` to it, in the columns of `off`."""
+        """Return for each state that `start` reaches what was given off on the way, in the columns of `off`."""
         found = {start: np.zeros(self.off.shape[1])}
         queue = deque([start])
-        both: dict[int, list[tuple[int, FloatArray]]] = {k: [] for k in range(len(self.states))}
+        both: dict[int, list[tuple[int, FloatArray]]] = {k: [] for k in self.reached(start)}
         for edge, off in zip(self.edges, self.off, strict=True):
-            both[edge.tail].append((edge.head, off))
-            both[edge.head].append((edge.tail, -off))
+            if edge.tail in both and edge.head in both:
+                both[edge.tail].append((edge.head, off))
+                both[edge.head].append((edge.tail, -off))
         while queue:
             here = queue.popleft()
             for there, off in both[here]:

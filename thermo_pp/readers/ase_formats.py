@@ -165,7 +165,7 @@ def _energy(text: Text, atoms: Atoms) -> float | None:
     if value is None:
         return None
     try:
-        energy = float(value) / 27.211386245981
+        energy = float(value) / Hartree
     except (TypeError, ValueError):
         energy = math.nan
     if not math.isfinite(energy):
