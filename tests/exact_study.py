@@ -476,10 +476,10 @@ def all_roots(coefficients: list[mp.mpf]) -> list[mp.mpf]:
         root = smallest_root(rest)
         found.append(root)
         quotient, carry = [], mp.mpf(0)
-        for c in rest[:0:-1]:
-            carry = c + carry * root
+        for c in rest[:-1]:  # from the lowest power up: stable, the smallest root being taken out
+            carry = (carry - c) / root
             quotient.append(carry)
-        rest = quotient[::-1]
+        rest = quotient
     return found
 
 

@@ -110,7 +110,9 @@ def test_level(path: Path) -> None:
         assert calc.grid == expect["grid"]
     assert (calc.grid is not None) == (calc.energy_label == "DFT")
     orbitals = expect.get("frozen_core_orbitals", 0)
-    assert calc.frozen_core == ("frozen" if orbitals or path.stem == "water_ccsdt_energy" else "none")
+    assert calc.frozen_core == (
+        "frozen" if orbitals or path.stem == "water_ccsdt_energy" else "none"
+    )
 
 
 @pytest.mark.parametrize("path", WITH_MODES, ids=file_id)
@@ -134,7 +136,9 @@ def test_modes(path: Path) -> None:
     assert np.max(np.abs(moved), initial=0.0) < 1e-3  # the centre of mass rests
 
 
-@pytest.mark.parametrize("path", [p for p in GOOD if "wavenumbers_cm" not in expected(p)], ids=file_id)
+@pytest.mark.parametrize(
+    "path", [p for p in GOOD if "wavenumbers_cm" not in expected(p)], ids=file_id
+)
 def test_no_modes_without_a_frequency_task(path: Path) -> None:
     calc = calculation(path)
     assert calc.wavenumbers_cm is None
@@ -177,7 +181,7 @@ def test_lines_say_what_they_are_said_to_say(path: Path) -> None:
         "charge": "harge",
         "wavenumbers_cm": "||",
         "modes": "P.Frequency",
-        "hessian_hartree_bohr2": "MASS-WEIGHTED NUCLEAR HESSIAN",
+        "hessian_hartree_bohr2": "MASS-WEIGHTED PROJECTED HESSIAN",
         "optimised": "onverge",
         "grid": "Grid used",
         "dispersion": "ispersion",
@@ -189,8 +193,9 @@ def test_lines_say_what_they_are_said_to_say(path: Path) -> None:
     assert repr(abs(calc.energy_hartree))[:12] in lines[calc.where["energy_hartree"] - 1]
     first = lines[calc.where["positions_angstrom"] - 1].split()
     assert first[0] == "1"
+    scale = 1.889725989 if path.stem == "water_hf_gradient" else 1.0  # that one is in bohr
     assert [float(word) for word in first[3:6]] == pytest.approx(
-        calc.positions_angstrom[0] * (1.0 if "bohr" not in path.stem else 1.889725989), abs=1e-12
+        (calc.positions_angstrom[0] * scale).tolist(), abs=1e-12
     )
 
 
@@ -314,7 +319,7 @@ def test_the_best_energy_of_one_geometry(
 def test_an_energy_of_another_geometry_or_state_is_not_taken() -> None:
     names = "water_ccsdt_energy", "water_hf_freq"  # 0.968 and 0.945 angstrom
     assert nwchem.read(joined(*names)).energy_label == "HF"
-    assert nwchem.read(joined(*reversed(names))).energy_label == "CCSD(T)"  # the last geometry
+    assert nwchem.read(joined(*reversed(names))).energy_label == "HF"  # the geometry of the modes
     cation = calculation(good("water_then_cation_dft_energy"))
     data = good("water_then_cation_dft_energy").read_bytes()
     assert data.count(b"Total DFT energy") == 2
@@ -347,18 +352,26 @@ def test_wavenumbers_of_the_hessian(path: Path) -> None:
     assert calc.wavenumbers_cm is not None
     assert np.array_equal(calc.hessian_hartree_bohr2, calc.hessian_hartree_bohr2.T)
     own = normal_modes(calc.hessian_hartree_bohr2, calc.masses_u, calc.positions_angstrom)
-    # six digits of the Hessian, and the program's own constants (relative 1e-6)
-    assert own.wavenumbers_cm == pytest.approx(calc.wavenumbers_cm, abs=0.05, rel=2e-5)
+    # six digits of the Hessian
+    assert own.wavenumbers_cm == pytest.approx(calc.wavenumbers_cm, abs=0.02, rel=0.0)
 
 
-@pytest.mark.parametrize("name", ["so3-water2", "ts-assisted"])
-def test_wavenumbers_of_the_hessian_with_soft_modes(name: str) -> None:
+@pytest.mark.parametrize("name", ["so3-water", "so3-water2", "ts-assisted", "water-dimer"])
+def test_soft_wavenumbers_of_the_hessian(name: str) -> None:
     calc = calculation(PLUME / f"{name}.out")
-    assert calc.wavenumbers_cm is not None
     own = normal_modes(calc.hessian_hartree_bohr2, calc.masses_u, calc.positions_angstrom)
-    off = np.abs(own.wavenumbers_cm - calc.wavenumbers_cm)
-    assert np.max(off) < 0.3
-    assert np.max(off[calc.wavenumbers_cm > 500.0]) < 0.03
+    assert own.wavenumbers_cm == pytest.approx(calc.wavenumbers_cm, abs=0.02, rel=0.0)
+    assert calc.modes is not None
+    overlap = np.abs(np.einsum("mac,mac->m", own.modes, calc.modes))
+    assert overlap == pytest.approx(1.0, abs=2e-4)
+
+
+def test_the_hessian_is_good_for_other_isotopes() -> None:
+    """The Hessian of H2O with the masses of HDO against the program's own HDO at the same level."""
+    light, heavy = calculation(good("water_hf_freq")), calculation(good("water_hf_freq_mass_list"))
+    assert np.array_equal(light.positions_angstrom, heavy.positions_angstrom)
+    own = normal_modes(light.hessian_hartree_bohr2, heavy.masses_u, light.positions_angstrom)
+    assert own.wavenumbers_cm == pytest.approx(heavy.wavenumbers_cm, abs=0.05, rel=0.0)
 
 
 # thermochemistry with the program's own constants
@@ -381,7 +394,8 @@ def nwchem_terms(calc: Calculation) -> dict[str, tuple[float, float]]:
     masses = calc.masses_u
     # ours is for 1 bar; the constant of ours for 1 u at 1 K and 1 atm follows from units alone
     ours = (
-        1.5 * math.log(2 * math.pi * units.ATOMIC_MASS_KG * units.BOLTZMANN_J_K / units.PLANCK_J_S**2)
+        1.5
+        * math.log(2 * math.pi * units.ATOMIC_MASS_KG * units.BOLTZMANN_J_K / units.PLANCK_J_S**2)
         + math.log(units.BOLTZMANN_J_K / units.ATM_PA)
         + 2.5
     )
@@ -511,13 +525,21 @@ def test_lines_lost_from_the_middle_never_give_other_numbers(name: str) -> None:
     assert refused > 0
 
 
-@pytest.mark.parametrize("path", [good("water_b3lyp_opt_freq"), good("water_ccsdt_energy")], ids=file_id)
+@pytest.mark.parametrize(
+    "path", [good("water_b3lyp_opt_freq"), good("water_ccsdt_energy")], ids=file_id
+)
 def test_crlf_reads_the_same(path: Path) -> None:
     plain = nwchem.read(Source("a", path.read_bytes()))
     crlf = nwchem.read(Source("a", path.read_bytes().replace(b"\n", b"\r\n")))
     for field in ("energy_hartree", "method", "basis", "charge", "multiplicity", "grid", "where"):
         assert getattr(crlf, field) == getattr(plain, field)
-    for field in ("positions_angstrom", "masses_u", "wavenumbers_cm", "modes", "hessian_hartree_bohr2"):
+    for field in (
+        "positions_angstrom",
+        "masses_u",
+        "wavenumbers_cm",
+        "modes",
+        "hessian_hartree_bohr2",
+    ):
         assert np.array_equal(getattr(crlf, field), getattr(plain, field))
     assert crlf.printed == plain.printed
 
@@ -526,28 +548,60 @@ def test_crlf_reads_the_same(path: Path) -> None:
     ("name", "old", "new", "what"),
     [
         ("water_hf_freq", b"0.11404600\n", b"0.11404500\n", "not those of any geometry"),
-        ("water_hf_energy", b"-0.45618", b"-0.45618", ""),
-        ("water_hf_freq", b"1.5994910D+01", b"1.5984910D+01", "mass-weighted length"),
+        ("water_hf_energy", b"0.11920000", b"0.11930000", "nuclear repulsion"),
+        ("water_hf_freq", b"1.5994910D+01", b"1.7994910D+01", "mass-weighted length"),
         ("water_hf_freq", b"4086.712 ||    0", b"4186.712 ||    0", "in the table of modes"),
         ("water_hf_freq", b"=   14.448 kcal", b"=   14.348 kcal", "in kcal/mol and in hartree"),
-        ("water_hf_freq", b"14.448 kcal/mol  (  0.023024", b"14.440 kcal/mol  (  0.023012", "zero-point"),
+        (
+            "water_hf_freq",
+            b"14.448 kcal/mol  (  0.023024",
+            b"14.440 kcal/mol  (  0.023012",
+            "zero-point",
+        ),
         ("water_hf_freq", b"=   14.448 kcal", b"= ******** kcal", "expected the zero point"),
         ("water_hf_freq", b"Total Entropy   ", b"Total Entropia  ", "no entropy"),
-        ("water_hf_freq", b"    9  ", b"    8  ", ""),
         ("water_mp2_energy", b"-0.204771237833\n", b"-0.204771337833\n", "sum of its parts"),
         ("water_mp2_energy", b"Total MP2 energy  ", b"Total MP9 energy  ", "no MP2 energy"),
-        ("water_ccsdt_energy", b"(T) corr. energy:                      -0.003090", b"(T) corr. energy:                      -0.003190", "sum of its parts"),
-        ("water_ccsdt_energy", b"Total CCSD(T) energy:", b"Total CCSD(X) energy:", "no CCSD\\(T\\) energy"),
-        ("water_ccsdt_energy", b"level of theory    ccsd(t)", b"level of theory    fancy", "does not know"),
-        ("oh_tce_uccsdt_energy", b" CCSD(T) total energy", b" CCSD(Q) total energy", "does not know"),
+        (
+            "water_ccsdt_energy",
+            b"(T) corr. energy:                      -0.003090",
+            b"(T) corr. energy:                      -0.003190",
+            "sum of its parts",
+        ),
+        (
+            "water_ccsdt_energy",
+            b"Total CCSD(T) energy:",
+            b"Total CCSD(X) energy:",
+            "no CCSD\\(T\\) energy",
+        ),
+        (
+            "water_ccsdt_energy",
+            b"level of theory    ccsd(t)",
+            b"level of theory    fancy",
+            "does not know",
+        ),
+        (
+            "oh_tce_uccsdt_energy",
+            b" CCSD(T) total energy",
+            b" CCSD(Q) total energy",
+            "does not know",
+        ),
         ("oh_tce_uccsdt_energy", b"-0.156050699674019", b"-0.156050799674019", "sum of its parts"),
         ("water_hf_energy", b"NWChem SCF Module", b"NWChem MCSCF Module", "does not know"),
-        ("water_hf_energy", b"charge          =   0.00", b"charge          =   0.50", "a whole number"),
-        ("water_pbe0_optimize", b"@    4     -76.27634164 -1.1D-06", b"@    4     -76.27634174 -1.1D-06", "last step"),
+        (
+            "water_hf_energy",
+            b"charge          =   0.00",
+            b"charge          =   0.50",
+            "a whole number",
+        ),
+        (
+            "water_pbe0_optimize",
+            b"@    2     -76.27634164 -1.1D-06",
+            b"@    2     -76.27634174 -1.1D-06",
+            "last step",
+        ),
     ],
 )
 def test_damage_is_found(name: str, old: bytes, new: bytes, what: str) -> None:
-    if not what:
-        pytest.skip("placeholder")
     with pytest.raises(ReadError, match=what):
         nwchem.read(changed(good(name), old, new, -1))

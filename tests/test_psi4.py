@@ -362,12 +362,67 @@ def test_a_comment_in_the_input_asks_for_nothing() -> None:
 
 
 def test_text_of_the_input_is_no_result() -> None:
-    fake = b"# @RHF Final Energy:  -1.0\n  Running in c1 symmetry.\n * MP2 total energy = -1.0\nenergy('mp2')"
-    source = changed(BY_NAME["water_dfmp2_energy"], b"energy('mp2')", fake)
-    assert (
-        psi4.read(source).energy_hartree
-        == calculation(BY_NAME["water_dfmp2_energy"]).energy_hartree
+    fake = b"""# @RHF Final Energy:  -1.0
+    Geometry (in Angstrom), charge = 0, multiplicity = 1:
+  Running in c1 symmetry.
+    * MP2 total energy = -1.0
+energy('mp2')"""
+    path = BY_NAME["water_dfmp2_energy"]
+    read = psi4.read(changed(path, b"energy('mp2')", fake))
+    assert read.energy_hartree == calculation(path).energy_hartree
+    assert read.where["energy_hartree"] == calculation(path).where["energy_hartree"] + 4
+
+
+def test_two_printed_scf_energies_that_differ_are_an_error() -> None:
+    source = changed(
+        BY_NAME["water_hf_energy"],
+        b"Total Energy =                        -76.026",
+        b"Total Energy = -76.027",
     )
+    with pytest.raises(ReadError, match="differs from the final energy"):
+        psi4.read(source)
+
+
+def joined(*paths: Path) -> Source:
+    return Source("joined.out", b"".join(path.read_bytes() for path in paths))
+
+
+def test_the_better_energy_counts_also_where_it_stands_first() -> None:
+    calc = psi4.read(joined(BY_NAME["water_ccsdt_energy"], BY_NAME["water_hf_energy"]))
+    assert (calc.energy_label, calc.energy_hartree) == ("CCSD(T)", -76.241174854140937)
+
+
+def test_an_scf_that_failed_beside_one_that_did_not_is_passed_over() -> None:
+    failed = FIXTURES / "psi4" / "bad" / "water_scf_unconverged_not_fatal.out"
+    whole = BY_NAME["water_hf_energy"]
+    assert psi4.read(joined(failed, whole)).energy_hartree == calculation(whole).energy_hartree
+    with pytest.raises(ReadError, match="the SCF did not converge"):
+        psi4.read(joined(whole, failed))
+
+
+def test_hessians_on_the_way_of_an_optimisation_are_not_its_modes() -> None:
+    path = BY_NAME["hcn_hnc_hf_ts_freq"]
+    data = path.read_bytes()
+    end = data.index(b"hessian() ", data.index(b"Final optimized geometry and variables"))
+    data = data[: data.rindex(b"*** tstart()", 0, end)] + b"\n*** Psi4 exiting successfully.\n"
+    mark = b"==> Harmonic Vibrational Analysis <=="
+    assert data.count(mark) > 2
+    first, rest = data.split(mark, 1)
+    on_the_way = psi4.read(Source(path.name, first + mark + rest.replace(mark, b"==> <==")))
+    assert (on_the_way.wavenumbers_cm, on_the_way.optimised) == (None, True)
+    # the last Hessian is of the geometry at which the search ended
+    at_the_end = psi4.read(Source(path.name, data))
+    assert at_the_end.wavenumbers_cm is not None
+    assert at_the_end.wavenumbers_cm[0] == pytest.approx(-1227.63, abs=0.01)
+
+
+def test_another_geometry_after_an_unfinished_optimisation() -> None:
+    path = BY_NAME["methanol_hf_optimize_unconverged_caught"]
+    data = path.read_bytes()
+    start = data[: data.index(b"OPTKING")] + b"\n*** Psi4 exiting successfully.\n"
+    calc = psi4.read(Source(path.name, data + start))
+    assert calc.where["positions_angstrom"] > data.count(b"\n")
+    assert calc.optimised is False
 
 
 def test_geometry_in_bohr() -> None:
@@ -464,7 +519,7 @@ def test_sniff() -> None:
     head = BY_NAME["water_hf_energy"].read_bytes()[:65536]
     assert psi4.sniff(head)
     assert psi4.sniff(head.replace(b"Psi4:", b"PSI4:"))  # versions before 1.2
-    assert not psi4.sniff(b"this note mentions Psi4 and its Ab Initio Electronic Structure Package")
+    assert not psi4.sniff(b"a note: Psi4 is An Open-Source Ab Initio Electronic Structure Package")
 
 
 @pytest.mark.skipif(not SHARED.is_dir(), reason="outputs of Psi4 1.7 are not at ../shared")

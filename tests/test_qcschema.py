@@ -93,16 +93,18 @@ def version_2(root: dict[str, Any]) -> dict[str, Any]:
     """The same result as QCElemental 0.51 lays it out in version 2 (`models.v2.AtomicResult`)."""
     moved = {key: root[key] for key in ("driver", "model", "keywords")}
     specification = {"schema_name": "qcschema_atomic_specification", "program": "psi4", **moved}
-    kept = ("molecule", "properties", "return_result", "success", "provenance")
+    molecule = {**root["molecule"], "schema_version": 3}
+    kept = ("properties", "return_result", "success", "provenance")
     return {
         "schema_name": "qcschema_atomic_result",
         "schema_version": 2,
         "input_data": {
             "schema_name": "qcschema_atomic_input",
             "schema_version": 2,
-            "molecule": root["molecule"],
+            "molecule": molecule,
             "specification": specification,
         },
+        "molecule": molecule,
         **{key: root[key] for key in kept},
     }
 

@@ -228,7 +228,7 @@ def test_slope_finding() -> None:
 def test_solution_is_a_finding() -> None:
     gas, solution = (thermochemistry(water(), phase=phase) for phase in ("gas", "solution"))
     assert codes(gas) == []
-    assert codes(solution) == ["solvation-at-one-temperature"]
+    assert codes(solution) == ["solvation-derivative"]
     assert solution.gibbs_kj_mol[0] == gas.gibbs_kj_mol[0]
 
 

@@ -127,20 +127,17 @@ def test_refused(value: object, unit: str, what: str, mend: str) -> None:
     assert caught.value.where == "study.toml [treatment] x"
 
 
-@pytest.mark.xfail(reason="units.py: an amount of energy is taken for energy a molecule")
 @pytest.mark.parametrize("text", ["-50 kJ", "1 J"])
 def test_an_energy_without_an_amount_is_refused(text: str) -> None:
     with pytest.raises(StudyError):
         quantity(text, "kJ/mol", where="here")
 
 
-@pytest.mark.xfail(reason="units.py: pint knows torr by a small letter only")
 def test_torr() -> None:
     value = quantity("760 Torr", "Pa", where="here")
     assert value == pytest.approx(101325.0, rel=1e-12, abs=0.0)
 
 
-@pytest.mark.xfail(reason="units.py: float() of a huge whole number raises OverflowError")
 def test_a_huge_whole_number_is_refused() -> None:
     with pytest.raises(StudyError):
         quantity(10**400, "K", where="here")

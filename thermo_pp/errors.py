@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import asdict, dataclass
 from typing import Any
 
@@ -83,3 +84,12 @@ class Finding:
     def as_dict(self) -> dict[str, Any]:
         """Return the fields as a plain dictionary, for JSON."""
         return asdict(self)
+
+
+def each_once(findings: Iterable[Finding]) -> tuple[Finding, ...]:
+    """Return findings without those that say of one place what a later one says too."""
+    kept: dict[object, Finding] = {}
+    for finding in findings:
+        place = (finding.code, finding.file, finding.line)
+        kept[place if finding.line is not None else finding] = finding
+    return tuple(kept.values())

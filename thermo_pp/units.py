@@ -72,7 +72,9 @@ def _registry() -> pint.UnitRegistry[Any]:
     """Return the unit library's registry, made on first use."""
     import pint
 
-    return pint.UnitRegistry()
+    registry: pint.UnitRegistry[Any] = pint.UnitRegistry()
+    registry.define("@alias torr = Torr")
+    return registry
 
 
 def quantity(value: Any, unit: str, *, where: str) -> float:
@@ -101,7 +103,10 @@ def quantity(value: Any, unit: str, *, where: str) -> float:
     if isinstance(value, bool):
         raise StudyError(f"expected a quantity, found {value!r}", where=where, mend=_example(unit))
     if isinstance(value, (int, float)):
-        return _finite(float(value), value, unit, where)
+        try:
+            return _finite(float(value), value, unit, where)
+        except OverflowError:
+            return _finite(math.inf, "a number of hundreds of digits", unit, where)
     if isinstance(value, str):
         number, unit_text = split_quantity(value, unit, where=where)
         return convert(number, unit_text, unit, where=where, shown=value)
@@ -139,7 +144,7 @@ def convert(number: float, unit_text: str, unit: str, *, where: str, shown: str 
         return number * _MOLECULAR_ENERGY_KJ_MOL[compact]
     if unit == "1/cm" and compact in _MOLECULAR_ENERGY_KJ_MOL:
         return number * _MOLECULAR_ENERGY_KJ_MOL[compact] / WAVENUMBER_KJ_MOL
-    per_mole = "mol" in unit
+    per_mole = "mol" in unit and "J" not in unit  # "-50 kJ" lacks its amount
     spelled = _PER_MOLECULE.sub("particle", unit_text)
     registry = _registry()
     try:

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from thermo_pp.audit.levels import level_words
 from thermo_pp.collect import Collection
 from thermo_pp.conditions import Treatment
-from thermo_pp.errors import Finding, StudyError
+from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.records import Calculation
 from thermo_pp.species import Structure, Thermochemistry, low_mode_spread_kj_mol
 
@@ -104,13 +104,7 @@ def structures(
         )
     if without:
         findings.append(_no_frequencies(without))
-    return Structures(kelvin, treatment, tuple(computed), _each_once(findings))
-
-
-def _each_once(findings: Sequence[Finding]) -> tuple[Finding, ...]:
-    """Return the findings without those that say of a file what a later one says too."""
-    kept = {(each.code, each.file, each.line): each for each in findings}
-    return tuple(kept.values())
+    return Structures(kelvin, treatment, tuple(computed), each_once(findings))
 
 
 def _names(calculations: Sequence[Calculation]) -> dict[str, str]:

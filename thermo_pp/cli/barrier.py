@@ -48,14 +48,13 @@ def barrier(
     result = loaded.effective()
     findings = tuple(dict.fromkeys((*loaded.findings, *result.findings)))
     treatment, unit = loaded.treatment, showing.energy_unit
-    levels: tuple[str, ...] = getattr(loaded, "levels", ())
     show(
         showing,
         findings,
         lambda: (
             output.wide(result, treatment, unit)
             if showing.format == "csv"
-            else barrier_tables.tables(result, treatment, unit, levels)
+            else barrier_tables.tables(result, treatment, unit, loaded.levels)
         ),
         lambda: output.keys(result, treatment, findings),
     )

@@ -54,14 +54,13 @@ def profile(
     result = loaded.profile(reference=reference, at_conditions=at_conditions)
     findings = tuple(dict.fromkeys((*loaded.findings, *result.findings)))
     treatment, unit = loaded.treatment, showing.energy_unit
-    levels: tuple[str, ...] = getattr(loaded, "levels", ())
     show(
         showing,
         findings,
         lambda: (
             output.wide(result, treatment, unit)
             if showing.format == "csv"
-            else output.tables(result, treatment, unit, levels)
+            else output.tables(result, treatment, unit, loaded.levels)
         ),
         lambda: output.keys(result, treatment, findings),
     )

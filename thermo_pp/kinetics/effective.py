@@ -407,13 +407,6 @@ def _findings(
                     f"high-pressure limit assumed for step {step.equation!r}, which controls the rate",
                     "at low pressure declare a fall-off rate constant for it",
                 )
-    else:
-        add(
-            "solvation-slope",
-            "note",
-            "the temperature derivative of the solvation terms is not in H, S and E_a unless the energies hold it",
-            "read E_a with that in mind",
-        )
     return tuple(findings)
 
 

@@ -56,11 +56,37 @@ def spectrum(
     tails, heads : m integers
         States that each step joins; `OUTSIDE` for one that absorbs.
     """
+    shift = 0.5 * (np.max(log_flux) - np.min(log_weight))
+    factors = _factors(-0.5 * log_weight, 0.5 * log_flux - shift, tails, heads)
+    logs = np.sort(factors[1])
+    r, done = len(logs), 0
+    log_values = np.empty(r)
+    states, steps = np.empty((len(log_weight), r)), np.empty((len(log_flux), r))
+    while done < r:
+        # the pivots of a range that ordinary numbers hold; those above are as good as the largest of
+        # them, those below (done already) as good as 0
+        middle = logs[done] + _WIDE
+        found, left, right = _singular(*factors, middle)
+        held = int(np.sum(found[done:] < 0.5 * _WIDE))
+        more = r if logs[-1] - middle <= _WIDE else done + max(held, 1)
+        log_values[done:more] = found[done:more] + middle
+        states[:, done:more], steps[:, done:more] = left[:, done:more], right[:, done:more]
+        done = more
+    return Spectrum(2.0 * (log_values + shift), states, steps)
+
+
+_WIDE = 200.0
+"""ln of how far ordinary numbers are used to each side of 1; their squares must be numbers too."""
+
+
+def _singular(
+    lower: FloatArray, log_pivots: FloatArray, upper: FloatArray, middle: float
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return ln of the singular values of L D U over exp(middle), ascending, and the left and right vectors."""
     from scipy.linalg import qr
     from scipy.linalg.lapack import dgejsv
 
-    shift = 0.5 * (np.max(log_flux) - np.min(log_weight))
-    lower, pivots, upper = _factors(-0.5 * log_weight, 0.5 * log_flux - shift, tails, heads)
+    pivots = np.exp(np.clip(log_pivots - middle, -3.0 * _WIDE, _WIDE))
     orthogonal, triangle, order = qr(lower * pivots, mode="economic", pivoting=True)
     product = triangle @ upper[order]
     # restricted range and no perturbation are off: small singular values are wanted to their last
@@ -70,17 +96,15 @@ def spectrum(
         raise ArithmeticError(f"the singular values did not converge (info {info})")
     scale = work[0] / work[1]
     ascending = np.argsort(values)
-    return Spectrum(
-        log_decay=2.0 * (np.log(values[ascending] * scale) + shift),
-        states=(orthogonal @ left)[:, ascending],
-        steps=right[:, : len(values)][:, ascending],
-    )
+    with np.errstate(divide="ignore"):
+        logs = np.log(values[ascending] * scale)
+    return logs, (orthogonal @ left)[:, ascending], right[:, : len(values)][:, ascending]
 
 
 def _factors(
     log_row: FloatArray, log_column: FloatArray, tails: Sequence[int], heads: Sequence[int]
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Return L (n, r), the pivots (r,) and U (r, m) of diag(exp(log_row)) X diag(exp(log_column))."""
+    """Return L (n, r), ln of the pivots (r,) and U (r, m) of diag(exp(log_row)) X diag(exp(log_column))."""
     n, m = len(log_row), len(log_column)
     ends = np.array([tails, heads])  # the row that each end of a step stands in by now
     signs = np.array([1.0, -1.0])
@@ -99,9 +123,9 @@ def _factors(
             column[other] = -np.exp(log_row[other] - log_row[row])
         at_row = ends == row
         relative = np.exp(np.where(open_steps, log_column - log_column[step], -np.inf))
-        line = ((at_row * signs[:, np.newaxis]).sum(axis=0) * relative) / signs[side]
+        line = (at_row * signs[:, np.newaxis]).sum(axis=0) * relative
         lower.append(column)
         upper.append(line)
-        pivots.append(signs[side] * np.exp(entries[side, step]))
+        pivots.append(entries[side, step])
         ends[at_row] = other
     return np.array(lower).T, np.array(pivots), np.array(upper).reshape(len(pivots), m)

@@ -49,17 +49,16 @@ class Document:
     mend: str
 
     @cached_property
-    def _places(self) -> dict[tuple[str, ...], int]:
-        """Offset of every key outside lists, by its path."""
-        places: dict[tuple[str, ...], int] = {}
-        path: list[str | None] = []  # the key of each open object, None for a list
+    def _places(self) -> dict[tuple[str | None, ...], int]:
+        """Offset of every key by its path; None stands for a list, so that no path asked for has it."""
+        places: dict[tuple[str | None, ...], int] = {}
+        path: list[str | None] = []
         string, at = b"", 0
         for token in _TOKEN.finditer(self.text.data):
             mark = token.group()
             if mark == b":":
                 path[-1] = json.loads(string)
-                if None not in path:
-                    places.setdefault(tuple(key for key in path if key is not None), at)
+                places[tuple(path)] = at
             elif mark in b"{[":
                 path.append("" if mark == b"{" else None)
             elif mark in b"}]":

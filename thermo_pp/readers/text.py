@@ -16,6 +16,7 @@ from thermo_pp.errors import ReadError
 from thermo_pp.sources import Source
 
 CUT_SHORT = "the output is cut short or damaged here; rerun or re-copy it"
+_BLANK_LINE = re.compile(rb"\n[ \t]*\r?\n")
 _NUMBER = re.compile(rb"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][+-]?\d+)?")
 
 
@@ -114,10 +115,8 @@ class Text:
 
     def blank_line(self, at: int) -> int:
         """Return where the first empty line after `at` begins; the end of the part where there is none."""
-        stop = self.data.find(b"\n\n", at, self.end)
-        if stop < 0:
-            stop = self.data.find(b"\n\r\n", at, self.end)
-        return self.end if stop < 0 else stop + 1
+        match = _BLANK_LINE.search(self.data, at, self.end)
+        return self.end if match is None else match.start() + 1
 
     def rest(self, at: int) -> bytes:
         """Return the line's bytes from `at` on."""

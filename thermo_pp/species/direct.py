@@ -136,12 +136,13 @@ def thermochemistry(
 def solution_finding() -> Finding:
     """Return what a user must know about every result in solution; a study says it once."""
     return Finding(
-        code="solvation-at-one-temperature",
-        severity="note",
+        code="solvation-derivative",
+        severity="warning",
         file=None,
         line=None,
-        what="the temperature derivative of the solvation energy is not in H, S and E_a",
-        mend="read G at the temperature of the solvation model; take H and S with care",
+        what="the phase is a solution, and how solvation depends on temperature is not in H, S and "
+        "the Arrhenius energies",
+        mend="declare the species whose solvation was computed at several temperatures",
     )
 
 

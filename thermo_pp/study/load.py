@@ -45,6 +45,8 @@ class Study:
     mechanism : Mechanism
     species : mapping of str to SpeciesModel
         Saddle points included, in the order of the file.
+    levels : tuple of str
+        The levels of theory in words.
     findings : tuple of Finding
         Of the outputs, of the pairs of frequency job and single point, of the levels of theory and
         of the mechanism.
@@ -56,6 +58,7 @@ class Study:
     conditions: Conditions
     mechanism: Mechanism
     species: Mapping[str, SpeciesModel]
+    levels: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = field(default=())
 
     def __post_init__(self) -> None:
@@ -116,6 +119,7 @@ class Study:
             conditions=conditions,
             mechanism=mechanism,
             species=members.species,
+            levels=members.levels,
             findings=tuple(dict.fromkeys(findings)),
         )
 

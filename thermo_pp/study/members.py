@@ -8,16 +8,17 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from thermo_pp import conditions as made
-from thermo_pp.audit.levels import level_findings
+from thermo_pp.audit import audit_alone
+from thermo_pp.audit.levels import level_findings, level_words
 from thermo_pp.conditions import Treatment
-from thermo_pp.errors import Finding, StudyError
+from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind
 from thermo_pp.nearest import suggestion
 from thermo_pp.pairing import pair
 from thermo_pp.readers import read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
-from thermo_pp.species import Declared, SpeciesModel, Structure
+from thermo_pp.species import Declared, SpeciesModel, Structure, solution_finding
 from thermo_pp.study.check import place
 from thermo_pp.study.keys import SpeciesKeys, StudyKeys
 from thermo_pp.study.parts import given, real_below
@@ -43,10 +44,13 @@ class Members:
         In the order of the file.
     findings : tuple of Finding
         Of the outputs, the pairs, the species and the levels of theory.
+    levels : tuple of str
+        The levels of theory in words, a sentence each; empty where all species are declared.
     """
 
     species: dict[str, SpeciesModel]
     findings: tuple[Finding, ...]
+    levels: tuple[str, ...]
 
 
 @dataclass(eq=False)
@@ -101,15 +105,31 @@ def make_species(
         _check_member(name, member, keys.species, file)
     for name in keys.species:
         _make(maker, name, ())
-    found = [finding for calc in maker.read.values() for finding in calc.findings]
+    found: list[Finding] = []
+    for calc in maker.read.values():
+        found += [*calc.findings, *audit_alone(calc)]
     found += maker.findings
     found += [finding for model in maker.done.values() for finding in model.findings]
     found += level_findings([*maker.frequencies.values()], "frequencies")
     found += level_findings([*maker.energies.values()], "energies")
     found += _same_file(maker.frequencies, file)
     if treatment.phase == "solution" and maker.frequencies:
-        found.append(_solvation(file))
-    return Members({name: maker.done[name] for name in keys.species}, tuple(found))
+        found.append(replace(solution_finding(), file=file))
+    species = {name: maker.done[name] for name in keys.species}
+    return Members(species, each_once(found), _levels(maker))
+
+
+def _levels(maker: _Maker) -> tuple[str, ...]:
+    """Write the levels of theory of the energies and of the frequencies."""
+    sentences = []
+    for what, calculations in (
+        ("Energies", maker.energies),
+        ("Geometries and frequencies", maker.frequencies),
+    ):
+        words = dict.fromkeys(level_words(calc) or "not stated" for calc in calculations.values())
+        if words:
+            sentences.append(f"{what}: {'; '.join(words)}.")
+    return tuple(sentences)
 
 
 def _check_member(
@@ -296,18 +316,6 @@ def _inside(maker: _Maker, name: str, where: str) -> Path:
 def _plain(path: Path) -> Path:
     """Return the absolute path without ``..``; links are not followed."""
     return Path(os.path.normpath(path.absolute()))
-
-
-def _solvation(file: str) -> Finding:
-    return Finding(
-        "solvation-derivative",
-        "warning",
-        file,
-        None,
-        "the phase is a solution, and how solvation depends on temperature is not in H, S and the "
-        "Arrhenius energies",
-        "declare the species whose solvation was computed at several temperatures",
-    )
 
 
 def _same_file(frequencies: Mapping[str, Calculation], file: str) -> list[Finding]:

@@ -45,6 +45,8 @@ _UNCONVERGED = b"Calculation failed to converge"
 _DOUBLE_HYBRID = (b"Total DFT+SCS-MP2 energy", b"Total DFT+MP2 energy")
 _MP2_TOTAL = b"Total MP2 energy  "
 _SCS_TOTAL = b"Total SCS-MP2 energy"
+_SCS_ONLY = b"SCS Correlation energy"
+"""Stands where the scaled energy is the module's only one."""
 _CC_PROGRAM = b"the segmented parallel ccsd program"
 _CC_LEVEL = b"level of theory "
 _CC_TOTALS = {
@@ -202,7 +204,7 @@ def _double_hybrid(text: Text, solution: Solution, end: int) -> Energy:
 def _second_order(text: Text, solution: Solution, label: str, end: int) -> Energy:
     at = text.data.find(_MP2_TOTAL, solution.at, end)
     mark = _MP2_TOTAL
-    if at < 0:
+    if at < 0 and text.data.find(_SCS_ONLY, solution.at, end) >= 0:
         at = text.data.find(_SCS_TOTAL, solution.at, end)
         mark, label = _SCS_TOTAL, f"SCS-{label}"
     if at < 0:
