@@ -9,8 +9,10 @@ what the file says.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
+from copy import copy
 from dataclasses import dataclass, field, replace
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -110,7 +112,9 @@ class Plan:
                 lines.append(f"viscosity = {pairs}")
         lines.append("[effective]")
         for key, value in self.question.items():
-            lines.append(f"{key} = {list(value)}" if isinstance(value, tuple) else f'{key} = "{value}"')
+            lines.append(
+                f"{key} = {list(value)}" if isinstance(value, tuple) else f'{key} = "{value}"'
+            )
         return "\n".join(lines) + "\n"
 
     def load(self, folder: Path, **options: Any) -> Study:
@@ -139,20 +143,32 @@ class Reference:
         self, plan: Plan, temperature: mp.mpf, shifts: Shifts | None = None, digits: int = DIGITS
     ) -> None:
         self.plan, self.digits = plan, digits
+        self.catalyst = plan.question.get("catalyst")
+        product = plan.question["product"]
+        self.products = (product,) if isinstance(product, str) else tuple(product)
+        self.start = self.catalyst or plan.question["reactant"]
         with mp.workdps(digits):
             self.temperature = mp.mpf(temperature)
             self.rt = GAS * self.temperature
-            self.shifts = shifts or {}
-            self.catalyst = plan.question.get("catalyst")
-            product = plan.question["product"]
-            self.products = (product,) if isinstance(product, str) else tuple(product)
-            self.start = self.catalyst or plan.question["reactant"]
+            self.plains = {name: self._plain(name) for name in plan.species}
+            self.unmoved = [self._constants(k) for k in range(len(plan.steps))]
+        self._move(shifts or {})
+
+    def moved(self, what: str | int, by: mp.mpf) -> Reference:
+        """Return the rates with G/RT of a species, or of a step's effective saddle, moved."""
+        other = copy(self)
+        other._move({what: by})
+        return other
+
+    def _move(self, shifts: Shifts) -> None:
+        with mp.workdps(self.digits):
+            self.shifts = shifts
             self.held = self._concentrations()
-            self.constants = [self._constants(k) for k in range(len(plan.steps))]
+            self.constants = [self._moved_constants(k) for k in range(len(self.plan.steps))]
             self._network()
 
     # ------------------------------------------------------------------ thermochemistry
-    def plain(self, name: str) -> mp.mpf:
+    def _plain(self, name: str) -> mp.mpf:
         """G/RT at 1 mol/L, not shifted."""
         member, t = self.plan.species[name], self.temperature
         enthalpy, entropy = mp.mpf(member.enthalpy) * 1000, mp.mpf(member.entropy)
@@ -165,15 +181,7 @@ class Reference:
 
     def gibbs(self, name: str) -> mp.mpf:
         """G/RT at 1 mol/L."""
-        return self.plain(name) + self.shifts.get(name, 0)
-
-    def slope(self, name: str) -> mp.mpf:
-        """-T^2 d(G/T)/dT of a species in its own standard state, J/mol: its enthalpy."""
-        member = self.plan.species[name]
-        enthalpy = mp.mpf(member.enthalpy) * 1000
-        if member.heat_capacity is not None:
-            enthalpy += mp.mpf(member.heat_capacity) * (self.temperature - mp.mpf(298.15))
-        return enthalpy
+        return self.plains[name] + self.shifts.get(name, 0)
 
     def _concentrations(self) -> dict[str, mp.mpf]:
         questioned = set() if self.catalyst else {self.start, *self.products}
@@ -212,8 +220,8 @@ class Reference:
     def _constants(self, number: int) -> tuple[mp.mpf, mp.mpf]:
         step, t = self.plan.steps[number], self.temperature
         left, right = step.sides()
-        g_left = sum(n * self.plain(s) for s, n in left.items())
-        g_right = sum(n * self.plain(s) for s, n in right.items())
+        g_left = sum(n * self.plains[s] for s, n in left.items())
+        g_right = sum(n * self.plains[s] for s, n in right.items())
         balance = mp.e ** (g_left - g_right)  # K
         frequency = BOLTZMANN * t / PLANCK
         if step.key == "rate":
@@ -228,15 +236,21 @@ class Reference:
                 two = [left if g_right <= g_left else right]
             direct = None
             if step.key == "through":
-                direct = frequency * mp.e ** (g_left - self.plain(step.value))
+                direct = frequency * mp.e ** (g_left - self.plains[step.value])
             forward = direct
             if two and (self.plan.phase == "gas" or step.viscosity is not None):
                 limit = self._limit(step, two[0])
                 if two[0] == right:
                     limit *= balance
                 forward = limit if direct is None else 1 / (1 / direct + 1 / limit)
+        return forward, forward / balance
+
+    def _moved_constants(self, number: int) -> tuple[mp.mpf, mp.mpf]:
+        forward, reverse = self.unmoved[number]
+        if not self.shifts:
+            return forward, reverse
+        left, right = self.plan.steps[number].sides()
         moved = -self.shifts.get(number, 0)
-        reverse = forward / balance
         ahead = sum(n * self.shifts.get(s, 0) for s, n in left.items())
         back = sum(n * self.shifts.get(s, 0) for s, n in right.items())
         return forward * mp.e ** (moved + ahead), reverse * mp.e ** (moved + back)
@@ -250,8 +264,13 @@ class Reference:
         radii, masses = [], []
         for name in names:
             atoms = self.plan.species[name].atoms
-            radii.append(sum(n * mp.mpf(float(vdw_radii[atomic_numbers[e]])) ** 3 for e, n in atoms.items()) ** (mp.mpf(1) / 3))
-            masses.append(sum(n * mp.mpf(float(atomic_masses_iupac2016[atomic_numbers[e]])) for e, n in atoms.items()))
+            cubes, mass = mp.mpf(0), mp.mpf(0)
+            for element, number in atoms.items():
+                z = atomic_numbers[element]
+                cubes += number * mp.mpf(float(vdw_radii[z])) ** 3
+                mass += number * mp.mpf(float(atomic_masses_iupac2016[z]))
+            radii.append(cubes ** (mp.mpf(1) / 3))
+            masses.append(mass)
         area = mp.pi * (sum(radii) * mp.mpf("1e-10")) ** 2
         reduced = masses[0] * masses[1] / sum(masses) * ATOMIC_MASS
         speed = mp.sqrt(8 * BOLTZMANN * self.temperature / (mp.pi * reduced))
@@ -427,7 +446,7 @@ def viscosity(points: Any, temperature: mp.mpf) -> mp.mpf:
     """Return the viscosity, ln eta linear in 1/T between the points."""
     if len(points) == 1:
         return mp.mpf(points[0][1])
-    for (t1, eta1), (t2, eta2) in zip(points[:-1], points[1:], strict=True):
+    for (t1, eta1), (t2, eta2) in pairwise(points):
         if t1 <= temperature <= t2:
             share = (1 / temperature - 1 / mp.mpf(t1)) / (1 / mp.mpf(t2) - 1 / mp.mpf(t1))
             return mp.e ** ((1 - share) * mp.log(mp.mpf(eta1)) + share * mp.log(mp.mpf(eta2)))
@@ -437,12 +456,16 @@ def viscosity(points: Any, temperature: mp.mpf) -> mp.mpf:
 def polynomial(m: mp.matrix) -> list[mp.mpf]:
     """Return det(M - x) up to its sign, lowest power first (Faddeev, LeVerrier)."""
     n = m.rows
-    power, coefficients = mp.eye(n), [mp.mpf(1)]
+    rows = m.tolist()
+    power = [[mp.mpf(i == j) for j in range(n)] for i in range(n)]
+    coefficients = [mp.mpf(1)]
     for k in range(1, n + 1):
-        product = m * power
-        c = -sum(product[i, i] for i in range(n)) / k
+        columns = list(zip(*power, strict=True))
+        power = [[mp.fdot(row, column) for column in columns] for row in rows]
+        c = -sum(power[i][i] for i in range(n)) / k
         coefficients.append(c)
-        power = product + c * mp.eye(n)
+        for i in range(n):
+            power[i][i] += c
     return coefficients[::-1]
 
 
@@ -493,8 +516,10 @@ def null_vector(m: mp.matrix, value: mp.mpf) -> list[mp.mpf]:
     return list(vector)
 
 
-def arrhenius_energy(plan: Plan, temperature: float, definition: str, digits: int = DIGITS) -> mp.mpf:
-    """Return R T^2 d ln k/dT by a difference over 2e-20 T, kJ/mol."""
+def arrhenius_energy(
+    plan: Plan, temperature: float, definition: str, digits: int = DIGITS
+) -> mp.mpf:
+    """Return R T^2 d ln k/dT by a tiny difference, kJ/mol."""
     with mp.workdps(digits):
         t, h = mp.mpf(temperature), mp.mpf(10) ** -(digits // 4)
         up, down = (
@@ -504,16 +529,84 @@ def arrhenius_energy(plan: Plan, temperature: float, definition: str, digits: in
         return GAS * t * (up - down) / (2 * h) / 1000
 
 
-def control(
-    plan: Plan, temperature: float, definition: str, what: str | int, digits: int = DIGITS
-) -> mp.mpf:
-    """Return d ln k/d(-G/RT) of a species, or of a step's effective saddle (by its number)."""
-    with mp.workdps(digits):
-        h = mp.mpf(10) ** -(digits // 4)
-        up, down = (
-            mp.log(
-                abs(Reference(plan, mp.mpf(temperature), {what: s * h}, digits).rate(definition))
-            )
-            for s in (1, -1)
-        )
-        return (down - up) / (2 * h)
+def controls(
+    reference: Reference, definition: str, whats: Iterable[str | int]
+) -> dict[str | int, float]:
+    """Return d ln k/d(-G/RT) of species (names) and steps' effective saddles (numbers), by a tiny difference."""
+    with mp.workdps(reference.digits):
+        h = mp.mpf(10) ** -(reference.digits // 3)
+        here = reference.rate(definition)
+        return {
+            what: float((1 - reference.moved(what, h).rate(definition) / here) / h)
+            for what in whats
+        }
+
+
+# ------------------------------------------------------------------------------------- plans
+
+# three intermediates C1, C2, C3 in a loop with a branch to P, and a dead end D
+MEMBERS = {
+    "A": Member("CO", 0.0, 200.0),
+    "W": Member("H2O", 0.0, 188.5),
+    "W2": Member("(H2O)2", -15.0, 290.3),
+    "C1": Member("CH2O2", -30.0, 280.0),
+    "C2": Member("CH2O2", -20.0, 260.5),
+    "C3": Member("CH4O3", -60.0, 330.0),
+    "D": Member("CH2O2", -45.0, 250.0),
+    "P": Member("CH2O2", -80.0, 270.0),
+    "T1": Member("CH2O2", 10.0, 250.0),
+    "T2": Member("CH2O2", 25.0, 251.0),
+    "T12": Member("CH2O2", 30.0, 245.0),
+    "T3": Member("CH4O3", -5.0, 300.0),
+    "T4": Member("CH4O3", -10.0, 310.0),
+    "TD": Member("CH2O2", 12.0, 240.0),
+    "TP": Member("CH2O2", 35.0, 255.0),
+}
+STEPS = (
+    Line("W + W = W2", "barrier", "none"),
+    Line("A + W = C1", "through", "T1"),
+    Line("A + W = C2", "through", "T2"),
+    Line("C1 = C2", "through", "T12"),
+    Line("C1 + W = C3", "through", "T3"),
+    Line("C3 = P + W", "through", "T4"),
+    Line("C1 = D", "through", "TD"),
+    Line("C2 = P", "through", "TP"),
+)
+QUESTION = {"reactant": "A", "product": "P"}
+BRANCHED = Plan(MEMBERS, STEPS, QUESTION, {"W": "0.02 mol/L", "W2": "equilibrium"}, (300.0,))
+
+# a catalyst K: S + W = P by way of three states, and a dead end KD
+CATALYST = {
+    "K": Member("Ar", 0.0, 155.0),
+    "S": Member("CO", 0.0, 200.0),
+    "W": Member("H2O", 0.0, 188.5),
+    "KS": Member("ArCO", -30.0, 230.0),
+    "KSW": Member("ArCH2O2", -55.0, 270.0),
+    "KP": Member("ArCH2O2", -110.0, 275.0),
+    "KD": Member("ArCH2O2", -60.0, 240.0),
+    "P": Member("CH2O2", -80.0, 270.0),
+    "T1": Member("ArCO", 25.0, 225.0),
+    "T2": Member("ArCH2O2", 0.0, 265.0),
+    "T3": Member("ArCH2O2", 10.0, 260.0),
+    "T4": Member("ArCH2O2", -30.0, 290.0),
+    "TD": Member("ArCH2O2", 5.0, 250.0),
+}
+CYCLE_STEPS = (
+    Line("K + S = KS", "through", "T1"),
+    Line("KS + W = KSW", "through", "T2"),
+    Line("KSW = KP", "through", "T3"),
+    Line("KP = K + P", "through", "T4"),
+    Line("KSW = KD", "through", "TD"),
+)
+HELD = {"S": "0.1 mol/L", "W": "0.2 mol/L"}
+CYCLE = Plan(
+    CATALYST,
+    CYCLE_STEPS,
+    {"catalyst": "K", "product": "P"},
+    {**HELD, "P": "0.01 mol/L"},
+    (300.0,),
+)
+
+
+def without(members: dict[str, Member], *names: str) -> dict[str, Member]:
+    return {name: member for name, member in members.items() if name not in names}

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import re
 import subprocess
 import sys
@@ -15,14 +16,23 @@ BLOCK = re.compile(r"^```(\w+)\n(.*?)^```$", re.DOTALL | re.MULTILINE)
 
 
 def blocks(page: Path, language: str) -> list[str]:
-    return [body for name, body in BLOCK.findall(page.read_text(encoding="utf-8")) if name == language]
+    return [
+        body for name, body in BLOCK.findall(page.read_text(encoding="utf-8")) if name == language
+    ]
 
 
 @pytest.mark.parametrize("page", PAGES, ids=lambda page: page.name)
-def test_python_examples_run(page: Path) -> None:
+def test_python_examples_run(page: Path, tmp_path: Path) -> None:
+    (tmp_path / "fixtures").symlink_to(ROOT / "fixtures")  # what an example writes stays here
+    environment = {**os.environ, "PYTHONPATH": str(ROOT)}
     for body in blocks(page, "python"):
         done = subprocess.run(
-            [sys.executable, "-c", body], cwd=ROOT, capture_output=True, text=True, check=False
+            [sys.executable, "-c", body],
+            cwd=tmp_path,
+            env=environment,
+            capture_output=True,
+            text=True,
+            check=False,
         )
         assert done.returncode == 0, done.stderr
 
@@ -42,7 +52,9 @@ def test_readme_shows_what_the_program_prints() -> None:
     printed = ""
     for command in commands:
         words = [sys.executable, "-m", "thermo_pp", *command.split()[1:]]
-        printed += subprocess.run(words, cwd=ROOT, capture_output=True, text=True, check=True).stdout
+        printed += subprocess.run(
+            words, cwd=ROOT, capture_output=True, text=True, check=True
+        ).stdout
     assert printed == blocks(page, "text")[0]
 
 

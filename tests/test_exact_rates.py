@@ -222,4 +222,6 @@ def test_tree_weights() -> None:
     affinity = float(np.log(q[2, 0]) - (states[2] + np.log(q[0, 2]) - states[0]))
     case = Case(tuple(states), edges, saddles, (0.0,) * 6, affinity, (0, 0, 1))
     _, states, shares = per_cycle(network_of(case), 0, ONE_TURN, endless=False, driven=False)
-    assert shares[0, np.argsort(states)] == pytest.approx([197 / 334, 87 / 334, 50 / 334], rel=1e-13)
+    assert shares[0, np.argsort(states)] == pytest.approx(
+        [197 / 334, 87 / 334, 50 / 334], rel=1e-13
+    )

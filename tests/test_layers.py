@@ -20,7 +20,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
     ("readers",),  # 3
     ("collect", "species"),  # 4
-    ("pairing", "audit"),  # 5
+    ("pairing", "audit", "grouping"),  # 5
     ("graph", "loops", "paths", "profile", "kinetics"),  # 6
     (),  # 7: measured
     ("study",),  # 8
@@ -30,9 +30,12 @@ FLOORS: tuple[tuple[str, ...], ...] = (
 INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
-        "partition", "frames", "vibration", "symmetry", "superposition", "normal_modes", "rates",
+        "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates",
     ),
-    "collect": ("walk", "workers"),
+    "sources": ("limits", "compressed", "archives", "source", "disk"),
+    "collect": (
+        "walk", "outcome", "codec", "answers", "store", "workers", "cluster", "stream",
+    ),
     "audit": (
         "levels", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
     ),
@@ -40,7 +43,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
         "survey", "species", "profile", "barrier", "barrier_tables",
     ),
-    "cli": ("options", "answers", "survey", "species", "profile", "barrier"),
+    "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier"),
 }  # fmt: skip
 PURE = ("names", "errors", "units")
 """Modules that --help may import: without numpy at module level."""

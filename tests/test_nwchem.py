@@ -81,7 +81,7 @@ def test_energy_and_molecule(path: Path) -> None:
     assert calc.charge == (None if "charge" in unprinted else expect["charge"])
     assert calc.multiplicity == (None if "multiplicity" in unprinted else expect["multiplicity"])
     assert calc.masses_origin == "printed"
-    assert calc.ended_normally
+    assert calc.ended_normally is expect.get("ended_normally", True)
 
 
 @pytest.mark.parametrize("path", GOOD, ids=file_id)
@@ -192,11 +192,13 @@ def test_lines_say_what_they_are_said_to_say(path: Path) -> None:
             assert mark in lines[calc.where[field] - 1], field
     assert repr(abs(calc.energy_hartree))[:12] in lines[calc.where["energy_hartree"] - 1]
     first = lines[calc.where["positions_angstrom"] - 1].split()
-    assert first[0] == "1"
-    scale = 1.889725989 if path.stem == "water_hf_gradient" else 1.0  # that one is in bohr
-    assert [float(word) for word in first[3:6]] == pytest.approx(
-        (calc.positions_angstrom[0] * scale).tolist(), abs=1e-12
-    )
+    assert "1" in first[:2]
+    bohr = calc.wavenumbers_cm is not None or path.stem == "water_hf_gradient"
+    words = first[2:5] if calc.wavenumbers_cm is not None else first[3:6]
+    printed = [float(word.replace("D", "e")) / (1.889725989 if bohr else 1.0) for word in words]
+    assert calc.positions_angstrom[0].tolist() == pytest.approx(printed, abs=1e-12)
+    if calc.wavenumbers_cm is not None:
+        assert f"{calc.masses_u[0]:.7e}"[:9] in lines[calc.where["masses_u"] - 1]
 
 
 @pytest.mark.parametrize("path", BAD, ids=file_id)
@@ -282,6 +284,7 @@ def test_nothing_else_is_doubted() -> None:
     told = {
         "formaldehyde_hf_b3lyp_mp2_tasks",
         "methanol_hf_freq_after_unconverged_optimize",
+        "methanol_hf_optimize_unconverged",
         "methanol_hf_optimize_unconverged_ignore",
         "two_molecules_hf",
         "water_b3lyp_opt_freq_then_energy",
@@ -326,6 +329,25 @@ def test_an_energy_of_another_geometry_or_state_is_not_taken() -> None:
     assert (cation.charge, cation.multiplicity, cation.method) == (1, 2, "B3LYP")
     mixed = nwchem.read(joined("water_ccsdt_energy", "water_then_cation_dft_energy"))
     assert mixed.energy_hartree == cation.energy_hartree
+
+
+def test_an_energy_of_another_charge_is_not_taken() -> None:
+    cation = good("water_hf_energy").read_bytes()
+    for old, new in (
+        (b"closed shells   =     5", b"closed shells   =     4"),
+        (b"charge          =   0.00", b"charge          =   2.00"),
+    ):
+        assert old in cation
+        cation = cation.replace(old, new)
+    neutral = good("water_ccsdt_energy").read_bytes()
+    calc = nwchem.read(Source("joined.out", neutral + cation))
+    assert (calc.energy_label, calc.charge, calc.multiplicity) == ("HF", 2, 1)
+
+
+def test_an_scf_that_did_not_converge_gives_no_energy_whatever_the_end_says() -> None:
+    path = FIXTURES / "nwchem" / "bad" / "water_scf_unconverged_ignore.out"
+    with pytest.raises(ReadError, match="SCF iterations did not converge"):
+        nwchem.read(changed(path, b"!! warning: scf energy failed", b""))
 
 
 def test_a_later_task_that_failed_is_passed_over_and_said_so() -> None:
@@ -547,7 +569,12 @@ def test_crlf_reads_the_same(path: Path) -> None:
 @pytest.mark.parametrize(
     ("name", "old", "new", "what"),
     [
-        ("water_hf_freq", b"0.11404600\n", b"0.11404500\n", "not those of any geometry"),
+        (
+            "water_hf_freq",
+            b"1.4248572D+00",
+            b"1.4248672D+00",
+            "belongs to the geometry of its modes",
+        ),
         ("water_hf_energy", b"0.11920000", b"0.11930000", "nuclear repulsion"),
         ("water_hf_freq", b"1.5994910D+01", b"1.7994910D+01", "mass-weighted length"),
         ("water_hf_freq", b"4086.712 ||    0", b"4186.712 ||    0", "in the table of modes"),
@@ -600,8 +627,102 @@ def test_crlf_reads_the_same(path: Path) -> None:
             b"@    2     -76.27634174 -1.1D-06",
             "last step",
         ),
+        ("water_hf_energy", b"charge          =   0.00", b"charge          =   1.00", "do not fit"),
+        (
+            "water_hf_energy",
+            b"Two-electron energy =     37",
+            b"Two-electron energy =     38",
+            "its parts",
+        ),
+        (
+            "water_b3lyp_opt_freq",
+            b"Beta electrons :     5",
+            b"Beta electrons :     4",
+            "do not fit",
+        ),
+        (
+            "water_hf_freq",
+            b"Entropy                    =   44.952",
+            b"Entropy                    =   44.962",
+            "sum of its parts",
+        ),
+        (
+            "water_hf_freq",
+            b"=   16.817 kcal/mol  (  0.026800",
+            b"=   16.837 kcal/mol  (  0.026832",
+            "not R T",
+        ),
+        ("water_hf_freq", b"  4.26745D+02", b"  4.46745D+02", "not have the wavenumbers"),
+        (
+            "water_hf_freq",
+            b"Nuclear Hessian and Frequency Analysis",
+            b"Nuclear Hessian or Freq",
+            "does not know",
+        ),
+        (
+            "water_hf_freq",
+            b"NWChem Nuclear Hessian",
+            b"Nuclear Hessian",
+            "no heading of a frequency",
+        ),
+        (
+            "water_pbe0_optimize",
+            b"Optimization converged",
+            b"Optimization conserved",
+            "how it ended",
+        ),
     ],
 )
 def test_damage_is_found(name: str, old: bytes, new: bytes, what: str) -> None:
     with pytest.raises(ReadError, match=what):
         nwchem.read(changed(good(name), old, new, -1))
+
+
+# the text helper
+
+
+def test_line_numbers_of_many_places_are_those_of_each() -> None:
+    source = open_source(PLUME / "water.out")
+    text = Text(source)
+    size = len(source.data)
+    places = {str(at): at for at in (0, 1, 80, size // 3, size // 3 + 1, size - 2, size)}
+    expected = {name: source.data.count(b"\n", 0, at) + 1 for name, at in places.items()}
+    assert text.line_numbers(places) == expected
+    assert text.line_numbers({}) == {}
+
+
+@pytest.mark.parametrize(
+    ("line", "digits"),
+    [
+        (b"  -1.5  x", "-1.5"),
+        (b"1.0D-02", "1.0e-02"),
+        (b" 298.15K\n", "298.15"),
+        (b"  ******  (  0.5)", None),
+        (b" NaN", None),
+        (b" 12abc", None),
+        (b"", None),
+    ],
+)
+def test_exact_numbers(line: bytes, digits: str | None) -> None:
+    text = Text(Source("a.out", line))
+    if digits is None:
+        with pytest.raises(ReadError, match=r"a\.out:1: expected a number"):
+            text.exact_text(0, "a number", b"K")
+    else:
+        assert text.exact_text(0, "a number", b"K") == digits
+
+
+@pytest.mark.parametrize(
+    ("table", "line"),
+    [(b"1 2\n3 4 5\n\n", 2), (b"1 x\n3 4\n\n", 1), (b"1 2\n3 inf\n\n", 2), (b"1 2\n", 2)],
+)
+def test_damaged_rows(table: bytes, line: int) -> None:
+    with pytest.raises(ReadError, match=rf"a\.out:{line}: "):
+        Text(Source("a.out", table)).rows(0, [2, 2], "numbers")
+
+
+def test_rows() -> None:
+    for data in (b"1 2D0\n3 4\n\nx", b"1 2D0\n3 4\nx\n", b"1 2D0\r\n3 4\r\n \r\nx"):
+        values, end = Text(Source("a.out", data)).rows(0, [2, 2], "numbers")
+        assert values == [1.0, 2.0, 3.0, 4.0]
+        assert data[end:].strip() == b"x"

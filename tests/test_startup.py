@@ -27,7 +27,9 @@ def loaded(code: str) -> set[str]:
     return set(run.stdout.rpartition("loaded:")[2].split())
 
 
-@pytest.mark.parametrize("command", [[], ["survey"], ["species"], ["profile"], ["barrier"]])
+@pytest.mark.parametrize(
+    "command", [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"]]
+)
 def test_help_loads_nothing_heavy(command: list[str]) -> None:
     arguments = [*command, "--help"]
     assert loaded(f"from thermo_pp.cli import main; main({arguments!r})") == set()

@@ -56,6 +56,15 @@ class State:
     zero_point_kj_mol: float | None
     low_mode_spread_kj_mol: FloatArray
 
+    def __post_init__(self) -> None:
+        for array in (
+            self.enthalpy_kj_mol,
+            self.entropy_j_mol_k,
+            self.gibbs_kj_mol,
+            self.low_mode_spread_kj_mol,
+        ):
+            array.flags.writeable = False
+
 
 @dataclass(frozen=True, eq=False)
 class Profile:
@@ -81,6 +90,9 @@ class Profile:
     net_reactions: dict[str, str]
     states: tuple[State, ...]
     findings: tuple[Finding, ...] = ()
+
+    def __post_init__(self) -> None:
+        self.temperature_k.flags.writeable = False
 
     def table(self) -> pd.DataFrame:
         """Return one row a state and temperature, as plain numbers."""
@@ -189,12 +201,15 @@ def _find_reference(paths: Sequence[Path], wanted: str | None, mechanism: Mechan
     if wanted is None:
         return paths[0].states[0]
     where = f"{mechanism.where}, reference {wanted!r}"
-    counts, _ = parse_equation(f"{wanted} = {wanted}", where=where)
     known = {place.name: place for path in paths for place in path.states}
+    mend = "choose one of: " + ", ".join(known)
+    try:
+        counts, _ = parse_equation(f"{wanted} = {wanted}", where=where)
+    except StudyError:
+        raise StudyError(f"{wanted!r} is no sum of species", where=where, mend=mend) from None
     for place in known.values():
         if dict(place.species) == counts:
             return place
-    mend = "choose one of: " + ", ".join(known)
     raise StudyError(f"{write_sum(counts)} is no state of the profile", where=where, mend=mend)
 
 

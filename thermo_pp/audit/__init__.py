@@ -10,21 +10,28 @@ from thermo_pp.audit.modes import mode_findings
 from thermo_pp.audit.printed import printed_findings
 from thermo_pp.audit.state import state_findings
 from thermo_pp.audit.symmetry import symmetry_findings
-from thermo_pp.collect import Collection, Outcome, Paths, Progress, gather
+from thermo_pp.collect import Cache, Collection, Outcome, Paths, Progress, gather
 from thermo_pp.errors import Finding, ReadError
 from thermo_pp.readers import claims, read_source
 from thermo_pp.records import Calculation
-from thermo_pp.sources import HEAD_BYTES, open_source
+from thermo_pp.sources import LeftOut, Looked, Oversize, Piece, pieces
 
-__all__ = ["audit_alone", "audit_together", "collect", "read_and_audit"]
+__all__ = ["audit_alone", "audit_together", "collect", "read_and_audit", "read_and_audit_file"]
 
 BINARY = "binary"
 EMPTY = "empty"
 UNCLAIMED = "no reader claims it"
 
 
-def collect(paths: Paths, *, progress: Progress | None = None) -> Collection:
-    """Read and audit every output in folders and files.
+def collect(
+    paths: Paths,
+    *,
+    progress: Progress | None = None,
+    jobs: int | None = None,
+    cache: Cache = True,
+    scheduler: str | None = None,
+) -> Collection:
+    """Read and audit every output in folders and files, compressed ones and those in archives too.
 
     Parameters
     ----------
@@ -32,39 +39,71 @@ def collect(paths: Paths, *, progress: Progress | None = None) -> Collection:
         Folders and files.
     progress : callable or None
         Called with the number of files done.
+    jobs : int or None
+        How many processes read; all cores unless given.
+    cache : bool or path
+        Whether the answer of each file is remembered for the next time, in the user's cache folder
+        or in this one.
+    scheduler : str or None
+        Address of a running Dask scheduler whose workers read the files (``tcp://host:8786``); needs
+        the extra ``thermo-pp[cluster]`` and a file system that they share.
 
     Returns
     -------
     Collection
         Calculations, findings, what was left out and what failed. A file that cannot be read ends
-        nothing.
+        nothing. It does not depend on how many read, nor on what is remembered.
 
     Raises
     ------
     StudyError
-        A path that is not there.
+        A path that is not there, fewer than one process, a cluster that does not answer.
     """
-    return gather(paths, read_and_audit, audit_together, progress)
+    return gather(
+        paths,
+        read_and_audit_file,
+        audit_together,
+        progress=progress,
+        jobs=jobs,
+        cache=cache,
+        scheduler=scheduler,
+    )
+
+
+def read_and_audit_file(path: Path, name: str, looked: Looked) -> tuple[Outcome, ...]:
+    """Read what a file holds, one output or the members of an archive, and audit each alone."""
+    outcomes: list[Outcome] = []
+    try:
+        for piece in pieces(path, name, looked):
+            if isinstance(piece, LeftOut):
+                outcomes.append(Outcome(piece.name, skipped=piece.reason))
+            else:
+                outcomes.append(_outcome(piece))
+    except ReadError as error:  # the file cannot be opened, or the archive is damaged
+        outcomes.append(Outcome(name, skipped=error.what))
+    return tuple(outcomes)
 
 
 def read_and_audit(path: Path) -> Outcome:
-    """Read one file and audit it alone."""
-    name = str(path)
-    try:
-        with path.open("rb") as file:
-            head = file.read(HEAD_BYTES)
-    except OSError as error:
-        return Outcome(name, skipped=f"cannot be opened: {error.strerror or error}")
-    readers = claims(head)
+    """Read one file that is no archive and audit it alone."""
+    (outcome,) = read_and_audit_file(path, str(path), Looked())
+    return outcome
+
+
+def _outcome(piece: Piece) -> Outcome:
+    """Return what one output gives."""
+    readers = claims(piece.head)
     if not readers:
-        return Outcome(name, skipped=_reason(head))
+        return Outcome(piece.name, skipped=_reason(piece.head))
     reader = " and ".join(each.NAME for each in readers)
     try:
-        calculation = read_source(open_source(path))
+        calculation = read_source(piece.source())
+    except Oversize as error:
+        return Outcome(piece.name, skipped=error.what)
     except ReadError as error:
-        return Outcome(name, reader=reader, error=error)
+        return Outcome(piece.name, reader=reader, error=error)
     findings = (*calculation.findings, *audit_alone(calculation))
-    return Outcome(name, reader=reader, calculation=calculation, findings=findings)
+    return Outcome(piece.name, reader=reader, calculation=calculation, findings=findings)
 
 
 def audit_alone(calculation: Calculation) -> tuple[Finding, ...]:

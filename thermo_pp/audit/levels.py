@@ -155,6 +155,15 @@ def folder_level_findings(calculations: Sequence[Calculation]) -> tuple[Finding,
     return tuple(found)
 
 
+def stated_level(calc: Calculation) -> dict[str, str]:
+    """Return the fields of the level that matter and that the file states, as they are compared."""
+    return {
+        field: _key(field, str(getattr(calc, field)))
+        for field, _ in FIELDS
+        if _matters(field, calc) and getattr(calc, field) is not None
+    }
+
+
 def _level(calc: Calculation) -> tuple[str | None, ...]:
     """Return the fields of the level as they are compared."""
     values = []

@@ -8,8 +8,9 @@ rounding means that the file is damaged or was read wrongly, and not that consta
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterator, Mapping
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,7 +30,10 @@ from thermo_pp.records import Calculation, Printed
 MOST_DECIMALS = 6
 """Of printed wavenumbers; what has more was not printed but computed."""
 STEPS = 1.0
-"""How many units of its last digit a printed value may be off."""
+"""How many units of its last digit a printed value may be off, unless the reader has PRINTED_STEPS."""
+_OF_ENTROPY = ("entropy", "vibrational_entropy", "gibbs")
+_OF_MODES = (*_OF_ENTROPY, "zero_point", "thermal_energy", "thermal_enthalpy", "heat_capacity_v")
+_WITH_TEMPERATURE = re.compile(r"Eh/\((\d+\.?\d*) K\)")
 MOST_NAMED = 4
 _WORDS = {"zero_point": "zero-point energy", "heat_capacity_v": "Cv", "enthalpy": "H", "gibbs": "G"}
 
@@ -43,17 +47,19 @@ class Ours(NamedTuple):
 
 def printed_findings(calculation: Calculation) -> tuple[Finding, ...]:
     """Return a finding where the program's own thermochemistry is not ours."""
-    constants = _constants(calculation.program)
+    constants = _of_reader(calculation.program, "PRINTED_CONSTANTS")
     if constants is None or calculation.wavenumbers_cm is None:
         return ()
+    steps = _of_reader(calculation.program, "PRINTED_STEPS") or STEPS
+    passed_over = _not_ours(calculation)
     wrong: list[tuple[str, Printed, float]] = []
     for name, candidates in own_values(calculation, constants).items():
         printed = calculation.printed.get(name)
-        if printed is None:
+        if printed is None or name in passed_over:
             continue
         scale = _per_unit(printed.unit, constants)
         off = [
-            abs(ours.value * scale - printed.value) - STEPS * printed.step - ours.doubt * scale
+            abs(ours.value * scale - printed.value) - steps * printed.step - ours.doubt * scale
             for ours in candidates
         ]
         if min(off) > 0.0:
@@ -217,11 +223,24 @@ def _rotational(
     return constants["GAS_J_MOL_K"] / units.GAS_J_MOL_K * float(share.entropy_j_mol_k)
 
 
-def _constants(program: str) -> Mapping[str, float] | None:
-    """Return the constants behind what a program prints, None where they are not known."""
+def _not_ours(calculation: Calculation) -> tuple[str, ...]:
+    """Return the keys that the program computes in another way, as the file says.
+
+    ``entropy_model`` names another treatment of soft modes than harmonic ones; ``modes_used`` says
+    how many modes the thermochemistry has, where that is not all real ones.
+    """
+    assert calculation.wavenumbers_cm is not None
+    used = calculation.printed.get("modes_used")
+    if used is not None and used.value != int(np.sum(calculation.wavenumbers_cm > 0.0)):
+        return (*_OF_MODES, "enthalpy")
+    return _OF_ENTROPY if "entropy_model" in calculation.printed else ()
+
+
+def _of_reader(program: str, name: str) -> Any:
+    """Return what the program's reader says of how its printed values come about, None without."""
     for reader in READERS:
         if program == reader.NAME:
-            return getattr(reader, "PRINTED_CONSTANTS", None)
+            return getattr(reader, name, None)
     return None
 
 
@@ -262,6 +281,9 @@ def _hartree_j_mol(constants: Mapping[str, float]) -> float:
 def _per_unit(unit: str, constants: Mapping[str, float]) -> float:
     """Return 1 J/mol, or 1 J/(mol K), in a printed unit."""
     calorie = constants.get("CALORIE_J", units.CALORIE_J)
+    product = _WITH_TEMPERATURE.fullmatch(unit)
+    if product is not None:  # printed as T S
+        return float(product.group(1)) / _hartree_j_mol(constants)
     return {
         "Eh": 1.0 / _hartree_j_mol(constants),
         "kJ/mol": 1e-3,

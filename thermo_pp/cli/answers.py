@@ -40,10 +40,21 @@ def show(
     always : bool
         The result is written even if --strict ends the run, and every finding is told.
     """
+    show_text(showing, findings, lambda: _text(showing, blocks, keys), always=always)
+
+
+def show_text(
+    showing: Showing,
+    findings: Sequence[Finding],
+    text: Callable[[], str],
+    *,
+    always: bool = False,
+) -> None:
+    """Show a text that `text` makes, and findings, as `show` does."""
     say(showing, findings, every=always)
     ended = showing.strict and any(finding.severity == "error" for finding in findings)
     if always or not ended:
-        _write(showing, _text(showing, blocks, keys))
+        _write(showing, text())
     if ended:
         errors = sum(finding.severity == "error" for finding in findings)
         ending = "finding of severity error" if errors == 1 else "findings of severity error"

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import sys
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import wraps
 from pathlib import Path
@@ -24,6 +26,7 @@ from thermo_pp.names import (
 )
 
 if TYPE_CHECKING:
+    from thermo_pp.collect import Collection
     from thermo_pp.conditions import StandardState, Treatment
 
 Command = TypeVar("Command", bound=Callable[..., Any])
@@ -188,6 +191,71 @@ def output_options(command: Command) -> Command:
         return command(*args, showing=showing, **others)
 
     return with_output  # type: ignore[return-value]
+
+
+@dataclass(frozen=True)
+class Collecting:
+    """What the options of collecting say."""
+
+    jobs: int | None
+    cache: bool
+    scheduler: str | None
+
+    def collect(self, paths: Sequence[Path], showing: Showing) -> Collection:
+        """Collect outputs, with a progress bar on standard error where that is a terminal."""
+        from thermo_pp.audit import collect
+
+        with _progress(paths, showing) as progress:
+            return collect(
+                paths,
+                progress=progress,
+                jobs=self.jobs,
+                cache=self.cache,
+                scheduler=self.scheduler,
+            )
+
+
+def collecting_options(command: Command) -> Command:
+    """Add the options of how outputs are collected; the command gets `collecting`."""
+
+    @click.option(
+        "--jobs",
+        type=click.IntRange(min=1),
+        metavar="N",
+        help="How many processes read the outputs.  [default: all cores]",
+    )
+    @click.option(
+        "--no-cache",
+        is_flag=True,
+        help="Read every file; remember nothing of earlier runs and for later ones.",
+    )
+    @click.option(
+        "--scheduler",
+        metavar="ADDRESS",
+        help="Let a running Dask cluster read the files: tcp://host:8786.",
+    )
+    @wraps(command)
+    def with_collecting(
+        *args: Any, jobs: int | None, no_cache: bool, scheduler: str | None, **others: Any
+    ) -> Any:
+        if jobs is not None and scheduler is not None:
+            raise click.UsageError("give either --jobs or --scheduler")
+        return command(*args, collecting=Collecting(jobs, not no_cache, scheduler), **others)
+
+    return with_collecting  # type: ignore[return-value]
+
+
+@contextmanager
+def _progress(paths: Sequence[Path], showing: Showing) -> Iterator[Callable[[int], None] | None]:
+    """Give what is called with the number of files done, None where no bar is shown."""
+    if showing.quiet or not sys.stderr.isatty():
+        yield None
+        return
+    from thermo_pp.collect.walk import walk
+
+    count = sum(isinstance(entry, Path) for entry in walk(paths))
+    with click.progressbar(length=count, label="reading", show_pos=True, file=sys.stderr) as bar:
+        yield lambda done: bar.update(done - bar.pos)
 
 
 def _temperatures(

@@ -9,8 +9,10 @@ import click
 from thermo_pp.cli.answers import hint, names, say, show
 from thermo_pp.cli.options import (
     OUTPUTS,
+    Collecting,
     Showing,
     Treating,
+    collecting_options,
     output_options,
     temperature_options,
     treatment_options,
@@ -22,11 +24,13 @@ from thermo_pp.names import DEFAULT_TEMPERATURE_K
 @click.argument("paths", nargs=-1, required=True, type=OUTPUTS)
 @temperature_options
 @treatment_options
+@collecting_options
 @output_options
 def species(
     paths: tuple[Path, ...],
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
+    collecting: Collecting,
     showing: Showing,
 ) -> None:
     """Give H, S, G and Cp of every structure in PATHS (folders and files) that has frequencies.
@@ -40,12 +44,13 @@ def species(
         thermo-pp species water.out --temperature-range 280 360 5 --format csv
         thermo-pp species outputs/ --standard-state "1 mol/L" --low-modes rotor-enthalpy
     """
-    from thermo_pp.audit import collect
     from thermo_pp.audit.structures import structures
     from thermo_pp.output import species as output
 
     found = structures(
-        collect(paths), temperature_k or (DEFAULT_TEMPERATURE_K,), treating.treatment()
+        collecting.collect(paths, showing),
+        temperature_k or (DEFAULT_TEMPERATURE_K,),
+        treating.treatment(),
     )
     unit = showing.energy_unit
     if not found.computed:

@@ -46,7 +46,8 @@ def walk(paths: Iterable[str | os.PathLike[str]]) -> Iterator[Path | Skipped]:
         A path that is not there.
     """
     seen: set[str] = set()
-    for given in paths:
+    given_paths = list(paths)
+    for given in given_paths:
         path = Path(given)
         if not path.exists():
             raise StudyError(
@@ -56,7 +57,7 @@ def walk(paths: Iterable[str | os.PathLike[str]]) -> Iterator[Path | Skipped]:
             )
         entries = _inside(path, path.resolve()) if path.is_dir() else _single(path)
         for entry in entries:
-            if isinstance(entry, Path):
+            if isinstance(entry, Path) and len(given_paths) > 1:
                 identity = os.path.realpath(entry)
                 if identity in seen:
                     continue

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from dataclasses import dataclass
 from itertools import product
 
@@ -77,12 +78,15 @@ def match(
     numbers_b: ArrayLike,
     positions_b: ArrayLike,
     mirror: bool = False,
+    enough_angstrom: float = 0.0,
 ) -> float:
     """Return the least root mean square distance, A, with atoms of one element in any order.
 
     See `best_superposition`; infinite where the structures have not the same atoms.
     """
-    found = best_superposition(numbers_a, positions_a, numbers_b, positions_b, mirror)
+    found = best_superposition(
+        numbers_a, positions_a, numbers_b, positions_b, mirror, enough_angstrom
+    )
     return math.inf if found is None else found.rmsd_angstrom
 
 
@@ -92,6 +96,7 @@ def best_superposition(
     numbers_b: ArrayLike,
     positions_b: ArrayLike,
     mirror: bool = False,
+    enough_angstrom: float = 0.0,
 ) -> Superposition | None:
     """Lay structure `a`, or its mirror image, on `b`, atoms of one element matched in any order.
 
@@ -106,6 +111,8 @@ def best_superposition(
         A.
     mirror : bool
         Lay the mirror image of `a` on `b`.
+    enough_angstrom : float
+        A match that is closer than this is not improved upon by further starts.
 
     Returns
     -------
@@ -117,19 +124,28 @@ def best_superposition(
     if not np.array_equal(np.sort(kind_a), np.sort(kind_b)):
         return None
     image = a * np.array([-1.0, 1.0, 1.0]) if mirror else a
-    starts = []
-    if np.array_equal(kind_a, kind_b):
-        starts.append(_laid(image, b, np.arange(len(a))).rotation)
-    starts += _frames(kind_a, image, kind_b, b)
-    starts += _principal(image, b)
-    best = min(
-        (_improved(start, kind_a, image, kind_b, b) for start in starts),
-        key=lambda found: found.rmsd_angstrom,
-    )
+    best: Superposition | None = None
+    for start in _starts(kind_a, image, kind_b, b):
+        found = _improved(start, kind_a, image, kind_b, b)
+        if best is None or found.rmsd_angstrom < best.rmsd_angstrom:
+            best = found
+        if best.rmsd_angstrom < enough_angstrom:
+            break
+    assert best is not None
     if not mirror:
         return best
     turned = best.rotation * np.array([-1.0, 1.0, 1.0])
     return Superposition(turned, best.rmsd_angstrom, best.partners)
+
+
+def _starts(
+    kind_a: IntArray, a: FloatArray, kind_b: IntArray, b: FloatArray
+) -> Iterator[FloatArray]:
+    """Yield the rotations to start from, those that cost little first."""
+    if np.array_equal(kind_a, kind_b):
+        yield _laid(a, b, np.arange(len(a))).rotation
+    yield from _principal(a, b)
+    yield from _frames(kind_a, a, kind_b, b)
 
 
 def _centred(positions: ArrayLike) -> FloatArray:

@@ -14,6 +14,7 @@ from thermo_pp.kinetics.approximations import (
     span_of_cycle,
 )
 from thermo_pp.kinetics.closed import log_weights
+from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import per_free_reactant
 from thermo_pp.kinetics.model import Rates
 from thermo_pp.kinetics.pool import log_slowest
@@ -60,7 +61,7 @@ def approximate(
                 Approximation(
                     name=name,
                     rate_constant=np.exp(log),
-                    ratio=exact.sign * np.exp(log - exact.log),
+                    ratio=_ratio(log, exact),
                     windows=found[k],
                     determining_saddle=saddle,
                     determining_state=state,
@@ -76,7 +77,13 @@ _Logs = dict[str, tuple[FloatArray, tuple[str, ...] | None, tuple[str, ...] | No
 def _ratios(rates: Rates, definition: Definition) -> FloatArray:
     exact = rates.rate(definition)
     logs = [entry[0] for entry in _logs(rates, definition).values()]
-    return np.stack([exact.sign * np.exp(log - exact.log) for log in logs], axis=1)
+    return np.stack([_ratio(log, exact) for log in logs], axis=1)
+
+
+def _ratio(log: FloatArray, exact: LogRate) -> FloatArray:
+    """Return the ratio to the exact rate, nan where that is 0."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        return np.asarray(exact.sign * np.exp(log - exact.log))
 
 
 def _logs(rates: Rates, definition: Definition) -> _Logs:

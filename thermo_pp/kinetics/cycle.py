@@ -112,7 +112,11 @@ def per_cycle(
     def run(label: Label) -> Scaled | None:
         if label[0] <= 0:  # no product, or counted the other way round
             return None
-        return Scaled.from_float(-(label[0] / turn[1]) * np.expm1(-affinity(label)))
+        driving = affinity(label)  # 1 - exp(-A), which may be far below zero
+        with np.errstate(divide="ignore"):
+            size = np.log(-np.expm1(-np.abs(driving))) + np.maximum(-driving, 0.0)
+        worth = Scaled.from_log(size) * Scaled.from_float(np.full(b, label[0] / turn[1]))
+        return Scaled(worth.mantissa * np.sign(driving), worth.exponent)
 
     ends = Scaled.zeros((b, n, 2))
     ends[:, :, 1] = Scaled.from_float(np.ones((b, n)))
@@ -151,8 +155,12 @@ def per_cycle(
         counts = np.zeros(len(network.species))
         for name, given in zip(network.held, given_by(label), strict=True):
             counts[network.species.index(name)] -= given
-        with np.errstate(over="ignore"):
+        with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
             driving.append((weight / np.expm1(affinity(label)), counts))
+    defined = np.where(sign == 0.0, np.nan, 1.0)[
+        :, np.newaxis
+    ]  # in equilibrium nothing controls the rate
+    forward, reverse = forward * defined, reverse * defined
     size = Scaled(np.abs(reward.mantissa), reward.exponent)
     rate = from_edges(network, size.log() - mass.log(), forward, reverse, sign, driving)
     return rate, inside, fraction(share, share.sum(axis=1)[:, np.newaxis])

@@ -16,10 +16,11 @@ from thermo_pp.kinetics.controls import Sensitivity, activation, sensitivity, st
 from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import steady_state
 from thermo_pp.kinetics.model import Model, Rates
-from thermo_pp.kinetics.network import write_side
+from thermo_pp.kinetics.net_reaction import net_reaction, write_side
+from thermo_pp.kinetics.products import formation
 from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, SignChange, StepRate
 from thermo_pp.kinetics.steps import rate_unit
-from thermo_pp.kinetics.windows import crossings, scan_temperatures, sign_changes
+from thermo_pp.kinetics.windows import LOCATED_K, crossings, scan_temperatures, sign_changes
 from thermo_pp.kinetics.words import words
 from thermo_pp.names import DEFINITIONS, Definition, Severity
 
@@ -65,7 +66,9 @@ def effective(study: StudyLike) -> EffectiveRate:
     """
     from threadpoolctl import threadpool_limits
 
-    with threadpool_limits(1):  # the matrices are small: threads would only wait for each other
+    # the matrices are small: threads would only wait for each other; what is too large for an
+    # ordinary number becomes inf
+    with threadpool_limits(1), np.errstate(over="ignore"):
         return _effective(study)
 
 
@@ -91,7 +94,7 @@ def _effective(study: StudyLike) -> EffectiveRate:
         *rates.steps.findings,
         *_findings(found, rates, study.mechanism.where),
     )
-    net, coefficient = _net_reaction(rates)
+    net, coefficient = net_reaction(rates)
     result = EffectiveRate(
         temperature_k=grid,
         subject=study.mechanism.catalyst or study.mechanism.reactant or "",
@@ -117,7 +120,17 @@ def _sign_changes(
 
     values = np.stack([wide.rate(name).energy_j_mol for name in definitions], axis=1)
     roots = crossings(curves, scan, values)
-    return {name: sign_changes(roots[k], scan, values[:, k]) for k, name in enumerate(definitions)}
+    return {
+        name: sign_changes([root for root in roots[k] if not _reverses(model, name, root[0], scan)])
+        for k, name in enumerate(definitions)
+    }
+
+
+def _reverses(model: Model, definition: Definition, temperature_k: float, scan: FloatArray) -> bool:
+    """Whether the net reaction changes its direction here, where the Arrhenius energy has a pole and no zero."""
+    around = np.clip(temperature_k + np.array([-LOCATED_K, LOCATED_K]), scan[0], scan[-1])
+    below, above = model.at(around).rate(definition).sign
+    return bool(below != above)
 
 
 def _rate(
@@ -155,7 +168,9 @@ def _rate(
         populations = {name: shares[:, k] for k, name in enumerate(names)}
         return replace(rate, populations=populations, resting_state=_largest(populations))
     if definition == "free" and len(rates.products) > 1:
-        return replace(rate, branching=_branching(rates, rates.free[1]))
+        driven = rates.model.conditions.driven
+        shares = formation(rates.network, rates.start, rates.products, rates.amounts(), driven)
+        return replace(rate, branching=_branching(rates, shares))
     return rate
 
 
@@ -168,6 +183,8 @@ def _with_pool(rate: Rate, rates: Rates) -> Rate:
         for k, (log_decay, shares) in enumerate(_decay_shares(rates)):
             ratio[k] = np.exp(log_decay[1] - log_decay[0])
             if ratio[k] < NEXT_DECAY_BELOW or pool.slow_share[k] < SLOW_SHARE_BELOW:
+                better = pool.coefficients(k, log_decay)
+                shares = shares if better is None else better
                 headline[k] = np.exp(log_decay[int(np.argmax(shares))])
     return replace(
         rate,
@@ -301,57 +318,6 @@ def _held(rates: Rates) -> dict[str, FloatArray]:
     return {name: np.exp(log) for name, log in _log_held(rates).items()}
 
 
-def _net_reaction(rates: Rates) -> tuple[str, int]:
-    """Return the net reaction as text, and the reactant's coefficient in it."""
-    network = rates.network
-    if rates.model.mechanism.catalyst is not None:
-        return _turnovers(rates), 1
-    away = network.exchanged_from(rates.start)
-    reactions = []
-    for state in rates.products:
-        changes = dict.fromkeys(
-            (name for name, _ in (*network.states[rates.start], *network.states[state])), 0.0
-        )
-        for name, count in network.states[rates.start]:
-            changes[name] -= count
-        for name, given in zip(network.held, away[state], strict=True):
-            changes[name] = changes.get(name, 0.0) + given
-        for name, count in network.states[state]:
-            changes[name] += count
-        reactions.append(_reaction(changes))
-    return "; ".join(reactions), 1
-
-
-def _turnovers(rates: Rates) -> str:
-    """Return the net reactions of the catalyst's closed ways, one for each product."""
-    network, products = rates.network, rates.model.mechanism.products
-    reactions: list[str] = []
-    shown: set[str] = set()
-    runs = [np.concatenate([turn.given, turn.absent]) for turn in rates.turns]
-    first = runs[0]
-    # a way that only turns one product into another is shown after a run that makes it
-    ways = [run for run, turn in zip(runs, rates.turns, strict=True) if turn.product]
-    ways += [
-        first + sign * run
-        for run, turn in zip(runs, rates.turns, strict=True)
-        for sign in (1, -1)
-        if not turn.product
-    ]
-    for way in ways:
-        changes = dict(zip((*network.held, *network.absent), way, strict=True))
-        made = {name for name in products if changes[name] > 0}
-        if made - shown:
-            shown |= made
-            reactions.append(_reaction(changes))
-    return "; ".join(reactions)
-
-
-def _reaction(changes: Mapping[str, float]) -> str:
-    left = [(name, -count) for name, count in changes.items() if count < 0]
-    right = [(name, count) for name, count in changes.items() if count > 0]
-    return f"{write_side(left)} = {write_side(right)}"
-
-
 def _findings(
     found: Mapping[Definition, Rate | None], rates: Rates, file: str
 ) -> tuple[Finding, ...]:
@@ -375,7 +341,7 @@ def _findings(
                 "compare with a measurement that resolves the decays, or with the headline constant",
             )
     if pool is not None and relaxing is not None:
-        differ = np.abs(relaxing.rate_constant / pool.rate_constant - 1.0) > RETURN_ABOVE
+        differ = np.abs(np.expm1(rates.relaxation.log - rates.pool.rate.log)) > RETURN_ABOVE
         if differ.any():
             add(
                 "product-returns",

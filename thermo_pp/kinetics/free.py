@@ -35,7 +35,7 @@ class Amount:
 def per_free_reactant(
     network: Network, reactant: int, products: Sequence[int], amounts: Sequence[Amount | None]
 ) -> tuple[LogRate, FloatArray]:
-    """Rate over the free reactant, the intermediates at steady state.
+    """Rate over the free reactant, the intermediates at steady state, the network in balance.
 
     Parameters
     ----------
@@ -51,7 +51,7 @@ def per_free_reactant(
     -------
     LogRate
     shape (b, k)
-        Share of each product in the rate.
+        What goes from the reactant to each product, over the rate.
     """
     inside = network.members(reactant, products)
     edges = EdgeMatrix(network, inside, products)
@@ -59,29 +59,26 @@ def per_free_reactant(
     reduced = Reduction(edges.ways, edges.ends, np.ones(k))
     reduced.eliminate_to(1)
     partial = reduced.ends[:, 0, :]
-    away = network.exchanged_from(reactant)
     b = len(network.temperature_k)
     net, driving = [], []
     for product, amount in zip(products, amounts, strict=True):
         if amount is None:
             net.append((np.zeros(b), np.ones(b), np.zeros(b), np.zeros(len(network.species))))
             continue
-        counts = np.zeros(len(network.species))
-        count_end(counts, network, network.states[reactant], 1.0)
-        count_end(counts, network, network.states[product], -1.0)
-        for name, given in zip(network.held, away[product], strict=True):
-            counts[network.species.index(name)] -= given
-        reaction = (network.potential * counts.astype(np.longdouble)).sum(axis=1)
-        affinity = np.asarray(reaction - amount.log_over_reactant, dtype=np.float64)
+        extended, counts = affinity_to(network, reactant, product, amount)
+        affinity = np.asarray(extended, dtype=np.float64)
         with np.errstate(over="ignore", divide="ignore"):
             growth = 1.0 / np.expm1(affinity)  # d ln(1 - exp(-A))/dA
             log_drive = np.log(-np.expm1(-np.abs(affinity))) + np.maximum(-affinity, 0.0)
         net.append((log_drive, np.sign(affinity), growth, counts))
     logs = np.stack([partial[:, c].log() + net[c][0] for c in range(k)], axis=1)
     signs = np.stack([net[c][1] for c in range(k)], axis=1)
-    top = logs.max(axis=1, keepdims=True)
+    top = np.maximum(logs.max(axis=1, keepdims=True), np.finfo(np.float64).min)
     total = (signs * np.exp(logs - top)).sum(axis=1)
-    shares = signs * np.exp(logs - top) / total[:, np.newaxis]
+    # at equilibrium the rate is 0, and E_a is not defined
+    with np.errstate(divide="ignore", invalid="ignore"):
+        shares = signs * np.exp(logs - top) / total[:, np.newaxis]
+        log = np.log(np.abs(total)) + top[:, 0]
     holding = np.zeros(b)
     for c, amount in enumerate(amounts):
         if amount is not None:
@@ -91,9 +88,22 @@ def per_free_reactant(
     seed[:, 0, :] = shares
     gradient = reduced.gradient({}, seed)
     forward, reverse = edges.back({(): gradient.ways[()]}, gradient.ends)
-    log = np.log(np.abs(total)) + top[:, 0]
     rate = from_edges(network, log, forward, reverse, np.sign(total), driving)
     return replace(rate, energy_j_mol=rate.energy_j_mol + holding), shares
+
+
+def affinity_to(
+    network: Network, reactant: int, product: int, amount: Amount
+) -> tuple[NDArray[np.longdouble], FloatArray]:
+    """Return the affinity over RT from reactant to product, and what it counts of each species."""
+    counts = np.zeros(len(network.species))
+    count_end(counts, network, network.states[reactant], 1.0)
+    count_end(counts, network, network.states[product], -1.0)
+    away = network.exchanged_from(reactant)
+    for name, given in zip(network.held, away[product], strict=True):
+        counts[network.species.index(name)] -= given
+    reaction = (network.potential * counts.astype(np.longdouble)).sum(axis=1)
+    return reaction - amount.log_over_reactant, counts
 
 
 def steady_state(

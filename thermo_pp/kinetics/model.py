@@ -17,6 +17,7 @@ from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import Amount, per_free_reactant
 from thermo_pp.kinetics.network import Network, check_loops, linear_network
 from thermo_pp.kinetics.pool import Pool, per_pool
+from thermo_pp.kinetics.products import per_free_reactant_driven
 from thermo_pp.kinetics.spectrum import Spectrum
 from thermo_pp.kinetics.steps import (
     ElementaryRates,
@@ -187,9 +188,12 @@ class Rates:
         return tuple(found)
 
     @cached_property
-    def free(self) -> tuple[LogRate, FloatArray]:
-        """Rate per free reactant, and the products' shares."""
-        return per_free_reactant(self.network, self.start, self.products, self.amounts())
+    def free(self) -> LogRate:
+        """Rate per free reactant."""
+        asked = self.network, self.start, self.products, self.amounts()
+        if self.model.conditions.driven:
+            return per_free_reactant_driven(*asked)
+        return per_free_reactant(*asked)[0]
 
     @cached_property
     def pool(self) -> Pool:
@@ -225,7 +229,7 @@ class Rates:
     def rate(self, definition: Definition) -> LogRate:
         """Return the rate in one definition."""
         if definition == "free":
-            return self.free[0]
+            return self.free
         if definition == "pool":
             return self.pool.rate
         if definition == "relaxation":

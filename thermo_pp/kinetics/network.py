@@ -227,7 +227,7 @@ def linear_network(
             continue
         step = mechanism.steps[number]
         if not left or not right:
-            side = "right" if not left else "left"
+            side = "left" if not left else "right"
             raise StudyError(
                 f"the network is not linear: every species on the {side} of {step.equation!r} is held, "
                 "but not on the other side",
@@ -392,12 +392,3 @@ def check_loops(network: Network, mechanism: Mechanism, loops: Sequence[Loop]) -
                 where=f"{mechanism.where} [conditions] held",
                 mend='hold one of them at "equilibrium", mend its amount, or say driven = true',
             )
-
-
-def write_side(members: list[tuple[str, float]]) -> str:
-    """Write one side of a reaction; counts that are no whole numbers as fractions."""
-    texts = []
-    for name, count in members:
-        share = Fraction(count).limit_denominator(1000)
-        texts.append(name if share == 1 else f"{share} {name}")
-    return " + ".join(texts) or "nothing"

@@ -34,6 +34,8 @@ class Pool:
         Share of each product in the slowest decay.
     times : Scaled, shape (b, n, n)
         Mean time spent in each member after a start in each.
+    ways, ends : Scaled, shape (b, n, n) and (b, n, k)
+        Rates between members, and into the products.
     """
 
     rate: LogRate
@@ -43,6 +45,29 @@ class Pool:
     log_inverse_mean_time: FloatArray
     branching: FloatArray
     times: Scaled
+    ways: Scaled
+    ends: Scaled
+
+    def coefficients(self, row: int, log_decay: FloatArray) -> FloatArray | None:
+        """Return the coefficients of all decays at one temperature; None where they are too close together.
+
+        A clock that strikes at rate s does so before the pool is gone with the probability sum_j c_j
+        s/(s + lambda_j), which elimination gives to full accuracy: one equation for each s.
+        """
+        n = len(log_decay)
+        with np.errstate(over="ignore"):
+            faster = np.exp(log_decay[np.newaxis, :] - log_decay[:, np.newaxis])
+        system = 1.0 / (1.0 + faster)
+        if np.linalg.cond(system) > _WORST_CONDITION:
+            return None
+        ways = Scaled.zeros((n, *self.ways.shape[1:])) + self.ways[row : row + 1]
+        ends = Scaled.zeros((n, self.ends.shape[1], 2))
+        ends[:, :, 0] = ends[:, :, 0] + self.ends[row : row + 1].sum(axis=2)
+        ends[:, :, 1] = ends[:, :, 1] + Scaled.from_log(log_decay)[:, np.newaxis]
+        reduced = Reduction({(): ways}, ends, np.ones(2))
+        reduced.eliminate_to(1, tape=False)
+        out = reduced.ends[:, 0, :]
+        return np.asarray(np.linalg.solve(system, fraction(out[:, 1], out.sum(axis=1))))
 
     def decay_shares(self) -> list[tuple[FloatArray, FloatArray]]:
         """Return at each temperature ln of the decay constants and their coefficients, in any network.
@@ -65,6 +90,9 @@ class Pool:
                 log = -np.log(np.abs(values)) - scale[0] * np.log(2.0)
             answers.append((log, shares.real))
         return answers
+
+
+_WORST_CONDITION = 1e8
 
 
 def per_pool(network: Network, reactant: int, products: Sequence[int]) -> Pool:
@@ -99,6 +127,8 @@ def per_pool(network: Network, reactant: int, products: Sequence[int]) -> Pool:
         log_inverse_mean_time=-times[:, 0, :].sum(axis=1).log(),
         branching=fraction(out, out.sum(axis=1)[:, np.newaxis]),
         times=times,
+        ways=edges.ways[()],
+        ends=edges.ends,
     )
 
 

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
+from types import MappingProxyType
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
@@ -16,7 +17,23 @@ if TYPE_CHECKING:
     import pandas as pd
 
 FloatArray = NDArray[np.float64]
-Edge = Literal["open", "edge"]
+
+
+def freeze_arrays(record: Any) -> None:
+    """Replace every array of a frozen record, and of its mappings, by a read-only copy."""
+    for one in fields(record):
+        value = getattr(record, one.name)
+        if isinstance(value, np.ndarray):
+            object.__setattr__(record, one.name, _frozen(value))
+        elif isinstance(value, Mapping) and any(isinstance(v, np.ndarray) for v in value.values()):
+            frozen = {name: _frozen(array) for name, array in value.items()}
+            object.__setattr__(record, one.name, MappingProxyType(frozen))
+
+
+def _frozen(array: NDArray[Any]) -> NDArray[Any]:
+    array = array.copy()
+    array.flags.writeable = False
+    return array
 
 
 @dataclass(frozen=True)
@@ -76,6 +93,9 @@ class Approximation:
     determining_saddle: tuple[str, ...] | None = None
     determining_state: tuple[str, ...] | None = None
 
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
+
     def holds(self) -> NDArray[np.bool_]:
         """Whether the ratio is within 5 % at each temperature."""
         return np.asarray(np.abs(self.ratio - 1.0) <= WITHIN)
@@ -98,6 +118,9 @@ class Activation:
     enthalpy_kj_mol: FloatArray
     entropy_j_mol_k: FloatArray
     gibbs_kj_mol: FloatArray
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
 
 @dataclass(frozen=True, eq=False)
@@ -136,7 +159,8 @@ class Rate:
     slow_share, next_decay_ratio, inverse_mean_time, headline : shape (t,) or None
         Pool only; see docs/methods.md. `next_decay_ratio` is nan in a pool of one.
     branching : mapping of str to shape (t,), or None
-        Share of each product in the decay, where several products compete.
+        Where several products compete: per pool the share of each in the decay, per free reactant
+        its net formation over the rate.
     """
 
     definition: Definition
@@ -158,6 +182,9 @@ class Rate:
     inverse_mean_time: FloatArray | None = None
     headline: FloatArray | None = None
     branching: Mapping[str, FloatArray] | None = None
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
 
 @dataclass(frozen=True, eq=False)
@@ -184,6 +211,9 @@ class StepRate:
     reverse_unit: str
     reversibility: FloatArray
     limited: NDArray[np.bool_]
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
 
 @dataclass(frozen=True, eq=False)
@@ -220,6 +250,9 @@ class EffectiveRate:
     held_mol_l: Mapping[str, FloatArray]
     words: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
     def table(self) -> pd.DataFrame:
         """Return one row a definition and temperature, as plain numbers."""

@@ -7,6 +7,7 @@ finer grid moves nothing; each change is then located to better than 0.01 K.
 from __future__ import annotations
 
 from collections.abc import Callable
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,23 +17,30 @@ from thermo_pp.kinetics.results import WITHIN, SignChange, Window
 FloatArray = NDArray[np.float64]
 Curves = Callable[[FloatArray], FloatArray]
 """Temperatures (b,) -> values (b, c) of several curves."""
+Root = tuple[float, float]
+"""A temperature at which a curve passes through 0, and the sign that it has below."""
 SCAN_POINTS = 129
+_WIDEST_RATIO = 1.03
 _REFINE_POINTS = 24
-_LOCATED_K = 0.001
+LOCATED_K = 0.001
+"""How far apart the temperatures are between which a change is located at last."""
 
 
 def scan_temperatures(low_k: float, high_k: float) -> FloatArray:
-    """Return the temperatures to look at, even in 1/T, both ends included."""
+    """Return the temperatures to look at, both ends included: even in 1/T, and no more than 3 % apart."""
     if low_k == high_k:
         return np.array([low_k])
-    inverse = np.linspace(1.0 / low_k, 1.0 / high_k, SCAN_POINTS)
-    grid = 1.0 / inverse
+    grid = 1.0 / np.linspace(1.0 / low_k, 1.0 / high_k, SCAN_POINTS)
     grid[0], grid[-1] = low_k, high_k
-    return grid
+    parts = [
+        np.geomspace(a, b, 1 + int(np.ceil(np.log(b / a) / np.log(_WIDEST_RATIO))))[:-1]
+        for a, b in pairwise(grid)
+    ]
+    return np.concatenate([*parts, grid[-1:]])
 
 
-def crossings(curves: Curves, scan_k: FloatArray, values: FloatArray) -> list[list[float]]:
-    """Return for each curve the temperatures at which it passes through 0, ascending.
+def crossings(curves: Curves, scan_k: FloatArray, values: FloatArray) -> list[list[Root]]:
+    """Return for each curve where it passes through 0, ascending.
 
     Parameters
     ----------
@@ -41,34 +49,55 @@ def crossings(curves: Curves, scan_k: FloatArray, values: FloatArray) -> list[li
     values : shape (n, c)
         The curves at `scan_k`.
     """
-    found: list[list[float]] = []
-    for column in range(values.shape[1]):
-        signs = np.sign(values[:, column])
-        at = np.flatnonzero(signs[1:] * signs[:-1] < 0)
-        roots = [_locate(curves, column, scan_k[k], scan_k[k + 1], float(signs[k])) for k in at]
-        roots += [float(scan_k[k]) for k in np.flatnonzero(signs[1:-1] == 0.0) + 1]
-        found.append(sorted(roots))
-    return found
+    return [
+        _roots(curves, column, scan_k, values[:, column], dips=True)
+        for column in range(values.shape[1])
+    ]
+
+
+def _roots(
+    curves: Curves, column: int, grid: FloatArray, values: FloatArray, dips: bool
+) -> list[Root]:
+    """Return where one curve passes through 0; between three points too, where it may dip there."""
+    signs = np.where(values < 0.0, -1.0, 1.0)
+    found = [
+        (_locate(curves, column, grid[k], grid[k + 1], float(signs[k])), float(signs[k]))
+        for k in np.flatnonzero(signs[1:] != signs[:-1])
+    ]
+    if dips:
+        for k in _dips(signs * values, signs):
+            finer = np.linspace(grid[k - 1], grid[k + 1], 2 * _REFINE_POINTS)
+            found += _roots(curves, column, finer, curves(finer)[:, column], dips=False)
+    return sorted(found)
+
+
+def _dips(heights: FloatArray, signs: FloatArray) -> NDArray[np.intp]:
+    """Return the inner points lower than both neighbours between which the curve may reach 0 and come back."""
+    left, here, right = heights[:-2], heights[1:-1], heights[2:]
+    same = (signs[:-2] == signs[1:-1]) & (signs[1:-1] == signs[2:])
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+        drop = np.minimum(left, right) - here
+        bend = 0.5 * (left + right) - here
+        lowest = here - (0.5 * (right - left)) ** 2 / (
+            4.0 * bend
+        )  # of the parabola through the three
+    dip = same & np.isfinite(here) & (drop >= 0.0) & (bend > 0.0)
+    return np.flatnonzero(dip & ((here < drop) | (lowest < 0.3 * here))) + 1
 
 
 def _locate(curves: Curves, column: int, low: float, high: float, sign_low: float) -> float:
-    while high - low > _LOCATED_K:
+    while high - low > LOCATED_K:
         grid = np.linspace(low, high, _REFINE_POINTS)
-        after = np.flatnonzero(np.sign(curves(grid)[:, column]) * sign_low <= 0)
+        signs = np.where(curves(grid)[:, column] < 0.0, -1.0, 1.0)
+        after = np.flatnonzero(signs != sign_low)
         k = int(after[0]) if len(after) and after[0] > 0 else len(grid) - 1
         low, high = float(grid[k - 1]), float(grid[k])
     return 0.5 * (low + high)
 
 
-def sign_changes(
-    roots: list[float], scan_k: FloatArray, values: FloatArray
-) -> tuple[SignChange, ...]:
+def sign_changes(roots: list[Root]) -> tuple[SignChange, ...]:
     """Name each root of the Arrhenius energy: positive below and negative above is a maximum of the rate."""
-    changes: list[SignChange] = []
-    for root in roots:
-        below = values[scan_k < root][-1]
-        changes.append(SignChange(root, "maximum" if below > 0 else "minimum"))
-    return tuple(changes)
+    return tuple(SignChange(root, "maximum" if below > 0 else "minimum") for root, below in roots)
 
 
 def windows(curves: Curves, scan_k: FloatArray, ratios: FloatArray) -> list[tuple[Window, ...]]:
@@ -82,26 +111,33 @@ def windows(curves: Curves, scan_k: FloatArray, ratios: FloatArray) -> list[tupl
     ratios : shape (n, c)
     """
 
-    def distance(temperature_k: FloatArray) -> FloatArray:
-        return np.abs(curves(temperature_k) - 1.0) - WITHIN
+    def bounds(ratio: FloatArray) -> FloatArray:
+        # both bounds on their own, so that a ratio that runs through 1 between two points is seen
+        return np.concatenate([ratio - (1.0 + WITHIN), ratio - (1.0 - WITHIN)], axis=1)
 
-    gaps = np.abs(ratios - 1.0) - WITHIN
-    found: list[tuple[Window, ...]] = []
-    for column, edges in enumerate(crossings(distance, scan_k, gaps)):
-        inside = bool(gaps[0, column] <= 0.0)
-        bounds = [float(scan_k[0])] if inside else []
-        for edge in edges:
-            bounds.append(edge)
-            inside = not inside
-        open_above = len(bounds) % 2 == 1
-        if open_above:
-            bounds.append(float(scan_k[-1]))
-        pairs = list(zip(bounds[::2], bounds[1::2], strict=True))
-        starts_open = bool(gaps[0, column] <= 0.0)
-        found.append(
-            tuple(
-                Window(a, b, starts_open and k == 0, open_above and k == len(pairs) - 1)
-                for k, (a, b) in enumerate(pairs)
-            )
+    roots = crossings(lambda t: bounds(curves(t)), scan_k, bounds(ratios))
+    count = ratios.shape[1]
+    return [
+        _windows(
+            bool(abs(ratios[0, k] - 1.0) <= WITHIN),
+            sorted(root for root, _ in (*roots[k], *roots[count + k])),
+            float(scan_k[0]),
+            float(scan_k[-1]),
         )
-    return found
+        for k in range(count)
+    ]
+
+
+def _windows(inside: bool, edges: list[float], low_k: float, high_k: float) -> tuple[Window, ...]:
+    """Return the windows between edges, `inside` one at `low_k` already."""
+    bounds = [low_k, *edges] if inside else list(edges)
+    open_above = len(bounds) % 2 == 1
+    if open_above:
+        bounds.append(high_k)
+    pairs = list(zip(bounds[::2], bounds[1::2], strict=True))
+    found = [
+        Window(a, b, inside and k == 0, open_above and k == len(pairs) - 1)
+        for k, (a, b) in enumerate(pairs)
+    ]
+    # a ratio that jumps from one side to the other leaves nothing between
+    return tuple(w for w in found if w.to_k - w.from_k > LOCATED_K or low_k == high_k)

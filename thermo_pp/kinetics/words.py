@@ -29,10 +29,11 @@ def words(result: EffectiveRate) -> tuple[str, ...]:
         if rate is None or definition == "relaxation":
             continue
         sentences.append(_value(result, definition, rate))
+        sentences += _backwards(result, rate)
         sentences.append(_sign(result, rate))
         if rate.populations is not None:
             sentences.append(_resting(result, definition, rate))
-        sentences.append(_controlling(result, rate))
+        sentences += _controlling(result, rate)
         sentences += [_window(result, one) for one in rate.approximations]
     sentences += _comparisons(result)
     sentences += _limits(result)
@@ -68,15 +69,26 @@ def _value(result: EffectiveRate, definition: Definition, rate: Rate) -> str:
 
 def _sign(result: EffectiveRate, rate: Rate) -> str:
     energies = rate.arrhenius_energy_kj_mol
-    value = f"E_a is {_range(energies)} kJ/mol"
+    several = len(energies) > 1
+    asked = " at the temperatures asked for" if several else f" at {result.temperature_k[0]:g} K"
+    if not np.isfinite(energies).any():
+        return f"E_a is not defined{asked}: the rate is 0."
+    value = f"E_a is {_range(energies)} kJ/mol{asked}"
     if rate.sign_changes:
         turns = " and ".join(f"a {c.kind} at {c.temperature_k:.2f} K" for c in rate.sign_changes)
-        return f"{value} and changes its sign: the rate has {turns}."
+        return f"{value} and changes its sign in between: the rate has {turns}."
+    throughout = " throughout" if several else ""
     if np.all(energies < 0.0):
-        return f"{value}, below zero throughout: the reaction slows down on heating."
+        return f"{value}, below zero{throughout}: the reaction slows down on heating."
     if np.all(energies > 0.0):
-        return f"{value}, above zero throughout: the reaction speeds up on heating."
+        return f"{value}, above zero{throughout}: the reaction speeds up on heating."
     return f"{value}."
+
+
+def _backwards(result: EffectiveRate, rate: Rate) -> Iterator[str]:
+    backwards = rate.rate_constant < 0.0
+    if backwards.any():
+        yield f"The net reaction runs backwards {_where(result, backwards)}: the constant is below zero."
 
 
 def _resting(result: EffectiveRate, definition: Definition, rate: Rate) -> str:
@@ -90,19 +102,25 @@ def _resting(result: EffectiveRate, definition: Definition, rate: Rate) -> str:
     return f"{subject} rests {', '.join(parts)}."
 
 
-def _controlling(result: EffectiveRate, rate: Rate) -> str:
+def _controlling(result: EffectiveRate, rate: Rate) -> Iterator[str]:
     saddles = np.stack([rate.control[name] for name in rate.saddles])
+    if not np.isfinite(saddles).any():
+        return
+    saddles = np.nan_to_num(saddles)
     best = tuple(rate.saddles[int(k)] for k in np.argmax(np.abs(saddles), axis=0))
     parts = [
         f"{name} (control {_range(rate.control[name][where])}) {_where(result, where)}"
         for name, where in _runs(result, best)
     ]
-    return f"The saddle that controls this rate most is {', '.join(parts)}."
+    yield f"The saddle that controls this rate most is {', '.join(parts)}."
 
 
 def _window(result: EffectiveRate, one: Approximation) -> str:
     name = one.name[0].upper() + one.name[1:]
     ratio = f"its ratio to the exact constant is {_range(one.ratio)}"
+    if len(result.temperature_k) == 1:
+        holds = "holds" if one.windows else "does not hold"
+        return f"{name} {holds} at {result.temperature_k[0]:g} K; {ratio}."
     if not one.windows:
         return f"{name} does not hold anywhere in the range; {ratio}."
     if all(w.open_below and w.open_above for w in one.windows):
@@ -121,13 +139,13 @@ def _interval(window: Window) -> str:
 def _comparisons(result: EffectiveRate) -> Iterator[str]:
     free, pool, relaxing = (result.rates[name] for name in ("free", "pool", "relaxation"))
     if free is not None and pool is not None:
-        ratio = pool.rate_constant / free.rate_constant
+        ratio = _over(pool.rate_constant, free.rate_constant)
         if np.all(np.abs(ratio - 1.0) <= NOTABLE):
             yield (
                 f"It makes no difference here (5 %) whether the rate is taken over free {result.subject} or "
                 "over the pool."
             )
-        else:
+        elif np.isfinite(ratio).any():
             yield (
                 f"The pool's constant is {_range(ratio)} times that per free {result.subject}: say which "
                 "one is meant."
@@ -141,7 +159,7 @@ def _comparisons(result: EffectiveRate) -> Iterator[str]:
                 f"has a share of {_range(share[mixed])}, the next is {_range(following[mixed])} times faster."
             )
     if pool is not None and relaxing is not None:
-        ratio = relaxing.rate_constant / pool.rate_constant
+        ratio = _over(relaxing.rate_constant, pool.rate_constant)
         differ = np.abs(ratio - 1.0) > NOTABLE
         if differ.any():
             yield (
@@ -172,10 +190,22 @@ def _runs(result: EffectiveRate, names: Sequence[str]) -> Iterator[tuple[str, ND
 
 
 def _where(result: EffectiveRate, where: NDArray[np.bool_]) -> str:
-    t = result.temperature_k[where]
-    if len(t) == len(result.temperature_k):
-        return "at every temperature" if len(t) > 1 else f"at {t[0]:g} K"
-    return f"at {t[0]:g} K" if len(t) == 1 else f"from {t.min():g} K to {t.max():g} K"
+    """Say at which temperatures, those beside each other as one range."""
+    if where.all() and len(where) > 1:
+        return "at every temperature"
+    ranges = []
+    order = np.argsort(result.temperature_k, kind="stable")
+    for inside, places in groupby(order, key=lambda k: bool(where[k])):
+        t = result.temperature_k[list(places)]
+        if inside:
+            ranges.append(f"at {t[0]:g} K" if len(t) == 1 else f"from {t[0]:g} K to {t[-1]:g} K")
+    return " and ".join(ranges)
+
+
+def _over(one: FloatArray, other: FloatArray) -> FloatArray:
+    """Return a quotient, nan or inf where a constant is too small or too large for an ordinary number."""
+    with np.errstate(all="ignore"):
+        return np.asarray(one / other)
 
 
 def _range(values: FloatArray) -> str:

@@ -210,7 +210,9 @@ def _approximation(approximation: Approximation) -> dict[str, Any]:
         "rate_constant": approximation.rate_constant,
         "ratio": approximation.ratio,
         "windows_k": [[window.from_k, window.to_k] for window in approximation.windows],
-        "windows_open": [[window.open_below, window.open_above] for window in approximation.windows],
+        "windows_open": [
+            [window.open_below, window.open_above] for window in approximation.windows
+        ],
     }
     for name in ("determining_saddle", "determining_state"):
         if getattr(approximation, name) is not None:

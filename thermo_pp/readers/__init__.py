@@ -11,7 +11,22 @@ from pathlib import Path
 from typing import Protocol
 
 from thermo_pp.errors import ReadError
-from thermo_pp.readers import ase_formats, nwchem, psi4, qcschema
+from thermo_pp.readers import (
+    ase_formats,
+    ase_vibrations,
+    cclib_formats,
+    cjson,
+    gamess,
+    gaussian,
+    molden,
+    mopac,
+    nwchem,
+    orca,
+    psi4,
+    qchem,
+    qcschema,
+    xtb,
+)
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source, open_source
 
@@ -30,7 +45,22 @@ class Reader(Protocol):
         """Read one file; ReadError names file and line."""
 
 
-READERS: tuple[Reader, ...] = (nwchem, psi4, qcschema, ase_formats)
+READERS: tuple[Reader, ...] = (
+    nwchem,
+    psi4,
+    qcschema,
+    ase_formats,
+    orca,
+    gaussian,
+    qchem,
+    gamess,
+    xtb,
+    mopac,
+    molden,
+    cjson,
+    ase_vibrations,
+    cclib_formats,
+)
 
 
 def claims(head: bytes) -> tuple[Reader, ...]:

@@ -1,4 +1,13 @@
-"""Structures and energies that ASE reads: trajectories, JSON data bases, extended XYZ; no modes.
+"""Structures and energies that ASE reads: trajectories, JSON data bases, extended XYZ.
+
+Modes are taken where the file has them under these keys, in `info` of extended XYZ and trajectories
+(so on the comment line) or in `data` of a row of a data base; ASE itself has no place for them:
+
+- ``frequencies``: cm^-1, imaginary ones negative, 3N-6 (3N-5) of them or 3N with null modes;
+- ``hessian``: eV/A^2, 3N x 3N numbers, flat or nested; translations and rotations are projected out.
+
+With both, the frequencies must be those of the Hessian. They are of the masses in the file, else of
+the most abundant isotopes.
 
 Only formats with a mark of their own are read, through ASE's reader of exactly that format; none of
 them executes or unpickles anything. ASE's energies come in eV of CODATA 2014; ASE's own number
@@ -18,6 +27,8 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
 from thermo_pp.errors import Finding
+from thermo_pp.formulas.normal_modes import normal_modes
+from thermo_pp.readers import joined_hessian, mode_lists
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source
@@ -25,10 +36,17 @@ from thermo_pp.sources import Source
 NAME = "ase"
 LOOKS_FOR = "an ASE trajectory, an ASE data base in JSON, extended XYZ with 'Properties='"
 
+FloatArray = NDArray[np.float64]
 Atoms = Any  # ase.Atoms, which is not imported for its type: its methods carry none
 Images = Callable[[Source], tuple[int, Atoms]]
 """Returns how many structures a file holds, and the last one."""
 
+_MEND_MODES = (
+    "write frequencies in cm^-1 (3N-6, or 3N with null modes) and the hessian in eV/A^2 (3N x 3N)"
+)
+_MODE_KEYS = ("frequencies", "hessian")
+_ASYMMETRY = 0.05
+"""eV/A^2."""
 _TRAJECTORY = b"- of UlmASE-Trajectory"
 _EXTENDED_XYZ = re.compile(rb"\s*\d+[ \t]*\r?\n[^\r\n]*\bProperties=\"?species:S:1:pos:R:3")
 _DATA_BASE = re.compile(rb'\s*\{\s*"\d+"\s*:\s*\{')
@@ -95,7 +113,9 @@ def _data_base(source: Source) -> tuple[int, Atoms]:
 
     open_data_base: Any = jsondb.JSONDatabase
     rows = list(open_data_base(io.StringIO(source.data.decode("utf-8"))).select())
-    return len(rows), rows[-1].toatoms()
+    atoms = rows[-1].toatoms()
+    atoms.info |= {key: rows[-1].data[key] for key in _MODE_KEYS if key in rows[-1].data}
+    return len(rows), atoms
 
 
 def read(source: Source) -> Calculation:
@@ -123,6 +143,9 @@ def read(source: Source) -> Calculation:
         raise text.error(0, "a position that is not finite, or a mass not above 0", mend=CUT_SHORT)
     energy = _energy(text, atoms)
     places = _places(text)
+    wavenumbers, modes, hessian = _vibrations(text, atoms, masses)
+    if wavenumbers is not None and "positions_angstrom" in places:
+        places["wavenumbers_cm"] = _place_of_modes(text, places["positions_angstrom"], atoms)
     if energy is None:
         places.pop("energy_hartree", None)
     return Calculation(
@@ -136,7 +159,10 @@ def read(source: Source) -> Calculation:
         charge=_whole(text, atoms, "charge"),
         multiplicity=_whole(text, atoms, "multiplicity"),
         energy_hartree=energy,
-        kind_of_job=() if energy is None else ("energy",),
+        wavenumbers_cm=wavenumbers,
+        modes=modes,
+        hessian_hartree_bohr2=hessian,
+        kind_of_job=_kinds(energy, wavenumbers),
         where={name: text.line_number(place) for name, place in places.items()},
         findings=_findings(source.name, count),
     )
@@ -171,6 +197,70 @@ def _energy(text: Text, atoms: Atoms) -> float | None:
     if not math.isfinite(energy):
         raise text.error(0, f"energy {str(value)[:80]} is not a finite number", mend=CUT_SHORT)
     return energy
+
+
+def _kinds(energy: float | None, wavenumbers: FloatArray | None) -> tuple[str, ...]:
+    if wavenumbers is not None:
+        return ("frequencies",)
+    return () if energy is None else ("energy",)
+
+
+def _vibrations(
+    text: Text, atoms: Atoms, masses: FloatArray
+) -> tuple[FloatArray | None, FloatArray | None, FloatArray | None]:
+    """Return wavenumbers, modes and Hessian of the keys that the file has; None for what it has not."""
+    from ase.units import Bohr, Hartree
+
+    n = len(masses)
+    listed = _floats(text, atoms, "frequencies")
+    flat = _floats(text, atoms, "hessian")
+    wavenumbers = None
+    if listed is not None:
+        try:
+            keep = mode_lists.vibrations(listed, masses, atoms.positions)
+        except ValueError as error:
+            raise text.error(0, f"frequencies: {error}", mend=_MEND_MODES) from None
+        wavenumbers = listed[keep]
+    if flat is None:
+        return wavenumbers, None, None
+    if len(flat) != 9 * n * n:
+        what = f"hessian: {len(flat)} numbers, expected {9 * n * n} for {n} atoms"
+        raise text.error(0, what, mend=_MEND_MODES)
+    matrix = flat.reshape(3 * n, 3 * n)
+    if np.max(np.abs(matrix - matrix.T)) > _ASYMMETRY:
+        raise text.error(0, "hessian: it is not symmetric", mend=_MEND_MODES)
+    matrix = matrix / (Hartree / Bohr**2)
+    if wavenumbers is None:
+        found = normal_modes(matrix, masses, atoms.positions)
+        return found.wavenumbers_cm, found.modes, matrix
+    joined = joined_hessian.modes_of(matrix, masses, atoms.positions, wavenumbers)
+    if joined is None:
+        raise text.error(
+            0, "the frequencies are not those of the hessian (eV/A^2) and the masses of this file",
+            mend=_MEND_MODES,
+        )  # fmt: skip
+    return wavenumbers, joined.modes, matrix
+
+
+def _floats(text: Text, atoms: Atoms, key: str) -> FloatArray | None:
+    value = atoms.info.get(key)
+    if value is None:
+        return None
+    try:
+        array = np.asarray(value, dtype=np.float64).ravel()
+    except (TypeError, ValueError):
+        array = np.array([math.nan])
+    if not np.all(np.isfinite(array)) or np.max(np.abs(array), initial=0.0) > 1e6:
+        raise text.error(0, f"{key} does not hold finite numbers", mend=_MEND_MODES)
+    return array
+
+
+def _place_of_modes(text: Text, positions: int, atoms: Atoms) -> int:
+    """Return where the frequencies, or the Hessian without them, stand."""
+    key = next(key for key in _MODE_KEYS if atoms.info.get(key) is not None)
+    if _EXTENDED_XYZ.match(text.data):  # on the comment line, before the positions
+        return text.data.rfind(b"\n", 0, positions - 1) + 1
+    return max(text.last(f'"{key}"'.encode()), 0)
 
 
 def _whole(text: Text, atoms: Atoms, key: str) -> int | None:

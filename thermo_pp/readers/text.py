@@ -15,9 +15,12 @@ import numpy as np
 from thermo_pp.errors import ReadError
 from thermo_pp.sources import Source
 
+LONGEST_LINE = 1 << 20
+"""A line of twice this many bytes is refused."""
 CUT_SHORT = "the output is cut short or damaged here; rerun or re-copy it"
-_BLANK_LINE = re.compile(rb"\n[ \t]*\r?\n")
 _NUMBER = re.compile(rb"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][+-]?\d+)?")
+_FIRST_WORD = re.compile(rb"[ \t]*(" + _NUMBER.pattern + rb")(\S*)")
+_BLANK_LINE = re.compile(rb"\n[ \t]*\r?\n")
 
 
 class Text:
@@ -35,6 +38,16 @@ class Text:
         self.data = source.data
         self.start = start
         self.end = len(source.data) if end is None else end
+        if start == 0 and end is None:
+            self._check_lines()
+
+    def _check_lines(self) -> None:
+        """Refuse a file with a line that no program writes, which every later search would pay for."""
+        for begin in range(0, len(self.data) - LONGEST_LINE, LONGEST_LINE):
+            if self.data.find(b"\n", begin, begin + LONGEST_LINE) < 0:
+                raise self.error(
+                    begin, f"the line is longer than {LONGEST_LINE} bytes", mend=CUT_SHORT
+                )
 
     def part(self, start: int, end: int | None = None) -> Text:
         """Return the same text, searched from `start` to `end` only."""
@@ -140,11 +153,11 @@ class Text:
         Unlike `number_text` this takes no later number for one that is damaged (stars, NaN). A `suffix` that sticks
         to the number (a unit, a parenthesis) is left out.
         """
-        words = self.rest(at).split(None, 1)
-        word = words[0].removesuffix(suffix) if words else b""
-        if _NUMBER.fullmatch(word) is None:
+        match = _FIRST_WORD.match(self.data, at)
+        if match is None or match.group(2) not in (b"", suffix):
             raise self.expected(at, what)
-        return word.decode().lower().replace("d", "e")
+        digits = match.group(1)
+        return digits.decode().lower().replace("d", "e")
 
     def floats(self, at: int, count: int, what: str, skip: int = 0) -> list[float]:
         """Return `count` numbers of the line from `at` on after `skip` words; ReadError where they are not numbers."""

@@ -21,15 +21,16 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.errors import Finding, ReadError
+from thermo_pp.errors import Finding
 from thermo_pp.names import Severity
-from thermo_pp.readers.nwchem import geometry, levels, states, tasks, vibrations
+from thermo_pp.readers import joined_hessian
+from thermo_pp.readers.nwchem import geometry, joined, levels, states, tasks, vibrations
 from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
 from thermo_pp.readers.nwchem.states import State
 from thermo_pp.readers.nwchem.tasks import Task
 from thermo_pp.readers.nwchem.vibrations import Vibrations
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source
 
@@ -76,34 +77,44 @@ def read(source: Source) -> Calculation:
     main = analysed[-1] if analysed else all_tasks[-1]
     tasks.check_known(text, main)
     blocks = Blocks(text)
+    _check_no_modes(text, main.end if analysed else 0)
     modes: Vibrations | None = None
     own: State | None
     if analysed:
-        table = vibrations.atoms(text, main)
-        shape = states.block_of(text, blocks, main, table)
-        modes = vibrations.vibrations(text, main, table)
+        shape, masses = vibrations.atoms(text, main)
+        masses_at = shape.at
+        modes = vibrations.vibrations(text, main, shape, masses)
         own = states.reference(text, main, shape)
-        masses, masses_at = table.masses_u, table.at
     else:
         own = states.final(text, blocks, main)
         shape = own.geometry
         masses, masses_at = geometry.element_masses(text, shape)
-    taken, failed = states.best(text, blocks, all_tasks, main, own, shape)
+    taken, passed_over = states.best(text, blocks, all_tasks, main, own, shape)
     at = {"positions_angstrom": shape.at, "masses_u": masses_at}
-    doubts = [_failed(text, task, error) for task, error in failed]
+    doubts = [_passed_over(*reason) for reason in passed_over]
     if taken is not None:
         at |= taken.level.at | {"energy_hartree": taken.energy.at}
-    run = _own_run(all_tasks, main, shape)
+    run = _own_run(blocks, all_tasks, main, shape)
     optimised = None
     if run is not None:
         optimised, at["optimised"] = _outcome(text, run)
         if not optimised:
             doubts.append(_not_converged(at["optimised"]))
+    hessian = None if modes is None else modes.hessian_hartree_bohr2
+    extra: tuple[Finding, ...] = ()
+    beside = None if modes is None else joined.beside(text)
+    if modes is not None and beside is not None:
+        exact = joined.hessian(beside, masses, shape.positions_angstrom, modes.wavenumbers_cm)
+        if exact is None:
+            line = text.line_number(modes.at["hessian_hartree_bohr2"])
+            extra = (joined_hessian.not_joined(source, beside, line),)
+        else:
+            hessian = exact
     if modes is not None:
         at |= modes.at
         doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
-    doubts += _ghosts(text, shape, modes)
-    doubts += _left_out(blocks, all_tasks, main, shape)
+    doubts += _ghosts(shape)
+    doubts += _left_out(blocks, [task for task in all_tasks if task not in (main, run)], shape)
     banner = _BANNER.search(text.data)
     if banner is not None:
         at["program_version"] = banner.start(1)
@@ -133,8 +144,9 @@ def read(source: Source) -> Calculation:
         energy_label=None if taken is None else taken.energy.label,
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
-        hessian_hartree_bohr2=None if modes is None else modes.hessian_hartree_bohr2,
+        hessian_hartree_bohr2=hessian,
         optimised=optimised,
+        ended_normally=text.last(tasks.END) >= 0,
         kind_of_job=_kinds(all_tasks),
         printed={}
         if modes is None
@@ -145,8 +157,16 @@ def read(source: Source) -> Calculation:
                 doubt.code, doubt.severity, source.name, lines[f"doubt {i}"], doubt.what, doubt.mend
             )
             for i, doubt in enumerate(doubts)
-        ),
+        )
+        + extra,
     )
+
+
+def _check_no_modes(text: Text, start: int) -> None:
+    """Refuse modes from `start` on, outside any frequency task: its heading is lost."""
+    at = text.find(b"NORMAL MODE EIGENVECTORS IN CARTESIAN COORDINATES", start)
+    if at >= 0:
+        raise text.error(at, "modes, but no heading of a frequency task before", mend=CUT_SHORT)
 
 
 def _kinds(all_tasks: list[Task]) -> tuple[str, ...]:
@@ -154,10 +174,16 @@ def _kinds(all_tasks: list[Task]) -> tuple[str, ...]:
     return tuple(k for k in ("energy", "gradient", "optimisation", "frequencies") if k in kinds)
 
 
-def _own_run(all_tasks: list[Task], main: Task, shape: Geometry) -> Task | None:
-    """Return the optimisation whose last geometry is `shape`: its block stands in that task."""
-    runs = [task for task in all_tasks if task.kind == "optimisation"]
-    return next((task for task in runs if task is main or task.start < shape.at < task.end), None)
+def _own_run(blocks: Blocks, all_tasks: list[Task], main: Task, shape: Geometry) -> Task | None:
+    """Return the optimisation whose last geometry is that of the record, None where there is none."""
+    if main.kind == "optimisation":
+        return main
+    runs = [task for task in all_tasks if task.kind == "optimisation" and task.end < main.start]
+    if not runs:
+        return None
+    block = next(blocks.before(main.headings[0][0]))
+    runs = [task for task in runs if task.start < block.at < task.end]
+    return runs[0] if runs and block.same(shape) else None
 
 
 def _outcome(text: Text, run: Task) -> tuple[bool, int]:
@@ -166,7 +192,9 @@ def _outcome(text: Text, run: Task) -> tuple[bool, int]:
     if at >= 0 and run.failed is None:
         return True, at
     at = text.data.rfind(_UNCONVERGED, run.start, run.end)
-    return False, max(at, run.failed_at) if at < 0 else at
+    if at < 0 and run.failed is None:
+        raise text.error(run.end, "this optimisation does not say how it ended", mend=CUT_SHORT)
+    return False, run.failed_at if at < 0 else at
 
 
 def _not_converged(at: int) -> Doubt:
@@ -179,12 +207,12 @@ def _not_converged(at: int) -> Doubt:
     )
 
 
-def _failed(text: Text, task: Task, error: ReadError) -> Doubt:
+def _passed_over(at: int, why: str) -> Doubt:
     return Doubt(
         "task-not-read",
         "warning",
-        task.failed_at if task.failed is not None else task.headings[0][0],
-        f"this task is not read: {error.what} ({error.where})",
+        at,
+        f"this task is passed over: {why}",
         "rerun that task, or give a file without it",
     )
 
@@ -248,11 +276,8 @@ def _modes_doubts(
 
 
 def _same_printed_level(text: Text, run: Task, own: State) -> bool:
-    """Tell, for HF and DFT, whether two tasks printed the same functional and basis set."""
-    names = run.names & own.task.names
-    if states.may_be_correlated(text, run) or own.energy.label not in ("HF", "DFT"):
-        return False
-    if (tasks.DFT if own.energy.label == "DFT" else tasks.SCF) not in names:
+    """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
+    if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)
@@ -262,15 +287,9 @@ def _words(state: State) -> str:
     return "/".join(part for part in (state.level.method, state.level.basis) if part)
 
 
-def _ghosts(text: Text, shape: Geometry, modes: Vibrations | None) -> list[Doubt]:
+def _ghosts(shape: Geometry) -> list[Doubt]:
     if not shape.ghosts:
         return []
-    if modes is not None:
-        raise text.error(
-            shape.at,
-            "frequencies of a molecule with ghost atoms are not read",
-            mend="rerun the frequency task without ghost atoms",
-        )
     return [
         Doubt(
             "ghost-atoms",
@@ -282,10 +301,10 @@ def _ghosts(text: Text, shape: Geometry, modes: Vibrations | None) -> list[Doubt
     ]
 
 
-def _left_out(blocks: Blocks, all_tasks: list[Task], main: Task, shape: Geometry) -> list[Doubt]:
+def _left_out(blocks: Blocks, others: list[Task], shape: Geometry) -> list[Doubt]:
     """Return a finding where another task is of other atoms."""
-    for task in all_tasks:
-        block = None if task is main else next(blocks.before(task.end), None)
+    for task in others:
+        block = next(blocks.before(task.end), None)
         if block is not None and not block.same_atoms(shape):
             return [
                 Doubt(

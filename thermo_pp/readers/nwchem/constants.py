@@ -19,9 +19,6 @@ from __future__ import annotations
 
 import math
 
-import numpy as np
-from numpy.typing import NDArray
-
 from thermo_pp import units
 
 GAS_CAL_MOL_K = 1.9863
@@ -41,9 +38,9 @@ PRESSURE_PA = units.ATM_PA
 ANGSTROM_PER_BOHR = 1.0 / 1.889725989
 
 
-def zero_point_kcal_mol(wavenumbers_cm: NDArray[np.float64]) -> float:
-    """Return the zero-point energy of modes, shape (m,), cm^-1, as NWChem has it, kcal/mol."""
-    return 0.5e-3 * GAS_CAL_MOL_K * SECOND_RADIATION_K_CM * float(wavenumbers_cm.sum())
+def zero_point_kcal_mol(sum_cm: float) -> float:
+    """Return the zero-point energy of modes whose wavenumbers sum to `sum_cm`, as NWChem has it, kcal/mol."""
+    return 0.5e-3 * GAS_CAL_MOL_K * SECOND_RADIATION_K_CM * sum_cm
 
 
 def _effective() -> dict[str, float]:

@@ -6,6 +6,7 @@ coupled-cluster module starts from, stand beside and are left there. Totals are 
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -40,9 +41,20 @@ RANKS: dict[str, int] = {
 CORRELATED = RANKS["SCS-MP2"]
 
 _TOTALS = {SCF: b"Total SCF energy =", DFT: b"Total DFT energy ="}
-_REPULSION = re.compile(rb"Nuclear repulsion energy =")
+_PARTS = frozenset(
+    (
+        *(b"One electron energy", b"Two electron energy", b"One-electron energy"),
+        *(b"Two-electron energy", b"Coulomb energy", b"Exchange-Corr. energy", b"Exchange energy"),
+        *(b"Correlation energy", b"Nuclear repulsion energy", b"COSMO energy"),
+        b"Dispersion correction",
+    )
+)
+_REPULSION = b"Nuclear repulsion energy"
+_PARTS_BYTES = 520
 _UNCONVERGED = b"Calculation failed to converge"
 _DOUBLE_HYBRID = (b"Total DFT+SCS-MP2 energy", b"Total DFT+MP2 energy")
+_ORBITALS_END = b"Multipole analysis of the density"
+_RESOLVED = b"RI-MP2 Calculation Information"
 _MP2_TOTAL = b"Total MP2 energy  "
 _SCS_TOTAL = b"Total SCS-MP2 energy"
 _SCS_ONLY = b"SCS Correlation energy"
@@ -54,11 +66,12 @@ _CC_TOTALS = {
     "ccsd+t(ccsd)": ("CCSD+T(CCSD)", (b"CCSD corr. energy:", b"T(CCSD) corr. energy:")),
     "ccsd(t)": ("CCSD(T)", (b"CCSD corr. energy:", b" (T) corr. energy:")),
 }
+_TCE_MARK = b" total energy / hartree"
 _TCE_TOTAL = re.compile(rb"\n (\S+) total energy / hartree +=")
 _TCE_CORRECTION = re.compile(rb"Perturbative correction : (\S+)")
 _TCE_NAMES = {"MBPT(2)": "MP2", "MBPT(3)": "MP3", "MBPT(4)": "MP4"}
-_STEP = 3e-9
-"""Parts and total agree to this, hartree; twelve decimals are printed at least."""
+_STEP = 1e-11
+"""Parts and total agree to this and a few units of double precision, hartree; twelve decimals are printed."""
 
 
 @dataclass(frozen=True)
@@ -76,6 +89,8 @@ class Solution:
         Nuclear repulsion printed with it.
     label : str
         ``"HF"`` or ``"DFT"``.
+    end : int
+        Offset of the next solution, or of the end of the task; -1 where it is not looked for yet.
     """
 
     at: int
@@ -83,6 +98,7 @@ class Solution:
     value_hartree: float
     repulsion_hartree: float | None
     label: str
+    end: int
 
 
 @dataclass(frozen=True)
@@ -108,9 +124,11 @@ def solutions(text: Text, task: Task, *, backwards: bool = False) -> Iterator[So
     """Yield the SCF or DFT solutions of a task in order, or in reverse order."""
     mark = _mark(text, task)
     find = text.data.rfind if backwards else text.data.find
+    end = task.end if backwards else -1
     at = find(mark, task.start, task.end)
     while at >= 0:
-        yield _solution(text, task, mark, at)
+        yield _solution(text, mark, at, end)
+        end = at if backwards else -1
         at = find(mark, task.start, at) if backwards else find(mark, at + 1, task.end)
 
 
@@ -126,26 +144,51 @@ def _mark(text: Text, task: Task) -> bytes:
     return _TOTALS[mine[0]]
 
 
-def _solution(text: Text, task: Task, mark: bytes, at: int) -> Solution:
+def _solution(text: Text, mark: bytes, at: int, end: int) -> Solution:
     value = _value(text, at, mark, "the total energy")
     label = "DFT" if mark == _TOTALS[DFT] else "HF"
-    full, repulsion = at, _repulsion(text, at)
+    full, repulsion = at, _repulsion(text, at, mark, value)
     if repulsion is None:
-        # "already converged": the same number stands with its parts in an earlier solution
-        earlier = text.data.rfind(mark, task.start, at)
+        # "already converged": the same digits stand with their parts in an earlier solution
+        digits = text.rest(at + len(mark)).strip()
+        earlier = text.data.rfind(digits, 0, at)
         while earlier >= 0 and repulsion is None:
-            if _value(text, earlier, mark, "the total energy") != value:
-                break
-            full, repulsion = earlier, _repulsion(text, earlier)
-            earlier = text.data.rfind(mark, task.start, earlier)
-    return Solution(at, full, value, repulsion, label)
+            start = text.data.rfind(b"\n", 0, earlier) + 1
+            place = text.data.find(mark, start, earlier)
+            if place >= 0:
+                full, repulsion = place, _repulsion(text, place, mark, value)
+            earlier = text.data.rfind(digits, 0, start)
+    return Solution(at, full, value, repulsion, label, end)
 
 
-def _repulsion(text: Text, at: int) -> float | None:
-    match = _REPULSION.search(text.data, at, at + 500)
-    if match is None:
+def _repulsion(text: Text, at: int, mark: bytes, value: float) -> float | None:
+    """Return the nuclear repulsion printed with a total energy, which must be the sum of its parts."""
+    parts: dict[bytes, float] = {}
+    for line in text.data[at : at + _PARTS_BYTES].split(b"\n")[1:-1]:
+        name, _, number = line.partition(b"=")
+        name = name.strip()
+        if name in _PARTS:
+            parts[name] = _float(number)
+        elif mark in line:
+            break
+    if not parts:
         return None
-    return float(text.exact_text(match.end(), "the nuclear repulsion energy"))
+    total = math.fsum(parts.values())
+    if _REPULSION not in parts or not abs(total - value) <= _rounding(value, total):
+        raise text.error(
+            at,
+            f"the total energy {value:.9f} is not the sum of its parts below, {total:.9f}",
+            mend=CUT_SHORT,
+        )
+    return parts[_REPULSION]
+
+
+def _float(digits: bytes) -> float:
+    """Return a number, NaN where it is damaged."""
+    try:
+        return float(digits)
+    except ValueError:
+        return math.nan
 
 
 def _value(text: Text, at: int, mark: bytes, what: str) -> float:
@@ -177,19 +220,29 @@ def energy(text: Text, task: Task, solution: Solution) -> Energy:
     own = Energy(solution.label, solution.value_hartree, solution.at, solution, end)
     if ANALYTIC in task.names or (solution.label == "DFT" and MP2 not in task.names):
         return own
-    following = text.data.find(_TOTALS[DFT if solution.label == "DFT" else SCF], start + 1, end)
-    end = end if following < 0 else following
+    if solution.end >= 0:
+        end = solution.end
+    else:
+        following = text.data.find(_TOTALS[DFT if solution.label == "DFT" else SCF], start + 1, end)
+        end = end if following < 0 else following
     if solution.label == "DFT":
         return _double_hybrid(text, solution, end)
-    if task.heading(TCE, start, end):
+    # what correlated modules print comes after the orbitals, which are long
+    behind = text.data.find(_ORBITALS_END, start, end)
+    behind = start if behind < 0 else behind
+    if TCE in task.names or text.data.find(_TCE_MARK, behind, end) >= 0:
         return _contracted(text, solution, end)
-    coupled = text.data.find(_CC_PROGRAM, start, end)
+    coupled = text.data.find(_CC_PROGRAM, behind, end)
     if coupled >= 0:
         return _coupled(text, solution, coupled, end)
-    if task.heading(RIMP2, start, end):
+    if text.data.find(b"Total CCSD", behind, end) >= 0:
+        raise _missing(text, solution, "coupled-cluster program's")
+    if RIMP2 in task.names or text.data.find(_RESOLVED, behind, end) >= 0:
         return _second_order(text, solution, "RI-MP2", end)
-    if task.heading(MP2, start, end) or text.data.find(b" Direct MP2", start, end) >= 0:
+    if MP2 in task.names or text.data.find(_MP2_TOTAL, behind, end) >= 0:
         return _second_order(text, solution, "MP2", end)
+    if text.data.find(b" Direct MP2", behind, end) >= 0:
+        raise _missing(text, solution, "MP2")
     return own
 
 
@@ -262,8 +315,8 @@ def _contracted(text: Text, solution: Solution, end: int) -> Energy:
 
 
 def _check(text: Text, at: int, value: float, solution: Solution, parts: list[float]) -> None:
-    total = solution.value_hartree + sum(parts)
-    if abs(total - value) > _STEP:
+    total = math.fsum([solution.value_hartree, *parts])
+    if abs(total - value) > _rounding(value, total):
         raise text.error(
             at,
             f"the total energy {value:.9f} is not the sum of its parts, {total:.9f}",
@@ -271,10 +324,14 @@ def _check(text: Text, at: int, value: float, solution: Solution, parts: list[fl
         )
 
 
+def _rounding(*values: float) -> float:
+    return _STEP + 4e-16 * max(map(abs, values))
+
+
 def _missing(text: Text, solution: Solution, label: str) -> Exception:
     return text.error(
         solution.at,
-        f"no {label} energy after this SCF, although its module ran",
+        f"no {label} energy after this SCF, although its module ran, or its heading is missing",
         mend="check that the job ran to its end; rerun it",
     )
 

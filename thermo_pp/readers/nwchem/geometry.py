@@ -10,12 +10,14 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import chain, combinations
+from math import dist
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import SYMBOLS
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 FloatArray = NDArray[np.float64]
 
@@ -28,14 +30,14 @@ _REPLACES = re.compile(rb"\n  (\S+) \([^)\n]*\) Replaces +(\d+) electrons")
 
 @dataclass(frozen=True, eq=False)
 class Geometry:
-    """One geometry block.
+    """One geometry: a block of its own, or the atom table of a vibrational analysis.
 
     Attributes
     ----------
     at : int
         Offset of its first atom.
     tags : tuple of str
-        The program's names of the centres.
+        The input's names of the centres; of an atom table the elements.
     numbers : shape (n,), int
         Atomic numbers, 0 of a ghost atom.
     positions_angstrom : shape (n, 3)
@@ -55,10 +57,15 @@ class Geometry:
         return self.numbers > 0
 
     def same(self, other: Geometry) -> bool:
-        """Tell whether both are the same atoms at the same places, up to rounding of the last digit."""
-        return (
-            np.array_equal(self.numbers, other.numbers)
-            and float(np.max(np.abs(self.positions_angstrom - other.positions_angstrom))) < 3e-8
+        """Tell whether both are the same atoms at the same places, up to rounding of eight digits of either."""
+        if not np.array_equal(self.numbers, other.numbers):
+            return False
+        mine, its = (
+            self.positions_angstrom.ravel().tolist(),
+            other.positions_angstrom.ravel().tolist(),
+        )
+        return all(
+            abs(x - y) <= 1e-8 + 5e-8 * max(1.0, abs(x)) for x, y in zip(mine, its, strict=True)
         )
 
     def same_atoms(self, other: Geometry) -> bool:
@@ -133,41 +140,66 @@ def atom_rows(text: Text, start: int, end: int, *, name: int) -> tuple[tuple[str
 
 def belongs(text: Text, geometry: Geometry, repulsion_hartree: float) -> bool:
     """Tell whether a printed nuclear repulsion follows from a geometry, cores replaced by potentials left out."""
-    charges = geometry.numbers.astype(np.float64)
+    charges = geometry.numbers.tolist()
     if _follows(charges, geometry.positions_angstrom, repulsion_hartree):
         return True
+    cores = replaced_cores(text, geometry)
+    left = [z - core for z, core in zip(charges, cores, strict=True)]
+    return any(cores) and _follows(left, geometry.positions_angstrom, repulsion_hartree)
+
+
+def replaced_cores(text: Text, geometry: Geometry) -> list[int]:
+    """Return how many electrons of each centre an effective core potential replaces."""
     replaced = {
         match.group(1).decode("utf-8", "replace").lower(): int(match.group(2))
         for match in _REPLACES.finditer(text.data)
     }
-    cores = [replaced.get(tag.lower(), 0) for tag in geometry.tags]
-    return any(cores) and _follows(charges - cores, geometry.positions_angstrom, repulsion_hartree)
+    by_element = {element(tag, geometry): count for tag, count in replaced.items()}
+    symbols = [SYMBOLS[z].lower() for z in geometry.numbers]
+    return [
+        replaced.get(tag.lower(), by_element.get(symbol, 0))
+        for tag, symbol in zip(geometry.tags, symbols, strict=True)
+    ]
 
 
-def _follows(charges: FloatArray, positions_angstrom: FloatArray, repulsion: float) -> bool:
-    """Compare within what the rounding of coordinates to eight decimals makes at most."""
-    positions = positions_angstrom * BOHR_PER_ANGSTROM
-    between = positions[:, np.newaxis] - positions
-    squares = (between * between).sum(axis=2)
-    squares.flat[:: len(charges) + 1] = np.inf  # no repulsion of itself
-    products = 0.5 * np.outer(charges, charges)
-    computed = float((products / np.sqrt(squares)).sum())
-    rounding = 3.5 * 1e-8 * float((products / squares).sum())
+def element(tag: str, geometry: Geometry) -> str:
+    """Return the symbol of the geometry's element that a name of the input begins with, the name where none fits."""
+    symbols = {SYMBOLS[z] for z in geometry.numbers if z}
+    fitting = [symbol for symbol in symbols if tag.lower().startswith(symbol.lower())]
+    return max(fitting, key=len, default=tag).lower()
+
+
+def _follows(charges: list[int], positions_angstrom: FloatArray, repulsion: float) -> bool:
+    """Compare within what the rounding of coordinates, eight decimals or digits, makes at most."""
+    rows = (positions_angstrom * BOHR_PER_ANGSTROM).tolist()
+    computed = slope = 0.0
+    for (z, here), (other, there) in combinations(zip(charges, rows, strict=True), 2):
+        if z and other:
+            distance = dist(here, there)
+            computed += z * other / distance
+            slope += z * other / (distance * distance)
+    largest = max(map(abs, chain.from_iterable(rows)))
+    rounding = 3.5 * slope * (1e-8 if largest < 1.0 else 5e-8 if largest < 10.0 else 5e-7)
     return abs(computed - repulsion) <= rounding + 1e-9 * abs(computed) + 1e-9
 
 
 def element_masses(text: Text, geometry: Geometry) -> tuple[FloatArray, int]:
     """Return the mass of each centre as the list of the geometry block has it (by name), and where the list stands."""
     at = text.need(b"Atomic Mass", geometry.at, lacking="no list of atomic masses")
-    line = first = text.next_line(at, 3)
-    masses: dict[str, float] = {}
-    while words := text.rest(line).split():
-        masses[words[0].decode("utf-8", "replace")] = text.floats(line, 1, "a mass", skip=1)[0]
-        line = text.next_line(line)
-    missing = [tag for tag, real in zip(geometry.tags, geometry.real, strict=True) if real]
-    missing = [tag for tag in missing if tag not in masses]
-    if missing:
+    first = text.next_line(at, 3)
+    words = text.data[first : text.blank_line(first)].split()
+    try:
+        masses = {
+            name.decode("utf-8", "replace"): float(mass)
+            for name, mass in zip(words[::2], words[1::2], strict=True)
+        }
+    except ValueError:
+        raise text.expected(first, "names and masses in the lines from here on") from None
+    missing = [tag for tag in geometry.tags if tag not in masses and tag[:2].lower() != "bq"]
+    if missing or not all(0.0 < mass < 1000.0 for mass in masses.values()):
         raise text.error(
-            first, f"no mass of {missing[0]!r} in this list", mend="re-copy the output"
+            first,
+            f"no mass of {missing[0]!r} in this list" if missing else "a mass that is none",
+            mend=CUT_SHORT,
         )
     return np.array([masses.get(tag, 0.0) for tag in geometry.tags]), first

@@ -5,11 +5,10 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.nwchem.energies import CORRELATED, Energy
-from thermo_pp.readers.nwchem.geometry import Geometry
-from thermo_pp.readers.nwchem.tasks import Task
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
+from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 _NAMED = re.compile(r"(\S.*\S) Method XC (?:Potential|Functional)")
 _PART = re.compile(r"(\S.*\S) +(\d+\.\d+)(?: (?:local|non-local))?")
@@ -28,9 +27,17 @@ _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
     ("PBE", {_PBE_X: 1.0, **_PBE_C}),
     ("PBE0", {"Hartree-Fock (Exact) Exchange": 0.25, _PBE_X: 0.75, **_PBE_C}),
 )
-"""Functionals that the program prints by their parts only."""
+"""Functionals that the program prints by their parts, too."""
+_SAME = {"PBE96": "PBE"}
+_BASIS_ROW = re.compile(r" ?(\S+) +(\S.*?) +(?:\d+ +\d+ +(\S+)|on all atoms) *")
 _SUMMARY = b'Summary of "ao basis"'
-_ALPHA = re.compile(rb"alpha electrons =\s*(\d+)\s*\r?\n\s*beta  electrons =\s*(\d+)")
+_SCF_STATE = re.compile(
+    rb"(closed|alpha) (?:shells  |electrons) = +(\d+)\s+(open|beta) +(?:shells  |electrons) +?= *(\d+)"
+)
+_DFT_STATE = re.compile(
+    rb"No\. of electrons : +(\d+)\s+Alpha electrons : +(\d+)\s+Beta electrons : +(\d+)\s+"
+    rb"Charge +: +(-?\d+)\s+Spin multiplicity: +(\d+)"
+)
 _FROZEN = (
     re.compile(rb"Frozen core +=\s*(\d+)"),
     re.compile(rb"number of core +(\d+)"),
@@ -79,7 +86,9 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> Level:
         method = energy.label
         if energy.rank >= CORRELATED:
             frozen = _frozen(text, energy, geometry, at)
-    charge, multiplicity = _state(before, energy.solution.label, at)
+    method = _relativistic(text, task, energy) + method
+    charge, multiplicity, electrons = _state(before, energy.solution.label, at)
+    _check_electrons(text, geometry, charge, electrons, at)
     return Level(
         method=method,
         basis=_basis(before, geometry, at),
@@ -95,7 +104,9 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> Level:
 
 def printed_level(text: Text, task: Task, before: int) -> bytes:
     """Return what a task printed last of its functional and basis set before an offset, to be compared."""
-    blocks = ((b"XC Information", b"Grid Information"), (_SUMMARY, b"\n\n"))
+    blocks = [(_SUMMARY, b"\n\n")]
+    if DFT in task.names:
+        blocks.append((b"XC Information", b"Grid Information"))
     found = b""
     for mark, closing in blocks:
         place = text.data.rfind(mark, task.start, before)
@@ -110,7 +121,8 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     at["method"] = line = before.next_line(place, 2)
     named = _NAMED.fullmatch(before.line(line).strip())
     if named is not None:
-        return named.group(1).upper()
+        name = named.group(1).upper()
+        return _SAME.get(name, name)
     parts: dict[str, float] = {}
     while match := _PART.fullmatch(before.line(line).strip()):
         parts[match.group(1)] = float(match.group(2))
@@ -127,6 +139,17 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     return f"{text}; {ranges}" if ranges else text
 
 
+def _relativistic(text: Text, task: Task, energy: Energy) -> str:
+    """Return the prefix of a relativistic Hamiltonian, which is switched on before the task's first solution."""
+    module = next(at for at, name in task.headings if name in (SCF, DFT))
+    if text.data.find(b"Douglas-Kroll integrals", task.start, module) >= 0:
+        return "DKH-"
+    first = text.data.find(b" energy =", module, energy.solution.at)
+    if first >= 0 and text.data.find(b"Performing ZORA calculations", module, first) >= 0:
+        return "ZORA-"
+    return ""
+
+
 def _grid(before: Text, at: dict[str, int]) -> str | None:
     mark = b"Grid used for XC integration:"
     place = before.last(mark)
@@ -137,26 +160,22 @@ def _grid(before: Text, at: dict[str, int]) -> str | None:
     return words[0].decode("utf-8", "replace")
 
 
-def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str:
+def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str | None:
     """Return the name of the correction; the program prints its part beside every energy that has one."""
     full = energy.solution.full
     data = before.data
     place = data.find(b"Dispersion correction =", full, full + 700)
     if place < 0:
-        exchange_hole = data.find(b"XDM dispersion energy", max(before.start, full - 2000), full)
-        if exchange_hole < 0:
-            return "none"
-        at["dispersion"] = exchange_hole
-        return "XDM"
+        return "none"
     at["dispersion"] = place
     block = data.rfind(b"Dispersion Parameters", before.start, full)
-    if block < 0:
-        return "unknown dispersion correction"
-    at["dispersion"] = block
-    for mark, name in ((b"DFT-D3BJ Model", "D3(BJ)"), (b"DFT-D3 Model", "D3")):
+    models = ((b"DFT-D3BJ Model", "D3(BJ)"), (b"DFT-D3 Model", "D3"), (b"s6 scale factor :", "D2"))
+    for mark, name in models if block >= 0 else ():
         if data.find(mark, block, block + 300) >= 0:
+            at["dispersion"] = block
             return name
-    return "D2"
+    exchange_hole = data.find(b"XDM dispersion energy", max(before.start, full - 1000), full)
+    return "XDM" if exchange_hole >= 0 else None
 
 
 def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
@@ -206,31 +225,52 @@ def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) 
     return ("frozen" if count == cores else f"frozen: {count} orbitals") + extra
 
 
-def _state(before: Text, label: str, at: dict[str, int]) -> tuple[int | None, int | None]:
-    """Return charge and multiplicity, None where they are not printed."""
-    charge = multiplicity = None
-    place = before.last(b"Charge           :" if label == "DFT" else b" charge          =")
-    if place >= 0:
-        at["charge"] = place
-        charge = _whole(before, place, "the charge")
+def _state(
+    before: Text, label: str, at: dict[str, int]
+) -> tuple[int | None, int | None, int | None]:
+    """Return charge, multiplicity and number of electrons, None where they are not printed."""
     if label == "DFT":
-        place = before.last(b"Spin multiplicity:")
-        if place >= 0:
-            at["multiplicity"] = place
-            multiplicity = _whole(before, place, "the multiplicity")
-        return charge, multiplicity
-    if charge is None:
-        return None, None
-    window = max(before.start, place - 400), place
-    place = before.data.rfind(b"open shells     =", *window)
-    if place >= 0:
-        at["multiplicity"] = place
-        return charge, _whole(before, place, "the number of open shells") + 1
-    spins = _ALPHA.search(before.data, *window)
-    if spins is not None:
-        at["multiplicity"] = spins.start()
-        multiplicity = int(spins.group(1)) - int(spins.group(2)) + 1
-    return charge, multiplicity
+        place = before.last(b"Charge           :")
+        match = place >= 0 and _DFT_STATE.search(
+            before.data, max(before.start, place - 200), place + 100
+        )
+        if not match:
+            return None, None, None
+        at["charge"], at["multiplicity"] = match.start(4), match.start(5)
+        total, alpha, beta, charge, multiplicity = (int(group) for group in match.groups())
+        if alpha + beta != total or multiplicity != abs(alpha - beta) + 1:
+            raise before.error(
+                match.start(), "these numbers of electrons do not fit together", mend=CUT_SHORT
+            )
+        return charge, multiplicity, total
+    place = before.last(b" charge          =")
+    if place < 0:
+        return None, None, None
+    at["charge"] = place
+    charge = _whole(before, place, "the charge")
+    match = _SCF_STATE.search(before.data, max(before.start, place - 400), place + 1)
+    if match is None:
+        return charge, None, None
+    at["multiplicity"] = match.start(2)
+    first, second = int(match.group(2)), int(match.group(4))
+    if match.group(1) == b"closed":
+        return charge, second + 1, 2 * first + second
+    return charge, first - second + 1, first + second
+
+
+def _check_electrons(
+    text: Text, geometry: Geometry, charge: int | None, electrons: int | None, at: dict[str, int]
+) -> None:
+    """Compare nuclear charges, charge and number of electrons, those of core potentials left out."""
+    if charge is None or electrons is None:
+        return
+    cores = int(geometry.numbers.sum()) - charge - electrons
+    if cores and cores != sum(replaced_cores(text, geometry)):
+        raise text.error(
+            at["charge"],
+            f"charge {charge} and {electrons} electrons do not fit the nuclei of the geometry",
+            mend=CUT_SHORT,
+        )
 
 
 def _whole(before: Text, place: int, what: str) -> int:
@@ -253,19 +293,20 @@ def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
     line = before.next_line(place, 4)
     names: dict[str, str] = {}
     polarised = False
-    while words := before.line(line).split():
-        everywhere = words[-3:] == ["on", "all", "atoms"]
-        polarised = polarised or everywhere or bool(set(words[-1]) & set("dfghi"))
-        names[words[0]] = " ".join(words[1:-3])
-        line = before.next_line(line)
-    if not names or any(name in ("", "user specified") for name in names.values()):
+    table = before.data[line : before.blank_line(line)].decode("utf-8", "replace")
+    for text_line in table.splitlines():
+        row = _BASIS_ROW.fullmatch(text_line)
+        if row is None:
+            return None
+        polarised = polarised or row.group(3) is None or not set("dfghi").isdisjoint(row.group(3))
+        names[row.group(1)] = row.group(2)
+    if not names or "user specified" in names.values():
         return None
     at["basis"] = before.next_line(place, 4)
     real = {tag: name for tag, name in names.items() if tag[:2].lower() != "bq"}
     if len(set(real.values())) == 1:
         text = next(iter(real.values()))
     else:
-        symbols = dict(zip(geometry.tags, (SYMBOLS[z] for z in geometry.numbers), strict=True))
-        by_element = {(symbols.get(tag, tag), name) for tag, name in real.items()}
+        by_element = {(element(tag, geometry).capitalize(), name) for tag, name in real.items()}
         text = ", ".join(f"{symbol}: {name}" for symbol, name in sorted(by_element))
     return f"{text} (cartesian)" if polarised and b"(cartesian)" in heading else text

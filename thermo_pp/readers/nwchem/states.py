@@ -2,16 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass
 
-from thermo_pp.errors import ReadError
 from thermo_pp.readers.nwchem import energies, levels, tasks
 from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, Solution
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry, belongs
 from thermo_pp.readers.nwchem.levels import Level
 from thermo_pp.readers.nwchem.tasks import Task
-from thermo_pp.readers.nwchem.vibrations import Atoms
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 _SUMMARY = b"\n@ "
@@ -34,21 +31,6 @@ class State:
             and mine.charge == its.charge
             and mine.multiplicity == its.multiplicity
         )
-
-
-def block_of(text: Text, blocks: Blocks, task: Task, table: Atoms) -> Geometry:
-    """Return the geometry block of a frequency task's atom table, which has more digits and the nuclear charges."""
-    for block in blocks.before(task.start):
-        if table.same(block):
-            return block
-    for block in blocks.before(table.at):
-        if table.same(block):
-            return block
-    raise text.error(
-        table.at,
-        "the atoms of this table are not those of any geometry block before it",
-        mend="an atom is lost or damaged here; rerun or re-copy the output",
-    )
 
 
 def reference(text: Text, task: Task, geometry: Geometry) -> State | None:
@@ -136,30 +118,41 @@ def best(
     main: Task,
     own: State | None,
     geometry: Geometry,
-) -> tuple[State | None, list[tuple[Task, ReadError]]]:
-    """Return the state whose energy is taken, and the tasks that might have had a better one but failed.
+) -> tuple[State | None, list[tuple[int, str]]]:
+    """Return the state whose energy is taken, and offset and reason of later tasks that have no usable one.
 
     See the docstring of the reader for the rule.
     """
     found = own
-    failed: list[tuple[Task, ReadError]] = []
+    passed_over: list[tuple[int, str]] = []
     for task in all_tasks:
-        later = task.start > main.start
-        if task is main or not (later or own is None or may_be_correlated(text, task)):
+        later = task.start > main.start or own is None
+        if task is main or not (later or _may_be_better(text, task, own)):
             continue
-        try:
-            tasks.check_known(text, task)
-            state = reference(text, task, geometry) if task.kind == "frequencies" else None
-            state = state or final(text, blocks, task)
-        except ReadError as error:
-            failed.append((task, error))
+        reason = _unusable(text, task)
+        if reason is not None:
+            passed_over.append(reason)
             continue
+        state = reference(text, task, geometry) if task.kind == "frequencies" else None
+        state = state or final(text, blocks, task)
         if found is None:
             if state.geometry.same(geometry):
                 found = state
-        elif state.same(found) and _better(state, found, later or own is None):
+        elif state.same(found) and _better(state, found, later):
             found = state
-    return found, failed
+    return found, passed_over
+
+
+def _unusable(text: Text, task: Task) -> tuple[int, str] | None:
+    """Return where and why a task has no energy to be used although the file is whole, None where it has one."""
+    module = tasks.unknown(task)
+    if module is not None:
+        return module[0], f"the {module[1]!r} is not known to the NWChem reader"
+    if task.failed is not None and task.kind != "optimisation":
+        return task.failed_at, f"the program says: {task.failed}"
+    last = next(energies.solutions(text, task, backwards=True), None)
+    at = -1 if last is None else energies.unconverged(text, last)
+    return (at, "its SCF did not converge") if at >= 0 else None
 
 
 def _better(state: State, found: State, later: bool) -> bool:
@@ -168,15 +161,15 @@ def _better(state: State, found: State, later: bool) -> bool:
     return state.energy.rank > found.energy.rank and state.energy.rank >= CORRELATED
 
 
-def may_be_correlated(text: Text, task: Task) -> bool:
-    """Tell whether a task may have a correlated energy; told from its last solution's part of the text."""
-    if task.names & {tasks.MP2, tasks.RIMP2, tasks.TCE}:
-        return True
-    if tasks.SCF not in task.names or tasks.DFT in task.names:
+def _may_be_better(text: Text, task: Task, own: State | None) -> bool:
+    """Tell whether an earlier task may have a correlated energy above `own`; of an optimisation the headings tell."""
+    correlated = task.names & tasks.CORRELATED
+    if correlated:
+        second_order = correlated <= {tasks.MP2, tasks.RIMP2}
+        return not (second_order and own is not None and own.energy.rank >= CORRELATED)
+    if task.kind == "optimisation" or tasks.SCF not in task.names or tasks.DFT in task.names:
         return False
-    last: Iterator[Solution] = energies.solutions(text, task, backwards=True)
-    try:
-        solution = next(last, None)
-        return solution is not None and energies.energy(text, task, solution).rank >= CORRELATED
-    except ReadError:
-        return True
+    last = next(energies.solutions(text, task, backwards=True), None)
+    if last is None or energies.unconverged(text, last) >= 0:
+        return False
+    return energies.energy(text, task, last).rank >= CORRELATED

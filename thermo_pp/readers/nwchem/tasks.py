@@ -7,31 +7,35 @@ the headings of the modules tell what it was.
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from thermo_pp.errors import ReadError
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 END = b"Total times  cpu:"
-_HEADING = re.compile(rb"NWChem ([A-Z][\w/ -]*?) *\r?\n +---")
+_HEADING = re.compile(rb"NWChem ([A-Z][^\r\n]*\S)[ \t]*\r?\n +---")
 _STOPPED = re.compile(rb"\n -{72}\r?\n ([^\r\n]*?) *\d*\r?\n -{72}")
 _FAILED = re.compile(rb"!! warning: ([^\r\n]* failed)")
-_INPUT = "Input Module"
-_FREQUENCIES = "Nuclear Hessian and Frequency Analysis"
-_OPTIMISATION = "Geometry Optimization"
-_GRADIENTS = ("DFT Gradient Module", "Gradients Module", "Numerical Gradients Module")
-SCF = "SCF Module"
-DFT = "DFT Module"
-MP2 = "MP2 Semi-direct Energy/Gradient Module"
-RIMP2 = "RI-MP2 Module"
-TCE = "Extensible Many-Electron Theory Module"
-ANALYTIC = "Analytic Hessian"
+_INPUT = b"Input Module"
+_FREQUENCIES = b"Nuclear Hessian and Frequency Analysis"
+_OPTIMISATION = b"Geometry Optimization"
+SCF = b"SCF Module"
+DFT = b"DFT Module"
+MP2 = b"MP2 Semi-direct Energy/Gradient Module"
+RIMP2 = b"RI-MP2 Module"
+TCE = b"Extensible Many-Electron Theory Module"
+ANALYTIC = b"Analytic Hessian"
+_NUMERICAL = b"Numerical Gradients Module"
+CORRELATED = frozenset((MP2, RIMP2, TCE, _NUMERICAL))
+"""Coupled clusters without a heading of their own are optimised by numerical gradients."""
+_GRADIENTS = (b"DFT Gradient Module", b"Gradients Module", _NUMERICAL)
+LEVEL = CORRELATED | {SCF, DFT}
 _READ = {
     *(_FREQUENCIES, _OPTIMISATION, *_GRADIENTS, SCF, DFT, MP2, RIMP2, TCE, ANALYTIC),
-    *("Finite-difference Hessian", "CPHF Module", "Property Module"),
-    "Electrostatic Potential Fit Module",
+    *(b"Finite-difference Hessian", b"CPHF Module", b"Property Module"),
+    b"Electrostatic Potential Fit Module",
 }
-_GROUND_STATE_STANDS = "TDDFT Module"
+_GROUND_STATE_STANDS = b"TDDFT Module"
 """The energy that this module's tasks print first is that of the ground state; of gradients that is not so."""
 
 
@@ -45,9 +49,9 @@ class Task:
         ``"energy"``, ``"gradient"``, ``"optimisation"`` or ``"frequencies"``.
     start, end : int
         Byte offsets: the heading of the input module before it, and the end of what it printed.
-    headings : tuple of (int, str)
-        Offset and name of every module heading in it.
-    names : frozenset of str
+    headings : tuple of (int, bytes)
+        Offset and name of the module headings in it.
+    names : frozenset of bytes
         The names alone.
     failed : str or None
         What the program says about its failure, where the input told it to go on.
@@ -58,14 +62,10 @@ class Task:
     kind: str
     start: int
     end: int
-    headings: tuple[tuple[int, str], ...]
-    names: frozenset[str]
+    headings: tuple[tuple[int, bytes], ...]
+    names: frozenset[bytes]
     failed: str | None = None
     failed_at: int = -1
-
-    def heading(self, name: str, start: int, end: int) -> bool:
-        """Tell whether the module heading `name` stands between two offsets."""
-        return any(start <= at < end and name == found for at, found in self.headings)
 
 
 def tasks(text: Text) -> list[Task]:
@@ -77,21 +77,29 @@ def tasks(text: Text) -> list[Task]:
         No normal end of the program, or no task before it.
     """
     ended = text.last(END)
+    unconverged = None
     if ended < 0:
-        raise _stopped(text)
+        unconverged = _unconverged(text)
+        if unconverged is None:
+            raise _stopped(text)
+        ended = unconverged.start(1)
+    # one pass over the bytes, the dearest of all; a title of the same words has fewer blanks before it
     headings = [
-        (match.start(), match.group(1).decode())
+        (match.start(), match.group(1))
         for match in _HEADING.finditer(text.data)
-        if not text.data[text.data.rfind(b"\n", 0, match.start()) + 1 : match.start()].strip()
+        if text.data[match.start() - 10 : match.start()] == b"          "
     ]
-    inputs = [at for at, name in headings if name == _INPUT]
-    if not inputs or inputs[-1] > ended:
+    inputs = [index for index, (_, name) in enumerate(headings) if name == _INPUT]
+    if not inputs or headings[inputs[-1]][0] > ended:
         raise _stopped(text)
     found = []
-    for start, stop in zip(inputs, [*inputs[1:], len(text.data)], strict=True):
-        mine = tuple((at, name) for at, name in headings if start < at < stop)
-        if mine:
-            found.append(_task(text, start, stop, mine))
+    for first, last in zip(inputs, [*inputs[1:], len(headings)], strict=True):
+        stop = headings[last][0] if last < len(headings) else len(text.data)
+        if last > first + 1:
+            found.append(_task(text, headings[first][0], stop, tuple(headings[first + 1 : last])))
+    if found and unconverged is not None:
+        words = unconverged.group(1).decode("utf-8", "replace").strip()
+        found[-1] = replace(found[-1], end=ended, failed=words, failed_at=ended)
     if not found:
         raise text.error(
             ended,
@@ -101,10 +109,14 @@ def tasks(text: Text) -> list[Task]:
     return found
 
 
-def _task(text: Text, start: int, stop: int, headings: tuple[tuple[int, str], ...]) -> Task:
+def _task(text: Text, start: int, stop: int, headings: tuple[tuple[int, bytes], ...]) -> Task:
     end = text.data.rfind(b"Task  times  cpu:", start, stop)
     end = stop if end < 0 else end
     names = frozenset(name for _, name in headings)
+    if names >= {_FREQUENCIES, _OPTIMISATION}:
+        raise text.error(
+            start, "two tasks without the heading of the input module between them", mend=CUT_SHORT
+        )
     if _FREQUENCIES in names:
         kind = "frequencies"
     elif _OPTIMISATION in names:
@@ -122,17 +134,37 @@ def _task(text: Text, start: int, stop: int, headings: tuple[tuple[int, str], ..
     return Task(kind, start, end, headings, names, words, failed.start())
 
 
-def check_known(text: Text, task: Task) -> None:
-    """Refuse a task with a module whose energies or geometries this reader does not know."""
+def unknown(task: Task) -> tuple[int, str] | None:
+    """Return offset and name of a module whose energies this reader does not know, None where there is none."""
     for at, name in task.headings:
-        if name in _READ or (name == _GROUND_STATE_STANDS and task.kind == "energy"):
-            continue
+        if name not in _READ and not (name == _GROUND_STATE_STANDS and task.kind == "energy"):
+            return at, name.decode("utf-8", "replace")
+    return None
+
+
+def check_known(text: Text, task: Task) -> None:
+    """Refuse a task with a module that this reader does not know."""
+    found = unknown(task)
+    if found is not None:
         raise text.error(
-            at,
-            f"a task of the {name!r}, which the NWChem reader does not know",
+            found[0],
+            f"a task of the {found[1]!r}, which the NWChem reader does not know",
             mend="energies, gradients, optimisations and frequencies of HF, DFT, MP2 and coupled "
             "cluster are read; give a file with one of them",
         )
+
+
+def _unconverged(text: Text) -> re.Match[bytes] | None:
+    """Return where the program stopped because an optimisation ran out of steps; None where it did not.
+
+    That end is complete, up to the program's last words, and the steps before it are as good as any.
+    """
+    stopped = _STOPPED.search(text.data, max(0, len(text.data) - 16384))
+    if stopped is None or not stopped.group(1).strip().endswith(b"optimize failed"):
+        return None
+    out_of_steps = text.last(b"Failed to converge in maximum number of steps", stopped.start())
+    complete = text.find(b"For further details see manual section:", stopped.end())
+    return stopped if out_of_steps >= 0 and complete >= 0 else None
 
 
 def _stopped(text: Text) -> ReadError:
@@ -143,13 +175,8 @@ def _stopped(text: Text) -> ReadError:
         for match in _STOPPED.finditer(text.data, tail)
     ]
     for at, words in said:
-        mend = "mend the input and rerun it"
-        if words.endswith("optimize failed"):
-            mend = (
-                "optimise on from the last geometry, with more steps; "
-                "'task ... optimize ignore' makes the program end normally"
-            )
-        return text.error(at, f"the program ended in an error: {words}", mend=mend)
+        what = f"the program ended in an error: {words}"
+        return text.error(at, what, mend="mend the input and rerun it")
     return text.error(
         len(text.data.rstrip()),
         f"no normal end of the program (looked for {END.decode()!r})",

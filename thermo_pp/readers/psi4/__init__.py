@@ -13,7 +13,8 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
 from thermo_pp.names import Origin
-from thermo_pp.readers.psi4 import choice, doubts, jobs, levels, vibrations
+from thermo_pp.readers import joined_hessian
+from thermo_pp.readers.psi4 import choice, doubts, jobs, joined, levels, vibrations
 from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import BANNER, Geometry
 from thermo_pp.readers.psi4.vibrations import PRINTED_CONSTANTS
@@ -45,11 +46,12 @@ def read(source: Source) -> Calculation:
         missing although the input asks for it, anything damaged; names file and line.
     """
     text = Text(source)
-    jobs.check_end(text)
+    normally = jobs.check_end(text)
     echoes, asked = jobs.inputs(text)
     choice.check_asked(text, asked)
     chosen = choice.choose(text, choice.tasks(text, echoes))
     shape, energy, analysis = chosen.shape, chosen.energy, chosen.analysis
+    jobs.check_repulsion(chosen.part, shape)
     level = levels.level(chosen.part, energy, shape.numbers)
     masses, origin = _masses(shape)
     version = _VERSION.search(text.data, text.need(BANNER, lacking="no heading of the program"))
@@ -59,9 +61,16 @@ def read(source: Source) -> Calculation:
         at["masses_u"] = shape.table_at
     if version is not None:
         at["program_version"] = version.start()
-    wavenumbers = modes = None
+    wavenumbers = modes = hessian = None
+    findings = doubts.findings(text, chosen)
     if analysis is not None:
         wavenumbers, modes, at["wavenumbers_cm"] = vibrations.modes(analysis, len(shape.numbers))
+        beside = joined.beside(text) if len(shape.numbers) > 1 else None
+        if beside is not None:
+            hessian = joined.hessian(beside, masses, shape.positions_angstrom, wavenumbers)
+            if hessian is None:
+                line = text.line_number(at["wavenumbers_cm"])
+                findings = (*findings, joined_hessian.not_joined(source, beside, line))
     if chosen.run is not None:
         at["optimised"] = chosen.run.at
     return Calculation(
@@ -85,11 +94,13 @@ def read(source: Source) -> Calculation:
         energy_label=energy.label,
         wavenumbers_cm=wavenumbers,
         modes=modes,
+        hessian_hartree_bohr2=hessian,
         optimised=None if chosen.run is None else chosen.run.converged,
+        ended_normally=normally,
         kind_of_job=_kinds(chosen),
         printed={} if analysis is None else vibrations.thermochemistry(analysis),
         where={field: text.line_number(place) for field, place in at.items()},
-        findings=doubts.findings(text, chosen),
+        findings=findings,
     )
 
 

@@ -25,12 +25,16 @@ BANNER = b"An Open-Source Ab Initio Electronic Structure Package"
 MOST_ANGSTROM = 1e6
 """No coordinate of a molecule is larger."""
 
+REPULSION_WITHIN = 1e-5
+"""Relative agreement of the nuclear repulsion energy with the printed geometry."""
+
 _END = re.compile(rb"^\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)", re.MULTILINE)
 _EXCEPTION = re.compile(
     rb"^(?:PsiException|[\w.]*(?:Error|Exception)|[\w.]*exceptions\.\w+): *(\S[^\r\n]*)"
     rb"|^Fatal Error: *(\S[^\r\n]*)",
     re.MULTILINE,
 )
+_OUT_OF_STEPS = b"Could not converge geometry optimization in"
 _INPUT = re.compile(rb"==> Input (?:File|QCSchema) <==\s+(-{40,})\r?\n")
 _CALL = re.compile(
     r"\b(energy|optimi[sz]e|opt|gradient|hessian|frequenc(?:y|ies)|freq|propert(?:y|ies)|prop)"
@@ -110,7 +114,27 @@ def _distances(geometry: Geometry) -> FloatArray:
     return np.asarray(np.linalg.norm(x[:, None, :] - x[None, :, :], axis=-1))
 
 
-def check_end(text: Text) -> None:
+def check_repulsion(part: Text, geometry: Geometry) -> None:
+    """Check the geometry against the nuclear repulsion energy that is printed with it.
+
+    A lost, doubled or altered atom does not agree with it. Not done where effective core potentials
+    change the nuclear charges.
+    """
+    at = part.find(b"Nuclear repulsion =")
+    if at < 0 or part.find(b"ECP") >= 0:
+        return
+    printed = part.number(at, "the nuclear repulsion energy")
+    distances = _distances(geometry) / BOHR_ANGSTROM
+    charges = np.outer(geometry.numbers, geometry.numbers).astype(np.float64)
+    pairs = np.triu_indices(len(geometry.numbers), 1)
+    with np.errstate(divide="ignore"):
+        ours = float(np.sum(charges[pairs] / distances[pairs]))
+    if not abs(ours - printed) <= REPULSION_WITHIN * max(1.0, abs(printed)):
+        what = f"the geometry has a nuclear repulsion of {ours:.6f} Eh, the file says {printed}"
+        raise part.error(geometry.at, what, mend=CUT_SHORT)
+
+
+def check_end(text: Text) -> bool:
     """Check that every run in the file ended normally.
 
     Raises
@@ -126,10 +150,15 @@ def check_end(text: Text) -> None:
             mend="the output is cut short here, or the job still runs; rerun or re-copy it",
         )
     before = text.start
+    normally = True
     for end in ends:
         if end.group(1) == b"encountered an error":
-            raise _failure(text.part(before, end.start()))
+            run = text.part(before, end.start())
+            if end is not ends[-1] or run.find(_OUT_OF_STEPS) < 0:
+                raise _failure(run)
+            normally = False
         before = end.end()
+    return normally
 
 
 def _failure(run: Text) -> ReadError:

@@ -53,6 +53,7 @@ _ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
 _INVENTED = "ANONYMOUS"
+_FITTING = "AUX)"
 _EXTRAPOLATED = b"==> CBS <=="
 _DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
 _DISPERSION = re.compile(rb": Empirical Dispersion <=\s+([^\r\n]*)")
@@ -236,6 +237,8 @@ def level(part: Text, energy: Energy, numbers: NDArray[np.int64]) -> Level:
     elif primary >= 0:
         at["basis"] = part.need(b"Basis Set:", primary, lacking="no name of the basis set")
         basis = part.line(at["basis"]).partition(":")[2].strip() or None
+        if basis is not None and basis.endswith(_FITTING):
+            raise part.expected(at["basis"], "the name of the basis set")
         if basis is not None and basis.startswith(_INVENTED):
             at["basis"] = part.need(b"Blend:", primary, lacking="no names of the basis sets")
             basis = part.line(at["basis"]).partition(":")[2].strip() or None

@@ -1,0 +1,276 @@
+"""Vibrations and thermochemistry of a Gaussian output.
+
+Translations and rotations are projected out and left out. With ``freq=hpmodes`` every mode is printed
+twice: five columns with five digits, then three columns with two; anharmonic jobs print the harmonic
+modes again. Displacements are Cartesian and of unit length, imaginary wavenumbers negative.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.readers.gaussian.steps import THERMOCHEMISTRY, Step
+from thermo_pp.readers.text import CUT_SHORT, Text
+
+FloatArray = NDArray[np.float64]
+
+PRINTED_CONSTANTS: dict[str, float] = {
+    "BOLTZMANN_J_K": 1.3806488e-23,
+    "PLANCK_J_S": 6.62606957e-34,
+    "AVOGADRO_MOL": 6.02214129e23,
+    "LIGHT_M_S": 299792458.0,
+    "GAS_J_MOL_K": 8.3144621,
+    "ATOMIC_MASS_KG": 1.660538921e-27,
+    "HARTREE_J": 4.35974434e-18,
+    "BOHR_M": 0.52917721092e-10,
+}
+"""CODATA 2010 under the names of `units`: Gaussian 16 prints thermochemistry with these."""
+PRINTED_STEPS = 2.0
+"""Older versions have older constants, and sums are printed of rounded parts."""
+
+_SETS = b" and normal coordinates:"
+_LINE = b" Frequencies --"
+_TABLE = re.compile(rb" Atom +AN +X +Y +Z[^\n]*\n")
+_FINE_TABLE = b" Coord Atom Element:"
+_MOST_OFF = 0.3
+_EH = rb" *= *(-?\d+\.\d+)"
+_VALUES: dict[str, re.Pattern[bytes]] = {
+    "zero_point": re.compile(rb"\n Zero-point correction" + _EH),
+    "thermal_energy": re.compile(rb"\n Thermal correction to Energy" + _EH),
+    "thermal_enthalpy": re.compile(rb"\n Thermal correction to Enthalpy" + _EH),
+    "enthalpy": re.compile(rb"\n Sum of electronic and thermal Enthalpies" + _EH),
+    "gibbs": re.compile(rb"\n Sum of electronic and thermal Free Energies" + _EH),
+}
+_GIBBS_CORRECTION = re.compile(rb"\n Thermal correction to Gibbs Free Energy" + _EH)
+_SUM = re.compile(rb"\n Sum of electronic and zero-point Energies" + _EH)
+_TEMPERATURE = re.compile(rb"\n Temperature +(\d+\.\d+) Kelvin\. +Pressure +(\d+\.\d+) Atm")
+_SYMMETRY = re.compile(rb"\n Rotational symmetry number +(\d+)\.")
+_ROW = rb"\n %b +(-?\d+\.\d+) +(-?\d+\.\d+) +(-?\d+\.\d+)"
+_SHARES = {
+    "": re.compile(_ROW % b"Total"),
+    "translational_": re.compile(_ROW % b"Translational"),
+    "rotational_": re.compile(_ROW % b"Rotational"),
+    "vibrational_": re.compile(_ROW % b"Vibrational"),
+}
+_SCALE = re.compile(r"scale *= *(\d*\.\d+)", re.IGNORECASE)
+
+
+@dataclass(frozen=True, eq=False)
+class Vibrations:
+    """One set of modes and the thermochemistry below it.
+
+    Attributes
+    ----------
+    at : int
+        Where its first line of wavenumbers stands.
+    wavenumbers_cm : shape (m,)
+    modes : shape (m, n, 3)
+    """
+
+    at: int
+    wavenumbers_cm: FloatArray
+    modes: FloatArray
+
+
+@dataclass(frozen=True)
+class Thermochemistry:
+    """The printed thermochemistry: key -> (text, unit, offset), and the electronic energy it starts from."""
+
+    at: int
+    printed: dict[str, tuple[str, str, int]]
+    electronic: float
+    electronic_at: int
+
+
+def sets(step: Step) -> list[int]:
+    """Return where the sets of modes before the thermochemistry begin; a heading is printed for each."""
+    thermo = step.thermochemistry_at
+    if thermo >= 0:
+        return step.text.part(step.start, thermo).all(_SETS)
+    asked = step.asks_frequencies or (step.archive is not None and step.archive.job == "Freq")
+    return step.part.all(_SETS) if asked else []
+
+
+def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
+    """Return the modes that are printed from `first` on.
+
+    Raises
+    ------
+    ReadError
+        A damaged table, another number of modes than 3N-6 or 3N-5, displacements that are not of
+        unit length, wavenumbers printed twice that do not agree.
+    """
+    following = part.find(_SETS, first + len(_SETS))
+    thermo = part.find(THERMOCHEMISTRY, first)
+    end = min(place for place in (following, thermo, part.end) if place >= 0)
+    own = part.part(first, end)
+    fine = own.find(_LINE + b"-") >= 0
+    found = _fine_set(own, atoms) if fine else _set(own, atoms)
+    _check(part, found, atoms)
+    if fine and following >= 0:
+        second = _numbers(part.part(following, thermo if thermo >= 0 else None), fine=False)[0]
+        if len(second) == 0 or not np.array_equal(np.sort(second), found.wavenumbers_cm):
+            raise part.error(
+                found.at,
+                "the wavenumbers printed with many digits are not those printed with few",
+                mend="the output is damaged; rerun or re-copy it",
+            )
+    return found
+
+
+def _check(part: Text, found: Vibrations, atoms: int) -> None:
+    expected = {1: (0,), 2: (1,)}.get(atoms, (3 * atoms - 6, 3 * atoms - 5))
+    if len(found.wavenumbers_cm) not in expected:
+        raise part.error(
+            found.at,
+            f"{len(found.wavenumbers_cm)} modes of {atoms} atoms, expected "
+            f"{' or '.join(map(str, expected))}",
+            mend="give a frequency job of the whole molecule, without frozen atoms",
+        )
+
+
+def _numbers(own: Text, fine: bool) -> tuple[FloatArray, list[tuple[int, int]]]:
+    """Return the wavenumbers of a set and, for each line of them, where it begins and its columns."""
+    values: list[float] = []
+    lines: list[tuple[int, int]] = []
+    for at in own.all(_LINE):
+        behind = own.rest(at + len(_LINE))
+        if behind.startswith(b"-") is not fine:
+            continue
+        try:
+            row = [float(word) for word in behind[fine:].split()]
+        except ValueError:
+            row = []
+        if not row or not np.all(np.isfinite(row)):
+            raise own.expected(at, "wavenumbers")
+        values += row
+        lines.append((at, len(row)))
+    return np.array(values), lines
+
+
+def _set(own: Text, atoms: int) -> Vibrations:
+    values, lines = _numbers(own, fine=False)
+    columns: list[FloatArray] = []
+    for line, width in lines:
+        table = _TABLE.search(own.data, line, own.end)
+        if table is None:
+            raise own.expected(line, "displacements below this line")
+        end = _lines_on(own, table.end(), atoms)
+        rows = _array(own, table.end(), end, atoms, 2 + 3 * width)
+        if not np.array_equal(rows[:, 0], np.arange(1, atoms + 1)):
+            raise own.expected(table.end(), "displacements of all atoms")
+        columns.append(rows[:, 2:].reshape(atoms, width, 3).transpose(1, 0, 2))
+    return _made(own, values, columns, lines, atoms)
+
+
+def _fine_set(own: Text, atoms: int) -> Vibrations:
+    values, lines = _numbers(own, fine=True)
+    columns: list[FloatArray] = []
+    for line, width in lines:
+        table = own.next_line(own.need(_FINE_TABLE, line, lacking="no displacements"))
+        end = _lines_on(own, table, 3 * atoms)
+        rows = _array(own, table, end, 3 * atoms, 3 + width)
+        order = np.stack([np.tile([1, 2, 3], atoms), np.repeat(np.arange(1, atoms + 1), 3)])
+        if not np.array_equal(rows[:, :2].T, order):
+            raise own.expected(table, "displacements of all atoms")
+        columns.append(rows[:, 3:].reshape(atoms, 3, width).transpose(2, 0, 1))
+    return _made(own, values, columns, lines, atoms)
+
+
+def _made(
+    own: Text,
+    values: FloatArray,
+    columns: list[FloatArray],
+    lines: list[tuple[int, int]],
+    atoms: int,
+) -> Vibrations:
+    if not lines:
+        raise own.error(own.start, "no wavenumbers after this line", mend=CUT_SHORT)
+    displacements = np.concatenate(columns)
+    lengths = np.sqrt(np.sum(displacements**2, axis=(1, 2)))
+    if np.any(np.abs(lengths - 1.0) > _MOST_OFF):
+        raise own.error(lines[0][0], "displacements that are not of unit length", mend=CUT_SHORT)
+    order = np.argsort(values, kind="stable")
+    unit = displacements / lengths[:, None, None]
+    return Vibrations(lines[0][0], values[order], unit[order].reshape(-1, atoms, 3))
+
+
+def _lines_on(own: Text, line: int, count: int) -> int:
+    """Return where the line `count` lines on begins; most often all lines are of one length."""
+    guess = line + count * (own.data.find(b"\n", line, own.end) + 1 - line)
+    whole = line < guess <= own.end and own.data[guess - 1 : guess] == b"\n"
+    if whole and own.data.count(b"\n", line, guess) == count:
+        return guess
+    for _ in range(count):
+        stop = own.data.find(b"\n", line, own.end)
+        if stop < 0:
+            return own.end
+        line = stop + 1
+    return line
+
+
+def _array(own: Text, start: int, end: int, rows: int, words: int) -> FloatArray:
+    """Return a table of `rows` lines of `words` numbers; ReadError at the line that is not one."""
+    try:
+        values = np.array([float(word) for word in own.data[start:end].split()])
+    except ValueError:
+        values = np.zeros(0)
+    if values.size == rows * words and np.all(np.isfinite(values)):
+        return values.reshape(rows, words)
+    line = start
+    for _ in range(rows):
+        if len(own.rest(line).split()) != words:
+            raise own.expected(line, f"displacements, {words} words")
+        own.floats(line, words, "displacements of an atom")
+        line = own.next_line(line)
+    raise own.expected(start, "displacements of all atoms")
+
+
+def thermochemistry(step: Step) -> Thermochemistry | None:
+    """Return the last thermochemistry of a step, None where there is none."""
+    start = step.thermochemistry_at
+    if start < 0:
+        return None
+    section = step.part.part(start)
+    printed: dict[str, tuple[str, str, int]] = {}
+
+    def take(name: str, pattern: re.Pattern[bytes], unit: str, group: int = 1) -> bool:
+        match = pattern.search(section.data, section.start, section.end)
+        if match is None:
+            return False
+        printed[name] = (match.group(group).decode(), unit, match.start(group))
+        return True
+
+    for name, pattern in _VALUES.items():
+        if not take(name, pattern, "Eh"):
+            raise section.error(
+                start, f"thermochemistry without its {name.replace('_', ' ')}", mend=CUT_SHORT
+            )
+    total = _SUM.search(section.data, section.start, section.end)
+    correction = _GIBBS_CORRECTION.search(section.data, section.start, section.end)
+    if total is None or correction is None or not take("temperature", _TEMPERATURE, "K"):
+        raise section.error(start, "thermochemistry that is not whole", mend=CUT_SHORT)
+    take("pressure", _TEMPERATURE, "atm", 2)
+    take("symmetry_number", _SYMMETRY, "")
+    for name, pattern in _SHARES.items():
+        take(f"{name}entropy", pattern, "cal/(mol K)", 3)
+    take("heat_capacity_v", _SHARES[""], "cal/(mol K)", 2)
+    electronic = float(total.group(1)) - float(printed["zero_point"][0])
+    others = (
+        float(printed["enthalpy"][0]) - float(printed["thermal_enthalpy"][0]),
+        float(printed["gibbs"][0]) - float(correction.group(1)),
+    )
+    if max(abs(electronic - other) for other in others) > 3.1e-6:
+        raise section.error(
+            total.start() + 1,
+            "the sums of this thermochemistry do not start from one electronic energy",
+            mend="the output is damaged here; rerun or re-copy it",
+        )
+    scale = _SCALE.search(step.route)
+    if scale is not None:
+        printed["frequency_scale"] = (scale.group(1), "", start)
+    return Thermochemistry(start, printed, electronic, total.start() + 1)
