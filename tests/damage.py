@@ -43,7 +43,8 @@ TEXTS = (
     "grid",
     "frozen_core",
 )
-UNITS = (1.0, BOHR_ANGSTROM, 1.0 / BOHR_ANGSTROM)
+ASE_HARTREE_EV = 27.211386024367243  # ASE's own, of CODATA 2014
+UNITS = (1.0, BOHR_ANGSTROM, 1.0 / BOHR_ANGSTROM, 1.0 / ASE_HARTREE_EV)
 
 
 @dataclass(frozen=True)
@@ -205,13 +206,20 @@ def _differs(variant: Variant, original: Calculation, calc: Calculation) -> str 
         if now.shape != then.shape:
             return f"{name} has shape {now.shape}, not {then.shape}"
         said = _numbers(changed)
-        for value in now[now != then].ravel():
+        if not now.size:
+            continue
+        # wavenumbers are sorted, and some programs print them a second time with two decimals
+        room = 0.006 if name == "wavenumbers_cm" else 0.0
+        known = np.abs(now.ravel()[:, None] - then.ravel()[None, :]).min(axis=1) <= room
+        for value in now.ravel()[(now != then).ravel() & ~known]:
             if not _is_said(float(value), said):
                 return f"{name}: {value!r} is not what a damaged line says"
     for name in TEXTS:
         before, after = getattr(original, name), getattr(calc, name)
         if after in (None, before) or set(str(after).split()) <= set(str(before).split()):
             continue  # what is not printed any more is unknown
+        if name == "program_version" and str(before).startswith(str(after)):
+            continue
         if not _text_is_said(str(after), changed):
             return f"{name}: {after!r} instead of {before!r} is not what a damaged line says"
     return None
@@ -235,7 +243,7 @@ def _changed_lines(variant: Variant) -> list[bytes]:
 def _numbers(lines: list[bytes]) -> np.ndarray:
     found = []
     for line in lines:
-        for match in NUMBER.finditer(line[:2000]):
+        for match in NUMBER.finditer(line[:1_000_000]):
             text = match.group().lower().replace(b"d", b"e")
             found.append(float(text))
     return np.array(found)

@@ -90,10 +90,13 @@ def test_direct_step_has_no_pre_equilibrium(tmp_path: Path) -> None:
     assert values(pool) == pytest.approx({"energetic span": k(0.0, 70.0)}, rel=1e-12)
 
 
-@pytest.mark.parametrize(("t2", "t3"), [(40.0, 62.0), (62.0, 40.0), (55.0, 56.0)])
-def test_three_steps(t2: float, t3: float, tmp_path: Path) -> None:
-    """A = C = D -> P: the slow step is the one of smaller flux at equilibrium, beyond the first."""
-    c, d, t1 = -3.0, -5.0, 45.0
+@pytest.mark.parametrize(
+    ("t1", "t2", "t3"),
+    [(45.0, 40.0, 62.0), (45.0, 62.0, 40.0), (45.0, 55.0, 56.0), (70.0, 40.0, 62.0)],
+)
+def test_three_steps(t1: float, t2: float, t3: float, tmp_path: Path) -> None:
+    """A = C = D -> P: the slow step is the one of smaller flux at equilibrium, never the first."""
+    c, d = -3.0, -5.0
     plan = network(
         {"A": 0.0, "C": c, "D": d, "P": -60.0},
         {"T1": ("A", "C", t1), "T2": ("C", "D", t2), "T3": ("D", "P", t3)},

@@ -16,7 +16,7 @@ import pytest
 
 import thermo_pp as tp
 from thermo_pp.audit import audit_together, read_and_audit_file
-from thermo_pp.collect import Outcome, cluster, gather, workers
+from thermo_pp.collect import Outcome, answers, cluster, gather, workers
 from thermo_pp.collect.answers import Task
 from thermo_pp.collect.codec import decode, encode
 from thermo_pp.errors import StudyError
@@ -177,6 +177,7 @@ def test_a_cluster_gives_the_same_though_a_worker_is_killed(
     assert len(two.known()) == 1
     two.workers[1].kill()
     wait_for(lambda: not two.known())
+    monkeypatch.setattr(answers, "SETTLED_NS", 0)  # the files are not two seconds old
     again = tp.collect(outputs, scheduler=two.address, cache=tmp_path / "cache")
     assert everything(again) == local  # what was remembered needs no worker
     monkeypatch.setattr(cluster, "NO_WORKER_S", 0.5)

@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 from fixture_files import expected, file_id, files
 
+from thermo_pp.audit.printed import printed_findings
 from thermo_pp.errors import ReadError
 from thermo_pp.readers import gamess
 from thermo_pp.records import Calculation
@@ -148,9 +149,31 @@ def test_what_does_not_add_up_is_refused(
     assert caught.value.where.startswith(f"{name}.out:")
 
 
+def test_a_lost_line_is_never_passed_over_for_an_earlier_one() -> None:
+    data = BY_NAME["water_search_lost"].read_bytes()
+    last = data.rindex(b" FINAL RHF ENERGY")
+    with pytest.raises(ReadError, match="no final energy of the last step"):
+        gamess.read(Source("x.out", data[:last] + data[data.index(b"\n", last) + 1 :]))
+    last = data.rindex(b" COORDINATES OF ALL ATOMS")
+    with pytest.raises(ReadError, match="no geometry of the step after"):
+        gamess.read(Source("x.out", data[:last] + data[data.index(b"\n", last) + 1 :]))
+    with pytest.raises(ReadError, match="which the options do not ask for"):
+        gamess.read(changed("water_mp2", ("MPLEVL=       2", "MPLEVL=       0")))
+    with pytest.raises(ReadError, match="modes without their heading"):
+        gamess.read(
+            changed("water_search_hessian", ("NORMAL COORDINATE AN", "NORMAL COORDXNATE AN"))
+        )
+
+
+@pytest.mark.parametrize("path", GOOD, ids=file_id)
+def test_printed_thermochemistry_passes_the_audit(path: Path) -> None:
+    assert printed_findings(calculation(path)) == ()
+
+
 def test_dispersion_must_be_in_the_energy() -> None:
     density = ("DFTTYP=NONE ", "DFTTYP=B3LYP"), ("FINAL RHF ENERGY", "FINAL R-B3LYP ENERGY")
     level = ("MPLEVL=       2", "MPLEVL=       0")
+    density = (*density, ("E(MP2)=", "E(XX2)="))
     assert gamess.read(changed("water_mp2", *density, level)).method == "B3LYP"
     line = (" FINAL R-B3", " GRIMME'S DISPERSION ENERGY =      -0.0012345678\n\n FINAL R-B3")
     with pytest.raises(ReadError, match="not known to be in the final energy"):
@@ -220,6 +243,7 @@ def test_real_output() -> None:
     enthalpy = row["enthalpy_correction_hartree"] * 2625.4996
     assert calc.printed["thermal_enthalpy"].value == pytest.approx(enthalpy, abs=1e-3)
     assert calc.printed["symmetry_number"].value == row["symmetry_number"]
+    assert printed_findings(calc) == ()
 
 
 def test_told_by_content() -> None:

@@ -161,6 +161,19 @@ def test_thermochemistry_is_that_of_the_first_temperature() -> None:
     assert "thermal_enthalpy" not in printed, "without the zero-point energy"
 
 
+def test_the_input_geometry_is_not_taken_for_a_final_one_that_is_lost() -> None:
+    path = HERE / "formaldehyde_opt.out"
+    text = path.read_text(encoding="utf-8")
+    head, mark, tail = text.partition("FINAL HEAT OF FORMATION")
+    assert mark
+    for heading in ("CARTESIAN COORDINATES", "(ANGSTROMS)     (ANGSTROMS)", "ATOM   CHEMICAL"):
+        assert heading in tail
+        tail = tail.replace(heading, "x")
+    tail = tail.replace("NUMBER   SYMBOL", "x")
+    with pytest.raises(ReadError, match="no final geometry after this line"):
+        mopac.read(Source("x.out", (head + mark + tail).encode()))
+
+
 def test_solvent_and_charge() -> None:
     assert calculation(HERE / "hydroxyl_cosmo.out").solvent == "COSMO eps=78.4"
     assert calculation(FORCE).solvent == "none"

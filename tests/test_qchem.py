@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 from fixture_files import FIXTURES, expected, file_id, files
 
+from thermo_pp.audit.printed import printed_findings
 from thermo_pp.errors import ReadError
 from thermo_pp.readers import qchem
 from thermo_pp.records import Calculation
@@ -168,6 +169,26 @@ def test_what_does_not_add_up_is_refused(
     assert caught.value.where.startswith(f"{name}.out:")
 
 
+def test_a_lost_line_is_never_passed_over_for_an_earlier_one() -> None:
+    data = BY_NAME["water_opt_lost"].read_bytes()
+    last = data.rindex(b" Total energy in the final basis set")
+    with pytest.raises(ReadError, match="an SCF without its geometry or its total energy"):
+        qchem.read(Source("x.out", data[:last] + data[data.index(b"\n", last) + 1 :]))
+    with pytest.raises(ReadError, match="the end of a job without its beginning"):
+        qchem.read(changed("water_three_jobs", ("User input: 2 of 3", "User inpxt: 2 of 3")))
+    with pytest.raises(ReadError, match="modes in a job whose input asks for none"):
+        qchem.read(changed("water_hf_freq", ("jobtype = freq", "jobtxpe = freq")))
+    with pytest.raises(ReadError, match="no method in the echo"):
+        qchem.read(changed("water_ccsdt", ("method = ccsd", "methxd = ccsd")))
+    with pytest.raises(ReadError, match="masses, but no heading"):
+        qchem.read(changed("water_hf_freq", ("STANDARD THERMO", "STANDARD THXRMO")))
+
+
+@pytest.mark.parametrize("path", GOOD, ids=file_id)
+def test_printed_thermochemistry_passes_the_audit(path: Path) -> None:
+    assert printed_findings(calculation(path)) == ()
+
+
 def test_solvent_terms_beside_the_energy() -> None:
     """A free energy of the system is taken for the SCF's own; without one SMD's energy is not known to be whole."""
     smd = ("method = hf", "method = hf\n solvent_method = smd")
@@ -238,6 +259,7 @@ def test_real_outputs(row: dict[str, object]) -> None:
     assert calc.positions_angstrom[-1] == pytest.approx(last[1:], abs=1e-8)
     waves = [] if calc.wavenumbers_cm is None else calc.wavenumbers_cm.tolist()
     assert waves == row["frequencies_cm1"]
+    assert printed_findings(calc) == ()
     if waves:
         assert calc.printed["entropy"].value * 4.184 == pytest.approx(
             row["entropy_J_mol_K"], abs=1e-5

@@ -402,7 +402,7 @@ def test_a_file_that_another_run_holds_is_waited_for_and_then_left(
 def test_two_programs_at_once(tmp_path: Path) -> None:
     top = tmp_path / "top"
     top.mkdir()
-    for number, path in enumerate(sorted((FIXTURES / "psi4" / "good").glob("*.out"))[:25]):
+    for number, path in enumerate(sorted((FIXTURES / "psi4" / "good").glob("*.out"))[:14]):
         shutil.copy(path, top / f"{number:02d}.out")
     environment = {**os.environ, "XDG_CACHE_HOME": str(tmp_path / "cache")}
     command = [sys.executable, "-m", "thermo_pp", "survey", str(top), "--format", "json", "--quiet"]
@@ -412,12 +412,11 @@ def test_two_programs_at_once(tmp_path: Path) -> None:
     ]
     said = [program.communicate(timeout=120) for program in programs]
     assert [program.returncode for program in programs] == [0, 0], said
-    again = subprocess.run(command, env=environment, capture_output=True, check=True)
     without = subprocess.run(
         [*command, "--no-cache"], env=environment, capture_output=True, check=True
     )
-    assert said[0][0] == said[1][0] == again.stdout == without.stdout
-    assert len(json.loads(again.stdout)["files"]) == 25
+    assert said[0][0] == said[1][0] == without.stdout
+    assert len(json.loads(without.stdout)["files"]) == 14
 
 
 @pytest.mark.parametrize("how", [signal.SIGINT, signal.SIGKILL])
@@ -488,7 +487,7 @@ def test_the_same_json_from_the_command_line(tmp_path: Path, monkeypatch: Any) -
     from thermo_pp.cli import main
 
     monkeypatch.setenv("XDG_CACHE_HOME", str(tmp_path))
-    arguments = ["survey", str(FIXTURES / "psi4"), "--format", "json", "--quiet"]
+    arguments = ["survey", str(FIXTURES / "qcschema"), "--format", "json", "--quiet"]
     said = [
         CliRunner().invoke(main, [*arguments, *options]).stdout
         for options in (["--no-cache", "--jobs", "1"], ["--jobs", "2"], [], ["--jobs", "1"])

@@ -123,6 +123,7 @@ class Processes:
         self._todo_bytes += ticket.size
         many = len(self._todo) > FEW_FILES or self._todo_bytes > FEW_BYTES
         if not self._workers and many:
+            _controller()  # loaded once, before the processes part
             for _ in range(self._jobs):
                 self._start()
         if self._workers and (len(self._todo) >= BATCH_FILES or self._todo_bytes >= BATCH_BYTES):

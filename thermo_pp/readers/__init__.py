@@ -64,8 +64,12 @@ READERS: tuple[Reader, ...] = (
 
 
 def claims(head: bytes) -> tuple[Reader, ...]:
-    """Return the readers that take `head`, the first 64 KiB of a file, for their own."""
-    return tuple(reader for reader in READERS if reader.sniff(head))
+    """Return the readers that take `head`, the first 64 KiB of a file, for their own.
+
+    The general library is asked only where no reader of our own claims the file.
+    """
+    own = tuple(reader for reader in READERS if reader is not cclib_formats and reader.sniff(head))
+    return own or ((cclib_formats,) if cclib_formats.sniff(head) else ())
 
 
 def read_source(source: Source) -> Calculation:
@@ -76,7 +80,7 @@ def read_source(source: Source) -> Calculation:
     ReadError
         An empty file, one that no reader or more than one claims, and whatever the reader raises.
     """
-    if not source.data.strip():
+    if not source.data or source.data.isspace():
         raise ReadError(
             "the file is empty",
             where=f"{source.name}:1",

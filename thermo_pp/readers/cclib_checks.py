@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from thermo_pp.formulas.normal_modes import normal_modes
 from thermo_pp.formulas.partition import rotor_kind
 from thermo_pp.readers.text import Text
-from thermo_pp.units import HARTREE_J, LIGHT_M_S, PLANCK_J_S
+from thermo_pp.units import BOHR_ANGSTROM, HARTREE_J, LIGHT_M_S, PLANCK_J_S
 
 FloatArray = NDArray[np.float64]
 
@@ -27,6 +27,7 @@ _ZERO_POINT_UNITS = {
 }
 _NUMBER = re.compile(rb"[+-]?\d+\.\d*(?:[EeDd][+-]?\d+)?")
 _ZERO = re.compile(rb"zero[- ]?point|\bZPE\b|\bZPVE\b", re.IGNORECASE)
+_REPULSION = rb"nuclear repulsion(?: energy)?[^\d\n]{0,30}(\d+\.\d+)"
 _NULL_CM = 1.0
 """A translation or rotation that was projected out is printed below this."""
 _HIGHER = re.compile(
@@ -34,16 +35,17 @@ _HIGHER = re.compile(
     rb"[^\n]{0,24}\benergy\b|\b(?:total|final)\s+(CASPT2|CASSCF|RASSCF|MRCI|CCSD\(T\)|CCSD|CC2|CC3|MP4|MP3|MP2)\b",
     re.IGNORECASE,
 )
+_TRIPLES = re.compile(rb"triples \(T\)|\(T\) +(?:contribution|correction|energy)", re.IGNORECASE)
 _ASIDE = re.compile(rb"SCS|SOS|excit|correlation energy", re.IGNORECASE)
 _SHIFTED_CM, _SHIFTED_SHARE = 2.0, 0.005
 """By how much wavenumbers from a printed Hessian may be others than the printed ones."""
 
 
-def printed_at(text: Text, value: float) -> list[int]:
+def printed_at(text: Text, value: float, doubt: float = 1e-9) -> list[int]:
     """Return the offsets at which a number is printed, fixed or with an exponent, to at least five digits."""
     found = []
     for start, number in _candidates(text, value):
-        if abs(abs(number) - abs(value)) <= 1e-9 * abs(value) + 1e-12:
+        if abs(abs(number) - abs(value)) <= doubt * abs(value) + 1e-12:
             found.append(start)
     return sorted(set(found))
 
@@ -60,9 +62,34 @@ def _candidates(text: Text, value: float) -> Iterator[tuple[int, float]]:
                 yield at, float(match.group().lower().replace(b"d", b"e"))
 
 
-def whole_line(text: Text, at: int) -> str:
-    """Return the line of an offset."""
-    return text.line(at)
+def positions_at(text: Text, positions: FloatArray) -> int | None:
+    """Return where the last geometry's first coordinate that is not 0 is printed last, in angstrom or bohr."""
+    value = float(next((one for one in positions.ravel() if abs(one) > 0.05), 0.0))
+    places = printed_at(text, value, 1e-6) + printed_at(text, value / BOHR_ANGSTROM, 1e-6)
+    return max(places, default=None) if value else None
+
+
+def closest(positions: FloatArray) -> float:
+    """Return the shortest distance of two atoms, angstrom; infinity for an atom."""
+    distances = np.linalg.norm(positions[:, None] - positions[None], axis=-1)
+    distances.flat[:: len(positions) + 1] = np.inf
+    return float(distances.min())
+
+
+def check_repulsion(text: Text, numbers: NDArray[np.int64], positions: FloatArray) -> None:
+    """Compare the geometry with the nuclear repulsion where the file prints one and knows no core potentials."""
+    printed = [float(match.group(1)) for match in re.finditer(_REPULSION, text.data, re.IGNORECASE)]
+    if not printed or re.search(rb"\bECP|pseudopotential|core potential", text.data, re.IGNORECASE):
+        return
+    distances = np.linalg.norm(positions[:, None] - positions[None], axis=-1) / BOHR_ANGSTROM
+    distances.flat[:: len(numbers) + 1] = np.inf
+    own = float((0.5 * np.outer(numbers, numbers) / distances).sum())
+    if min(abs(one - own) for one in printed) > 2e-5 * own + 1e-6:
+        raise text.error(
+            0,
+            f"no nuclear repulsion that is printed here is that of the geometry that cclib reads, {own:.6f}",
+            mend="the output is damaged, or holds several molecules",
+        )
 
 
 def energy_line(text: Text, hartree: float) -> tuple[float, int]:
@@ -94,6 +121,13 @@ def check_highest(text: Text, label: str | None) -> None:
                 f"a {name} energy stands here, but cclib's is the one of {label or 'the SCF'}",
                 mend="give a format with a reader of its own (docs/readers.md)",
             )
+    triples = _TRIPLES.search(text.data)
+    if triples is not None and label != "CCSD(T)":
+        raise text.error(
+            triples.start(),
+            f"triple excitations stand here, but cclib's energy is {label or 'the SCF'}'s",
+            mend="give a format with a reader of its own (docs/readers.md)",
+        )
 
 
 def vibrations(

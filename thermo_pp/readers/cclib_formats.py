@@ -155,10 +155,19 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
     numbers, geometries = _geometries(text, data)
     positions = geometries[-1]
     charge, multiplicity = _state(text, data, numbers)
+    if form.program == _CHECKPOINT:
+        _check_checkpoint(text, data)
     energy, label, energy_at = _energy(text, form, data, metadata, geometries)
     masses, origin = _masses(text, form, data, numbers)
     at = {} if energy_at is None else {"energy_hartree": energy_at}
+    placed = checks.positions_at(text, positions)
+    if placed is not None:
+        at["positions_angstrom"] = placed
     findings: list[Finding] = []
+    if energy is None:
+        if not hasattr(data, "vibfreqs"):
+            raise text.error(text.end, "no energy in what cclib reads", mend=CUT_SHORT)
+        findings.append(_no_energy(text.source.name))
     wavenumbers = modes = hessian = None
     if hasattr(data, "vibfreqs"):
         wavenumbers, modes, hessian = _modes(text, data, masses, positions, at)
@@ -219,6 +228,9 @@ def _geometries(text: Text, data: Any) -> tuple[NDArray[np.int64], FloatArray]:
         raise text.error(0, "an atom of no element in what cclib reads", mend="remove ghost atoms")
     if not np.all(np.isfinite(geometries)) or np.abs(geometries).max() > 1e6:
         raise text.error(0, "a position that is none in what cclib reads", mend=CUT_SHORT)
+    if checks.closest(geometries[-1]) < 0.3:
+        raise text.error(0, "two atoms at one place in what cclib reads", mend=CUT_SHORT)
+    checks.check_repulsion(text, numbers, geometries[-1])
     if hasattr(data, "scanparm") or hasattr(data, "scancoords"):
         raise text.error(0, "a scan, which is not read through cclib", mend="give one structure")
     return numbers, geometries
@@ -251,6 +263,8 @@ def _energy(
     per_hartree = float(convertor(1.0, "hartree", "eV"))
     scf = [float(one) / per_hartree for one in getattr(data, "scfenergies", [])]
     if not scf:
+        if hasattr(data, "ccenergies") or hasattr(data, "mpenergies"):
+            raise text.error(0, "a correlated energy without that of its SCF", mend=CUT_SHORT)
         return None, None, None
     steps = len(geometries)
     same = np.allclose(geometries, geometries[-1], rtol=0.0, atol=1e-5)
@@ -313,9 +327,24 @@ def _method(label: str | None, metadata: dict[str, Any]) -> str | None:
     return label
 
 
+def _check_checkpoint(text: Text, data: Any) -> None:
+    """Refuse a checkpoint without charge or multiplicity, or one that announces modes and has none."""
+    for name in ("charge", "mult"):
+        if not hasattr(data, name):
+            raise text.error(0, f"no {name} in this formatted checkpoint", mend=CUT_SHORT)
+    for mark in (b"\nNumber of Normal Modes", b"\nVib-Modes ", b"\nVib-E2 "):
+        at = text.find(mark)
+        if at >= 0 and not hasattr(data, "vibfreqs"):
+            raise text.error(at + 1, "modes without their wavenumbers", mend=CUT_SHORT)
+
+
 def _checkpoint_method(text: Text) -> str:
     """Return the method of the second line, without the kind of its SCF."""
-    method = text.line(text.next_line(0)).split()[1].upper()
+    at = text.next_line(0)
+    words = text.line(at).split()
+    method = words[1].upper() if len(words) > 2 else ""
+    if re.fullmatch(r"[A-Z0-9][A-Z0-9()+\-,*]*", method) is None:
+        raise text.expected(at, "the kind of job, the method and the basis set")
     return re.sub(r"^(?:RO|R|U)(?=[A-Z])", "", method)
 
 
@@ -426,6 +455,17 @@ def _modes(
     if modes is None:
         at.pop("modes", None)
     return wavenumbers, modes, hessian if known else None
+
+
+def _no_energy(name: str) -> Finding:
+    return Finding(
+        "no-energy",
+        "warning",
+        name,
+        None,
+        "no energy in what cclib reads",
+        "name an output with the energy of this geometry",
+    )
 
 
 def _masses_assumed(name: str) -> Finding:

@@ -14,6 +14,7 @@ Traps
 
 from __future__ import annotations
 
+import math
 import re
 
 import numpy as np
@@ -127,6 +128,8 @@ def _wavenumbers(text: Text, part: Text) -> FloatArray:
         if match is None or len(words) > 1:
             raise text.expected(at, "one wavenumber")
         value = float(match.group(1).lower().replace(b"d", b"e"))
+        if not math.isfinite(value):
+            raise text.expected(at, "one wavenumber")
         values.append(-abs(value) if match.group(2) else value)
     return np.array(values)
 

@@ -24,7 +24,7 @@ from thermo_pp.readers.gamess.energies import Energy
 from thermo_pp.readers.gamess.geometry import Geometry
 from thermo_pp.readers.gamess.options import Run
 from thermo_pp.readers.gamess.vibrations import PRINTED_CONSTANTS
-from thermo_pp.readers.line_marks import first_match, matches
+from thermo_pp.readers.line_marks import first_match, last_match, matches
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
@@ -65,7 +65,7 @@ class Taken(NamedTuple):
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _BANNER.search(head) is not None
+    return b"GAMESS VERSION = " in head and _BANNER.search(head) is not None
 
 
 def read(source: Source) -> Calculation:
@@ -163,12 +163,13 @@ def _single(text: Text, run: Run) -> Taken:
     shape = geometry.given(text, run)
     finals = _finals(text, run)
     if not finals:
-        if run.kind == "frequencies":
+        solved = text.part(run.start, run.end).find(b"DENSITY CONVERGED")
+        if run.kind == "frequencies" and solved < 0:
             return Taken(shape, None, None, -1)
         raise text.error(
             run.end, "no final energy (looked for 'FINAL ... ENERGY IS')", mend=CUT_SHORT
         )
-    displaced = first_match(_DISPLACED, b"NUCLEAR COORDINATES", text, run.start, finals[0].start())
+    displaced = last_match(_DISPLACED, b"NUCLEAR COORDINATES", text, run.start, finals[0].start())
     if displaced is not None and displaced.group(1) != b"0":  # a restart: the reference is not here
         return Taken(shape, None, None, -1)
     stop = finals[1].start() if len(finals) > 1 else run.end
@@ -196,6 +197,22 @@ def _searched(text: Text, run: Run) -> Taken:
     tables = matches(geometry.SEARCHED, geometry.SEARCHED_MARK, text, run.start, finals[-1].start())
     first = geometry.given(text, run)
     shape = geometry.table(text, tables[-1]) if tables else first
+    ended = first_match(
+        _STEP,
+        b"NSERCH",
+        text,
+        tables[-1].end() if tables else finals[-1].start(),
+        finals[-1].start(),
+    )
+    if ended is not None:
+        raise text.error(ended.end(), "no geometry of the step after this one", mend=CUT_SHORT)
+    later_table = first_match(
+        geometry.SEARCHED, geometry.SEARCHED_MARK, text, finals[-1].end(), said or run.end
+    )
+    if later_table is not None:
+        raise text.error(
+            later_table.start(), "no final energy of the last step of this search", mend=CUT_SHORT
+        )
     if not np.array_equal(shape.numbers, first.numbers):
         raise text.error(shape.at, "not the atoms that the run was given", mend=CUT_SHORT)
     again = None
@@ -228,6 +245,9 @@ def _analysis(text: Text, run: Run, taken: Taken) -> Text | None:
         return None
     start = text.data.find(vibrations.ANALYSIS, begin, run.end)
     if start < 0:
+        lost = text.data.find(b"ARE TAKEN AS ROTATIONS", begin, run.end)
+        if lost >= 0:
+            raise text.error(lost, "modes without their heading", mend=CUT_SHORT)
         if run.kind == "frequencies" and run.options["RUNTYP"] == "HESSIAN":
             raise text.error(
                 run.end,

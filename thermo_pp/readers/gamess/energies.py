@@ -140,6 +140,7 @@ def energy(text: Text, run: Run, final: re.Match[bytes], stop: int, shape: Geome
     _check_dispersion(text, final, stop, scf, shape)
     solvated = _in_solvent(text, run, final, stop, scf)
     if label not in _WANTED:
+        _check_uncorrelated(text, final, stop)
         return solvated or Energy(label, scf, final.end(), final.end())
     if solvated is not None:
         raise text.error(
@@ -148,6 +149,19 @@ def energy(text: Text, run: Run, final: re.Match[bytes], stop: int, shape: Geome
             mend="give the SCF in solution, or the correlated energy in the gas phase",
         )
     return _correlated(text, label, final, stop, scf)
+
+
+def _check_uncorrelated(text: Text, final: re.Match[bytes], stop: int) -> None:
+    """Refuse a correlated energy behind an SCF that the options say nothing follows."""
+    for label, pattern in _WANTED.items():
+        mark = b"E(MP2)=" if label == "MP2" else b" ENERGY:"
+        match = first_match(pattern, mark, text, final.end(), stop)
+        if match is not None:
+            raise text.error(
+                match.start(),
+                f"an energy of {label}, which the options do not ask for",
+                mend=CUT_SHORT,
+            )
 
 
 def _correlated(text: Text, label: str, final: re.Match[bytes], stop: int, scf: float) -> Energy:
@@ -298,6 +312,9 @@ def _dispersion_name(text: Text, run: Run) -> str:
 def _basis(text: Text, run: Run, at: dict[str, int]) -> str | None:
     """Return the usual name of the basis set that the options describe, None where they name none."""
     match = first_match(_BASIS, b"GBASIS=", text, run.start, run.end)
+    lost = text.data.find(b"     BASIS OPTIONS", run.start, run.options_at)
+    if match is None and lost >= 0:
+        raise text.error(lost, "no basis set among these options", mend=CUT_SHORT)
     if match is None or not match.group(1):
         return None
     at["basis"] = match.start(1)

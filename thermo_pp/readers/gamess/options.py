@@ -115,7 +115,7 @@ def _options(text: Text, start: int, end: int) -> tuple[dict[str, str], int]:
     options: dict[str, str] = {}
     for line in block.splitlines():
         options |= {name: value for name, value in _PAIR.findall(line) if name not in options}
-    for name in ("SCFTYP", "RUNTYP", "MULT", "ICHARG"):
+    for name in ("SCFTYP", "RUNTYP", "MPLEVL", "CITYP", "CCTYP", "MULT", "ICHARG"):
         if name not in options:
             raise text.error(at, f"no {name} in these options", mend=CUT_SHORT)
     return options, begin

@@ -175,7 +175,15 @@ def _shape_before(step: Step, blocks: list[int], at: int) -> Geometry:
             "no geometry before this line (looked for 'Standard orientation:' and 'Input orientation:')",
             mend="give the program's whole output",
         )
-    return geometry.block(step.text, before[-1])
+    shape = geometry.block(step.text, before[-1])
+    said = step.atoms
+    if said is not None and said != len(shape.numbers):
+        raise step.text.error(
+            shape.at,
+            f"{len(shape.numbers)} atoms in this geometry, but the program says NAtoms= {said}",
+            mend="the output is damaged here; rerun or re-copy it",
+        )
+    return shape
 
 
 def _beside(step: Step, shape: Geometry) -> Energy | None:

@@ -150,6 +150,12 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
         return Energy(_number(found.group(3)), "DFT", double, scf_at, name)
     reference = plain(name)
     wanted = _AS_LABELS.get(method or "", method or "")
+    if reference != "HF" and step.part.find(_SCALED) >= 0 and _may_be_double(step):
+        raise part.error(
+            scf_at,
+            "a functional with scaled MP2, but no energy of a double hybrid (looked for ' E2(')",
+            mend="check that the job ran to its end",
+        )
     if reference in ("HF",):
         best = _correlated(part, wanted)
         if best is not None:

@@ -16,6 +16,7 @@ from thermo_pp.formulas.frames import kabsch
 from thermo_pp.readers.gaussian.geometry import Geometry
 from thermo_pp.readers.gaussian.steps import Archive
 from thermo_pp.readers.joined_hessian import square
+from thermo_pp.readers.number_table import number_table
 
 FloatArray = NDArray[np.float64]
 
@@ -48,19 +49,17 @@ def hessian(
     places = _places(archive, shape)
     if places is None:
         return None
-    try:
-        triangle = np.array([float(word) for word in archive.fields[place + 2].split(",")])
-    except ValueError:
-        return None
-    matrix = square(triangle, len(shape.numbers))
+    size = 3 * len(shape.numbers)
+    triangle = archive.fields[place + 2].replace(",", " ").encode()
+    matrix = square(number_table(triangle, size * (size + 1) // 2), len(shape.numbers))
     if matrix is None or not _fits(matrix, masses_u, places, wavenumbers_cm):
         return None
     here = shape.positions_angstrom - shape.positions_angstrom.mean(axis=0)
     rotation = kabsch(here, places)
     if float(np.abs(places @ rotation.T - here).max()) > _APART:
         return None
-    turn = np.kron(np.eye(len(shape.numbers)), rotation)
-    turned: FloatArray = turn @ matrix @ turn.T
+    half = (matrix.reshape(-1, 3) @ rotation.T).reshape(size, size)
+    turned: FloatArray = (half.T.reshape(-1, 3) @ rotation.T).reshape(size, size).T
     return turned
 
 
@@ -78,7 +77,10 @@ def _fits(
     if abs(traces[0] - wanted[0]) > _SHARE * size or abs(traces[1] / wanted[1] - 1.0) > _SHARE:
         return False
     pushes = np.abs(matrix.reshape(3 * atoms, atoms, 3).sum(axis=1)).max()
-    turns = np.stack([np.cross(axis, places).reshape(-1) for axis in np.eye(3)])
+    x, y, z = places.T
+    none = np.zeros(atoms)
+    turns = np.stack([none, -z, y, z, none, -x, -y, x, none], axis=1)
+    turns = turns.reshape(atoms, 3, 3).transpose(1, 0, 2).reshape(3, 3 * atoms)
     resists = np.abs(matrix @ turns.T).max() / max(float(np.abs(places).max()), 1.0)
     return bool(pushes < _TRANSLATION * atoms and resists < _ROTATION)
 

@@ -22,6 +22,7 @@ _GOES_ON = (b"Proceeding to internal job step", b"Entering Link 1 =", b"Initial 
 _ROUTE = re.compile(rb"\n (-{3,})\n( *#[^\n]*(?:\n(?! ---)[^\n]*)*)\n (-{3,})\n")
 _GEOMETRY = re.compile(rb"\n +(Standard|Input|Z-Matrix|Principal axis) orientation: *\n -{20,}\n")
 _LIKE_A_HEADING = re.compile(rb"rientation|Standard|Input|orient")
+_ATOMS = re.compile(rb"\n NAtoms= *(\d+) ")
 _CHARGE = re.compile(rb"\n Charge = *(-?\d+) +Multiplicity = *(\d+)")
 _ARCHIVES = (b"\n 1\\1\\", b"\n 1|1|")
 _OPT = re.compile(r"(?<![\w-])(?:f?opt|popt)\b", re.IGNORECASE)
@@ -146,8 +147,9 @@ class Step:
             line = at
             for _ in range(3):
                 line = data.rfind(b"\n", 0, max(line, 0))
-            heading = data[line + 1 : data.find(b"\n", line + 1)]
-            if line + 1 not in known and _LIKE_A_HEADING.search(heading) is not None:
+            heading = data[line + 1 : data.find(b"\n", line + 1)].rstrip()
+            damaged = not heading.endswith(b":") or _LIKE_A_HEADING.search(heading) is not None
+            if line + 1 not in known and damaged:
                 raise self.text.expected(
                     line + 1, "'Standard orientation:' or 'Input orientation:'"
                 )
@@ -157,6 +159,12 @@ class Step:
     def energies_at(self) -> list[int]:
         """Where the SCFs are done, in order."""
         return self.part.all(b" SCF Done:")
+
+    @cached_property
+    def atoms(self) -> int | None:
+        """How many atoms the program says that there are, None where it does not."""
+        match = _ATOMS.search(self.text.data, self.start, self.end)
+        return None if match is None else int(match.group(1))
 
     @property
     def of_several(self) -> bool:

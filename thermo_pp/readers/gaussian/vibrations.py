@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.readers.gaussian.steps import THERMOCHEMISTRY, Step
+from thermo_pp.readers.number_table import number_table
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 FloatArray = NDArray[np.float64]
@@ -48,6 +49,7 @@ _VALUES: dict[str, re.Pattern[bytes]] = {
 _GIBBS_CORRECTION = re.compile(rb"\n Thermal correction to Gibbs Free Energy" + _EH)
 _SUM = re.compile(rb"\n Sum of electronic and zero-point Energies" + _EH)
 _TEMPERATURE = re.compile(rb"\n Temperature +(\d+\.\d+) Kelvin\. +Pressure +(\d+\.\d+) Atm")
+_TEMPERATURES = re.compile(rb"\n Vibrational temperatures?:([^:=]*?)\n *\n")
 _SYMMETRY = re.compile(rb"\n Rotational symmetry number +(\d+)\.")
 _ROW = rb"\n %b +(-?\d+\.\d+) +(-?\d+\.\d+) +(-?\d+\.\d+)"
 _SHARES = {
@@ -123,6 +125,15 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
 
 
 def _check(part: Text, found: Vibrations, atoms: int) -> None:
+    listed = _TEMPERATURES.search(part.data, found.at, part.end)
+    if listed is not None:
+        count = len(re.findall(rb"\d+\.\d+", listed.group(1)))
+        if count != int(np.sum(found.wavenumbers_cm > 0.0)):
+            raise part.error(
+                listed.start() + 1,
+                f"{count} vibrational temperatures, but {int(np.sum(found.wavenumbers_cm > 0.0))} real modes",
+                mend="the output is damaged; rerun or re-copy it",
+            )
     expected = {1: (0,), 2: (1,)}.get(atoms, (3 * atoms - 6, 3 * atoms - 5))
     if len(found.wavenumbers_cm) not in expected:
         raise part.error(
@@ -215,11 +226,8 @@ def _lines_on(own: Text, line: int, count: int) -> int:
 
 def _array(own: Text, start: int, end: int, rows: int, words: int) -> FloatArray:
     """Return a table of `rows` lines of `words` numbers; ReadError at the line that is not one."""
-    try:
-        values = np.array([float(word) for word in own.data[start:end].split()])
-    except ValueError:
-        values = np.zeros(0)
-    if values.size == rows * words and np.all(np.isfinite(values)):
+    values = number_table(own.data[start:end], rows * words)
+    if values is not None:
         return values.reshape(rows, words)
     line = start
     for _ in range(rows):

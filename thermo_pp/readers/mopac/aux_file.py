@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 
 import numpy as np
@@ -23,6 +24,7 @@ FloatArray = NDArray[np.float64]
 _START = re.compile(rb"^ START OF MOPAC (?:FILE|PROGRAM)\b", re.MULTILINE)
 _JOB = b" START OF MOPAC FILE"
 _END = re.compile(rb"^ END OF MOPAC (?:FILE|PROGRAM)\b", re.MULTILINE)
+_NEXT = re.compile(rb"[ \t]*(?:#|\r?\n|END OF|START OF|[A-Za-z][^ \t\r\n]*[=:\[])")
 _ERROR = re.compile(rb'^ ERROR(?:_MESSAGE)?="([^"\n]*)', re.MULTILINE)
 
 
@@ -55,7 +57,10 @@ class _Aux:
         if match is None:
             return None
         at = match.start(3)
-        return self.text.exact_text(at, key), at
+        digits = self.text.exact_text(at, key)
+        if not math.isfinite(float(digits)):
+            raise self.text.expected(at, f"a finite number, {key}")
+        return digits, at
 
     def words(self, key: str, count: int) -> tuple[list[bytes], int] | None:
         """Return `count` words below the key; ReadError where there are others, None where it is missing."""
@@ -74,6 +79,10 @@ class _Aux:
                 at = self.text.next_line(at)
         if len(words) != count:
             raise self.text.expected(at, f"{count} values of {key}")
+        if count:
+            after = self.text.next_line(at)
+            if _NEXT.match(self.text.data, after) is None:
+                raise self.text.expected(after, f"the end of the {count} values of {key}")
         return words, match.start()
 
     def array(self, key: str, count: int) -> tuple[FloatArray, int] | None:
@@ -126,7 +135,7 @@ def read(source: Source) -> Calculation:
     version, version_at = aux.quoted("MOPAC_VERSION")
     numbers = _elements(aux)
     n = len(numbers)
-    shape = aux.array("ATOM_X_OPT", 3 * n) or aux.need("ATOM_X", 3 * n)
+    shape = aux.need("ATOM_X" if n == 1 else "ATOM_X_OPT", 3 * n)
     positions = shape[0].reshape(n, 3)
     masses, origin, masses_at = _masses(aux, numbers)
     energy = aux.number("TOTAL_ENERGY")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from itertools import pairwise
 
@@ -36,6 +37,10 @@ _ATOM = re.compile(
     rb"[ \t]*(\d+)[ \t]+([A-Z][a-z]?)(?:\S*)((?:[ \t]+-?\d+\.\d+[ \t]*(?:[*+]\d?)?){3})[ \t]*\r?\n"
 )
 _INPUT = re.compile(rb"^[ \t]+NUMBER[ \t]+SYMBOL[ \t]+\(ANGSTROMS\)", re.MULTILINE)
+_HEADS = re.compile(
+    rb"^[ \t]+ATOM[ \t]+CHEMICAL[ \t]+(?:X[ \t]+Y[ \t]+Z|BOND LENGTH)[^\n]*\n[^\n]*\(ANGSTROMS\)",
+    re.MULTILINE,
+)
 _CARTESIAN = re.compile(rb"^[ \t]+CARTESIAN COORDINATES[ \t]*\r?\n", re.MULTILINE)
 _PLAIN = re.compile(rb"[ \t]*(\d+)[ \t]+([A-Z][a-z]?)((?:[ \t]+-?\d+\.\d+){3})[ \t]*\r?\n")
 _CHANGED = re.compile(
@@ -49,20 +54,23 @@ _HEAT = re.compile(
 _TOTAL = re.compile(
     rb"^[ \t]*(?:TOTAL ENERGY[ \t]*=|ETOT \(EONE \+ ETWO\))[ \t]+(\S+)[ \t]+EV", re.MULTILINE
 )
+_ONE_CENTRE = re.compile(rb"TOTAL OF ONE-CENTER TERMS[ \t]+(-?\d+\.\d{4})[ \t]+EV")
+_TWO_CENTRE = re.compile(rb"GRAND TOTAL OF TWO-CENTER TERMS[ \t]+(-?\d+\.\d{4})[ \t]+EV")
 _ALPHA = re.compile(rb"NO\. OF ALPHA ELECTRONS[ \t]*=[ \t]*(\d+)")
 _BETA = re.compile(rb"NO\. OF BETA[ \t]+ELECTRONS[ \t]*=[ \t]*(\d+)")
 _DOUBLY = re.compile(rb"RHF CALCULATION, NO\. OF DOUBLY OCCUPIED LEVELS[ \t]*=[ \t]*(\d+)")
 _SINGLY = re.compile(rb"NO\. OF SINGLY OCCUPIED LEVELS[ \t]*=[ \t]*(\d+)")
 _FIELD = re.compile(rb"^[ \t]+SCF FIELD WAS ACHIEVED", re.MULTILINE)
 _DONE = (b"OPTIMISED USING", b"OPTIMIZED USING", b"WAS SATISFIED", b"TEST SATISFIED")
+_SAME_ANGSTROM = 4e-4
+"""Two prints of one distance: four decimals of each coordinate."""
 _LARGE_GRADIENT = b"GRADIENT IS VERY LARGE"
 
 
 def sniff(head: bytes) -> bool:
     """Tell whether the file is a text output of MOPAC."""
-    return _HEADING.search(head) is not None and (
-        _BANNER.search(head) is not None or b"MOPAC" in head[:4096]
-    )
+    found = b" CALCULATION RESULTS" in head and _HEADING.search(head) is not None
+    return found and (_BANNER.search(head) is not None or b"MOPAC" in head[:4096])
 
 
 def read(source: Source) -> Calculation:
@@ -222,7 +230,8 @@ def _geometry(part: Text) -> tuple[IntArray, FloatArray, int]:
     """Return the geometry with the most decimals: Cartesian tables first, the last of each kind."""
     tables = [(match, _ATOM) for match in _TABLE.finditer(part.data, part.start, part.end)]
     tables += [(match, _PLAIN) for match in _CARTESIAN.finditer(part.data, part.start, part.end)]
-    if not tables or _INPUT.search(part.data, part.start, part.end) is None:
+    inputs = len(_INPUT.findall(part.data, part.start, part.end))
+    if not tables or not inputs or inputs != len(_HEADS.findall(part.data, part.start, part.end)):
         raise part.error(part.start, "no geometry of the input after this line", mend=CUT_SHORT)
     found: list[tuple[int, int, IntArray, FloatArray]] = []
     for match, pattern in tables:
@@ -238,11 +247,15 @@ def _geometry(part: Text) -> tuple[IntArray, FloatArray, int]:
         raise part.error(part.start, "no Cartesian geometry after this line", mend=CUT_SHORT)
     _check_pairs(part, found)
     last = max(at for _, at, _, _ in found)
+    results = part.last(b"FINAL HEAT OF FORMATION")
+    if last < results:
+        raise part.error(results, "no final geometry after this line", mend=CUT_SHORT)
     final = next(one for one in found if one[1] == last)
     same = [
         one
         for one in found
-        if np.array_equal(one[2], final[2]) and np.max(np.abs(one[3] - final[3])) < 1e-4
+        if np.array_equal(one[2], final[2])
+        and np.max(np.abs(_distances(one[3]) - _distances(final[3]))) < _SAME_ANGSTROM
     ]
     _, at, numbers, positions = max(same, key=lambda one: (one[0], one[1]))
     return numbers, positions, at
@@ -256,7 +269,7 @@ def _check_pairs(part: Text, found: list[tuple[int, int, IntArray, FloatArray]])
         if one[1] not in tables or after[1] in tables:
             continue
         off = np.max(np.abs(_distances(one[3]) - _distances(after[3])))
-        if off > 4e-4 or not np.array_equal(one[2], after[2]):
+        if off > _SAME_ANGSTROM or not np.array_equal(one[2], after[2]):
             raise part.error(
                 after[1], "the same geometry is printed twice and differs", mend=CUT_SHORT
             )
@@ -332,6 +345,17 @@ def _energy(part: Text) -> tuple[float | None, int]:
         return None, 0
     at = matches[-1].start(1)
     value = float(part.exact_text(at, "the total energy in eV"))
+    if not math.isfinite(value):
+        raise part.expected(at, "the total energy in eV")
+    shares = [mark.search(part.data, part.start, part.end) for mark in (_ONE_CENTRE, _TWO_CENTRE)]
+    if shares[0] is not None and shares[1] is not None:
+        total = sum(float(share.group(1)) for share in shares if share is not None)
+        if abs(total - value) > 2.1e-4:
+            raise part.error(
+                at,
+                f"the total energy is {value} eV, its parts add up to {total:.4f} eV",
+                mend=CUT_SHORT,
+            )
     return value * job.EV_HARTREE, at
 
 

@@ -138,9 +138,25 @@ def best(
         if found is None:
             if state.geometry.same(geometry):
                 found = state
-        elif state.same(found) and _better(state, found, later):
-            found = state
+        elif state.same(found):
+            found = state if _better(state, found, later) else found
+        elif state.geometry.same(found.geometry) and _half_known(state, found):
+            raise text.error(
+                state.energy.at,
+                f"this {state.energy.label} energy is of the same geometry, but its charge or its "
+                "multiplicity is not printed",
+                mend=CUT_SHORT,
+            )
     return found, passed_over
+
+
+def _half_known(one: State, other: State) -> bool:
+    """Tell whether charge or multiplicity is known of one state only."""
+    pairs = (
+        (one.level.charge, other.level.charge),
+        (one.level.multiplicity, other.level.multiplicity),
+    )
+    return any((mine is None) != (theirs is None) for mine, theirs in pairs)
 
 
 def _unusable(text: Text, task: Task) -> tuple[int, str] | None:

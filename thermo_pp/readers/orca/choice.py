@@ -21,7 +21,7 @@ from thermo_pp.readers.text import Text
 
 CYCLE = b"GEOMETRY OPTIMIZATION CYCLE"
 CONVERGED = b"THE OPTIMIZATION HAS CONVERGED"
-_PATHS = re.compile(rb"Molecular Dynamics|MOLECULAR DYNAMICS|ORCA-MD|Nudged Elastic Band")
+_PATHS = (b"Molecular Dynamics", b"MOLECULAR DYNAMICS", b"ORCA-MD", b"Nudged Elastic Band")
 _THERMO_STEP = 2.1e-8
 
 
@@ -110,10 +110,11 @@ def choose(text: Text, layout: Layout) -> Chosen:
 
 
 def _refuse_paths(text: Text, layout: Layout) -> None:
-    match = _PATHS.search(b"\n".join(layout.titles))
-    if match is not None:
+    joined = b"\n".join(layout.titles)
+    mark = next((mark for mark in _PATHS if mark in joined), None)
+    if mark is not None:
         raise text.error(
-            text.find(match.group()),
+            text.find(mark),
             "a job along a path or a trajectory, whose last structure is none of its own",
             mend="give a single point, an optimisation or a frequency job of one structure",
         )

@@ -18,11 +18,9 @@ from thermo_pp.readers.text import Text
 RANK = ("MP2", "MP3", "MP4", "CCSD", "CCSD(T)")
 """Labels of correlated energies, worst first; any other correlated one stands between."""
 
-_EXCITED = re.compile(
-    rb"TD-?DFT|TDA\b|\bCIS\b|\bCIS[-/ (]|\bs?TDA|\bEOM|STEOM|ADC\(?2|EXCITED STATES|ROCIS|"
-    rb"ABSORPTION SPECTRUM"
-)
-_MULTICONFIGURATION = re.compile(rb"CASSCF|NEVPT2|\bMRCI\b|ORCA MRCI|CASPT2|MRMP|\bICE-?CI")
+_EXCITED = (b"TD-DFT", b"TDDFT", b"TDA", b"CIS-", b"CIS/", b"ORCA CIS", b"EOM", b"ADC2", b"ADC(2")
+_EXCITED += (b"EXCITED STATES", b"ROCIS", b"ABSORPTION SPECTRUM")
+_MULTICONFIGURATION = (b"CASSCF", b"NEVPT2", b"ORCA MRCI", b"CASPT2", b"MRMP", b"ICE-CI", b"ICECI")
 _MULTICONFIGURATION_WORDS = (
     "CASSCF",
     "NEVPT2",
@@ -34,18 +32,19 @@ _MULTICONFIGURATION_WORDS = (
 )
 _SCF_TOTAL = b"\nTotal Energy       :"
 _AFTER_CDS = b"\nTotal Energy after SMD CDS correction"
-_CORRECTION = re.compile(
-    rb"\n(?:Dispersion correction|gCP correction|SRB correction) +(-?\d+\.\d+)"
-)
+_CORRECTION = re.compile(rb"(?:Dispersion correction|gCP correction|SRB correction) +(-?\d+\.\d+)")
 _OF_STATE = re.compile(rb"\n *E\(SCF\) *= *(-?\d+\.\d+) Eh *\n *DE\(\w+\) *= *(-?\d+\.\d+) Eh")
 _MP2_TOTAL = b"MP2 TOTAL ENERGY"
 _CC_TOTAL = re.compile(rb"\nE\((TOT|[A-Z][^\s]*)\) +\.\.\. +(-?\d+\.\d+)")
 _TREATMENT = b"\nCorrelation treatment"
 _TRIPLES = b"\nPerturbative triple excitations"
-_MDCI = re.compile(rb"ORCA-MATRIX DRIVEN CI|ORCA-MDCI|COUPLED CLUSTER ENERGY|ORCA-AUTOCI")
+_MDCI = (b"ORCA-MATRIX DRIVEN CI", b"ORCA-MDCI", b"COUPLED CLUSTER ENERGY", b"ORCA-AUTOCI")
 _EXTRAPOLATED = b"Estimated CBS total energy"
 _NUMBER = re.compile(rb"[^:=\n]*[:=] *(-?\d+\.\d+)")
-_UNCONVERGED = (b"SCF NOT CONVERGED AFTER", b"iterations have NOT converged", b"CC NOT CONVERGED")
+_SCF_FAILED = b"SCF NOT CONVERGED AFTER"
+_CC_FAILED = (b"iterations have NOT converged", b"CC NOT CONVERGED")
+_BEFORE_TOTAL = 20000
+"""Within so many bytes before the total energy it says whether the SCF converged."""
 _WITHOUT_SCF = re.compile(
     r"(?:NATIVE-)?(?:GFN\d?-?(?:FF|XTB)|XTB\d?|XTBFF|GFN-XTB|G-?XTB)|AM1|PM3|MNDO|ZINDO(?:/[12S])?"
 )
@@ -117,25 +116,29 @@ def energy(
     """
     text = layout.text
     part = text.part(final.start, final.at)
-    check_converged(part, final)
     titles = layout.between(final.start, final.at)
     joined = b"\n".join(titles)
+    matrix_driven = any(mark in joined for mark in _MDCI)
+    check_converged(part, final, matrix_driven)
     scf = _last(_SCF_TOTAL, part)
     if scf is None:
         return Energy(final, final.value, _other(part, final, method), final.at)
     density = _is_density(part, method, functional)
-    cds = _last(_AFTER_CDS, part.part(scf[1]))
+    cds = _last(_AFTER_CDS, part.part(scf[1])) if b"CPCM" in joined else None
     parts = [scf[0] if cds is None else cds[0]]
     sums = [parts[0], scf[0]]
-    for match in _CORRECTION.finditer(part.data, scf[1], part.end):
-        parts.append(float(match.group(1)))
-        sums.append(math.fsum(parts))
+    for title in layout.between(scf[1], part.end):
+        match = _CORRECTION.match(title)
+        if match is not None:
+            parts.append(float(match.group(1)))
+            sums.append(math.fsum(parts))
     label, best = ("DFT" if density else "HF"), None
-    excited = states or _EXCITED.search(joined) is not None
-    multi = _MULTICONFIGURATION.search(joined)
-    if multi is not None or (method or "").startswith(_MULTICONFIGURATION_WORDS):
+    excited = states or any(mark in joined for mark in _EXCITED)
+    if any(mark in joined for mark in _MULTICONFIGURATION) or (method or "").startswith(
+        _MULTICONFIGURATION_WORDS
+    ):
         return _multiconfigurational(layout, final, part)
-    if _MDCI.search(joined) is not None and not density:
+    if matrix_driven and not density:
         label, best = _coupled_cluster(part.part(scf[1]), method, excited)
     elif b"MP2" in joined:
         best = _last(_MP2_TOTAL, part)
@@ -160,9 +163,12 @@ def energy(
     return _ground_state(layout, final, part, label, best, sums, scf[1])
 
 
-def check_converged(part: Text, final: Final) -> None:
+def check_converged(part: Text, final: Final, correlated: bool) -> None:
     """Refuse an evaluation whose SCF or coupled-cluster iterations did not converge."""
-    at = next((at for mark in _UNCONVERGED if (at := part.last(mark)) >= 0), -1)
+    heading = part.last(b"\nTOTAL SCF ENERGY")
+    at = part.part(max(heading - _BEFORE_TOTAL, part.start)).find(_SCF_FAILED)
+    if at < 0 and correlated:
+        at = max(part.last(mark) for mark in _CC_FAILED)
     if at < 0 and final.converged:
         return
     raise part.error(
@@ -193,7 +199,7 @@ def _ground_state(
         (
             at
             for at, title in zip(layout.offsets, layout.titles, strict=True)
-            if part.start <= at < part.end and _EXCITED.search(title)
+            if part.start <= at < part.end and any(mark in title for mark in _EXCITED)
         ),
         final.at,
     )

@@ -158,6 +158,13 @@ def masses(layout: Layout, geometry: Geometry) -> tuple[FloatArray, Origin, int 
             f"{listed} atoms in bohr, but {len(geometry.rows) + geometry.ghosts} in angstrom above",
             mend="the output is damaged here; rerun or re-copy it",
         )
+    words = text.data[first : text.blank_line(first)].split()
+    if geometry.rows == tuple(range(listed)) and len(words) == 8 * listed:
+        with suppress(ValueError):
+            table = np.array([[float(word) for word in words[i::8]] for i in (4, 5, 6, 7)])
+            apart = np.abs(table[1:].T * BOHR_ANGSTROM - geometry.positions_angstrom)
+            if np.all(apart <= _PRINTED_TWICE * _scale(geometry)) and table[0].min() > 0.0:
+                return table[0], "printed", first
     found: list[float] = []
     line, row = first, 0
     for atom, wanted in enumerate(geometry.rows):
@@ -166,8 +173,7 @@ def masses(layout: Layout, geometry: Geometry) -> tuple[FloatArray, Origin, int 
         words = text.rest(line).split()
         values = text.floats(line, 4, "mass and coordinates of an atom", skip=len(words) - 4)
         apart = np.array(values[1:]) * BOHR_ANGSTROM - geometry.positions_angstrom[atom]
-        scale = 1.0 + float(np.abs(geometry.positions_angstrom[atom]).max())
-        if float(np.abs(apart).max()) > _PRINTED_TWICE * scale or values[0] <= 0.0:
+        if not np.all(np.abs(apart) <= _PRINTED_TWICE * _scale(geometry)) or values[0] <= 0.0:
             raise text.error(
                 line,
                 "this atom's coordinates in bohr do not agree with those in angstrom above",
@@ -175,3 +181,8 @@ def masses(layout: Layout, geometry: Geometry) -> tuple[FloatArray, Origin, int 
             )
         found.append(values[0])
     return np.array(found), "printed", first
+
+
+def _scale(geometry: Geometry) -> float:
+    """Return by what the rounding of the conversion grows with the size of the structure."""
+    return 1.0 + 0.1 * float(np.abs(geometry.positions_angstrom).max())

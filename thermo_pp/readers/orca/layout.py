@@ -9,6 +9,8 @@ from itertools import pairwise
 
 from thermo_pp.readers.text import CUT_SHORT, Text
 
+INPUT_BYTES = 1 << 20
+"""How much of an echoed input is looked at."""
 ENERGY = b"FINAL SINGLE POINT ENERGY"
 COORDINATES = b"CARTESIAN COORDINATES (ANGSTROEM)"
 FREQUENCIES = b"VIBRATIONAL FREQUENCIES"
@@ -21,7 +23,8 @@ _FAILED = (
     b"ORCA TERMINATED ABNORMALLY",
 )
 
-_HEADING = re.compile(rb"\n-----[- ]*\n[ |*]*([^\s\-|*][^\n]*)")
+_KEY = 8
+_HEADING = re.compile(rb"\n-----[- ]*\n[ |*]*([A-Za-z][A-Za-z -][^\n]*)")
 _FINAL = re.compile(
     rb"[ :]*(\([^()\n]*\))? *(-?\d+\.\d+)? *(\([^()\n]*\))?[ \t]*(?:\n|$)", re.MULTILINE
 )
@@ -54,48 +57,40 @@ class Layout:
         self.offsets: list[int] = []
         self.titles: list[bytes] = []
         self.blocks: dict[int, object] = {}
+        self._by_key: dict[bytes, list[int]] = {}
         for match in _HEADING.finditer(text.data):
+            title = match.group(1).rstrip()
+            self._by_key.setdefault(title[:_KEY], []).append(len(self.offsets))
             self.offsets.append(match.start(1))
-            self.titles.append(match.group(1).rstrip())
+            self.titles.append(title)
 
     def between(self, start: int, end: int) -> list[bytes]:
         """Return the headings from `start` up to `end`."""
         return self.titles[bisect_left(self.offsets, start) : bisect_left(self.offsets, end)]
 
-    def all(self, title: bytes, start: int = 0, end: int | None = None) -> list[int]:
-        """Return the offsets of the headings that begin with `title`."""
-        stop = self.text.end if end is None else end
-        return [
-            at
-            for at, found in zip(self.offsets, self.titles, strict=True)
-            if start <= at < stop and found.startswith(title)
-        ]
+    def all(self, title: bytes) -> list[int]:
+        """Return the offsets of the headings that begin with `title`, eight letters or more."""
+        known = self._by_key.get(title[:_KEY], [])
+        return [self.offsets[i] for i in known if self.titles[i].startswith(title)]
 
     def last(self, title: bytes, end: int | None = None) -> int:
         """Return the offset of the last heading before `end` that begins with `title`, -1 without one."""
-        stop = len(self.offsets) if end is None else bisect_left(self.offsets, end)
-        for i in range(stop - 1, -1, -1):
-            if self.titles[i].startswith(title):
-                return self.offsets[i]
-        return -1
+        found = self.all(title)
+        i = len(found) if end is None else bisect_left(found, end)
+        return found[i - 1] if i else -1
 
     def next(self, title: bytes, start: int) -> int:
         """Return the offset of the first heading from `start` on that begins with `title`, -1 without one."""
-        for i in range(bisect_left(self.offsets, start), len(self.offsets)):
-            if self.titles[i].startswith(title):
-                return self.offsets[i]
-        return -1
-
-    def after(self, at: int) -> int:
-        """Return the offset of the first heading behind `at`, the end of the text without one."""
-        i = bisect_left(self.offsets, at + 1)
-        return self.offsets[i] if i < len(self.offsets) else self.text.end
+        found = self.all(title)
+        i = bisect_left(found, start)
+        return found[i] if i < len(found) else -1
 
 
 def check_end(text: Text) -> None:
     """Refuse an output that does not end with the program's words of a normal end."""
     at = text.last(_END)
-    failed = max(text.last(mark) for mark in _FAILED)
+    behind = text.part(max(at, 0))
+    failed = max(behind.last(mark) for mark in _FAILED)
     if failed > at:
         raise text.error(
             failed,
@@ -134,9 +129,7 @@ def finals(text: Text) -> list[Final]:
 
 def jobs(text: Text) -> list[tuple[int, int]]:
     """Return start and end of the jobs that one input file asks for; one of the whole text without any."""
-    marks = [match.start() for match in _JOB.finditer(text.data)] if _several(text) else []
+    end = text.find(b"****END OF INPUT****")
+    several = end < 0 or b"$new_job" in text.data[max(end - INPUT_BYTES, 0) : end].lower()
+    marks = [match.start() for match in _JOB.finditer(text.data)] if several else []
     return list(pairwise([*marks, text.end])) if marks else [(0, text.end)]
-
-
-def _several(text: Text) -> bool:
-    return text.find(b" JOB NUMBER ") >= 0

@@ -73,12 +73,16 @@ class Level:
 
 @dataclass(frozen=True)
 class Asked:
-    """The input: its keywords, upper case, functional names among them, and where it ends."""
+    """The input: its keywords, upper case, the functionals among them, where it stands, its text.
+
+    `only` tells whether it is that of the only job.
+    """
 
     words: tuple[str, ...]
     functionals: tuple[str, ...]
     at: int
     text: Text
+    only: bool = True
 
     @property
     def method(self) -> str | None:
@@ -118,7 +122,7 @@ def asked(text: Text, job: int, jobs: int) -> Asked:
     functionals = [name for word in words if (name := _functional(word))]
     for named in _FUNCTIONAL.finditer(part.data, part.start, part.end):
         functionals.append(named.group(1).decode("utf-8", "replace").upper().strip("\"'"))
-    return Asked(tuple(words), tuple(functionals), part.start, part)
+    return Asked(tuple(words), tuple(functionals), part.start, part, jobs == 1)
 
 
 def _functional(word: str) -> str | None:
@@ -138,7 +142,7 @@ def level(layout: Layout, energy: Energy, inputs: Asked) -> Level:
     grid = _grid(layout, part, at) if energy.label == "DFT" else None
     return Level(
         method,
-        _basis(layout.text, final.at, inputs, at),
+        _basis(layout.text, final.at, inputs.only, inputs, at),
         _dispersion(part, titles, method, inputs, at),
         _solvent(part, titles, energy, inputs, at),
         grid,
@@ -170,8 +174,8 @@ def _plain(name: str) -> str:
     return same.get(name, name)
 
 
-def _basis(text: Text, end: int, inputs: Asked, at: dict[str, int]) -> str | None:
-    place = text.last(_BASIS, end)
+def _basis(text: Text, end: int, first: bool, inputs: Asked, at: dict[str, int]) -> str | None:
+    place = text.find(_BASIS) if first else text.last(_BASIS, end)
     if place < 0:
         return None
     name = text.rest(place + len(_BASIS)).decode("utf-8", "replace").strip()

@@ -16,6 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.readers.orca.layout import Layout
+from thermo_pp.readers.number_table import number_table
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 FloatArray = NDArray[np.float64]
@@ -165,6 +166,9 @@ def _modes(part: Text, heading: int, count: int) -> tuple[FloatArray, int]:
     if match is None:
         raise part.expected(heading, "a table of normal modes below this line")
     first = line = match.start() + 1
+    whole = _whole_table(part, first, count)
+    if whole is not None:
+        return whole, first
     columns: list[FloatArray] = []
     done = 0
     while done < count:
@@ -192,6 +196,27 @@ def _modes(part: Text, heading: int, count: int) -> tuple[FloatArray, int]:
         done += width
         line = end
     return np.concatenate(columns), first
+
+
+def _whole_table(part: Text, first: int, count: int) -> FloatArray | None:
+    """Return the columns of the table of modes in one go; None where a line of it is not as expected."""
+    widths = [6] * (count // 6) + ([count % 6] if count % 6 else [])
+    size = sum(width + count * (width + 1) for width in widths)
+    values = number_table(part.data[first : part.blank_line(first)], size)
+    if values is None:
+        return None
+    columns = np.empty((count, count))
+    order = np.arange(count)
+    begin = done = 0
+    for width in widths:
+        end = begin + width + count * (width + 1)
+        block = values[begin + width : end].reshape(count, width + 1)
+        headed = values[begin : begin + width] == order[done : done + width]
+        if not headed.all() or not (block[:, 0] == order).all():
+            return None
+        columns[done : done + width] = block[:, 1:].T
+        begin, done = end, done + width
+    return columns
 
 
 def _lines_on(part: Text, line: int, count: int) -> int:

@@ -86,6 +86,7 @@ def read(source: Source) -> Calculation:
     text = Text(source)
     all_jobs = jobs.jobs(text)
     analysed = [job for job in all_jobs if job.kind == "frequencies"]
+    _check_no_modes(text, all_jobs)
     main = analysed[-1] if analysed else all_jobs[-1]
     own, doubts = _energy(text, main), []
     energy = _best(text, all_jobs, main, own)
@@ -154,6 +155,16 @@ def read(source: Source) -> Calculation:
             for index, one in enumerate(doubts)
         ),
     )
+
+
+def _check_no_modes(text: Text, all_jobs: list[Job]) -> None:
+    """Refuse modes in a job that was not asked for them: its input is damaged."""
+    for job in all_jobs:
+        at = -1
+        if job.kind != "frequencies":
+            at = text.data.find(vibrations.ANALYSIS, job.echo, job.end)
+        if at >= 0:
+            raise text.error(at, "modes in a job whose input asks for none", mend=CUT_SHORT)
 
 
 def _version(text: Text) -> re.Match[bytes] | None:
@@ -234,6 +245,8 @@ def _modes(text: Text, job: Job, own: Energy) -> Modes:
         printed = vibrations.masses(part, thermo, own.shape)
         if printed is not None:
             masses, at["masses_u"] = printed
+    elif (lost := part.find(b"Has Mass", first)) >= 0:
+        raise part.error(lost, "masses, but no heading of the thermochemistry", mend=CUT_SHORT)
     others = part.find(vibrations.ANALYSIS, first + 1)
     return Modes(wavenumbers, vectors, masses, found, at, others)
 

@@ -48,7 +48,7 @@ _METHODS: dict[str, str] = {
 }
 """What an input calls a method that is no functional -> the energy of the ground state that it gives."""
 _UNKNOWN = re.compile(
-    r"adc|scs|sos|mos|mp2\[|lmp2|cis\(|qcis|cisd|ccsd\(|ccsdt|cc2|cc3|eom-|om?[dp]|rpa|rdm|casscf|ras|sf-|vod|vqccd|"
+    r"adc|scs|sos|mos|mp2\[|lmp2|cis\(|qcis|cisd|ccsd\(|ccsdt|cc2|cc3|eom-|(?:od|od\(2\)|omp2)$|rpa|rdm|casscf|ras|sf-|vod|vqccd|"
     r"pp2|ccvb|drpa|cepa|scan-?d?rpa"
 )
 _WANTED: dict[str, re.Pattern[bytes]] = {
@@ -70,8 +70,11 @@ _TOTAL = re.compile(
     rb"^[ \t]*Total energy(?: in the final basis set)?[ \t]*=(?=[ \t])", re.MULTILINE
 )
 _SCF = re.compile(rb"^[ \t]*SCF[ \t]+energy(?: in the final basis set)?[ \t]*=(?=[ \t])", re.M)
+_ITERATIONS = b"Convergence criterion met"
 _FAILED = (b"SCF failed to converge", b"\n Convergence failure")
-_PERTURBED = re.compile(rb"[^\n]*(?:MP2|PT2)\b[^\n]{0,40}\b(?:total|correlation) energy\b", re.I)
+_PERTURBED = re.compile(
+    rb"[^\n]*(?:MP2|PT2|CCSD(?:\(T\))?)[ \t][^\n]{0,40}\b(?:total|correlation) energy\b", re.I
+)
 _DOUBLE_HYBRID = re.compile(
     r"b2\w*-?plyp|xyg|wb97x-2|wb97m\(2\)|dsd|dod|2-?plyp|-dh|qidh|pbe0-2|pwpb95|ptpss|1dh"
 )
@@ -161,11 +164,19 @@ def energy(text: Text, job: Job) -> Energy:
             "the SCF did not converge, so there is no energy",
             mend="rerun with more iterations or another algorithm",
         )
-    found = [
-        (start, end, totals)
-        for start, end in geometry.blocks(text, job)
-        if (totals := [m.end() for m in matches(_TOTAL, b"Total energy", text, start, end)])
-    ]
+    blocks = [(job.echo, -1), *geometry.blocks(text, job)]
+    blocks[0] = (job.echo, blocks[1][0])
+    found = []
+    for start, end in blocks:
+        totals = [m.end() for m in matches(_TOTAL, b"Total energy", text, start, end)]
+        iterations = text.data.find(_ITERATIONS, start, end)
+        if (iterations >= 0 and not totals) or (totals and start == job.echo):
+            place = totals[0] if totals else iterations
+            raise text.error(
+                place, "an SCF without its geometry or its total energy", mend=CUT_SHORT
+            )
+        if totals:
+            found.append((start, end, totals))
     if not found:
         raise text.error(
             job.end, "no energy in this job (looked for 'Total energy')", mend=CUT_SHORT
@@ -306,12 +317,23 @@ def check_functional(text: Text, found: Energy) -> None:
     densities = [first_match(_DENSITY, mark, text, start, end) for mark in marks]
     density = next((one for one in densities if one is not None), None)
     plain = first_match(_HARTREE_FOCK, b"Hartree-Fock", text, start, end)
+    second = [
+        first_match(_PERTURBED, mark, text, found.scf_at, job.end)
+        for mark in (b"MP2", b"PT2", b"CCSD")
+    ]
+    match = next((one for one in second if one is not None), None)
     if found.label != "DFT":
         if density is not None and plain is None:
             raise text.error(
                 density.start(),
                 f"the SCF of this job is one of a density functional, the input asks for {name!r}",
                 mend="give a job whose reference is Hartree-Fock",
+            )
+        if found.label == "HF" and match is not None and name == "hf":
+            raise text.error(
+                match.start(),
+                "a correlated energy, but the input asks for Hartree-Fock",
+                mend=CUT_SHORT,
             )
         return
     if plain is not None and density is None:
@@ -320,10 +342,6 @@ def check_functional(text: Text, found: Energy) -> None:
             f"the SCF of this job is Hartree-Fock, and {name!r} is not known to this reader",
             mend=f"density functionals and {', '.join(RANKS)} are read",
         )
-    second = [
-        first_match(_PERTURBED, mark, text, found.scf_at, job.end) for mark in (b"MP2", b"PT2")
-    ]
-    match = next((one for one in second if one is not None), None)
     if match is not None or _DOUBLE_HYBRID.search(name):
         raise text.error(
             job.echo if match is None else match.start(),

@@ -97,6 +97,9 @@ def jobs(text: Text) -> list[Job]:
     for number, echo in enumerate(echoes):
         following = echoes[number + 1].start() if number + 1 < len(echoes) else text.end
         thanks = text.data.find(THANKS, echo.end(), following)
+        again = -1 if thanks < 0 else text.data.find(THANKS, thanks + 1, following)
+        if again >= 0:
+            raise text.error(again, "the end of a job without its beginning", mend=CUT_SHORT)
         stopped = text.data.find(_CYCLES, echo.end(), following)
         end = following if thanks < 0 else thanks
         if stopped < 0:
@@ -113,14 +116,25 @@ def jobs(text: Text) -> list[Job]:
     if tail >= 0:
         _refuse_failure(text, tail, text.end)
         raise text.error(text.end, "the last job of this file has no end", mend=CUT_SHORT)
-    counted = _COUNTED.fullmatch(echoes[-1].group(1).strip())
-    if counted is not None and counted.group(1) != counted.group(2):
-        raise text.error(
-            text.end,
-            f"job {counted.group(1).decode()} of {counted.group(2).decode()} is the last one here",
-            mend=CUT_SHORT,
-        )
+    _check_count(text, echoes)
     return found
+
+
+def _check_count(text: Text, echoes: list[re.Match[bytes]]) -> None:
+    """Refuse a file in which some of the jobs that its inputs count are missing."""
+    counted = [_COUNTED.fullmatch(echo.group(1).strip()) for echo in echoes]
+    whole, expected = len(echoes), 1
+    for echo, match in zip(echoes, counted, strict=True):
+        if match is None and not any(counted):
+            return
+        number, total = (0, 0) if match is None else (int(match.group(1)), int(match.group(2)))
+        if number not in (1, expected):
+            raise text.error(echo.start(), "a job before this one is missing", mend=CUT_SHORT)
+        expected, whole = number + 1, total
+    if expected <= whole:
+        raise text.error(
+            text.end, f"job {expected - 1} of {whole} is the last one here", mend=CUT_SHORT
+        )
 
 
 def _refuse_failure(text: Text, start: int, end: int) -> None:
@@ -151,6 +165,10 @@ def _job(
                 charge, multiplicity = int(state.group(1)), int(state.group(2))
                 state_at = state.start(1)
     rem = _rem(sections.pop("rem", b""))
+    if not any(key in rem for key in ("method", "exchange", "correlation")):
+        raise text.error(
+            echo.start(), "no method in the echo of the input (looked in $rem)", mend=CUT_SHORT
+        )
     if state_at < 0:
         if before is None or sections.get("molecule", b"").strip().lower() != b"read":
             raise text.error(

@@ -73,8 +73,10 @@ def level(text: Text, energy: Energy) -> Level:
     if match is not None:
         at["basis"] = match.start(1)
         basis = match.group(1).decode("utf-8", "replace").strip()
-        if basis.lower() in _UNNAMED:
-            basis = None
+    elif job.rem.get("basis") is not None:
+        at["basis"], basis = job.echo, job.rem["basis"].upper()
+    if basis is not None and basis.lower() in _UNNAMED:
+        basis = None
     grid = None
     if (
         energy.label == "DFT"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 import re
 from dataclasses import dataclass
 from typing import Any
@@ -92,6 +93,8 @@ def energy(text: Text) -> tuple[float, int]:
     """
     at = text.need_last(_TOTAL, lacking="no total energy")
     value = float(text.exact_text(at + len(_TOTAL), "the total energy"))
+    if not math.isfinite(value):
+        raise text.expected(at, "the total energy")
     summaries = list(_SUMMARY.finditer(text.data, text.start, at))
     if not summaries:
         raise text.error(at, "no SUMMARY before this line", mend=CUT_SHORT)
