@@ -139,13 +139,13 @@ def test_reversal_is_no_extremum(tmp_path: Path) -> None:
 
 
 def test_signs_do_not_depend_on_the_grid(tmp_path: Path) -> None:
-    plan = BRANCHED.at(90.0, 500.0)
+    plan = chain(1, (-60.0, 200.0), (-30.0, 90.0), "1 mol/L")
     one = plan.load(tmp_path).effective()
-    other = plan.at(500.0, 300.0, 90.0).load(tmp_path).effective()
+    other = plan.at(600.0, 300.0, 250.0).load(tmp_path).effective()
     for definition in ("free", "pool", "relaxation"):
         changes = rate_of(one, definition).sign_changes
         assert rate_of(other, definition).sign_changes == changes
-    assert len(rate_of(one, "free").sign_changes) == 2
+    assert len(rate_of(one, "pool").sign_changes) == 1
 
 
 def test_shift_that_brings_the_energy_to_zero(tmp_path: Path) -> None:
@@ -660,11 +660,12 @@ def test_same_call_same_answer(plan: Plan, tmp_path: Path) -> None:
 
 def test_order_of_temperatures_is_kept(tmp_path: Path) -> None:
     """As listed: rising, falling, mixed; each temperature has the values that it has alone."""
+    plan = chain(1, (-60.0, 200.0), (-30.0, 90.0), "1 mol/L")
     grid = [280.0, 420.0, 300.0]
-    listed = BRANCHED.at(*grid).load(tmp_path).effective()
+    listed = plan.at(*grid).load(tmp_path).effective()
     assert listed.temperature_k.tolist() == grid
     for k, t in enumerate(grid):
-        alone = BRANCHED.at(t).load(tmp_path).effective()
+        alone = plan.at(t).load(tmp_path).effective()
         for definition in ("free", "pool", "relaxation"):
             one, other = rate_of(listed, definition), rate_of(alone, definition)
             assert one.rate_constant[k] == pytest.approx(other.rate_constant[0], rel=1e-13)
@@ -674,8 +675,8 @@ def test_order_of_temperatures_is_kept(tmp_path: Path) -> None:
         for name, values in listed.held_mol_l.items():
             assert values[k] == pytest.approx(alone.held_mol_l[name][0], rel=1e-13)
         assert rate_of(listed, "pool").resting_state is not None
-    falling = BRANCHED.at(*sorted(grid, reverse=True)).load(tmp_path).effective()
-    rising = BRANCHED.at(*sorted(grid)).load(tmp_path).effective()
+    falling = plan.at(*sorted(grid, reverse=True)).load(tmp_path).effective()
+    rising = plan.at(*sorted(grid)).load(tmp_path).effective()
     for definition in ("free", "pool", "relaxation"):
         one, other = rate_of(falling, definition), rate_of(rising, definition)
         assert one.rate_constant[::-1] == pytest.approx(other.rate_constant, rel=1e-13)
@@ -721,8 +722,7 @@ def test_from_10_to_5000_kelvin(kind: str, grid: tuple[float, ...], tmp_path: Pa
     assert "nan" not in " ".join(result.words)
 
 
-@pytest.mark.parametrize("t", [40.0])
-def test_rates_a_thousand_orders_of_magnitude_apart(t: float, tmp_path: Path) -> None:
+def test_rates_a_thousand_orders_of_magnitude_apart(tmp_path: Path) -> None:
     """Where singular values leave the range of ordinary numbers: ln k against the reference.
 
     E_a of the relaxation shows that the vectors are right too.
@@ -731,9 +731,9 @@ def test_rates_a_thousand_orders_of_magnitude_apart(t: float, tmp_path: Path) ->
         name: replace(member, enthalpy=member.enthalpy - 250.0) if name.startswith("T") else member
         for name, member in MEMBERS.items()
     }
+    t, digits = 40.0, 4000
     plan = replace(BRANCHED.at(t), species=deep)
     result = plan.load(tmp_path).effective()
-    digits = int(150_000 / t) + 2000
     for definition in ("free", "pool", "relaxation"):
         rate = rate_of(result, definition)
         with mp.workdps(digits):

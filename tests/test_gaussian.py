@@ -136,6 +136,17 @@ def test_out_of_steps_is_read_but_another_error_is_not() -> None:
         read_source(source)
 
 
+def test_testing_for_stability_is_no_optimisation() -> None:
+    calc = read_source(
+        damaged(
+            "hydroxide_nosymm_gen",
+            b"# bp86/gen nosymm\n ------------------",
+            b"# bp86/gen nosymm stable=opt\n ------------------",
+        )
+    )
+    assert (calc.optimised, calc.kind_of_job) == (None, ("energy",))
+
+
 def test_archive_entry_is_compared() -> None:
     calc = read_source(
         damaged("oh_freq_deuterium", b"E(UB3LYP) =    -75.72345", b"E(UB3LYP) =    -75.72355")

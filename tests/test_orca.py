@@ -179,6 +179,17 @@ def test_unconverged_job_beside_the_modes_is_passed_over() -> None:
     assert (calc.energy_label, calc.method) == ("DFT", "BP86")
 
 
+def test_two_outputs_in_one_file_each_have_their_own_input() -> None:
+    one, two = good("water_scs_mp2"), good("water_b2plyp_d3")
+    calc = read_source(Source("x.out", one + two))
+    assert (calc.method, calc.energy_label) == ("RI-SCS-MP2", "SCS-MP2")  # the better of the two
+    assert calc.where["energy_hartree"] == line_of(one + two, b"FINAL SINGLE")
+    other = read_source(
+        Source("x.out", one + two.replace(b"1.442", b"1.443").replace(b"0.763", b"0.764"))
+    )
+    assert (other.method, other.energy_label) == ("B2PLYP", "DFT")
+
+
 def test_line_ends_of_windows_change_nothing() -> None:
     for path in GOOD:
         one = read(path)

@@ -107,7 +107,7 @@ def test_what_no_reader_knows(data: bytes) -> None:
 
 def test_two_claims_name_both(monkeypatch: pytest.MonkeyPatch) -> None:
     name, path = GOOD[0]
-    twice = (*READERS, next(reader for reader in READERS if reader.NAME == name))
+    twice = (*READERS, next(reader for reader in READERS if name == reader.NAME))
     monkeypatch.setattr(readers, "READERS", twice)
     with pytest.raises(ReadError, match=f"the readers {name} and {name} both claim this file"):
         read(path)

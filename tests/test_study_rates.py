@@ -32,6 +32,7 @@ from exact_study import (
 )
 
 from thermo_pp.kinetics.results import EffectiveRate, Rate
+from thermo_pp.study.load import Study
 
 RATE_ERROR, ENERGY_ERROR_KJ_MOL, CONTROL_ERROR, SUM_RULE_ERROR = 1e-10, 1e-8, 1e-8, 1e-9
 
@@ -449,6 +450,38 @@ def test_cycle_that_gives_the_product_off_before_its_end(
     check(replace(CYCLE, species=members, steps=steps, held={**HELD, **held}), tmp_path, ("cycle",))
 
 
+@pytest.mark.parametrize("equation", ["K + S + W = K + P", "K + P = K + S + W"])
+@pytest.mark.parametrize("held", [{}, {"P": "0.01 mol/L"}], ids=["absent", "held"])
+def test_cycle_of_one_step(held: dict[str, str], equation: str, tmp_path: Path) -> None:
+    """The catalyst is its only state: k (1 - exp(-A)), written either way round."""
+    members = {name: CATALYST[name] for name in ("K", "S", "W", "P")}
+    members["T"] = Member("ArCH2O2", 50.0, 300.0)
+    plan = Plan(
+        members,
+        (Line(equation, "through", "T"),),
+        {"catalyst": "K", "product": "P"},
+        {**HELD, **held},
+        (300.0,),
+    )
+    file = tmp_path / "study.toml"
+    file.write_text(plan.text().split("[effective]")[0], encoding="utf-8")
+    study = Study.load(file)  # the question is put to the mechanism itself
+    study = replace(study, mechanism=replace(study.mechanism, catalyst="K", products=("P",)))
+    result = study.effective()
+    cycle = result.rates["cycle"]
+    assert cycle is not None
+    assert result.net_reaction == "S + W = P"
+    reference = Reference(plan, mp.mpf(300.0))
+    exact = float(reference.cycle())
+    assert cycle.rate_constant[0] == pytest.approx(exact, rel=RATE_ERROR)
+    energy = float(arrhenius_energy(plan, 300.0, "cycle"))
+    assert cycle.arrhenius_energy_kj_mol[0] == pytest.approx(energy, abs=ENERGY_ERROR_KJ_MOL)
+    check_sum_rules(plan, cycle)
+    [span] = cycle.approximations
+    assert span.ratio[0] == pytest.approx(1.0, rel=1e-6)
+    assert span.determining_saddle == ("T",)
+
+
 @pytest.mark.parametrize("affinity", [1e-6, 1e-3, 1.0, 600.0, -1e-6, -2.0])
 def test_cycle_near_equilibrium(affinity: float, tmp_path: Path) -> None:
     plan = product_at(CYCLE, 298.15, affinity)
@@ -794,7 +827,7 @@ def random_plan(seed: int, n: int, extra: int) -> Plan:
 
 def test_twenty_intermediates(tmp_path: Path) -> None:
     plan = random_plan(5, 20, 6)
-    check(plan, tmp_path, ALL, with_controls=False, digits=1200)
+    check(plan, tmp_path, ALL, with_controls=False, digits=700)
 
 
 @pytest.mark.parametrize("seed", range(4))

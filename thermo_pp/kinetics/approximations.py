@@ -42,12 +42,15 @@ class Landscape:
         Number of the edge, and where in `inside` it leads, `TARGET` for a product.
     log_flux : shape (b, e)
     log_weight : shape (b, n)
+    from_head : tuple of bool
+        Whether the flux of an edge was taken from its head, the way from its tail being missing.
     """
 
     inside: tuple[int, ...]
     edges: tuple[tuple[int, int, int], ...]
     log_flux: FloatArray
     log_weight: FloatArray
+    from_head: tuple[bool, ...]
 
 
 def landscape(
@@ -56,18 +59,23 @@ def landscape(
     """Return the landscape of the states `inside`."""
     place = {state: k for k, state in enumerate(inside)}
     place |= dict.fromkeys(products, TARGET)
-    edges, logs = [], []
+    edges, logs, from_head = [], [], []
     for number, edge in enumerate(network.edges):
         tail, head = place.get(edge.tail), place.get(edge.head)
-        if tail is None or head is None or tail == head:
+        if tail is None or head is None:
+            continue
+        if tail == head and not network.product_change[number]:
             continue
         edges.append((number, tail, head))
-        if tail != TARGET and network.exists[0][number]:
-            log = network.log_forward[:, number].astype(np.float64) + log_weight[:, tail]
-        else:
+        from_head.append(tail == TARGET or not network.exists[0][number])
+        if from_head[-1]:
             log = network.log_reverse[:, number].astype(np.float64) + log_weight[:, head]
+        else:
+            log = network.log_forward[:, number].astype(np.float64) + log_weight[:, tail]
         logs.append(log)
-    return Landscape(tuple(inside), tuple(edges), np.stack(logs, axis=1), log_weight)
+    return Landscape(
+        tuple(inside), tuple(edges), np.stack(logs, axis=1), log_weight, tuple(from_head)
+    )
 
 
 def pre_equilibrium(scene: Landscape) -> tuple[FloatArray, FloatArray] | None:
@@ -214,7 +222,7 @@ def span_of_cycle(
             there = round(level + shift)
             if there in _LEVELS:
                 pairs.append((a + n * level, b + n * there))
-                lifts.append(float(level))
+                lifts.append(level + shift if scene.from_head[k] else float(level))
                 origin.append(k)
     rates, edges, states = [], [], []
     for row in range(len(affinity)):

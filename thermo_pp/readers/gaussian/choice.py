@@ -210,7 +210,7 @@ def _run(found: list[Step], base: Step, shape: Geometry) -> Run | None:
         done, stopped = step.part.last(_COMPLETED), step.part.last(_STOPPED)
         if done > stopped:
             return Run(True, done)
-        return Run(False, stopped if stopped >= 0 else step.end)
+        return Run(False, stopped) if stopped >= 0 else None
     return None
 
 

@@ -25,10 +25,10 @@ _LIKE_A_HEADING = re.compile(rb"rientation|Standard|Input|orient")
 _ATOMS = re.compile(rb"\n NAtoms= *(\d+) ")
 _CHARGE = re.compile(rb"\n Charge = *(-?\d+) +Multiplicity = *(\d+)")
 _ARCHIVES = (b"\n 1\\1\\", b"\n 1|1|")
-_OPT = re.compile(r"(?<![\w-])(?:f?opt|popt)\b", re.IGNORECASE)
+_OPT = re.compile(r"(?<![\w=(-])(?:f?opt|popt)\b", re.IGNORECASE)  # not stable=opt
 _FREQ = re.compile(r"(?<![\w-])freq\b", re.IGNORECASE)
-_BOTH = re.compile(r"(?<![\w-])(?:g[1-4](?:mp2)?\w*|cbs-\w+|w1\w*)\b", re.IGNORECASE)
-_PATH = re.compile(r"(?<![\w-])(?:bomd|admp|md|trajectory)\b", re.IGNORECASE)
+_BOTH = re.compile(r"(?<![\w/-])(?:g[1-4](?:mp2)?\w*|cbs-\w+|w1\w*)\b", re.IGNORECASE)
+_PATH = re.compile(r"(?<![\w-])(?:bomd|admp|trajectory)\b", re.IGNORECASE)
 _SEVERAL = re.compile(r"(?<![\w-])(?:irc\w*|scan)\b", re.IGNORECASE)
 
 

@@ -7,7 +7,6 @@ which that optimisation ended. Without modes it is the last energy and its geome
 
 from __future__ import annotations
 
-import re
 from dataclasses import dataclass
 
 from thermo_pp.readers.orca import energies, geometry, levels, vibrations
@@ -84,7 +83,7 @@ def choose(text: Text, layout: Layout) -> Chosen:
 
     def energy_of(final: Final) -> tuple[Energy, Asked]:
         job = next(i for i, (start, end) in enumerate(jobs) if final.at < end or i == len(jobs) - 1)
-        inputs = levels.asked(text, job, len(jobs))
+        inputs = levels.asked(text, final.at, job, len(jobs))
         functional = bool(inputs.functionals)
         return energies.energy(layout, final, inputs.method, functional, inputs.states), inputs
 
@@ -175,7 +174,7 @@ def _beside(
 
     Without modes and without several jobs, the last evaluation is what the job was for.
     """
-    several = len(jobs) > 1 or len(layout.all(b"INPUT FILE")) > 1
+    several = len(jobs) > 1 or len(layout.text.all(b"****END OF INPUT****")) > 1
     if not several and not analysed:
         return []
     found = []

@@ -18,8 +18,8 @@ from thermo_pp.readers.text import Text
 RANK = ("MP2", "MP3", "MP4", "CCSD", "CCSD(T)")
 """Labels of correlated energies, worst first; any other correlated one stands between."""
 
-_EXCITED = (b"TD-DFT", b"TDDFT", b"TDA", b"CIS-", b"CIS/", b"ORCA CIS", b"EOM", b"ADC2", b"ADC(2")
-_EXCITED += (b"EXCITED STATES", b"ROCIS", b"ABSORPTION SPECTRUM")
+_EXCITED = (b"TD-DFT", b"TDDFT", b"TDA", b"CIS-", b"CIS/", b"ORCA CIS", b"EOM", b"ADC2", b"ADC(2",
+            b"EXCITED STATES", b"ROCIS", b"ABSORPTION SPECTRUM")  # fmt: skip
 _MULTICONFIGURATION = (b"CASSCF", b"NEVPT2", b"ORCA MRCI", b"CASPT2", b"MRMP", b"ICE-CI", b"ICECI")
 _MULTICONFIGURATION_WORDS = (
     "CASSCF",

@@ -103,9 +103,9 @@ class Asked:
         return block is not None or any(_STATES.search(word) for word in self.words)
 
 
-def asked(text: Text, job: int, jobs: int) -> Asked:
-    """Return what the input asks for in its `job`-th of `jobs` parts."""
-    start = text.find(b"INPUT FILE")
+def asked(text: Text, before: int, job: int, jobs: int) -> Asked:
+    """Return what the last input before an offset asks for, in its `job`-th of `jobs` parts."""
+    start = text.last(b"INPUT FILE", before)
     end = text.find(b"****END OF INPUT****", max(start, 0))
     if start < 0 or end < 0:
         return Asked((), (), max(start, 0), text.part(0, 0))

@@ -15,8 +15,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.readers.orca.layout import Layout
 from thermo_pp.readers.number_table import number_table
+from thermo_pp.readers.orca.layout import Layout
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 FloatArray = NDArray[np.float64]

@@ -7,7 +7,6 @@ the copy of its input and the process in its heading. Its frame is that of the p
 from __future__ import annotations
 
 import re
-from pathlib import PurePath
 
 import numpy as np
 from numpy.typing import NDArray
@@ -28,7 +27,7 @@ def beside(text: Text) -> Source | None:
     """Return the file with the Hessian beside the output, None where there is none or none was asked for."""
     if _WRITE.search(text.data) is None:
         return None
-    stem = PurePath(text.source.name.replace("\\", "/")).name.rpartition(".")[0]
+    stem = text.source.file_name.rpartition(".")[0]
     process = _PROCESS.search(text.data)
     molecules = [match.group(1).decode() for match in _MOLECULE.finditer(text.data)]
     names = [f".{name}" for name in dict.fromkeys([*molecules[:_MOST_NAMES], "default"])]
