@@ -138,11 +138,7 @@ def test_out_of_steps_is_read_but_another_error_is_not() -> None:
 
 def test_testing_for_stability_is_no_optimisation() -> None:
     calc = read_source(
-        damaged(
-            "hydroxide_nosymm_gen",
-            b"# bp86/gen nosymm\n ------------------",
-            b"# bp86/gen nosymm stable=opt\n ------------------",
-        )
+        damaged("hydroxide_nosymm_gen", b"/gen nosymm\n", b"/gen nosymm stable=opt\n")
     )
     assert (calc.optimised, calc.kind_of_job) == (None, ("energy",))
 

@@ -79,7 +79,9 @@ def moves(
                 if ending and products:
                     ways[name].append(Move(number, forward, products[0], products))
                 else:
-                    ways[name] += [Move(number, forward, to) for to in made if to != name]
+                    # a catalyst may give the product in one step, from itself to itself
+                    turns = mechanism.catalyst is not None and products
+                    ways[name] += [Move(number, forward, to) for to in made if to != name or turns]
     return {name: tuple(found) for name, found in ways.items()}
 
 

@@ -180,13 +180,13 @@ def _set(own: Text, atoms: int) -> Vibrations:
 
 def _fine_set(own: Text, atoms: int) -> Vibrations:
     values, lines = _numbers(own, fine=True)
+    order = np.stack([np.tile([1.0, 2.0, 3.0], atoms), np.repeat(np.arange(1.0, atoms + 1), 3)]).T
     columns: list[FloatArray] = []
     for line, width in lines:
         table = own.next_line(own.need(_FINE_TABLE, line, lacking="no displacements"))
         end = _lines_on(own, table, 3 * atoms)
         rows = _array(own, table, end, 3 * atoms, 3 + width)
-        order = np.stack([np.tile([1, 2, 3], atoms), np.repeat(np.arange(1, atoms + 1), 3)])
-        if not np.array_equal(rows[:, :2].T, order):
+        if not (rows[:, :2] == order).all():
             raise own.expected(table, "displacements of all atoms")
         columns.append(rows[:, 3:].reshape(atoms, 3, width).transpose(2, 0, 1))
     return _made(own, values, columns, lines, atoms)
