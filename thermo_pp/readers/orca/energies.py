@@ -236,6 +236,8 @@ def _coupled_cluster(
             "a correlated energy of a kind that is not said (looked for 'Correlation treatment')",
             mend="give the program's whole output",
         )
+    if re.fullmatch(r"[A-Z][A-Z0-9/()+-]*", label) is None:
+        raise part.expected(max(place + 1, part.start), "the name of a correlation treatment")
     label = re.sub(r"^(?:DLPNO|LPNO|RI|RHF|UHF|ROHF)-", "", label)
     found = {match.group(1): match for match in _CC_TOTAL.finditer(part.data, part.start, part.end)}
     match = found.get(b"TOT")
