@@ -57,6 +57,7 @@ _FITTING = "AUX)"
 _EXTRAPOLATED = b"==> CBS <=="
 _DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
 _DISPERSION = re.compile(rb": Empirical Dispersion <=\s+([^\r\n]*)")
+_DISPERSION_ENERGY = re.compile(rb"Empirical Dispersion Energy =[ ]+-?[\d.]*[1-9]")
 _GRIMME = re.compile(r"Grimme's -(\w+)(?: \((.*)\))? Dispersion Correction")
 _DAMPING = {
     None: "",
@@ -274,12 +275,17 @@ def functional(part: Text) -> tuple[str, int]:
     return name.decode("utf-8", "replace").upper(), match.start()
 
 
-def _dispersion(part: Text, at: dict[str, int]) -> str:
-    """Return the name of the dispersion correction; Psi4 prints a block wherever it uses one."""
+def _dispersion(part: Text, at: dict[str, int]) -> str | None:
+    """Return the name of the dispersion correction; Psi4 prints a block wherever it uses one.
+
+    None where its energy is printed without that block.
+    """
     match = _DISPERSION.search(part.data, part.start, part.end)
     if match is not None:
         at["dispersion"] = match.start(1)
         text = match.group(1).decode("utf-8", "replace").strip()
+        if text.startswith("=>"):
+            raise part.expected(at["dispersion"], "the name of the dispersion correction")
         known = _GRIMME.fullmatch(text)
         if known is None or known.group(2) not in _DAMPING:
             return text
@@ -288,7 +294,7 @@ def _dispersion(part: Text, at: dict[str, int]) -> str:
     if nonlocal_part >= 0:
         at["dispersion"] = nonlocal_part
         return "VV10"
-    return "none"
+    return None if _DISPERSION_ENERGY.search(part.data, part.start, part.end) else "none"
 
 
 def _solvent(part: Text, at: dict[str, int]) -> str:
