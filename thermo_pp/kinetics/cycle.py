@@ -9,7 +9,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges
+from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges, log_drive
 from thermo_pp.kinetics.elimination import Label, Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
@@ -113,9 +113,9 @@ def per_cycle(
         if label[0] <= 0:  # no product, or counted the other way round
             return None
         driving = affinity(label)  # 1 - exp(-A), which may be far below zero
-        with np.errstate(divide="ignore"):
-            size = np.log(-np.expm1(-np.abs(driving))) + np.maximum(-driving, 0.0)
-        worth = Scaled.from_log(size) * Scaled.from_float(np.full(b, label[0] / turn[1]))
+        worth = Scaled.from_log(log_drive(driving)) * Scaled.from_float(
+            np.full(b, label[0] / turn[1])
+        )
         return Scaled(worth.mantissa * np.sign(driving), worth.exponent)
 
     ends = Scaled.zeros((b, n, 2))

@@ -124,6 +124,12 @@ class EdgeMatrix:
         return out[0], out[1]
 
 
+def log_drive(affinity: FloatArray) -> FloatArray:
+    """Return ln |1 - exp(-A)| of an affinity A over RT of either sign; -inf at equilibrium."""
+    with np.errstate(divide="ignore"):
+        return np.asarray(np.log(-np.expm1(-np.abs(affinity))) + np.maximum(-affinity, 0.0))
+
+
 def count_end(counts: FloatArray, network: Network, end: End, sign: float) -> None:
     """Add what a state is made of, times `sign`, to counts over the network's species."""
     for name, count in end:

@@ -18,7 +18,16 @@ from thermo_pp.kinetics.free import steady_state
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.net_reaction import net_reaction, write_side
 from thermo_pp.kinetics.products import formation
-from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, SignChange, StepRate
+from thermo_pp.kinetics.results import (
+    NEXT_DECAY_BELOW,
+    NOTABLE,
+    SLOW_SHARE_BELOW,
+    Approximation,
+    EffectiveRate,
+    Rate,
+    SignChange,
+    StepRate,
+)
 from thermo_pp.kinetics.steps import rate_unit
 from thermo_pp.kinetics.windows import LOCATED_K, crossings, scan_temperatures, sign_changes
 from thermo_pp.kinetics.words import words
@@ -32,9 +41,6 @@ if TYPE_CHECKING:
     from thermo_pp.species import SpeciesModel
 
 FloatArray = NDArray[np.float64]
-SLOW_SHARE_BELOW = 0.95
-NEXT_DECAY_BELOW = 20.0
-RETURN_ABOVE = 0.05
 HIGH_PRESSURE_CONTROL = 0.1
 _CONTROLLING = 0.1
 _FARTHEST_SHIFT_KJ_MOL = 100.0
@@ -341,7 +347,7 @@ def _findings(
                 "compare with a measurement that resolves the decays, or with the headline constant",
             )
     if pool is not None and relaxing is not None:
-        differ = np.abs(np.expm1(rates.relaxation.log - rates.pool.rate.log)) > RETURN_ABOVE
+        differ = np.abs(np.expm1(rates.relaxation.log - rates.pool.rate.log)) > NOTABLE
         if differ.any():
             add(
                 "product-returns",

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, count_end, from_edges
+from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, count_end, from_edges, log_drive
 from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled
@@ -69,8 +69,7 @@ def per_free_reactant(
         affinity = np.asarray(extended, dtype=np.float64)
         with np.errstate(over="ignore", divide="ignore"):
             growth = 1.0 / np.expm1(affinity)  # d ln(1 - exp(-A))/dA
-            log_drive = np.log(-np.expm1(-np.abs(affinity))) + np.maximum(-affinity, 0.0)
-        net.append((log_drive, np.sign(affinity), growth, counts))
+        net.append((log_drive(affinity), np.sign(affinity), growth, counts))
     logs = np.stack([partial[:, c].log() + net[c][0] for c in range(k)], axis=1)
     signs = np.stack([net[c][1] for c in range(k)], axis=1)
     top = np.maximum(logs.max(axis=1, keepdims=True), np.finfo(np.float64).min)

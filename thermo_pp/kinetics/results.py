@@ -103,6 +103,12 @@ class Approximation:
 
 WITHIN = 0.05
 """How far the ratio of an approximation may be from 1."""
+SLOW_SHARE_BELOW = 0.95
+"""Share of the slowest decay below which the pool does not decay with one constant."""
+NEXT_DECAY_BELOW = 20.0
+"""The same for the ratio of the next decay constant to the slowest."""
+NOTABLE = 0.05
+"""Relative difference of two definitions that is worth a finding and a sentence."""
 
 
 @dataclass(frozen=True, eq=False)

@@ -12,14 +12,18 @@ from itertools import groupby
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, Window
+from thermo_pp.kinetics.results import (
+    NEXT_DECAY_BELOW,
+    NOTABLE,
+    SLOW_SHARE_BELOW,
+    Approximation,
+    EffectiveRate,
+    Rate,
+    Window,
+)
 from thermo_pp.names import Definition
 
 FloatArray = NDArray[np.float64]
-SLOW_SHARE_BELOW = 0.95
-NEXT_DECAY_BELOW = 20.0
-NOTABLE = 0.05
-"""Relative difference of two definitions that is worth a sentence."""
 
 
 def words(result: EffectiveRate) -> tuple[str, ...]:

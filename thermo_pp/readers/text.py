@@ -9,6 +9,7 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -204,3 +205,10 @@ class Text:
         return ReadError(
             what, where=f"{self.source.name}:{self.line_number(min(at, len(self.data)))}", mend=mend
         )
+
+
+def plain_lines(source: Source) -> Source:
+    """Return the source with plain line ends; line numbers stay what they are."""
+    if b"\r\n" not in source.head:
+        return source
+    return replace(source, data=source.data.replace(b"\r\n", b"\n"), digest=source.sha256)

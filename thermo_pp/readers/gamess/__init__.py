@@ -17,8 +17,7 @@ from typing import NamedTuple
 import numpy as np
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
-from thermo_pp.errors import Finding
-from thermo_pp.names import Severity
+from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.gamess import energies, geometry, options, vibrations
 from thermo_pp.readers.gamess.energies import Energy
 from thermo_pp.readers.gamess.geometry import Geometry
@@ -42,16 +41,6 @@ _STEP = re.compile(rb"^ *NSERCH[:=] *(\d+) +E(?:NERGY)?= *(-?\d+\.\d+)", re.MULT
 _REFERENCE = re.compile(rb"[^\n]*IVIB= *0 IATOM= *0 ICOORD= *0 E= *(-?\d+\.\d+)")
 _DISPLACED = re.compile(rb"^ +COORD +(\d+) +NUCLEAR COORDINATES", re.MULTILINE)
 _SAME_ANGSTROM = 1e-6
-
-
-class Doubt(NamedTuple):
-    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
-
-    code: str
-    severity: Severity
-    at: int
-    what: str
-    mend: str
 
 
 class Taken(NamedTuple):
@@ -112,9 +101,7 @@ def read(source: Source) -> Calculation:
     if banner is not None:
         at["program_version"] = banner.start(1)
     lines = text.line_numbers(
-        at
-        | {f"printed {key}": value[2] for key, value in found.items()}
-        | {f"doubt {index}": doubt.at for index, doubt in enumerate(doubts)}
+        at | {f"printed {key}": value[2] for key, value in found.items()} | doubt_places(doubts)
     )
     kinds = [run.kind] + (["frequencies"] if analysis is not None else [])
     return Calculation(
@@ -145,12 +132,7 @@ def read(source: Source) -> Calculation:
             for key, (digits, unit, _) in found.items()
         },
         where={field: lines[field] for field in at},
-        findings=tuple(
-            Finding(
-                one.code, one.severity, source.name, lines[f"doubt {index}"], one.what, one.mend
-            )
-            for index, one in enumerate(doubts)
-        ),
+        findings=as_findings(doubts, source.name, lines),
     )
 
 

@@ -19,18 +19,16 @@ The formats were checked on Gaussian 16; those of 09 and 03 are written from kno
 from __future__ import annotations
 
 import re
-from dataclasses import replace
-from typing import NamedTuple
 
 import numpy as np
 
-from thermo_pp.errors import Finding
-from thermo_pp.names import Origin, Severity
+from thermo_pp.names import Origin
+from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.gaussian import choice, energies, geometry, levels, steps
 from thermo_pp.readers.gaussian import hessian as hessians
 from thermo_pp.readers.gaussian.choice import Chosen
 from thermo_pp.readers.gaussian.vibrations import PRINTED_CONSTANTS, PRINTED_STEPS
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import Text, plain_lines
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -43,16 +41,6 @@ _BANNER = re.compile(rb"\n Gaussian (\d\d|DV): +\S")
 _VERSION = re.compile(rb"\n Gaussian (\d\d|DV), (Revision [^\s,]+)")
 _FORCE = re.compile(r"(?<![\w-])force\b", re.IGNORECASE)
 _AGREE = 2e-7
-
-
-class Doubt(NamedTuple):
-    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
-
-    code: str
-    severity: Severity
-    at: int
-    what: str
-    mend: str
 
 
 def sniff(head: bytes) -> bool:
@@ -71,7 +59,7 @@ def read(source: Source) -> Calculation:
         An error termination, no normal end, an SCF that did not converge, an energy that is missing
         or not known to this reader, values printed twice that do not agree, anything damaged.
     """
-    text = Text(_plain(source))
+    text = Text(plain_lines(source))
     found = steps.steps(text)
     chosen = choice.choose(text, found)
     shape, energy, modes = chosen.shape, chosen.energy, chosen.modes
@@ -120,7 +108,7 @@ def read(source: Source) -> Calculation:
     lines = text.line_numbers(
         at
         | {f"printed {key}": place for key, (_, _, place) in printed.items()}
-        | {f"doubt {i}": doubt.at for i, doubt in enumerate(doubts)}
+        | doubt_places(doubts)
     )
     return Calculation(
         path=source.name,
@@ -154,20 +142,8 @@ def read(source: Source) -> Calculation:
             for key, (digits, unit, _) in printed.items()
         },
         where={field: lines[field] for field in at},
-        findings=tuple(
-            Finding(
-                doubt.code, doubt.severity, source.name, lines[f"doubt {i}"], doubt.what, doubt.mend
-            )
-            for i, doubt in enumerate(doubts)
-        ),
+        findings=as_findings(doubts, source.name, lines),
     )
-
-
-def _plain(source: Source) -> Source:
-    """Return the source with plain line ends; line numbers stay what they are."""
-    if b"\r\n" not in source.head:
-        return source
-    return replace(source, data=source.data.replace(b"\r\n", b"\n"), digest=source.sha256)
 
 
 def _kinds(chosen: Chosen) -> tuple[str, ...]:

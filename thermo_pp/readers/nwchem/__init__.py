@@ -16,14 +16,13 @@ Formats were checked on NWChem 7.0.2.
 from __future__ import annotations
 
 import re
-from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.names import Severity
 from thermo_pp.readers import joined_hessian
+from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.nwchem import geometry, joined, levels, states, tasks, vibrations
 from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
@@ -45,16 +44,6 @@ _BANNER = re.compile(
 )
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
-
-
-class Doubt(NamedTuple):
-    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
-
-    code: str
-    severity: Severity
-    at: int
-    what: str
-    mend: str
 
 
 def sniff(head: bytes) -> bool:
@@ -120,7 +109,7 @@ def read(source: Source) -> Calculation:
         at["program_version"] = banner.start(1)
     thermochemistry = {} if modes is None else modes.thermochemistry
     places = at | {f"printed {key}": value[2] for key, value in thermochemistry.items()}
-    lines = text.line_numbers(places | {f"doubt {i}": doubt.at for i, doubt in enumerate(doubts)})
+    lines = text.line_numbers(places | doubt_places(doubts))
     level = None if taken is None else taken.level
     real = shape.real if shape.ghosts else slice(None)
     return Calculation(
@@ -152,13 +141,7 @@ def read(source: Source) -> Calculation:
         if modes is None
         else modes.printed({k: lines[f"printed {k}"] for k in thermochemistry}),
         where={field: lines[field] for field in at},
-        findings=tuple(
-            Finding(
-                doubt.code, doubt.severity, source.name, lines[f"doubt {i}"], doubt.what, doubt.mend
-            )
-            for i, doubt in enumerate(doubts)
-        )
-        + extra,
+        findings=as_findings(doubts, source.name, lines) + extra,
     )
 
 

@@ -19,15 +19,12 @@ The formats were checked on ORCA 5.0; those of 4 and 6 are written from knowledg
 from __future__ import annotations
 
 import re
-from dataclasses import replace
-from typing import NamedTuple
 
-from thermo_pp.errors import Finding
-from thermo_pp.names import Severity
+from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.orca import choice, geometry, layout, levels
 from thermo_pp.readers.orca.choice import Chosen
 from thermo_pp.readers.orca.vibrations import PRINTED_CONSTANTS, PRINTED_STEPS
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import Text, plain_lines
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -39,16 +36,6 @@ LOOKS_FOR = "'* O   R   C   A *'"
 _BANNER = b"* O   R   C   A *"
 _VERSION = re.compile(rb"Program Version +(\d\S*)")
 _GRADIENT = b"CARTESIAN GRADIENT"
-
-
-class Doubt(NamedTuple):
-    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
-
-    code: str
-    severity: Severity
-    at: int
-    what: str
-    mend: str
 
 
 def sniff(head: bytes) -> bool:
@@ -65,7 +52,7 @@ def read(source: Source) -> Calculation:
         No normal end, an SCF that did not converge, no energy, values printed twice that do not
         agree, anything damaged; names file and line.
     """
-    text = Text(_plain(source))
+    text = Text(plain_lines(source))
     layout.check_end(text)
     marks = layout.Layout(text)
     chosen = choice.choose(text, marks)
@@ -91,7 +78,7 @@ def read(source: Source) -> Calculation:
     lines = text.line_numbers(
         at
         | {f"printed {key}": place for key, (_, _, place) in printed.items()}
-        | {f"doubt {i}": doubt.at for i, doubt in enumerate(doubts)}
+        | doubt_places(doubts)
     )
     return Calculation(
         path=source.name,
@@ -121,20 +108,8 @@ def read(source: Source) -> Calculation:
             for key, (digits, unit, _) in printed.items()
         },
         where={field: lines[field] for field in at},
-        findings=tuple(
-            Finding(
-                doubt.code, doubt.severity, source.name, lines[f"doubt {i}"], doubt.what, doubt.mend
-            )
-            for i, doubt in enumerate(doubts)
-        ),
+        findings=as_findings(doubts, source.name, lines),
     )
-
-
-def _plain(source: Source) -> Source:
-    """Return the source with plain line ends; line numbers stay what they are."""
-    if b"\r\n" not in source.head:
-        return source
-    return replace(source, data=source.data.replace(b"\r\n", b"\n"), digest=source.sha256)
 
 
 def _excited_modes(chosen: Chosen) -> bool:

@@ -21,8 +21,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
-from thermo_pp.errors import Finding
-from thermo_pp.names import Origin, Severity
+from thermo_pp.names import Origin
+from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.line_marks import first_match, last_match, matches
 from thermo_pp.readers.qchem import energies, jobs, levels, vibrations
 from thermo_pp.readers.qchem.energies import Energy
@@ -43,16 +43,6 @@ _CONVERGED = re.compile(
     rb"[ \t]*\*\*[ \t]+(?:OPTIMIZATION|TRANSITION STATE|TS|SADDLE POINT) CONVERGED"
 )
 _FINAL = re.compile(rb"^[ \t]*Final energy is[ \t]+", re.MULTILINE)
-
-
-class Doubt(NamedTuple):
-    """A finding whose line is not counted yet: code, severity, offset, what, mend."""
-
-    code: str
-    severity: Severity
-    at: int
-    what: str
-    mend: str
 
 
 class Modes(NamedTuple):
@@ -117,9 +107,7 @@ def read(source: Source) -> Calculation:
         at["program_version"] = named.start()
     found = {} if modes is None else modes.found
     lines = text.line_numbers(
-        at
-        | {f"printed {key}": value[2] for key, value in found.items()}
-        | {f"doubt {index}": doubt.at for index, doubt in enumerate(doubts)}
+        at | {f"printed {key}": value[2] for key, value in found.items()} | doubt_places(doubts)
     )
     return Calculation(
         path=source.name,
@@ -148,12 +136,7 @@ def read(source: Source) -> Calculation:
         kind_of_job=_kinds(all_jobs),
         printed=vibrations.as_printed(found, {key: lines[f"printed {key}"] for key in found}),
         where={field: lines[field] for field in at},
-        findings=tuple(
-            Finding(
-                one.code, one.severity, source.name, lines[f"doubt {index}"], one.what, one.mend
-            )
-            for index, one in enumerate(doubts)
-        ),
+        findings=as_findings(doubts, source.name, lines),
     )
 
 
