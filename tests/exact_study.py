@@ -38,6 +38,8 @@ class Member:
     entropy: float  # J/mol/K
     heat_capacity: float | None = None
     standard_state: str | None = None
+    ground: float | None = None  # kJ/mol
+    imaginary: float | None = None  # cm^-1
 
     @property
     def atoms(self) -> dict[str, int]:
@@ -53,6 +55,7 @@ class Line:
     key: str  # through, barrier, rate, arrhenius
     value: Any
     viscosity: Any = None
+    tunnelling: str | None = None  # the reference itself knows none
 
     def sides(self) -> tuple[dict[str, int], dict[str, int]]:
         found = []
@@ -98,6 +101,10 @@ class Plan:
             ]
             if member.heat_capacity is not None:
                 lines.append(f'heat_capacity = "{member.heat_capacity!r} J/mol/K"')
+            if member.ground is not None:
+                lines.append(f'ground = "{member.ground!r} kJ/mol"')
+            if member.imaginary is not None:
+                lines.append(f'imaginary_mode = "{member.imaginary!r} cm^-1"')
             if member.standard_state is not None:
                 lines.append(f'standard_state = "{member.standard_state}"')
         for step in self.steps:
@@ -107,6 +114,8 @@ class Plan:
                 factor, power, energy = step.value
                 value = f'{{ A = "{factor}", n = {power!r}, E = "{energy!r} kJ/mol" }}'
             lines.append(f"{step.key} = {value}")
+            if step.tunnelling is not None:
+                lines.append(f'tunnelling = "{step.tunnelling}"')
             if step.viscosity is not None:
                 pairs = [[t, f"{eta!r} Pa*s"] for t, eta in step.viscosity]
                 lines.append(f"viscosity = {pairs}")

@@ -30,7 +30,7 @@ CASES = {  # name: (changes, where, what, mend)
         "[treatment] low_mods",
         "unknown key 'low_mods'",
         "did you mean 'low_modes'? known keys: standard_state, phase, low_modes, onset, rotor, "
-        "masses, imaginary, frequency_scale, zero_point_scale, enantiopure",
+        "masses, imaginary, frequency_scale, zero_point_scale, tunnelling, tunnelling_scale, enantiopure",
     ),
     "unknown key of a species": (
         [('entropy = "256 J/mol/K"', 'entrophy = "256 J/mol/K"')],
@@ -38,7 +38,7 @@ CASES = {  # name: (changes, where, what, mend)
         "unknown key 'entrophy'",
         "did you mean 'entropy'? known keys: frequencies, energy, charge, multiplicity, levels, "
         "symmetry_number, isotopes, imaginary, standard_state, composition, enthalpy, entropy, "
-        "heat_capacity, temperature, relative_to",
+        "heat_capacity, temperature, ground, imaginary_mode, relative_to",
     ),
     "unknown table": (
         [("[effective]", "[efective]")],
@@ -172,11 +172,17 @@ CASES = {  # name: (changes, where, what, mend)
         'write barrier = "none" for a step without one, through = "..." for its saddle point, or '
         "declare a saddle point species with enthalpy and entropy",
     ),
-    "tunnelling": (
-        [('through = "TS1"', 'through = "TS1"\ntunnelling = "eckart"')],
-        "[steps.3] tunnelling",
-        "tunnelling other than \"none\" is not taken yet, found 'eckart'",
-        'leave the key out, or write tunnelling = "none"',
+    "tunnelling without a saddle point": (
+        [('"A + W = C"\nbarrier = "none"', '"A + W = C"\nbarrier = "none"\ntunnelling = "wigner"')],
+        "[steps.2] tunnelling",
+        "the step 'A + W = C' has no saddle point, so nothing tunnels",
+        'name the saddle point (through = "TS"), or take the key out',
+    ),
+    "imaginary mode of a minimum": (
+        [("[species.A]", '[species.A]\nimaginary_mode = "1200 cm^-1"')],
+        "[species.A] imaginary_mode",
+        "a minimum has no imaginary mode",
+        "take the key out, or let a step go through this species",
     ),
     "conformers": (
         [("[species.A]", '[species.A]\nconformers = [{ frequencies = "a.out" }]')],

@@ -30,7 +30,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
 INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
-        "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates",
+        "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (

@@ -72,6 +72,8 @@ masses = "program"
 imaginary = { real_below = "30 cm^-1" }
 frequency_scale = 1
 zero_point_scale = 0.98
+tunnelling = "wigner"
+tunnelling_scale = 0.97
 enantiopure = false
 [conditions]
 temperatures = { from = "280 K", to = 360, step = "5 K" }
@@ -93,6 +95,8 @@ enthalpy = "-1 kJ/mol"
 entropy = -1.0
 heat_capacity = "30 J/mol/K"
 temperature = "25 degC"
+ground = "-3 kJ/mol"
+imaginary_mode = "1200 cm^-1"
 relative_to = { A = 1 }
 [[steps]]
 equation = "A = W"
@@ -161,7 +165,7 @@ def test_the_schema_is_a_schema_and_takes_the_bundled_study() -> None:
         ('title = "Loss', 'colour = "red"\ntitle = "Loss'),
         ('through = "TS1"', ""),
         ('through = "TS1"', 'through = "TS1"\nbarrier = "none"'),
-        ('through = "TS1"', 'through = "TS1"\ntunnelling = "eckart"'),
+        ('through = "TS1"', 'through = "TS1"\ntunnelling = "bell"'),
         ('composition = "SO3"', 'composition = "SO3"\nfrequencies = "a.out"'),
         ('composition = "SO3"', ""),
         ('entropy = "256 J/mol/K"', ""),

@@ -109,6 +109,8 @@ class Treatment:
         refuses all.
     frequency_scale, zero_point_scale : float
         Factors of the wavenumbers in thermal terms and in the zero-point energy.
+    tunnelling_scale : float
+        Factor of the imaginary wavenumber in tunnelling corrections.
     enantiopure : bool
         Only one hand of a chiral structure is present.
     """
@@ -122,6 +124,7 @@ class Treatment:
     real_below_cm: float | None = None
     frequency_scale: float = 1.0
     zero_point_scale: float = 1.0
+    tunnelling_scale: float = 1.0
     enantiopure: bool = False
 
 

@@ -29,6 +29,7 @@ from thermo_pp.kinetics.results import (
     StepRate,
 )
 from thermo_pp.kinetics.steps import rate_unit
+from thermo_pp.kinetics.tunnelling_share import with_tunnelling
 from thermo_pp.kinetics.windows import LOCATED_K, crossings, scan_temperatures, sign_changes
 from thermo_pp.kinetics.words import words
 from thermo_pp.names import DEFINITIONS, Definition, Severity
@@ -94,6 +95,7 @@ def _effective(study: StudyLike) -> EffectiveRate:
         found[definition] = _rate(
             definition, rates, changes[definition], approximations[definition]
         )
+    found = with_tunnelling(found, rates)
     steps = _step_rates(rates)
     findings = (
         *study.findings,
@@ -293,6 +295,9 @@ def _step_rates(rates: Rates) -> tuple[StepRate, ...]:
                 reverse_unit=rate_unit(step.products),
                 reversibility=reversibility[number],
                 limited=rates.steps.limited[:, number],
+                tunnelling=step.tunnelling,
+                log_tunnelling=rates.steps.log_kappa[:, number],
+                tunnelling_energy_kj_mol=rates.steps.kappa_energy_j_mol[:, number] / 1000.0,
             )
         )
     return tuple(found)

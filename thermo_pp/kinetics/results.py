@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.names import Definition
+from thermo_pp.names import Definition, Tunnelling
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -167,6 +167,10 @@ class Rate:
     branching : mapping of str to shape (t,), or None
         Where several products compete: per pool the share of each in the decay, per free reactant
         its net formation over the rate.
+    log_tunnelling : shape (t,) or None
+        ln of the rate constant over the one without tunnelling; None where no step tunnels.
+    tunnelling_energy_kj_mol : shape (t,) or None
+        Tunnelling's share in the Arrhenius energy.
     """
 
     definition: Definition
@@ -188,6 +192,8 @@ class Rate:
     inverse_mean_time: FloatArray | None = None
     headline: FloatArray | None = None
     branching: Mapping[str, FloatArray] | None = None
+    log_tunnelling: FloatArray | None = None
+    tunnelling_energy_kj_mol: FloatArray | None = None
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -208,6 +214,11 @@ class StepRate:
         none.
     limited : shape (t,), bool
         Whether the collision or diffusion limit has more than half a share.
+    tunnelling : {"none", "wigner", "eckart"}
+    log_tunnelling : shape (t,)
+        ln of the factor of the saddle point's rate constant, before a limit is joined.
+    tunnelling_energy_kj_mol : shape (t,)
+        Its share in the Arrhenius energy.
     """
 
     equation: str
@@ -217,6 +228,9 @@ class StepRate:
     reverse_unit: str
     reversibility: FloatArray
     limited: NDArray[np.bool_]
+    tunnelling: Tunnelling
+    log_tunnelling: FloatArray
+    tunnelling_energy_kj_mol: FloatArray
 
     def __post_init__(self) -> None:
         freeze_arrays(self)

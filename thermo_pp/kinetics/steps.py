@@ -18,8 +18,9 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import MOLAR, Held, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.rates import collision_rate, diffusion_rate, log_frequency_factor
+from thermo_pp.kinetics.tunnelling import tunnelling
 from thermo_pp.mechanism import Mechanism, Step
-from thermo_pp.species import SpeciesModel
+from thermo_pp.species import SaddleMember, SpeciesModel
 from thermo_pp.units import BAR_PA, GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
@@ -40,12 +41,18 @@ class Energetics:
         G/RT.
     slope_j_mol : shape (b, s)
         -T^2 d(G/T)/dT.
+    grounds_kj_mol : mapping of str to float or None
+        Electronic and zero-point energy of each.
+    saddle_members : mapping of str to tuple of SaddleMember
+        What every saddle point consists of.
     """
 
     names: tuple[str, ...]
     temperature_k: FloatArray
     reduced: ExtendedArray
     slope_j_mol: FloatArray
+    grounds_kj_mol: Mapping[str, float | None]
+    saddle_members: Mapping[str, tuple[SaddleMember, ...]]
 
     def index(self, name: str) -> int:
         """Return the column of a species."""
@@ -71,7 +78,11 @@ def energetics(models: Mapping[str, SpeciesModel], temperature_k: FloatArray) ->
         reduced[:, column] = (enthalpy - extended * entropy) / rt + to_molar
         change = MOLAR.log_ratio_slope - own.log_ratio_slope
         slope[:, column] = thermo.slope_enthalpy_kj_mol * 1000.0 - GAS_J_MOL_K * t * change
-    return Energetics(tuple(models), t, reduced, slope)
+    grounds = {name: model.ground_kj_mol for name, model in models.items()}
+    members = {
+        name: model.saddle_members(t) for name, model in models.items() if model.kind == "saddle"
+    }
+    return Energetics(tuple(models), t, reduced, slope, grounds, members)
 
 
 @dataclass(frozen=True, eq=False)
@@ -89,6 +100,9 @@ class ElementaryRates:
     log_forward, log_reverse : shape (b, n)
         ln of the rate constants in (mol/L)^(1-m) s^-1.
     limited : shape (b, n), bool
+    log_kappa, kappa_energy_j_mol : shape (b, n)
+        ln of the tunnelling factor of the saddle point and R T^2 times its temperature derivative,
+        both in the effective saddle already; 0 where nothing tunnels.
     findings : tuple of Finding
     """
 
@@ -98,6 +112,8 @@ class ElementaryRates:
     log_forward: FloatArray
     log_reverse: FloatArray
     limited: NDArray[np.bool_]
+    log_kappa: FloatArray
+    kappa_energy_j_mol: FloatArray
     findings: tuple[Finding, ...]
 
 
@@ -120,7 +136,7 @@ def elementary_rates(
     ------
     StudyError
         A limit that cannot be worked out: no viscosity, no radius, a viscosity table that does not
-        cover the temperatures.
+        cover the temperatures; a tunnelling correction that has no meaning.
     """
     t = energies.temperature_k
     b, n = len(t), len(mechanism.steps)
@@ -128,6 +144,7 @@ def elementary_rates(
     slope = np.empty((b, n))
     forward, reverse = np.empty((b, n)), np.empty((b, n))
     limited = np.zeros((b, n), np.bool_)
+    log_kappa, kappa_energy = np.zeros((b, n)), np.zeros((b, n))
     findings: list[Finding] = []
     frequency = log_frequency_factor(t)
     rt = GAS_J_MOL_K * t
@@ -139,6 +156,15 @@ def elementary_rates(
             column = energies.index(step.through)
             saddle = energies.reduced[:, column]
             saddle_slope = energies.slope_j_mol[:, column]
+            if step.tunnelling != "none":
+                log_kappa[:, k], kappa_energy[:, k] = tunnelling(
+                    step,
+                    energies.saddle_members[step.through],
+                    energies.grounds_kj_mol,
+                    t,
+                    treatment.tunnelling_scale,
+                )
+                saddle, saddle_slope = saddle - log_kappa[:, k], saddle_slope + kappa_energy[:, k]
             if limit is not None:
                 saddle, saddle_slope, limited[:, k] = _join(
                     saddle, saddle_slope, limit, frequency, rt
@@ -154,7 +180,9 @@ def elementary_rates(
         forward[:, k] = frequency + left[0] - saddle
         reverse[:, k] = frequency + right[0] - saddle
     names = tuple(step.through or step.equation for step in mechanism.steps)
-    return ElementaryRates(names, reduced, slope, forward, reverse, limited, tuple(findings))
+    return ElementaryRates(
+        names, reduced, slope, forward, reverse, limited, log_kappa, kappa_energy, tuple(findings)
+    )
 
 
 Side = tuple[ExtendedArray, FloatArray]

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
-from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate
+from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate, StepRate
 from thermo_pp.names import DEFINITIONS, Definition, EnergyUnit
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import kelvin
@@ -73,6 +73,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
         *standard,
         *(Column("slow share"), Column("next decay ratio")),
         *(Column("inverse mean time", "s⁻¹"), Column("headline", "s⁻¹"), Column("resting state")),
+        *(Column("ln k of tunnelling"), energy_column("Ea of tunnelling", unit)),
     ]
     rows: list[list[Cell]] = [
         [
@@ -84,6 +85,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
             *(cell_at(rate.slow_share, k), cell_at(rate.next_decay_ratio, k)),
             *(cell_at(rate.inverse_mean_time, k), cell_at(rate.headline, k)),
             None if rate.resting_state is None else rate.resting_state[k],
+            *tunnelling_cells(rate, k, unit),
         ]
         for name, rate in rates.items()
         for k in every
@@ -113,7 +115,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
             [*head, Column("approximation"), Column("k", "s⁻¹"), Column("ratio")],
             approximations,
         ),
-        steps_table(effective, every, people=False),
+        steps_table(effective, every, unit, people=False),
     ]
 
 
@@ -123,8 +125,11 @@ def rates_of(effective: EffectiveRate) -> dict[Definition, Rate]:
     return {name: rate for name, rate in found.items() if rate is not None}
 
 
-def steps_table(effective: EffectiveRate, shown: Sequence[int], *, people: bool) -> Table:
-    """Return the steps; units stand in cells, because they differ from step to step."""
+def steps_table(
+    effective: EffectiveRate, shown: Sequence[int], unit: EnergyUnit, *, people: bool
+) -> Table:
+    """Return the steps; units of k stand in cells, because they differ from step to step."""
+    tunnels = any(step.tunnelling != "none" for step in effective.steps)
     columns = [
         *([] if people else [Column("T", "K")]),
         Column("Step"),
@@ -134,6 +139,7 @@ def steps_table(effective: EffectiveRate, shown: Sequence[int], *, people: bool)
         Column("unit"),
         Column("reversibility", general=3),
         Column("limited"),
+        *([] if not tunnels else [Column("ln κ", decimals=4), energy_column("Eₐ of κ", unit)]),
     ]
     rows: list[list[Cell]] = [
         [
@@ -145,12 +151,23 @@ def steps_table(effective: EffectiveRate, shown: Sequence[int], *, people: bool)
             unit_heading(step.reverse_unit),
             defined(step.reversibility[k]),
             "yes" if step.limited[k] else "no",
+            *([] if not tunnels else tunnelling_cells(step, k, unit)),
         ]
         for k in shown
         for step in effective.steps
     ]
     title = f"Steps at {kelvin(effective.temperature_k[shown[0]])}" if people else "steps"
     return Table(title, columns, rows)
+
+
+def tunnelling_cells(found: Rate | StepRate, k: int, unit: EnergyUnit) -> list[Cell]:
+    """Return tunnelling's share in ln k and in the Arrhenius energy at temperature `k`."""
+    if found.log_tunnelling is None or found.tunnelling_energy_kj_mol is None:
+        return [None, None]
+    return [
+        defined(found.log_tunnelling[k]),
+        in_unit(found.tunnelling_energy_kj_mol[k], unit),
+    ]
 
 
 def activation_cells(activation: Activation | None, k: int, unit: EnergyUnit) -> list[Cell]:
@@ -194,7 +211,8 @@ def _rate(rate: Rate) -> dict[str, Any]:
     if rate.definition == "pool":
         for name in ("slow_share", "next_decay_ratio", "inverse_mean_time", "headline"):
             keys[name] = getattr(rate, name)
-    for name in ("resting_state", "populations", "branching"):
+    optional = ("log_tunnelling", "tunnelling_energy_kj_mol")
+    for name in ("resting_state", "populations", "branching", *optional):
         if getattr(rate, name) is not None:
             keys[name] = getattr(rate, name)
     return keys

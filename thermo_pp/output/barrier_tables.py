@@ -10,7 +10,13 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import Treatment
 from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, Window
 from thermo_pp.names import Definition, EnergyUnit
-from thermo_pp.output.barrier import activation_cells, cell_at, rates_of, steps_table
+from thermo_pp.output.barrier import (
+    activation_cells,
+    cell_at,
+    rates_of,
+    steps_table,
+    tunnelling_cells,
+)
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
 from thermo_pp.output.tables import (
     ENTROPY_UNIT,
@@ -69,7 +75,7 @@ def tables(
     blocks += _approximations(rates, effective)
     for name, rate in rates.items():
         blocks.append(_control(rate, effective, f"Control of the {TITLES[name].lower()}", unit))
-    blocks.append(steps_table(effective, [usual(effective.temperature_k)], people=True))
+    blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     return [*blocks, " ".join(notes), " ".join(effective.words), SAFETY]
 
@@ -92,6 +98,8 @@ def _rate(
             Column("S‡°", ENTROPY_UNIT, r"$S^{\ddagger\circ}$", decimals=1),
             energy_column("G‡°", unit, r"$G^{\ddagger\circ}$"),
         ]
+    if rate.log_tunnelling is not None:
+        columns += [Column("ln κ", decimals=4), energy_column("Eₐ of κ", unit)]
     rows: list[list[Cell]] = []
     for k, temperature in enumerate(effective.temperature_k):
         row: list[Cell] = [
@@ -100,7 +108,9 @@ def _rate(
             in_unit(rate.arrhenius_energy_kj_mol[k], unit),
             *activation_cells(rate.activation, k, unit),
         ]
-        rows.append(row if standard is None else row + activation_cells(standard, k, unit))
+        row += [] if standard is None else activation_cells(standard, k, unit)
+        row += [] if rate.log_tunnelling is None else tunnelling_cells(rate, k, unit)
+        rows.append(row)
     return Table(title, columns, rows, notes)
 
 
@@ -124,6 +134,8 @@ def _about(rate: Rate, effective: EffectiveRate) -> list[str]:
     notes = []
     if rate.standard_activation is not None:
         notes.append(f"H‡°, S‡° and G‡° are against the standard state {effective.standard_state}.")
+    if rate.log_tunnelling is not None:
+        notes.append("κ: the rate constant over the one without tunnelling.")
     notes += [
         f"Eₐ changes its sign at {change.temperature_k:.2f} K, the {change.kind} of the rate."
         for change in rate.sign_changes

@@ -52,6 +52,7 @@ def treatment_keys(treatment: Treatment) -> dict[str, Any]:
         "imaginary": "refuse" if below is None else {"real_below_cm": below},
         "frequency_scale": treatment.frequency_scale,
         "zero_point_scale": treatment.zero_point_scale,
+        "tunnelling_scale": treatment.tunnelling_scale,
         "enantiopure": treatment.enantiopure,
     }
 

@@ -36,6 +36,8 @@ def of_treatment(treatment: Treatment) -> str:
         parts.append(f"wavenumbers times {treatment.frequency_scale:g}")
     if treatment.zero_point_scale != 1.0:
         parts.append(f"zero-point energies times {treatment.zero_point_scale:g}")
+    if treatment.tunnelling_scale != 1.0:
+        parts.append(f"imaginary wavenumbers in tunnelling times {treatment.tunnelling_scale:g}")
     if treatment.real_below_cm is not None:
         parts.append(f"imaginary modes below {treatment.real_below_cm:g} cm⁻¹ taken as real")
     if treatment.enantiopure:

@@ -13,11 +13,17 @@ from thermo_pp.species.direct import (
     thermochemistry,
 )
 from thermo_pp.species.electronic import parse_levels
-from thermo_pp.species.result import SpeciesModel, Thermochemistry, low_mode_spread_kj_mol
+from thermo_pp.species.result import (
+    SaddleMember,
+    SpeciesModel,
+    Thermochemistry,
+    low_mode_spread_kj_mol,
+)
 from thermo_pp.species.structure import Structure
 
 __all__ = [
     "Declared",
+    "SaddleMember",
     "SpeciesModel",
     "Structure",
     "Thermochemistry",

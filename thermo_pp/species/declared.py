@@ -14,7 +14,7 @@ from thermo_pp.conditions import StandardState
 from thermo_pp.data.elements import NUMBERS
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.names import DEFAULT_LOW_MODES, DEFAULT_TEMPERATURE_K, Kind, LowModes
-from thermo_pp.species.result import SpeciesModel, Thermochemistry
+from thermo_pp.species.result import SaddleMember, SpeciesModel, Thermochemistry
 from thermo_pp.units import GAS_J_MOL_K
 
 _CHARGE = re.compile(r"(?:\^(\d+)([+-])|([+-]+))$")
@@ -43,6 +43,10 @@ class Declared:
     heat_capacity_j_mol_k : float or None
     temperature_k : float
         T0, where enthalpy and entropy hold.
+    ground_own_kj_mol : float or None
+        Enthalpy at 0 K on the same zero as `enthalpy_kj_mol`.
+    imaginary_cm : float or None
+        Size of a saddle point's imaginary wavenumber, above 0.
     reference : tuple of (SpeciesModel, int)
         What ``relative_to`` names, resolved: species and how many of each.
     files : tuple of str
@@ -59,6 +63,8 @@ class Declared:
     standard_state: StandardState
     heat_capacity_j_mol_k: float | None = None
     temperature_k: float = DEFAULT_TEMPERATURE_K
+    ground_own_kj_mol: float | None = None
+    imaginary_cm: float | None = None
     reference: tuple[tuple[SpeciesModel, int], ...] = ()
     files: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = field(default=())
@@ -75,6 +81,8 @@ class Declared:
         standard_state: StandardState,
         heat_capacity_j_mol_k: float | None = None,
         temperature_k: float = DEFAULT_TEMPERATURE_K,
+        ground_kj_mol: float | None = None,
+        imaginary_cm: float | None = None,
         charge: int | None = None,
         reference: tuple[tuple[SpeciesModel, int], ...] = (),
         where: str = "",
@@ -85,6 +93,8 @@ class Declared:
         ----------
         composition : str
             A formula with the charge in it: ``"H3O+"``.
+        ground_kj_mol : float or None
+            Enthalpy at 0 K on the same zero as `enthalpy_kj_mol`.
         charge : int or None
             Beside a formula without one.
         reference : tuple of (SpeciesModel, int)
@@ -131,9 +141,34 @@ class Declared:
             standard_state=standard_state,
             heat_capacity_j_mol_k=heat_capacity_j_mol_k,
             temperature_k=temperature_k,
+            ground_own_kj_mol=ground_kj_mol,
+            imaginary_cm=imaginary_cm,
             reference=reference,
             files=tuple(dict.fromkeys(file for model, _ in reference for file in model.files)),
             findings=tuple(notes),
+        )
+
+    @property
+    def ground_kj_mol(self) -> float | None:
+        """Enthalpy at 0 K, that of the reference included; None where either is not known."""
+        total = self.ground_own_kj_mol
+        for model, count in self.reference:
+            other = model.ground_kj_mol
+            total = None if total is None or other is None else total + count * other
+        return total
+
+    def saddle_members(self, temperature_k: ArrayLike) -> tuple[SaddleMember, ...]:
+        """Return what tunnelling needs of a saddle point; nothing for a minimum."""
+        if self.kind != "saddle":
+            return ()
+        found = self.at(temperature_k)
+        return (
+            SaddleMember(
+                found.gibbs_kj_mol,
+                found.slope_enthalpy_kj_mol,
+                self.imaginary_cm,
+                self.ground_kj_mol,
+            ),
         )
 
     def at(

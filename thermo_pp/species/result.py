@@ -197,6 +197,26 @@ _NONE = np.empty(0)
 _NO_MODES = ModeTable(_NONE, _NONE, (), _NONE, _NONE, _NONE, _NONE, _NONE)
 
 
+@dataclass(frozen=True, eq=False)
+class SaddleMember:
+    """One structure that a saddle point consists of, as tunnelling needs it.
+
+    Attributes
+    ----------
+    gibbs_kj_mol, slope_enthalpy_kj_mol : shape (t,)
+        G and -T^2 d(G/T)/dT, in one standard state for all members of a saddle point.
+    imaginary_cm : float or None
+        Size of the imaginary wavenumber, above 0, not scaled; None where it is not known.
+    ground_kj_mol : float or None
+        Electronic and zero-point energy; None where it is not known.
+    """
+
+    gibbs_kj_mol: FloatArray
+    slope_enthalpy_kj_mol: FloatArray
+    imaginary_cm: float | None
+    ground_kj_mol: float | None
+
+
 class SpeciesModel(Protocol):
     """What every kind of species offers, whether read from outputs or declared."""
 
@@ -223,6 +243,13 @@ class SpeciesModel(Protocol):
     @property
     def files(self) -> tuple[str, ...]:
         """The outputs it stands on."""
+
+    @property
+    def ground_kj_mol(self) -> float | None:
+        """Electronic and zero-point energy, of the lowest member; None where it is not known."""
+
+    def saddle_members(self, temperature_k: ArrayLike) -> tuple[SaddleMember, ...]:
+        """Return the structures of a saddle point, none for a minimum."""
 
     def at(
         self,

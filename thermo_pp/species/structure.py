@@ -28,7 +28,7 @@ from thermo_pp.species.electronic import electronic_energy, electronic_levels, s
 from thermo_pp.species.ideal_gas import IdealGas, shares, totals
 from thermo_pp.species.masses import chosen_masses, mass_findings
 from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
-from thermo_pp.species.result import Thermochemistry
+from thermo_pp.species.result import SaddleMember, Thermochemistry
 from thermo_pp.species.rows import mode_table, part_rows
 from thermo_pp.units import GAS_J_MOL_K, HARTREE_KJ_MOL
 
@@ -90,6 +90,27 @@ class Structure:
     def imaginary_cm(self) -> float | None:
         """Wavenumber of a saddle point's reaction coordinate, negative; None for a minimum."""
         return self.modes.imaginary_cm
+
+    @property
+    def ground_kj_mol(self) -> float:
+        """Electronic and zero-point energy, as the soft-mode treatment counts it."""
+        part = shares(np.ones(1), self.gas, self.treatment, self.treatment.low_modes)
+        zero_point = float(totals(part).zero_point_j_mol)
+        return self.energy_hartree * HARTREE_KJ_MOL + zero_point / 1000.0
+
+    def saddle_members(self, temperature_k: ArrayLike) -> tuple[SaddleMember, ...]:
+        """Return what tunnelling needs of a saddle point; nothing for a minimum."""
+        if self.modes.imaginary_cm is None:
+            return ()
+        found = self.at(temperature_k)
+        return (
+            SaddleMember(
+                found.gibbs_kj_mol,
+                found.slope_enthalpy_kj_mol,
+                -self.modes.imaginary_cm,
+                self.ground_kj_mol,
+            ),
+        )
 
     @classmethod
     def make(

@@ -15,6 +15,7 @@ from thermo_pp.names import (
     Masses,
     Phase,
     Rotor,
+    Tunnelling,
 )
 
 Quantity = str | float
@@ -82,6 +83,17 @@ class TreatmentKeys(Keys, frozen=True, kw_only=True):
         Positive | UnsetType,
         Meta(
             description="factor of the wavenumbers in the zero-point energy; "
+            "the same as `frequency_scale` unless given",
+        ),
+    ] = UNSET
+    tunnelling: Annotated[
+        Tunnelling,
+        Meta(description="of every step with a saddle point that does not say it itself"),
+    ] = "none"
+    tunnelling_scale: Annotated[
+        Positive | UnsetType,
+        Meta(
+            description="factor of the imaginary wavenumber in tunnelling; "
             "the same as `frequency_scale` unless given",
         ),
     ] = UNSET
@@ -202,6 +214,20 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
             "given; matters only with `heat_capacity` / K"
         ),
     ] = UNSET
+    ground: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="enthalpy of a declared species at 0 K, on the same zero as `enthalpy`; only "
+            'tunnelling = "eckart" needs it / kJ/mol'
+        ),
+    ] = UNSET
+    imaginary_mode: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="size of the imaginary wavenumber of a declared saddle point; only tunnelling "
+            "needs it / cm^-1"
+        ),
+    ] = UNSET
     relative_to: Annotated[
         dict[str, int] | UnsetType,
         Meta(
@@ -253,7 +279,13 @@ class StepKeys(Keys, frozen=True, kw_only=True):
             "temperature and viscosity / Pa s",
         ),
     ] = UNSET
-    tunnelling: Annotated[Literal["none"], Meta(description='"none": no tunnelling')] = "none"
+    tunnelling: Annotated[
+        Tunnelling | UnsetType,
+        Meta(
+            description='"none", "wigner", or "eckart" with the heights from both sides of this '
+            "step, zero-point energies included; as in `[treatment]` unless given"
+        ),
+    ] = UNSET
 
 
 class EffectiveKeys(Keys, frozen=True, kw_only=True):
@@ -330,10 +362,6 @@ NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
     ("species", "conformers"): (
         "several conformers of a species are not taken yet",
         'name one structure: frequencies = "..." and, if need be, energy = "..."',
-    ),
-    ("steps", "tunnelling"): (
-        'tunnelling other than "none" is not taken yet',
-        'leave the key out, or write tunnelling = "none"',
     ),
     ("steps", "barrier"): (
         "a barrier of a stated height is not taken yet",

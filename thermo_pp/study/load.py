@@ -97,7 +97,7 @@ class Study:
             data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
         keys = check_keys(data, file)
         own = make_treatment(keys.treatment, file)
-        steps = make_steps(keys.steps, own.phase, file)
+        steps = make_steps(keys.steps, keys.treatment, file)
         check_names(steps, keys.species, where=file)
         question = make_question(keys, steps, file)
         conditions = make_conditions(keys.conditions, steps, own.phase, temperatures, file)

@@ -21,7 +21,7 @@ from thermo_pp.sources import open_source
 from thermo_pp.species import Declared, SpeciesModel, Structure, solution_finding
 from thermo_pp.study.check import place
 from thermo_pp.study.keys import SpeciesKeys, StudyKeys
-from thermo_pp.study.parts import given, real_below
+from thermo_pp.study.parts import above_zero, given, real_below
 from thermo_pp.units import quantity
 
 _READ_ONLY = ("energy", "multiplicity", "levels", "symmetry_number", "isotopes", "imaginary")
@@ -30,6 +30,8 @@ _DECLARED_ONLY = (
     "entropy",
     "heat_capacity",
     "temperature",
+    "ground",
+    "imaginary_mode",
     "relative_to",
 )
 
@@ -281,10 +283,26 @@ def _declared(
             if temperature is None
             else made.temperature(temperature, where=f"{where} temperature")
         ),
+        ground_kj_mol=None if given(member.ground) is None else number("ground", "kJ/mol"),
+        imaginary_cm=_imaginary_mode(member, kind, where),
         charge=given(member.charge),
         reference=tuple(reference),
         where=where,
     )
+
+
+def _imaginary_mode(member: SpeciesKeys, kind: Kind, where: str) -> float | None:
+    """Return the size of a declared saddle point's imaginary wavenumber, cm^-1."""
+    value = given(member.imaginary_mode)
+    if value is None:
+        return None
+    if kind != "saddle":
+        raise StudyError(
+            "a minimum has no imaginary mode",
+            where=f"{where} imaginary_mode",
+            mend="take the key out, or let a step go through this species",
+        )
+    return above_zero(value, "1/cm", f"{where} imaginary_mode")
 
 
 def _calculation(maker: _Maker, name: str, where: str) -> Calculation:

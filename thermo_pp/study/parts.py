@@ -12,7 +12,7 @@ from thermo_pp import conditions as made
 from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import StudyError
 from thermo_pp.mechanism import Step, parse_equation
-from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase
+from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase, Tunnelling
 from thermo_pp.nearest import suggestion
 from thermo_pp.study.check import place
 from thermo_pp.study.keys import (
@@ -40,6 +40,7 @@ def make_treatment(keys: TreatmentKeys, file: str) -> Treatment:
     """Turn ``[treatment]`` into a Treatment."""
     scale = keys.frequency_scale
     zero_point_scale = keys.zero_point_scale
+    tunnelling_scale = keys.tunnelling_scale
     return Treatment(
         standard_state=made.standard_state(
             keys.standard_state, where=place(file, "treatment", "standard_state")
@@ -52,6 +53,7 @@ def make_treatment(keys: TreatmentKeys, file: str) -> Treatment:
         real_below_cm=real_below(keys.imaginary, place(file, "treatment", "imaginary.real_below")),
         frequency_scale=scale,
         zero_point_scale=scale if isinstance(zero_point_scale, UnsetType) else zero_point_scale,
+        tunnelling_scale=scale if isinstance(tunnelling_scale, UnsetType) else tunnelling_scale,
         enantiopure=keys.enantiopure,
     )
 
@@ -109,12 +111,12 @@ def make_conditions(
     return Conditions(kelvin, held, keys.driven)
 
 
-def make_steps(keys: Sequence[StepKeys], phase: Phase, file: str) -> tuple[Step, ...]:
-    """Turn ``[[steps]]`` into Steps."""
-    return tuple(_step(step, number, phase, file) for number, step in enumerate(keys))
+def make_steps(keys: Sequence[StepKeys], treatment: TreatmentKeys, file: str) -> tuple[Step, ...]:
+    """Turn ``[[steps]]`` into Steps; phase and tunnelling are those of ``[treatment]``."""
+    return tuple(_step(step, number, treatment, file) for number, step in enumerate(keys))
 
 
-def _step(keys: StepKeys, number: int, phase: Phase, file: str) -> Step:
+def _step(keys: StepKeys, number: int, treatment: TreatmentKeys, file: str) -> Step:
     where = place(file, "steps", number)
     reactants, products = parse_equation(
         keys.equation, where=place(file, "steps", number, "equation")
@@ -140,11 +142,25 @@ def _step(keys: StepKeys, number: int, phase: Phase, file: str) -> Step:
         barrierless=not isinstance(keys.barrier, UnsetType),
         rate=_rate(keys, sum(reactants.values()), number, file),
         viscosity=_viscosity(keys.viscosity, place(file, "steps", number, "viscosity")),
-        tunnelling=keys.tunnelling,
+        tunnelling=_tunnelling(keys, treatment.tunnelling, where),
         where=where,
     )
-    _check_viscosity(step, phase)
+    _check_viscosity(step, treatment.phase)
     return step
+
+
+def _tunnelling(keys: StepKeys, usual: Tunnelling, where: str) -> Tunnelling:
+    """Return the step's own word on tunnelling, else that of ``[treatment]``; a saddle point tunnels."""
+    has_saddle = not isinstance(keys.through, UnsetType)
+    if isinstance(keys.tunnelling, UnsetType):
+        return usual if has_saddle else "none"
+    if keys.tunnelling != "none" and not has_saddle:
+        raise StudyError(
+            f"the step {keys.equation!r} has no saddle point, so nothing tunnels",
+            where=f"{where} tunnelling",
+            mend='name the saddle point (through = "TS"), or take the key out',
+        )
+    return keys.tunnelling
 
 
 def rate_unit(molecules: int) -> str:
