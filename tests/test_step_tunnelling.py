@@ -213,7 +213,7 @@ def test_shares_stand_in_tables_and_json(tmp_path: Path) -> None:
     assert answer["steps"][1]["tunnelling"] == "eckart"
     assert answer["treatment"]["tunnelling_scale"] == 1.0
     shown = [
-        [column.name for column in block.columns]
+        [column.quantity for column in block.columns]
         for block in barrier_tables.tables(result, study.treatment, "kJ/mol")
         if isinstance(block, Table)
     ]
