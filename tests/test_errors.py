@@ -37,7 +37,8 @@ CASES = {  # name: (changes, where, what, mend)
         "[species.A] entrophy",
         "unknown key 'entrophy'",
         "did you mean 'entropy'? known keys: frequencies, energy, charge, multiplicity, levels, "
-        "symmetry_number, isotopes, imaginary, standard_state, composition, enthalpy, entropy, "
+        "symmetry_number, isotopes, rotational_constants, nuclear_spins, imaginary, "
+        "standard_state, composition, enthalpy, entropy, "
         "heat_capacity, temperature, ground, imaginary_mode, relative_to",
     ),
     "unknown table": (

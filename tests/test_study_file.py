@@ -87,6 +87,8 @@ multiplicity = 1
 levels = [[5, "0 cm^-1"], [3, 158.265]]
 symmetry_number = 2
 isotopes = { 3 = "D", C = "13C" }
+rotational_constants = { B = "59.3219 cm^-1", D = "0.04599 cm^-1" }
+nuclear_spins = "normal"
 imaginary = { real_below = "30 cm^-1" }
 standard_state = "1 mol/L"
 [species.W]

@@ -80,6 +80,11 @@ class RigidRotor:
         classical rotor.
     spin_weights : (float, float)
         Weights of even and odd levels in the level sum, their mean 1.
+    distortion_k : float
+        Centrifugal distortion h c D/k of a linear rotor, K.
+    spin_shares : (float, float) or None
+        Shares of the molecules in even and in odd levels where these do not turn into each other;
+        None at equilibrium.
     """
 
     kind: RotorKind
@@ -87,6 +92,8 @@ class RigidRotor:
     symmetry_number: int = 1
     quantum: bool = False
     spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS
+    distortion_k: float = 0.0
+    spin_shares: tuple[float, float] | None = None
 
     def __post_init__(self) -> None:
         if len(self.theta_k) != {"atom": 0, "linear": 1, "nonlinear": 3}[self.kind]:
@@ -170,13 +177,16 @@ def linear_rotation_levels(
     theta_k: ArrayLike,
     symmetry_number: ArrayLike = 1.0,
     spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS,
+    distortion_k: float = 0.0,
+    spin_shares: tuple[float, float] | None = None,
 ) -> Share:
     """Return the share of a linear rotor as the sum over its levels.
 
-    q = (1/sigma) sum_J w_J (2J+1) exp(-J(J+1) Theta/T)
+    q = (1/sigma) sum_J w_J (2J+1) exp(-[J(J+1) Theta - J^2 (J+1)^2 Delta]/T)
 
-    The symmetry number divides the whole sum, and w_J is 1 but for H2, D2 and T2, where without it
-    H of H2 at 298 K would be 0.03 kJ/mol too low (even and odd levels in equilibrium).
+    With distortion the sum ends where the levels would begin to fall again. The symmetry number
+    divides the whole sum, and w_J is 1 but for H2, D2 and T2, where without it H of H2 at 298 K
+    would be 0.03 kJ/mol too low (even and odd levels in equilibrium).
 
     Parameters
     ----------
@@ -184,6 +194,11 @@ def linear_rotation_levels(
     theta_k, symmetry_number : broadcast against it
     spin_weights : (float, float)
         w_J of even and odd J, their mean 1: the entropy of the nuclear spins themselves is left out.
+    distortion_k : float
+        Delta = h c D/k, K, not below 0.
+    spin_shares : (float, float) or None
+        Where even and odd levels do not turn into each other, the share of the molecules in each,
+        together 1: S is that of the mixture, its entropy of mixing included.
 
     Returns
     -------
@@ -192,9 +207,24 @@ def linear_rotation_levels(
     t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
     sigma = _positive(symmetry_number, "symmetry number")
     widest = float(np.max(t, initial=1.0)) / float(np.min(theta, initial=1e6))
-    j = np.arange(math.ceil(math.sqrt(_LEVELS_BELOW * widest)) + 3, dtype=np.float64)
+    count = math.ceil(math.sqrt(_LEVELS_BELOW * widest)) + 3
+    if distortion_k > 0.0:
+        # level j lies above level j - 1 where j^2 is below Theta/(2 Delta)
+        count = min(count, int(math.sqrt(float(np.min(theta)) / (2.0 * distortion_k))) + 1)
+    j = np.arange(count, dtype=np.float64)
+    square = j * (j + 1.0)
+    levels = theta[..., np.newaxis] * square - distortion_k * square**2
     degeneracy = (2.0 * j + 1.0) * np.where(j % 2.0 == 0.0, *spin_weights)
-    return _levels(t, degeneracy, theta[..., np.newaxis] * (j * (j + 1.0)), sigma)
+    if spin_shares is None:
+        return _levels(t, degeneracy, levels, sigma)
+    mixture = [np.zeros(()), np.zeros(()), np.zeros(())]
+    for parity, share in enumerate(spin_shares):
+        if share == 0.0:
+            continue
+        one = _levels(t, degeneracy[parity::2], levels[..., parity::2], sigma)
+        mixture = [whole + share * part for whole, part in zip(mixture, one, strict=True)]
+        mixture[1] = mixture[1] - GAS_J_MOL_K * share * math.log(share)
+    return Share(*mixture)
 
 
 def nonlinear_rotation(
@@ -255,6 +285,8 @@ def rotation(
     symmetry_number: ArrayLike,
     quantum: bool,
     spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS,
+    distortion_k: float = 0.0,
+    spin_shares: tuple[float, float] | None = None,
 ) -> Share:
     """Return the share of rigid rotors of one kind; nothing for atoms.
 
@@ -269,6 +301,8 @@ def rotation(
         Level sum (linear) or quantum correction (nonlinear) in place of the classical rotor.
     spin_weights : (float, float)
         Of even and odd levels in the level sum.
+    distortion_k, spin_shares
+        Of the level sum, see `linear_rotation_levels`.
 
     Returns
     -------
@@ -280,7 +314,9 @@ def rotation(
         return Share(none, none, none)
     if kind == "linear":
         if quantum:
-            return linear_rotation_levels(t, theta[..., 0], symmetry_number, spin_weights)
+            return linear_rotation_levels(
+                t, theta[..., 0], symmetry_number, spin_weights, distortion_k, spin_shares
+            )
         return linear_rotation(t, theta[..., 0], symmetry_number)
     classical = nonlinear_rotation(t, theta, symmetry_number)
     if not quantum:

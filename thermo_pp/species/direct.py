@@ -24,6 +24,7 @@ from thermo_pp.names import (
     Kind,
     LowModes,
     Masses,
+    NuclearSpins,
     Phase,
     Rotor,
 )
@@ -52,9 +53,11 @@ def thermochemistry(
     energy: Calculation | None = None,
     charge: int | None = None,
     multiplicity: int | None = None,
-    levels: Sequence[Sequence[Any]] | None = None,
+    levels: Sequence[Sequence[Any]] | str | None = None,
     symmetry_number: int | None = None,
     isotopes: Mapping[Any, str] | None = None,
+    rotational_constants: Mapping[str, Any] | None = None,
+    nuclear_spins: NuclearSpins | None = None,
     name: str | None = None,
 ) -> Thermochemistry:
     """Compute H, S and G of one calculation.
@@ -82,7 +85,7 @@ def thermochemistry(
         None: exactly one imaginary mode means saddle, with a note.
     energy : Calculation or None
         A single point of the same structure whose energy is taken.
-    charge, multiplicity, levels, symmetry_number, isotopes
+    charge, multiplicity, levels, symmetry_number, isotopes, rotational_constants, nuclear_spins
         See `Structure.make`.
     name : str or None
         For messages; the file's name unless given.
@@ -125,6 +128,8 @@ def thermochemistry(
         levels=levels,
         symmetry_number=symmetry_number,
         isotopes=isotopes,
+        rotational_constants=rotational_constants,
+        nuclear_spins=nuclear_spins,
         where=call,
     )
     found = structure.at(_temperatures(temperature_k, where=f"{call} temperature_k"))

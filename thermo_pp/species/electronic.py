@@ -14,6 +14,8 @@ from thermo_pp.units import quantity
 Levels = tuple[tuple[int, float], ...]
 """(degeneracy, cm^-1 above the lowest) of each level."""
 
+TABLE = "table"
+"""The user's word that the levels of `data.levels` are taken."""
 _LEVELS_MEND = (
     'write levels = [[5, "0 cm^-1"], [3, "158.265 cm^-1"]]: degeneracy, energy above the lowest'
 )
@@ -62,13 +64,13 @@ def electronic_levels(
     calculation: Calculation,
     charge: int,
     declared: int | None,
-    levels: Sequence[Sequence[Any]] | None,
+    levels: Sequence[Sequence[Any]] | str | None,
     name: str,
     where: str,
 ) -> tuple[Levels, int | None, tuple[Finding, ...]]:
     """Return the electronic levels, the multiplicity and what is doubtful about them."""
     spin = calculation.multiplicity if declared is None else declared
-    if levels is not None:
+    if levels is not None and levels != TABLE:
         return parse_levels(levels, where=where), spin, ()
     if spin is None:
         raise StudyError(
@@ -97,6 +99,16 @@ def electronic_levels(
             )
         )
     known = KNOWN_LEVELS.get((calculation.formula, charge, spin))
+    if levels == TABLE:
+        if known is None:
+            there = ", ".join(f"{formula} ({spin})" for formula, _, spin in KNOWN_LEVELS)
+            raise StudyError(
+                f"{name}: the table has no electronic levels of {calculation.formula}, charge "
+                f"{charge}, multiplicity {spin}",
+                where=where,
+                mend=f"state them, {_LEVELS_MEND}; the table has {there}",
+            )
+        return known, spin, tuple(notes)
     if known is not None:
         text = ", ".join(f'[{g}, "{energy:g} cm^-1"]' for g, energy in known)
         notes.append(
@@ -106,7 +118,7 @@ def electronic_levels(
                 file=calculation.path,
                 line=None,
                 what=f"{name}: electronic degeneracy {spin}, but low electronic levels are known",
-                mend=f"to use them write levels = [{text}]",
+                mend=f'to use them write levels = "table", or levels = [{text}]',
             )
         )
     return ((spin, 0.0),), spin, tuple(notes)

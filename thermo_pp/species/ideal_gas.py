@@ -34,6 +34,10 @@ class IdealGas:
         The level sum or quantum correction replaces the classical rotor.
     spin_weights : (float, float)
         Of even and odd levels in the level sum.
+    distortion_k : float
+        Centrifugal distortion of a linear rotor, K.
+    spin_shares : (float, float) or None
+        Shares of even and odd levels that do not turn into each other; None at equilibrium.
     wavenumbers_cm : shape (m,) or (b, 1, m)
         Real modes only, above 0.
     degeneracies, levels_cm : shape (l,) or (b, 1, l)
@@ -52,6 +56,8 @@ class IdealGas:
     levels_cm: FloatArray
     hands: ArrayLike = 1
     spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS
+    distortion_k: float = 0.0
+    spin_shares: tuple[float, float] | None = None
 
     def __post_init__(self) -> None:
         seal(self)
@@ -121,6 +127,8 @@ def shares(
             gas.symmetry_number,
             gas.quantum_rotor,
             gas.spin_weights,
+            gas.distortion_k,
+            gas.spin_shares,
         ),
         vibration(
             temperature_k,

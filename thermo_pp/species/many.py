@@ -86,6 +86,8 @@ def _blocks(structures: Sequence[Structure]) -> Iterable[list[int]]:
             gas.rotor,
             gas.quantum_rotor,
             gas.spin_weights,
+            gas.distortion_k,
+            gas.spin_shares,
             gas.wavenumbers_cm.size,
             gas.levels_cm.size,
             structure.treatment,
@@ -114,4 +116,6 @@ def _stacked(gases: Sequence[IdealGas]) -> IdealGas:
         levels_cm=stack("levels_cm"),
         hands=stack("hands"),
         spin_weights=gases[0].spin_weights,
+        distortion_k=gases[0].distortion_k,
+        spin_shares=gases[0].spin_shares,
     )

@@ -104,6 +104,10 @@ def _rotor_words(gas: IdealGas) -> str:
     formula = better if gas.quantum_rotor else "classical"
     if gas.quantum_rotor and gas.spin_weights != NO_SPIN_WEIGHTS:
         formula += " with nuclear-spin weights"
+    if gas.distortion_k > 0.0:
+        formula += ", centrifugal distortion"
+    if gas.spin_shares is not None:
+        formula += ", {:.0%} in even and {:.0%} in odd levels".format(*gas.spin_shares)
     return f"{gas.rotor}, {formula}, symmetry number {np.max(gas.symmetry_number):.0f}"
 
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import dataclasses
 from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
@@ -14,21 +13,16 @@ from numpy.typing import ArrayLike, NDArray
 from thermo_pp.conditions import StandardState, Treatment
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.formulas.partition import (
-    NO_SPIN_WEIGHTS,
-    SPIN_WEIGHTS,
-    RigidRotor,
-    quantum_rotor_changes,
-    rigid_rotor,
-)
+from thermo_pp.formulas.partition import RigidRotor
 from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
-from thermo_pp.names import Kind, LowModes, Origin
+from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin
 from thermo_pp.records import Calculation
 from thermo_pp.species.electronic import electronic_energy, electronic_levels, settled_charge
 from thermo_pp.species.ideal_gas import IdealGas, shares, totals
 from thermo_pp.species.masses import chosen_masses, mass_findings
 from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
 from thermo_pp.species.result import SaddleMember, Thermochemistry
+from thermo_pp.species.rotors import settled_rotor
 from thermo_pp.species.rows import mode_table, part_rows
 from thermo_pp.units import GAS_J_MOL_K, HARTREE_KJ_MOL
 
@@ -123,9 +117,11 @@ class Structure:
         energy: Calculation | None = None,
         charge: int | None = None,
         multiplicity: int | None = None,
-        levels: Sequence[Sequence[Any]] | None = None,
+        levels: Sequence[Sequence[Any]] | str | None = None,
         symmetry_number: int | None = None,
         isotopes: Mapping[Any, str] | None = None,
+        rotational_constants: Mapping[str, Any] | None = None,
+        nuclear_spins: NuclearSpins | None = None,
         where: str = "",
     ) -> Structure:
         """Check one calculation and settle its masses, modes, rotor, symmetry and levels.
@@ -143,13 +139,17 @@ class Structure:
             pairing, here only that it has the same atoms.
         charge, multiplicity : int or None
             Where the output does not say.
-        levels : sequence of (degeneracy, energy) or None
+        levels : sequence of (degeneracy, energy), "table" or None
             Electronic levels, cm^-1 or a text with a unit, the lowest at 0; they replace the
-            multiplicity.
+            multiplicity. "table": those of `data.levels`.
         symmetry_number : int or None
             In place of the one found.
         isotopes : mapping or None
             Atom number (from 1) or element -> isotope.
+        rotational_constants : mapping or None
+            ``B`` and, if need be, ``D`` of a linear molecule: its levels are summed.
+        nuclear_spins : one of `names.NUCLEAR_SPINS` or None
+            Of H2, D2 and T2: at equilibrium unless given.
         where : str
             File and key of the study, or option, for messages.
 
@@ -182,10 +182,17 @@ class Structure:
                     mend="give the order of the rotation group, 1 or more",
                 )
             sigma = symmetry_number
-        rotor = rigid_rotor(masses, calculation.positions_angstrom, sigma)
-        if treatment.rotor == "auto":
-            rotor = dataclasses.replace(rotor, spin_weights=_spin_weights(calculation, masses))
-            rotor = dataclasses.replace(rotor, quantum=quantum_rotor_changes(rotor))
+        rotor, doubts = settled_rotor(
+            calculation,
+            masses,
+            sigma,
+            treatment.rotor,
+            rotational_constants,
+            nuclear_spins,
+            name,
+            where,
+        )
+        notes += doubts
         hands = 2 if symmetry.chiral and not treatment.enantiopure else 1
         if isotopes is None:
             notes += _symmetry_findings(calculation, symmetry, sigma, name)
@@ -209,6 +216,8 @@ class Structure:
                 levels_cm=np.array([level[1] for level in own_levels]),
                 hands=hands,
                 spin_weights=rotor.spin_weights,
+                distortion_k=rotor.distortion_k,
+                spin_shares=rotor.spin_shares,
             ),
             modes=modes,
             rotor=rotor,
@@ -310,12 +319,6 @@ class Structure:
                 )
             )
         return tuple(found)
-
-
-def _spin_weights(calculation: Calculation, masses: FloatArray) -> tuple[float, float]:
-    """Return the weights of even and odd rotational levels: of H2, D2 and T2 not the same."""
-    like = list(calculation.numbers) == [1, 1] and round(masses[0]) == round(masses[1])
-    return SPIN_WEIGHTS.get(round(masses[0]), NO_SPIN_WEIGHTS) if like else NO_SPIN_WEIGHTS
 
 
 def _symmetry_findings(

@@ -13,6 +13,7 @@ from thermo_pp.names import (
     DEFAULT_STANDARD_STATE,
     LowModes,
     Masses,
+    NuclearSpins,
     Phase,
     Rotor,
     Tunnelling,
@@ -137,6 +138,13 @@ class ConditionsKeys(Keys, frozen=True, kw_only=True):
     ] = False
 
 
+class RotationalKeys(Keys, frozen=True, kw_only=True):
+    """Rotational constants of a linear molecule: levels B J(J+1) - D J²(J+1)²."""
+
+    B: Annotated[Quantity, Meta(description="rotational constant of the ground state / cm^-1")]
+    D: Annotated[Quantity, Meta(description="centrifugal distortion / cm^-1")] = 0.0
+
+
 class SpeciesKeys(Keys, frozen=True, kw_only=True):
     """One species, saddle points included: read from outputs, or declared."""
 
@@ -159,10 +167,11 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
         Meta(description="spin multiplicity, where the output does not say it"),
     ] = UNSET
     levels: Annotated[
-        Levels | UnsetType,
+        Levels | Literal["table"] | UnsetType,
         Meta(
             description="electronic levels in place of the multiplicity, "
-            '`[[5, "0 cm^-1"], [3, "158.265 cm^-1"]]` (degeneracy, energy / cm^-1)',
+            '`[[5, "0 cm^-1"], [3, "158.265 cm^-1"]]` (degeneracy, energy / cm^-1); "table" takes '
+            "those of a few atoms and radicals that come with the program",
         ),
     ] = UNSET
     symmetry_number: Annotated[
@@ -174,6 +183,17 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
         Meta(
             description="atom (counted from 1, in the order of the output) or element -> isotope: "
             '`{ 3 = "D", C = "13C" }`; needs a Hessian'
+        ),
+    ] = UNSET
+    rotational_constants: Annotated[
+        RotationalKeys | UnsetType,
+        Meta(description="of a linear molecule, whose levels are summed then"),
+    ] = UNSET
+    nuclear_spins: Annotated[
+        NuclearSpins | UnsetType,
+        Meta(
+            description='of H2, D2 and T2: "equilibrium" unless given; "normal", "ortho" or "para" '
+            "where the kinds do not turn into each other"
         ),
     ] = UNSET
     imaginary: Annotated[

@@ -6,6 +6,7 @@ import os
 from collections.abc import Collection, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
+from typing import Any
 
 from thermo_pp import conditions as made
 from thermo_pp.audit import audit_alone
@@ -24,7 +25,16 @@ from thermo_pp.study.keys import SpeciesKeys, StudyKeys
 from thermo_pp.study.parts import above_zero, given, real_below
 from thermo_pp.units import quantity
 
-_READ_ONLY = ("energy", "multiplicity", "levels", "symmetry_number", "isotopes", "imaginary")
+_READ_ONLY = (
+    "energy",
+    "multiplicity",
+    "levels",
+    "symmetry_number",
+    "isotopes",
+    "rotational_constants",
+    "nuclear_spins",
+    "imaginary",
+)
 _DECLARED_ONLY = (
     "enthalpy",
     "entropy",
@@ -232,8 +242,15 @@ def _structure(
         levels=given(member.levels),
         symmetry_number=given(member.symmetry_number),
         isotopes=given(member.isotopes),
+        rotational_constants=_rotational_constants(member),
+        nuclear_spins=given(member.nuclear_spins),
         where=where,
     )
+
+
+def _rotational_constants(member: SpeciesKeys) -> dict[str, Any] | None:
+    constants = given(member.rotational_constants)
+    return None if constants is None else {"B": constants.B, "D": constants.D}
 
 
 def _declared(
