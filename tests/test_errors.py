@@ -46,7 +46,7 @@ CASES = {  # name: (changes, where, what, mend)
         "[efective]",
         "unknown key 'efective'",
         "did you mean 'effective'? known keys: title, outputs, treatment, conditions, species, "
-        "steps, effective, paths",
+        "steps, effective, isotopologues, paths",
     ),
     "unknown choice": (
         [("[conditions]", '[treatment]\nphase = "gsa"\n[conditions]')],

@@ -19,7 +19,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("names", "errors", "nearest", "units"),  # 1
     ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
     ("readers",),  # 3
-    ("collect", "species"),  # 4
+    ("collect", "species", "isotopes"),  # 4
     ("pairing", "audit", "grouping"),  # 5
     ("graph", "loops", "paths", "profile", "kinetics"),  # 6
     (),  # 7: measured
@@ -31,6 +31,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
+        "isotope_ratios",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
@@ -42,8 +43,9 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
         "survey", "species", "profile", "barrier", "barrier_tables",
+        "isotopes",
     ),
-    "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier"),
+    "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier", "isotopes"),
 }  # fmt: skip
 PURE = ("names", "errors", "units")
 """Modules that --help may import: without numpy at module level."""

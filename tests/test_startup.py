@@ -28,7 +28,7 @@ def loaded(code: str) -> set[str]:
 
 
 @pytest.mark.parametrize(
-    "command", [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"]]
+    "command", [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"], ["isotopes"]]
 )
 def test_help_loads_nothing_heavy(command: list[str]) -> None:
     arguments = [*command, "--help"]

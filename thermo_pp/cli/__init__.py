@@ -9,6 +9,7 @@ import click
 from thermo_pp import __version__
 from thermo_pp.cli.barrier import barrier
 from thermo_pp.cli.draft import draft
+from thermo_pp.cli.isotopes import isotopes
 from thermo_pp.cli.profile import profile
 from thermo_pp.cli.species import species
 from thermo_pp.cli.survey import survey
@@ -42,5 +43,5 @@ def main() -> None:
     """
 
 
-for _command in (survey, species, draft, profile, barrier):
+for _command in (survey, species, draft, profile, barrier, isotopes):
     main.add_command(_command)

@@ -46,10 +46,34 @@ def chosen_masses(
     StudyError
         An isotope of another element or not known, an atom or element that is not there.
     """
-    numbers = calculation.numbers
-    chosen = np.array(calculation.masses_u)
+    chosen = calculation.masses_u
     if masses == "average":
-        chosen = np.array([AVERAGE_MASSES[z] for z in numbers])
+        chosen = np.array([AVERAGE_MASSES[z] for z in calculation.numbers])
+    return substituted(chosen, calculation.numbers, isotopes, where=where)
+
+
+def substituted(
+    masses_u: FloatArray,
+    numbers: NDArray[np.int64],
+    isotopes: Mapping[Any, str] | None,
+    *,
+    where: str,
+) -> FloatArray:
+    """Return the masses with isotopes in the place of some; errors as `chosen_masses`.
+
+    Parameters
+    ----------
+    masses_u : shape (n,)
+    numbers : shape (n,)
+        Atomic numbers.
+    isotopes : mapping or None
+    where : str
+
+    Returns
+    -------
+    shape (n,)
+    """
+    chosen = np.array(masses_u)
     entries = [(_atoms(key, numbers, where), str(value)) for key, value in (isotopes or {}).items()]
     for (atoms, of_element), label in sorted(entries, key=lambda entry: not entry[0][1]):
         element, mass = isotope_mass(label, where=where)

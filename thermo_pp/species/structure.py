@@ -18,7 +18,7 @@ from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
 from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin
 from thermo_pp.records import Calculation
 from thermo_pp.species.electronic import electronic_energy, electronic_levels, settled_charge
-from thermo_pp.species.ideal_gas import IdealGas, shares, totals
+from thermo_pp.species.ideal_gas import IdealGas, seal, shares, totals
 from thermo_pp.species.masses import chosen_masses, mass_findings
 from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
 from thermo_pp.species.result import SaddleMember, Thermochemistry
@@ -48,6 +48,8 @@ class Structure:
         The frequency job.
     energy_hartree : float
         Of the frequency job, or of the single point given.
+    masses_u : shape (n,)
+        Of the atoms, isotopes included.
     gas : IdealGas
         The numbers that H, S and G are computed from.
     modes : SortedModes
@@ -70,6 +72,7 @@ class Structure:
     treatment: Treatment
     calculation: Calculation
     energy_hartree: float
+    masses_u: FloatArray
     gas: IdealGas
     modes: SortedModes
     rotor: RigidRotor
@@ -79,6 +82,9 @@ class Structure:
     degeneracy: int
     files: tuple[str, ...]
     findings: tuple[Finding, ...] = field(default=())
+
+    def __post_init__(self) -> None:
+        seal(self)
 
     @property
     def imaginary_cm(self) -> float | None:
@@ -205,6 +211,7 @@ class Structure:
             treatment=treatment,
             calculation=calculation,
             energy_hartree=electronic_energy(calculation, energy, name),
+            masses_u=masses,
             gas=IdealGas(
                 mass_u=float(masses.sum()),
                 rotor=rotor.kind,

@@ -60,7 +60,9 @@ def place(file: str, *path: str | int) -> str:
     'study.toml [steps.3] through'
     """
     words = [str(part + 1) if isinstance(part, int) else part for part in path]
-    depth = 2 if len(words) > 1 and words[0] in ("species", "steps", "paths") else 1
+    depth = (
+        2 if len(words) > 1 and words[0] in ("species", "steps", "paths", "isotopologues") else 1
+    )
     if len(words) < depth or words[0] in ("title", "outputs"):
         return f"{file} {'.'.join(words)}".strip()
     return f"{file} [{'.'.join(words[:depth])}] {'.'.join(words[depth:])}".strip()
@@ -222,7 +224,7 @@ def model_key(path: tuple[str | int, ...]) -> str:
     ('species.NAME.energy', 'steps.rate')
     """
     words = [part for part in path if isinstance(part, str)]
-    if len(words) > 1 and words[0] == "species":
+    if len(words) > 1 and words[0] in ("species", "isotopologues"):
         words[1] = "NAME"
     return ".".join(words)
 

@@ -323,6 +323,22 @@ class EffectiveKeys(Keys, frozen=True, kw_only=True):
     ]
 
 
+class IsotopologueKeys(Keys, frozen=True, kw_only=True):
+    """Isotopes that are put into the species of the study, for isotope effects."""
+
+    all: Annotated[
+        dict[str, str],
+        Meta(description='element -> isotope, in every species that has it: `{ H = "D" }`'),
+    ] = {}
+    species: Annotated[
+        dict[str, dict[str, str]],
+        Meta(
+            description="species -> atom (counted from 1) or element -> isotope: "
+            '`species.W = { 2 = "D" }`; both sides and the saddle point of a step must hold the same'
+        ),
+    ] = {}
+
+
 class PathKeys(Keys, frozen=True, kw_only=True):
     """A path of the profile; without any, paths are found from the steps."""
 
@@ -373,6 +389,12 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
         list[_StepTable], Meta(min_length=1, description="a table `[[steps]]` for every step")
     ]
     effective: _EffectiveTable | UnsetType = UNSET
+    isotopologues: Annotated[
+        dict[str, IsotopologueKeys],
+        Meta(
+            description="a table `[isotopologues.NAME]` for every set of isotopes to compare with"
+        ),
+    ] = {}
     paths: Annotated[
         list[PathKeys], Meta(description="a table `[[paths]]` for every declared path")
     ] = []

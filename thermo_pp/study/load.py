@@ -19,10 +19,12 @@ from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.paths import find_paths
 from thermo_pp.species import SpeciesModel
 from thermo_pp.study.check import check_keys
+from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import make_conditions, make_question, make_steps, make_treatment
 
 if TYPE_CHECKING:
+    from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.results import EffectiveRate
     from thermo_pp.profile import Profile
 
@@ -50,6 +52,8 @@ class Study:
     findings : tuple of Finding
         Of the outputs, of the pairs of frequency job and single point, of the levels of theory and
         of the mechanism.
+    labels : mapping of str to mapping
+        The sets of isotopes of ``[isotopologues]``.
     """
 
     title: str
@@ -60,6 +64,7 @@ class Study:
     species: Mapping[str, SpeciesModel]
     levels: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = field(default=())
+    labels: Mapping[str, Labels] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "species", MappingProxyType(dict(self.species)))
@@ -121,6 +126,7 @@ class Study:
             species=members.species,
             levels=members.levels,
             findings=tuple(dict.fromkeys(findings)),
+            labels=make_labels(keys.isotopologues, members.species, file),
         )
 
     def profile(self, **options: Any) -> Profile:
@@ -134,6 +140,33 @@ class Study:
         from thermo_pp.kinetics.effective import effective
 
         return effective(self, **options)
+
+    def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
+        """Return the isotope effects of every set in ``[isotopologues]``.
+
+        Raises
+        ------
+        StudyError
+            The study has none; a step in which isotopes appear or vanish.
+        """
+        from thermo_pp.kinetics.isotope_effects import isotope_effects
+
+        file = str(self.path)
+        if not self.labels:
+            raise StudyError(
+                "the study says no isotopes to compare with",
+                where=f"{file} [isotopologues]",
+                mend='write for instance [isotopologues.D] and all = { H = "D" }',
+            )
+        return tuple(
+            isotope_effects(
+                self,
+                label,
+                labelled(label, labels, self.species, file),
+                where=f"{file} [isotopologues.{label}]",
+            )
+            for label, labels in self.labels.items()
+        )
 
 
 _EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}
