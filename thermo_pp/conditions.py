@@ -111,6 +111,8 @@ class Treatment:
         Factors of the wavenumbers in thermal terms and in the zero-point energy.
     enantiopure : bool
         Only one hand of a chiral structure is present.
+    entropy_correction_j_mol_k : float
+        Added to the entropy of every structure in solution, because the user says so.
     """
 
     standard_state: StandardState = StandardState("pressure", BAR_PA, DEFAULT_STANDARD_STATE)
@@ -123,6 +125,7 @@ class Treatment:
     frequency_scale: float = 1.0
     zero_point_scale: float = 1.0
     enantiopure: bool = False
+    entropy_correction_j_mol_k: float = 0.0
 
 
 @dataclass(frozen=True)

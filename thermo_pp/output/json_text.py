@@ -53,6 +53,7 @@ def treatment_keys(treatment: Treatment) -> dict[str, Any]:
         "frequency_scale": treatment.frequency_scale,
         "zero_point_scale": treatment.zero_point_scale,
         "enantiopure": treatment.enantiopure,
+        "entropy_correction_j_mol_k": treatment.entropy_correction_j_mol_k,
     }
 
 

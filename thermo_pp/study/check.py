@@ -60,8 +60,8 @@ def place(file: str, *path: str | int) -> str:
     'study.toml [steps.3] through'
     """
     words = [str(part + 1) if isinstance(part, int) else part for part in path]
-    depth = 2 if len(words) > 1 and words[0] in ("species", "steps", "paths") else 1
-    if len(words) < depth or words[0] in ("title", "outputs"):
+    depth = 2 if len(words) > 1 and words[0] in ("species", "levels", "steps", "paths") else 1
+    if len(words) < depth or words[0] in ("title", "outputs", "level"):
         return f"{file} {'.'.join(words)}".strip()
     return f"{file} [{'.'.join(words[:depth])}] {'.'.join(words[depth:])}".strip()
 
@@ -222,7 +222,7 @@ def model_key(path: tuple[str | int, ...]) -> str:
     ('species.NAME.energy', 'steps.rate')
     """
     words = [part for part in path if isinstance(part, str)]
-    if len(words) > 1 and words[0] == "species":
+    if len(words) > 1 and words[0] in ("species", "levels"):
         words[1] = "NAME"
     return ".".join(words)
 
@@ -243,8 +243,11 @@ def documented_keys() -> list[tuple[str, str, str]]:
     return rows
 
 
+_DOCUMENTED_BEFORE = "as in `[species.NAME]`"
+
+
 def _document(kind: inspect.Type, prefix: str, rows: list[tuple[str, str, str]]) -> None:
-    """Add the keys of every table inside `kind`."""
+    """Add the keys of every table inside `kind`, but of those whose meaning points elsewhere."""
     if isinstance(kind, inspect.Metadata):
         _document(kind.type, prefix, rows)
     elif isinstance(kind, inspect.UnionType):
@@ -261,6 +264,8 @@ def _document(kind: inspect.Type, prefix: str, rows: list[tuple[str, str, str]])
                 meaning = (field.type.extra_json_schema or {}).get("description", "")
                 if meaning:
                     rows.append((key, _default(field), meaning))
+                if meaning.startswith(_DOCUMENTED_BEFORE):
+                    continue
             _document(field.type, f"{key}.", rows)
 
 
