@@ -43,7 +43,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "profile", "barrier", "barrier_tables",
+        "survey", "species", "energies", "profile", "barrier", "barrier_tables",
     ),
     "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier"),
 }  # fmt: skip

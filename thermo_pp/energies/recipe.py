@@ -47,7 +47,12 @@ class CheckedEnergy:
         words = parts[0].heading
         for part in parts[1:]:
             words += f" {part.heading}" if part.factor < 0.0 else f" + {part.heading}"
-        return words
+        details = {
+            (level_words(calc) or "").partition(", ")[2]
+            for calculations in self.calculations.values()
+            for calc in calculations
+        }
+        return ", ".join([words, *details]).removesuffix(", ") if len(details) == 1 else words
 
 
 def recipe_findings(energies: Mapping[str, CheckedEnergy], file: str) -> tuple[Finding, ...]:

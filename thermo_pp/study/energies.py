@@ -341,7 +341,7 @@ def _filled(pattern: str | EnergyKeys, name: str, frequencies: str, where: str) 
             return _PLACEHOLDER.sub(value, inside)
         if isinstance(inside, dict):
             return {key: fill(item) for key, item in inside.items()}
-        return [fill(item) for item in inside] if isinstance(inside, list) else inside
+        return [fill(item) for item in inside] if isinstance(inside, (list, tuple)) else inside
 
     if isinstance(pattern, str):
         return str(fill(pattern))

@@ -18,7 +18,7 @@ from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
-from thermo_pp.species import SpeciesModel
+from thermo_pp.species import ElectronicEnergy, SpeciesModel
 from thermo_pp.study.check import check_keys
 from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.members import make_species
@@ -56,6 +56,8 @@ class Study:
         The named level of theory that the energies are of; None: the species' own energies.
     level_names : tuple of str
         The named levels of theory of the file: alternatives, for `at_level`.
+    energies : mapping of str to ElectronicEnergy
+        Part by part, of every structure that is read.
     """
 
     title: str
@@ -68,10 +70,12 @@ class Study:
     findings: tuple[Finding, ...] = field(default=())
     level: str | None = None
     level_names: tuple[str, ...] = ()
+    energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "species", MappingProxyType(dict(self.species)))
+        object.__setattr__(self, "energies", MappingProxyType(dict(self.energies)))
 
     @classmethod
     def load(
@@ -147,6 +151,7 @@ class Study:
             findings=tuple(dict.fromkeys(findings)),
             level=level,
             level_names=tuple(keys.levels),
+            energies=members.energies,
             _origin=origin,
         )
 

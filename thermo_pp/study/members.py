@@ -19,7 +19,7 @@ from thermo_pp.nearest import suggestion
 from thermo_pp.readers import read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
-from thermo_pp.species import Declared, SpeciesModel, Structure, solution_finding
+from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structure, solution_finding
 from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.keys import SpeciesKeys, StudyKeys
@@ -56,11 +56,14 @@ class Members:
         Of the outputs, the pairs, the species and the levels of theory.
     levels : tuple of str
         The levels of theory in words, a sentence each; empty where all species are declared.
+    energies : dict of str to ElectronicEnergy
+        Part by part, of every structure that is read.
     """
 
     species: dict[str, SpeciesModel]
     findings: tuple[Finding, ...]
     levels: tuple[str, ...]
+    energies: dict[str, ElectronicEnergy]
 
 
 @dataclass(eq=False)
@@ -145,7 +148,8 @@ def make_species(
         solvation = solution_findings(maker.energies, treatment.standard_state.form, file)
         found += [replace(solution_finding(), file=file)] if solvation is None else solvation
     species = {name: maker.done[name] for name in keys.species}
-    return Members(species, each_once(found), _levels(maker))
+    energies = {name: one.energy for name, one in maker.energies.items()}
+    return Members(species, each_once(found), _levels(maker), energies)
 
 
 def _levels(maker: _Maker) -> tuple[str, ...]:
