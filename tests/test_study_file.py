@@ -84,7 +84,6 @@ held = { W = "2e-4 mol/L" }
 driven = false
 [species.A]
 frequencies = "a.out"
-energy = { sum = [{ file = "b.out", method = "MP2", factor = -1 }], extrapolate = { files = ["t.out", "q.out"], method = "MP2", correlation = "X^-3", reference = "largest", cardinals = [3, 4] }, solvation = { solvent = "s.out", gas = "g.out", value = "-1 kJ/mol", gas_state = "1 bar", slope = 1.0, temperature = 298 }, counterpoise = [{ atoms = [1, 2], own = "f.out", ghosts = "g.out" }] }
 entropy_correction = -10
 charge = 0
 multiplicity = 1
@@ -93,6 +92,22 @@ symmetry_number = 2
 isotopes = { 3 = "D", C = "13C" }
 imaginary = { real_below = "30 cm^-1" }
 standard_state = "1 mol/L"
+[species.A.energy]
+sum = [{ file = "b.out", method = "MP2", factor = -1 }]
+counterpoise = [{ atoms = [1, 2], own = "f.out", ghosts = "g.out" }]
+[species.A.energy.extrapolate]
+files = ["t.out", "q.out"]
+method = "MP2"
+correlation = "X^-3"
+reference = "largest"
+cardinals = [3, 4]
+[species.A.energy.solvation]
+solvent = "s.out"
+gas = "g.out"
+value = "-1 kJ/mol"
+gas_state = "1 bar"
+slope = 1.0
+temperature = 298
 [species.W]
 composition = "H2O"
 enthalpy = "-1 kJ/mol"
