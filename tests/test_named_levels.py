@@ -30,7 +30,12 @@ SADDLE_LEVELS = {
 
 @pytest.fixture(scope="module")
 def study() -> Study:
-    return Study.load(PLUME / "study.toml")
+    return Study.load(PLUME / "study.toml", temperatures=[298.15])
+
+
+@pytest.fixture(scope="module")
+def composite() -> Study:
+    return Study.load(COMPOSITE, temperatures=[298.15])
 
 
 def saddle_kj_mol(study: Study) -> float:
@@ -102,8 +107,8 @@ def test_options_stay_at_another_level() -> None:
     assert Study.load(PLUME / "study.toml", level="composite").level == "composite"
 
 
-def test_the_study_of_composite_energies() -> None:
-    study = Study.load(COMPOSITE)
+def test_the_study_of_composite_energies(composite: Study) -> None:
+    study = composite
     assert study.level == "composite/CBS"
     # with 30 digits from the printed ones: limits of HF and MP2 correlation, and the correction
     assert study.energies["SO3"].value_hartree == pytest.approx(
@@ -116,6 +121,26 @@ def test_the_study_of_composite_energies() -> None:
     large = study.at_level("composite")
     # the limit moves the saddle point by little: most of the basis set's error cancels
     assert 0.1 < abs(saddle_kj_mol(study) - saddle_kj_mol(large)) < 10.0
+
+
+def rows_of_the_docs() -> list[tuple[str, list[str]]]:
+    page = (PLUME.parent.parent / "docs" / "stack-plume.md").read_text(encoding="utf-8")
+    table = page[page.index("| level |") :].split("\n\n")[0].splitlines()[2:]
+    cells = [[cell.strip() for cell in line.strip("|").split("|")] for line in table]
+    return [(row[0], row[1:]) for row in cells]
+
+
+@pytest.mark.parametrize(("level", "cells"), rows_of_the_docs(), ids=str)
+def test_the_table_of_the_docs(
+    study: Study, composite: Study, level: str, cells: list[str]
+) -> None:
+    other = composite if level == "composite/CBS" else study.at_level(level)
+    rate = other.effective().rates["pool"]
+    e = {name: energy.value_hartree for name, energy in other.energies.items()}
+    complex_kj_mol = (e["C1"] - e["SO3"] - e["W"]) * HARTREE_KJ_MOL
+    assert [f"{saddle_kj_mol(other):.2f}", f"{complex_kj_mol:.2f}"] == cells[:2]
+    assert float(rate.rate_constant[0]) == pytest.approx(float(cells[2]), rel=2e-3)
+    assert f"{rate.arrhenius_energy_kj_mol[0]:.2f}" == cells[3]
 
 
 # --- what is refused
