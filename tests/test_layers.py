@@ -20,7 +20,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
     ("readers",),  # 3
     ("collect", "species", "isotopes"),  # 4
-    ("pairing", "audit", "grouping"),  # 5
+    ("pairing", "audit", "grouping", "energies"),  # 5: energies pair their parts with the modes
     ("graph", "loops", "paths", "profile", "kinetics"),  # 6
     (),  # 7: measured
     ("study",),  # 8
@@ -31,19 +31,19 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
-        "isotope_ratios",
+        "isotope_ratios", "extrapolation",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
         "walk", "outcome", "codec", "answers", "store", "workers", "cluster", "stream",
     ),
     "audit": (
-        "levels", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
+        "levels", "scaling", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
     ),
+    "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "profile", "barrier", "barrier_tables",
-        "isotopes",
+        "survey", "species", "energies", "profile", "barrier", "barrier_tables", "isotopes",
     ),
     "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier", "isotopes"),
 }  # fmt: skip

@@ -62,6 +62,10 @@ def test_a_table_with_a_wrong_row_would_be_seen() -> None:
 ALL_KEYS = """\
 title = "every key"
 outputs = "."
+level = "high"
+[levels.high]
+energy = "{frequencies}_high.out"
+energies = { A = "a_high.out" }
 [treatment]
 standard_state = "1 bar"
 phase = "gas"
@@ -75,13 +79,14 @@ zero_point_scale = 0.98
 tunnelling = "wigner"
 tunnelling_scale = 0.97
 enantiopure = false
+entropy_correction = "-10 J/mol/K"
 [conditions]
 temperatures = { from = "280 K", to = 360, step = "5 K" }
 held = { W = "2e-4 mol/L" }
 driven = false
 [species.A]
 frequencies = "a.out"
-energy = "b.out"
+entropy_correction = -10
 charge = 0
 multiplicity = 1
 levels = [[5, "0 cm^-1"], [3, 158.265]]
@@ -91,6 +96,22 @@ rotational_constants = { B = "59.3219 cm^-1", D = "0.04599 cm^-1" }
 nuclear_spins = "normal"
 imaginary = { real_below = "30 cm^-1" }
 standard_state = "1 mol/L"
+[species.A.energy]
+sum = [{ file = "b.out", method = "MP2", factor = -1 }]
+counterpoise = [{ atoms = [1, 2], own = "f.out", ghosts = "g.out" }]
+[species.A.energy.extrapolate]
+files = ["t.out", "q.out"]
+method = "MP2"
+correlation = "X^-3"
+reference = "largest"
+cardinals = [3, 4]
+[species.A.energy.solvation]
+solvent = "s.out"
+gas = "g.out"
+value = "-1 kJ/mol"
+gas_state = "1 bar"
+slope = 1.0
+temperature = 298
 [species.W]
 composition = "H2O"
 enthalpy = "-1 kJ/mol"
@@ -144,7 +165,9 @@ def test_no_key_takes_just_anything(key: str) -> None:
     """Each key in turn is given a date, which no key takes."""
     data = tomllib.loads(ALL_KEYS)
     *tables, last = ["A" if word == "NAME" else word for word in key.split(".")]
-    if tables[0] == "species" and [*tables, last][2] not in data["species"]["A"]:
+    if tables[0] == "levels":
+        tables[1] = "high"
+    elif tables[0] == "species" and [*tables, last][2] not in data["species"]["A"]:
         tables[tables.index("A")] = "W"
     inside: Any = data
     for table in tables:

@@ -113,6 +113,8 @@ class Treatment:
         Factor of the imaginary wavenumber in tunnelling corrections.
     enantiopure : bool
         Only one hand of a chiral structure is present.
+    entropy_correction_j_mol_k : float
+        Added to the entropy of every structure in solution, because the user says so.
     """
 
     standard_state: StandardState = StandardState("pressure", BAR_PA, DEFAULT_STANDARD_STATE)
@@ -126,6 +128,7 @@ class Treatment:
     zero_point_scale: float = 1.0
     tunnelling_scale: float = 1.0
     enantiopure: bool = False
+    entropy_correction_j_mol_k: float = 0.0
 
 
 @dataclass(frozen=True)

@@ -16,6 +16,8 @@ NuclearSpins = Literal["equilibrium", "normal", "ortho", "para"]
 EnergyUnit = Literal["kJ/mol", "kcal/mol", "eV", "hartree"]
 Format = Literal["table", "csv", "markdown", "latex", "json"]
 Origin = Literal["printed", "derived", "declared"]
+Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
+"""How a reference energy goes to the limit of the basis set."""
 Definition = Literal["free", "pool", "relaxation", "cycle"]
 
 SEVERITIES: tuple[Severity, ...] = get_args(Severity)

@@ -52,6 +52,21 @@ class Printed:
         return float(10.0 ** (int(exponent or 0) - decimals))
 
 
+@dataclass(frozen=True)
+class MethodEnergy:
+    """A total energy of one method among several in a file.
+
+    Attributes
+    ----------
+    value_hartree : float
+    line : int
+        1-based line.
+    """
+
+    value_hartree: float
+    line: int
+
+
 @dataclass(frozen=True, eq=False)
 class Calculation:
     """One calculation of one structure, as its output has it. What the file does not say is None.
@@ -82,6 +97,10 @@ class Calculation:
         failed.
     energy_label : str or None
         Which energy it is, ``"CCSD(T)"`` or ``"DFT"`` for instance.
+    method_energies : mapping of str to MethodEnergy
+        Total energies by method that belong to `energy_hartree`: the reference ``"HF"`` under a
+        correlated energy, and ``"MP2"`` or ``"CCSD"`` on the way to it; same geometry, basis and
+        core. Empty where the reader does not tell them apart.
     wavenumbers_cm : shape (m,) or None
         3N-6 or 3N-5 modes, ascending, imaginary ones negative; None where the job has none. Empty
         for an atom.
@@ -121,6 +140,7 @@ class Calculation:
     multiplicity: int | None = None
     energy_hartree: float | None = None
     energy_label: str | None = None
+    method_energies: Mapping[str, MethodEnergy] = field(default_factory=dict)
     wavenumbers_cm: FloatArray | None = None
     modes: FloatArray | None = None
     hessian_hartree_bohr2: FloatArray | None = None
@@ -142,11 +162,11 @@ class Calculation:
             freeze(self, "modes", np.float64, (-1, n, 3))
         if self.hessian_hartree_bohr2 is not None:
             freeze(self, "hessian_hartree_bohr2", np.float64, (3 * n, 3 * n))
-        object.__setattr__(self, "printed", MappingProxyType(dict(self.printed)))
-        object.__setattr__(self, "where", MappingProxyType(dict(self.where)))
+        for name in _MAPPINGS:
+            object.__setattr__(self, name, MappingProxyType(dict(getattr(self, name))))
 
     def __getstate__(self) -> dict[str, Any]:
-        return {**self.__dict__, "printed": dict(self.printed), "where": dict(self.where)}
+        return {**self.__dict__, **{name: dict(getattr(self, name)) for name in _MAPPINGS}}
 
     def __setstate__(self, state: dict[str, Any]) -> None:
         self.__dict__.update(state)
@@ -168,6 +188,9 @@ class Calculation:
         from ase import Atoms
 
         return Atoms(numbers=self.numbers, positions=self.positions_angstrom, masses=self.masses_u)
+
+
+_MAPPINGS = ("method_energies", "printed", "where")
 
 
 def freeze(record: object, name: str, dtype: type, shape: tuple[int, ...]) -> None:

@@ -8,6 +8,7 @@ import click
 
 from thermo_pp.cli.answers import show
 from thermo_pp.cli.options import (
+    LEVEL,
     STUDY,
     Showing,
     Treating,
@@ -21,11 +22,13 @@ from thermo_pp.cli.options import (
 @click.argument("study", type=STUDY)
 @temperature_options
 @treatment_options
+@LEVEL
 @output_options
 def barrier(
     study: Path,
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
+    level: str | None,
     showing: Showing,
 ) -> None:
     """Give the effective rate and barrier of STUDY (a TOML file), and what controls them.
@@ -44,7 +47,7 @@ def barrier(
     from thermo_pp.output import barrier_tables
     from thermo_pp.study.load import Study
 
-    loaded = Study.load(study, temperatures=temperature_k, treatment=treating.keys())
+    loaded = Study.load(study, temperatures=temperature_k, treatment=treating.keys(), level=level)
     result = loaded.effective()
     findings = tuple(dict.fromkeys((*loaded.findings, *result.findings)))
     treatment, unit = loaded.treatment, showing.energy_unit

@@ -31,6 +31,9 @@ if TYPE_CHECKING:
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 OUTPUTS = click.Path(exists=True, path_type=Path)
+LEVEL = click.option(
+    "--level", metavar="NAME", help="A named level of theory of the study, in place of its own."
+)
 STUDY = click.Path(exists=True, dir_okay=False, path_type=Path)
 
 

@@ -8,6 +8,7 @@ import click
 
 from thermo_pp.cli.answers import show
 from thermo_pp.cli.options import (
+    LEVEL,
     STUDY,
     Showing,
     Treating,
@@ -21,6 +22,7 @@ from thermo_pp.cli.options import (
 @click.argument("study", type=STUDY)
 @temperature_options
 @treatment_options
+@LEVEL
 @click.option("--reference", metavar="STATE", help="The state that the others are relative to.")
 @click.option(
     "--at-conditions",
@@ -32,6 +34,7 @@ def profile(
     study: Path,
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
+    level: str | None,
     reference: str | None,
     at_conditions: bool,
     showing: Showing,
@@ -45,12 +48,14 @@ def profile(
     Example:
         thermo-pp profile study.toml
         thermo-pp profile study.toml -T 298.15 --format markdown
+        thermo-pp profile study.toml --level "MP2/aug-cc-pV(Q+d)Z"
         thermo-pp profile study.toml --reference "C1 + W" --at-conditions --energy-unit kcal/mol
     """
+    from thermo_pp.output import energies
     from thermo_pp.output import profile as output
     from thermo_pp.study.load import Study
 
-    loaded = Study.load(study, temperatures=temperature_k, treatment=treating.keys())
+    loaded = Study.load(study, temperatures=temperature_k, treatment=treating.keys(), level=level)
     result = loaded.profile(reference=reference, at_conditions=at_conditions)
     findings = tuple(dict.fromkeys((*loaded.findings, *result.findings)))
     treatment, unit = loaded.treatment, showing.energy_unit
@@ -60,7 +65,10 @@ def profile(
         lambda: (
             output.wide(result, treatment, unit)
             if showing.format == "csv"
-            else output.tables(result, treatment, unit, loaded.levels)
+            else [
+                *energies.tables(loaded.energies),
+                *output.tables(result, treatment, unit, loaded.levels),
+            ]
         ),
-        lambda: output.keys(result, treatment, findings),
+        lambda: output.keys(result, treatment, findings, loaded.energies),
     )

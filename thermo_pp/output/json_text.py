@@ -54,6 +54,7 @@ def treatment_keys(treatment: Treatment) -> dict[str, Any]:
         "zero_point_scale": treatment.zero_point_scale,
         "tunnelling_scale": treatment.tunnelling_scale,
         "enantiopure": treatment.enantiopure,
+        "entropy_correction_j_mol_k": treatment.entropy_correction_j_mol_k,
     }
 
 

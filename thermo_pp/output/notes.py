@@ -42,6 +42,10 @@ def of_treatment(treatment: Treatment) -> str:
         parts.append(f"imaginary modes below {treatment.real_below_cm:g} cm⁻¹ taken as real")
     if treatment.enantiopure:
         parts.append("one hand of chiral structures")
+    if treatment.entropy_correction_j_mol_k != 0.0:
+        parts.append(
+            f"{treatment.entropy_correction_j_mol_k:g} J mol⁻¹ K⁻¹ added to every entropy, as declared"
+        )
     return "; ".join(parts) + "."
 
 

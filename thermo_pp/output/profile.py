@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from thermo_pp.conditions import Treatment
 from thermo_pp.names import EnergyUnit
+from thermo_pp.output.energies import keys as energy_keys
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
 from thermo_pp.output.tables import (
@@ -19,6 +20,7 @@ from thermo_pp.output.tables import (
     in_unit,
 )
 from thermo_pp.profile import Profile, State
+from thermo_pp.species import ElectronicEnergy
 
 IN_FULL = 3
 """Up to this many temperatures every quantity is shown at each of them."""
@@ -87,7 +89,12 @@ def wide(profile: Profile, treatment: Treatment, unit: EnergyUnit) -> list[Block
     return [Table("profile", columns, rows, constants=constants)]
 
 
-def keys(profile: Profile, treatment: Treatment, findings: Sequence[Any]) -> dict[str, Any]:
+def keys(
+    profile: Profile,
+    treatment: Treatment,
+    findings: Sequence[Any],
+    energies: Mapping[str, ElectronicEnergy],
+) -> dict[str, Any]:
     """Return the JSON answer."""
     return answer(
         "profile",
@@ -97,6 +104,7 @@ def keys(profile: Profile, treatment: Treatment, findings: Sequence[Any]) -> dic
         at=profile.at,
         temperature_k=profile.temperature_k,
         net_reactions=profile.net_reactions,
+        energies=energy_keys(energies),
         states=[
             {
                 "path": state.path,

@@ -1,8 +1,9 @@
 """Species: what stands in a mechanism, computed from outputs or declared, and its H, S and G.
 
-From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes`` and ``electronic`` settle
-one structure; ``result`` is what is handed on, ``rows`` its tables; ``structure``, ``declared`` and
-``direct`` are the ways in, ``many`` the one for thousands of structures at once.
+From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes``, ``energy`` and
+``electronic`` settle one structure; ``result`` is what is handed on, ``rows`` its tables;
+``structure``, ``declared`` and ``direct`` are the ways in, ``many`` the one for thousands of
+structures at once.
 """
 
 from thermo_pp.species.declared import Declared, parse_composition
@@ -13,6 +14,7 @@ from thermo_pp.species.direct import (
     thermochemistry,
 )
 from thermo_pp.species.electronic import parse_levels
+from thermo_pp.species.energy import ElectronicEnergy, EnergyPart
 from thermo_pp.species.result import (
     SaddleMember,
     SpeciesModel,
@@ -23,6 +25,8 @@ from thermo_pp.species.structure import Structure
 
 __all__ = [
     "Declared",
+    "ElectronicEnergy",
+    "EnergyPart",
     "SaddleMember",
     "SpeciesModel",
     "Structure",

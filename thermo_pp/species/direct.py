@@ -49,6 +49,7 @@ def thermochemistry(
     frequency_scale: float = 1.0,
     zero_point_scale: float | None = None,
     enantiopure: bool = False,
+    entropy_correction: Any = 0.0,
     kind: Kind | None = None,
     energy: Calculation | None = None,
     charge: int | None = None,
@@ -81,6 +82,8 @@ def thermochemistry(
     frequency_scale, zero_point_scale : float
         Of thermal terms and of the zero-point energy; the second is the first unless given.
     enantiopure : bool
+    entropy_correction : float, text or quantity
+        Added to the entropy in solution, J/(mol K).
     kind : {"minimum", "saddle"} or None
         None: exactly one imaginary mode means saddle, with a note.
     energy : Calculation or None
@@ -114,6 +117,7 @@ def thermochemistry(
             frequency_scale if zero_point_scale is None else zero_point_scale, "zero_point_scale"
         ),
         enantiopure=enantiopure,
+        entropy_correction_j_mol_k=_entropy_correction(entropy_correction, phase),
     )
     if kind is not None:
         choice(kind, ("minimum", "saddle"), where=f"{call} kind")
@@ -176,6 +180,18 @@ def parse_imaginary(value: Any, *, where: str) -> float | None:
 
 def _state(value: Any) -> Any:
     return standard_state(value, where="thermochemistry standard_state")
+
+
+def _entropy_correction(value: Any, phase: Phase) -> float:
+    where = "thermochemistry entropy_correction"
+    number = quantity(value, "J/mol/K", where=where)
+    if number != 0.0 and phase != "solution":
+        raise StudyError(
+            "an entropy correction in the gas phase",
+            where=where,
+            mend='leave it out, or give phase="solution"',
+        )
+    return number
 
 
 def _above_zero(value: float, key: str) -> float:

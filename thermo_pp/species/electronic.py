@@ -8,6 +8,7 @@ from typing import Any
 from thermo_pp.data.levels import KNOWN_LEVELS
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.records import Calculation
+from thermo_pp.species.energy import ElectronicEnergy, single_energy
 from thermo_pp.species.modes import place
 from thermo_pp.units import quantity
 
@@ -124,19 +125,23 @@ def electronic_levels(
     return ((spin, 0.0),), spin, tuple(notes)
 
 
-def electronic_energy(calculation: Calculation, energy: Calculation | None, name: str) -> float:
-    """Return the energy of the single point, else of the frequency job, hartree."""
-    source = calculation if energy is None else energy
+def electronic_energy(
+    calculation: Calculation, energy: Calculation | ElectronicEnergy | None, name: str
+) -> ElectronicEnergy:
+    """Return the energy as it is given, else that of the frequency job."""
+    if isinstance(energy, ElectronicEnergy):
+        return energy
     if energy is not None and sorted(energy.numbers) != sorted(calculation.numbers):
         raise StudyError(
             f"{name}: the energy is of {energy.formula}, the modes are of {calculation.formula}",
             where=energy.path,
             mend="name the single point of the same structure",
         )
+    source = calculation if energy is None else energy
     if source.energy_hartree is None:
         raise StudyError(
             f"{name}: the output has no electronic energy",
             where=source.path,
             mend="name an output whose SCF converged",
         )
-    return source.energy_hartree
+    return single_energy(source)

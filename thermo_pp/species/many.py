@@ -68,8 +68,13 @@ def many(
         total = totals(shares(t, gas, first.treatment, used))
         energies = [structures[row].energy_hartree for row in rows]
         electronic = np.array(energies)[:, np.newaxis] * HARTREE_KJ_MOL
+        added = [structures[row].added for row in rows]
+        heats = [sum(share.enthalpy_j_mol for share in shared) for shared in added]
+        electronic += np.array(heats)[:, np.newaxis] / 1000.0
         enthalpy = electronic + total.enthalpy_j_mol / 1000.0
         entropy = total.entropy_j_mol_k - GAS_J_MOL_K * state.log_ratio_to_bar(t)
+        disorder = [sum(share.entropy_j_mol_k for share in shared) for shared in added]
+        entropy = entropy + np.array(disorder)[:, np.newaxis]
         result.enthalpy_kj_mol[rows] = enthalpy
         result.entropy_j_mol_k[rows] = entropy
         result.gibbs_kj_mol[rows] = enthalpy - t * entropy / 1000.0

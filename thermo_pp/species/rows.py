@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import StandardState, Treatment
 from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS
 from thermo_pp.names import LowModes
+from thermo_pp.species.energy import Added
 from thermo_pp.species.ideal_gas import IdealGas, Shares
 from thermo_pp.species.modes import SortedModes
 from thermo_pp.species.result import ModeTable, Part
@@ -23,6 +24,7 @@ def part_rows(
     treatment: Treatment,
     low_modes: LowModes,
     state: StandardState,
+    added: tuple[Added, ...] = (),
 ) -> tuple[Part, ...]:
     """Return the shares of one structure, the standard state in translation.
 
@@ -33,6 +35,8 @@ def part_rows(
         Of `gas` at those temperatures.
     gas, treatment, low_modes, state
         What it was computed with.
+    added : tuple of Added
+        What comes to H and S beside them.
     """
     modes = part.vibration
     onset = "" if low_modes == "harmonic" else f", onset {treatment.onset_cm:g} cm^-1"
@@ -59,6 +63,13 @@ def part_rows(
     if np.any(np.asarray(gas.hands) > 1):
         none = np.zeros_like(t)
         rows.append(_part("handedness", "both hands", t, (none, part.handedness, none)))
+    for share in added:
+        constant = (
+            np.array(share.enthalpy_j_mol),
+            np.array(share.entropy_j_mol_k),
+            np.array(0.0),
+        )
+        rows.append(_part(share.name, share.treated_as, t, constant))
     return tuple(rows)
 
 

@@ -18,6 +18,7 @@ from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
 from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin
 from thermo_pp.records import Calculation
 from thermo_pp.species.electronic import electronic_energy, electronic_levels, settled_charge
+from thermo_pp.species.energy import Added, ElectronicEnergy, added_shares
 from thermo_pp.species.ideal_gas import IdealGas, seal, shares, totals
 from thermo_pp.species.masses import chosen_masses, mass_findings
 from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
@@ -46,10 +47,10 @@ class Structure:
     treatment : Treatment
     calculation : Calculation
         The frequency job.
-    energy_hartree : float
-        Of the frequency job, or of the single point given.
     masses_u : shape (n,)
         Of the atoms, isotopes included.
+    energy : ElectronicEnergy
+        Of the frequency job, of the single point given, or of several parts.
     gas : IdealGas
         The numbers that H, S and G are computed from.
     modes : SortedModes
@@ -71,8 +72,8 @@ class Structure:
     multiplicity: int | None
     treatment: Treatment
     calculation: Calculation
-    energy_hartree: float
     masses_u: FloatArray
+    energy: ElectronicEnergy
     gas: IdealGas
     modes: SortedModes
     rotor: RigidRotor
@@ -85,6 +86,16 @@ class Structure:
 
     def __post_init__(self) -> None:
         seal(self)
+
+    @property
+    def energy_hartree(self) -> float:
+        """The electronic energy, a solvation term in it."""
+        return self.energy.value_hartree
+
+    @property
+    def added(self) -> tuple[Added, ...]:
+        """Shares of H and S beside those of the ideal gas."""
+        return added_shares(self.energy, self.treatment.entropy_correction_j_mol_k)
 
     @property
     def imaginary_cm(self) -> float | None:
@@ -120,7 +131,7 @@ class Structure:
         *,
         name: str,
         kind: Kind | None = None,
-        energy: Calculation | None = None,
+        energy: Calculation | ElectronicEnergy | None = None,
         charge: int | None = None,
         multiplicity: int | None = None,
         levels: Sequence[Sequence[Any]] | str | None = None,
@@ -140,9 +151,9 @@ class Structure:
         name : str
         kind : {"minimum", "saddle"} or None
             None: one imaginary mode means saddle, with a note.
-        energy : Calculation or None
-            A single point whose energy is taken; that it is the same structure is checked by the
-            pairing, here only that it has the same atoms.
+        energy : Calculation, ElectronicEnergy or None
+            A single point whose energy is taken, or an energy of parts; that it is the same
+            structure is checked by the pairing, here only that a single point has the same atoms.
         charge, multiplicity : int or None
             Where the output does not say.
         levels : sequence of (degeneracy, energy), "table" or None
@@ -199,6 +210,7 @@ class Structure:
             where,
         )
         notes += doubts
+        electronic = electronic_energy(calculation, energy, name)
         hands = 2 if symmetry.chiral and not treatment.enantiopure else 1
         if isotopes is None:
             notes += _symmetry_findings(calculation, symmetry, sigma, name)
@@ -210,8 +222,8 @@ class Structure:
             multiplicity=spin,
             treatment=treatment,
             calculation=calculation,
-            energy_hartree=electronic_energy(calculation, energy, name),
             masses_u=masses,
+            energy=electronic,
             gas=IdealGas(
                 mass_u=float(masses.sum()),
                 rotor=rotor.kind,
@@ -232,7 +244,7 @@ class Structure:
             symmetry_number=sigma,
             symmetry_origin="derived" if symmetry_number is None else "declared",
             degeneracy=hands,
-            files=(calculation.path,) if energy is None else (calculation.path, energy.path),
+            files=tuple(dict.fromkeys((calculation.path, *electronic.files))),
             findings=(*notes, *modes.findings),
         )
 
@@ -264,8 +276,11 @@ class Structure:
         total = totals(part)
         electronic_j_mol = 1000.0 * self.energy_hartree * HARTREE_KJ_MOL
         log_ratio = state.log_ratio_to_bar(t)
+        added = self.added
         enthalpy = electronic_j_mol + total.enthalpy_j_mol
+        enthalpy = enthalpy + sum(share.enthalpy_j_mol for share in added)
         entropy = total.entropy_j_mol_k - GAS_J_MOL_K * log_ratio
+        entropy = entropy + sum(share.entropy_j_mol_k for share in added)
         slope = enthalpy + total.slope_excess_j_mol - GAS_J_MOL_K * t * state.log_ratio_slope
         return Thermochemistry(
             name=self.name,
@@ -284,7 +299,7 @@ class Structure:
             rotor=self.rotor.kind,
             degeneracy=self.degeneracy,
             findings=(*self.findings, *self._findings_at(t, total.slope_excess_j_mol, used)),
-            rows=part_rows(t, part, self.gas, self.treatment, used, state),
+            rows=part_rows(t, part, self.gas, self.treatment, used, state, added),
             mode_table=mode_table(part, self.modes, self.treatment, used),
         )
 

@@ -53,6 +53,10 @@ def check_keys(data: Mapping[str, Any], file: str) -> StudyKeys:
     return msgspec.convert(data, StudyKeys)
 
 
+_NAMED_TABLES = ("species", "levels", "steps", "paths", "isotopologues")
+"""Tables of tables: the second word belongs to the header."""
+
+
 def place(file: str, *path: str | int) -> str:
     """Return the file and key as messages have it; list entries count from 1.
 
@@ -60,10 +64,8 @@ def place(file: str, *path: str | int) -> str:
     'study.toml [steps.3] through'
     """
     words = [str(part + 1) if isinstance(part, int) else part for part in path]
-    depth = (
-        2 if len(words) > 1 and words[0] in ("species", "steps", "paths", "isotopologues") else 1
-    )
-    if len(words) < depth or words[0] in ("title", "outputs"):
+    depth = 2 if len(words) > 1 and words[0] in _NAMED_TABLES else 1
+    if len(words) < depth or words[0] in ("title", "outputs", "level"):
         return f"{file} {'.'.join(words)}".strip()
     return f"{file} [{'.'.join(words[:depth])}] {'.'.join(words[depth:])}".strip()
 
@@ -224,7 +226,7 @@ def model_key(path: tuple[str | int, ...]) -> str:
     ('species.NAME.energy', 'steps.rate')
     """
     words = [part for part in path if isinstance(part, str)]
-    if len(words) > 1 and words[0] in ("species", "isotopologues"):
+    if len(words) > 1 and words[0] in ("species", "levels", "isotopologues"):
         words[1] = "NAME"
     return ".".join(words)
 
@@ -245,8 +247,11 @@ def documented_keys() -> list[tuple[str, str, str]]:
     return rows
 
 
+_DOCUMENTED_BEFORE = "as in `[species.NAME]`"
+
+
 def _document(kind: inspect.Type, prefix: str, rows: list[tuple[str, str, str]]) -> None:
-    """Add the keys of every table inside `kind`."""
+    """Add the keys of every table inside `kind`, but of those whose meaning points elsewhere."""
     if isinstance(kind, inspect.Metadata):
         _document(kind.type, prefix, rows)
     elif isinstance(kind, inspect.UnionType):
@@ -263,6 +268,8 @@ def _document(kind: inspect.Type, prefix: str, rows: list[tuple[str, str, str]])
                 meaning = (field.type.extra_json_schema or {}).get("description", "")
                 if meaning:
                     rows.append((key, _default(field), meaning))
+                if meaning.startswith(_DOCUMENTED_BEFORE):
+                    continue
             _document(field.type, f"{key}.", rows)
 
 

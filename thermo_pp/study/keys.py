@@ -15,6 +15,7 @@ from thermo_pp.names import (
     Masses,
     NuclearSpins,
     Phase,
+    Reference,
     Rotor,
     Tunnelling,
 )
@@ -101,6 +102,13 @@ class TreatmentKeys(Keys, frozen=True, kw_only=True):
     enantiopure: Annotated[
         bool, Meta(description="true: only one hand of every chiral structure is present")
     ] = False
+    entropy_correction: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="in solution only: added to the entropy of every species that is read; "
+            "none unless given / J/mol/K"
+        ),
+    ] = UNSET
 
 
 class RangeKeys(Keys, frozen=True, kw_only=True, rename={"from_": "from"}):
@@ -145,6 +153,123 @@ class RotationalKeys(Keys, frozen=True, kw_only=True):
     D: Annotated[Quantity, Meta(description="centrifugal distortion / cm^-1")] = 0.0
 
 
+class SumKeys(Keys, frozen=True, kw_only=True):
+    """One single point of a sum."""
+
+    file: Annotated[str, Meta(description="output at the geometry of the frequency job")]
+    method: Annotated[
+        str | UnsetType,
+        Meta(
+            description='which energy of the file: "HF", "MP2", "CCSD(T)"; its best one unless '
+            "given"
+        ),
+    ] = UNSET
+    factor: Annotated[float, Meta(description="sign and factor; those of a sum add up to 1")] = 1.0
+
+
+class ExtrapolateKeys(Keys, frozen=True, kw_only=True):
+    """Reference and correlation energy at the limit of the basis set, from two outputs."""
+
+    files: Annotated[
+        tuple[str, str],
+        Meta(description="outputs of one correlated method, that in the smaller basis set first"),
+    ]
+    method: Annotated[
+        str | UnsetType, Meta(description="which energy of the files; their best one unless given")
+    ] = UNSET
+    correlation: Annotated[
+        Literal["X^-3"] | Positive,
+        Meta(
+            description='how the correlation energy falls off with the cardinal number: "X^-3", or '
+            "another power as a number: 2.4 is X^-2.4"
+        ),
+    ]
+    reference: Annotated[
+        Reference,
+        Meta(
+            description='how the Hartree-Fock energy falls off: "exp(-1.63 X)" or '
+            '"(X+1) exp(-9 sqrt X)"; "largest": that of the larger basis set is taken'
+        ),
+    ]
+    cardinals: Annotated[
+        tuple[Whole, Whole] | UnsetType,
+        Meta(
+            description="cardinal numbers of the files, needed unless the basis sets are "
+            "correlation-consistent and named"
+        ),
+    ] = UNSET
+
+
+class SolvationKeys(Keys, frozen=True, kw_only=True):
+    """Free energy from gas to solution: from two outputs at one geometry, or declared."""
+
+    solvent: Annotated[
+        str | UnsetType,
+        Meta(description="output with the solvent model; this and `gas`, or `value`"),
+    ] = UNSET
+    gas: Annotated[str | UnsetType, Meta(description="output without it, else alike")] = UNSET
+    value: Annotated[
+        Quantity | UnsetType, Meta(description="a declared free energy of solvation / kJ/mol")
+    ] = UNSET
+    gas_state: Annotated[
+        str | UnsetType,
+        Meta(
+            description='standard state of the gas that `value` starts from, "1 bar" or "1 mol/L"; '
+            "it ends at 1 mol/L; required with `value`"
+        ),
+    ] = UNSET
+    slope: Annotated[
+        Quantity | UnsetType,
+        Meta(description="temperature derivative of the term; a finding without it / J/mol/K"),
+    ] = UNSET
+    temperature: Annotated[
+        Quantity | UnsetType,
+        Meta(description="where the term holds, 298.15 K unless given / K"),
+    ] = UNSET
+
+
+class FragmentKeys(Keys, frozen=True, kw_only=True):
+    """One fragment of a complex, for its counterpoise term."""
+
+    atoms: Annotated[
+        list[Whole],
+        Meta(
+            min_length=1,
+            description="atoms of the complex (from 1, in the order of its frequency job)",
+        ),
+    ]
+    own: Annotated[str, Meta(description="output of the fragment alone, as it is in the complex")]
+    ghosts: Annotated[
+        str, Meta(description="the same with the basis functions of the whole complex")
+    ]
+
+
+class EnergyKeys(Keys, frozen=True, kw_only=True):
+    """An electronic energy of several parts."""
+
+    sum: Annotated[
+        Annotated[list[SumKeys], Meta(min_length=1)] | UnsetType,
+        Meta(
+            description='single points with their factors, `[{ file = "a.out" }, '
+            '{ file = "b.out", factor = -1 }, ...]`',
+        ),
+    ] = UNSET
+    extrapolate: Annotated[
+        ExtrapolateKeys | UnsetType,
+        Meta(description="limit of the basis set from two outputs; it counts as factor 1"),
+    ] = UNSET
+    solvation: Annotated[
+        SolvationKeys | UnsetType,
+        Meta(description="free energy of solvation, 1 mol/L to 1 mol/L; in solution only"),
+    ] = UNSET
+    counterpoise: Annotated[
+        Quantity | list[FragmentKeys] | UnsetType,
+        Meta(
+            description="of a complex: its fragments, or a declared value, which is added / kJ/mol"
+        ),
+    ] = UNSET
+
+
 class SpeciesKeys(Keys, frozen=True, kw_only=True):
     """One species, saddle points included: read from outputs, or declared."""
 
@@ -153,10 +278,10 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
         Meta(description="output of the frequency job; a species has this or `composition`"),
     ] = UNSET
     energy: Annotated[
-        str | UnsetType,
+        str | EnergyKeys | UnsetType,
         Meta(
-            description="output of a single point at the same geometry, whose energy is used; "
-            "the frequency job's own energy unless given"
+            description="output of a single point at the same geometry, whose energy is used, or a "
+            "table of parts; the frequency job's own energy unless given"
         ),
     ] = UNSET
     charge: Annotated[
@@ -201,6 +326,9 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
     ] = UNSET
     standard_state: Annotated[
         str | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
+    ] = UNSET
+    entropy_correction: Annotated[
+        Quantity | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
     ] = UNSET
     composition: Annotated[
         str | UnsetType,
@@ -255,6 +383,22 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
             "species are differences from this sum; required beside species that are read"
         ),
     ] = UNSET
+
+
+class LevelKeys(Keys, frozen=True, kw_only=True):
+    """A named level of theory: an energy for every species that is read."""
+
+    energy: Annotated[
+        str | EnergyKeys | UnsetType,
+        Meta(
+            description="as in `[species.NAME]`, for every species: `{frequencies}` in a file name "
+            "stands for the species' frequency job without its ending, `{species}` for its name"
+        ),
+    ] = UNSET
+    energies: Annotated[
+        dict[str, str | EnergyKeys],
+        Meta(description="as in `[species.NAME]`, by species; before `energy`"),
+    ] = {}
 
 
 class ArrheniusKeys(Keys, frozen=True, kw_only=True):
@@ -385,6 +529,16 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
     species: Annotated[
         dict[str, _SpeciesTable], Meta(description="a table `[species.NAME]` for every species")
     ]
+    levels: Annotated[
+        dict[str, LevelKeys],
+        Meta(description="a table `[levels.NAME]` for every named level of theory: alternatives"),
+    ] = {}
+    level: Annotated[
+        str | UnsetType,
+        Meta(
+            description="the named level that is used; species have no `energy` of their own then"
+        ),
+    ] = UNSET
     steps: Annotated[
         list[_StepTable], Meta(min_length=1, description="a table `[[steps]]` for every step")
     ]

@@ -17,8 +17,10 @@ from thermo_pp.graph import check_reach
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.paths import find_paths
-from thermo_pp.species import SpeciesModel
+from thermo_pp.records import Calculation
+from thermo_pp.species import ElectronicEnergy, SpeciesModel
 from thermo_pp.study.check import check_keys
+from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import make_conditions, make_question, make_steps, make_treatment
@@ -54,6 +56,12 @@ class Study:
         of the mechanism.
     labels : mapping of str to mapping
         The sets of isotopes of ``[isotopologues]``.
+    level : str or None
+        The named level of theory that the energies are of; None: the species' own energies.
+    level_names : tuple of str
+        The named levels of theory of the file: alternatives, for `at_level`.
+    energies : mapping of str to ElectronicEnergy
+        Part by part, of every structure that is read.
     """
 
     title: str
@@ -65,9 +73,14 @@ class Study:
     levels: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = field(default=())
     labels: Mapping[str, Labels] = field(default_factory=dict)
+    level: str | None = None
+    level_names: tuple[str, ...] = ()
+    energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
+    _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "species", MappingProxyType(dict(self.species)))
+        object.__setattr__(self, "energies", MappingProxyType(dict(self.energies)))
 
     @classmethod
     def load(
@@ -76,6 +89,7 @@ class Study:
         *,
         temperatures: Iterable[Any] | None = None,
         treatment: Mapping[str, Any] | None = None,
+        level: str | None = None,
     ) -> Study:
         """Read a study file and every output that it names.
 
@@ -86,6 +100,8 @@ class Study:
             In place of the file's, K or texts with a unit.
         treatment : mapping or None
             Keys of ``[treatment]`` in place of the file's: ``{"low_modes": "harmonic"}``.
+        level : str or None
+            A named level of theory in place of the file's energies.
 
         Raises
         ------
@@ -100,14 +116,26 @@ class Study:
             options = {"treatment": dict(treatment)}
             check_keys({**options, **_EMPTY}, "options")
             data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
-        keys = check_keys(data, file)
+        origin = _Origin(data, file, None if temperatures is None else tuple(temperatures), {})
+        return cls._made(origin, level)
+
+    @classmethod
+    def _made(cls, origin: _Origin, level: str | None) -> Study:
+        """Make a study of what was read, at a named level or, with None, as the file has it."""
+        file, temperatures = origin.file, origin.temperatures
+        keys = check_keys(origin.data, file)
         own = make_treatment(keys.treatment, file)
         steps = make_steps(keys.steps, keys.treatment, file)
         check_names(steps, keys.species, where=file)
         question = make_question(keys, steps, file)
         conditions = make_conditions(keys.conditions, steps, own.phase, temperatures, file)
         saddles = {step.through for step in steps if step.through is not None}
-        members = make_species(keys, own, saddles, file)
+        check_levels(keys, file)
+        if level is None:
+            level = keys.level if isinstance(keys.level, str) else None
+        else:
+            known_level(keys, level, file)
+        members = make_species(keys, own, saddles, file, level=level, read=origin.read)
         mechanism = Mechanism(
             steps,
             {name: model.composition for name, model in members.species.items()},
@@ -127,7 +155,25 @@ class Study:
             levels=members.levels,
             findings=tuple(dict.fromkeys(findings)),
             labels=make_labels(keys.isotopologues, members.species, file),
+            level=level,
+            level_names=tuple(keys.levels),
+            energies=members.energies,
+            _origin=origin,
         )
+
+    def at_level(self, level: str) -> Study:
+        """Return the same study with the energies of a named level of theory.
+
+        Outputs that were read for this study are not read again.
+
+        Raises
+        ------
+        StudyError
+            No such level, or whatever is wrong with its energies.
+        """
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file has no named levels")
+        return self._made(self._origin, level)
 
     def profile(self, **options: Any) -> Profile:
         """Return relative H, S and G of every state; see `thermo_pp.profile.profile`."""
@@ -167,6 +213,16 @@ class Study:
             )
             for label, labels in self.labels.items()
         )
+
+
+@dataclass(frozen=True, eq=False)
+class _Origin:
+    """What a study is made of: the file's tables with the options, and the outputs read so far."""
+
+    data: Mapping[str, Any]
+    file: str
+    temperatures: tuple[Any, ...] | None
+    read: dict[str, Calculation]
 
 
 _EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}

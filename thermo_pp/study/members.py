@@ -11,18 +11,20 @@ from typing import Any
 from thermo_pp import conditions as made
 from thermo_pp.audit import audit_alone
 from thermo_pp.audit.levels import level_findings, level_words
+from thermo_pp.audit.scaling import scale_findings, scale_words
 from thermo_pp.conditions import Treatment
+from thermo_pp.energies.recipe import CheckedEnergy, recipe_findings
 from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind
 from thermo_pp.nearest import suggestion
-from thermo_pp.pairing import pair
 from thermo_pp.readers import read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
-from thermo_pp.species import Declared, SpeciesModel, Structure, solution_finding
+from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structure, solution_finding
 from thermo_pp.study.check import place
+from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.keys import SpeciesKeys, StudyKeys
-from thermo_pp.study.parts import above_zero, given, real_below
+from thermo_pp.study.parts import above_zero, entropy_correction, given, real_below
 from thermo_pp.units import quantity
 
 _READ_ONLY = (
@@ -34,6 +36,7 @@ _READ_ONLY = (
     "rotational_constants",
     "nuclear_spins",
     "imaginary",
+    "entropy_correction",
 )
 _DECLARED_ONLY = (
     "enthalpy",
@@ -58,11 +61,14 @@ class Members:
         Of the outputs, the pairs, the species and the levels of theory.
     levels : tuple of str
         The levels of theory in words, a sentence each; empty where all species are declared.
+    energies : dict of str to ElectronicEnergy
+        Part by part, of every structure that is read.
     """
 
     species: dict[str, SpeciesModel]
     findings: tuple[Finding, ...]
     levels: tuple[str, ...]
+    energies: dict[str, ElectronicEnergy]
 
 
 @dataclass(eq=False)
@@ -75,15 +81,23 @@ class _Maker:
     file: str
     folder: Path
     outputs: Path
+    level: str | None = None
     read: dict[str, Calculation] = field(default_factory=dict)
     done: dict[str, SpeciesModel] = field(default_factory=dict)
     findings: list[Finding] = field(default_factory=list)
     frequencies: dict[str, Calculation] = field(default_factory=dict)
-    energies: dict[str, Calculation] = field(default_factory=dict)
+    energies: dict[str, CheckedEnergy] = field(default_factory=dict)
+    opened: dict[str, Calculation] = field(default_factory=dict)
 
 
 def make_species(
-    keys: StudyKeys, treatment: Treatment, saddles: Collection[str], file: str
+    keys: StudyKeys,
+    treatment: Treatment,
+    saddles: Collection[str],
+    file: str,
+    *,
+    level: str | None = None,
+    read: dict[str, Calculation] | None = None,
 ) -> Members:
     """Read or make every species of a study.
 
@@ -96,6 +110,10 @@ def make_species(
         Names of the saddle points.
     file : str
         The study file.
+    level : str or None
+        The named level of theory whose energies are taken; None: the species' own.
+    read : dict or None
+        Outputs that were read before, by path; those read now are added.
 
     Raises
     ------
@@ -112,36 +130,48 @@ def make_species(
             where=place(file, "outputs"),
             mend="name the folder of the outputs, from the folder of the study file",
         )
-    maker = _Maker(keys, treatment, saddles, file, folder, outputs)
+    known = {} if read is None else read
+    maker = _Maker(keys, treatment, saddles, file, folder, outputs, level, known)
     for name, member in keys.species.items():
         _check_member(name, member, keys.species, file)
     for name in keys.species:
         _make(maker, name, ())
     found: list[Finding] = []
-    for calc in maker.read.values():
-        found += [*calc.findings, *audit_alone(calc)]
+    meant = {path for one in maker.energies.values() for path in one.ghosts}
+    for calc in maker.opened.values():
+        found += [
+            one for one in calc.findings if one.code != "ghost-atoms" or calc.path not in meant
+        ]
+        found += audit_alone(calc)
     found += maker.findings
     found += [finding for model in maker.done.values() for finding in model.findings]
     found += level_findings([*maker.frequencies.values()], "frequencies")
-    found += level_findings([*maker.energies.values()], "energies")
+    found += recipe_findings(maker.energies, file)
+    found += scale_findings(treatment, [*maker.frequencies.values()], file)
     found += _same_file(maker.frequencies, file)
     if treatment.phase == "solution" and maker.frequencies:
-        found.append(replace(solution_finding(), file=file))
+        solvation = solution_findings(maker.energies, treatment.standard_state.form, file)
+        found += [replace(solution_finding(), file=file)] if solvation is None else solvation
     species = {name: maker.done[name] for name in keys.species}
-    return Members(species, each_once(found), _levels(maker))
+    energies = {name: one.energy for name, one in maker.energies.items()}
+    return Members(species, each_once(found), _levels(maker), energies)
 
 
 def _levels(maker: _Maker) -> tuple[str, ...]:
     """Write the levels of theory of the energies and of the frequencies."""
     sentences = []
-    for what, calculations in (
-        ("Energies", maker.energies),
-        ("Geometries and frequencies", maker.frequencies),
+    frequencies = [*maker.frequencies.values()]
+    for what, levels in (
+        ("Energies", [energy.words for energy in maker.energies.values()]),
+        (
+            "Geometries and frequencies",
+            [level_words(calc) or "not stated" for calc in frequencies],
+        ),
     ):
-        words = dict.fromkeys(level_words(calc) or "not stated" for calc in calculations.values())
-        if words:
-            sentences.append(f"{what}: {'; '.join(words)}.")
-    return tuple(sentences)
+        if levels:
+            sentences.append(f"{what}: {'; '.join(dict.fromkeys(levels))}.")
+    scaled = scale_words(maker.treatment, frequencies)
+    return tuple(sentences if scaled is None else [*sentences, scaled])
 
 
 def _check_member(
@@ -220,23 +250,33 @@ def _structure(
 ) -> SpeciesModel:
     where = place(maker.file, "species", name)
     calc = _calculation(maker, str(member.frequencies), f"{where} frequencies")
-    energy = None
-    if given(member.energy) is not None:
-        energy = _calculation(maker, str(member.energy), f"{where} energy")
-        maker.findings += pair(calc, energy, where=f"{where} energy").findings
+    parts, at = energy_keys(maker.keys, maker.level, name, member, maker.file)
+    energy = make_energy(
+        parts,
+        calc,
+        maker.treatment.phase,
+        lambda file, place_of_it: _calculation(maker, file, place_of_it),
+        at,
+    )
+    maker.findings += energy.findings
     imaginary = given(member.imaginary)
     treatment = replace(maker.treatment, standard_state=standard_state)
+    if given(member.entropy_correction) is not None:
+        correction = entropy_correction(
+            member.entropy_correction, treatment.phase, f"{where} entropy_correction"
+        )
+        treatment = replace(treatment, entropy_correction_j_mol_k=correction)
     if imaginary is not None:
         below = real_below(imaginary, f"{where} imaginary.real_below")
         treatment = replace(treatment, real_below_cm=below)
     maker.frequencies[name] = calc
-    maker.energies[name] = calc if energy is None else energy
+    maker.energies[name] = energy
     return Structure.make(
         calc,
         treatment,
         name=name,
         kind=kind,
-        energy=energy,
+        energy=energy.energy,
         charge=given(member.charge),
         multiplicity=given(member.multiplicity),
         levels=given(member.levels),
@@ -327,6 +367,7 @@ def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
     path = _inside(maker, name, where)
     if str(path) not in maker.read:
         maker.read[str(path)] = read_source(open_source(path))
+    maker.opened[str(path)] = maker.read[str(path)]
     return maker.read[str(path)]
 
 

@@ -55,7 +55,23 @@ def make_treatment(keys: TreatmentKeys, file: str) -> Treatment:
         zero_point_scale=scale if isinstance(zero_point_scale, UnsetType) else zero_point_scale,
         tunnelling_scale=scale if isinstance(tunnelling_scale, UnsetType) else tunnelling_scale,
         enantiopure=keys.enantiopure,
+        entropy_correction_j_mol_k=entropy_correction(
+            keys.entropy_correction, keys.phase, place(file, "treatment", "entropy_correction")
+        ),
     )
+
+
+def entropy_correction(value: Quantity | UnsetType, phase: Phase, where: str) -> float:
+    """Turn a declared entropy correction into J/(mol K), 0 where none is declared."""
+    if isinstance(value, UnsetType):
+        return 0.0
+    if phase != "solution":
+        raise StudyError(
+            "an entropy correction in the gas phase",
+            where=where,
+            mend='take it out, or write phase = "solution" under [treatment]',
+        )
+    return quantity(value, "J/mol/K", where=where)
 
 
 def real_below(value: str | RealBelowKeys, where: str) -> float | None:

@@ -30,7 +30,7 @@ from thermo_pp.readers.nwchem.states import State
 from thermo_pp.readers.nwchem.tasks import Task
 from thermo_pp.readers.nwchem.vibrations import Vibrations
 from thermo_pp.readers.text import CUT_SHORT, Text
-from thermo_pp.records import Calculation
+from thermo_pp.records import Calculation, MethodEnergy
 from thermo_pp.sources import Source
 
 __all__ = ["LOOKS_FOR", "NAME", "PRINTED_CONSTANTS", "read", "sniff"]
@@ -108,7 +108,9 @@ def read(source: Source) -> Calculation:
     if banner is not None:
         at["program_version"] = banner.start(1)
     thermochemistry = {} if modes is None else modes.thermochemistry
-    places = at | {f"printed {key}": value[2] for key, value in thermochemistry.items()}
+    energies_by_method = [] if taken is None else taken.energy.by_method
+    places = at | {f"{label} energy": place for label, _, place in energies_by_method}
+    places |= {f"printed {key}": value[2] for key, value in thermochemistry.items()}
     lines = text.line_numbers(places | doubt_places(doubts))
     level = None if taken is None else taken.level
     real = shape.real if shape.ghosts else slice(None)
@@ -131,6 +133,10 @@ def read(source: Source) -> Calculation:
         multiplicity=None if level is None else level.multiplicity,
         energy_hartree=None if taken is None else taken.energy.value_hartree,
         energy_label=None if taken is None else taken.energy.label,
+        method_energies={
+            label: MethodEnergy(value, lines[f"{label} energy"])
+            for label, value, _ in energies_by_method
+        },
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
         hessian_hartree_bohr2=hessian,

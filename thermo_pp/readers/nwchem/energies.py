@@ -119,6 +119,15 @@ class Energy:
         """Place of the label in `RANKS`."""
         return RANKS[self.label]
 
+    @property
+    def by_method(self) -> list[tuple[str, float, int]]:
+        """Label, value and offset of the energy, that of the solution under it first."""
+        own = (self.label, self.value_hartree, self.at)
+        under = self.solution
+        if self.label == under.label:
+            return [own]
+        return [(under.label, under.value_hartree, under.at), own]
+
 
 def solutions(text: Text, task: Task, *, backwards: bool = False) -> Iterator[Solution]:
     """Yield the SCF or DFT solutions of a task in order, or in reverse order."""

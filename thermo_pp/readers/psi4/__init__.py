@@ -19,7 +19,7 @@ from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import BANNER, Geometry
 from thermo_pp.readers.psi4.vibrations import PRINTED_CONSTANTS
 from thermo_pp.readers.text import Text
-from thermo_pp.records import Calculation
+from thermo_pp.records import Calculation, MethodEnergy
 from thermo_pp.sources import Source
 
 __all__ = ["LOOKS_FOR", "NAME", "PRINTED_CONSTANTS", "read", "sniff"]
@@ -92,6 +92,11 @@ def read(source: Source) -> Calculation:
         multiplicity=shape.multiplicity,
         energy_hartree=energy.value,
         energy_label=energy.label,
+        method_energies={
+            one.label: MethodEnergy(one.value, text.line_number(one.at))
+            for one in levels.energies(chosen.part)
+            if one.rank <= energy.rank
+        },
         wavenumbers_cm=wavenumbers,
         modes=modes,
         hessian_hartree_bohr2=hessian,
