@@ -9,6 +9,7 @@ import pytest
 from declared_study import TEXT, edited, load
 
 from thermo_pp.errors import Finding, ReadError, StudyError, ThermoError
+from thermo_pp.study.keys import Keys, SpeciesKeys, StudyKeys, TreatmentKeys
 from thermo_pp.study.load import Study
 
 ALL_SPECIES = "known species: A, W, W2, C, P, TS1, TS2"
@@ -24,29 +25,30 @@ LIMIT = (
 QUANTITY_K = 'write one number and its unit, for instance "298.15 K" or "25 degC"'
 HELD = 'write a concentration ("2e-4 mol/L"), a partial pressure ("20 mbar") or "equilibrium"'
 
+
+def names(table: type[Keys]) -> str:
+    """Every key of a table, in the order of the model."""
+    return ", ".join(table.__struct_fields__)
+
+
 CASES = {  # name: (changes, where, what, mend)
     "unknown key": (
         [("[conditions]", '[treatment]\nlow_mods = "harmonic"\n[conditions]')],
         "[treatment] low_mods",
         "unknown key 'low_mods'",
-        "did you mean 'low_modes'? known keys: standard_state, phase, low_modes, onset, rotor, "
-        "masses, imaginary, frequency_scale, zero_point_scale, tunnelling, tunnelling_scale, enantiopure",
+        f"did you mean 'low_modes'? known keys: {names(TreatmentKeys)}",
     ),
     "unknown key of a species": (
         [('entropy = "256 J/mol/K"', 'entrophy = "256 J/mol/K"')],
         "[species.A] entrophy",
         "unknown key 'entrophy'",
-        "did you mean 'entropy'? known keys: frequencies, energy, charge, multiplicity, levels, "
-        "symmetry_number, isotopes, rotational_constants, nuclear_spins, imaginary, "
-        "standard_state, composition, enthalpy, entropy, "
-        "heat_capacity, temperature, ground, imaginary_mode, relative_to",
+        f"did you mean 'entropy'? known keys: {names(SpeciesKeys)}",
     ),
     "unknown table": (
         [("[effective]", "[efective]")],
         "[efective]",
         "unknown key 'efective'",
-        "did you mean 'effective'? known keys: title, outputs, treatment, conditions, species, "
-        "steps, effective, isotopologues, paths",
+        f"did you mean 'effective'? known keys: {names(StudyKeys)}",
     ),
     "unknown choice": (
         [("[conditions]", '[treatment]\nphase = "gsa"\n[conditions]')],
