@@ -33,7 +33,7 @@ _VERSION = re.compile(rb"P[Ss][Ii]4 (\d\S*)")
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _SNIFF.search(head) is not None
+    return BANNER in head and _SNIFF.search(head) is not None
 
 
 def read(source: Source) -> Calculation:

@@ -60,7 +60,9 @@ _UNCONVERGED = re.compile(rb"^[ \t]*\*\*\* FAILED TO CONVERGE GEOMETRY OPTIMIZAT
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _BOX.search(head[:4096]) is not None or companion.sniff(head)
+    first = head[:4096]
+    boxed = b"x T B" in first and _BOX.search(first) is not None
+    return boxed or companion.sniff(head)
 
 
 def read(source: Source) -> Calculation:
