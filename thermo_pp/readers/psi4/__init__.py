@@ -73,6 +73,7 @@ def read(source: Source) -> Calculation:
                 findings = (*findings, joined_hessian.not_joined(source, beside, line))
     if chosen.run is not None:
         at["optimised"] = chosen.run.at
+    lines = text.line_numbers(at)
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -99,7 +100,7 @@ def read(source: Source) -> Calculation:
         ended_normally=normally,
         kind_of_job=_kinds(chosen),
         printed={} if analysis is None else vibrations.thermochemistry(analysis),
-        where={field: text.line_number(place) for field, place in at.items()},
+        where={field: lines[field] for field in at},
         findings=findings,
     )
 

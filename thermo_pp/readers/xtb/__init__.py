@@ -105,6 +105,7 @@ def read(source: Source) -> Calculation:
     kinds = ("optimisation",) if optimised is not None else ()
     if found.wavenumbers_cm is not None:
         kinds = (*kinds, "frequencies")
+    lines = text.line_numbers(at)
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -129,7 +130,7 @@ def read(source: Source) -> Calculation:
         optimised=optimised,
         kind_of_job=kinds or ("energy",),
         printed=found.printed,
-        where={field: text.line_number(place) for field, place in at.items()},
+        where={field: lines[field] for field in at},
         findings=tuple(findings),
     )
 
