@@ -64,11 +64,16 @@ class Text:
 
     def all(self, mark: bytes) -> list[int]:
         """Return every place at which `mark` stands."""
-        places, at = [], self.find(mark)
+        places, at = [], self.last(mark)
         while at >= 0:
             places.append(at)
-            at = self.find(mark, at + len(mark))
+            at = self.last(mark, at)
+        places.reverse()
         return places
+
+    def has(self, mark: bytes) -> bool:
+        """Tell whether `mark` stands anywhere; see `holds`."""
+        return self.data.rfind(mark, self.start, self.end) >= 0
 
     def need(
         self, mark: bytes, start: int | None = None, *, lacking: str, mend: str = CUT_SHORT

@@ -122,6 +122,6 @@ def _kinds(chosen: Chosen) -> tuple[str, ...]:
     if chosen.analysis is not None:
         kinds.append("frequencies")
     if not kinds:
-        gradient = chosen.part.find(b"-Total Gradient:") >= 0
+        gradient = chosen.part.has(b"-Total Gradient:")
         kinds.append("gradient" if gradient else "energy")
     return tuple(kinds)

@@ -279,6 +279,6 @@ def steps_on(text: Text, start: int, end: int) -> bool:
     part = text.part(start, end)
     marks = (_NEXT_STEP, _CONVERGED, _FAILED)
     return (
-        any(part.find(mark) >= 0 for mark in marks)
+        any(part.has(mark) for mark in marks)
         or _OPTIMISER.search(text.data, start, end) is not None
     )

@@ -153,7 +153,7 @@ def unconverged(part: Text) -> int | None:
 
 def is_printed(text: Text, label: str) -> bool:
     """Tell whether an energy of the correlated method `label` stands anywhere in `text`."""
-    if label == "MP2" and text.find(b"==> DF-MP2 Energies <==") >= 0:
+    if label == "MP2" and text.has(b"==> DF-MP2 Energies <=="):
         return True
     wanted = label.encode()
     return any(
@@ -165,7 +165,7 @@ def is_printed(text: Text, label: str) -> bool:
 
 def is_extrapolated(text: Text) -> bool:
     """Tell whether an energy extrapolated to the basis-set limit stands anywhere in `text`."""
-    return text.find(_EXTRAPOLATED) >= 0
+    return text.has(_EXTRAPOLATED)
 
 
 def is_functional(text: Text, method: str) -> bool:
