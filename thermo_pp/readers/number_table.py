@@ -7,7 +7,6 @@ import warnings
 import numpy as np
 from numpy.typing import NDArray
 
-
 _DOT, _MINUS, _BLANK, _ZERO, _LINE_END = b".- 0\n"
 _MOST_DIGITS = 15
 """Of a whole number that a float holds without rounding."""

@@ -228,6 +228,7 @@ def holds(head: bytes, mark: bytes) -> bool:
 
 def plain_lines(source: Source) -> Source:
     """Return the source with plain line ends; line numbers stay what they are."""
-    if b"\r\n" not in source.head:
+    head = source.head
+    if b"\r" not in head or b"\r\n" not in head:  # a single byte is found faster
         return source
     return replace(source, data=source.data.replace(b"\r\n", b"\n"), digest=source.sha256)

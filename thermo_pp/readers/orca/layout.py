@@ -24,7 +24,6 @@ _FAILED = (
 )
 
 _KEY = 8
-_RULE = b"\n-----"
 _HEADING = re.compile(rb"\n-----[- ]*\n[ |*]*([A-Za-z][A-Za-z -][^\n]*)")
 _FINAL = re.compile(
     rb"[ :]*(\([^()\n]*\))? *(-?\d+\.\d+)? *(\([^()\n]*\))?[ \t]*(?:\n|$)", re.MULTILINE
@@ -59,17 +58,11 @@ class Layout:
         self.titles: list[bytes] = []
         self.blocks: dict[int, object] = {}
         self._by_key: dict[bytes, list[int]] = {}
-        at = text.data.find(_RULE)
-        while at >= 0:
-            match = _HEADING.match(text.data, at)
-            behind = at + 1
-            if match is not None:
-                behind = match.end()
-                title = match.group(1).rstrip()
-                self._by_key.setdefault(title[:_KEY], []).append(len(self.offsets))
-                self.offsets.append(match.start(1))
-                self.titles.append(title)
-            at = text.data.find(_RULE, behind)
+        for match in _HEADING.finditer(text.data):
+            title = match.group(1).rstrip()
+            self._by_key.setdefault(title[:_KEY], []).append(len(self.offsets))
+            self.offsets.append(match.start(1))
+            self.titles.append(title)
 
     def between(self, start: int, end: int) -> list[bytes]:
         """Return the headings from `start` up to `end`."""
