@@ -200,7 +200,7 @@ def freeze(record: object, name: str, dtype: type, shape: tuple[int, ...]) -> No
         want not in (-1, have) for want, have in zip(shape, array.shape, strict=True)
     ):
         raise ValueError(f"{name} has shape {array.shape}, expected {shape}")
-    if dtype is np.float64 and not np.all(np.isfinite(array)):
+    if dtype is np.float64 and not np.isfinite(array).all():
         raise ValueError(f"{name} holds a number that is not finite")
     array.flags.writeable = False
     object.__setattr__(record, name, array)

@@ -12,7 +12,7 @@ from thermo_pp.audit.state import state_findings
 from thermo_pp.audit.symmetry import symmetry_findings
 from thermo_pp.collect import Cache, Collection, Outcome, Paths, Progress, gather
 from thermo_pp.errors import Finding, ReadError
-from thermo_pp.readers import claims, read_source
+from thermo_pp.readers import claims, read_claimed
 from thermo_pp.records import Calculation
 from thermo_pp.sources import LeftOut, Looked, Oversize, Piece, pieces
 
@@ -97,7 +97,10 @@ def _outcome(piece: Piece) -> Outcome:
         return Outcome(piece.name, skipped=_reason(piece.head))
     reader = " and ".join(each.NAME for each in readers)
     try:
-        calculation = read_source(piece.source())
+        source = piece.source()
+        if source.head != piece.head:  # of UTF-16 the piece shows half as much text
+            readers = claims(source.head)
+        calculation = read_claimed(source, readers)
     except Oversize as error:
         return Outcome(piece.name, skipped=error.what)
     except ReadError as error:

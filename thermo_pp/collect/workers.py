@@ -8,6 +8,7 @@ dies takes no other file with it: its file is tried once more, then it is the er
 from __future__ import annotations
 
 import contextlib
+import gc
 import multiprocessing
 import os
 import signal
@@ -255,6 +256,7 @@ def _work(
         other
     ) in inherited:  # with them open, this process would not see that the asking one is gone
         other.close()
+    gc.freeze()  # what was there before is not to be looked through, nor its pages to be copied
     with one_thread(), contextlib.suppress(EOFError, OSError):
         while True:
             for task in connection.recv():

@@ -9,7 +9,6 @@ from itertools import product
 
 import numpy as np
 from numpy.typing import ArrayLike
-from scipy.optimize import linear_sum_assignment
 
 from thermo_pp.formulas.frames import (
     FloatArray,
@@ -203,6 +202,8 @@ def _improved(
 
 def _assigned(a: FloatArray, kind_a: IntArray, b: FloatArray, kind_b: IntArray) -> IntArray:
     """Match atoms of one kind so that the sum of squared distances is least."""
+    from scipy.optimize import linear_sum_assignment  # slow to load, and seldom needed
+
     partners = np.empty(len(a), dtype=np.int64)
     for kind in np.unique(kind_a):
         mine, theirs = np.flatnonzero(kind_a == kind), np.flatnonzero(kind_b == kind)

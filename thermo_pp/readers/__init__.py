@@ -80,13 +80,17 @@ def read_source(source: Source) -> Calculation:
     ReadError
         An empty file, one that no reader or more than one claims, and whatever the reader raises.
     """
+    return read_claimed(source, claims(source.head))
+
+
+def read_claimed(source: Source, readers: tuple[Reader, ...]) -> Calculation:
+    """Read one file with the one of `readers`, those that claim its head; raises as `read_source`."""
     if not source.data or source.data.isspace():
         raise ReadError(
             "the file is empty",
             where=f"{source.name}:1",
             mend="rerun or re-copy it",
         )
-    readers = claims(source.head)
     if len(readers) > 1:
         names = " and ".join(reader.NAME for reader in readers)
         raise ReadError(

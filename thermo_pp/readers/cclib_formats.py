@@ -187,6 +187,7 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
     kinds += [] if wavenumbers is None else ["frequencies"]
     if not kinds:
         kinds = ["energy"] if energy is not None else []
+    lines = text.line_numbers(at)
     return Calculation(
         path=text.source.name,
         sha256=text.source.sha256,
@@ -210,7 +211,7 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
         hessian_hartree_bohr2=hessian,
         optimised=optimised,
         kind_of_job=tuple(kinds),
-        where={field: text.line_number(place) for field, place in at.items()},
+        where={field: lines[field] for field in at},
         findings=tuple(findings),
     )
 

@@ -15,9 +15,11 @@ def matches(
     at = text.data.find(mark, start, end)
     while at >= 0:
         match = pattern.match(text.data, text.data.rfind(b"\n", 0, at) + 1, end)
+        behind = at + len(mark)
         if match is not None:
             found.append(match)
-        at = text.data.find(mark, at + len(mark), end)
+            behind = max(behind, match.end())
+        at = text.data.find(mark, behind, end)
     return found
 
 

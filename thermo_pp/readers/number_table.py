@@ -7,6 +7,10 @@ import warnings
 import numpy as np
 from numpy.typing import NDArray
 
+_DOT, _MINUS, _BLANK, _ZERO, _LINE_END = b".- 0\n"
+_MOST_DIGITS = 15
+"""Of a whole number that a float holds without rounding."""
+
 
 def number_table(data: bytes, count: int) -> NDArray[np.float64] | None:
     """Return the `count` numbers of a text, separated by blanks and line ends.
@@ -21,3 +25,51 @@ def number_table(data: bytes, count: int) -> NDArray[np.float64] | None:
         except (DeprecationWarning, ValueError):
             return None
     return found if len(found) == count and bool(np.isfinite(found).all()) else None
+
+
+def decimal_table(lines: NDArray[np.uint8]) -> tuple[bytes, NDArray[np.float64]] | None:
+    """Return what stands before the numbers of a table, and its numbers.
+
+    The table is one of decimal numbers in columns of one width, in lines of one length. Their digits are put together
+    as whole numbers and divided once, which gives what `float` gives, several times as fast.
+
+    Parameters
+    ----------
+    lines : shape (r, l), uint8
+        The characters of the lines, their ends included.
+
+    Returns
+    -------
+    tuple of (bytes, shape (r, c)) or None
+        None where any line is of another form.
+    """
+    dots = np.flatnonzero(lines[0] == _DOT)
+    decimals = lines.shape[1] - 2 - int(dots[-1]) if len(dots) else 0
+    if len(dots) < 2 or decimals < 1:
+        return None
+    width = int(dots[1] - dots[0])
+    start, whole = int(dots[0]) + decimals + 1 - width, width - decimals - 1
+    if start < 0 or whole < 1 or width - 1 > _MOST_DIGITS or np.any(np.diff(dots) != width):
+        return None
+    cells = np.ascontiguousarray(lines[:, start:-1].reshape(-1, width).T)  # (width, numbers)
+    digits = cells - np.uint8(_ZERO)  # what is below 0 turns into more than 9
+    number, minus, blank = digits < 10, cells[:whole] == _MINUS, cells[:whole] == _BLANK
+    before = number[:whole]
+    fits = (
+        bool((lines[:, -1] == _LINE_END).all())
+        and bool((cells[whole] == _DOT).all())
+        and bool(number[whole + 1 :].all())
+        and bool(before[-1].all())
+        and bool((blank | before | minus).all())
+        and bool((blank[:-1] | before[1:]).all())  # behind a sign or a digit, a digit
+    )
+    if not fits:
+        return None
+    digits[~number] = 0
+    values = np.zeros(cells.shape[1])
+    for place in (*range(whole), *range(whole + 1, width)):
+        values *= 10.0
+        values += digits[place]
+    values /= 10.0**decimals
+    np.negative(values, out=values, where=minus.any(axis=0))
+    return lines[:, :start].tobytes(), values.reshape(len(lines), -1)

@@ -24,7 +24,7 @@ from thermo_pp.readers.gamess.geometry import Geometry
 from thermo_pp.readers.gamess.options import Run
 from thermo_pp.readers.gamess.vibrations import PRINTED_CONSTANTS
 from thermo_pp.readers.line_marks import first_match, last_match, matches
-from thermo_pp.readers.text import CUT_SHORT, Text
+from thermo_pp.readers.text import CUT_SHORT, Text, holds
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -54,7 +54,7 @@ class Taken(NamedTuple):
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return b"GAMESS VERSION = " in head and _BANNER.search(head) is not None
+    return holds(head, b"GAMESS VERSION = ") and _BANNER.search(head) is not None
 
 
 def read(source: Source) -> Calculation:

@@ -28,7 +28,7 @@ from thermo_pp.readers.gaussian import choice, energies, geometry, levels, steps
 from thermo_pp.readers.gaussian import hessian as hessians
 from thermo_pp.readers.gaussian.choice import Chosen
 from thermo_pp.readers.gaussian.vibrations import PRINTED_CONSTANTS, PRINTED_STEPS
-from thermo_pp.readers.text import Text, plain_lines
+from thermo_pp.readers.text import Text, holds, plain_lines
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -45,7 +45,7 @@ _AGREE = 2e-7
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    if b"Gaussian, Inc." not in head:
+    if not holds(head, b"Gaussian, Inc."):
         return False
     return _BANNER.search(head.replace(b"\r\n", b"\n")) is not None
 

@@ -150,7 +150,7 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
         return Energy(_number(found.group(3)), "DFT", double, scf_at, name)
     reference = plain(name)
     wanted = _AS_LABELS.get(method or "", method or "")
-    if reference != "HF" and step.part.find(_SCALED) >= 0 and _may_be_double(step):
+    if reference != "HF" and step.part.has(_SCALED) and _may_be_double(step):
         raise part.error(
             scf_at,
             "a functional with scaled MP2, but no energy of a double hybrid (looked for ' E2(')",
@@ -162,7 +162,7 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
             return Energy(best[0], wanted if wanted in RANK else best[2], best[1], scf_at, name)
         return Energy(scf, "HF", scf_at, scf_at, name)
     label = "semiempirical" if _SEMIEMPIRICAL.fullmatch(reference) else "DFT"
-    if label == "DFT" and step.part.find(b" DFT=F ") >= 0 > step.part.find(b" DFT=T "):
+    if label == "DFT" and step.part.has(b" DFT=F ") and not step.part.has(b" DFT=T "):
         raise part.error(
             scf_at,
             f"an energy of {name!r}, but no functional is used (DFT=F)",
@@ -182,7 +182,7 @@ def _correlated(part: Text, wanted: str) -> tuple[float, int, str] | None:
     if wanted == "HF":
         return None
     if wanted == "":
-        printed = [label for label, (mark, _) in _CORRELATED.items() if part.find(mark) >= 0]
+        printed = [label for label, (mark, _) in _CORRELATED.items() if part.has(mark)]
         if printed:
             raise part.error(
                 part.find(_CORRELATED[printed[-1]][0]),

@@ -119,7 +119,7 @@ class Step:
         if self.archive is not None and self.archive.job in ("Freq", "SP", "Force"):
             return False
         if not self.route:
-            return self.part.find(_STOPPED) >= 0
+            return self.part.has(_STOPPED)
         return _OPT.search(self.route) is not None
 
     @cached_property

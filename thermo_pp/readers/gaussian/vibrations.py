@@ -110,7 +110,7 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
     thermo = part.find(THERMOCHEMISTRY, first)
     end = min(place for place in (following, thermo, part.end) if place >= 0)
     own = part.part(first, end)
-    fine = own.find(_LINE + b"-") >= 0
+    fine = own.has(_LINE + b"-")
     found = _fine_set(own, atoms) if fine else _set(own, atoms)
     _check(part, found, atoms)
     if fine and following >= 0:

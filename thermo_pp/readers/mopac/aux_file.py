@@ -30,8 +30,9 @@ _ERROR = re.compile(rb'^ ERROR(?:_MESSAGE)?="([^"\n]*)', re.MULTILINE)
 
 def sniff(head: bytes) -> bool:
     """Tell whether the file is an AUX file."""
-    match = _START.search(head[:4096])
-    return match is not None and b"MOPAC_VERSION=" in head
+    first = head[:4096]
+    started = b" START OF MOPAC " in first and _START.search(first) is not None
+    return started and b"MOPAC_VERSION=" in head
 
 
 class _Aux:

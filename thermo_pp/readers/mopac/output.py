@@ -13,7 +13,7 @@ from thermo_pp.data.elements import NUMBERS
 from thermo_pp.errors import Finding
 from thermo_pp.readers.mopac import force, job
 from thermo_pp.readers.mopac.masses import average
-from thermo_pp.readers.text import CUT_SHORT, Text
+from thermo_pp.readers.text import CUT_SHORT, Text, holds
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -69,7 +69,7 @@ _LARGE_GRADIENT = b"GRADIENT IS VERY LARGE"
 
 def sniff(head: bytes) -> bool:
     """Tell whether the file is a text output of MOPAC."""
-    found = b" CALCULATION RESULTS" in head and _HEADING.search(head) is not None
+    found = holds(head, b" CALCULATION RESULTS") and _HEADING.search(head) is not None
     return found and (_BANNER.search(head) is not None or b"MOPAC" in head[:4096])
 
 

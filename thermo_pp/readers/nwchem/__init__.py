@@ -38,17 +38,26 @@ __all__ = ["LOOKS_FOR", "NAME", "PRINTED_CONSTANTS", "read", "sniff"]
 NAME = "nwchem"
 LOOKS_FOR = "'Northwest Computational Chemistry Package (NWChem)'"
 
-_BANNER = re.compile(
-    rb"^[ \t]+Northwest Computational Chemistry Package \(NWChem\) (\S+)\r?\n[ \t]+-{20}",
-    re.MULTILINE,
-)
+_TITLE = b"Northwest Computational Chemistry Package (NWChem)"
+_BANNER = re.compile(rb"[ \t]+" + re.escape(_TITLE) + rb" (\S+)\r?\n[ \t]+-{20}")
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
 
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _BANNER.search(head) is not None
+    return _banner(head) is not None
+
+
+def _banner(data: bytes) -> re.Match[bytes] | None:
+    """Return the first heading of the program."""
+    at = data.find(_TITLE)
+    while at >= 0:
+        match = _BANNER.match(data, data.rfind(b"\n", 0, at) + 1)
+        if match is not None:
+            return match
+        at = data.find(_TITLE, at + 1)
+    return None
 
 
 def read(source: Source) -> Calculation:
@@ -104,7 +113,7 @@ def read(source: Source) -> Calculation:
         doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
     doubts += _ghosts(shape)
     doubts += _left_out(blocks, [task for task in all_tasks if task not in (main, run)], shape)
-    banner = _BANNER.search(text.data)
+    banner = _banner(text.data)
     if banner is not None:
         at["program_version"] = banner.start(1)
     thermochemistry = {} if modes is None else modes.thermochemistry

@@ -13,17 +13,18 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.readers import joined_hessian
+from thermo_pp.readers.line_marks import first_match
 from thermo_pp.readers.text import Text
 from thermo_pp.sources import Source
 
 FloatArray = NDArray[np.float64]
 
-_PREFIX = re.compile(rb"^[ \t]+prefix[ \t]+=[ \t]+(\S+?)\.?[ \t]*\r?$", re.MULTILINE)
+_PREFIX = re.compile(rb"[ \t]+prefix[ \t]+=[ \t]+(\S+?)\.?[ \t]*\r?$", re.MULTILINE)
 
 
 def beside(text: Text) -> Source | None:
     """Return the file with the Hessian beside the output, None where there is none."""
-    match = _PREFIX.search(text.data)
+    match = first_match(_PREFIX, b"prefix", text, text.start, text.end)
     if match is None:
         return None
     name = re.split(r"[/\\]", match.group(1).decode("utf-8", "replace"))[-1]

@@ -24,7 +24,7 @@ from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
 from thermo_pp.readers.orca import choice, geometry, layout, levels
 from thermo_pp.readers.orca.choice import Chosen
 from thermo_pp.readers.orca.vibrations import PRINTED_CONSTANTS, PRINTED_STEPS
-from thermo_pp.readers.text import Text, plain_lines
+from thermo_pp.readers.text import Text, holds, plain_lines
 from thermo_pp.records import Calculation, Printed
 from thermo_pp.sources import Source
 
@@ -40,7 +40,7 @@ _GRADIENT = b"CARTESIAN GRADIENT"
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _BANNER in head
+    return holds(head, _BANNER)
 
 
 def read(source: Source) -> Calculation:

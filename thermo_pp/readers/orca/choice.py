@@ -77,7 +77,7 @@ def choose(text: Text, layout: Layout) -> Chosen:
             unfinished, "an SCF without a final energy after it", mend="rerun or re-copy the output"
         )
     jobs = layouts.jobs(text)
-    optimises = text.find(CYCLE) >= 0
+    optimises = text.has(CYCLE)
     base, modes = _last_analysis(text, layout, finals, optimises)
     shape = geometry.before(layout, base.at)
 

@@ -278,9 +278,9 @@ def _other(part: Text, final: Final, method: str | None) -> str:
 
 def _is_density(part: Text, method: str | None, functional: bool) -> bool:
     """Tell whether the SCF is one of a density functional."""
-    if part.find(b".... DFT(GTOs)") >= 0:
+    if part.has(b".... DFT(GTOs)"):
         return True
-    if part.find(b".... Hartree-Fock(GTOs)") >= 0:
+    if part.has(b".... Hartree-Fock(GTOs)"):
         return False
     if method is None and not functional:
         raise part.error(

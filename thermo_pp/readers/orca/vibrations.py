@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.readers.number_table import number_table
+from thermo_pp.readers.number_table import decimal_table
 from thermo_pp.readers.orca.layout import Layout
 from thermo_pp.readers.text import CUT_SHORT, Text
 
@@ -200,22 +200,27 @@ def _modes(part: Text, heading: int, count: int) -> tuple[FloatArray, int]:
 
 def _whole_table(part: Text, first: int, count: int) -> FloatArray | None:
     """Return the columns of the table of modes in one go; None where a line of it is not as expected."""
-    widths = [6] * (count // 6) + ([count % 6] if count % 6 else [])
-    size = sum(width + count * (width + 1) for width in widths)
-    values = number_table(part.data[first : part.blank_line(first)], size)
-    if values is None:
-        return None
     columns = np.empty((count, count))
-    order = np.arange(count)
-    begin = done = 0
-    for width in widths:
-        end = begin + width + count * (width + 1)
-        block = values[begin + width : end].reshape(count, width + 1)
-        headed = values[begin : begin + width] == order[done : done + width]
-        if not headed.all() or not (block[:, 0] == order).all():
+    rows = [b"%d" % row for row in range(count)]
+    at, done, end = first, 0, part.blank_line(first)
+    while done < count:
+        width = min(6, count - done)
+        blocks = (count - done) // width  # all those of six columns at once
+        head = part.data.find(b"\n", at, end) + 1 - at
+        row = part.data.find(b"\n", at + head, end) + 1 - at - head
+        size = blocks * (head + count * row)
+        if head < 1 or row < 1 or at + size > end:
             return None
-        columns[done : done + width] = block[:, 1:].T
-        begin, done = end, done + width
+        lines = np.frombuffer(part.data, np.uint8, size, at).reshape(blocks, -1)
+        table = decimal_table(lines[:, head:].reshape(-1, row))
+        numbers = [b"%d" % mode for mode in range(done, done + blocks * width)]
+        if table is None or table[1].shape[1] != width:
+            return None
+        if lines[:, :head].tobytes().split() != numbers or table[0].split() != blocks * rows:
+            return None
+        across = table[1].reshape(blocks, count, width).transpose(0, 2, 1)
+        columns[done : done + len(numbers)] = across.reshape(-1, count)
+        at, done = at + size, done + len(numbers)
     return columns
 
 

@@ -33,7 +33,7 @@ _VERSION = re.compile(rb"P[Ss][Ii]4 (\d\S*)")
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _SNIFF.search(head) is not None
+    return BANNER in head and _SNIFF.search(head) is not None
 
 
 def read(source: Source) -> Calculation:
@@ -73,6 +73,7 @@ def read(source: Source) -> Calculation:
                 findings = (*findings, joined_hessian.not_joined(source, beside, line))
     if chosen.run is not None:
         at["optimised"] = chosen.run.at
+    lines = text.line_numbers(at)
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -104,7 +105,7 @@ def read(source: Source) -> Calculation:
         ended_normally=normally,
         kind_of_job=_kinds(chosen),
         printed={} if analysis is None else vibrations.thermochemistry(analysis),
-        where={field: text.line_number(place) for field, place in at.items()},
+        where={field: lines[field] for field in at},
         findings=findings,
     )
 
@@ -126,6 +127,6 @@ def _kinds(chosen: Chosen) -> tuple[str, ...]:
     if chosen.analysis is not None:
         kinds.append("frequencies")
     if not kinds:
-        gradient = chosen.part.find(b"-Total Gradient:") >= 0
+        gradient = chosen.part.has(b"-Total Gradient:")
         kinds.append("gradient" if gradient else "energy")
     return tuple(kinds)

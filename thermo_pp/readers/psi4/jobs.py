@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import NUMBERS
 from thermo_pp.errors import ReadError
+from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.units import BOHR_ANGSTROM
 
@@ -28,7 +29,7 @@ MOST_ANGSTROM = 1e6
 REPULSION_WITHIN = 1e-5
 """Relative agreement of the nuclear repulsion energy with the printed geometry."""
 
-_END = re.compile(rb"^\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)", re.MULTILINE)
+_END = re.compile(rb"\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)")
 _EXCEPTION = re.compile(
     rb"^(?:PsiException|[\w.]*(?:Error|Exception)|[\w.]*exceptions\.\w+): *(\S[^\r\n]*)"
     rb"|^Fatal Error: *(\S[^\r\n]*)",
@@ -44,17 +45,15 @@ _MODEL = re.compile(r"'model': \{[^}]*'method': '([^']+)'")
 _GEOMETRY = re.compile(
     rb"Geometry \(in (Angstrom|Bohr)\), charge = (-?\d{1,3}), multiplicity = (\d{1,3}):"
 )
-_RUNNING = re.compile(rb"^  Running in \S+ symmetry", re.MULTILINE)
+_RUNNING = re.compile(rb"  Running in \S+ symmetry")
 _SYMBOL = re.compile(r"([A-Za-z]{1,2})(?:[\d_]\w*)?")
 _GHOST = re.compile(r"Gh\(|\(Gh\)")
-_SERIES = re.compile(
-    rb"^  (?:(Using finite-differences of)|Computing (?:gradient|second-derivative) from)",
-    re.MULTILINE,
-)
-_OPTIMISER = re.compile(
-    rb"OPTKING \d|Structure for next step:|(Final optimized geometry and variables:)|"
-    rb"(Could not converge geometry optimization)"
-)
+_DIFFERENCES = b"\n  Using finite-differences of"
+_SERIES = (_DIFFERENCES, b"\n  Computing gradient from", b"\n  Computing second-derivative from")
+_OPTIMISER = re.compile(rb"OPTKING \d")
+_NEXT_STEP = b"Structure for next step:"
+_CONVERGED = b"Final optimized geometry and variables:"
+_FAILED = b"Could not converge geometry optimization"
 
 
 @dataclass(frozen=True)
@@ -142,7 +141,7 @@ def check_end(text: Text) -> bool:
     ReadError
         No end, an end before the text's own end, or a job that ended in an error.
     """
-    ends = list(_END.finditer(text.data, text.start, text.end))
+    ends = matches(_END, b"*** P", text, text.start, text.end)
     if not ends or ends[-1].start() < text.last(BANNER):
         raise text.error(
             len(text.data.rstrip()),
@@ -195,15 +194,15 @@ def inputs(text: Text) -> tuple[list[tuple[int, int]], tuple[Asked, ...]]:
 def evaluations(text: Text, echoes: list[tuple[int, int]]) -> list[Evaluation]:
     """Return every geometry at which an SCF was started, in the order of the file."""
     starts = []
-    for running in _RUNNING.finditer(text.data, text.start, text.end):
+    for running in matches(_RUNNING, b"  Running in ", text, text.start, text.end):
         at = text.last(b"Geometry (in ", running.start())
         if at >= 0 and not any(a <= running.start() < b for a, b in echoes):
             starts.append(at)
-    marks = [(match.start(), match.group(1)) for match in _SERIES.finditer(text.data)]
+    marks = sorted((at + 1, mark) for mark in _SERIES for at in text.all(mark))
     found, within, number, mark = [], False, 0, 0
     for start, end in pairwise([*starts, text.end]):
         while mark < len(marks) and marks[mark][0] < start:
-            within, number = marks[mark][1] is not None, 0
+            within, number = marks[mark][1] == _DIFFERENCES, 0
             mark += 1
         found.append(Evaluation(start, end, displaced=within and number > 0))
         number += 1
@@ -254,12 +253,14 @@ def optimisations(text: Text, real: list[Evaluation]) -> list[Optimisation]:
     """Return the optimisations of the file; `real` are its evaluations of its own geometries."""
     found: list[Optimisation] = []
     unfinished: int | None = None
-    for match in _OPTIMISER.finditer(text.data, text.start, text.end):
-        converged, failed = match.group(1) is not None, match.group(2) is not None
-        if not (converged or failed):
-            unfinished = match.start()
-        elif converged or unfinished is not None:
-            found.append(_optimisation(text, real, converged, match.start()))
+    marks = (_NEXT_STEP, _CONVERGED, _FAILED)
+    places = [(at, mark) for mark in marks for at in text.all(mark)]
+    places += [(match.start(), _NEXT_STEP) for match in _OPTIMISER.finditer(text.data)]
+    for at, mark in sorted(places):
+        if mark == _NEXT_STEP:
+            unfinished = at
+        elif mark == _CONVERGED or unfinished is not None:
+            found.append(_optimisation(text, real, mark == _CONVERGED, at))
             unfinished = None
     if unfinished is not None:
         found.append(_optimisation(text, real, False, unfinished))
@@ -275,4 +276,9 @@ def _optimisation(text: Text, real: list[Evaluation], converged: bool, at: int) 
 
 def steps_on(text: Text, start: int, end: int) -> bool:
     """Tell whether an optimiser takes a step between `start` and `end`."""
-    return _OPTIMISER.search(text.data, start, end) is not None
+    part = text.part(start, end)
+    marks = (_NEXT_STEP, _CONVERGED, _FAILED)
+    return (
+        any(part.has(mark) for mark in marks)
+        or _OPTIMISER.search(text.data, start, end) is not None
+    )

@@ -19,13 +19,13 @@ FloatArray = NDArray[np.float64]
 
 _PROCESS = re.compile(rb"^[ \t]+Process ID:[ \t]+(\d+)", re.MULTILINE)
 _MOLECULE = re.compile(rb"^[ \t]*molecule[ \t]+(\w+)[ \t]*\{", re.MULTILINE)
-_WRITE = re.compile(rb"hessian_write", re.IGNORECASE)
+_WRITE = b"hessian_write"
 _MOST_NAMES = 8
 
 
 def beside(text: Text) -> Source | None:
     """Return the file with the Hessian beside the output, None where there is none or none was asked for."""
-    if _WRITE.search(text.data) is None:
+    if _WRITE not in text.data.lower():
         return None
     stem = text.source.file_name.rpartition(".")[0]
     process = _PROCESS.search(text.data)

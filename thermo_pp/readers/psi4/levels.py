@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.text import Text
 
 RANKS: dict[str, int] = {
@@ -43,12 +44,15 @@ CALLED: dict[str, str | None] = {
 }
 """What an input calls a method, and which energy must then be in the output; functionals beside."""
 
-_SCF = re.compile(rb"^[ \t]*@(?:DF-|CD-)?(?:R|U|RO|CU)(HF|KS) Final Energy:", re.MULTILINE)
+_SCF = re.compile(rb"[ \t]*@(?:DF-|CD-)?(?:R|U|RO|CU)(HF|KS) Final Energy:")
 _FUNCTIONAL = re.compile(
     rb"=> (?:Composite Functional: ([^\r\n]+?)|([^\r\n]+?) Composite Functional) <="
 )
-_STARRED = re.compile(rb"^[ \t]*\* (\S+) total energy\b", re.MULTILINE)
-_TABLED = re.compile(rb"^[ \t]*(?:DF-|CD-)?(\S+) Total Energy \(a\.u\.\)", re.MULTILINE)
+_TOTALS = (
+    (re.compile(rb"[ \t]*\* (\S+) total energy\b"), b" total energy"),
+    (re.compile(rb"[ \t]*(?:DF-|CD-)?(\S+) Total Energy \(a\.u\.\)"), b" Total Energy (a.u.)"),
+)
+"""The lines of correlated energies, starred or in a table, and the mark of each."""
 _ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
@@ -122,8 +126,8 @@ def energies(part: Text) -> list[Energy]:
         return [Energy("CBS", part.number(at, "the extrapolated energy"), at)]
     if found[0].label == "DFT":
         return [_double_hybrid(part) or found[0]]
-    for pattern in (_STARRED, _TABLED):
-        for match in pattern.finditer(part.data, part.start, part.end):
+    for pattern, mark in _TOTALS:
+        for match in matches(pattern, mark, part, part.start, part.end):
             label = match.group(1).decode("utf-8", "replace")
             if label.split("-")[0] in _ASIDE:
                 continue
@@ -149,19 +153,19 @@ def unconverged(part: Text) -> int | None:
 
 def is_printed(text: Text, label: str) -> bool:
     """Tell whether an energy of the correlated method `label` stands anywhere in `text`."""
-    if label == "MP2" and text.find(b"==> DF-MP2 Energies <==") >= 0:
+    if label == "MP2" and text.has(b"==> DF-MP2 Energies <=="):
         return True
     wanted = label.encode()
     return any(
         match.group(1) == wanted
-        for pattern in (_STARRED, _TABLED)
-        for match in pattern.finditer(text.data, text.start, text.end)
+        for pattern, mark in _TOTALS
+        for match in matches(pattern, mark, text, text.start, text.end)
     )
 
 
 def is_extrapolated(text: Text) -> bool:
     """Tell whether an energy extrapolated to the basis-set limit stands anywhere in `text`."""
-    return text.find(_EXTRAPOLATED) >= 0
+    return text.has(_EXTRAPOLATED)
 
 
 def is_functional(text: Text, method: str) -> bool:
@@ -183,16 +187,16 @@ def _scf_energy(part: Text) -> Energy:
             "the SCF did not converge, so there is no energy",
             mend="rerun with more iterations or another starting guess",
         )
-    matches = list(_SCF.finditer(part.data, part.start, part.end))
-    if not matches:
+    finals = matches(_SCF, b" Final Energy:", part, part.start, part.end)
+    if not finals:
         raise part.error(
             part.start,
             "no final SCF energy for this geometry (looked for 'Final Energy:')",
             mend="check in the output that the SCF ran to its end",
         )
-    label = "DFT" if matches[-1].group(1) == b"KS" else "HF"
-    final = part.number(matches[-1].end(), "the final SCF energy")
-    at = part.find(b"    Total Energy =", matches[-1].end())
+    label = "DFT" if finals[-1].group(1) == b"KS" else "HF"
+    final = part.number(finals[-1].end(), "the final SCF energy")
+    at = part.find(b"    Total Energy =", finals[-1].end())
     if at >= 0:
         total = part.number(part.data.index(b"=", at), "the total SCF energy")
         if abs(total - final) > 1e-8:
@@ -201,7 +205,7 @@ def _scf_energy(part: Text) -> Energy:
                 f"total energy {total!r} differs from the final energy {final!r} printed above it",
                 mend="the output is damaged here; rerun or re-copy it",
             )
-    return Energy(label, final, matches[-1].end())
+    return Energy(label, final, finals[-1].end())
 
 
 def _double_hybrid(part: Text) -> Energy | None:

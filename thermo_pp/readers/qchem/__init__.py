@@ -28,7 +28,7 @@ from thermo_pp.readers.qchem import energies, jobs, levels, vibrations
 from thermo_pp.readers.qchem.energies import Energy
 from thermo_pp.readers.qchem.jobs import Job
 from thermo_pp.readers.qchem.vibrations import PRINTED_CONSTANTS
-from thermo_pp.readers.text import CUT_SHORT, Text
+from thermo_pp.readers.text import CUT_SHORT, Text, holds
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source
 
@@ -61,7 +61,7 @@ class Modes(NamedTuple):
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _MARK in head
+    return holds(head, _MARK)
 
 
 def read(source: Source) -> Calculation:

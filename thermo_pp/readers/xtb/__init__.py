@@ -60,7 +60,9 @@ _UNCONVERGED = re.compile(rb"^[ \t]*\*\*\* FAILED TO CONVERGE GEOMETRY OPTIMIZAT
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    return _BOX.search(head[:4096]) is not None or companion.sniff(head)
+    first = head[:4096]
+    boxed = b"x T B" in first and _BOX.search(first) is not None
+    return boxed or companion.sniff(head)
 
 
 def read(source: Source) -> Calculation:
@@ -103,6 +105,7 @@ def read(source: Source) -> Calculation:
     kinds = ("optimisation",) if optimised is not None else ()
     if found.wavenumbers_cm is not None:
         kinds = (*kinds, "frequencies")
+    lines = text.line_numbers(at)
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -127,7 +130,7 @@ def read(source: Source) -> Calculation:
         optimised=optimised,
         kind_of_job=kinds or ("energy",),
         printed=found.printed,
-        where={field: text.line_number(place) for field, place in at.items()},
+        where={field: lines[field] for field in at},
         findings=tuple(findings),
     )
 
