@@ -31,7 +31,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
-        "isotope_ratios",
+        "isotope_ratios", "repulsion",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (

@@ -1,0 +1,42 @@
+"""A geometry against the nuclear repulsion energy printed with it: a strong check of every atom and every place.
+
+A lost, doubled or altered atom does not agree with it, nor does the geometry of another step. The reader says which
+charges count (effective core potentials replace part of a nucleus, ghost atoms have none) and leaves the check out where
+something else counts in the energy, such as point charges.
+"""
+
+from __future__ import annotations
+
+from numpy.typing import ArrayLike
+
+from thermo_pp.formulas.repulsion import nuclear_repulsion
+from thermo_pp.records import Printed
+
+BOHR_DOUBT = 1e-6
+"""By how much (relative) a program's bohr may be another than ours: their constants are of several decades."""
+
+
+def differs(
+    printed: str, charges: ArrayLike, positions_angstrom: ArrayLike, rounding_angstrom: float
+) -> str | None:
+    """Return why the printed nuclear repulsion (hartree) is not that of the geometry, None where it is.
+
+    Parameters
+    ----------
+    printed : str
+        The digits.
+    charges : shape (n,)
+        Nuclear charges, 0 for ghost atoms.
+    positions_angstrom : shape (n, 3)
+    rounding_angstrom : float
+        By how much each coordinate may be off: half a unit of its last digit.
+    """
+    value = Printed(printed, "hartree", 0)
+    own = nuclear_repulsion(charges, positions_angstrom)
+    room = BOHR_DOUBT * own.energy_hartree + rounding_angstrom * own.slope_hartree_angstrom
+    if abs(own.energy_hartree - value.value) <= room + 0.51 * value.step + 1e-8:
+        return None
+    return (
+        f"the nuclear repulsion {printed} is not that of the geometry above it, "
+        f"{own.energy_hartree:.8f}"
+    )
