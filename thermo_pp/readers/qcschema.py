@@ -236,16 +236,14 @@ def _energy(document: Document, driver: str, method: str) -> tuple[float, tuple[
     return energies[0], keys[0]
 
 
-def _check_repulsion(
-    document: Document, numbers: NDArray[np.int64], positions: FloatArray
-) -> None:
+def _check_repulsion(document: Document, numbers: NDArray[np.int64], positions: FloatArray) -> None:
     """Check atoms and places against the nuclear repulsion, where all electrons are counted."""
     keys = ("properties", "nuclear_repulsion_energy")
     told = [("properties", "calcinfo_nalpha"), ("properties", "calcinfo_nbeta")]
     if any(document.get(*one) is None for one in (keys, *told)):
         return
-    charge = document.whole("molecule", "molecular_charge")
-    if sum(document.whole(*one) for one in told) != int(numbers.sum()) - charge:
+    charge = document.whole("molecule", "molecular_charge") or 0
+    if sum(document.whole(*one) or 0 for one in told) != int(numbers.sum()) - charge:
         return  # effective core potentials, or a method of valence electrons
     why = repulsion.differs(repr(document.number(*keys)), numbers, positions, _ROUNDING_ANGSTROM)
     if why is not None:

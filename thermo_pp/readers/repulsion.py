@@ -1,8 +1,8 @@
 """A geometry against the nuclear repulsion energy printed with it: a strong check of every atom and every place.
 
 A lost, doubled or altered atom does not agree with it, nor does the geometry of another step. The reader says which
-charges count (effective core potentials replace part of a nucleus, ghost atoms have none) and leaves the check out where
-something else counts in the energy, such as point charges.
+charges count (ghost atoms have none) and leaves the check out where something else counts: effective core potentials,
+point charges.
 """
 
 from __future__ import annotations

@@ -221,7 +221,12 @@ def _check_dispersion(
             float(text.exact_text(place + len(mark), "an energy"))
             for place, mark in zip(places, _PARTS, strict=True)
         ]
-        extra = scf - parts[0] - parts[1] - nuclear_repulsion(shape.numbers, shape.positions_angstrom).energy_hartree
+        extra = (
+            scf
+            - parts[0]
+            - parts[1]
+            - nuclear_repulsion(shape.numbers, shape.positions_angstrom).energy_hartree
+        )
         if abs(extra - float(match.group(1))) < 2e-5:
             return
     raise text.error(
