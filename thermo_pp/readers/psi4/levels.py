@@ -71,7 +71,12 @@ _DAMPING = {
 _PCM_SOLVENT = re.compile(rb"^[ \t]*Solvent name\s*[:.=]+\s*([^\r\n]+)", re.MULTILINE)
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
-_MOLECULAR = re.compile(rb"\n[ \t]+Number of MOs[ \t]+= (\d+)")
+_LEBEDEV = frozenset(
+    (6, 14, 26, 38, 50, 74, 86, 110, 146, 170, 194, 230, 266, 302, 350, 434, 590, 770, 974, 1202)
+    + (1454, 1730, 2030, 2354, 2702, 3074, 3470, 3890, 4334, 4802, 5294, 5810)
+)
+_OCCUPIED = ("FC", "OCC", "#FZDC", "#DOCC", "#SOCC")
+_ALPHA = re.compile(rb"\n[ \t]+Nalpha[ \t]+=[ \t]+(\d+)")
 _FROZEN_COUNT = re.compile(rb"Number of frozen core orbitals:\s*(\d+)")
 _FROZEN_TABLE = re.compile(
     rb"^[ \t]*(?:IRREP[ \t]+)?(?:# MOs[ \t]+)?(# FZDC|FC)[ \t]", re.MULTILINE
@@ -338,6 +343,8 @@ def _grid(part: Text, at: dict[str, int]) -> str | None:
     for mark in (b"Radial Points", b"Spherical Points"):
         place = part.need(mark, start, lacking=f"no {mark.decode().lower()} of the grid")
         words.append(part.number_text(place, "the number of grid points"))
+    if int(words[1]) not in _LEBEDEV:
+        raise part.expected(place, "the number of points of a Lebedev grid")
     place = part.find(b"Pruning Scheme", start)
     pruning = part.line(place).partition("=")[2].strip().lower() if place >= 0 else ""
     return f"({words[0]},{words[1]})" + (f" pruning {pruning}" if pruning else "")
@@ -378,21 +385,21 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
     rule = part.next_line(table.start(1))
     if part.rest(rule).strip(b"-= \t\r"):
         raise part.expected(rule, "a rule below the headings of the orbitals")
-    total = orbitals = 0
+    filling = [i for i, name in enumerate(columns) if name in _OCCUPIED]
+    total = filled = 0
     line = first = part.next_line(rule)
     while len(part.rest(line).split()) == len(columns):
         total += int(part.floats(line, 1, "a number of frozen orbitals", skip=column)[0])
-        if "#MOs" in columns:
-            orbitals += int(part.floats(line, 1, "a number of orbitals", skip=1)[0])
+        filled += sum(int(part.floats(line, 1, "a number of orbitals", skip=i)[0]) for i in filling)
         line = part.next_line(line)
     if line == first:
         raise part.expected(line, "a row of numbers of orbitals")
-    said = list(_MOLECULAR.finditer(part.data, part.start, rule))
-    if "#MOs" in columns and said and int(said[-1].group(1)) != orbitals:
+    alpha = _ALPHA.search(part.data, part.start, part.end)
+    if len(filling) > 1 and alpha is not None and int(alpha.group(1)) != filled:
         raise part.error(
             line,
-            f"{orbitals} orbitals in the table above, {said[-1].group(1).decode()} on line "
-            f"{part.line_number(said[-1].start(1))}",
+            f"{filled} occupied orbitals in the table above, {alpha.group(1).decode()} alpha "
+            f"electrons on line {part.line_number(alpha.start(1))}",
             mend=CUT_SHORT,
         )
     return total
