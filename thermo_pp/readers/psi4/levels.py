@@ -72,9 +72,10 @@ _PCM_SOLVENT = re.compile(rb"^[ \t]*Solvent name\s*[:.=]+\s*([^\r\n]+)", re.MULT
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
 _LEBEDEV = frozenset(
-    int(word)
-    for word in "6 14 26 38 50 74 86 110 146 170 194 230 266 302 350 434 590 770 974 1202 1454 1730 "
-    "2030 2354 2702 3074 3470 3890 4334 4802 5294 5810".split()
+    (
+        *(6, 14, 26, 38, 50, 74, 86, 110, 146, 170, 194, 230, 266, 302, 350, 434, 590, 770, 974),
+        *(1202, 1454, 1730, 2030, 2354, 2702, 3074, 3470, 3890, 4334, 4802, 5294, 5810),
+    )
 )
 """Sizes of the angular grids that exist (Lebedev and Laikov, Doklady Mathematics 59 (1999) 477), from memory."""
 _OCCUPIED = ("FC", "OCC", "#FZDC", "#DOCC", "#SOCC")
