@@ -38,7 +38,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "walk", "outcome", "codec", "answers", "store", "workers", "cluster", "stream",
     ),
     "audit": (
-        "levels", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
+        "limit", "levels", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
     ),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",

@@ -7,6 +7,8 @@ point charges.
 
 from __future__ import annotations
 
+import math
+
 from numpy.typing import ArrayLike
 
 from thermo_pp.formulas.repulsion import nuclear_repulsion
@@ -33,6 +35,8 @@ def differs(
     """
     value = Printed(printed, "hartree", 0)
     own = nuclear_repulsion(charges, positions_angstrom)
+    if not math.isfinite(own.energy_hartree):
+        return "two atoms of the geometry are at one place"
     room = BOHR_DOUBT * own.energy_hartree + rounding_angstrom * own.slope_hartree_angstrom
     if abs(own.energy_hartree - value.value) <= room + 0.51 * value.step + 1e-8:
         return None
