@@ -11,6 +11,7 @@ A formatted checkpoint has no mark of its end; its arrays must be whole, and its
 from __future__ import annotations
 
 import contextlib
+import difflib
 import importlib.util
 import io
 import logging
@@ -54,6 +55,9 @@ _HEADING = re.compile(
 )
 """Name, type and number of elements of an array; name, type and value of a number."""
 _PER_LINE = {b"I": 6, b"R": 5}
+_NAMES = ("Real atomic weights", "Vib-AtMass", "Total Energy", "SCF Energy")
+_NEAR = 0.85
+"""Names that are as much alike are one name, one of them damaged; "Integer atomic weights" has 0.78."""
 FORMATS: tuple[Format, ...] = (
     Format("ADF", "ADF", re.compile(rb"Amsterdam Density Functional +\(ADF\)")),
     Format("DALTON", "DALTON", re.compile(rb"Dalton - An Electronic Structure Program")),
@@ -403,6 +407,11 @@ def _check_arrays(text: Text) -> None:
                 f"there are {lines}",
                 mend=CUT_SHORT,
             )
+    names = [one.group()[:40].decode("utf-8", "replace").strip() for one in headings]
+    for needed in _NAMES:
+        near = [] if needed in names else difflib.get_close_matches(needed, names, 1, _NEAR)
+        if near:
+            raise text.expected(headings[names.index(near[0])].start(), f"the name {needed!r}")
     kind, wanted = headings[arrays[-1]].group(1), int(headings[arrays[-1]].group(2))
     if kind == b"C" and headings[arrays[-1]] is headings[-1]:
         lines = text.data.count(b"\n", headings[-1].end())
