@@ -2,25 +2,18 @@
 
 from __future__ import annotations
 
-from typing import NamedTuple
-
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from thermo_pp.units import BOHR_ANGSTROM
 
-
-class Repulsion(NamedTuple):
-    """Energy, hartree, and by how much it may change where each coordinate is off by one unit, hartree/angstrom."""
-
-    energy_hartree: float
-    slope_hartree_angstrom: float
+FloatArray = NDArray[np.float64]
 
 
-def nuclear_repulsion(charges: ArrayLike, positions_angstrom: ArrayLike) -> Repulsion:
-    """Return the Coulomb repulsion of point charges and how far rounded coordinates let it stray.
+def nuclear_repulsion(charges: ArrayLike, positions_angstrom: ArrayLike) -> float:
+    """Return the Coulomb repulsion of point charges, hartree.
 
-    V = sum_{a<b} Z_a Z_b / r_ab;  |dV| <= delta sum_a sum_x |dV/dx_a| for coordinates that are off by delta at most
+    V = sum_{a<b} Z_a Z_b / r_ab
 
     Parameters
     ----------
@@ -30,20 +23,36 @@ def nuclear_repulsion(charges: ArrayLike, positions_angstrom: ArrayLike) -> Repu
 
     Returns
     -------
-    Repulsion
-        The energy is infinite where two charges are at one place.
+    float
+        Infinite where two charges are at one place.
 
     Source: definition (Coulomb's law in atomic units).
     """
+    products, inverse, _ = _pairs(charges, positions_angstrom)
+    return 0.5 * float(np.vdot(products, inverse))
+
+
+def repulsion_slope(charges: ArrayLike, positions_angstrom: ArrayLike) -> float:
+    """Return how far rounded coordinates let the repulsion stray, hartree/angstrom: sum_a sum_x |dV/dx_a|.
+
+    Times the largest error of a coordinate it is a bound of the error of V, to first order. Parameters as in
+    `nuclear_repulsion`.
+    """
+    products, inverse, apart = _pairs(charges, positions_angstrom)
+    slopes = np.einsum("ab,abx->ax", products * inverse * inverse * inverse, apart)
+    return float(np.sum(np.abs(slopes))) / BOHR_ANGSTROM
+
+
+def _pairs(
+    charges: ArrayLike, positions_angstrom: ArrayLike
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return products of charges, inverse distances (0 where no charge is) and differences of places, bohr."""
     z = np.asarray(charges, dtype=np.float64)
     x = np.asarray(positions_angstrom, dtype=np.float64) / BOHR_ANGSTROM
     apart = x[:, np.newaxis, :] - x
     squares = np.einsum("abx,abx->ab", apart, apart)
-    np.fill_diagonal(squares, np.inf)
     products = z[:, np.newaxis] * z
-    with np.errstate(divide="ignore", invalid="ignore"):
-        inverse = np.where(products != 0.0, 1.0 / np.sqrt(squares), 0.0)
-        energy = 0.5 * float(np.sum(products * inverse))
-        slopes = np.einsum("ab,abx->ax", products * inverse**3, apart)
-        slope = float(np.sum(np.abs(slopes))) / BOHR_ANGSTROM
-    return Repulsion(energy, slope)
+    squares[products == 0.0] = np.inf
+    squares.flat[:: len(z) + 1] = np.inf
+    with np.errstate(divide="ignore"):
+        return products, 1.0 / np.sqrt(squares), apart

@@ -11,7 +11,7 @@ import math
 
 from numpy.typing import ArrayLike
 
-from thermo_pp.formulas.repulsion import nuclear_repulsion
+from thermo_pp.formulas.repulsion import nuclear_repulsion, repulsion_slope
 from thermo_pp.records import Printed
 
 BOHR_DOUBT = 1e-6
@@ -35,12 +35,9 @@ def differs(
     """
     value = Printed(printed, "hartree", 0)
     own = nuclear_repulsion(charges, positions_angstrom)
-    if not math.isfinite(own.energy_hartree):
+    if not math.isfinite(own):
         return "two atoms of the geometry are at one place"
-    room = BOHR_DOUBT * own.energy_hartree + rounding_angstrom * own.slope_hartree_angstrom
-    if abs(own.energy_hartree - value.value) <= room + 0.51 * value.step + 1e-8:
+    off = abs(own - value.value) - BOHR_DOUBT * own - 0.51 * value.step - 1e-8
+    if off <= 0.0 or off <= rounding_angstrom * repulsion_slope(charges, positions_angstrom):
         return None
-    return (
-        f"the nuclear repulsion {printed} is not that of the geometry above it, "
-        f"{own.energy_hartree:.8f}"
-    )
+    return f"the nuclear repulsion {printed} is not that of the geometry above it, {own:.8f}"

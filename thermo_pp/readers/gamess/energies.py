@@ -222,10 +222,7 @@ def _check_dispersion(
             for place, mark in zip(places, _PARTS, strict=True)
         ]
         extra = (
-            scf
-            - parts[0]
-            - parts[1]
-            - nuclear_repulsion(shape.numbers, shape.positions_angstrom).energy_hartree
+            scf - parts[0] - parts[1] - nuclear_repulsion(shape.numbers, shape.positions_angstrom)
         )
         if abs(extra - float(match.group(1))) < 2e-5:
             return
