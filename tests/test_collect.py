@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import shutil
 import signal
@@ -474,3 +475,58 @@ def test_archives_and_compressed_files_in_a_folder(tmp_path: Path) -> None:
         for finding in found.findings
         if finding.code == "duplicate-structure"
     ] == [f"the same file as {names[0]}"] * 2
+
+
+# -- a limit to the time
+
+
+@pytest.mark.skipif(not hasattr(signal, "setitimer"), reason="no timer on this system")
+@pytest.mark.parametrize("jobs", [1, 2])
+def test_an_output_that_takes_too_long_is_given_up(
+    jobs: int, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    from thermo_pp import audit
+
+    for number in range(14):  # more than are read without other processes
+        shutil.copy(PSI4 / "water_hf_energy.out", tmp_path / f"{number:02d}.out")
+
+    def read_source(source: Any) -> Any:
+        while source.name.endswith("03.out"):
+            with contextlib.suppress(Exception):  # as readers of libraries do
+                time.sleep(0.01)
+        return original(source)
+
+    original = audit.read_source
+    monkeypatch.setattr(audit, "read_source", read_source)  # processes are forked on Linux
+    if jobs > 1 and sys.platform != "linux":
+        pytest.skip("other processes are not forked here")
+    cache = tmp_path / ".cache"
+    found = tp.collect(tmp_path, jobs=jobs, cache=cache, time_limit=0.3)
+    ((path, error),) = found.failed
+    assert path.endswith("03.out")
+    assert error.what == "reading it took too long, more than 0.3 s"
+    assert len(found) == 13
+    monkeypatch.setattr(audit, "read_source", original)
+    again = tp.collect(tmp_path, jobs=1, cache=cache, time_limit=0.3)
+    assert len(again) == 14  # what took too long is not remembered
+
+
+def test_a_time_limit_must_be_above_nothing(tmp_path: Path) -> None:
+    with pytest.raises(StudyError, match="a time limit of 0 s"):
+        tp.collect(tmp_path, time_limit=0)
+
+
+def test_a_timer_of_somebody_else_is_left_alone() -> None:
+    from thermo_pp.audit.limit import time_limit
+
+    if not hasattr(signal, "setitimer"):
+        pytest.skip("no timer on this system")
+    before = signal.signal(signal.SIGALRM, lambda *_: None)
+    try:
+        signal.setitimer(signal.ITIMER_REAL, 100.0)
+        with time_limit(1e-3):
+            time.sleep(0.01)
+        assert signal.getitimer(signal.ITIMER_REAL)[0] > 90.0
+    finally:
+        signal.setitimer(signal.ITIMER_REAL, 0.0)
+        signal.signal(signal.SIGALRM, before)

@@ -31,14 +31,14 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
-        "isotope_ratios", "extrapolation",
+        "isotope_ratios", "extrapolation", "repulsion",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
         "walk", "outcome", "codec", "answers", "store", "workers", "cluster", "stream",
     ),
     "audit": (
-        "levels", "scaling", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
+        "limit", "levels", "scaling", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
     ),
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (

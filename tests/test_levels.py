@@ -87,6 +87,15 @@ def test_unknown_is_a_note_and_no_difference() -> None:
     )
 
 
+def test_a_semiempirical_method_has_no_basis_to_state() -> None:
+    own = {"basis": None, "method": "PM7", "grid": "none", "frozen_core": "none"}
+    for label in ("semiempirical", "force field", None):
+        pair = [single(name, energy_label=label, **own) for name in ("a.out", "b.out")]
+        assert level_findings(pair) == ()
+    found = level_findings([single("a.out", basis=None, energy_label=None), single("b.out")])
+    assert any("basis set" in finding.what for finding in found)
+
+
 def test_what_does_not_belong_to_a_level_is_not_compared() -> None:
     # no grid without a functional, no frozen core in DFT and HF, none in hydrogen
     assert level_findings([single("a.out"), single("h2.out", (1, 1), frozen_core="none")]) == ()

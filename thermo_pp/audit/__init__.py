@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
+from functools import partial
 from pathlib import Path
 
+from thermo_pp.audit import limit
 from thermo_pp.audit.duplicates import duplicate_findings
 from thermo_pp.audit.levels import folder_level_findings
+from thermo_pp.audit.limit import LONGEST_S
 from thermo_pp.audit.modes import mode_findings
 from thermo_pp.audit.printed import printed_findings
 from thermo_pp.audit.state import state_findings
 from thermo_pp.audit.symmetry import symmetry_findings
 from thermo_pp.collect import Cache, Collection, Outcome, Paths, Progress, gather
-from thermo_pp.errors import Finding, ReadError
+from thermo_pp.errors import Finding, ReadError, StudyError
 from thermo_pp.readers import claims, read_claimed
 from thermo_pp.records import Calculation
 from thermo_pp.sources import LeftOut, Looked, Oversize, Piece, pieces
@@ -30,6 +33,7 @@ def collect(
     jobs: int | None = None,
     cache: Cache = True,
     scheduler: str | None = None,
+    time_limit: float | None = LONGEST_S,
 ) -> Collection:
     """Read and audit every output in folders and files, compressed ones and those in archives too.
 
@@ -47,6 +51,9 @@ def collect(
     scheduler : str or None
         Address of a running Dask scheduler whose workers read the files (``tcp://host:8786``); needs
         the extra ``thermo-pp[cluster]`` and a file system that they share.
+    time_limit : float or None
+        Seconds after which an output is given up and listed as failed, not remembered; None for no
+        limit. There is none on Windows and where a thread reads (workers of a cluster).
 
     Returns
     -------
@@ -57,11 +64,16 @@ def collect(
     Raises
     ------
     StudyError
-        A path that is not there, fewer than one process, a cluster that does not answer.
+        A path that is not there, fewer than one process, a cluster that does not answer, a time
+        limit that is not above 0.
     """
+    if time_limit is not None and not time_limit > 0.0:
+        raise StudyError(
+            f"a time limit of {time_limit} s", where="time_limit", mend="give one above 0, or none"
+        )
     return gather(
         paths,
-        read_and_audit_file,
+        partial(read_and_audit_file, most_s=time_limit),
         audit_together,
         progress=progress,
         jobs=jobs,
@@ -70,17 +82,30 @@ def collect(
     )
 
 
-def read_and_audit_file(path: Path, name: str, looked: Looked) -> tuple[Outcome, ...]:
-    """Read what a file holds, one output or the members of an archive, and audit each alone."""
+def read_and_audit_file(
+    path: Path, name: str, looked: Looked, *, most_s: float | None = LONGEST_S
+) -> tuple[Outcome, ...]:
+    """Read what a file holds, one output or the members of an archive, and audit each alone.
+
+    An output that takes longer than `most_s` seconds is an error, and the answer is not remembered.
+    """
     outcomes: list[Outcome] = []
+    given_up = False
     try:
         for piece in pieces(path, name, looked):
             if isinstance(piece, LeftOut):
                 outcomes.append(Outcome(piece.name, skipped=piece.reason))
             else:
-                outcomes.append(_outcome(piece))
+                try:
+                    with limit.time_limit(most_s):
+                        outcomes.append(_outcome(piece))
+                except limit.TookTooLong:
+                    outcomes.append(_given_up(piece, most_s))
+                    given_up = True
     except ReadError as error:  # the file cannot be opened, or the archive is damaged
         outcomes.append(Outcome(name, skipped=error.what))
+    if given_up:
+        looked.at_whole(None)
     return tuple(outcomes)
 
 
@@ -107,6 +132,17 @@ def _outcome(piece: Piece) -> Outcome:
         return Outcome(piece.name, reader=reader, error=error)
     findings = (*calculation.findings, *audit_alone(calculation))
     return Outcome(piece.name, reader=reader, calculation=calculation, findings=findings)
+
+
+def _given_up(piece: Piece, most_s: float | None) -> Outcome:
+    """Return that an output took too long."""
+    reader = " and ".join(each.NAME for each in claims(piece.head))
+    error = ReadError(
+        f"reading it took too long, more than {most_s:g} s",
+        where=f"{piece.name}:1",
+        mend="look whether the file is damaged; else give more time (--time-limit), or leave it out",
+    )
+    return Outcome(piece.name, reader=reader, error=error)
 
 
 def audit_alone(calculation: Calculation) -> tuple[Finding, ...]:

@@ -37,8 +37,9 @@ def level_findings(
     tuple of Finding
         ``mixed-level`` (error) for each field that differs, naming the files of every value;
         ``unknown-level`` (note) for each field that some file does not state: it equals nothing and
-        differs from nothing. The grid is compared between density functionals only, the frozen core
-        between correlated methods and where there is a core.
+        differs from nothing. Semiempirical methods and force fields have no basis set to state. The
+        grid is compared between density functionals only, the frozen core between correlated
+        methods and where there is a core.
     """
     unique = list({calc.path: calc for calc in calculations}.values())
     findings: list[Finding] = []
@@ -62,12 +63,21 @@ def level_findings(
 
 def _matters(field: str, calc: Calculation) -> bool:
     """Tell whether the field belongs to the level of this calculation."""
+    if field == "basis":
+        return calc.basis is not None or not _parametrised(calc)
     if field == "grid":
         return calc.energy_label in ("DFT", None)
     if field == "frozen_core":
         has_core = any(int(z) > 2 for z in calc.numbers)
         return calc.energy_label not in ("DFT", "HF") and has_core
     return True
+
+
+def _parametrised(calc: Calculation) -> bool:
+    """Tell whether the method is one with a basis of its own (semiempirical, a force field): there is none to state."""
+    if calc.energy_label is None:  # a MOPAC job that prints no energy in hartree
+        return calc.grid == "none" and calc.frozen_core == "none"
+    return calc.energy_label in ("semiempirical", "force field")
 
 
 def _key(field: str, value: str) -> str:

@@ -203,6 +203,7 @@ class Collecting:
     jobs: int | None
     cache: bool
     scheduler: str | None
+    time_limit: float
 
     def collect(self, paths: Sequence[Path], showing: Showing) -> Collection:
         """Collect outputs, with a progress bar on standard error where that is a terminal."""
@@ -215,6 +216,7 @@ class Collecting:
                 jobs=self.jobs,
                 cache=self.cache,
                 scheduler=self.scheduler,
+                time_limit=self.time_limit,
             )
 
 
@@ -237,13 +239,27 @@ def collecting_options(command: Command) -> Command:
         metavar="ADDRESS",
         help="Let a running Dask cluster read the files: tcp://host:8786.",
     )
+    @click.option(
+        "--time-limit",
+        type=click.FloatRange(min=0.0, min_open=True),
+        default=60.0,
+        show_default=True,
+        metavar="SECONDS",
+        help="Give up an output that takes longer (not on Windows, not on a cluster).",
+    )
     @wraps(command)
     def with_collecting(
-        *args: Any, jobs: int | None, no_cache: bool, scheduler: str | None, **others: Any
+        *args: Any,
+        jobs: int | None,
+        no_cache: bool,
+        scheduler: str | None,
+        time_limit: float,
+        **others: Any,
     ) -> Any:
         if jobs is not None and scheduler is not None:
             raise click.UsageError("give either --jobs or --scheduler")
-        return command(*args, collecting=Collecting(jobs, not no_cache, scheduler), **others)
+        collecting = Collecting(jobs, not no_cache, scheduler, time_limit)
+        return command(*args, collecting=collecting, **others)
 
     return with_collecting  # type: ignore[return-value]
 

@@ -11,6 +11,7 @@ A formatted checkpoint has no mark of its end; its arrays must be whole, and its
 from __future__ import annotations
 
 import contextlib
+import difflib
 import importlib.util
 import io
 import logging
@@ -49,6 +50,14 @@ class Format(NamedTuple):
 
 
 _CHECKPOINT = "formatted checkpoint"
+_HEADING = re.compile(
+    rb"^[A-Za-z/][^\n]{39}   ([IRCLH])(?:   N=[ ]*(\d+)|     [^\n]*)[ ]*\r?\n", re.MULTILINE
+)
+"""Name, type and number of elements of an array; name, type and value of a number."""
+_PER_LINE = {b"I": 6, b"R": 5}
+_NAMES = ("Real atomic weights", "Vib-AtMass", "Total Energy", "SCF Energy")
+_NEAR = 0.85
+"""Names that are as much alike are one name, one of them damaged; "Integer atomic weights" has 0.78."""
 FORMATS: tuple[Format, ...] = (
     Format("ADF", "ADF", re.compile(rb"Amsterdam Density Functional +\(ADF\)")),
     Format("DALTON", "DALTON", re.compile(rb"Dalton - An Electronic Structure Program")),
@@ -196,7 +205,9 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
         method=_checkpoint_method(text)
         if form.program == _CHECKPOINT
         else _method(label, metadata),
-        basis=_words(metadata.get("basis_set")),
+        basis=_checkpoint_basis(text)
+        if form.program == _CHECKPOINT
+        else _words(metadata.get("basis_set")),
         solvent=_words(metadata.get("solvent_model")),
         numbers=numbers,
         positions_angstrom=positions,
@@ -349,6 +360,11 @@ def _checkpoint_method(text: Text) -> str:
     return re.sub(r"^(?:RO|R|U)(?=[A-Z])", "", method)
 
 
+def _checkpoint_basis(text: Text) -> str | None:
+    """Return the basis set: the last 30 columns of the second line."""
+    return text.line(text.next_line(0))[40:].strip() or None
+
+
 def _checkpoint_energy(text: Text, data: Any) -> tuple[float | None, str | None, int | None]:
     at = text.find(b"\nTotal Energy  ")
     scf_at = text.find(b"\nSCF Energy  ")
@@ -373,22 +389,37 @@ def _checkpoint_energy(text: Text, data: Any) -> tuple[float | None, str | None,
 
 
 def _check_arrays(text: Text) -> None:
-    """Refuse a formatted checkpoint that ends within an array."""
-    heading = re.compile(rb"^[^\n]{40}   ([IRC])   N=[ ]*(\d+)[ ]*\r?\n", re.MULTILINE)
-    last = None
-    for last in heading.finditer(text.data):  # noqa: B007
-        pass
-    if last is None:
+    """Refuse a formatted checkpoint that ends within an array, or in which an array has another length than it says."""
+    headings = list(_HEADING.finditer(text.data))
+    arrays = [i for i, one in enumerate(headings) if one.group(2) is not None]
+    if not arrays:
         raise text.error(text.end, "no arrays in this formatted checkpoint", mend=CUT_SHORT)
-    wanted = int(last.group(2))
-    per_line = {b"I": 6, b"R": 5, b"C": 5}[last.group(1)]
-    lines = [one for one in text.data[last.end() :].split(b"\n") if one.strip()]
-    count = sum(len(one.split()) for one in lines[: -(-wanted // per_line)])
-    if last.group(1) == b"C":
-        count = 12 * wanted if len(lines) >= -(-wanted // per_line) else 0
-        wanted = 1
-    if count < wanted or not text.data.endswith(b"\n"):
-        raise text.error(text.end, "the last array of this file is not whole", mend=CUT_SHORT)
+    for i in arrays:
+        kind, wanted = headings[i].group(1), int(headings[i].group(2))
+        if kind not in _PER_LINE:
+            continue
+        begin, last = headings[i].end(), i + 1 == len(headings)
+        stop = len(text.data) if last else headings[i + 1].start()
+        lines = text.data.count(b"\n", begin, stop)
+        if lines != -(-wanted // _PER_LINE[kind]):
+            raise text.error(
+                headings[i].start(),
+                f"this array should have {wanted} numbers on {-(-wanted // _PER_LINE[kind])} lines, "
+                f"there are {lines}",
+                mend=CUT_SHORT,
+            )
+    names = [one.group()[:40].decode("utf-8", "replace").strip() for one in headings]
+    for needed in _NAMES:
+        near = [] if needed in names else difflib.get_close_matches(needed, names, 1, _NEAR)
+        if near:
+            raise text.expected(headings[names.index(near[0])].start(), f"the name {needed!r}")
+    kind, wanted = headings[arrays[-1]].group(1), int(headings[arrays[-1]].group(2))
+    if kind == b"C" and headings[arrays[-1]] is headings[-1]:
+        lines = text.data.count(b"\n", headings[-1].end())
+        if lines < -(-wanted // 5):
+            raise text.error(text.end, "the last array of this file is not whole", mend=CUT_SHORT)
+    if not text.data.endswith(b"\n"):
+        raise text.error(text.end, "the last line of this file is not whole", mend=CUT_SHORT)
 
 
 def _checkpoint_masses(text: Text, count: int) -> list[float]:

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, NUMBERS, SYMBOLS
 from thermo_pp.formulas.normal_modes import NormalModes, normal_modes
 from thermo_pp.names import Origin
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.json_document import Document, decode
 from thermo_pp.readers.text import Text
 from thermo_pp.records import Calculation
@@ -43,6 +44,8 @@ _SNIFF = re.compile(rb'"schema_name"\s*:\s*"qc_?schema')
 _MEND = "write the result again with the program that made it, as JSON of QCSchema version 1 or 2"
 _AGREE_HARTREE = 1e-7
 _ASYMMETRY = 1e-4
+_ROUNDING_ANGSTROM = 1e-6
+"""Documents round coordinates to eight decimals of a bohr, or less."""
 
 
 def sniff(head: bytes) -> bool:
@@ -74,6 +77,7 @@ def read(source: Source) -> Calculation:
     method = document.word(*specification, "model", "method").upper()
     method = "HF" if method == "SCF" else method
     numbers, positions = _geometry(document)
+    _check_repulsion(document, numbers, positions)
     masses, origin = _masses(document, numbers)
     energy, energy_keys = _energy(document, driver, method)
     modes = hessian = None
@@ -220,7 +224,30 @@ def _energy(document: Document, driver: str, method: str) -> tuple[float, tuple[
                 f"{'.'.join(one)} is {energy!r}, but {'.'.join(keys[0])} is {energies[0]!r}",
                 mend="the energy of the method is in doubt; look into the program's own output",
             )
+    if method not in TOTALS and document.get("properties", "scf_xc_energy") is None:
+        for name, key in TOTALS.items():
+            value = document.get("properties", key)
+            if name != "HF" and isinstance(value, float) and value == energies[0]:
+                raise document.error(
+                    ("properties", key),
+                    f"the energy is that of {name}, but model.method is {method!r}",
+                    mend="the document is damaged; write it again",
+                )
     return energies[0], keys[0]
+
+
+def _check_repulsion(document: Document, numbers: NDArray[np.int64], positions: FloatArray) -> None:
+    """Check atoms and places against the nuclear repulsion, where all electrons are counted."""
+    keys = ("properties", "nuclear_repulsion_energy")
+    told = [("properties", "calcinfo_nalpha"), ("properties", "calcinfo_nbeta")]
+    if any(document.get(*one) is None for one in (keys, *told)):
+        return
+    charge = document.whole("molecule", "molecular_charge") or 0
+    if sum(document.whole(*one) or 0 for one in told) != int(numbers.sum()) - charge:
+        return  # effective core potentials, or a method of valence electrons
+    why = repulsion.differs(repr(document.number(*keys)), numbers, positions, _ROUNDING_ANGSTROM)
+    if why is not None:
+        raise document.error(keys, why, mend="the document is damaged; write it again")
 
 
 def _label(document: Document, method: str) -> str:

@@ -17,8 +17,9 @@ from typing import NamedTuple
 import numpy as np
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
+from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
-from thermo_pp.readers.gamess import energies, geometry, options, vibrations
+from thermo_pp.readers.gamess import energies, geometry, joined, options, vibrations
 from thermo_pp.readers.gamess.energies import Energy
 from thermo_pp.readers.gamess.geometry import Geometry
 from thermo_pp.readers.gamess.options import Run
@@ -80,7 +81,8 @@ def read(source: Source) -> Calculation:
             doubts.append(_not_located(taken.optimised_at))
     analysis = _analysis(text, run, taken)
     isotopes = [ISOTOPES[SYMBOLS[z]][MOST_ABUNDANT[z]] for z in shape.numbers]
-    masses, wavenumbers, vectors = np.array(isotopes), None, None
+    masses, wavenumbers, vectors, hessian = np.array(isotopes), None, None, None
+    left_out = None
     found: vibrations.Found = {}
     if shape.ghosts:
         doubts.append(_ghosts(text, shape, analysis))
@@ -88,6 +90,10 @@ def read(source: Source) -> Calculation:
         masses, at["masses_u"] = vibrations.masses(analysis, shape)
         wavenumbers, vectors, at["wavenumbers_cm"] = vibrations.modes(analysis, shape, masses)
         at["modes"] = at["wavenumbers_cm"]
+        punched = joined.beside(text) if len(shape.numbers) > 1 else None
+        if punched is not None:
+            hessian = joined.hessian(punched, masses, shape.positions_angstrom, wavenumbers)
+            left_out = punched if hessian is None else None
         found = vibrations.thermochemistry(analysis)
         if found:
             vibrations.check(analysis, found, wavenumbers)
@@ -103,6 +109,10 @@ def read(source: Source) -> Calculation:
     lines = text.line_numbers(
         at | {f"printed {key}": value[2] for key, value in found.items()} | doubt_places(doubts)
     )
+    findings = as_findings(doubts, source.name, lines)
+    if left_out is not None:
+        line = lines["wavenumbers_cm"]
+        findings = (*findings, joined_hessian.not_joined(source, left_out, line))
     kinds = [run.kind] + (["frequencies"] if analysis is not None else [])
     return Calculation(
         path=source.name,
@@ -125,6 +135,7 @@ def read(source: Source) -> Calculation:
         energy_label=None if energy is None else energy.label,
         wavenumbers_cm=wavenumbers,
         modes=vectors,
+        hessian_hartree_bohr2=hessian,
         optimised=taken.optimised,
         kind_of_job=tuple(dict.fromkeys(kinds)),
         printed={
@@ -132,7 +143,7 @@ def read(source: Source) -> Calculation:
             for key, (digits, unit, _) in found.items()
         },
         where={field: lines[field] for field in at},
-        findings=as_findings(doubts, source.name, lines),
+        findings=findings,
     )
 
 

@@ -10,7 +10,8 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-from thermo_pp.readers.gamess.geometry import Geometry, repulsion
+from thermo_pp.formulas.repulsion import nuclear_repulsion
+from thermo_pp.readers.gamess.geometry import Geometry
 from thermo_pp.readers.gamess.options import Run
 from thermo_pp.readers.line_marks import first_match, last_match
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -220,7 +221,9 @@ def _check_dispersion(
             float(text.exact_text(place + len(mark), "an energy"))
             for place, mark in zip(places, _PARTS, strict=True)
         ]
-        extra = scf - parts[0] - parts[1] - repulsion(shape)
+        extra = (
+            scf - parts[0] - parts[1] - nuclear_repulsion(shape.numbers, shape.positions_angstrom)
+        )
         if abs(extra - float(match.group(1))) < 2e-5:
             return
     raise text.error(

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import SYMBOLS
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.gamess.options import Run
 from thermo_pp.readers.line_marks import first_match
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -25,8 +26,6 @@ _ELECTRONS = re.compile(rb"^ NUMBER OF ELECTRONS +(KEPT IN THE CALCULATION IS +)
 _CHARGE = re.compile(rb"^ CHARGE OF MOLECULE +(?:AND PROPERTIES )?= +(-?\d+)", re.MULTILINE)
 _SPIN = re.compile(rb"^ (?:SPIN|STATE) MULTIPLICITY +(?:IS +)?= +(\d+)", re.MULTILINE)
 _ATOMS = re.compile(rb"^ TOTAL NUMBER OF ATOMS +(?:IS +)?= +(\d+)", re.MULTILINE)
-_BOHR_DOUBT = 1e-6
-"""By how much (relative) the program's bohr may be another than ours."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -101,25 +100,11 @@ def given(text: Text, run: Run) -> Geometry:
         )
     at = text.part(shape.end, run.end).find(_REPULSION)
     if at >= 0 and run.options.get("PP", "NONE") == "NONE":
-        printed = float(text.exact_text(at + len(_REPULSION), "the nuclear repulsion energy"))
-        own = repulsion(shape)
-        if abs(own - printed) > _BOHR_DOUBT * own + 2e-8:
-            raise text.error(
-                at,
-                f"the nuclear repulsion {printed!r} is not that of the geometry, {own:.8f}",
-                mend=CUT_SHORT,
-            )
+        printed = text.exact_text(at + len(_REPULSION), "the nuclear repulsion energy")
+        why = repulsion.differs(printed, shape.numbers, shape.positions_angstrom, 5.1e-11)
+        if why is not None:
+            raise text.error(at, why, mend=CUT_SHORT)
     return shape
-
-
-def repulsion(shape: Geometry) -> float:
-    """Return the repulsion of the nuclei, hartree."""
-    x = shape.positions_angstrom / BOHR_ANGSTROM
-    distances = np.linalg.norm(x[:, None, :] - x[None, :, :], axis=-1)
-    distances.flat[:: len(x) + 1] = np.inf
-    charges = shape.numbers.astype(np.float64)
-    with np.errstate(divide="ignore"):
-        return float((0.5 * np.outer(charges, charges) / distances).sum())
 
 
 def state(text: Text, run: Run, shape: Geometry) -> State:

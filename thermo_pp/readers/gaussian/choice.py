@@ -8,18 +8,23 @@ last energy and its geometry. "Optimization completed" in a frequency step means
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.gaussian import energies, geometry, vibrations
 from thermo_pp.readers.gaussian.energies import Energy
 from thermo_pp.readers.gaussian.geometry import Geometry
 from thermo_pp.readers.gaussian.steps import Step
 from thermo_pp.readers.gaussian.vibrations import Thermochemistry, Vibrations
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 _COMPLETED = b"Optimization completed"
 _STOPPED = b"Optimization stopped"
 _SUMS = 2.1e-6
+_REPULSION = b"    nuclear repulsion energy"
+_ELECTRONS = re.compile(rb"\n *(\d+) alpha electrons +(\d+) beta electrons")
+_CHARGES = re.compile(r"(?<![\w-])(?:charge|oniom|massage|field)(?![\w-])", re.IGNORECASE)
 
 
 @dataclass(frozen=True)
@@ -183,7 +188,27 @@ def _shape_before(step: Step, blocks: list[int], at: int) -> Geometry:
             f"{len(shape.numbers)} atoms in this geometry, but the program says NAtoms= {said}",
             mend="the output is damaged here; rerun or re-copy it",
         )
+    _check_repulsion(step, shape, at)
     return shape
+
+
+def _check_repulsion(step: Step, shape: Geometry, at: int) -> None:
+    """Check the geometry of an evaluation against the nuclear repulsion printed before it.
+
+    Not done where the electrons do not make up for the nuclei (effective core potentials, valence methods, a part of
+    the molecule) or point charges count too.
+    """
+    text, state = step.text, step.state()
+    place = text.data.rfind(_REPULSION, shape.at, at)
+    counted = None if place < 0 else _ELECTRONS.search(text.data, max(place - 300, shape.at), place)
+    if counted is None or state is None or _CHARGES.search(step.route) is not None:
+        return
+    if int(counted.group(1)) + int(counted.group(2)) != int(shape.numbers.sum()) - state[0]:
+        return
+    printed = text.exact_text(place + len(_REPULSION), "the nuclear repulsion energy")
+    why = repulsion.differs(printed, shape.numbers, shape.positions_angstrom, 5.1e-7)
+    if why is not None:
+        raise text.error(place, why, mend=CUT_SHORT)
 
 
 def _beside(step: Step, shape: Geometry) -> Energy | None:

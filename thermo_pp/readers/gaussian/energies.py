@@ -200,9 +200,9 @@ def _correlated(part: Text, wanted: str) -> tuple[float, int, str] | None:
             mend="give an output of HF, DFT, MP2 to MP5, CISD, CCSD, QCISD, BD or one with triples",
         )
     mark, pattern = _CORRELATED[key]
-    at = part.last(mark)
+    at = _last_in_text(part, mark)
     if key == "CCSD":
-        at = max(at, part.last(b"E(Corr)="))
+        at = max(at, _last_in_text(part, b"E(Corr)="))
     match = None if at < 0 else pattern.match(part.data, at)
     if match is None:
         raise part.error(
@@ -211,6 +211,14 @@ def _correlated(part: Text, wanted: str) -> tuple[float, int, str] | None:
             mend="check that the job ran to its end",
         )
     return _number(match.group(1)), at, key
+
+
+def _last_in_text(part: Text, mark: bytes) -> int:
+    """Return where a mark last stands outside an archive entry, which rounds its numbers; -1 without one."""
+    at = part.last(mark)
+    while at >= 0 and any(sign in part.line(at) for sign in "\\|"):
+        at = part.last(mark, at)
+    return at
 
 
 def _may_be_double(step: Step) -> bool:

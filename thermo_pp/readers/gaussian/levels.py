@@ -21,6 +21,7 @@ _ROUTE_GRID = re.compile(
 _DISPERSION = re.compile(rb"R6Disp: +(?:Grimme-)?(\S+?) Dispersion energy")
 _ROUTE_DISPERSION = re.compile(r"empiricaldispersion|(?<![\w])em=", re.IGNORECASE)
 _WITH_DISPERSION = re.compile(r"(?:97X?|PLYP|PE|\w\w)D[23]?(?![\w])")
+_CONTINUUM = b"Polarizable Continuum Model"
 _MODEL = re.compile(rb"\n +Model +: ([^\n]+)")
 _SOLVENT = re.compile(rb"\n +Solvent +: ([^,\n]+)(?:, *Eps *= *(\d+\.\d+))?")
 _FROZEN = re.compile(rb"\n NBasis= *\d+ +NAE= *\d+ +NBE= *\d+ +NFC= *(\d+)")
@@ -105,25 +106,28 @@ def _dispersion(step: Step, energy: Energy, density: bool, at: dict[str, int]) -
         return match.group(1).decode("utf-8", "replace")
     names = f"{method_name(step)} {plain(energy.scf_name)}"
     asked = _ROUTE_DISPERSION.search(step.route) or _WITH_DISPERSION.search(names)
-    return None if asked else "none"
+    elsewhere = density and _DISPERSION.search(step.text.data) is not None
+    return None if asked or elsewhere else "none"
 
 
 def _solvent(step: Step, energy: Energy, at: dict[str, int]) -> str | None:
-    asked = "scrf" in step.route.lower()
+    asked = "scrf" in step.route.lower() and "scrf=check" not in step.route.lower()
     part: Text = step.text.part(step.start, energy.scf_at)
-    place = part.find(b"Polarizable Continuum Model")
+    place = part.find(_CONTINUUM)
     if place < 0:
-        return None if asked and "scrf=check" not in step.route.lower() else "none"
+        elsewhere = step.text.data.find(_CONTINUUM) >= 0
+        cavity = part.find(b"\n Solvent  ") >= 0 or part.find(b"\n Model  ") >= 0
+        return None if asked or elsewhere or cavity else "none"
     at["solvent"] = place
     end = min(place + 4000, part.end)
     model = _MODEL.search(part.data, place, end)
     solvent = _SOLVENT.search(part.data, place, end)
-    smd = part.find(b"SMD") >= 0
+    if solvent is None:
+        return None
+    smd = step.part.find(b"SMD") >= 0
     name = "SMD" if smd else "PCM"
     if model is not None and not smd:
-        name = model.group(1).decode("utf-8", "replace").strip().rstrip(".")
-    if solvent is None:
-        return name
+        name = model.group(1).decode("utf-8", "replace").partition("(")[0].strip().rstrip(".")
     called = solvent.group(1).decode("utf-8", "replace").strip().rstrip(".").lower()
     if called == "generic" and solvent.group(2) is not None:
         return f"{name}(dielectric {float(solvent.group(2)):g})"

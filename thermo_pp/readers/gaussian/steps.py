@@ -18,6 +18,10 @@ NORMAL = b"Normal termination of Gaussian"
 _ERROR = b"Error termination"
 _STEPS = b"-- Number of steps exceeded"
 _STOPPED = b"Optimization stopped."
+_DONE = b" SCF Done:"
+_VIRIAL = b"-V/T"
+_BEHIND_DONE = 600
+"""Within so many bytes behind its energy an SCF prints its virial ratio."""
 _GOES_ON = (b"Proceeding to internal job step", b"Entering Link 1 =", b"Initial command:")
 _ROUTE = re.compile(rb"\n (-{3,})\n( *#[^\n]*(?:\n(?! ---)[^\n]*)*)\n (-{3,})\n")
 _GEOMETRY = re.compile(rb"\n +(Standard|Input|Z-Matrix|Principal axis) orientation: *\n -{20,}\n")
@@ -157,8 +161,16 @@ class Step:
 
     @cached_property
     def energies_at(self) -> list[int]:
-        """Where the SCFs are done, in order."""
-        return self.part.all(b" SCF Done:")
+        """Where the SCFs are done, in order; ReadError where one has lost its energy."""
+        found = self.part.all(_DONE)
+        for at in self.part.all(_VIRIAL):  # printed with each of them
+            if self.text.data.rfind(_DONE, max(at - _BEHIND_DONE, self.start), at) < 0:
+                raise self.text.error(
+                    at,
+                    f"an SCF without its energy before this line (looked for {_DONE.decode()!r})",
+                    mend=CUT_SHORT,
+                )
+        return found
 
     @cached_property
     def atoms(self) -> int | None:
@@ -216,6 +228,7 @@ def steps(text: Text) -> list[Step]:
             mend=CUT_SHORT,
         )
     for step in found:
+        _check_whole(step)
         if _BOTH.search(step.route) is not None or _PATH.search(step.route) is not None:
             raise text.error(
                 step.route_at,
@@ -223,3 +236,16 @@ def steps(text: Text) -> list[Step]:
                 mend="give the outputs of its parts, or a job of one structure at one level",
             )
     return found
+
+
+def _check_whole(step: Step) -> None:
+    """Refuse a step in which another one begins: the end of the one before is lost."""
+    done = step.part.find(_DONE)
+    begins = [step.text.data.find(mark, done, step.end) for mark in _GOES_ON] if done >= 0 else []
+    at = min((at for at in begins if at >= 0), default=-1)
+    if at >= 0:
+        raise step.text.error(
+            at,
+            f"a step begins here, but the one before has no end (looked for {NORMAL.decode()!r})",
+            mend="the output is damaged, or the step before did not end; give the steps apart",
+        )

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from collections import Counter
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,6 +26,8 @@ _START = re.compile(rb"^ START OF MOPAC (?:FILE|PROGRAM)\b", re.MULTILINE)
 _JOB = b" START OF MOPAC FILE"
 _END = re.compile(rb"^ END OF MOPAC (?:FILE|PROGRAM)\b", re.MULTILINE)
 _NEXT = re.compile(rb"[ \t]*(?:#|\r?\n|END OF|START OF|[A-Za-z][^ \t\r\n]*[=:\[])")
+_FORMULA = re.compile(rb'^ EMPIRICAL_FORMULA="([A-Za-z\d ]*?) *=', re.MULTILINE)
+_ELEMENT = re.compile(r"([A-Z][a-z]?)(\d*)")
 _ERROR = re.compile(rb'^ ERROR(?:_MESSAGE)?="([^"\n]*)', re.MULTILINE)
 
 
@@ -234,6 +237,16 @@ def _elements(aux: _Aux) -> NDArray[np.int64]:
     unknown = [symbol for symbol in symbols if symbol not in NUMBERS]
     if unknown:
         raise aux.text.error(found[1], f"{unknown[0][:20]!r} is no element", mend=CUT_SHORT)
+    formula = _FORMULA.search(aux.text.data, aux.text.start, aux.text.end)
+    if formula is not None:
+        words = [_ELEMENT.fullmatch(word) for word in formula.group(1).decode().split()]
+        told = {word.group(1): int(word.group(2) or 1) for word in words if word is not None}
+        if None not in words and not set(symbols) & {"D", "T"} and told != Counter(symbols):
+            raise aux.text.error(
+                found[1],
+                f"not the elements of the formula on line {aux.text.line_number(formula.start())}",
+                mend=CUT_SHORT,
+            )
     return np.array([NUMBERS[symbol] for symbol in symbols], dtype=np.int64)
 
 

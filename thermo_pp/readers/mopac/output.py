@@ -237,8 +237,12 @@ def _geometry(part: Text) -> tuple[IntArray, FloatArray, int]:
     for match, pattern in tables:
         read = _rows(part, match.end(), pattern)
         if read is not None:
-            decimals, numbers, positions = read
+            decimals, numbers, positions, end = read
             found.append((min(decimals, 8), match.end(), numbers, positions))
+            behind = _rows(part, end, _PLAIN) if pattern is _ATOM else None
+            if behind is not None and _CARTESIAN.search(part.data, end, behind[3]) is None:
+                # the same once more, its heading damaged
+                found.append((min(behind[0], 8), end, behind[1], behind[2]))
         elif pattern is _ATOM:
             raise part.expected(match.end(), "the position of atom 1")
     if any(len(one[2]) != len(found[0][2]) for one in found):
@@ -281,8 +285,8 @@ def _distances(positions: FloatArray) -> FloatArray:
 
 def _rows(
     part: Text, at: int, pattern: re.Pattern[bytes]
-) -> tuple[int, IntArray, FloatArray] | None:
-    """Return decimals, atomic numbers and positions of a table, None where no atom follows."""
+) -> tuple[int, IntArray, FloatArray, int] | None:
+    """Return decimals, atomic numbers and positions of a table and its end, None where no atom follows."""
     for _ in range(4):  # headings and empty lines
         if pattern.match(part.data, at, part.end) is not None:
             break
@@ -308,7 +312,7 @@ def _rows(
     rest = part.rest(at).split()
     if len(rest) >= 4 and rest[0].isdigit() and int(rest[0]) == len(numbers) + 1:
         raise part.expected(at, f"the position of atom {len(numbers) + 1}")
-    return decimals, np.array(numbers, dtype=np.int64), np.array(positions)
+    return decimals, np.array(numbers, dtype=np.int64), np.array(positions), at
 
 
 def _masses(part: Text, numbers: IntArray) -> tuple[FloatArray, int]:

@@ -13,7 +13,7 @@ from thermo_pp.errors import ReadError
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 END = b"Total times  cpu:"
-_HEADING = re.compile(rb"NWChem ([A-Z][^\r\n]*\S)[ \t]*\r?\n +---")
+_HEADING = re.compile(rb"NWChem ([A-Z][^\r\n]*\S)[ \t]*\r?\n( +---)?")
 _STOPPED = re.compile(rb"\n -{72}\r?\n ([^\r\n]*?) *\d*\r?\n -{72}")
 _FAILED = re.compile(rb"!! warning: ([^\r\n]* failed)")
 _INPUT = b"Input Module"
@@ -84,11 +84,17 @@ def tasks(text: Text) -> list[Task]:
             raise _stopped(text)
         ended = unconverged.start(1)
     # one pass over the bytes, the dearest of all; a title of the same words has fewer blanks before it
-    headings = [
-        (match.start(), match.group(1))
-        for match in _HEADING.finditer(text.data)
-        if text.data[match.start() - 10 : match.start()] == b"          "
-    ]
+    headings = []
+    for match in _HEADING.finditer(text.data):
+        if text.data[match.start() - 10 : match.start()] != b"          ":
+            continue
+        name = match.group(1)
+        if match.group(2) is not None:
+            headings.append((match.start(), name))
+        elif name in _READ or name.endswith(b" Module"):
+            raise text.error(
+                match.start(), "a heading of a module without the rule below it", mend=CUT_SHORT
+            )
     inputs = [index for index, (_, name) in enumerate(headings) if name == _INPUT]
     if not inputs or headings[inputs[-1]][0] > ended:
         raise _stopped(text)

@@ -20,8 +20,9 @@ from __future__ import annotations
 
 import re
 
+from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
-from thermo_pp.readers.orca import choice, geometry, layout, levels
+from thermo_pp.readers.orca import choice, geometry, joined, layout, levels
 from thermo_pp.readers.orca.choice import Chosen
 from thermo_pp.readers.orca.vibrations import PRINTED_CONSTANTS, PRINTED_STEPS
 from thermo_pp.readers.text import Text, holds, plain_lines
@@ -75,11 +76,19 @@ def read(source: Source) -> Calculation:
         at["optimised"] = chosen.run.at
     doubts = _doubts(text, marks, chosen, value)
     printed = {} if modes is None else modes.printed
+    written = joined.beside(text) if modes is not None and len(shape.numbers) > 1 else None
+    hessian = None
+    if written is not None and modes is not None:
+        hessian = joined.hessian(written, shape, masses, modes)
     lines = text.line_numbers(
         at
         | {f"printed {key}": place for key, (_, _, place) in printed.items()}
         | doubt_places(doubts)
     )
+    findings = as_findings(doubts, source.name, lines)
+    if written is not None and hessian is None:
+        line = lines["wavenumbers_cm"]
+        findings = (*findings, joined_hessian.not_joined(source, written, line))
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -101,6 +110,7 @@ def read(source: Source) -> Calculation:
         energy_label=None if value is None else energy.label,
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
+        hessian_hartree_bohr2=hessian,
         optimised=None if chosen.run is None else chosen.run.converged,
         kind_of_job=_kinds(text, marks, chosen),
         printed={
@@ -108,7 +118,7 @@ def read(source: Source) -> Calculation:
             for key, (digits, unit, _) in printed.items()
         },
         where={field: lines[field] for field in at},
-        findings=as_findings(doubts, source.name, lines),
+        findings=findings,
     )
 
 

@@ -7,8 +7,10 @@ which that optimisation ended. Without modes it is the last energy and its geome
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.orca import energies, geometry, levels, vibrations
 from thermo_pp.readers.orca import layout as layouts
 from thermo_pp.readers.orca.energies import Energy
@@ -16,11 +18,16 @@ from thermo_pp.readers.orca.geometry import Geometry
 from thermo_pp.readers.orca.layout import FREQUENCIES, Final, Layout
 from thermo_pp.readers.orca.levels import Asked
 from thermo_pp.readers.orca.vibrations import Vibrations
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 CYCLE = b"GEOMETRY OPTIMIZATION CYCLE"
 CONVERGED = b"THE OPTIMIZATION HAS CONVERGED"
+_STEPS = (CYCLE, CONVERGED, b"FINAL ENERGY EVALUATION AT THE STATIONARY POINT")
+_ANALYSED = (FREQUENCIES, b"NORMAL MODES", b"THERMOCHEMISTRY AT")
+_REPULSION = b"\nNuclear Repulsion  :"
+_ELECTRONS = re.compile(rb"\n *Number of Electrons +NEL +\.\.\.\. +(\d+)")
 _PATHS = (b"Molecular Dynamics", b"MOLECULAR DYNAMICS", b"ORCA-MD", b"Nudged Elastic Band")
+_OTHER_CHARGES = (b"core charge reduced", b"ointcharge", b"oint charge", b"POINT CHARGE", b"QMMM")
 _THERMO_STEP = 2.1e-8
 
 
@@ -76,10 +83,12 @@ def choose(text: Text, layout: Layout) -> Chosen:
         raise text.error(
             unfinished, "an SCF without a final energy after it", mend="rerun or re-copy the output"
         )
+    _check_headings(text, layout)
     jobs = layouts.jobs(text)
     optimises = text.has(CYCLE)
     base, modes = _last_analysis(text, layout, finals, optimises)
     shape = geometry.before(layout, base.at)
+    _check_repulsion(text, base, shape)
 
     def energy_of(final: Final) -> tuple[Energy, Asked]:
         job = next(i for i, (start, end) in enumerate(jobs) if final.at < end or i == len(jobs) - 1)
@@ -119,6 +128,44 @@ def _refuse_paths(text: Text, layout: Layout) -> None:
         )
 
 
+def _check_headings(text: Text, layout: Layout) -> None:
+    """Refuse a heading of an analysis whose rules are lost: it would not be seen."""
+    for mark in _ANALYSED:
+        for at in text.all(b"\n" + mark):
+            if layout.next(mark, at) != at + 1:
+                raise text.error(
+                    at + 1, "a heading without the lines of dashes around it", mend=CUT_SHORT
+                )
+    modes = layout.all(b"NORMAL MODES")
+    if len(modes) > len(layout.all(FREQUENCIES)):
+        raise text.error(
+            modes[-1],
+            f"normal modes without their wavenumbers (looked for {FREQUENCIES.decode()!r})",
+            mend=CUT_SHORT,
+        )
+
+
+def _check_repulsion(text: Text, final: Final, shape: Geometry) -> None:
+    """Check the geometry of an evaluation against the nuclear repulsion printed with its energy.
+
+    Not done where effective core potentials, ghost or dummy atoms or point charges are in the file.
+    """
+    at = text.part(final.start, final.at).last(_REPULSION)
+    if at < 0 or shape.dummies:
+        return
+    printed = text.exact_text(at + len(_REPULSION), "the nuclear repulsion energy")
+    why = repulsion.differs(printed, shape.numbers, shape.positions_angstrom, 5.1e-7)
+    if why is None:
+        return
+    counted = _ELECTRONS.search(text.data, final.start, final.at)
+    charge = levels.charge_and_multiplicity(text, final.at)[0]
+    nuclei = int(shape.numbers.sum())
+    whole = counted is None or charge is None or int(counted.group(1)) == nuclei - charge
+    begin = max(text.last(b"INPUT FILE", final.at), 0)
+    if whole and not any(text.find(mark, begin) >= 0 for mark in _OTHER_CHARGES):
+        raise text.error(at + 1, why, mend=CUT_SHORT)
+
+
 def _last_analysis(
     text: Text, layout: Layout, finals: list[Final], optimises: bool
 ) -> tuple[Final, Vibrations | None]:
@@ -134,7 +181,7 @@ def _last_analysis(
                 mend="give the program's whole output",
             )
         shape = geometry.before(layout, heading)
-        steps_on = optimises and 0 <= text.find(CYCLE, heading) < end
+        steps_on = optimises and any(0 <= text.find(mark, heading) < end for mark in _STEPS)
         if steps_on and last is None:
             last = geometry.before(layout, finals[-1].at)
         if not steps_on or (last is not None and shape.same(last)):

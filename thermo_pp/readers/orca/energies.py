@@ -242,8 +242,9 @@ def _coupled_cluster(
     found = {match.group(1): match for match in _CC_TOTAL.finditer(part.data, part.start, part.end)}
     match = found.get(b"TOT")
     place = part.last(_TRIPLES)
-    if place >= 0 and part.line(place + 1).split()[-1] == "ON" and not excited:
-        with_triples = [each for name, each in found.items() if name.endswith(b"(T)")]
+    with_triples = [each for name, each in found.items() if name.endswith(b"(T)")]
+    asked = bool(with_triples) if place < 0 else part.line(place + 1).split()[-1] == "ON"
+    if asked and not excited:
         if not with_triples:
             raise part.error(
                 part.end, f"{label}(T) was asked for, but no such energy is here", mend="rerun it"

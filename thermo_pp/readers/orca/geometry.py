@@ -18,15 +18,15 @@ from thermo_pp.data.elements import AVERAGE_MASSES, NUMBERS
 from thermo_pp.names import Origin
 from thermo_pp.readers.orca.layout import COORDINATES, Layout
 from thermo_pp.readers.text import Text
+from thermo_pp.units import BOHR_ANGSTROM
 
 FloatArray = NDArray[np.float64]
 
 IN_BOHR = b"CARTESIAN COORDINATES (A.U.)"
-BOHR_ANGSTROM = 0.529177
-"""Good to the digits that are printed; only to compare the two blocks."""
 _LABEL = re.compile(r"([A-Z][a-z]?)(?:\(\s*\d+\))?(:?)(?:\(\s*\d+\))?>?")
 _DUMMY = ("DA", "X", "XX", "Xx", "Da")
-_PRINTED_TWICE = 5e-5
+_PRINTED_TWICE = 3e-6
+"""Six decimals of both blocks."""
 _SAME = 2e-5
 
 

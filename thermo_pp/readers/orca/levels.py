@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from thermo_pp.readers.orca.energies import Energy, is_without_scf
 from thermo_pp.readers.orca.layout import Layout
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 _NAMES = (
     "HFS LDA LSD VWN VWN5 VWN3 PWLDA XALPHA BP86 BP BLYP OLYP GLYP XLYP PW91 MPWPW MPWLYP PBE RPBE "
@@ -31,6 +31,10 @@ _CORRELATED = re.compile(
     r"LCCSD|BD|BD\(T\)|CCSDT|CC2|CC3|CCD|DCSD|DCD|CCSDT-1)(?:-F12(?:D)?(?:/RI)?)?)"
 )
 _MULTICONFIGURATION = re.compile(r"(?:DLPNO-|FIC-|SC-|RI-|PC-)*(?:CASSCF|NEVPT2|MRCI|CASPT2)")
+_HEADING = b"                INPUT FILE"
+_FIRST_LINE = b"\n|  1> "
+_END_OF_INPUT = b"****END OF INPUT****"
+_LINE = re.compile(rb"\n\| *(\d+)>")
 _BANG = re.compile(rb"^\|\s*\d+>\s*(?:[^\n]*?\W)?!([^\n]*)", re.MULTILINE)
 _FUNCTIONAL = re.compile(
     rb"^\|\s*\d+>[^\n#]*\bfunctional\s+([^\s#]+)", re.MULTILINE | re.IGNORECASE
@@ -105,10 +109,10 @@ class Asked:
 
 def asked(text: Text, before: int, job: int, jobs: int) -> Asked:
     """Return what the last input before an offset asks for, in its `job`-th of `jobs` parts."""
-    start = text.last(b"INPUT FILE", before)
-    end = text.find(b"****END OF INPUT****", max(start, 0))
-    if start < 0 or end < 0:
-        return Asked((), (), max(start, 0), text.part(0, 0))
+    echo = _echo(text, before)
+    if echo is None:
+        return Asked((), (), 0, text.part(0, 0))
+    start, end = echo
     part = text.part(start, end)
     if jobs > 1:
         cuts = [start, *(m.start() for m in re.finditer(rb"(?i)\$new_job", part.data[:end])), end]
@@ -123,6 +127,30 @@ def asked(text: Text, before: int, job: int, jobs: int) -> Asked:
     for named in _FUNCTIONAL.finditer(part.data, part.start, part.end):
         functionals.append(named.group(1).decode("utf-8", "replace").upper().strip("\"'"))
     return Asked(tuple(words), tuple(functionals), part.start, part, jobs == 1)
+
+
+def _echo(text: Text, before: int) -> tuple[int, int] | None:
+    """Return where the last echo of an input before an offset begins and ends; None where there is none.
+
+    Raises
+    ------
+    ReadError
+        An echo without its beginning or its end, or with a line missing: its lines are numbered.
+    """
+    end = text.last(_END_OF_INPUT, before)
+    start = max(text.last(_FIRST_LINE, before), text.last(_HEADING, before))
+    if start < 0 and end < 0:
+        return None
+    if start > end or start < text.last(_END_OF_INPUT, max(end, 0)):
+        raise text.error(
+            max(start, end), "an echo of the input without beginning or end", mend=CUT_SHORT
+        )
+    for count, match in enumerate(_LINE.finditer(text.data, start, end), start=1):
+        if int(match.group(1)) != count:
+            raise text.error(
+                match.start(1), f"line {count} of the input is not in its echo", mend=CUT_SHORT
+            )
+    return start, end
 
 
 def _functional(word: str) -> str | None:
@@ -230,7 +258,10 @@ def _solvent(
         if m.group(i)
     }
     if 1 in found:
-        return f"{name}({found[1].decode('utf-8', 'replace').strip().lower()})"
+        called = found[1].decode("utf-8", "replace").strip().lower()
+        if not called.isprintable() or "\ufffd" in called:
+            raise part.expected(place, "the name of the solvent")
+        return f"{name}({called})"
     solvents = {m.group(1).lower() for word in inputs.words if (m := _IN_SOLVENT.fullmatch(word))}
     if len(solvents) == 1:
         return f"{name}({solvents.pop()})"

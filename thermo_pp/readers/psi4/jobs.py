@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import NUMBERS
 from thermo_pp.errors import ReadError
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.units import BOHR_ANGSTROM
@@ -26,10 +27,11 @@ BANNER = b"An Open-Source Ab Initio Electronic Structure Package"
 MOST_ANGSTROM = 1e6
 """No coordinate of a molecule is larger."""
 
-REPULSION_WITHIN = 1e-5
-"""Relative agreement of the nuclear repulsion energy with the printed geometry."""
+ROUNDING_ANGSTROM = 5.1e-9
+"""Coordinates have eight decimals, or more."""
 
 _END = re.compile(rb"\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)")
+_REPULSION = b"Nuclear repulsion ="
 _EXCEPTION = re.compile(
     rb"^(?:PsiException|[\w.]*(?:Error|Exception)|[\w.]*exceptions\.\w+): *(\S[^\r\n]*)"
     rb"|^Fatal Error: *(\S[^\r\n]*)",
@@ -116,21 +118,17 @@ def _distances(geometry: Geometry) -> FloatArray:
 def check_repulsion(part: Text, geometry: Geometry) -> None:
     """Check the geometry against the nuclear repulsion energy that is printed with it.
 
-    A lost, doubled or altered atom does not agree with it. Not done where effective core potentials
-    change the nuclear charges.
+    Not done where effective core potentials change the nuclear charges.
     """
-    at = part.find(b"Nuclear repulsion =")
+    at = part.find(_REPULSION)
     if at < 0 or part.find(b"ECP") >= 0:
         return
-    printed = part.number(at, "the nuclear repulsion energy")
-    distances = _distances(geometry) / BOHR_ANGSTROM
-    charges = np.outer(geometry.numbers, geometry.numbers).astype(np.float64)
-    pairs = np.triu_indices(len(geometry.numbers), 1)
-    with np.errstate(divide="ignore"):
-        ours = float(np.sum(charges[pairs] / distances[pairs]))
-    if not abs(ours - printed) <= REPULSION_WITHIN * max(1.0, abs(printed)):
-        what = f"the geometry has a nuclear repulsion of {ours:.6f} Eh, the file says {printed}"
-        raise part.error(geometry.at, what, mend=CUT_SHORT)
+    printed = part.number_text(at, "the nuclear repulsion energy")
+    why = repulsion.differs(
+        printed, geometry.numbers, geometry.positions_angstrom, ROUNDING_ANGSTROM
+    )
+    if why is not None:
+        raise part.error(geometry.at, why, mend=CUT_SHORT)
 
 
 def check_end(text: Text) -> bool:

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.readers.line_marks import matches
-from thermo_pp.readers.text import Text
+from thermo_pp.readers.text import CUT_SHORT, Text
 
 RANKS: dict[str, int] = {
     "HF": 0,
@@ -58,11 +58,13 @@ _ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
 _INVENTED = "ANONYMOUS"
 _FITTING = "AUX)"
+_MP2_TABLE = 800
 _EXTRAPOLATED = b"==> CBS <=="
 _DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
 _DISPERSION = re.compile(rb": Empirical Dispersion <=\s+([^\r\n]*)")
 _DISPERSION_ENERGY = re.compile(rb"Empirical Dispersion Energy =[ ]+-?[\d.]*[1-9]")
 _GRIMME = re.compile(r"Grimme's -(\w+)(?: \((.*)\))? Dispersion Correction")
+_CITATION = re.compile(r"\((?:19|20)\d\d\)")
 _DAMPING = {
     None: "",
     "zero-damping": "",
@@ -73,6 +75,15 @@ _DAMPING = {
 _PCM_SOLVENT = re.compile(rb"^[ \t]*Solvent name\s*[:.=]+\s*([^\r\n]+)", re.MULTILINE)
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
+_LEBEDEV = frozenset(
+    (
+        *(6, 14, 26, 38, 50, 74, 86, 110, 146, 170, 194, 230, 266, 302, 350, 434, 590, 770, 974),
+        *(1202, 1454, 1730, 2030, 2354, 2702, 3074, 3470, 3890, 4334, 4802, 5294, 5810),
+    )
+)
+"""Sizes of the angular grids that exist (Lebedev and Laikov, Doklady Mathematics 59 (1999) 477), from memory."""
+_OCCUPIED = ("FC", "OCC", "#FZDC", "#DOCC", "#SOCC")
+_ALPHA = re.compile(rb"\n[ \t]+Nalpha[ \t]+=[ \t]+(\d+)")
 _FROZEN_COUNT = re.compile(rb"Number of frozen core orbitals:\s*(\d+)")
 _FROZEN_TABLE = re.compile(
     rb"^[ \t]*(?:IRREP[ \t]+)?(?:# MOs[ \t]+)?(# FZDC|FC)[ \t]", re.MULTILINE
@@ -140,8 +151,7 @@ def energies(part: Text) -> list[Energy]:
             value = part.number(match.end(), f"the {label} energy")
             found.append(Energy(label, value, match.end()))
     for start in part.all(b"==> DF-MP2 Energies <=="):
-        at = part.need(b"Total Energy", start, lacking="no DF-MP2 total energy")
-        found.append(Energy("MP2", part.number(at + 12, "the DF-MP2 total energy"), at))
+        found.append(_density_fitted(part, start))
     return found
 
 
@@ -177,6 +187,26 @@ def is_functional(text: Text, method: str) -> bool:
         if used and (asked.startswith(used) or used.startswith(asked)):
             return True
     return False
+
+
+def _density_fitted(part: Text, start: int) -> Energy:
+    """Return the energy of the DF-MP2 table at `start`, which must be the sum of its parts."""
+    values: dict[bytes, float] = {}
+    at = start
+    for mark in (b"Reference Energy", b"Correlation Energy", b"Total Energy"):
+        match = re.compile(rb"\n[ \t]+" + mark + rb"[ \t]+=").search(part.data, start, part.end)
+        if match is None or match.start() - start > _MP2_TABLE:
+            raise part.error(start, f"no {mark.decode()} in this DF-MP2 table", mend=CUT_SHORT)
+        at = match.end()
+        values[mark] = float(part.exact_text(at, f"the DF-MP2 {mark.decode().lower()}"))
+    reference, correlation, total = values.values()
+    if abs(reference + correlation - total) > 1e-9:
+        raise part.error(
+            at,
+            f"the DF-MP2 total energy {total!r} is not the sum of its parts above",
+            mend=CUT_SHORT,
+        )
+    return Energy("MP2", total, at)
 
 
 def _scf_energy(part: Text) -> Energy:
@@ -288,7 +318,7 @@ def _dispersion(part: Text, at: dict[str, int]) -> str | None:
     if match is not None:
         at["dispersion"] = match.start(1)
         text = match.group(1).decode("utf-8", "replace").strip()
-        if text.startswith("=>"):
+        if text.startswith("=>") or _CITATION.search(text) is not None:
             raise part.expected(at["dispersion"], "the name of the dispersion correction")
         known = _GRIMME.fullmatch(text)
         if known is None or known.group(2) not in _DAMPING:
@@ -320,6 +350,8 @@ def _grid(part: Text, at: dict[str, int]) -> str | None:
     for mark in (b"Radial Points", b"Spherical Points"):
         place = part.need(mark, start, lacking=f"no {mark.decode().lower()} of the grid")
         words.append(part.number_text(place, "the number of grid points"))
+    if int(words[1]) not in _LEBEDEV:
+        raise part.expected(place, "the number of points of a Lebedev grid")
     place = part.find(b"Pruning Scheme", start)
     pruning = part.line(place).partition("=")[2].strip().lower() if place >= 0 else ""
     return f"({words[0]},{words[1]})" + (f" pruning {pruning}" if pruning else "")
@@ -346,16 +378,35 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
     place = part.find(b"CLASS    FOCC")
     if place >= 0:
         at["frozen_core"] = place
-        return int(part.floats(part.next_line(place), 1, "a number of frozen orbitals", skip=1)[0])
+        row = part.next_line(place)
+        frozen, occupied, active = part.floats(row, 3, "numbers of orbitals", skip=1)
+        if frozen + active != occupied:
+            raise part.expected(row, "frozen and active orbitals that add up to the occupied ones")
+        return int(frozen)
     table = _FROZEN_TABLE.search(part.data, part.start, part.end)
     if table is None:
         return None
     at["frozen_core"] = table.start(1)
     columns = part.line(table.start(1)).replace("# ", "#").split()
     column = columns.index("FC" if table.group(1) == b"FC" else "#FZDC")
-    total = 0
-    line = part.next_line(table.start(1), 2)
+    rule = part.next_line(table.start(1))
+    if part.rest(rule).strip(b"-= \t\r"):
+        raise part.expected(rule, "a rule below the headings of the orbitals")
+    filling = [i for i, name in enumerate(columns) if name in _OCCUPIED]
+    total = filled = 0
+    line = first = part.next_line(rule)
     while len(part.rest(line).split()) == len(columns):
         total += int(part.floats(line, 1, "a number of frozen orbitals", skip=column)[0])
+        filled += sum(int(part.floats(line, 1, "a number of orbitals", skip=i)[0]) for i in filling)
         line = part.next_line(line)
+    if line == first:
+        raise part.expected(line, "a row of numbers of orbitals")
+    alpha = _ALPHA.search(part.data, part.start, part.end)
+    if len(filling) > 1 and alpha is not None and int(alpha.group(1)) != filled:
+        raise part.error(
+            line,
+            f"{filled} occupied orbitals in the table above, {alpha.group(1).decode()} alpha "
+            f"electrons on line {part.line_number(alpha.start(1))}",
+            mend=CUT_SHORT,
+        )
     return total

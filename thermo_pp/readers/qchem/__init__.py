@@ -48,7 +48,8 @@ _FINAL = re.compile(rb"^[ \t]*Final energy is[ \t]+", re.MULTILINE)
 class Modes(NamedTuple):
     """What a frequency job adds to a record.
 
-    `at` has offsets by field, `others_at` that of a second analysis (of other isotopes), -1 for none.
+    `at` has offsets by field, `others_at` that of a second analysis (of other isotopes), -1 for none, `left_out_at`
+    that of a Hessian with other wavenumbers.
     """
 
     wavenumbers_cm: NDArray[np.float64]
@@ -57,6 +58,8 @@ class Modes(NamedTuple):
     found: vibrations.Found
     at: dict[str, int]
     others_at: int
+    hessian: NDArray[np.float64] | None
+    left_out_at: int
 
 
 def sniff(head: bytes) -> bool:
@@ -85,6 +88,8 @@ def read(source: Source) -> Calculation:
     modes = _modes(text, main, own) if analysed else None
     if modes is not None and modes.others_at >= 0:
         doubts.append(_other_isotopes(modes.others_at))
+    if modes is not None and modes.left_out_at >= 0:
+        doubts.append(_hessian_left_out(modes.left_out_at))
     run = _own_run(text, all_jobs, main, own)
     optimised, at = None, {}
     if run is not None:
@@ -132,6 +137,7 @@ def read(source: Source) -> Calculation:
         energy_label=energy.label,
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
+        hessian_hartree_bohr2=None if modes is None else modes.hessian,
         optimised=optimised,
         kind_of_job=_kinds(all_jobs),
         printed=vibrations.as_printed(found, {key: lines[f"printed {key}"] for key in found}),
@@ -231,7 +237,24 @@ def _modes(text: Text, job: Job, own: Energy) -> Modes:
     elif (lost := part.find(b"Has Mass", first)) >= 0:
         raise part.error(lost, "masses, but no heading of the thermochemistry", mend=CUT_SHORT)
     others = part.find(vibrations.ANALYSIS, first + 1)
-    return Modes(wavenumbers, vectors, masses, found, at, others)
+    weights = _isotopes(own) if masses is None else masses
+    place = vibrations.hessian_at(text, job.echo, first)
+    hessian = None
+    if place >= 0 and len(weights) > 1:
+        hessian = vibrations.hessian(text, place, weights, own.shape, wavenumbers)
+    if hessian is not None:
+        at["hessian_hartree_bohr2"], place = place, -1
+    return Modes(wavenumbers, vectors, masses, found, at, others, hessian, place)
+
+
+def _hessian_left_out(at: int) -> Doubt:
+    return Doubt(
+        "hessian-not-joined",
+        "warning",
+        at,
+        "the Hessian printed here is damaged or does not have the wavenumbers printed below; it is left out",
+        "look whether the output is damaged, or the Hessian one of another step",
+    )
 
 
 def _other_isotopes(at: int) -> Doubt:
@@ -248,8 +271,11 @@ def _masses(own: Energy, modes: Modes | None) -> tuple[NDArray[np.float64], Orig
     """Return the masses that the modes were printed with, else those of the most abundant isotopes."""
     if modes is not None and modes.masses_u is not None:
         return modes.masses_u, "printed"
-    isotopes = [ISOTOPES[SYMBOLS[z]][MOST_ABUNDANT[z]] for z in own.shape.numbers]
-    return np.array(isotopes), "derived"
+    return _isotopes(own), "derived"
+
+
+def _isotopes(own: Energy) -> NDArray[np.float64]:
+    return np.array([ISOTOPES[SYMBOLS[z]][MOST_ABUNDANT[z]] for z in own.shape.numbers])
 
 
 def _own_run(text: Text, all_jobs: list[Job], main: Job, own: Energy) -> Job | None:

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import NUMBERS
+from thermo_pp.readers import repulsion
 from thermo_pp.readers.qchem.jobs import Job
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.units import BOHR_ANGSTROM
@@ -20,8 +21,6 @@ MOST_ANGSTROM = 1e6
 _REPULSION = b"Nuclear Repulsion Energy ="
 _ELECTRONS = re.compile(rb"There are\s+(\d+) alpha and\s+(\d+) beta electrons")
 _ECP = b"effective core potentials will be applied"
-_BOHR_DOUBT = 2e-7
-"""By how much (relative) the program's bohr may be another than ours: its versions have several."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -111,7 +110,7 @@ def _check(text: Text, job: Job, shape: Geometry) -> None:
         raise text.error(
             shape.heading, "no nuclear repulsion energy of this geometry", mend=CUT_SHORT
         )
-    printed = float(text.exact_text(at + len(_REPULSION), "the nuclear repulsion energy"))
+    printed = text.exact_text(at + len(_REPULSION), "the nuclear repulsion energy")
     match = _ELECTRONS.search(text.data, at, min(at + 400, shape.end))
     if match is None:
         raise text.error(at, "no numbers of electrons of this geometry", mend=CUT_SHORT)
@@ -125,22 +124,8 @@ def _check(text: Text, job: Job, shape: Geometry) -> None:
             "and the atoms of this geometry",
             mend=CUT_SHORT,
         )
+    why = None
     if not cores:
-        _check_repulsion(text, shape, printed, at)
-
-
-def _check_repulsion(text: Text, shape: Geometry, printed: float, at: int) -> None:
-    charges = shape.numbers.astype(np.float64)
-    distances = _distances(shape) / BOHR_ANGSTROM
-    distances.flat[:: len(charges) + 1] = np.inf
-    if np.any(distances <= 0.0):
-        raise text.error(shape.at, "two atoms at one place in this geometry", mend=CUT_SHORT)
-    products = 0.5 * np.outer(charges, charges)
-    own = float((products / distances).sum())
-    rounding = 2e-10 / BOHR_ANGSTROM * float((products / distances**2).sum())
-    if abs(own - printed) > _BOHR_DOUBT * own + rounding + 2e-8:
-        raise text.error(
-            at,
-            f"the nuclear repulsion {printed!r} is not that of the geometry above it, {own:.8f}",
-            mend=CUT_SHORT,
-        )
+        why = repulsion.differs(printed, shape.numbers, shape.positions_angstrom, 5.1e-11)
+    if why is not None:
+        raise text.error(at, why, mend=CUT_SHORT)

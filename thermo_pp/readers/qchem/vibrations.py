@@ -15,7 +15,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import SYMBOLS
+from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.line_marks import matches
+from thermo_pp.readers.printed_matrix import printed_matrix
 from thermo_pp.readers.qchem.geometry import Geometry
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.records import Printed
@@ -36,6 +38,7 @@ PRINTED_CONSTANTS: dict[str, float] = {
 """CODATA 2010 under the names of `units`; what Q-Chem 5.4 prints does not tell it from its neighbours."""
 ANALYSIS = b"VIBRATIONAL ANALYSIS"
 THERMO = b"STANDARD THERMODYNAMIC QUANTITIES AT"
+_HESSIANS = (b"\n Hessian of the SCF Energy", b"\n Final Hessian.")
 _FREQUENCY = b"\n Frequency:"
 _HEADING = re.compile(rb"AT\s+(\d+\.\d+) K\s+AND\s+(\d+\.\d+) ATM")
 _IMAGINARY = re.compile(rb"This Molecule has\s+(\d+) Imaginary Frequenc")
@@ -99,6 +102,21 @@ def modes(part: Text, shape: Geometry) -> tuple[FloatArray, FloatArray, int]:
     order = np.argsort(wavenumbers, kind="stable")
     unit = vectors / lengths[:, None, None]
     return np.array(wavenumbers)[order], unit[order], lines[0]
+
+
+def hessian_at(text: Text, start: int, end: int) -> int:
+    """Return the offset of the last heading of a Hessian that is not mass-weighted, -1 where none is printed."""
+    found = max(text.data.rfind(mark, start, end) for mark in _HESSIANS)
+    return found if found < 0 else found + 1
+
+
+def hessian(
+    text: Text, at: int, masses_u: FloatArray, shape: Geometry, wavenumbers_cm: FloatArray
+) -> FloatArray | None:
+    """Return the Hessian below a heading, None where it is damaged or has other wavenumbers."""
+    matrix = printed_matrix(text.data, text.next_line(at), 3 * len(masses_u), 1)
+    found = joined_hessian.modes_of(matrix, masses_u, shape.positions_angstrom, wavenumbers_cm)
+    return None if found is None else matrix
 
 
 def _check_force_constants(part: Text, at: int, wavenumbers: list[float]) -> None:
