@@ -18,6 +18,7 @@ from thermo_pp.errors import StudyError
 from thermo_pp.formulas.normal_modes import internal_space
 from thermo_pp.formulas.torsion import torsion
 from thermo_pp.formulas.turning import dihedral, top_of, turn, turned
+from thermo_pp.isotopes import isotopologues
 from thermo_pp.names import LOW_MODES
 from thermo_pp.records import Calculation
 from thermo_pp.scans import scan_from_table
@@ -209,6 +210,10 @@ def test_isotopologues(peroxide: Calculation, points: list[Calculation]) -> None
     vectors = peroxide.modes.reshape(6, -1) * root
     vectors = np.linalg.qr((vectors / np.linalg.norm(vectors, axis=1, keepdims=True)).T)[0]
     weighted = vectors @ np.diag((peroxide.wavenumbers_cm / 5140.487) ** 2) @ vectors.T
+    inner = internal_space(peroxide.masses_u, peroxide.positions_angstrom)
+    weighted = (
+        inner @ (inner.T @ weighted @ inner) @ inner.T
+    )  # printed modes hold some overall motion
     calc = dataclasses.replace(peroxide, hessian_hartree_bohr2=weighted * np.outer(root, root))
     light = structure(calc, entry(points))
     for isotopes, sigma in (({"1": "D"}, 1), ({"H": "D"}, 2)):
@@ -220,6 +225,16 @@ def test_isotopologues(peroxide: Calculation, points: list[Calculation]) -> None
         assert own.overlap > 0.95
         assert own.rotor.symmetry_number == 1
         assert own.rotor.moment_u_a2 > 1.2 * light.torsions[0].rotor.moment_u_a2
+        # isotope effects settle the torsion of the heavy one again; the ratios of oscillators, by both
+        # routes, keep the mode
+        pair = isotopologues(light, isotopes, where="x")
+        assert pair.light.torsions[0].rotor == light.torsions[0].rotor
+        assert pair.heavy.torsions[0].rotor == own.rotor
+        assert pair.heavy.degeneracy == 1
+        assert pair.heavy.at(T).gibbs_kj_mol == pytest.approx(heavy.at(T).gibbs_kj_mol, abs=0.01)
+        assert pair.plain.at(T).rows[3].name == "torsion"
+        ratio = float(pair.log_full_ratio(298.15)[0])
+        assert pair.log_reduced_ratio(298.15) == pytest.approx(ratio, abs=1e-5)
     with pytest.raises(StudyError, match="does not cover its period of 360"):
         structure(calc, {**entry(points), "mirror": None} | {"scan": points[:5]})
 

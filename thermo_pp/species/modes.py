@@ -59,6 +59,11 @@ class SortedModes:
         return np.abs(self.wavenumbers_cm[self.entered])
 
     @property
+    def oscillators_cm(self) -> FloatArray:
+        """The same with those that torsions replace: all but the reaction coordinate."""
+        return np.abs(self.wavenumbers_cm[~self.reaction_coordinate])
+
+    @property
     def imaginary_cm(self) -> float | None:
         """The wavenumber of the reaction coordinate, negative; None for a minimum."""
         found = self.wavenumbers_cm[self.reaction_coordinate]

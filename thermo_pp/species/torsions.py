@@ -35,14 +35,14 @@ _LIKE_WELL_DEG = 10.0
 _MOST_TURNS = 400
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Torsion:
     """A torsion as it enters H, S and G.
 
     Attributes
     ----------
-    atoms : (int, int, int, int)
-        From 0.
+    choice : TorsionChoice
+        What was asked; another isotopologue is settled from it again.
     rotor : HinderedRotor
     mode : int
         From 0: the mode it stands for.
@@ -53,7 +53,7 @@ class Torsion:
         The circle, with those of the other torsions, holds the mirror image of a chiral structure.
     """
 
-    atoms: tuple[int, int, int, int]
+    choice: TorsionChoice
     rotor: HinderedRotor
     mode: int
     overlap: float | None
@@ -120,7 +120,7 @@ def settle_torsions(
         zip(own, places, overlaps, strict=True), start=1
     ):
         replaced[place] = number
-        found.append(Torsion(one.choice.atoms, one.rotor, place, overlap, chiral and both))
+        found.append(Torsion(one.choice, one.rotor, place, overlap, chiral and both))
         notes += mode_findings(one, modes, place, overlap, calculation, name)
     if len(own) > 1:
         what = f"{name}: {len(own)} torsions are treated as independent of each other"
