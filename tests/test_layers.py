@@ -19,7 +19,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("names", "errors", "nearest", "units"),  # 1
     ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
     ("readers",),  # 3
-    ("collect", "species", "isotopes"),  # 4
+    ("collect", "scans", "species", "isotopes"),  # 4
     ("pairing", "audit", "grouping", "energies"),  # 5: energies pair their parts with the modes
     ("graph", "loops", "paths", "profile", "kinetics"),  # 6
     (),  # 7: measured
@@ -30,8 +30,8 @@ FLOORS: tuple[tuple[str, ...], ...] = (
 INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
-        "partition", "frames", "bonds", "vibration", "symmetry", "superposition", "normal_modes", "rates", "tunnelling",
-        "isotope_ratios", "extrapolation", "repulsion",
+        "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
+        "turning", "rates", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (

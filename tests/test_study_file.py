@@ -112,6 +112,14 @@ value = "-1 kJ/mol"
 gas_state = "1 bar"
 slope = 1.0
 temperature = 298
+[[species.A.torsions]]
+atoms = [1, 2, 3, 4]
+scan = ["a.out"]
+fourier = [[3, "6 kJ/mol", 0]]
+symmetry_number = 3
+mirror = "60 deg"
+reduced_moment = 1.5
+mode = "210 cm^-1"
 [species.W]
 composition = "H2O"
 enthalpy = "-1 kJ/mol"

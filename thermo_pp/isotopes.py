@@ -19,6 +19,7 @@ from thermo_pp.species.ideal_gas import IdealGas, shares, totals
 from thermo_pp.species.masses import substituted
 from thermo_pp.species.modes import SortedModes, sort_modes
 from thermo_pp.species.rotors import settled_rotor
+from thermo_pp.species.torsions import settle_torsions
 from thermo_pp.units import GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
@@ -57,8 +58,8 @@ class Isotopologues:
         treatment = self.light.treatment
         return log_reduced_ratio(
             temperature_k,
-            self.light.modes.real_cm,
-            self.heavy.modes.real_cm,
+            self.light.modes.oscillators_cm,
+            self.heavy.modes.oscillators_cm,
             frequency_scale=treatment.frequency_scale,
             zero_point_scale=treatment.zero_point_scale,
         )
@@ -79,6 +80,8 @@ class Isotopologues:
                 symmetry_number=1,
                 quantum_rotor=False,
                 hands=1,
+                wavenumbers_cm=structure.modes.oscillators_cm,
+                torsions=(),
             )
             total = totals(shares(t, gas, structure.treatment, "harmonic"))
             gibbs = total.enthalpy_j_mol - t * total.entropy_j_mol_k
@@ -130,7 +133,15 @@ def isotopologues(
         heavy,
         symmetry_number=light.symmetry_number,
         degeneracy=light.degeneracy,
-        gas=replace(heavy.gas, symmetry_number=light.symmetry_number, hands=light.degeneracy),
+        gas=replace(
+            heavy.gas,
+            symmetry_number=light.symmetry_number,
+            hands=light.degeneracy,
+            torsions=tuple(
+                replace(one, symmetry_number=other.symmetry_number)
+                for one, other in zip(heavy.gas.torsions, light.gas.torsions, strict=True)
+            ),
+        ),
     )
     residual = log_product_residual(
         calc.positions_angstrom,
@@ -180,7 +191,16 @@ def _with_masses(structure: Structure, masses_u: FloatArray, where: str) -> Stru
     symmetry = rotational_symmetry(calc.numbers, calc.positions_angstrom, masses_u)
     declared = structure.symmetry_origin == "declared"
     sigma = structure.symmetry_number if declared else symmetry.order
-    hands = 2 if symmetry.chiral and not treatment.enantiopure else 1
+    turning = settle_torsions(
+        [one.choice for one in structure.torsions],
+        calc,
+        masses_u,
+        modes,
+        symmetry.chiral,
+        name=structure.name,
+    )
+    modes, inside = turning.modes, any(one.holds_both_hands for one in turning.torsions)
+    hands = 2 if symmetry.chiral and not (treatment.enantiopure or inside) else 1
     kind: Rotor = treatment.rotor
     rotor, _ = settled_rotor(calc, masses_u, sigma, kind, None, None, structure.name, where)
     before = rigid_rotor(structure.masses_u, calc.positions_angstrom)
@@ -196,6 +216,7 @@ def _with_masses(structure: Structure, masses_u: FloatArray, where: str) -> Stru
         symmetry=symmetry,
         symmetry_number=sigma,
         degeneracy=hands,
+        torsions=turning.torsions,
         gas=IdealGas(
             mass_u=float(masses_u.sum()),
             rotor=rotor.kind,
@@ -209,6 +230,7 @@ def _with_masses(structure: Structure, masses_u: FloatArray, where: str) -> Stru
             hands=hands,
             spin_weights=rotor.spin_weights if gas.quantum_rotor else NO_SPIN_WEIGHTS,
             distortion_k=gas.distortion_k * float(ratio[0]) ** 2 if gas.distortion_k else 0.0,
+            torsions=tuple(one.rotor for one in turning.torsions),
         ),
     )
 

@@ -67,7 +67,7 @@ def normal_modes(
         raise ValueError("the Hessian holds a number that is not finite")
     root = np.repeat(np.sqrt(m), 3)
     weighted = 0.5 * (hessian + hessian.T) / np.outer(root, root)
-    inner = _internal_space(m, x)
+    inner = internal_space(m, x)
     values, vectors = np.linalg.eigh(inner.T @ weighted @ inner)
     modes = (inner @ vectors).T / root
     modes /= np.linalg.norm(modes, axis=1, keepdims=True)
@@ -75,7 +75,7 @@ def normal_modes(
     return NormalModes(wavenumbers, modes.reshape(-1, n, 3))
 
 
-def _internal_space(m: FloatArray, x: FloatArray) -> FloatArray:
+def internal_space(m: FloatArray, x: FloatArray) -> FloatArray:
     """Return an orthonormal basis (3n, 3n-6) of mass-weighted displacements, no overall motion."""
     n = len(m)
     root = np.sqrt(m)[:, np.newaxis]

@@ -216,12 +216,12 @@ def linear_rotation_levels(
     levels = theta[..., np.newaxis] * square - distortion_k * square**2
     degeneracy = (2.0 * j + 1.0) * np.where(j % 2.0 == 0.0, *spin_weights)
     if spin_shares is None:
-        return _levels(t, degeneracy, levels, sigma)
+        return level_share(t, degeneracy, levels, sigma)
     mixture = [np.zeros(()), np.zeros(()), np.zeros(())]
     for parity, share in enumerate(spin_shares):
         if share == 0.0:
             continue
-        one = _levels(t, degeneracy[parity::2], levels[..., parity::2], sigma)
+        one = level_share(t, degeneracy[parity::2], levels[..., parity::2], sigma)
         mixture = [whole + share * part for whole, part in zip(mixture, one, strict=True)]
         mixture[1] = mixture[1] - GAS_J_MOL_K * share * math.log(share)
     return Share(*mixture)
@@ -360,7 +360,7 @@ def electronic(temperature_k: ArrayLike, degeneracies: ArrayLike, levels_cm: Arr
     Share of shape (...)
     """
     t, g = _positive(temperature_k, "temperature"), _positive(degeneracies, "degeneracy")
-    return _levels(t, g, KELVIN_PER_CM * np.asarray(levels_cm, dtype=np.float64))
+    return level_share(t, g, KELVIN_PER_CM * np.asarray(levels_cm, dtype=np.float64))
 
 
 def principal_moments(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> FloatArray:
@@ -428,15 +428,20 @@ def _inertia(
     return np.maximum(moments, 0.0), axes, x
 
 
-def _levels(t: FloatArray, g: FloatArray, theta: FloatArray, divisor: ArrayLike = 1.0) -> Share:
-    """Share of levels (last axis) of degeneracy `g` at `theta` kelvin, the sum over `divisor`."""
-    x = theta / t[..., np.newaxis]
-    terms = g * np.exp(-x)
+def level_share(
+    temperature_k: FloatArray,
+    degeneracies: FloatArray,
+    theta_k: FloatArray,
+    divisor: ArrayLike = 1.0,
+) -> Share:
+    """Return the share of levels (last axis) of `degeneracies` at `theta_k`, the sum over `divisor`."""
+    x = theta_k / temperature_k[..., np.newaxis]
+    terms = degeneracies * np.exp(-x)
     q = terms.sum(axis=-1)
     mean = (terms * x).sum(axis=-1) / q
     variance = (terms * (x - mean[..., np.newaxis]) ** 2).sum(axis=-1) / q
     return Share(
-        np.asarray(GAS_J_MOL_K * t * mean),
+        np.asarray(GAS_J_MOL_K * temperature_k * mean),
         np.asarray(GAS_J_MOL_K * (np.log(q / np.asarray(divisor)) + mean)),
         np.asarray(GAS_J_MOL_K * variance),
     )

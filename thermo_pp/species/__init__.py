@@ -1,7 +1,8 @@
 """Species: what stands in a mechanism, computed from outputs or declared, and its H, S and G.
 
 From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes``, ``energy`` and
-``electronic`` settle one structure; ``result`` is what is handed on, ``rows`` its tables;
+``electronic`` settle one structure, ``potentials``, ``torsion_modes``, ``torsions`` and
+``torsion_keys`` its hindered rotors; ``result`` is what is handed on, ``rows`` its tables;
 ``structure``, ``declared`` and ``direct`` are the ways in, ``many`` the one for thousands of
 structures at once.
 """
@@ -22,6 +23,7 @@ from thermo_pp.species.result import (
     low_mode_spread_kj_mol,
 )
 from thermo_pp.species.structure import Structure
+from thermo_pp.species.torsion_keys import parse_torsions
 
 __all__ = [
     "Declared",
@@ -36,6 +38,7 @@ __all__ = [
     "parse_composition",
     "parse_imaginary",
     "parse_levels",
+    "parse_torsions",
     "solution_finding",
     "thermochemistry",
 ]

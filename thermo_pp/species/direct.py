@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import dataclasses
+import os
 from collections.abc import Iterable, Mapping, Sequence
-from pathlib import PurePath
+from pathlib import Path, PurePath
 from typing import Any
 
 import numpy as np
@@ -30,8 +31,10 @@ from thermo_pp.names import (
 )
 from thermo_pp.nearest import suggestion
 from thermo_pp.records import Calculation
+from thermo_pp.sources import Source, open_source
 from thermo_pp.species.result import Thermochemistry
 from thermo_pp.species.structure import Structure
+from thermo_pp.species.torsion_keys import parse_torsions
 from thermo_pp.units import quantity
 
 
@@ -59,6 +62,7 @@ def thermochemistry(
     isotopes: Mapping[Any, str] | None = None,
     rotational_constants: Mapping[str, Any] | None = None,
     nuclear_spins: NuclearSpins | None = None,
+    torsions: Sequence[Mapping[str, Any]] = (),
     name: str | None = None,
 ) -> Thermochemistry:
     """Compute H, S and G of one calculation.
@@ -90,6 +94,9 @@ def thermochemistry(
         A single point of the same structure whose energy is taken.
     charge, multiplicity, levels, symmetry_number, isotopes, rotational_constants, nuclear_spins
         See `Structure.make`.
+    torsions : sequence of mapping
+        Hindered rotors, the keys of ``[species.NAME] torsions``: ``{"atoms": [1, 2, 3, 4], "scan":
+        "scan.csv"}``. A scan may be a list of paths or of Calculations too.
     name : str or None
         For messages; the file's name unless given.
 
@@ -134,6 +141,7 @@ def thermochemistry(
         isotopes=isotopes,
         rotational_constants=rotational_constants,
         nuclear_spins=nuclear_spins,
+        torsions=parse_torsions(torsions, calculation, _open, where=f"{call} torsions"),
         where=call,
     )
     found = structure.at(_temperatures(temperature_k, where=f"{call} temperature_k"))
@@ -176,6 +184,17 @@ def parse_imaginary(value: Any, *, where: str) -> float | None:
         where=where,
         mend='write "refuse" or { real_below = "30 cm^-1" }',
     )
+
+
+def _open(path: Any, where: str) -> Source:
+    """Open a file of a torsion; StudyError where there is none."""
+    if not isinstance(path, str | os.PathLike) or not Path(path).is_file():
+        raise StudyError(
+            f"there is no file {str(path)!r}",
+            where=where,
+            mend="name a table (CSV) of the scan, or a list of outputs, one a point",
+        )
+    return open_source(Path(path), os.fspath(path))
 
 
 def _state(value: Any) -> Any:

@@ -10,6 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from thermo_pp.conditions import Treatment
 from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS, Share, electronic, rotation, translation
+from thermo_pp.formulas.torsion import HinderedRotor, TorsionShare, torsion
 from thermo_pp.formulas.vibration import Vibration, vibration
 from thermo_pp.names import LowModes, RotorKind
 from thermo_pp.units import GAS_J_MOL_K
@@ -38,6 +39,8 @@ class IdealGas:
         Centrifugal distortion of a linear rotor, K.
     spin_shares : (float, float) or None
         Shares of even and odd levels that do not turn into each other; None at equilibrium.
+    torsions : tuple of HinderedRotor
+        In place of modes that are not among the wavenumbers; those of a block are the same.
     wavenumbers_cm : shape (m,) or (b, 1, m)
         Real modes only, above 0.
     degeneracies, levels_cm : shape (l,) or (b, 1, l)
@@ -58,6 +61,7 @@ class IdealGas:
     spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS
     distortion_k: float = 0.0
     spin_shares: tuple[float, float] | None = None
+    torsions: tuple[HinderedRotor, ...] = ()
 
     def __post_init__(self) -> None:
         seal(self)
@@ -80,6 +84,8 @@ class Shares(NamedTuple):
     electronic: Share
     handedness: FloatArray
     """R ln 2 where both hands are present, else 0: an entropy."""
+    torsions: tuple[TorsionShare, ...]
+    """Of each torsion, shape (t,)."""
 
 
 class Totals(NamedTuple):
@@ -88,6 +94,7 @@ class Totals(NamedTuple):
     Attributes
     ----------
     zero_point_j_mol : shape () or (b, 1)
+        Of modes and torsions.
     enthalpy_j_mol : zero-point energy included
     entropy_j_mol_k, heat_capacity_j_mol_k
     slope_excess_j_mol : -T^2 d(G/T)/dT less the enthalpy, of the soft-mode treatment
@@ -140,6 +147,7 @@ def shares(
         ),
         electronic(temperature_k, gas.degeneracies, gas.levels_cm),
         np.asarray(GAS_J_MOL_K * np.log(gas.hands)),
+        tuple(torsion(temperature_k, rotor) for rotor in gas.torsions),
     )
 
 
@@ -155,6 +163,11 @@ def totals(part: Shares) -> Totals:
         enthalpy = enthalpy + share.enthalpy_j_mol
         entropy = entropy + share.entropy_j_mol_k
         heat_capacity = heat_capacity + share.heat_capacity_j_mol_k
+    for turning in part.torsions:
+        zero_point = zero_point + turning.zero_point_j_mol
+        enthalpy = enthalpy + turning.enthalpy_j_mol + turning.zero_point_j_mol
+        entropy = entropy + turning.entropy_j_mol_k
+        heat_capacity = heat_capacity + turning.heat_capacity_j_mol_k
     excess = modes.slope_excess_j_mol
     # without interpolation it is a broadcast zero, which needs no sum
     slope = excess.sum(axis=-1) if any(excess.strides) else excess[..., :1].sum(axis=-1)

@@ -43,8 +43,8 @@ def many(
 ) -> Many:
     """Return H, S, G and Cp of many structures: the numbers of `Structure.at`, many times faster.
 
-    Structures that are alike in kind of rotor, numbers of modes and levels, and treatment share a
-    block.
+    Structures that are alike in kind of rotor, numbers of modes and levels, torsions and treatment
+    share a block.
 
     Parameters
     ----------
@@ -95,6 +95,7 @@ def _blocks(structures: Sequence[Structure]) -> Iterable[list[int]]:
             gas.spin_shares,
             gas.wavenumbers_cm.size,
             gas.levels_cm.size,
+            gas.torsions,
             structure.treatment,
         )
         alike.setdefault(key, []).append(row)
@@ -123,4 +124,5 @@ def _stacked(gases: Sequence[IdealGas]) -> IdealGas:
         spin_weights=gases[0].spin_weights,
         distortion_k=gases[0].distortion_k,
         spin_shares=gases[0].spin_shares,
+        torsions=gases[0].torsions,
     )

@@ -33,6 +33,8 @@ class SortedModes:
         The one mode of a saddle point that enters nothing.
     made_real : shape (m,), bool
         Imaginary modes taken as real.
+    replaced : shape (m,), int
+        Number of the torsion, from 1, that stands for the mode; 0 where none does.
     findings : tuple of Finding
     """
 
@@ -40,14 +42,25 @@ class SortedModes:
     wavenumbers_cm: FloatArray
     reaction_coordinate: NDArray[np.bool_]
     made_real: NDArray[np.bool_]
+    replaced: NDArray[np.int64]
     findings: tuple[Finding, ...]
 
     def __post_init__(self) -> None:
         seal(self)
 
     @property
+    def entered(self) -> NDArray[np.bool_]:
+        """The modes that enter H, S and G as vibrations."""
+        return np.asarray(~self.reaction_coordinate & (self.replaced == 0))
+
+    @property
     def real_cm(self) -> FloatArray:
         """The wavenumbers that enter H, S and G, all above 0."""
+        return np.abs(self.wavenumbers_cm[self.entered])
+
+    @property
+    def oscillators_cm(self) -> FloatArray:
+        """The same with those that torsions replace: all but the reaction coordinate."""
         return np.abs(self.wavenumbers_cm[~self.reaction_coordinate])
 
     @property
@@ -176,7 +189,8 @@ def sort_modes(
                 mend="optimise more tightly, or with a finer grid, until they are gone",
             )
         )
-    return SortedModes(kind, wavenumbers_cm, coordinate, extra, tuple(findings))
+    replaced = np.zeros(len(wavenumbers_cm), dtype=np.int64)
+    return SortedModes(kind, wavenumbers_cm, coordinate, extra, replaced, tuple(findings))
 
 
 def _refusal(

@@ -27,11 +27,12 @@ class Part:
     Attributes
     ----------
     name : str
-        ``translation``, ``rotation``, ``vibration``, ``electronic`` or ``handedness``.
+        ``translation``, ``rotation``, ``vibration``, ``torsion`` (``torsion 1`` and so on where there
+        are several), ``electronic`` or ``handedness``.
     treated_as : str
         How it was computed, in words.
     enthalpy_kj_mol, entropy_j_mol_k, gibbs_kj_mol, heat_capacity_j_mol_k : shape (t,)
-        Of vibration with the zero-point energy in it; of the electronic states without the
+        Of vibration and torsions with the zero-point energy in it; of the electronic states without the
         electronic energy itself; of translation in the standard state of the result.
     """
 
@@ -56,10 +57,10 @@ class ModeTable:
         As read (or from the Hessian with the masses used), imaginary ones negative.
     used_cm : shape (m,)
         Of the thermal terms: scaled, raised where the treatment raises it; nan for the reaction
-        coordinate, which enters nothing.
+        coordinate, which enters nothing, and for a mode that a torsion replaces.
     treated_as : tuple of str
     weight : shape (m,)
-        Share of the oscillator; nan for the reaction coordinate.
+        Share of the oscillator; nan where the mode does not enter as a vibration.
     zero_point_kj_mol : shape (m,)
     enthalpy_kj_mol, entropy_j_mol_k, heat_capacity_j_mol_k : shape (t, m)
         The enthalpy above the zero-point energy.

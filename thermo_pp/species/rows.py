@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -25,6 +27,7 @@ def part_rows(
     low_modes: LowModes,
     state: StandardState,
     added: tuple[Added, ...] = (),
+    torsions: Sequence[str] = (),
 ) -> tuple[Part, ...]:
     """Return the shares of one structure, the standard state in translation.
 
@@ -37,6 +40,8 @@ def part_rows(
         What it was computed with.
     added : tuple of Added
         What comes to H and S beside them.
+    torsions : sequence of str
+        How each torsion was computed.
     """
     modes = part.vibration
     onset = "" if low_modes == "harmonic" else f", onset {treatment.onset_cm:g} cm^-1"
@@ -60,6 +65,14 @@ def part_rows(
         _part("vibration", low_modes + onset, t, vibrating),
         _part("electronic", electronic, t, part.electronic),
     ]
+    for number, (turning, words) in enumerate(zip(part.torsions, torsions, strict=True), start=1):
+        values = (
+            turning.enthalpy_j_mol + turning.zero_point_j_mol,
+            turning.entropy_j_mol_k,
+            turning.heat_capacity_j_mol_k,
+        )
+        called = "torsion" if len(torsions) == 1 else f"torsion {number}"
+        rows.insert(2 + number, _part(called, words, t, values))
     if np.any(np.asarray(gas.hands) > 1):
         none = np.zeros_like(t)
         rows.append(_part("handedness", "both hands", t, (none, part.handedness, none)))
@@ -76,8 +89,8 @@ def part_rows(
 def mode_table(
     part: Shares, modes: SortedModes, treatment: Treatment, low_modes: LowModes
 ) -> ModeTable:
-    """Return what became of each mode, the reaction coordinate in its place among them."""
-    entered = ~modes.reaction_coordinate
+    """Return what became of each mode, those that are no vibration in their place among them."""
+    entered = modes.entered
     found = part.vibration
 
     def spread(values: FloatArray, missing: float) -> FloatArray:
@@ -93,6 +106,8 @@ def mode_table(
         what = f"raised to {treatment.onset_cm:g} cm^-1" if raised else word
         if modes.reaction_coordinate[k]:
             what = "reaction coordinate, left out"
+        elif modes.replaced[k]:
+            what = f"replaced by torsion {modes.replaced[k]}"
         elif modes.made_real[k]:
             what += ", imaginary taken as real"
         words.append(what)

@@ -22,9 +22,11 @@ from thermo_pp.species.energy import Added, ElectronicEnergy, added_shares
 from thermo_pp.species.ideal_gas import IdealGas, seal, shares, totals
 from thermo_pp.species.masses import chosen_masses, mass_findings
 from thermo_pp.species.modes import SortedModes, sort_modes, wavenumbers
+from thermo_pp.species.potentials import TorsionChoice, torsion_note
 from thermo_pp.species.result import SaddleMember, Thermochemistry
 from thermo_pp.species.rotors import settled_rotor
 from thermo_pp.species.rows import mode_table, part_rows
+from thermo_pp.species.torsions import Torsion, settle_torsions
 from thermo_pp.units import GAS_J_MOL_K, HARTREE_KJ_MOL
 
 FloatArray = NDArray[np.float64]
@@ -60,9 +62,10 @@ class Structure:
     symmetry_number : int
     symmetry_origin : {"derived", "declared"}
     degeneracy : int
-        2 where both hands of a chiral structure are present.
+        2 where both hands of a chiral structure are present, but not within its torsions.
     files : tuple of str
     findings : tuple of Finding
+    torsions : tuple of Torsion
     """
 
     name: str
@@ -83,6 +86,7 @@ class Structure:
     degeneracy: int
     files: tuple[str, ...]
     findings: tuple[Finding, ...] = field(default=())
+    torsions: tuple[Torsion, ...] = ()
 
     def __post_init__(self) -> None:
         seal(self)
@@ -139,6 +143,7 @@ class Structure:
         isotopes: Mapping[Any, str] | None = None,
         rotational_constants: Mapping[str, Any] | None = None,
         nuclear_spins: NuclearSpins | None = None,
+        torsions: Sequence[TorsionChoice] = (),
         where: str = "",
     ) -> Structure:
         """Check one calculation and settle its masses, modes, rotor, symmetry and levels.
@@ -167,6 +172,8 @@ class Structure:
             ``B`` and, if need be, ``D`` of a linear molecule: its levels are summed.
         nuclear_spins : one of `names.NUCLEAR_SPINS` or None
             Of H2, D2 and T2: at equilibrium unless given.
+        torsions : sequence of TorsionChoice
+            Hindered rotors, each in place of a mode.
         where : str
             File and key of the study, or option, for messages.
 
@@ -211,7 +218,15 @@ class Structure:
         )
         notes += doubts
         electronic = electronic_energy(calculation, energy, name)
-        hands = 2 if symmetry.chiral and not treatment.enantiopure else 1
+        turning = settle_torsions(torsions, calculation, masses, modes, symmetry.chiral, name=name)
+        modes, inside = turning.modes, any(one.holds_both_hands for one in turning.torsions)
+        hands = 2 if symmetry.chiral and not (treatment.enantiopure or inside) else 1
+        if inside and treatment.enantiopure:
+            what = (
+                f"{name}: the study is enantiopure, but turning its torsions makes the other hand"
+            )
+            mend = "take enantiopure out, or the torsion: the sum over its circle counts both hands"
+            notes += (torsion_note("torsion-both-hands", "warning", calculation, what, mend),)
         if isotopes is None:
             notes += _symmetry_findings(calculation, symmetry, sigma, name)
         return cls(
@@ -237,6 +252,7 @@ class Structure:
                 spin_weights=rotor.spin_weights,
                 distortion_k=rotor.distortion_k,
                 spin_shares=rotor.spin_shares,
+                torsions=tuple(one.rotor for one in turning.torsions),
             ),
             modes=modes,
             rotor=rotor,
@@ -244,8 +260,17 @@ class Structure:
             symmetry_number=sigma,
             symmetry_origin="derived" if symmetry_number is None else "declared",
             degeneracy=hands,
-            files=tuple(dict.fromkeys((calculation.path, *electronic.files))),
-            findings=(*notes, *modes.findings),
+            files=tuple(
+                dict.fromkeys(
+                    (
+                        calculation.path,
+                        *electronic.files,
+                        *(file for choice in torsions for file in choice.files),
+                    )
+                )
+            ),
+            findings=(*notes, *modes.findings, *turning.findings),
+            torsions=turning.torsions,
         )
 
     def at(
@@ -299,7 +324,16 @@ class Structure:
             rotor=self.rotor.kind,
             degeneracy=self.degeneracy,
             findings=(*self.findings, *self._findings_at(t, total.slope_excess_j_mol, used)),
-            rows=part_rows(t, part, self.gas, self.treatment, used, state, added),
+            rows=part_rows(
+                t,
+                part,
+                self.gas,
+                self.treatment,
+                used,
+                state,
+                added,
+                [one.words for one in self.torsions],
+            ),
             mode_table=mode_table(part, self.modes, self.treatment, used),
         )
 

@@ -270,6 +270,59 @@ class EnergyKeys(Keys, frozen=True, kw_only=True):
     ] = UNSET
 
 
+class TorsionKeys(Keys, frozen=True, kw_only=True):
+    """A torsion treated as a hindered rotor; see ``docs/torsions.md``."""
+
+    atoms: Annotated[
+        tuple[Whole, Whole, Whole, Whole],
+        Meta(
+            description="four atoms of the dihedral angle, counted from 1, each bonded to the next"
+        ),
+    ]
+    scan: Annotated[
+        str | Annotated[list[str], Meta(min_length=1)] | UnsetType,
+        Meta(
+            description="relaxed scan: a table (CSV) with the columns `angle / deg` and "
+            "`energy / kJ mol^-1` (or another unit), or a list of outputs, one a point; a torsion has "
+            "this or `fourier`"
+        ),
+    ] = UNSET
+    fourier: Annotated[
+        list[tuple[Whole, Quantity, Quantity]] | UnsetType,
+        Meta(
+            description="potential as a series of c cos(k x) + s sin(k x), "
+            '`[[3, "6 kJ/mol", 0]]` (k, c, s) / kJ/mol'
+        ),
+    ] = UNSET
+    symmetry_number: Annotated[
+        Whole | UnsetType,
+        Meta(
+            description="wells of the circle that like atoms make the same (3 for a methyl group); "
+            "found by turning the top unless given"
+        ),
+    ] = UNSET
+    mirror: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="the potential is the same to both sides of this angle: half a period is "
+            "enough / deg"
+        ),
+    ] = UNSET
+    reduced_moment: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="reduced moment of inertia; that of the geometry unless given / u*angstrom^2"
+        ),
+    ] = UNSET
+    mode: Annotated[
+        Whole | str | UnsetType,
+        Meta(
+            description="the mode that it stands for, its number (from 1) or its wavenumber; found "
+            "by overlap unless given"
+        ),
+    ] = UNSET
+
+
 class SpeciesKeys(Keys, frozen=True, kw_only=True):
     """One species, saddle points included: read from outputs, or declared."""
 
@@ -319,6 +372,12 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
         Meta(
             description='of H2, D2 and T2: "equilibrium" unless given; "normal", "ortho" or "para" '
             "where the kinds do not turn into each other"
+        ),
+    ] = UNSET
+    torsions: Annotated[
+        list[TorsionKeys] | UnsetType,
+        Meta(
+            description='torsions treated as hindered rotors: `[{ atoms = [1, 2, 3, 4], scan = "scan.csv" }]`'
         ),
     ] = UNSET
     imaginary: Annotated[

@@ -25,6 +25,7 @@ from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.keys import SpeciesKeys, StudyKeys
 from thermo_pp.study.parts import above_zero, entropy_correction, given, real_below
+from thermo_pp.study.torsions import make_torsions
 from thermo_pp.units import quantity
 
 _READ_ONLY = (
@@ -35,6 +36,7 @@ _READ_ONLY = (
     "isotopes",
     "rotational_constants",
     "nuclear_spins",
+    "torsions",
     "imaginary",
     "entropy_correction",
 )
@@ -284,6 +286,12 @@ def _structure(
         isotopes=given(member.isotopes),
         rotational_constants=_rotational_constants(member),
         nuclear_spins=given(member.nuclear_spins),
+        torsions=make_torsions(
+            given(member.torsions) or [],
+            calc,
+            lambda output, at: open_source(_inside(maker, output, at)),
+            f"{where} torsions".strip(),
+        ),
         where=where,
     )
 
