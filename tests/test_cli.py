@@ -22,7 +22,7 @@ from thermo_pp.units import ENERGY_PER_KJ_MOL, HARTREE_KJ_MOL
 ROOT = Path(__file__).parents[1]
 PSI4 = ROOT / "fixtures" / "psi4" / "good"
 WATER = str(PSI4 / "water_hf_opt_freq.out")
-COMMANDS = ("survey", "species", "draft", "profile", "barrier", "isotopes")
+COMMANDS = ("survey", "species", "functions", "draft", "profile", "choices", "barrier", "isotopes")
 SURVEY_KEYS = (
     "path reader program program_version method basis formula charge multiplicity energy_hartree "
     "modes imaginary_modes lowest_mode_cm optimised ended_normally verdict"

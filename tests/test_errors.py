@@ -421,7 +421,9 @@ def test_no_steps(tmp_path: Path) -> None:
         load(tmp_path, TEXT[:start] + TEXT[end:])
     assert caught.value.what == "the key 'steps' is missing"
     assert caught.value.where == str(tmp_path / "study.toml")
-    assert caught.value.mend == "steps: a table `[[steps]]` for every step"
+    assert caught.value.mend == (
+        "steps: a table `[[steps]]` for every step; required unless there is a `[formation]`"
+    )
 
 
 def test_no_way_from_reactant_to_product(tmp_path: Path) -> None:

@@ -21,7 +21,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("readers",),  # 3
     ("collect", "scans", "species", "isotopes"),  # 4
     ("pairing", "audit", "grouping", "energies"),  # 5: energies pair their parts with the modes
-    ("graph", "loops", "paths", "profile", "kinetics"),  # 6
+    ("graph", "loops", "paths", "profile", "functions", "kinetics"),  # 6
     (),  # 7: measured
     ("study",),  # 8
     ("output",),  # 9
@@ -31,7 +31,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
-        "turning", "rates", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
+        "turning", "rates", "tunnelling", "isotope_ratios", "extrapolation", "repulsion", "polynomials",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
@@ -43,9 +43,12 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "energies", "profile", "barrier", "barrier_tables", "isotopes",
+        "survey", "species", "energies", "profile", "barrier", "barrier_tables", "isotopes", "functions",
+        "cantera_phase", "choices",
     ),
-    "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier", "isotopes"),
+    "cli": (
+        "options", "answers", "survey", "species", "functions", "draft", "profile", "choices", "barrier", "isotopes",
+    ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")
 """Modules that --help may import: without numpy at module level."""

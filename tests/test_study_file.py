@@ -147,6 +147,13 @@ species.W = { 2 = "T" }
 [[paths]]
 name = "x"
 steps = [1, -1]
+[formation]
+atoms = ["A"]
+atomization = ["A"]
+reactions = ["A = W"]
+reference.W = { enthalpy = "-1 kJ/mol", uncertainty = 0.1, temperature = "0 K", source = "a table" }
+reaction_uncertainty = "4 kJ/mol"
+spin_orbit = true
 """
 
 

@@ -179,8 +179,10 @@ def write_reaction(change: Mapping[str, int]) -> str:
     return f"{write_sum(used)} = {write_sum(made)}"
 
 
-def check_names(steps: Sequence[Step], known: Collection[str], *, where: str) -> None:
-    """Check that steps and species name each other.
+def check_names(
+    steps: Sequence[Step], known: Collection[str], *, where: str, elsewhere: Collection[str] = ()
+) -> None:
+    """Check that steps and species name each other; those used `elsewhere` need no step.
 
     Raises
     ------
@@ -210,7 +212,7 @@ def check_names(steps: Sequence[Step], known: Collection[str], *, where: str) ->
                     where=f"{step.where} equation",
                     mend="steps make and use minima only; name the minimum, or mend `through`",
                 )
-    used = {name for step in steps for name in step.species} | set(through)
+    used = {name for step in steps for name in step.species} | set(through) | set(elsewhere)
     for name in known:
         if name not in used:
             close = nearest(name, used)

@@ -19,6 +19,7 @@ Origin = Literal["printed", "derived", "declared"]
 Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
 """How a reference energy goes to the limit of the basis set."""
 Definition = Literal["free", "pool", "relaxation", "cycle"]
+PolynomialForm = Literal["nasa7", "nasa9", "shomate"]
 
 SEVERITIES: tuple[Severity, ...] = get_args(Severity)
 """From the mildest to the worst."""
@@ -31,6 +32,7 @@ NUCLEAR_SPINS: tuple[NuclearSpins, ...] = get_args(NuclearSpins)
 ENERGY_UNITS: tuple[EnergyUnit, ...] = get_args(EnergyUnit)
 FORMATS: tuple[Format, ...] = get_args(Format)
 DEFINITIONS: tuple[Definition, ...] = get_args(Definition)
+POLYNOMIAL_FORMS: tuple[PolynomialForm, ...] = get_args(PolynomialForm)
 
 DEFAULT_LOW_MODES: LowModes = "rotor-entropy"
 DEFAULT_ONSET_CM = 100.0

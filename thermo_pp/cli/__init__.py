@@ -8,7 +8,9 @@ import click
 
 from thermo_pp import __version__
 from thermo_pp.cli.barrier import barrier
+from thermo_pp.cli.choices import choices
 from thermo_pp.cli.draft import draft
+from thermo_pp.cli.functions import functions
 from thermo_pp.cli.isotopes import isotopes
 from thermo_pp.cli.profile import profile
 from thermo_pp.cli.species import species
@@ -43,5 +45,5 @@ def main() -> None:
     """
 
 
-for _command in (survey, species, draft, profile, barrier, isotopes):
+for _command in (survey, species, functions, draft, profile, choices, barrier, isotopes):
     main.add_command(_command)

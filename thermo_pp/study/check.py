@@ -159,11 +159,14 @@ def _check_table(
         if name in value:
             _check(value[name], field.type, file, (*path, name))
         elif field.required:
-            raise StudyError(
-                f"the key {name!r} is missing",
-                where=place(file, *path),
-                mend=_mend((*path, name)),
-            )
+            raise missing(name, file, *path)
+
+
+def missing(name: str, file: str, *path: str | int) -> StudyError:
+    """Return the error of a key that the table at `path` lacks."""
+    return StudyError(
+        f"the key {name!r} is missing", where=place(file, *path), mend=_mend((*path, name))
+    )
 
 
 def _check_choice(
@@ -228,6 +231,8 @@ def model_key(path: tuple[str | int, ...]) -> str:
     words = [part for part in path if isinstance(part, str)]
     if len(words) > 1 and words[0] in ("species", "levels", "isotopologues"):
         words[1] = "NAME"
+    if len(words) > 2 and words[:2] == ["formation", "reference"]:
+        words[2] = "NAME"
     return ".".join(words)
 
 

@@ -556,6 +556,60 @@ class PathKeys(Keys, frozen=True, kw_only=True):
     ]
 
 
+class ReferenceKeys(Keys, frozen=True, kw_only=True):
+    """An enthalpy of formation that others are derived from."""
+
+    enthalpy: Annotated[Quantity, Meta(description="enthalpy of formation / kJ/mol")]
+    uncertainty: Annotated[
+        Quantity | UnsetType, Meta(description="its standard uncertainty / kJ/mol")
+    ] = UNSET
+    temperature: Annotated[
+        Quantity, Meta(description='where it holds: "0 K" or "298.15 K" / K')
+    ] = "298.15 K"
+    source: Annotated[str, Meta(description="where it is from; stands below the table")] = ""
+
+
+class FormationKeys(Keys, frozen=True, kw_only=True):
+    """Enthalpies of formation; the species named here need no step."""
+
+    atoms: Annotated[
+        list[str],
+        Meta(
+            description="species of this file that are atoms; their values come from the built-in "
+            "table unless `reference` has them"
+        ),
+    ] = []
+    atomization: Annotated[
+        list[str] | UnsetType,
+        Meta(
+            description="species whose enthalpy of formation is derived from `atoms`; unless given, "
+            "every neutral minimum that is read and made of them"
+        ),
+    ] = UNSET
+    reactions: Annotated[
+        list[str],
+        Meta(
+            description='balanced reactions, `"CH4 + H2O = CH3OH + H2"`, each with exactly one species '
+            "without a reference value, which it gives"
+        ),
+    ] = []
+    reference: Annotated[
+        dict[str, ReferenceKeys],
+        Meta(description="species -> known enthalpy of formation, `{ enthalpy, uncertainty }`"),
+    ] = {}
+    reaction_uncertainty: Annotated[
+        Quantity | UnsetType,
+        Meta(description="standard uncertainty of a computed reaction enthalpy / kJ/mol"),
+    ] = UNSET
+    spin_orbit: Annotated[
+        bool,
+        Meta(
+            description="true: computed energies of `atoms` are means over their ground term, and the "
+            "built-in levels bring them to the lowest level"
+        ),
+    ] = False
+
+
 def _one_of(*names: str, also: tuple[str, ...] = ()) -> dict[str, Any]:
     """Return the schema of "exactly one of these keys", with `also` beside all but the first."""
     return {"oneOf": [{"required": [name, *(also if k else ())]} for k, name in enumerate(names)]}
@@ -599,8 +653,12 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
         ),
     ] = UNSET
     steps: Annotated[
-        list[_StepTable], Meta(min_length=1, description="a table `[[steps]]` for every step")
-    ]
+        list[_StepTable],
+        Meta(
+            min_length=1,
+            description="a table `[[steps]]` for every step; required unless there is a `[formation]`",
+        ),
+    ] = []
     effective: _EffectiveTable | UnsetType = UNSET
     isotopologues: Annotated[
         dict[str, IsotopologueKeys],
@@ -611,6 +669,9 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
     paths: Annotated[
         list[PathKeys], Meta(description="a table `[[paths]]` for every declared path")
     ] = []
+    formation: Annotated[
+        FormationKeys | UnsetType, Meta(description="enthalpies of formation, for `functions`")
+    ] = UNSET
 
 
 NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
@@ -630,6 +691,7 @@ NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
 def json_schema() -> dict[str, Any]:
     """Return the JSON Schema of the study file, for editors."""
     schema = msgspec.json.schema(StudyKeys)
+    schema["$defs"]["StudyKeys"]["anyOf"] = [{"required": ["steps"]}, {"required": ["formation"]}]
     return {
         "$schema": "https://json-schema.org/draft/2020-12/schema",
         "title": "thermo_pp study file",

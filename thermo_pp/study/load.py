@@ -6,29 +6,36 @@ import os
 import re
 import tomllib
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import Finding, StudyError
+from thermo_pp.functions.formation import FormationQuestion
 from thermo_pp.graph import check_reach
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
+from thermo_pp.names import PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
-from thermo_pp.study.check import check_keys
+from thermo_pp.study.check import check_keys, missing
 from thermo_pp.study.energies import check_levels, known_level
+from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
-from thermo_pp.study.parts import make_conditions, make_question, make_steps, make_treatment
+from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
 
 if TYPE_CHECKING:
+    from thermo_pp.functions.curves import Functions
+    from thermo_pp.functions.fits import Fit
+    from thermo_pp.functions.formation import Formations
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.results import EffectiveRate
     from thermo_pp.profile import Profile
+    from thermo_pp.study.choices import Choices
 
 _AT_LINE = re.compile(r"\s*\(at (?:line (\d+), column \d+|end of document)\)")
 
@@ -62,6 +69,8 @@ class Study:
         The named levels of theory of the file: alternatives, for `at_level`.
     energies : mapping of str to ElectronicEnergy
         Part by part, of every structure that is read.
+    formation_question : FormationQuestion or None
+        Of ``[formation]``.
     """
 
     title: str
@@ -76,6 +85,7 @@ class Study:
     level: str | None = None
     level_names: tuple[str, ...] = ()
     energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
+    formation_question: FormationQuestion | None = None
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -124,22 +134,30 @@ class Study:
         """Make a study of what was read, at a named level or, with None, as the file has it."""
         file, temperatures = origin.file, origin.temperatures
         keys = check_keys(origin.data, file)
+        if not keys.steps and given(keys.formation) is None:
+            raise missing("steps", file)
         own = make_treatment(keys.treatment, file)
         steps = make_steps(keys.steps, keys.treatment, file)
-        check_names(steps, keys.species, where=file)
+        saddles = {step.through for step in steps if step.through is not None}
+        formation = given(keys.formation)
+        if formation is not None:
+            formation = make_formation(formation, keys.species, saddles, file)
+        elsewhere = () if formation is None else formation.names
+        check_names(steps, keys.species, where=file, elsewhere=elsewhere)
         question = make_question(keys, steps, file)
         conditions = make_conditions(keys.conditions, steps, own.phase, temperatures, file)
-        saddles = {step.through for step in steps if step.through is not None}
         check_levels(keys, file)
         if level is None:
             level = keys.level if isinstance(keys.level, str) else None
         else:
             known_level(keys, level, file)
         members = make_species(keys, own, saddles, file, level=level, read=origin.read)
+        used = {name for step in steps for name in step.species} | saddles
+        in_steps = {name: model for name, model in members.species.items() if name in used}
         mechanism = Mechanism(
             steps,
-            {name: model.composition for name, model in members.species.items()},
-            charge={name: model.charge for name, model in members.species.items()},
+            {name: model.composition for name, model in in_steps.items()},
+            charge={name: model.charge for name, model in in_steps.items()},
             where=file,
             **question,
         )
@@ -158,6 +176,7 @@ class Study:
             level=level,
             level_names=tuple(keys.levels),
             energies=members.energies,
+            formation_question=formation,
             _origin=origin,
         )
 
@@ -174,6 +193,68 @@ class Study:
         if self._origin is None:
             raise ValueError("a study that was not loaded from a file has no named levels")
         return self._made(self._origin, level)
+
+    @property
+    def read_species(self) -> tuple[str, ...]:
+        """The species that stand on outputs of their own."""
+        tables = {} if self._origin is None else self._origin.data["species"]
+        return tuple(name for name, keys in tables.items() if "frequencies" in keys)
+
+    def altered(
+        self, treatment: Mapping[str, Any], species: Mapping[str, Mapping[str, Any]]
+    ) -> Study:
+        """Return the study with other keys, checked like those of the file; no output is read again.
+
+        Parameters
+        ----------
+        treatment : mapping
+            Keys of ``[treatment]`` in place of the study's.
+        species : mapping of str to mapping
+            Keys of species in place of the study's.
+
+        Raises
+        ------
+        StudyError
+            As `load`.
+        """
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file has no keys to change")
+        data = self._origin.data
+        tables = {**data["species"]}
+        for name, keys in species.items():
+            tables[name] = {**tables[name], **keys}
+        own = {**_table(data, "treatment"), **treatment}
+        origin = replace(self._origin, data={**data, "treatment": own, "species": tables})
+        return self._made(origin, self.level)
+
+    def choices(self, **options: Any) -> Choices:
+        """Return what each choice is worth; see `thermo_pp.study.choices.choices`."""
+        from thermo_pp.study.choices import choices
+
+        return choices(self, **options)
+
+    def functions(self) -> tuple[Functions, ...]:
+        """Return the thermodynamic functions of every species, saddle points included."""
+        from thermo_pp.functions.curves import functions
+
+        t = self.conditions.temperature_k
+        return tuple(functions(model, t) for model in self.species.values())
+
+    def fits(
+        self, form: PolynomialForm, bounds_k: tuple[float, float, float] | None = None
+    ) -> tuple[Fit, ...]:
+        """Return a polynomial of every species; see `thermo_pp.functions.fits.fit`."""
+        from thermo_pp.functions.fits import DEFAULT_BOUNDS_K, fit
+
+        bounds = bounds_k or DEFAULT_BOUNDS_K
+        return tuple(fit(model, form, bounds) for model in self.species.values())
+
+    def formation(self) -> Formations | None:
+        """Return the enthalpies of formation, None where the study asks for none."""
+        from thermo_pp.functions.formation import formations
+
+        question = self.formation_question
+        return None if question is None else formations(question, self.species)
 
     def profile(self, **options: Any) -> Profile:
         """Return relative H, S and G of every state; see `thermo_pp.profile.profile`."""

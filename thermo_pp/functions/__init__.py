@@ -1,0 +1,1 @@
+"""Thermodynamic functions of any species: tables, polynomials and enthalpies of formation."""
