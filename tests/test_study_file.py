@@ -151,7 +151,7 @@ steps = [1, -1]
 atoms = ["A"]
 atomization = ["A"]
 reactions = ["A = W"]
-reference.W = { enthalpy = "-1 kJ/mol", uncertainty = 0.1, temperature = "0 K", source = "a table" }
+reference.A = { enthalpy = "-1 kJ/mol", uncertainty = 0.1, temperature = "0 K", source = "a table" }
 reaction_uncertainty = "4 kJ/mol"
 spin_orbit = true
 """

@@ -5,13 +5,15 @@ chemicals 1.5.2 (`ATcT 1.112 (g).tsv`), with its uncertainties (95 %). The other
 (Chase 1998), from the package janaf 1.4; their uncertainties are from memory of the printed JANAF and
 CODATA tables and are taken as 95 % too. Elements: JANAF, H - H(Tr) at 0 K of the reference state.
 The inert gases are their own reference states.
-Levels of the ground term: from memory of the NIST Atomic Spectra Database; a test compares the
-H(298.15 K) - H(0) that they give with JANAF's.
+Levels of the ground term: those of `data.levels`; a test compares the H(298.15 K) - H(0) that they give
+with JANAF's.
 """
 
 from __future__ import annotations
 
 from typing import Final, NamedTuple
+
+from thermo_pp.data.levels import KNOWN_LEVELS
 
 
 class Atom(NamedTuple):
@@ -51,25 +53,25 @@ ATOMS: Final[dict[str, Atom]] = {
     "He": Atom(0.0, 0.0, 6.197, ((1, 0.0),), _ATCT),
     "Li": Atom(157.725, 1.0, 4.622, ((2, 0.0),), _JANAF),
     "Be": Atom(319.735, 5.0, 1.932, ((1, 0.0),), _JANAF),
-    "B": Atom(554.898, 12.0, 1.214, ((2, 0.0), (4, 15.287)), _JANAF),
-    "C": Atom(711.388, 0.057, 1.051, ((1, 0.0), (3, 16.417), (5, 43.414)), _ATCT),
+    "B": Atom(554.898, 12.0, 1.214, KNOWN_LEVELS["B", 0, 2][:2], _JANAF),
+    "C": Atom(711.388, 0.057, 1.051, KNOWN_LEVELS["C", 0, 3][:3], _ATCT),
     "N": Atom(470.573, 0.024, 8.670 / 2, ((4, 0.0),), _ATCT),
-    "O": Atom(246.844, 0.002, 8.683 / 2, ((5, 0.0), (3, 158.265), (1, 226.977)), _ATCT),
-    "F": Atom(77.268, 0.057, 8.825 / 2, ((4, 0.0), (2, 404.141)), _ATCT),
+    "O": Atom(246.844, 0.002, 8.683 / 2, KNOWN_LEVELS["O", 0, 3][:3], _ATCT),
+    "F": Atom(77.268, 0.057, 8.825 / 2, KNOWN_LEVELS["F", 0, 2][:2], _ATCT),
     "Ne": Atom(0.0, 0.0, 6.197, ((1, 0.0),), _ATCT),
     "Na": Atom(107.549, 0.7, 6.447, ((2, 0.0),), _JANAF),
     "Mg": Atom(145.901, 0.8, 4.998, ((1, 0.0),), _JANAF),
-    "Al": Atom(327.320, 4.2, 4.539, ((2, 0.0), (4, 112.061)), _JANAF),
-    "Si": Atom(445.668, 8.0, 3.218, ((1, 0.0), (3, 77.115), (5, 223.157)), _JANAF),
+    "Al": Atom(327.320, 4.2, 4.539, KNOWN_LEVELS["Al", 0, 2][:2], _JANAF),
+    "Si": Atom(445.668, 8.0, 3.218, KNOWN_LEVELS["Si", 0, 3][:3], _JANAF),
     "P": Atom(315.553, 1.0, 5.360, ((4, 0.0),), _JANAF),
-    "S": Atom(274.735, 0.25, 4.412, ((5, 0.0), (3, 396.055), (1, 573.640)), _JANAF),
-    "Cl": Atom(119.621, 0.002, 9.181 / 2, ((4, 0.0), (2, 882.3515)), _ATCT),
+    "S": Atom(274.735, 0.25, 4.412, KNOWN_LEVELS["S", 0, 3][:3], _JANAF),
+    "Cl": Atom(119.621, 0.002, 9.181 / 2, KNOWN_LEVELS["Cl", 0, 2][:2], _ATCT),
     "Ar": Atom(0.0, 0.0, 6.197, ((1, 0.0),), _ATCT),
     "K": Atom(89.885, 0.4, 7.082, ((2, 0.0),), _JANAF),
     "Ca": Atom(177.339, 0.8, 5.736, ((1, 0.0),), _JANAF),
-    "Br": Atom(117.914, 0.056, 24.509 / 2, ((4, 0.0), (2, 3685.24)), _ATCT),
+    "Br": Atom(117.914, 0.056, 24.509 / 2, KNOWN_LEVELS["Br", 0, 2][:2], _ATCT),
     "Kr": Atom(0.0, 0.0, 6.197, ((1, 0.0),), _ATCT),
-    "I": Atom(107.157, 0.002, 13.198 / 2, ((4, 0.0), (2, 7602.97)), _ATCT),
+    "I": Atom(107.157, 0.002, 13.198 / 2, KNOWN_LEVELS["I", 0, 2][:2], _ATCT),
     "Xe": Atom(0.0, 0.0, 6.197, ((1, 0.0),), _ATCT),
 }
 """By element symbol."""
