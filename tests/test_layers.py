@@ -43,7 +43,8 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "energies", "profile", "barrier", "barrier_tables", "isotopes",
+        "survey", "species", "energies", "profile", "courses", "barrier", "barrier_tables",
+        "isotopes",
     ),
     "cli": ("options", "answers", "survey", "species", "draft", "profile", "barrier", "isotopes"),
 }  # fmt: skip
