@@ -50,6 +50,8 @@ class Case:
             np.array([T]),
             np.array([list(g.values())], dtype=np.longdouble),
             np.zeros((1, len(names))),
+            grounds_kj_mol={},
+            saddle_members={},
         )
         n = len(made.steps)
         rates = ElementaryRates(
