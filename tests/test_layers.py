@@ -43,7 +43,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "energies", "profile", "barrier", "barrier_tables", "isotopes", "functions",
+        "survey", "species", "energies", "profile", "courses", "barrier", "barrier_tables", "isotopes", "functions",
         "cantera_phase", "choices",
     ),
     "cli": (

@@ -84,6 +84,10 @@ entropy_correction = "-10 J/mol/K"
 temperatures = { from = "280 K", to = 360, step = "5 K" }
 held = { W = "2e-4 mol/L" }
 driven = false
+initial = { A = "0.1 mol/L" }
+total = { A = "0.1 mol/L" }
+flow = { residence_time = "10 s", feed = { A = "0.1 mol/L" } }
+quasi_steady = ["A"]
 [species.A]
 frequencies = "a.out"
 entropy_correction = -10

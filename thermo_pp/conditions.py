@@ -159,6 +159,22 @@ class Held:
 
 
 @dataclass(frozen=True)
+class Flow:
+    """A stirred tank that flows.
+
+    Attributes
+    ----------
+    residence_s : float
+        Residence time.
+    feed : dict of str to Held
+        What flows in.
+    """
+
+    residence_s: float
+    feed: dict[str, Held]
+
+
+@dataclass(frozen=True)
 class Conditions:
     """The keys of ``[conditions]``.
 
@@ -170,11 +186,22 @@ class Conditions:
         Insertion order is the file's.
     driven : bool
         Whether held species may be out of balance with each other.
+    initial : dict of str to Held
+        What there is at the start of a time course.
+    total : dict of str to Held
+        All of a catalyst (and of what else is bound to it), whatever form it is in.
+    flow : Flow or None
+    quasi_steady : tuple of str
+        Species whose quasi-steady state is set beside the time course.
     """
 
     temperature_k: tuple[float, ...]
     held: dict[str, Held] = field(default_factory=dict)
     driven: bool = False
+    initial: dict[str, Held] = field(default_factory=dict)
+    total: dict[str, Held] = field(default_factory=dict)
+    flow: Flow | None = None
+    quasi_steady: tuple[str, ...] = ()
 
 
 def held(value: Any, *, where: str) -> Held:

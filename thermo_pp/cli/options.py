@@ -282,9 +282,7 @@ def _temperatures(
 ) -> tuple[float, ...] | None:
     from thermo_pp.conditions import temperature
 
-    return _usage(
-        lambda: tuple(temperature(_number(text), where="--temperature") for text in value)
-    )
+    return usage(lambda: tuple(temperature(number(text), where="--temperature") for text in value))
 
 
 def _temperature_range(
@@ -294,8 +292,8 @@ def _temperature_range(
         return None
     from thermo_pp.conditions import temperature_range
 
-    start, stop, step = (_number(text) for text in value)
-    return _usage(lambda: temperature_range(start, stop, step, where="--temperature-range"))
+    start, stop, step = (number(text) for text in value)
+    return usage(lambda: temperature_range(start, stop, step, where="--temperature-range"))
 
 
 def _standard_state(
@@ -305,7 +303,7 @@ def _standard_state(
         return None
     from thermo_pp.conditions import standard_state
 
-    return _usage(lambda: standard_state(value, where="--standard-state"))
+    return usage(lambda: standard_state(value, where="--standard-state"))
 
 
 def _onset(ctx: click.Context, parameter: click.Parameter, value: str | None) -> float | None:
@@ -322,18 +320,18 @@ def _positive(text: str, unit: str | None, where: str) -> float:
 
     from thermo_pp.units import quantity
 
-    value = _number(text)
+    value = number(text)
     if unit is None:
         if isinstance(value, str) or not math.isfinite(value):
             raise click.BadParameter(f"{text!r} is not a number")
     else:
-        value = _usage(lambda: quantity(value, unit, where=where))
+        value = usage(lambda: quantity(value, unit, where=where))
     if float(value) <= 0.0:
         raise click.BadParameter(f"{text!r} is not above 0")
     return float(value)
 
 
-def _number(text: str) -> float | str:
+def number(text: str) -> float | str:
     """Return a bare number as a float, everything else (a quantity) untouched."""
     try:
         return float(text)
@@ -344,7 +342,7 @@ def _number(text: str) -> float | str:
 Value = TypeVar("Value")
 
 
-def _usage(make: Callable[[], Value]) -> Value:
+def usage(make: Callable[[], Value]) -> Value:
     """Return what `make` makes of an option; what is wrong with it is wrong usage."""
     try:
         return make()

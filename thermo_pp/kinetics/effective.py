@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import replace
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +17,8 @@ from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import steady_state
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.net_reaction import net_reaction, write_side
+from thermo_pp.kinetics.network import NotLinear
+from thermo_pp.kinetics.not_linear import not_linear, step_rates
 from thermo_pp.kinetics.products import formation
 from thermo_pp.kinetics.results import (
     NEXT_DECAY_BELOW,
@@ -28,7 +30,6 @@ from thermo_pp.kinetics.results import (
     SignChange,
     StepRate,
 )
-from thermo_pp.kinetics.steps import rate_unit
 from thermo_pp.kinetics.tunnelling_share import with_tunnelling
 from thermo_pp.kinetics.windows import LOCATED_K, crossings, scan_temperatures, sign_changes
 from thermo_pp.kinetics.words import words
@@ -37,29 +38,12 @@ from thermo_pp.names import DEFINITIONS, Definition, Severity
 if TYPE_CHECKING:
     from collections.abc import Mapping
 
-    from thermo_pp.conditions import Conditions, Treatment
-    from thermo_pp.mechanism import Mechanism
-    from thermo_pp.species import SpeciesModel
+    from thermo_pp.kinetics.asked import StudyLike
 
 FloatArray = NDArray[np.float64]
 HIGH_PRESSURE_CONTROL = 0.1
 _CONTROLLING = 0.1
 _FARTHEST_SHIFT_KJ_MOL = 100.0
-
-
-class StudyLike(Protocol):
-    """What the effective rate needs of a study."""
-
-    @property
-    def treatment(self) -> Treatment: ...  # noqa: D102
-    @property
-    def conditions(self) -> Conditions: ...  # noqa: D102
-    @property
-    def mechanism(self) -> Mechanism: ...  # noqa: D102
-    @property
-    def species(self) -> Mapping[str, SpeciesModel]: ...  # noqa: D102
-    @property
-    def findings(self) -> tuple[Finding, ...]: ...  # noqa: D102
 
 
 def effective(study: StudyLike) -> EffectiveRate:
@@ -83,6 +67,12 @@ def _effective(study: StudyLike) -> EffectiveRate:
     model = Model(study.mechanism, study.conditions, study.treatment, study.species)
     grid = np.array(study.conditions.temperature_k)
     rates = model.at(grid)
+    try:
+        _ = rates.network
+    except NotLinear as error:
+        answer = not_linear(study, model, rates, error)
+        further = _findings(answer.rates, rates, study.mechanism.where)
+        return replace(answer, findings=tuple(dict.fromkeys((*answer.findings, *further))))
     definitions = rates.definitions()
     scan = scan_temperatures(float(grid.min()), float(grid.max()))
     wide = model.at(scan)
@@ -277,30 +267,17 @@ def _step_rates(rates: Rates) -> tuple[StepRate, ...]:
             back = levels[edge.head] + network.log_reverse[:, number].astype(np.float64)
             reversibility[edge.step] = _ratio(forth, back)
     held = _log_held(rates)
-    found = []
     for number, step in enumerate(rates.model.mechanism.steps):
-        forward, reverse = rates.steps.log_forward[:, number], rates.steps.log_reverse[:, number]
         if number not in inside:
-            forth, back = forward.copy(), reverse.copy()
+            forth, back = (
+                rates.steps.log_forward[:, number].copy(),
+                rates.steps.log_reverse[:, number].copy(),
+            )
             for log, side in ((forth, step.reactants), (back, step.products)):
                 for name, count in side.items():
                     log += count * held[name]
             reversibility[number] = _ratio(forth, back)
-        found.append(
-            StepRate(
-                equation=step.equation,
-                forward_rate_constant=np.exp(forward),
-                reverse_rate_constant=np.exp(reverse),
-                forward_unit=rate_unit(step.reactants),
-                reverse_unit=rate_unit(step.products),
-                reversibility=reversibility[number],
-                limited=rates.steps.limited[:, number],
-                tunnelling=step.tunnelling,
-                log_tunnelling=rates.steps.log_kappa[:, number],
-                tunnelling_energy_kj_mol=rates.steps.kappa_energy_j_mol[:, number] / 1000.0,
-            )
-        )
-    return tuple(found)
+    return step_rates(rates, reversibility)
 
 
 def _ratio(forth: FloatArray, back: FloatArray) -> FloatArray:
@@ -334,7 +311,7 @@ def _findings(
 ) -> tuple[Finding, ...]:
     """Return what the reader of the numbers should doubt."""
     findings: list[Finding] = []
-    t = rates.network.temperature_k
+    t = rates.energies.temperature_k
 
     def add(code: str, severity: Severity, what: str, mend: str) -> None:
         findings.append(Finding(code, severity, file, None, what, mend))

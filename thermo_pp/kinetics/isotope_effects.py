@@ -19,7 +19,7 @@ from thermo_pp.mechanism import Step
 from thermo_pp.names import Definition
 
 if TYPE_CHECKING:
-    from thermo_pp.kinetics.effective import StudyLike
+    from thermo_pp.kinetics.asked import StudyLike
 
 FloatArray = NDArray[np.float64]
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from fractions import Fraction
 from functools import cached_property
 
 import numpy as np
@@ -79,11 +80,15 @@ class Rates:
     def network(self) -> Network:
         """The linear network."""
         model = self.model
-        conditions = model.conditions
-        equilibrium = equilibrium_of(model.mechanism, conditions.held, driven=conditions.driven)
         return linear_network(
-            model.mechanism, model.conditions, self.energies, self.steps, equilibrium
+            model.mechanism, model.conditions, self.energies, self.steps, self.equilibrium
         )
+
+    @cached_property
+    def equilibrium(self) -> dict[str, dict[str, Fraction]]:
+        """What every species held at equilibrium is in equilibrium with."""
+        conditions = self.model.conditions
+        return equilibrium_of(self.model.mechanism, conditions.held, driven=conditions.driven)
 
     @cached_property
     def turns(self) -> list[Turn]:

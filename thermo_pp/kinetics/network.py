@@ -29,6 +29,10 @@ End = tuple[tuple[str, int], ...]
 """What a step ends in: species that are not held, with their counts."""
 
 
+class NotLinear(StudyError):
+    """The network is not linear: no constant alone describes it."""
+
+
 @dataclass(frozen=True)
 class Edge:
     """One step between two states of the network.
@@ -228,7 +232,7 @@ def linear_network(
         step = mechanism.steps[number]
         if not left or not right:
             side = "left" if not left else "right"
-            raise StudyError(
+            raise NotLinear(
                 f"the network is not linear: every species on the {side} of {step.equation!r} is held, "
                 "but not on the other side",
                 where=step.where,
@@ -265,7 +269,7 @@ def _end(
         return tuple(loose)
     if not mechanism.catalyst and all(name in mechanism.products for name, _ in loose):
         return tuple(loose)
-    raise StudyError(
+    raise NotLinear(
         f"the network is not linear: {_written(tuple(loose))} stand on the {where} of "
         f"{step.equation!r} and none of them is held",
         where=step.where,

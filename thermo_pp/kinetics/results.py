@@ -171,6 +171,9 @@ class Rate:
         ln of the rate constant over the one without tunnelling; None where no step tunnels.
     tunnelling_energy_kj_mol : shape (t,) or None
         Tunnelling's share in the Arrhenius energy.
+    catalyst_order : shape (t,) or None
+        Where the balance of the catalyst is not linear: d ln(rate)/d ln(total catalyst), the rate
+        being turnover frequency times total.
     """
 
     definition: Definition
@@ -194,6 +197,7 @@ class Rate:
     branching: Mapping[str, FloatArray] | None = None
     log_tunnelling: FloatArray | None = None
     tunnelling_energy_kj_mol: FloatArray | None = None
+    catalyst_order: FloatArray | None = None
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -246,7 +250,7 @@ class EffectiveRate:
     subject : str
         The reactant or the catalyst.
     net_reaction : str
-        ``"SO3 + W = acid"``.
+        ``"SO3 + W = acid"``; empty where no constant describes the network.
     reactant_coefficient : int
         Loss of the reactant over the rate.
     standard_state : str

@@ -11,8 +11,11 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
+from thermo_pp.kinetics.courses import Transient
+from thermo_pp.kinetics.flow import FlowState
 from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate, StepRate
 from thermo_pp.names import DEFINITIONS, Definition, EnergyUnit
+from thermo_pp.output.courses import flow_keys, time_course_keys
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import kelvin
 from thermo_pp.output.tables import (
@@ -38,7 +41,11 @@ _KEYS: dict[Definition, str] = {
 
 
 def keys(
-    effective: EffectiveRate, treatment: Treatment, findings: Sequence[Finding]
+    effective: EffectiveRate,
+    treatment: Treatment,
+    findings: Sequence[Finding],
+    transient: Transient | None = None,
+    flow: FlowState | None = None,
 ) -> dict[str, Any]:
     """Return the JSON answer."""
     rates = {name: effective.rates.get(name) for name in DEFINITIONS}
@@ -47,13 +54,19 @@ def keys(
         findings,
         treatment,
         temperature_k=effective.temperature_k,
-        net_reaction=effective.net_reaction,
+        net_reaction=effective.net_reaction or None,
         reactant_coefficient=effective.reactant_coefficient,
         held_mol_l=effective.held_mol_l,
         rates={_KEYS[name]: rate and _rate(rate) for name, rate in rates.items()},
         steps=[vars(step) for step in effective.steps],
-        words=" ".join(effective.words),
+        time_course=transient and time_course_keys(transient),
+        flow=flow and flow_keys(flow),
+        words=" ".join((*effective.words, *_further(transient), *_further(flow))),
     )
+
+
+def _further(result: Transient | FlowState | None) -> tuple[str, ...]:
+    return () if result is None else result.words
 
 
 def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> list[Block]:
@@ -93,7 +106,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
     controls: list[list[Cell]] = [
         [name, float(effective.temperature_k[k]), what, species, defined(values[k])]
         for name, rate in rates.items()
-        for what, family in (("control", rate.control), ("order", rate.orders))
+        for what, family in (("control", rate.control), ("order", all_orders(rate, effective)))
         for species, values in family.items()
         for k in every
     ]
@@ -115,8 +128,20 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
             [*head, Column("approximation"), Column("k", "s⁻¹"), Column("ratio")],
             approximations,
         ),
-        steps_table(effective, every, unit, people=False),
+        steps_wide(effective, unit),
     ]
+
+
+def all_orders(rate: Rate, effective: EffectiveRate) -> dict[str, FloatArray]:
+    """Return the orders in held species, and in the total catalyst where that is no matter of course."""
+    if rate.catalyst_order is None:
+        return dict(rate.orders)
+    return {**rate.orders, f"all {effective.subject}": rate.catalyst_order}
+
+
+def steps_wide(effective: EffectiveRate, unit: EnergyUnit) -> Table:
+    """Return the steps at every temperature, for CSV."""
+    return steps_table(effective, range(len(effective.temperature_k)), unit, people=False)
 
 
 def rates_of(effective: EffectiveRate) -> dict[Definition, Rate]:
@@ -211,7 +236,7 @@ def _rate(rate: Rate) -> dict[str, Any]:
     if rate.definition == "pool":
         for name in ("slow_share", "next_decay_ratio", "inverse_mean_time", "headline"):
             keys[name] = getattr(rate, name)
-    optional = ("log_tunnelling", "tunnelling_energy_kj_mol")
+    optional = ("catalyst_order", "log_tunnelling", "tunnelling_energy_kj_mol")
     for name in ("resting_state", "populations", "branching", *optional):
         if getattr(rate, name) is not None:
             keys[name] = getattr(rate, name)

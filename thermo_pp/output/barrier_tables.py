@@ -12,6 +12,7 @@ from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, Windo
 from thermo_pp.names import Definition, EnergyUnit
 from thermo_pp.output.barrier import (
     activation_cells,
+    all_orders,
     cell_at,
     rates_of,
     steps_table,
@@ -189,16 +190,19 @@ def _control(rate: Rate, effective: EffectiveRate, title: str, unit: EnergyUnit)
     }
     saddles = {name: values for name, values in counting.items() if name in rate.saddles}
     states = {name: values for name, values in counting.items() if name not in rate.saddles}
-    table = _family(title, {"‡": saddles, "": states, "order": rate.orders}, effective, decimals=3)
+    orders = all_orders(rate, effective)
+    table = _family(title, {"‡": saddles, "": states, "order": orders}, effective, decimals=3)
     k = usual(effective.temperature_k)
     moves = [rate.sign_shift_kj_mol.get(name) for name in (*saddles, *states)]
     cells = [None if move is None else in_unit(move[k], unit) for move in moves]
     notes = ["Control: d ln k/d(-G/RT) of each state; ‡: saddle points, or steps without one."]
+    if rate.catalyst_order is not None:
+        notes.append(f"The order in all {effective.subject} is that of k times its total.")
     if len(counting) < len(rate.control):
         notes.append(f"Left out: {len(rate.control) - len(counting)} below {SHOWN_CONTROL}.")
     if all(cell is None for cell in cells):
         return Table(title, table.columns, table.rows, notes)
-    cells += [None] * len(rate.orders)
+    cells += [None] * len(orders)
     column = energy_column(f"move at {kelvin(effective.temperature_k[k])}", unit)
     rows = [[*row, cell] for row, cell in zip(table.rows, cells, strict=True)]
     notes.append("move: of the energy of one state, which would bring Eₐ to zero.")

@@ -124,6 +124,18 @@ class RangeKeys(Keys, frozen=True, kw_only=True, rename={"from_": "from"}):
 Temperatures = Annotated[list[Quantity], Meta(min_length=1)] | RangeKeys
 
 
+class FlowKeys(Keys, frozen=True, kw_only=True):
+    """A stirred tank that flows."""
+
+    residence_time: Annotated[Quantity, Meta(description="residence time / s")]
+    feed: Annotated[
+        dict[str, str],
+        Meta(
+            min_length=1, description="species -> concentration or partial pressure that flows in"
+        ),
+    ]
+
+
 class ConditionsKeys(Keys, frozen=True, kw_only=True):
     """Temperatures, and what is held constant."""
 
@@ -144,6 +156,28 @@ class ConditionsKeys(Keys, frozen=True, kw_only=True):
     driven: Annotated[
         bool, Meta(description="true: held species may be out of balance with each other")
     ] = False
+    initial: Annotated[
+        dict[str, str],
+        Meta(
+            description="species -> concentration or partial pressure at the start of a time course "
+            "(`barrier --time`); what is not named is not there"
+        ),
+    ] = {}
+    total: Annotated[
+        dict[str, str],
+        Meta(
+            description="catalyst -> concentration of all its forms together, needed where some hold "
+            "it twice (dimers) or meet each other"
+        ),
+    ] = {}
+    flow: Annotated[
+        FlowKeys | UnsetType,
+        Meta(description="a stirred tank that flows: its steady state is worked out"),
+    ] = UNSET
+    quasi_steady: Annotated[
+        list[str],
+        Meta(description="species whose quasi-steady state is set beside the time course"),
+    ] = []
 
 
 class RotationalKeys(Keys, frozen=True, kw_only=True):

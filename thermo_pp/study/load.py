@@ -32,6 +32,8 @@ if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.fits import Fit
     from thermo_pp.functions.formation import Formations
+    from thermo_pp.kinetics.courses import Transient
+    from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.results import EffectiveRate
     from thermo_pp.profile import Profile
@@ -294,6 +296,18 @@ class Study:
             )
             for label, labels in self.labels.items()
         )
+
+    def transient(self, **options: Any) -> Transient:
+        """Return the time courses; see `thermo_pp.kinetics.transient.transient`."""
+        from thermo_pp.kinetics.transient import transient
+
+        return transient(self, **options)
+
+    def flow(self, **options: Any) -> FlowState:
+        """Return the steady states of the flow; see `thermo_pp.kinetics.flow.flow`."""
+        from thermo_pp.kinetics.flow import flow
+
+        return flow(self, **options)
 
 
 @dataclass(frozen=True, eq=False)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from itertools import pairwise
 from typing import Any, TypedDict
 
@@ -124,7 +124,53 @@ def make_conditions(
                 where=where,
                 mend='write a concentration, for instance "0.5 mol/L"',
             )
-    return Conditions(kelvin, held, keys.driven)
+    initial, total = (
+        _amounts(getattr(keys, key), known, held, phase, place(file, "conditions", key))
+        for key in ("initial", "total")
+    )
+    flow = None
+    if not isinstance(keys.flow, UnsetType):
+        where = place(file, "conditions", "flow")
+        residence = above_zero(keys.flow.residence_time, "s", f"{where}.residence_time")
+        feed = _amounts(keys.flow.feed, known, held, phase, f"{where}.feed")
+        flow = made.Flow(residence, feed)
+    for name in keys.quasi_steady:
+        where = place(file, "conditions", "quasi_steady")
+        if name not in known or name in held:
+            what = f"{name!r} is held" if name in held else f"unknown species {name!r}"
+            raise StudyError(what, where=where, mend=suggestion(name, known, "species"))
+    resting = tuple(dict.fromkeys(keys.quasi_steady))
+    return Conditions(kelvin, held, keys.driven, initial, total, flow, resting)
+
+
+def _amounts(
+    given: Mapping[str, str],
+    known: Sequence[str],
+    held: Mapping[str, made.Held],
+    phase: Phase,
+    where: str,
+) -> dict[str, made.Held]:
+    """Turn a table of amounts that are not held into concentrations and pressures."""
+    found = {}
+    for name, value in given.items():
+        here = f"{where}.{name}"
+        if name not in known:
+            mend = suggestion(name, known, "species")
+            raise StudyError(f"unknown species {name!r}", where=here, mend=mend)
+        if name in held:
+            raise StudyError(
+                f"{name!r} is held too", where=here, mend="name it here or under held, not in both"
+            )
+        amount = made.held(value, where=here)
+        only = phase == "solution" or where.endswith("total")
+        if amount.form == "equilibrium" or (only and amount.form == "pressure"):
+            raise StudyError(
+                f"{value!r} is not a concentration",
+                where=here,
+                mend='write for instance "0.1 mol/L"',
+            )
+        found[name] = amount
+    return found
 
 
 def make_steps(keys: Sequence[StepKeys], treatment: TreatmentKeys, file: str) -> tuple[Step, ...]:
