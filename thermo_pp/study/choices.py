@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.kinetics.effective import StudyLike as EffectiveStudy
+from thermo_pp.kinetics.asked import StudyLike as EffectiveStudy
 from thermo_pp.kinetics.model import Model
 from thermo_pp.names import DEFINITIONS, LOW_MODES, Definition
 
