@@ -79,6 +79,12 @@ def test_a_line_that_is_not_needed(fixture: str, mark: bytes, which: int) -> Non
 
 CHANGED = [
     (
+        "gaussian/good/water_b2plyp_energy.log",
+        b"   1          8 ",
+        b"   1          7 ",
+        "not the elements",
+    ),
+    (
         "nwchem/good/water_hf_freq.out",
         b"NWChem SCF Module\n                                 ---",
         b"NWChem SCF Module\n                                 \0--",

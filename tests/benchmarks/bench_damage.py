@@ -30,7 +30,7 @@ def main(count: int = 10_000, seed: int = 1) -> int:
         found = failure(variant, originals[variant.fixture])
         if found is not None:
             wrong += 1
-            print(f"{variant.name}: {found}"[:300])
+            print(f"{variant.name}: {found}"[:300], flush=True)
     print(f"{count} variants of {len(paths)} fixtures, {wrong} wrong; {dict(kinds)}")
     return 1 if wrong else 0
 

@@ -9,8 +9,10 @@ last energy and its geometry. "Optimization completed" in a frequency step means
 from __future__ import annotations
 
 import re
+from collections import Counter
 from dataclasses import dataclass
 
+from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers import repulsion
 from thermo_pp.readers.gaussian import energies, geometry, vibrations
 from thermo_pp.readers.gaussian.energies import Energy
@@ -188,6 +190,16 @@ def _shape_before(step: Step, blocks: list[int], at: int) -> Geometry:
             f"{len(shape.numbers)} atoms in this geometry, but the program says NAtoms= {said}",
             mend="the output is damaged here; rerun or re-copy it",
         )
+    counted = step.formula
+    if counted is not None and not shape.dummies:
+        own = Counter(SYMBOLS[z] for z in shape.numbers.tolist())
+        if own != counted[0]:
+            raise step.text.error(
+                shape.at,
+                "not the elements of this geometry that the program counts on line "
+                f"{step.text.line_number(counted[1])}",
+                mend="the output is damaged here; rerun or re-copy it",
+            )
     _check_repulsion(step, shape, at)
     return shape
 

@@ -11,6 +11,7 @@ import re
 from dataclasses import dataclass
 from functools import cached_property
 
+from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 THERMOCHEMISTRY = b" - Thermochemistry -"
@@ -27,6 +28,8 @@ _ROUTE = re.compile(rb"\n (-{3,})\n( *#[^\n]*(?:\n(?! ---)[^\n]*)*)\n (-{3,})\n"
 _GEOMETRY = re.compile(rb"\n +(Standard|Input|Z-Matrix|Principal axis) orientation: *\n -{20,}\n")
 _LIKE_A_HEADING = re.compile(rb"rientation|Standard|Input|orient")
 _ATOMS = re.compile(rb"\n NAtoms= *(\d+) ")
+_STOICHIOMETRY = re.compile(rb"\n Stoichiometry +(\S+)")
+_ELEMENT = re.compile(r"([A-Z][a-z]?)(\d*)")
 _CHARGE = re.compile(rb"\n Charge = *(-?\d+) +Multiplicity = *(\d+)")
 _ARCHIVES = (b"\n 1\\1\\", b"\n 1|1|")
 _OPT = re.compile(r"(?<![\w=(-])(?:f?opt|popt)\b", re.IGNORECASE)  # not stable=opt
@@ -177,6 +180,21 @@ class Step:
         """How many atoms the program says that there are, None where it does not."""
         match = _ATOMS.search(self.text.data, self.start, self.end)
         return None if match is None else int(match.group(1))
+
+    @cached_property
+    def formula(self) -> tuple[dict[str, int], int] | None:
+        """The elements that the program counts and where; None where it does not, or counts ghosts and dummies too."""
+        match = _STOICHIOMETRY.search(self.text.data, self.start, self.end)
+        if match is not None:
+            words, at = match.group(1).decode("utf-8", "replace"), match.start(1)
+        elif self.archive is not None:
+            words, at = self.archive.fields[6], self.archive.at
+        else:
+            return None
+        bare = words.partition("(")[0]
+        counted = {name: int(count or 1) for name, count in _ELEMENT.findall(bare)}
+        whole = "".join(f"{name}{count}" for name, count in _ELEMENT.findall(bare)) == bare
+        return (counted, at) if whole and counted and not set(counted) - set(SYMBOLS) else None
 
     @property
     def of_several(self) -> bool:

@@ -32,6 +32,7 @@ ROUNDING_ANGSTROM = 5.1e-9
 
 _END = re.compile(rb"\*\*\* P[Ss][Ii]4 (exiting successfully|encountered an error)")
 _REPULSION = b"Nuclear repulsion ="
+_SAME_REPULSION = 1e-8
 _EXCEPTION = re.compile(
     rb"^(?:PsiException|[\w.]*(?:Error|Exception)|[\w.]*exceptions\.\w+): *(\S[^\r\n]*)"
     rb"|^Fatal Error: *(\S[^\r\n]*)",
@@ -129,6 +130,15 @@ def check_repulsion(part: Text, geometry: Geometry) -> None:
     )
     if why is not None:
         raise part.error(geometry.at, why, mend=CUT_SHORT)
+    for again in part.all(_REPULSION):  # an SCF whose beginning is lost has another one
+        other = part.number(again, "the nuclear repulsion energy")
+        if abs(other - float(printed)) > _SAME_REPULSION * abs(other):
+            raise part.error(
+                again,
+                f"another geometry here than on line {part.line_number(geometry.at)}, but no SCF "
+                "of it (looked for 'Running in ... symmetry')",
+                mend=CUT_SHORT,
+            )
 
 
 def check_end(text: Text) -> bool:
