@@ -490,24 +490,24 @@ def test_an_output_that_takes_too_long_is_given_up(
     for number in range(14):  # more than are read without other processes
         shutil.copy(PSI4 / "water_hf_energy.out", tmp_path / f"{number:02d}.out")
 
-    def read_source(source: Any) -> Any:
+    def read_claimed(source: Any, readers: Any) -> Any:
         while source.name.endswith("03.out"):
             with contextlib.suppress(Exception):  # as readers of libraries do
                 time.sleep(0.01)
-        return original(source)
+        return original(source, readers)
 
-    original = audit.read_source
-    monkeypatch.setattr(audit, "read_source", read_source)  # processes are forked on Linux
+    original = audit.read_claimed
+    monkeypatch.setattr(audit, "read_claimed", read_claimed)  # processes are forked on Linux
     if jobs > 1 and sys.platform != "linux":
         pytest.skip("other processes are not forked here")
     cache = tmp_path / ".cache"
-    found = tp.collect(tmp_path, jobs=jobs, cache=cache, time_limit=0.3)
+    found = tp.collect(tmp_path, jobs=jobs, cache=cache, time_limit=2.5)
     ((path, error),) = found.failed
     assert path.endswith("03.out")
-    assert error.what == "reading it took too long, more than 0.3 s"
+    assert error.what == "reading it took too long, more than 2.5 s"
     assert len(found) == 13
-    monkeypatch.setattr(audit, "read_source", original)
-    again = tp.collect(tmp_path, jobs=1, cache=cache, time_limit=0.3)
+    monkeypatch.setattr(audit, "read_claimed", original)
+    again = tp.collect(tmp_path, jobs=1, cache=cache, time_limit=2.5)
     assert len(again) == 14  # what took too long is not remembered
 
 
