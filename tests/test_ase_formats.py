@@ -61,6 +61,24 @@ def test_lines_of_the_last_structure() -> None:
     assert calc.positions_angstrom[0].tolist() == first
 
 
+def test_every_structure_of_a_file() -> None:
+    for name in ("water_steps.xyz", *(path.name for path in GOOD if path.suffix == ".traj")):
+        source = open_source(HERE / name, name)
+        last, found = ase_formats.read(source), ase_formats.read_all(source)
+        assert [one.path for one in found] == [f"{name}#{k + 1}" for k in range(len(found))]
+        assert found[-1].energy_hartree == last.energy_hartree
+        assert found[-1].positions_angstrom.tolist() == last.positions_angstrom.tolist()
+        assert found[-1].where == last.where
+        assert len({one.sha256 for one in found}) == len(found)
+    lines = ["", *(HERE / "water_steps.xyz").read_text().splitlines()]
+    steps = ase_formats.read_all(open_source(HERE / "water_steps.xyz"))
+    assert len(steps) > 1
+    for one in steps:
+        assert "energy=" in lines[one.where["energy_hartree"]]
+        first = [float(word) for word in lines[one.where["positions_angstrom"]].split()[1:]]
+        assert one.positions_angstrom[0].tolist() == first
+
+
 def test_dos_line_ends_read_the_same() -> None:
     path = HERE / "water_steps.xyz"
     dos = ase_formats.read(Source("dos.xyz", path.read_bytes().replace(b"\n", b"\r\n")))

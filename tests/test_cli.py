@@ -22,7 +22,17 @@ from thermo_pp.units import ENERGY_PER_KJ_MOL, HARTREE_KJ_MOL
 ROOT = Path(__file__).parents[1]
 PSI4 = ROOT / "fixtures" / "psi4" / "good"
 WATER = str(PSI4 / "water_hf_opt_freq.out")
-COMMANDS = ("survey", "species", "functions", "draft", "profile", "choices", "barrier", "isotopes")
+COMMANDS = (
+    "survey",
+    "species",
+    "conformers",
+    "functions",
+    "draft",
+    "profile",
+    "choices",
+    "barrier",
+    "isotopes",
+)
 SURVEY_KEYS = (
     "path reader program program_version method basis formula charge multiplicity energy_hartree "
     "modes imaginary_modes lowest_mode_cm optimised ended_normally verdict"
@@ -387,7 +397,7 @@ def test_examples_of_the_docs_parse() -> None:
     assert len(lines) > 10
     for line in lines:
         words = [word.strip('"') for word in re.findall(r'"[^"]*"|\S+', line)]
-        words = [WATER if word.endswith((".toml", ".out")) else word for word in words]
+        words = [WATER if word.endswith((".toml", ".out", ".xyz")) else word for word in words]
         words = [str(PSI4) if word.endswith("outputs/") else word for word in words]
         command = main.commands[words[0]]
         command.make_context(words[0], words[1:])

@@ -187,11 +187,79 @@ CASES = {  # name: (changes, where, what, mend)
         "a minimum has no imaginary mode",
         "take the key out, or let a step go through this species",
     ),
-    "conformers": (
+    "conformers beside an output": (
         [("[species.A]", '[species.A]\nconformers = [{ frequencies = "a.out" }]')],
+        "[species.A]",
+        "A has both conformers and composition",
+        'name its output (frequencies = "..."), several (conformers = [{ frequencies = "..." }, ...]) '
+        'or declare it (composition = "...", enthalpy = "...", entropy = "...")',
+    ),
+    "a key that belongs to each conformer": (
+        [
+            (
+                'composition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
+                'conformers = [{ frequencies = "a.out" }]\nenergy = "b.out"',
+            )
+        ],
+        "[species.A] energy",
+        "energy belongs to each conformer",
+        "write it in the tables of conformers",
+    ),
+    "conformers without an output": (
+        [
+            (
+                'composition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
+                "conformers = [{ degeneracy = 2 }]",
+            ),
+            *[
+                (f"[species.{name}]\n", f"[species.{name}]\nrelative_to = {{ A = 1 }}\n")
+                for name in ("W", "W2", "C", "P", "TS1", "TS2")
+            ],
+        ],
+        "[species.A] conformers.1",
+        "A.1 has neither frequencies, energy nor composition",
+        'name its output: { frequencies = "..." }',
+    ),
+    "conformers read beside declared ones": (
+        [
+            (
+                'composition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
+                'conformers = [{ composition = "SO3", enthalpy = 0, entropy = 256 }, '
+                '{ composition = "SO3", frequencies = "a.out", enthalpy = 0, entropy = 256 }]',
+            )
+        ],
+        "[species.A] conformers.2",
+        "A.2 has both frequencies and composition",
+        "take one of them out",
+    ),
+    "a declared key of a conformer that is read": (
+        [
+            (
+                'composition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
+                'conformers = [{ composition = "SO3", enthalpy = 0 }]',
+            )
+        ],
+        "[species.A] conformers.1",
+        "the key 'entropy' is missing",
+        "a declared species has composition, enthalpy and entropy",
+    ),
+    "declared conformers of different molecules": (
+        [
+            (
+                'composition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
+                'conformers = [{ composition = "SO3", enthalpy = 0, entropy = 256 }, '
+                '{ composition = "SO2", enthalpy = 0, entropy = 256 }]',
+            )
+        ],
         "[species.A] conformers",
-        "several conformers of a species are not taken yet",
-        'name one structure: frequencies = "..." and, if need be, energy = "..."',
+        "A: A.1 is O3S1, but A.2 is O2S1",
+        "conformers of one species have the same atoms",
+    ),
+    "spin states of one structure": (
+        [("[species.A]", "[species.A]\nspin_states = true")],
+        "[species.A] spin_states",
+        "spin_states is for a species with several conformers",
+        "take the key out, or list conformers",
     ),
     "rate constant of another order": (
         [('rate = "2e7 L/mol/s"', 'rate = "2e7 s^-1"')],
@@ -333,16 +401,16 @@ CASES = {  # name: (changes, where, what, mend)
         [("[species.A]", '[species.A]\nfrequencies = "a.out"')],
         "[species.A]",
         "A has both frequencies and composition",
-        'name its output (frequencies = "...") or declare it (composition = "...", '
-        'enthalpy = "...", entropy = "...")',
+        'name its output (frequencies = "..."), several (conformers = [{ frequencies = "..." }, ...]) '
+        'or declare it (composition = "...", enthalpy = "...", entropy = "...")',
     ),
     "neither read nor declared": (
         [('[species.A]\ncomposition = "SO3"\nenthalpy = "0 kJ/mol"\nentropy = "256 J/mol/K"',
           "[species.A]")],
         "[species.A]",
-        "A has neither frequencies nor composition",
-        'name its output (frequencies = "...") or declare it (composition = "...", '
-        'enthalpy = "...", entropy = "...")',
+        "A has neither frequencies, conformers nor composition",
+        'name its output (frequencies = "..."), several (conformers = [{ frequencies = "..." }, ...]) '
+        'or declare it (composition = "...", enthalpy = "...", entropy = "...")',
     ),
     "declared without an entropy": (
         [('entropy = "256 J/mol/K"', "")],

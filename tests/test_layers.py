@@ -20,7 +20,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
     ("readers",),  # 3
     ("collect", "scans", "species", "isotopes"),  # 4
-    ("pairing", "audit", "grouping", "energies"),  # 5: energies pair their parts with the modes
+    ("pairing", "audit", "grouping", "energies", "ensemble"),  # 5
     ("graph", "loops", "paths", "profile", "functions", "kinetics"),  # 6
     (),  # 7: measured
     ("study",),  # 8
@@ -32,6 +32,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "formulas": (
         "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
         "turning", "rates", "tunnelling", "isotope_ratios", "extrapolation", "repulsion", "polynomials",
+        "mixture",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
@@ -41,13 +42,19 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "limit", "levels", "scaling", "state", "modes", "symmetry", "duplicates", "printed", "survey", "structures",
     ),
     "energies": ("basis_sets", "terms", "limits", "solvation", "counterpoise", "recipe"),
+    "ensemble": (
+        "alike", "hands", "checks", "block", "nearest", "levels", "distribution", "model",
+        "found", "results",
+    ),
     "output": (
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "energies", "profile", "courses", "barrier", "barrier_tables", "isotopes", "functions",
+        "survey", "species", "conformers", "energies", "profile", "courses", "barrier", "barrier_tables", "isotopes",
+        "functions",
         "cantera_phase", "choices",
     ),
     "cli": (
-        "options", "answers", "survey", "species", "functions", "draft", "profile", "choices", "barrier", "isotopes",
+        "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
+        "isotopes",
     ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")

@@ -26,7 +26,7 @@ from thermo_pp.species import (
     parse_imaginary,
     thermochemistry,
 )
-from thermo_pp.species.many import many
+from thermo_pp.species.many import grounds, many
 from thermo_pp.units import CALORIE_J, HARTREE_KJ_MOL, KELVIN_PER_CM
 from thermo_pp.units import GAS_J_MOL_K as R
 
@@ -606,6 +606,8 @@ def test_many_gives_the_same() -> None:
     ]
     structures.append(structure(made("ring", numbers, positions, [300.0, 800.0, 800.0])))
     structures.append(structure(made("h2", [1, 1], [[0.0, 0, 0], [0.74, 0, 0]], [4400.0])))
+    expected = [one.ground_kj_mol for one in structures]
+    assert grounds(structures) == pytest.approx(expected, rel=1e-14)
     for low_modes in LOW_MODES:
         found = many(structures, T, low_modes=low_modes, standard_state=MOLAR)
         for row, one in enumerate(structures):
@@ -615,6 +617,8 @@ def test_many_gives_the_same() -> None:
             assert found.gibbs_kj_mol[row] == pytest.approx(alone.gibbs_kj_mol, rel=1e-14)
             heat = alone.heat_capacity_j_mol_k
             assert found.heat_capacity_j_mol_k[row] == pytest.approx(heat, rel=1e-13)
+            slope = alone.slope_enthalpy_kj_mol
+            assert found.slope_enthalpy_kj_mol[row] == pytest.approx(slope, rel=1e-14)
 
 
 def test_results_are_read_only() -> None:

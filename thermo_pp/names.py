@@ -18,6 +18,8 @@ Format = Literal["table", "csv", "markdown", "latex", "json"]
 Origin = Literal["printed", "derived", "declared"]
 Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
 """How a reference energy goes to the limit of the basis set."""
+Duplicates = Literal["count", "once"]
+Thermal = Literal["own", "nearest"]
 Definition = Literal["free", "pool", "relaxation", "cycle"]
 PolynomialForm = Literal["nasa7", "nasa9", "shomate"]
 
@@ -31,6 +33,8 @@ TUNNELLING: tuple[Tunnelling, ...] = get_args(Tunnelling)
 NUCLEAR_SPINS: tuple[NuclearSpins, ...] = get_args(NuclearSpins)
 ENERGY_UNITS: tuple[EnergyUnit, ...] = get_args(EnergyUnit)
 FORMATS: tuple[Format, ...] = get_args(Format)
+DUPLICATES: tuple[Duplicates, ...] = get_args(Duplicates)
+THERMAL: tuple[Thermal, ...] = get_args(Thermal)
 DEFINITIONS: tuple[Definition, ...] = get_args(Definition)
 POLYNOMIAL_FORMS: tuple[PolynomialForm, ...] = get_args(PolynomialForm)
 

@@ -9,6 +9,7 @@ import click
 from thermo_pp import __version__
 from thermo_pp.cli.barrier import barrier
 from thermo_pp.cli.choices import choices
+from thermo_pp.cli.conformers import conformers
 from thermo_pp.cli.draft import draft
 from thermo_pp.cli.functions import functions
 from thermo_pp.cli.isotopes import isotopes
@@ -45,5 +46,15 @@ def main() -> None:
     """
 
 
-for _command in (survey, species, functions, draft, profile, choices, barrier, isotopes):
+for _command in (
+    survey,
+    species,
+    conformers,
+    functions,
+    draft,
+    profile,
+    choices,
+    barrier,
+    isotopes,
+):
     main.add_command(_command)

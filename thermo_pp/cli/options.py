@@ -314,6 +314,13 @@ def _scale(ctx: click.Context, parameter: click.Parameter, value: str | None) ->
     return None if value is None else _positive(value, None, "--frequency-scale")
 
 
+def energy_option(ctx: click.Context, parameter: click.Parameter, value: str) -> float:
+    """Return the energy of an option, kJ/mol."""
+    from thermo_pp.units import quantity
+
+    return _usage(lambda: quantity(_number(value), "kJ/mol", where=f"{parameter.opts[0]}"))
+
+
 def _positive(text: str, unit: str | None, where: str) -> float:
     """Return a number above 0, in `unit` (None: a pure number)."""
     import math

@@ -108,6 +108,32 @@ def read_claimed(source: Source, readers: tuple[Reader, ...]) -> Calculation:
     return readers[0].read(source)
 
 
+def read_all(source: Source) -> tuple[Calculation, ...]:
+    """Read every structure of a file that holds several: extended XYZ, a trajectory, a data base.
+
+    Raises
+    ------
+    ReadError
+        A file of any other format, and whatever its reader raises.
+    """
+    if not ase_formats.sniff(source.head):
+        raise ReadError(
+            f"no file of several structures (looked for {ase_formats.LOOKS_FOR})",
+            where=f"{source.name}:1",
+            mend="name each output of one structure by itself",
+        )
+    return ase_formats.read_all(source)
+
+
+def several(path: Path) -> tuple[Calculation, ...]:
+    """Return the structures of a file that holds more than one, nothing of any other path."""
+    if not path.is_file():
+        return ()
+    source = open_source(path, str(path))
+    found = ase_formats.read_all(source) if ase_formats.sniff(source.head) else ()
+    return found if len(found) > 1 else ()
+
+
 def read(path: str | os.PathLike[str]) -> Calculation:
     """Read the output at `path`; ReadError where it cannot be read."""
     return read_source(open_source(Path(path), os.fspath(path)))

@@ -16,17 +16,19 @@ undoes that.
 
 from __future__ import annotations
 
+import dataclasses
 import io
 import math
 import re
 from collections.abc import Callable
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
-from thermo_pp.errors import Finding
+from thermo_pp.errors import Finding, ReadError
 from thermo_pp.formulas.normal_modes import normal_modes
 from thermo_pp.readers import joined_hessian, mode_lists
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -38,8 +40,26 @@ LOOKS_FOR = "an ASE trajectory, an ASE data base in JSON, extended XYZ with 'Pro
 
 FloatArray = NDArray[np.float64]
 Atoms = Any  # ase.Atoms, which is not imported for its type: its methods carry none
-Images = Callable[[Source], tuple[int, Atoms]]
-"""Returns how many structures a file holds, and the last one."""
+
+
+@dataclass(frozen=True)
+class Images:
+    """The structures of a file.
+
+    Attributes
+    ----------
+    count : int
+        How many there are.
+    atoms : callable
+        Gives one of them by its number from 0.
+    lines : callable
+        Gives the lines, from 1, at which the fields of one of them stand, where that is known.
+    """
+
+    count: int
+    atoms: Callable[[int], Atoms]
+    lines: Callable[[int], dict[str, int]]
+
 
 _MEND_MODES = (
     "write frequencies in cm^-1 (3N-6, or 3N with null modes) and the hessian in eV/A^2 (3N x 3N)"
@@ -58,7 +78,7 @@ def sniff(head: bytes) -> bool:
     return _format(head) is not None
 
 
-def _format(head: bytes) -> Images | None:
+def _format(head: bytes) -> Callable[[Text], Images] | None:
     if head.startswith(_TRAJECTORY):
         return _trajectory
     if _EXTENDED_XYZ.match(head):
@@ -68,21 +88,34 @@ def _format(head: bytes) -> Images | None:
     return None
 
 
-def _trajectory(source: Source) -> tuple[int, Atoms]:
+def _trajectory(text: Text) -> Images:
     from ase.io import trajectory
 
     open_trajectory: Any = trajectory.TrajectoryReader
-    reader = open_trajectory(io.BytesIO(source.data))
-    return len(reader), reader[-1]
+    reader = open_trajectory(io.BytesIO(text.data))
+    return Images(len(reader), reader.__getitem__, lambda _: {})
 
 
-def _extended_xyz(source: Source) -> tuple[int, Atoms]:
+def _extended_xyz(text: Text) -> Images:
     from ase.io.extxyz import read_extxyz
 
-    lines = _lines(source.data)
+    lines = _lines(text.data)
     frames = _frames(lines)
-    last = "\n".join(lines[frames[-1] :])
-    return len(frames), next(read_extxyz(io.StringIO(last), index=slice(None)))
+
+    def atoms(number: int) -> Atoms:
+        begin = frames[number]
+        own = "\n".join(lines[begin : begin + int(lines[begin]) + 2])
+        return next(read_extxyz(io.StringIO(own), index=slice(None)))
+
+    def places(number: int) -> dict[str, int]:
+        comment = frames[number] + 2
+        return {
+            "positions_angstrom": comment + 1,
+            "energy_hartree": comment,
+            "wavenumbers_cm": comment,
+        }
+
+    return Images(len(frames), atoms, places)
 
 
 def _lines(data: bytes) -> list[str]:
@@ -108,14 +141,27 @@ def _frames(lines: list[str]) -> list[int]:
     return frames
 
 
-def _data_base(source: Source) -> tuple[int, Atoms]:
+def _data_base(text: Text) -> Images:
     from ase.db import jsondb
 
     open_data_base: Any = jsondb.JSONDatabase
-    rows = list(open_data_base(io.StringIO(source.data.decode("utf-8"))).select())
-    atoms = rows[-1].toatoms()
-    atoms.info |= {key: rows[-1].data[key] for key in _MODE_KEYS if key in rows[-1].data}
-    return len(rows), atoms
+    rows = list(open_data_base(io.StringIO(text.data.decode("utf-8"))).select())
+
+    def atoms(number: int) -> Atoms:
+        found, data = rows[number].toatoms(), rows[number].data
+        found.info |= {key: data[key] for key in _MODE_KEYS if key in data}
+        return found
+
+    def places(number: int) -> dict[str, int]:
+        if number + 1 < len(rows):
+            return {}
+        marks = {"positions_angstrom": b'"positions"', "energy_hartree": b'"energy"'}
+        key = next((key for key in _MODE_KEYS if key in rows[number].data), None)
+        if key is not None:
+            marks["wavenumbers_cm"] = f'"{key}"'.encode()
+        return {name: text.line_number(max(text.last(mark), 0)) for name, mark in marks.items()}
+
+    return Images(len(rows), atoms, places)
 
 
 def read(source: Source) -> Calculation:
@@ -128,29 +174,65 @@ def read(source: Source) -> Calculation:
         energy, a mass or a position that cannot be.
     """
     text = Text(source)
-    images = _format(source.head)
-    if images is None:
+    images = _images(text)
+    found = _calculation(text, images, images.count - 1, source.name, source.sha256)
+    return dataclasses.replace(found, findings=_findings(source.name, images.count))
+
+
+def read_all(source: Source) -> tuple[Calculation, ...]:
+    """Read every structure of one file; the third of ``many.xyz`` has the path ``many.xyz#3``.
+
+    Raises
+    ------
+    ReadError
+        As `read`, of any of them; a file of another format.
+    """
+    text = Text(source)
+    images = _images(text)
+    return tuple(
+        _calculation(text, images, k, f"{source.name}#{k + 1}", f"{source.sha256}#{k + 1}")
+        for k in range(images.count)
+    )
+
+
+def _images(text: Text) -> Images:
+    opened = _format(text.source.head)
+    if opened is None:
         raise text.error(0, "none of the formats that are read through ASE", mend=CUT_SHORT)
     try:
-        count, atoms = images(source)
+        images = opened(text)
+        if images.count < 1:
+            raise ValueError("no structure")
     except Exception as error:  # whatever it is, the file is not what it claims to be
-        reason = f"{type(error).__name__}: {error}".strip()
-        raise text.error(0, f"ASE cannot read this file: {reason[:200]}", mend=CUT_SHORT) from error
+        raise _refused(text, error) from error
+    return images
+
+
+def _refused(text: Text, error: Exception) -> ReadError:
+    reason = f"{type(error).__name__}: {error}".strip()
+    return text.error(0, f"ASE cannot read this file: {reason[:200]}", mend=CUT_SHORT)
+
+
+def _calculation(text: Text, images: Images, number: int, path: str, sha256: str) -> Calculation:
+    """Return one structure, the one of this number from 0."""
+    try:
+        atoms = images.atoms(number)
+    except Exception as error:  # as above
+        raise _refused(text, error) from error
     numbers = _numbers(text, atoms)
     printed = atoms.has("masses")
     masses = atoms.get_masses() if printed else _most_abundant(numbers)
     if not np.all(np.isfinite(atoms.positions)) or not np.all(masses > 0.0):
         raise text.error(0, "a position that is not finite, or a mass not above 0", mend=CUT_SHORT)
     energy = _energy(text, atoms)
-    places = _places(text)
     wavenumbers, modes, hessian = _vibrations(text, atoms, masses)
-    if wavenumbers is not None and "positions_angstrom" in places:
-        places["wavenumbers_cm"] = _place_of_modes(text, places["positions_angstrom"], atoms)
-    if energy is None:
-        places.pop("energy_hartree", None)
+    lines = images.lines(number)
+    for name, value in (("energy_hartree", energy), ("wavenumbers_cm", wavenumbers)):
+        if value is None:
+            lines.pop(name, None)
     return Calculation(
-        path=source.name,
-        sha256=source.sha256,
+        path=path,
+        sha256=sha256,
         program="ASE",
         numbers=numbers,
         positions_angstrom=atoms.positions,
@@ -163,8 +245,7 @@ def read(source: Source) -> Calculation:
         modes=modes,
         hessian_hartree_bohr2=hessian,
         kind_of_job=_kinds(energy, wavenumbers),
-        where={name: text.line_number(place) for name, place in places.items()},
-        findings=_findings(source.name, count),
+        where=lines,
     )
 
 
@@ -255,14 +336,6 @@ def _floats(text: Text, atoms: Atoms, key: str) -> FloatArray | None:
     return array
 
 
-def _place_of_modes(text: Text, positions: int, atoms: Atoms) -> int:
-    """Return where the frequencies, or the Hessian without them, stand."""
-    key = next(key for key in _MODE_KEYS if atoms.info.get(key) is not None)
-    if _EXTENDED_XYZ.match(text.data):  # on the comment line, before the positions
-        return text.data.rfind(b"\n", 0, positions - 1) + 1
-    return max(text.last(f'"{key}"'.encode()), 0)
-
-
 def _whole(text: Text, atoms: Atoms, key: str) -> int | None:
     """Return the whole number that the file states as `key`, None where it states none."""
     value = atoms.info.get(key)
@@ -275,19 +348,6 @@ def _whole(text: Text, atoms: Atoms, key: str) -> int | None:
     if not abs(number) < 1000.0 or number != round(number):
         raise text.error(0, f"{key} {str(value)[:80]} is not a small whole number", mend=CUT_SHORT)
     return round(number)
-
-
-def _places(text: Text) -> dict[str, int]:
-    """Return where the last structure and its energy stand; nothing in a binary file."""
-    if _EXTENDED_XYZ.match(text.data):
-        at = text.next_line(0, _frames(_lines(text.data))[-1] + 1)
-        return {"positions_angstrom": text.next_line(at), "energy_hartree": at}
-    if _DATA_BASE.match(text.data):
-        return {
-            "positions_angstrom": text.last(b'"positions"'),
-            "energy_hartree": text.last(b'"energy"'),
-        }
-    return {}
 
 
 def _findings(name: str, count: int) -> tuple[Finding, ...]:

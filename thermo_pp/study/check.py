@@ -13,7 +13,7 @@ from msgspec import inspect
 
 from thermo_pp.errors import StudyError
 from thermo_pp.nearest import suggestion
-from thermo_pp.study.keys import NOT_YET, StudyKeys
+from thermo_pp.study.keys import NOT_YET, ConformerKeys, StructureKeys, StudyKeys
 
 _WORDS: dict[type, str] = {
     inspect.StrType: "a text",
@@ -215,6 +215,8 @@ def _later(path: tuple[str | int, ...]) -> tuple[str, str] | None:
 
 def _mend(path: tuple[str | int, ...]) -> str:
     """Return the meaning of a key as the docs have it: the innermost of `path` that has one."""
+    if path[2:3] == ("conformers",) and len(path) > 4 and model_key(path) not in meanings():
+        path = (*path[:2], *path[4:])  # a key of a species too
     for end in range(len(path), 0, -1):
         meaning = meanings().get(model_key(path[:end]))
         if meaning is not None:
@@ -267,7 +269,11 @@ def _document(kind: inspect.Type, prefix: str, rows: list[tuple[str, str, str]])
     elif isinstance(kind, inspect.ListType):
         _document(kind.item_type, prefix, rows)
     elif isinstance(kind, inspect.StructType):
+        # a conformer has the keys of a species, which are documented there
+        skipped = StructureKeys.__struct_fields__ if kind.cls is ConformerKeys else ()
         for field in kind.fields:
+            if field.encode_name in skipped:
+                continue
             key = f"{prefix}{field.encode_name}"
             if isinstance(field.type, inspect.Metadata):
                 meaning = (field.type.extra_json_schema or {}).get("description", "")

@@ -28,13 +28,14 @@ from thermo_pp.nearest import suggestion
 from thermo_pp.records import Calculation
 from thermo_pp.species.energy import ElectronicEnergy
 from thermo_pp.study.check import place
+from thermo_pp.study.ensembles import has_energies, is_read
 from thermo_pp.study.keys import (
     EnergyKeys,
     ExtrapolateKeys,
     FragmentKeys,
     LevelKeys,
     SolvationKeys,
-    SpeciesKeys,
+    StructureKeys,
     StudyKeys,
 )
 from thermo_pp.study.parts import given
@@ -261,9 +262,17 @@ def check_levels(keys: StudyKeys, file: str) -> None:
         there or beside energies of the species' own.
     """
     read = [name for name, member in keys.species.items() if given(member.frequencies) is not None]
+    several = [name for name, member in keys.species.items() if is_read(member)]
     for level, one in keys.levels.items():
         where = place(file, "levels", level)
         for name in one.energies:
+            if name in several:
+                raise StudyError(
+                    f"{name!r} has several conformers, which one energy cannot be of",
+                    where=f"{where} energies.{name}",
+                    mend="give the level an energy for all; {frequencies} in a file name stands for "
+                    "each conformer's frequency job without its ending",
+                )
             if name not in read:
                 declared = name in keys.species
                 raise StudyError(
@@ -273,7 +282,7 @@ def check_levels(keys: StudyKeys, file: str) -> None:
                     where=f"{where} energies.{name}",
                     mend="take it out" if declared else suggestion(name, read, "species"),
                 )
-        missing = [name for name in read if name not in one.energies]
+        missing = [*(name for name in read if name not in one.energies), *several]
         if given(one.energy) is None and missing:
             raise StudyError(
                 f"the level {level!r} has no energy for {', '.join(missing)}",
@@ -285,7 +294,11 @@ def check_levels(keys: StudyKeys, file: str) -> None:
     if used is None:
         return
     known_level(keys, used, file)
-    own = [name for name, one in keys.species.items() if given(one.energy) is not None]
+    own = [
+        name
+        for name, one in keys.species.items()
+        if given(one.energy) is not None or has_energies(one)
+    ]
     if own:
         raise StudyError(
             f"{own[0]} has an energy of its own beside level = {used!r}",
@@ -307,7 +320,7 @@ def known_level(keys: StudyKeys, level: str, file: str) -> None:
 
 
 def energy_keys(
-    keys: StudyKeys, level: str | None, name: str, member: SpeciesKeys, file: str
+    keys: StudyKeys, level: str | None, name: str, member: StructureKeys, file: str
 ) -> tuple[str | EnergyKeys | None, str]:
     """Return the energy of a species at a level (None: its own), and file and key of it."""
     if level is None:

@@ -11,12 +11,14 @@ from thermo_pp.names import (
     DEFAULT_LOW_MODES,
     DEFAULT_ONSET_CM,
     DEFAULT_STANDARD_STATE,
+    Duplicates,
     LowModes,
     Masses,
     NuclearSpins,
     Phase,
     Reference,
     Rotor,
+    Thermal,
     Tunnelling,
 )
 
@@ -109,6 +111,12 @@ class TreatmentKeys(Keys, frozen=True, kw_only=True):
             "none unless given / J/mol/K"
         ),
     ] = UNSET
+    duplicates: Annotated[
+        Duplicates,
+        Meta(
+            description='a conformer that is listed twice: "count" it twice, with a finding, or "once"'
+        ),
+    ] = "count"
 
 
 class RangeKeys(Keys, frozen=True, kw_only=True, rename={"from_": "from"}):
@@ -357,12 +365,15 @@ class TorsionKeys(Keys, frozen=True, kw_only=True):
     ] = UNSET
 
 
-class SpeciesKeys(Keys, frozen=True, kw_only=True):
-    """One species, saddle points included: read from outputs, or declared."""
+class StructureKeys(Keys, frozen=True, kw_only=True):
+    """One structure, read from outputs or declared: what a species and a conformer have."""
 
     frequencies: Annotated[
         str | UnsetType,
-        Meta(description="output of the frequency job; a species has this or `composition`"),
+        Meta(
+            description="output of the frequency job; a species has this, `conformers` or "
+            "`composition`"
+        ),
     ] = UNSET
     energy: Annotated[
         str | EnergyKeys | UnsetType,
@@ -417,12 +428,6 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
     imaginary: Annotated[
         Imaginary | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
     ] = UNSET
-    standard_state: Annotated[
-        str | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
-    ] = UNSET
-    entropy_correction: Annotated[
-        Quantity | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
-    ] = UNSET
     composition: Annotated[
         str | UnsetType,
         Meta(
@@ -468,6 +473,75 @@ class SpeciesKeys(Keys, frozen=True, kw_only=True):
             description="size of the imaginary wavenumber of a declared saddle point; only tunnelling "
             "needs it / cm^-1"
         ),
+    ] = UNSET
+
+
+class ConformerKeys(StructureKeys, frozen=True, kw_only=True):
+    """One conformer of a species."""
+
+    degeneracy: Annotated[
+        Whole | UnsetType,
+        Meta(
+            description="how often this conformer is there; 2 for a chiral one whose mirror image is "
+            "not listed, else 1, unless given"
+        ),
+    ] = UNSET
+
+
+class ConformerFileKeys(Keys, frozen=True, kw_only=True):
+    """Conformers that stand in one file."""
+
+    ensemble: Annotated[
+        str,
+        Meta(
+            description="file of several structures with their energies: extended XYZ, a trajectory "
+            "or a data base of ASE; every structure is a conformer"
+        ),
+    ]
+
+
+_ConformerTable = Annotated[
+    ConformerKeys,
+    Meta(
+        extra_json_schema={
+            "anyOf": [
+                {"required": ["frequencies"]},
+                {"required": ["energy"]},
+                {"required": ["composition", "enthalpy", "entropy"]},
+            ]
+        }
+    ),
+]
+Conformers = Annotated[list[_ConformerTable], Meta(min_length=1)] | ConformerFileKeys
+
+
+class SpeciesKeys(StructureKeys, frozen=True, kw_only=True):
+    """One species, saddle points included: read from outputs, or declared."""
+
+    conformers: Annotated[
+        Conformers | UnsetType,
+        Meta(
+            description="a table for every conformer, "
+            '`[{ frequencies = "a.out" }, { frequencies = "b.out" }]`, or `{ ensemble = "many.xyz" }`; '
+            "what the species says of charge, multiplicity, levels, symmetry number, isotopes and "
+            "imaginary modes holds for each that does not say it itself"
+        ),
+    ] = UNSET
+    thermal: Annotated[
+        Thermal,
+        Meta(
+            description='"own": every conformer has frequencies; "nearest": one without takes the '
+            "wavenumbers of the conformer nearest in shape"
+        ),
+    ] = "own"
+    spin_states: Annotated[
+        bool, Meta(description="true: the conformers may be different spin states in equilibrium")
+    ] = False
+    standard_state: Annotated[
+        str | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
+    ] = UNSET
+    entropy_correction: Annotated[
+        Quantity | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
     ] = UNSET
     relative_to: Annotated[
         dict[str, int] | UnsetType,
@@ -644,15 +718,21 @@ class FormationKeys(Keys, frozen=True, kw_only=True):
     ] = False
 
 
-def _one_of(*names: str, also: tuple[str, ...] = ()) -> dict[str, Any]:
-    """Return the schema of "exactly one of these keys", with `also` beside all but the first."""
-    return {"oneOf": [{"required": [name, *(also if k else ())]} for k, name in enumerate(names)]}
+def _one_of(*names: str) -> dict[str, Any]:
+    """Return the schema of "exactly one of these keys"."""
+    return {"oneOf": [{"required": [name]} for name in names]}
 
 
 _SpeciesTable = Annotated[
     SpeciesKeys,
     Meta(
-        extra_json_schema=_one_of("frequencies", "composition", also=("enthalpy", "entropy")),
+        extra_json_schema={
+            "oneOf": [
+                {"required": ["frequencies"]},
+                {"required": ["conformers"]},
+                {"required": ["composition", "enthalpy", "entropy"]},
+            ]
+        }
     ),
 ]
 _StepTable = Annotated[
@@ -709,10 +789,6 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
 
 
 NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
-    ("species", "conformers"): (
-        "several conformers of a species are not taken yet",
-        'name one structure: frequencies = "..." and, if need be, energy = "..."',
-    ),
     ("steps", "barrier"): (
         "a barrier of a stated height is not taken yet",
         'write barrier = "none" for a step without one, through = "..." for its saddle point, or '

@@ -123,11 +123,7 @@ class Study:
             An output that cannot be read as what it claims to be.
         """
         file = os.fspath(path)
-        data = read_toml(Path(file), file)
-        if treatment:
-            options = {"treatment": dict(treatment)}
-            check_keys({**options, **_EMPTY}, "options")
-            data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
+        data = read_data(file, treatment)
         origin = _Origin(data, file, None if temperatures is None else tuple(temperatures), {})
         return cls._made(origin, level)
 
@@ -322,6 +318,28 @@ class _Origin:
 
 _EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}
 """What a study must have, for checking options alone."""
+
+
+def read_data(file: str, treatment: Mapping[str, Any] | None) -> dict[str, Any]:
+    """Read the tables of a study file.
+
+    Parameters
+    ----------
+    file : str
+    treatment : mapping or None
+        Keys of ``[treatment]`` in place of the file's.
+
+    Raises
+    ------
+    StudyError
+        As `read_toml`; an option that is none.
+    """
+    data = read_toml(Path(file), file)
+    if treatment:
+        options = {"treatment": dict(treatment)}
+        check_keys({**options, **_EMPTY}, "options")
+        data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
+    return data
 
 
 def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:

@@ -8,6 +8,8 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
+from msgspec import UNSET
+
 from thermo_pp import conditions as made
 from thermo_pp.audit import audit_alone
 from thermo_pp.audit.levels import level_findings, level_words
@@ -17,13 +19,21 @@ from thermo_pp.energies.recipe import CheckedEnergy, recipe_findings
 from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind
 from thermo_pp.nearest import suggestion
-from thermo_pp.readers import read_source
+from thermo_pp.readers import read_all, read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
 from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structure, solution_finding
 from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
-from thermo_pp.study.keys import SpeciesKeys, StudyKeys
+from thermo_pp.study.ensembles import Making, Reading, is_read, make_ensemble
+from thermo_pp.study.keys import (
+    ConformerKeys,
+    EnergyKeys,
+    Quantity,
+    SpeciesKeys,
+    StructureKeys,
+    StudyKeys,
+)
 from thermo_pp.study.parts import above_zero, entropy_correction, given, real_below
 from thermo_pp.study.torsions import make_torsions
 from thermo_pp.units import quantity
@@ -180,46 +190,110 @@ def _check_member(
     name: str, member: SpeciesKeys, species: Mapping[str, SpeciesKeys], file: str
 ) -> None:
     """Check which keys stand together; no output is opened yet."""
-    is_read = given(member.frequencies) is not None
-    is_declared = given(member.composition) is not None
     where = place(file, "species", name)
-    if is_read == is_declared:
+    kinds = ("frequencies", "conformers", "composition")
+    have = [key for key in kinds if given(getattr(member, key)) is not None]
+    if len(have) != 1:
         has = (
-            "both frequencies and composition" if is_read else "neither frequencies nor composition"
+            f"both {' and '.join(have)}"
+            if have
+            else "neither frequencies, conformers nor composition"
         )
         raise StudyError(
             f"{name} has {has}",
             where=where,
-            mend='name its output (frequencies = "...") or declare it (composition = "...", '
-            'enthalpy = "...", entropy = "...")',
+            mend='name its output (frequencies = "..."), several (conformers = [{ frequencies = "..." '
+            '}, ...]) or declare it (composition = "...", enthalpy = "...", entropy = "...")',
         )
-    for key in _DECLARED_ONLY if is_read else _READ_ONLY:
+    if have == ["conformers"]:
+        _check_conformers(name, member, species, file)
+        return
+    for key in ("thermal", "spin_states"):
+        if getattr(member, key) != getattr(SpeciesKeys(), key):
+            raise StudyError(
+                f"{key} is for a species with several conformers",
+                where=place(file, "species", name, key),
+                mend="take the key out, or list conformers",
+            )
+    _check_structure(member, name, where)
+    if have == ["frequencies"] or given(member.relative_to) is not None:
+        return
+    computed = _computed(species)
+    if computed:
+        raise StudyError(
+            f"{name} is declared beside species that are read ({computed[0]}): "
+            "their enthalpies do not have one zero",
+            where=where,
+            mend="say what its values are differences from: "
+            f"relative_to = {{ {computed[0]} = 1, ... }}",
+        )
+
+
+def _computed(species: Mapping[str, SpeciesKeys]) -> list[str]:
+    """Return the names of the species that are read from outputs."""
+    return [
+        name
+        for name, keys in species.items()
+        if given(keys.frequencies) is not None or is_read(keys)
+    ]
+
+
+def _check_conformers(
+    name: str, member: SpeciesKeys, species: Mapping[str, SpeciesKeys], file: str
+) -> None:
+    """Check the keys of a species with several conformers; those of each are checked with it."""
+    for key in ("energy", *_DECLARED_ONLY):
         if given(getattr(member, key)) is not None:
-            kind = "read from an output" if is_read else "declared"
+            raise StudyError(
+                f"{key} belongs to each conformer",
+                where=place(file, "species", name, key),
+                mend="write it in the tables of conformers",
+            )
+    computed = _computed(species)
+    if computed and not is_read(member):
+        raise StudyError(
+            f"the conformers of {name} are declared beside species that are read ({computed[0]}): "
+            "their enthalpies do not have one zero",
+            where=place(file, "species", name, "conformers"),
+            mend="read its conformers from outputs, or declare every species",
+        )
+
+
+def _check_structure(member: StructureKeys, name: str, where: str) -> None:
+    """Check which keys of one structure stand together: it is read, or declared."""
+    is_declared = given(member.composition) is not None
+    for key in _READ_ONLY if is_declared else _DECLARED_ONLY:
+        if given(getattr(member, key, UNSET)) is not None:
+            kind = "declared" if is_declared else "read from an output"
             raise StudyError(
                 f"{key} has no meaning for a species that is {kind}",
-                where=place(file, "species", name, key),
+                where=f"{where} {key}",
                 mend="take the key out",
             )
-    if is_read:
-        return
-    for key in ("enthalpy", "entropy"):
+    for key in ("enthalpy", "entropy") if is_declared else ():
         if given(getattr(member, key)) is None:
             raise StudyError(
                 f"the key {key!r} is missing",
                 where=where,
                 mend="a declared species has composition, enthalpy and entropy",
             )
-    if given(member.relative_to) is None:
-        computed = [other for other, keys in species.items() if given(keys.frequencies) is not None]
-        if computed:
-            raise StudyError(
-                f"{name} is declared beside species that are read ({computed[0]}): "
-                "their enthalpies do not have one zero",
-                where=where,
-                mend="say what its values are differences from: "
-                f"relative_to = {{ {computed[0]} = 1, ... }}",
-            )
+
+
+def _check_conformer(member: ConformerKeys, name: str, where: str) -> None:
+    """Check the keys of one conformer."""
+    read = [key for key in ("frequencies", "energy") if given(getattr(member, key)) is not None]
+    declared = given(member.composition) is not None
+    if not read and not declared:
+        raise StudyError(
+            f"{name} has neither frequencies, energy nor composition",
+            where=where,
+            mend='name its output: { frequencies = "..." }',
+        )
+    if declared and "frequencies" in read:
+        raise StudyError(
+            f"{name} has both frequencies and composition", where=where, mend="take one of them out"
+        )
+    _check_structure(member, name, where)
 
 
 def _make(maker: _Maker, name: str, on_the_way: tuple[str, ...]) -> SpeciesModel:
@@ -235,12 +309,48 @@ def _make(maker: _Maker, name: str, on_the_way: tuple[str, ...]) -> SpeciesModel
         else made.standard_state(state, where=f"{where} standard_state")
     )
     kind: Kind = "saddle" if name in maker.saddles else "minimum"
-    if given(member.composition) is not None:
-        model = _declared(maker, name, member, kind, standard_state, on_the_way)
+    model: SpeciesModel
+    if given(member.conformers) is not None:
+        model = _ensemble(maker, name, member, kind, standard_state)
+    elif given(member.composition) is not None:
+        model = _declared(maker, name, member, kind, standard_state, where, on_the_way)
     else:
         model = _structure(maker, name, member, kind, standard_state)
     maker.done[name] = model
     return model
+
+
+def _ensemble(
+    maker: _Maker,
+    name: str,
+    member: SpeciesKeys,
+    kind: Kind,
+    standard_state: made.StandardState,
+) -> SpeciesModel:
+    """Make the conformers of a species as single species are made, and their ensemble."""
+
+    def structure(label: str, keys: ConformerKeys, reading: Reading, at: str) -> SpeciesModel:
+        correction = given(member.entropy_correction)
+        return _settled(maker, label, keys, reading, kind, standard_state, at, correction)
+
+    def energy(label: str, keys: ConformerKeys, calc: Calculation, at: str) -> CheckedEnergy:
+        return _conformer_energy(maker, name, label, keys, calc, at)
+
+    def declared(label: str, keys: ConformerKeys, at: str) -> SpeciesModel:
+        return _declared(maker, label, keys, kind, standard_state, at, ())
+
+    making = Making(
+        lambda file, at: _calculation(maker, file, at),
+        lambda file, at: _calculations(maker, file, at),
+        _check_conformer,
+        energy,
+        structure,
+        declared,
+    )
+    where = place(maker.file, "species", name)
+    found, findings = make_ensemble(name, member, maker.keys.treatment.duplicates, making, where)
+    maker.findings += findings
+    return found
 
 
 def _structure(
@@ -253,28 +363,69 @@ def _structure(
     where = place(maker.file, "species", name)
     calc = _calculation(maker, str(member.frequencies), f"{where} frequencies")
     parts, at = energy_keys(maker.keys, maker.level, name, member, maker.file)
-    energy = make_energy(
+    energy = _energy(maker, parts, calc, at)
+    correction = given(member.entropy_correction)
+    return _settled(
+        maker, name, member, Reading(calc, energy), kind, standard_state, where, correction
+    )
+
+
+def _energy(
+    maker: _Maker, parts: str | EnergyKeys | None, calc: Calculation, where: str
+) -> CheckedEnergy:
+    """Make the energy of one structure of its parts."""
+    return make_energy(
         parts,
         calc,
         maker.treatment.phase,
         lambda file, place_of_it: _calculation(maker, file, place_of_it),
-        at,
+        where,
     )
+
+
+def _conformer_energy(
+    maker: _Maker, name: str, label: str, keys: ConformerKeys, calc: Calculation, where: str
+) -> CheckedEnergy:
+    """Make the energy of one conformer, its own or that of the level in use."""
+    if maker.level is None:
+        own = given(keys.energy) if given(keys.frequencies) is not None else None
+        return _energy(maker, own, calc, f"{where} energy")
+    if given(keys.frequencies) is None:
+        raise StudyError(
+            f"{label} names no frequency job, so the level {maker.level!r} has no energy for it",
+            where=where,
+            mend="name its frequency job",
+        )
+    parts, at = energy_keys(maker.keys, maker.level, name, keys, maker.file)
+    return _energy(maker, parts, calc, at)
+
+
+def _settled(
+    maker: _Maker,
+    name: str,
+    member: StructureKeys,
+    reading: Reading,
+    kind: Kind,
+    standard_state: made.StandardState,
+    where: str,
+    correction: Quantity | None,
+) -> SpeciesModel:
+    """Make one structure of its outputs."""
+    calc, energy = reading.frequencies, reading.energy
     maker.findings += energy.findings
     imaginary = given(member.imaginary)
     treatment = replace(maker.treatment, standard_state=standard_state)
-    if given(member.entropy_correction) is not None:
-        correction = entropy_correction(
-            member.entropy_correction, treatment.phase, f"{where} entropy_correction"
-        )
-        treatment = replace(treatment, entropy_correction_j_mol_k=correction)
+    if correction is not None:
+        added = entropy_correction(correction, treatment.phase, f"{where} entropy_correction")
+        treatment = replace(treatment, entropy_correction_j_mol_k=added)
     if imaginary is not None:
         below = real_below(imaginary, f"{where} imaginary.real_below")
         treatment = replace(treatment, real_below_cm=below)
-    maker.frequencies[name] = calc
+    if reading.lent is None:
+        maker.frequencies[name] = calc
     maker.energies[name] = energy
     return Structure.make(
-        calc,
+        calc if reading.lent is None else reading.lent.calculation,
         treatment,
         name=name,
         kind=kind,
@@ -296,7 +447,7 @@ def _structure(
     )
 
 
-def _rotational_constants(member: SpeciesKeys) -> dict[str, Any] | None:
+def _rotational_constants(member: StructureKeys) -> dict[str, Any] | None:
     constants = given(member.rotational_constants)
     return None if constants is None else {"B": constants.B, "D": constants.D}
 
@@ -304,18 +455,19 @@ def _rotational_constants(member: SpeciesKeys) -> dict[str, Any] | None:
 def _declared(
     maker: _Maker,
     name: str,
-    member: SpeciesKeys,
+    member: SpeciesKeys | ConformerKeys,
     kind: Kind,
     standard_state: made.StandardState,
+    where: str,
     on_the_way: tuple[str, ...],
 ) -> SpeciesModel:
-    where = place(maker.file, "species", name)
 
     def number(key: str, unit: str) -> float:
         return quantity(getattr(member, key), unit, where=f"{where} {key}")
 
     reference = []
-    for other, count in (given(member.relative_to) or {}).items():
+    relative_to = given(member.relative_to) if isinstance(member, SpeciesKeys) else None
+    for other, count in (relative_to or {}).items():
         at = f"{where} relative_to.{other}"
         if other not in maker.keys.species:
             raise StudyError(
@@ -356,7 +508,7 @@ def _declared(
     )
 
 
-def _imaginary_mode(member: SpeciesKeys, kind: Kind, where: str) -> float | None:
+def _imaginary_mode(member: StructureKeys, kind: Kind, where: str) -> float | None:
     """Return the size of a declared saddle point's imaginary wavenumber, cm^-1."""
     value = given(member.imaginary_mode)
     if value is None:
@@ -377,6 +529,13 @@ def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
         maker.read[str(path)] = read_source(open_source(path))
     maker.opened[str(path)] = maker.read[str(path)]
     return maker.read[str(path)]
+
+
+def _calculations(maker: _Maker, name: str, where: str) -> tuple[Calculation, ...]:
+    """Read every structure of the file `name`."""
+    found = read_all(open_source(_inside(maker, name, where)))
+    maker.read |= {calc.path: calc for calc in found}
+    return found
 
 
 def _inside(maker: _Maker, name: str, where: str) -> Path:

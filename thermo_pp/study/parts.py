@@ -95,20 +95,7 @@ def make_conditions(
     file: str,
 ) -> Conditions:
     """Turn ``[conditions]`` into Conditions; `temperatures` stand in place of the file's."""
-    where = place(file, "conditions", "temperatures")
-    wanted = keys.temperatures
-    if temperatures is not None:
-        kelvin = made.temperatures(temperatures, where="options temperatures")
-    elif isinstance(wanted, UnsetType):
-        raise StudyError(
-            "the key 'temperatures' is missing",
-            where=place(file, "conditions"),
-            mend='write temperatures = { from = "280 K", to = "360 K", step = "5 K" }, or a list',
-        )
-    elif isinstance(wanted, list):
-        kelvin = made.temperatures(wanted, where=where)
-    else:
-        kelvin = made.temperature_range(wanted.from_, wanted.to, wanted.step, where=where)
+    kelvin = make_temperatures(keys, temperatures, file)
     known = list(dict.fromkeys(name for step in steps for name in step.species))
     held = {}
     for name, value in keys.held.items():
@@ -171,6 +158,25 @@ def _amounts(
             )
         found[name] = amount
     return found
+
+
+def make_temperatures(
+    keys: ConditionsKeys, temperatures: Iterable[Any] | None, file: str
+) -> tuple[float, ...]:
+    """Return the temperatures, K; `temperatures` stand in place of the file's."""
+    where = place(file, "conditions", "temperatures")
+    wanted = keys.temperatures
+    if temperatures is not None:
+        return made.temperatures(temperatures, where="options temperatures")
+    if isinstance(wanted, UnsetType):
+        raise StudyError(
+            "the key 'temperatures' is missing",
+            where=place(file, "conditions"),
+            mend='write temperatures = { from = "280 K", to = "360 K", step = "5 K" }, or a list',
+        )
+    if isinstance(wanted, list):
+        return made.temperatures(wanted, where=where)
+    return made.temperature_range(wanted.from_, wanted.to, wanted.step, where=where)
 
 
 def make_steps(keys: Sequence[StepKeys], treatment: TreatmentKeys, file: str) -> tuple[Step, ...]:
