@@ -197,13 +197,17 @@ def _keys_in(value: Any, path: tuple[str | int, ...] = ()) -> set[str]:
     return found
 
 
-def _holds(value: Any, keys: list[str]) -> bool:
-    for key in keys:
-        inside = value[0] if isinstance(value, list) else value
-        if key not in inside:
-            return False
-        value = inside[key]
-    return True
+def _table_of(value: Any, tables: list[str], last: str) -> dict[str, Any] | None:
+    """The first table on this way that has the key; NAME stands for any name."""
+    if isinstance(value, list):
+        value = value[0]
+    if not isinstance(value, dict):
+        return None
+    if not tables:
+        return value if last in value else None
+    names = value if tables[0] == "NAME" else [tables[0]]
+    found = (_table_of(value[name], tables[1:], last) for name in names if name in value)
+    return next((table for table in found if table is not None), None)
 
 
 def test_every_documented_key_is_taken() -> None:
@@ -217,13 +221,9 @@ def test_every_documented_key_is_taken() -> None:
 def test_no_key_takes_just_anything(key: str) -> None:
     """Each key in turn is given a date, which no key takes."""
     data = tomllib.loads(ALL_KEYS)
-    inside: Any = data
     *tables, last = key.split(".")
-    if "NAME" in tables:  # the first table that has the key, under whatever name
-        top, rest = tables[0], key.split(".")[2:]
-        tables[1] = next(name for name, table in data[top].items() if _holds(table, rest))
-    for table in tables:
-        inside = inside[table][0] if isinstance(inside[table], list) else inside[table]
+    inside = _table_of(data, tables, last)
+    assert inside is not None, "the text of all keys lacks this one"
     inside[last] = tomllib.loads("d = 2020-01-01")["d"]
     with pytest.raises(StudyError, match="found datetime") as caught:
         check_keys(data, "study.toml")

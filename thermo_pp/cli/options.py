@@ -318,7 +318,7 @@ def energy_option(ctx: click.Context, parameter: click.Parameter, value: str) ->
     """Return the energy of an option, kJ/mol."""
     from thermo_pp.units import quantity
 
-    return _usage(lambda: quantity(_number(value), "kJ/mol", where=f"{parameter.opts[0]}"))
+    return usage(lambda: quantity(number(value), "kJ/mol", where=f"{parameter.opts[0]}"))
 
 
 def _positive(text: str, unit: str | None, where: str) -> float:
