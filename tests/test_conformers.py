@@ -270,6 +270,22 @@ def test_an_ensemble_in_a_mechanism(tmp_path: Path) -> None:
     )
 
 
+def test_choices_reach_every_conformer(tmp_path: Path) -> None:
+    folder = copied(tmp_path, "tt.out", "tg.out", "gg.out")
+    file = folder / "study.toml"
+    file.write_text(
+        TSS
+        + '[species.X]\nconformers = [{ frequencies = "tg.out" }, { frequencies = "gg.out" }]\n'
+        + '[species.T]\nfrequencies = "tt.out"\n'
+        + '[[steps]]\nequation = "T = X"\nrate = "1 s^-1"\n'
+    )
+    loaded = tp.Study.load(file)
+    assert loaded.read_species == ("X", "T")
+    without = loaded.altered({}, {"X": {"symmetry_number": 1}}).species["X"]
+    assert isinstance(without, Ensemble)
+    assert [m.model.symmetry_number for m in without.members] == [1, 1]  # type: ignore[attr-defined]
+
+
 # folders and files --------------------------------------------------------------------------------
 
 

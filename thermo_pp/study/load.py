@@ -196,7 +196,7 @@ class Study:
     def read_species(self) -> tuple[str, ...]:
         """The species that stand on outputs of their own."""
         tables = {} if self._origin is None else self._origin.data["species"]
-        return tuple(name for name, keys in tables.items() if "frequencies" in keys)
+        return tuple(name for name, keys in tables.items() if _is_read(keys))
 
     def altered(
         self, treatment: Mapping[str, Any], species: Mapping[str, Mapping[str, Any]]
@@ -340,6 +340,16 @@ def read_data(file: str, treatment: Mapping[str, Any] | None) -> dict[str, Any]:
         check_keys({**options, **_EMPTY}, "options")
         data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
     return data
+
+
+def _is_read(keys: Mapping[str, Any]) -> bool:
+    """Tell whether the table of a species that was checked names outputs."""
+    listed = keys.get("conformers", [])
+    return (
+        "frequencies" in keys
+        or isinstance(listed, Mapping)
+        or any("composition" not in one for one in listed)
+    )
 
 
 def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
