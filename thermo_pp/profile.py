@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, Literal, Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.conditions import Conditions, Treatment
+from thermo_pp.conditions import Conditions, StandardState, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, parse_equation, write_sum
@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
 FloatArray = NDArray[np.float64]
+_Thermo = Mapping[str, Mapping[LowModes, Thermochemistry]]
 
 
 @dataclass(frozen=True, eq=False)
@@ -164,34 +165,111 @@ def profile(
     StudyError
         No path, or a reference that is no state of any path.
     """
+    route = _route(study, reference)
+    activities = _log_activities(study, route.temperature_k) if at_conditions else {}
+    own = study.treatment
+    thermo = _thermochemistry(study, route, own.standard_state)
+    at: Literal["standard state", "conditions"] = (
+        "conditions" if at_conditions else "standard state"
+    )
+    return _profile(route, thermo, activities, own.low_modes, own.standard_state, at)
+
+
+Choice = tuple[LowModes, str]
+"""Soft-mode treatment and standard state, as a profile is asked for with them."""
+
+
+def profiles(study: StudyLike, standard_states: Sequence[StandardState]) -> dict[Choice, Profile]:
+    """Return the profile with every soft-mode treatment and each of the standard states.
+
+    What the study says of species and steps stays as it is: energies are shown in another standard
+    state, and a species with a standard state of its own keeps it.
+
+    Parameters
+    ----------
+    study : Study
+    standard_states : sequence of StandardState
+
+    Returns
+    -------
+    dict of (low_modes, text of the standard state) to Profile
+        Standard states in the order given, the treatments of each together.
+
+    Raises
+    ------
+    StudyError
+        As `profile`.
+    """
+    route = _route(study, None)
+    found: dict[Choice, Profile] = {}
+    for state in standard_states:
+        thermo = _thermochemistry(study, route, state)
+        for low in LOW_MODES:
+            found[low, state.text] = _profile(route, thermo, {}, low, state, "standard state")
+    return found
+
+
+@dataclass(frozen=True, eq=False)
+class _Route:
+    """Paths and their reference; nothing of it depends on the treatment."""
+
+    temperature_k: FloatArray
+    mechanism: Mechanism
+    paths: tuple[Path, ...]
+    zero: Place
+    findings: tuple[Finding, ...]
+
+
+def _route(study: StudyLike, reference: str | None) -> _Route:
     mechanism, conditions = study.mechanism, study.conditions
-    t = np.array(conditions.temperature_k)
     found, findings = find_paths(mechanism, conditions.held)
     paths = filled_up(found, mechanism, conditions.held)
-    names = {name for path in paths for place in path.states for name, _ in place.species}
-    thermo = {
-        name: {low: study.species[name].at(t, low_modes=low) for low in LOW_MODES} for name in names
+    t = np.array(conditions.temperature_k)
+    return _Route(t, mechanism, paths, _find_reference(paths, reference, mechanism), findings)
+
+
+def _thermochemistry(study: StudyLike, route: _Route, state: StandardState) -> _Thermo:
+    """Return every species of the paths with every treatment, in a standard state or in its own."""
+    names = {
+        name: None for path in route.paths for place in path.states for name, _ in place.species
     }
-    activities = _log_activities(study, t) if at_conditions else {}
-    zero = _find_reference(paths, reference, mechanism)
+    t, common = route.temperature_k, study.treatment.standard_state
+    found: dict[str, dict[LowModes, Thermochemistry]] = {}
+    for name in names:
+        model = study.species[name]
+        its_own = model.at(t[:1]).standard_state != common
+        shown = None if its_own or state == common else state
+        found[name] = {low: model.at(t, low_modes=low, standard_state=shown) for low in LOW_MODES}
+    return found
+
+
+def _profile(
+    route: _Route,
+    thermo: _Thermo,
+    activities: Mapping[str, FloatArray],
+    low_modes: LowModes,
+    standard_state: StandardState,
+    at: Literal["standard state", "conditions"],
+) -> Profile:
+    t, zero, mechanism = route.temperature_k, route.zero, route.mechanism
     states: list[State] = []
-    notes = list(findings)
-    for path in paths:
+    notes = list(route.findings)
+    for path in route.paths:
         start = zero
         if mechanism.content(dict(zero.species)) != mechanism.content(dict(path.states[0].species)):
             start = path.states[0]
             notes.append(_other_reference(path, zero, mechanism))
-        base = _sum(start, thermo, activities, t, study.treatment)
+        base = _sum(start, thermo, activities, t, low_modes)
         states += [
-            _state(path, place, _sum(place, thermo, activities, t, study.treatment), base)
+            _state(path, place, _sum(place, thermo, activities, t, low_modes), base)
             for place in path.states
         ]
     return Profile(
-        temperature_k=t,
+        temperature_k=t.copy(),
         reference=zero.name,
-        at="conditions" if at_conditions else "standard state",
-        standard_state=study.treatment.standard_state.text,
-        net_reactions={path.name: path.net_reaction for path in paths},
+        at=at,
+        standard_state=standard_state.text,
+        net_reactions={path.name: path.net_reaction for path in route.paths},
         states=tuple(states),
         findings=tuple(notes),
     )
@@ -247,17 +325,17 @@ def _log_activities(study: StudyLike, t: FloatArray) -> dict[str, FloatArray]:
 
 def _sum(
     place: Place,
-    thermo: Mapping[str, Mapping[LowModes, Thermochemistry]],
+    thermo: _Thermo,
     activities: Mapping[str, FloatArray],
     t: FloatArray,
-    treatment: Treatment,
+    low_modes: LowModes,
 ) -> _Sum:
     enthalpy, entropy = np.zeros(len(t)), np.zeros(len(t))
     gibbs = np.zeros((len(LOW_MODES), len(t)))
     electronic: float | None = 0.0
     zero_point: float | None = 0.0
     for name, count in place.species:
-        own = thermo[name][treatment.low_modes]
+        own = thermo[name][low_modes]
         log_activity = activities.get(name, np.zeros(len(t)))
         enthalpy += count * own.enthalpy_kj_mol
         entropy += count * (own.entropy_j_mol_k - GAS_J_MOL_K * log_activity)
@@ -266,7 +344,7 @@ def _sum(
             gibbs[row] += count * one
         electronic = _plus(electronic, count, own.electronic_kj_mol)
         zero_point = _plus(zero_point, count, own.zero_point_kj_mol)
-    row = LOW_MODES.index(treatment.low_modes)
+    row = LOW_MODES.index(low_modes)
     return _Sum(enthalpy, entropy, gibbs[row], gibbs, electronic, zero_point)
 
 

@@ -17,7 +17,7 @@ from thermo_pp.functions.formation import FormationQuestion
 from thermo_pp.graph import check_reach
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
-from thermo_pp.names import PolynomialForm
+from thermo_pp.names import Duplicates, PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
@@ -73,6 +73,8 @@ class Study:
         Part by part, of every structure that is read.
     formation_question : FormationQuestion or None
         Of ``[formation]``.
+    duplicates : {"count", "once"}
+        How a conformer counts that is there twice.
     """
 
     title: str
@@ -88,6 +90,7 @@ class Study:
     level_names: tuple[str, ...] = ()
     energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
     formation_question: FormationQuestion | None = None
+    duplicates: Duplicates = "count"
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -175,6 +178,7 @@ class Study:
             level_names=tuple(keys.levels),
             energies=members.energies,
             formation_question=formation,
+            duplicates=keys.treatment.duplicates,
             _origin=origin,
         )
 
@@ -197,6 +201,11 @@ class Study:
         """The species that stand on outputs of their own."""
         tables = {} if self._origin is None else self._origin.data["species"]
         return tuple(name for name, keys in tables.items() if _is_read(keys))
+
+    @property
+    def calculations(self) -> Mapping[str, Calculation]:
+        """The outputs that were read, by the name under which a species has them."""
+        return MappingProxyType({} if self._origin is None else self._origin.read)
 
     def altered(
         self, treatment: Mapping[str, Any], species: Mapping[str, Mapping[str, Any]]
