@@ -143,19 +143,27 @@ def parse_equation(text: str, *, where: str) -> tuple[dict[str, int], dict[str, 
         raise StudyError(
             f"the equation {text!r} does not have exactly one '='", where=where, mend=mend
         )
-    parsed: list[dict[str, int]] = []
-    for side in sides:
-        counts: dict[str, int] = {}
-        for term in re.split(r"\s\+\s", f" {side.strip()} "):
-            match = _TERM.fullmatch(term.strip())
-            if match is None or int(match.group(1) or 1) < 1:
-                what = f"{term.strip()!r} in {text!r} is not a species"
-                if not term.strip():
-                    what = f"a species is missing in {text!r}"
-                raise StudyError(what, where=where, mend=mend)
-            counts[match.group(2)] = counts.get(match.group(2), 0) + int(match.group(1) or 1)
-        parsed.append(counts)
-    return parsed[0], parsed[1]
+    left, right = (_parse_side(side, text, where, mend) for side in sides)
+    return left, right
+
+
+def parse_sum(text: str, *, where: str) -> dict[str, int]:
+    """Split ``"2 W + M"`` into species and counts; StudyError where a term is not a species."""
+    return _parse_side(text, text, where, 'write for instance "W", "2 W" or "O2 + M"')
+
+
+def _parse_side(side: str, text: str, where: str, mend: str) -> dict[str, int]:
+    """Return the counts of one side of the equation `text`."""
+    counts: dict[str, int] = {}
+    for term in re.split(r"\s\+\s", f" {side.strip()} "):
+        match = _TERM.fullmatch(term.strip())
+        if match is None or int(match.group(1) or 1) < 1:
+            what = f"{term.strip()!r} in {text!r} is not a species"
+            if not term.strip():
+                what = f"a species is missing in {text!r}"
+            raise StudyError(what, where=where, mend=mend)
+        counts[match.group(2)] = counts.get(match.group(2), 0) + int(match.group(1) or 1)
+    return counts
 
 
 def write_sum(counts: Mapping[str, int]) -> str:

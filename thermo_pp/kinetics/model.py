@@ -57,8 +57,11 @@ class Model:
         """Return the rates at temperatures of shape (b,)."""
         names = (*self.mechanism.species, *self.mechanism.saddles)
         energies = energetics({name: self.species[name] for name in names}, temperature_k)
-        steps = elementary_rates(self.mechanism, energies, self.treatment)
-        return Rates(self, energies, steps)
+        return self.of(energies)
+
+    def of(self, energies: Energetics) -> Rates:
+        """Return the rates that free energies lead to."""
+        return Rates(self, energies, elementary_rates(self.mechanism, energies, self.treatment))
 
 
 @dataclass(frozen=True, eq=False)

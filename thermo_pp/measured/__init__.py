@@ -1,0 +1,1 @@
+"""Measured rate constants: reading, fits, and the comparison with computed rates."""

@@ -1,0 +1,150 @@
+"""Shifts of energies that bring computed and measured rates together, and the likelihood of a mechanism.
+
+All follow from one sum of squares: the observations' residuals in units of their errors and, where
+the energies have standard deviations, the shifts in units of those. Shifts are d = L z with L L^T
+the covariance of the energies and z of unit variance, so that correlated and exactly known energies
+need nothing special. Gauss-Newton (Levenberg-Marquardt) on the exact rates.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_pp.measured.observed import Observed
+
+FloatArray = NDArray[np.float64]
+FARTHEST_KJ_MOL = 100.0
+"""No state is moved farther than this."""
+
+
+@dataclass(frozen=True, eq=False)
+class Single:
+    """The shift of one state alone.
+
+    Attributes
+    ----------
+    shift_kj_mol, sigma_kj_mol : float
+        Best shift, and its standard deviation from the observations' errors.
+    chi_square : float
+        What is left of the residuals.
+    """
+
+    shift_kj_mol: float
+    sigma_kj_mol: float
+    chi_square: float
+
+
+@dataclass(frozen=True, eq=False)
+class Joint:
+    """The most probable shift of all energies together.
+
+    Attributes
+    ----------
+    shift_kj_mol : shape (s,)
+    chi_square_before, chi_square : float
+        Of the residuals without any shift and with this one.
+    length : float
+        Square root of d^T S^-1 d: how many standard deviations the shift is away from none.
+    log_evidence : float
+        ln of the likelihood of the observations, shifts integrated out.
+    """
+
+    shift_kj_mol: FloatArray
+    chi_square_before: float
+    chi_square: float
+    length: float
+    log_evidence: float
+
+
+class _Residuals:
+    """Residuals over their errors, and their slopes, as functions of z: d = directions @ z."""
+
+    def __init__(self, observed: Observed, directions: FloatArray, prior: bool) -> None:
+        self.observed, self.directions, self.prior = observed, directions, prior
+        self.factor = np.linalg.cholesky(observed.covariance)
+        self._last: tuple[FloatArray, FloatArray, FloatArray] | None = None
+
+    def both(self, z: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return residuals (p,) and slopes (p, k), of the observations alone."""
+        from scipy.linalg import solve_triangular
+
+        if self._last is None or not np.array_equal(self._last[0], z):
+            values, slopes = self.observed.computed(self.directions @ z)
+            residuals = solve_triangular(self.factor, self.observed.measured - values, lower=True)
+            along = solve_triangular(self.factor, -slopes @ self.directions, lower=True)
+            self._last = (z.copy(), residuals, along)
+        return self._last[1], self._last[2]
+
+    def residuals(self, z: FloatArray) -> FloatArray:
+        own = self.both(z)[0]
+        return np.concatenate([own, z]) if self.prior else own
+
+    def slopes(self, z: FloatArray) -> FloatArray:
+        own = self.both(z)[1]
+        return np.concatenate([own, np.eye(len(z))]) if self.prior else own
+
+    def least(self) -> FloatArray | None:
+        """Return z of the least sum of squares; None where it lies farther away than is looked."""
+        from scipy.optimize import least_squares
+
+        k = self.directions.shape[1]
+        bounds = (-np.inf, np.inf) if self.prior else (-FARTHEST_KJ_MOL, FARTHEST_KJ_MOL)
+        done = least_squares(
+            self.residuals, np.zeros(k), self.slopes, bounds, xtol=1e-12, ftol=1e-14, gtol=1e-12
+        )
+        if not self.prior and np.abs(done.x).max() > 0.999 * FARTHEST_KJ_MOL:
+            return None
+        return np.asarray(done.x)
+
+
+def alone(observed: Observed, name: str) -> Single | None:
+    """Return the shift of one energy that brings computed and measured closest; None where there is none."""
+    direction = np.zeros((len(observed.names), 1))
+    direction[observed.names.index(name)] = 1.0
+    sums = _Residuals(observed, direction, prior=False)
+    z = sums.least()
+    if z is None:
+        return None
+    residuals, slopes = sums.both(z)
+    steep = float(np.linalg.norm(slopes))
+    if steep == 0.0:
+        return None
+    return Single(float(z[0]), 1.0 / steep, float(residuals @ residuals))
+
+
+def together(observed: Observed, covariance: FloatArray) -> Joint:
+    """Return the most probable shift of all energies, and the likelihood with the shifts integrated out.
+
+    Parameters
+    ----------
+    observed : Observed
+    covariance : shape (s, s)
+        Of the energies, (kJ/mol)^2.
+
+    Notes
+    -----
+    The integral over the shifts is that of the rates linearised at the most probable shift (Laplace's method; common
+    practice, no source): ln p = -1/2 [chi^2 + z^T z + ln det(2 pi C) + ln det(1 + J^T J)].
+    """
+    values, vectors = np.linalg.eigh(covariance)
+    kept = values > 1e-12 * max(values.max(), 1e-300)
+    directions = vectors[:, kept] * np.sqrt(values[kept])
+    sums = _Residuals(observed, directions, prior=True)
+    zero = np.zeros(directions.shape[1])
+    before = sums.both(zero)[0]
+    z = sums.least()
+    assert z is not None
+    residuals, slopes = sums.both(z)
+    log_determinant = 2.0 * np.log(np.diag(sums.factor)).sum() + len(residuals) * np.log(2 * np.pi)
+    narrowing = np.linalg.slogdet(np.eye(len(z)) + slopes.T @ slopes)[1]
+    chi_square = float(residuals @ residuals)
+    return Joint(
+        directions @ z,
+        float(before @ before),
+        chi_square,
+        float(np.linalg.norm(z)),
+        -0.5 * float(chi_square + z @ z + log_determinant + narrowing),
+    )
