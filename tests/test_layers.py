@@ -22,7 +22,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
     ("collect", "scans", "species", "isotopes"),  # 4
     ("pairing", "audit", "grouping", "energies", "ensemble"),  # 5
     ("graph", "loops", "paths", "profile", "functions", "kinetics"),  # 6
-    (),  # 7: measured
+    ("measured",),  # 7
     ("study",),  # 8
     ("output",),  # 9
     ("cli",),  # 10
@@ -50,11 +50,11 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
         "survey", "species", "conformers", "energies", "profile", "courses", "barrier", "barrier_tables", "isotopes",
         "functions",
-        "cantera_phase", "choices",
+        "cantera_phase", "choices", "compare",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
-        "isotopes",
+        "isotopes", "compare",
     ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")

@@ -9,6 +9,7 @@ import click
 from thermo_pp import __version__
 from thermo_pp.cli.barrier import barrier
 from thermo_pp.cli.choices import choices
+from thermo_pp.cli.compare import compare
 from thermo_pp.cli.conformers import conformers
 from thermo_pp.cli.draft import draft
 from thermo_pp.cli.functions import functions
@@ -55,6 +56,7 @@ for _command in (
     profile,
     choices,
     barrier,
+    compare,
     isotopes,
 ):
     main.add_command(_command)

@@ -143,7 +143,9 @@ def _headings(cells: list[str], where: str) -> tuple[list[str], dict[str, str]]:
         amount = AMOUNT.fullmatch(name) is not None
         if name not in NAMES and not amount:
             raise StudyError(
-                f"unknown heading {cell.strip()!r}", where=where, mend=suggestion(name, NAMES, "headings")
+                f"unknown heading {cell.strip()!r}",
+                where=where,
+                mend=suggestion(name, NAMES, "headings"),
             )
         if name in names:
             raise StudyError(f"{name!r} has two columns", where=where, mend="leave one of them out")

@@ -12,17 +12,20 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Literal
+from functools import partial
+from typing import Literal, get_args
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.conditions import StandardState
 from thermo_pp.formulas.rates import log_frequency_factor
+from thermo_pp.kinetics.results import freeze_arrays
 from thermo_pp.units import BAR_PA, GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
 Form = Literal["arrhenius", "eyring", "power", "series", "parallel"]
+FORMS: tuple[Form, ...] = get_args(Form)
 R_KJ = GAS_J_MOL_K / 1000.0
 POWER_REFERENCE_K = 298.15
 """T0 of k = A (T/T0)^n exp(-E/RT)."""
@@ -69,6 +72,9 @@ class Fit:
     _energy: Callable[[FloatArray], tuple[FloatArray, FloatArray]]
     _centred: FloatArray
 
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
+
     @property
     def deviations(self) -> FloatArray:
         """Standard deviations of the parameters."""
@@ -93,19 +99,19 @@ class Fit:
 
         Student's t where the standard deviations come from the scatter, else the normal's.
         """
-        from scipy.stats import norm, t
+        from scipy.special import ndtri, stdtrit
 
         upper = 0.5 + 0.5 * share
-        return float(norm.ppf(upper) if self.weighted else t.ppf(upper, self.degrees))
+        return float(ndtri(upper) if self.weighted else stdtrit(self.degrees, upper))
 
     @property
     def chance(self) -> float | None:
         """Chance of a larger `chi_square` were the fit and the standard deviations right."""
-        from scipy.stats import chi2
+        from scipy.special import chdtrc
 
         if not self.weighted or self.degrees == 0:
             return None
-        return float(chi2.sf(self.chi_square, self.degrees))
+        return float(chdtrc(self.degrees, self.chi_square))
 
 
 class NoFitError(ValueError):
@@ -201,6 +207,7 @@ def _linear(
     covariance = inverse @ inverse.T
     if not weighted:
         covariance = covariance * (chi_square / degrees)
+    names: tuple[str, ...]
     if form == "arrhenius":
         names = ("ln A", "E / kJ mol^-1")
         to = np.array([[1.0, -middle], [0.0, -R_KJ]])
@@ -224,6 +231,12 @@ def _linear(
         # R T^2 d/dT of ln(kT/h) and of (1-m) ln c0, whose T d/dT is -1 in p-form
         return R_KJ * at * (1.0 + (order - 1) * (1.0 - state.log_ratio_slope))
 
+    def log(at: FloatArray) -> tuple[FloatArray, FloatArray]:
+        return offset(at) + basis(at) @ centred, basis(at)
+
+    def energy(at: FloatArray) -> tuple[FloatArray, FloatArray]:
+        return energy_offset(at) + energy_basis(at) @ centred, energy_basis(at)
+
     return Fit(
         form,
         names,
@@ -233,8 +246,8 @@ def _linear(
         chi_square,
         degrees,
         residuals,
-        lambda at: (offset(at) + basis(at) @ centred, basis(at)),
-        lambda at: (energy_offset(at) + energy_basis(at) @ centred, energy_basis(at)),
+        log,
+        energy,
         covariance,
     )
 
@@ -271,6 +284,12 @@ def _two(form: Form, t: FloatArray, y: FloatArray, weights: FloatArray, weighted
         gradient = np.stack([turn, one + turn * x, -turn, other - turn * x], axis=1)
         return scale * (one * p[1] + other * p[3]), scale * gradient
 
+    def off(p: FloatArray) -> FloatArray:
+        return np.asarray(weights * (log(t, p)[0] - y))
+
+    def slopes(p: FloatArray) -> FloatArray:
+        return np.asarray(weights[:, np.newaxis] * log(t, p)[1])
+
     third = max(2, len(t) // 3)
     order = np.argsort(t, kind="stable")
     ends = [np.polyfit((1.0 / t[part] - middle) / width, y[part], 1)
@@ -279,9 +298,9 @@ def _two(form: Form, t: FloatArray, y: FloatArray, weights: FloatArray, weighted
     if abs(start[1] - start[3]) < 1e-6:
         raise NoFitError("ln k is straight over 1/T: one Arrhenius constant says it all")
     done = least_squares(
-        lambda p: weights * (log(t, p)[0] - y),
+        off,
         start,
-        jac=lambda p: weights[:, np.newaxis] * log(t, p)[1],
+        jac=slopes,
         method="lm",
         xtol=1e-15,
         ftol=1e-15,
@@ -289,7 +308,7 @@ def _two(form: Form, t: FloatArray, y: FloatArray, weights: FloatArray, weighted
         max_nfev=2000,
     )
     p = done.x if done.x[1] >= done.x[3] else done.x[[2, 3, 0, 1]]
-    _, r = np.linalg.qr(weights[:, np.newaxis] * log(t, p)[1])
+    _, r = np.linalg.qr(slopes(p))
     if np.abs(np.diag(r)).min() < LEAST_CONDITION * np.abs(np.diag(r)).max():
         raise NoFitError("the points do not tell two constants apart")
     inverse = np.linalg.inv(r)
@@ -313,7 +332,7 @@ def _two(form: Form, t: FloatArray, y: FloatArray, weights: FloatArray, weighted
         chi_square,
         degrees,
         residuals,
-        lambda at: log(at, p),
-        lambda at: energy(at, p),
+        partial(log, p=p),
+        partial(energy, p=p),
         covariance,
     )

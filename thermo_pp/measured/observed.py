@@ -229,7 +229,7 @@ def observe(
             blocks.append(Block(found, np.eye(GRID), row.log(t), GRID * np.eye(GRID)))
             continue
         basis, known = row.basis(t), [k for k in range(3) if k not in row.uncertain]
-        image = np.linalg.pinv(basis[:, row.uncertain])
+        image = np.asarray(np.linalg.pinv(basis[:, row.uncertain]), dtype=np.float64)
         exact = image @ (basis[:, known] @ row.parameters[known])
         measured = row.parameters[list(row.uncertain)] + exact
         blocks.append(Block(found, image, measured, row.covariance))

@@ -66,7 +66,9 @@ def _point(cells: Cells) -> Point:
     value = _positive(cells, "k", "a rate constant is above 0; leave out what was not measured")
     sigma = None
     if "sigma" in cells.values:
-        sigma = _positive(cells, "sigma", "a standard deviation is above 0; leave it out if unknown")
+        sigma = _positive(
+            cells, "sigma", "a standard deviation is above 0; leave it out if unknown"
+        )
         sigma *= _ratio(cells, "sigma", "k")
     return Point(
         **_common(cells, "k"),
@@ -154,7 +156,8 @@ def _orders(cells: Cells, unit: RateUnit) -> dict[str, int]:
         if unit.order == 1:
             return {}
         raise StudyError(
-            f"a rate constant in {unit.text} is of order {unit.order - 1} in what is held, and the row does not say in what",
+            f"a rate constant in {unit.text} is of order {unit.order - 1} in what is held, and the row does not "
+            "say in what",
             where=cells.where,
             mend='name it in the column "orders": "W", "2 W" or "O2 + M"',
         )

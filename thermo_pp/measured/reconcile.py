@@ -3,7 +3,7 @@
 All follow from one sum of squares: the observations' residuals in units of their errors and, where
 the energies have standard deviations, the shifts in units of those. Shifts are d = L z with L L^T
 the covariance of the energies and z of unit variance, so that correlated and exactly known energies
-need nothing special. Gauss-Newton (Levenberg-Marquardt) on the exact rates.
+need nothing special. Gauss-Newton on the exact rates.
 """
 
 from __future__ import annotations
@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.errors import StudyError
 from thermo_pp.measured.observed import Observed
 
 FloatArray = NDArray[np.float64]
@@ -78,26 +79,40 @@ class _Residuals:
             self._last = (z.copy(), residuals, along)
         return self._last[1], self._last[2]
 
-    def residuals(self, z: FloatArray) -> FloatArray:
+    def squares(self, z: FloatArray) -> float:
+        """Return the sum of squares, the shifts' own included where they have one."""
         own = self.both(z)[0]
-        return np.concatenate([own, z]) if self.prior else own
-
-    def slopes(self, z: FloatArray) -> FloatArray:
-        own = self.both(z)[1]
-        return np.concatenate([own, np.eye(len(z))]) if self.prior else own
+        return float(own @ own + (z @ z if self.prior else 0.0))
 
     def least(self) -> FloatArray | None:
-        """Return z of the least sum of squares; None where it lies farther away than is looked."""
-        from scipy.optimize import least_squares
+        """Return z of the least sum of squares, by Gauss-Newton with halved steps.
 
-        k = self.directions.shape[1]
-        bounds = (-np.inf, np.inf) if self.prior else (-FARTHEST_KJ_MOL, FARTHEST_KJ_MOL)
-        done = least_squares(
-            self.residuals, np.zeros(k), self.slopes, bounds, xtol=1e-12, ftol=1e-14, gtol=1e-12
-        )
-        if not self.prior and np.abs(done.x).max() > 0.999 * FARTHEST_KJ_MOL:
-            return None
-        return np.asarray(done.x)
+        None where it lies farther away than is looked, or is not found.
+        """
+        z = np.zeros(self.directions.shape[1])
+        now = self.squares(z)
+        for _ in range(_MOST_STEPS):
+            residuals, slopes = self.both(z)
+            if self.prior:
+                residuals, slopes = np.append(residuals, z), np.vstack([slopes, np.eye(len(z))])
+            step = np.linalg.lstsq(slopes, -residuals, rcond=None)[0]
+            longest = np.abs(self.directions @ step).max(initial=0.0)
+            if longest < _NO_STEP_KJ_MOL:
+                return z
+            step *= min(1.0, _LONGEST_STEP_KJ_MOL / longest)
+            while (after := self.squares(z + step)) > now:
+                step = 0.5 * step
+                if np.abs(self.directions @ step).max() < _NO_STEP_KJ_MOL:
+                    return z
+            z, now = z + step, after
+            if np.abs(self.directions @ z).max() > FARTHEST_KJ_MOL:
+                return None
+        return None
+
+
+_MOST_STEPS = 50
+_LONGEST_STEP_KJ_MOL = 20.0
+_NO_STEP_KJ_MOL = 1e-6
 
 
 def alone(observed: Observed, name: str) -> Single | None:
@@ -124,6 +139,11 @@ def together(observed: Observed, covariance: FloatArray) -> Joint:
     covariance : shape (s, s)
         Of the energies, (kJ/mol)^2.
 
+    Raises
+    ------
+    StudyError
+        Nothing within reach brings computed and measured together.
+
     Notes
     -----
     The integral over the shifts is that of the rates linearised at the most probable shift (Laplace's method; common
@@ -136,7 +156,12 @@ def together(observed: Observed, covariance: FloatArray) -> Joint:
     zero = np.zeros(directions.shape[1])
     before = sums.both(zero)[0]
     z = sums.least()
-    assert z is not None
+    if z is None:
+        raise StudyError(
+            f"no shift of the energies below {FARTHEST_KJ_MOL:g} kJ/mol brings computed and measured together",
+            where=observed.blocks[0].curve.row.where,
+            mend="check the units, the definition and the amounts of the measurements, or the standard deviations",
+        )
     residuals, slopes = sums.both(z)
     log_determinant = 2.0 * np.log(np.diag(sums.factor)).sum() + len(residuals) * np.log(2 * np.pi)
     narrowing = np.linalg.slogdet(np.eye(len(z)) + slopes.T @ slopes)[1]

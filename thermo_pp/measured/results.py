@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.measured.fits import Fit
+from thermo_pp.kinetics.results import freeze_arrays
+from thermo_pp.measured.fits import Form
 from thermo_pp.measured.rows import Expression, Measurements, Point
 
 FloatArray = NDArray[np.float64]
@@ -34,6 +35,55 @@ class PointBeside:
     computed: float
     log_ratio: float
     log_deviation: float | None
+
+
+@dataclass(frozen=True, eq=False)
+class FitBeside:
+    """A fit of points over the study's temperatures, in the unit of the file.
+
+    Attributes
+    ----------
+    form : {"arrhenius", "eyring", "power", "series", "parallel"}
+        See `thermo_pp.measured.fits.Fit`.
+    names : tuple of str
+        Of the parameters, units in them; factors stand as ln A.
+    values, deviations : shape (p,)
+    covariance : shape (p, p)
+    factors : mapping of str to (float, float)
+        Pre-exponential factors in the unit of the file, with standard deviations to first order.
+    weighted : bool
+    chi_square : float
+    degrees : int
+    chance : float or None
+        Of a larger chi_square, where the points have standard deviations.
+    residuals : shape (n,)
+        ln k measured less fitted, in the order of `CurveBeside.lines`.
+    rate_constant, band_low, band_high : shape (t,)
+        The fit and its 95 % confidence band.
+    log_deviation : shape (t,)
+    arrhenius_energy_kj_mol, energy_deviation_kj_mol : shape (t,)
+    """
+
+    form: Form
+    names: tuple[str, ...]
+    values: FloatArray
+    deviations: FloatArray
+    covariance: FloatArray
+    factors: Mapping[str, tuple[float, float]]
+    weighted: bool
+    chi_square: float
+    degrees: int
+    chance: float | None
+    residuals: FloatArray
+    rate_constant: FloatArray
+    band_low: FloatArray
+    band_high: FloatArray
+    log_deviation: FloatArray
+    arrhenius_energy_kj_mol: FloatArray
+    energy_deviation_kj_mol: FloatArray
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
 
 @dataclass(frozen=True, eq=False)
@@ -65,7 +115,7 @@ class CurveBeside:
     measured, measured_log_deviation : shape (t,) or None
         Of the expression, in `unit`; of ln k.
     measured_energy_kj_mol, measured_energy_deviation_kj_mol : shape (t,) or None
-    fits : tuple of Fit
+    fits : tuple of FitBeside
         Of the points.
     not_fitted : mapping of str to str
         Forms that were left out, and why.
@@ -88,8 +138,11 @@ class CurveBeside:
     measured_log_deviation: FloatArray | None = None
     measured_energy_kj_mol: FloatArray | None = None
     measured_energy_deviation_kj_mol: FloatArray | None = None
-    fits: tuple[Fit, ...] = ()
+    fits: tuple[FitBeside, ...] = ()
     not_fitted: Mapping[str, str] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
 
 
 @dataclass(frozen=True)

@@ -32,7 +32,7 @@ class RateUnit:
 
 
 def rate_unit(text: str, *, where: str) -> RateUnit:
-    """Return what a unit of rate constants means: ``"s^-1"``, ``"cm3/s"``, ``"L^2 mol^-2 s^-1"``, ``"cm6 molecule-2 s-1"``.
+    """Return what a unit of rate constants means: ``"s^-1"``, ``"cm3/s"``, ``"L^2 mol^-2 s^-1"``.
 
     Raises
     ------

@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
+from numpy.typing import NDArray
 
 from thermo_pp.measured.results import Comparison, CurveBeside, JointShift
 
+FloatArray = NDArray[np.float64]
 SAME_ODDS = 3.0
 """Odds below which two studies are not told apart (common practice, no source)."""
 
@@ -53,7 +55,9 @@ def _beside(result: Comparison, curve: CurveBeside) -> Iterator[str]:
         f"The {curve.name}, {verb} {_range(ratio)} times the computed rate constant ({curve.definition}) {_between(t)}."
     )
     best = max(
-        (fit for fit in curve.fits if fit.chance is not None), key=lambda fit: fit.chance or 0.0, default=None
+        (fit for fit in curve.fits if fit.chance is not None),
+        key=lambda fit: fit.chance or 0.0,
+        default=None,
     )
     if best is not None:
         verdict = "agrees" if (best.chance or 0.0) > 0.05 else "does not agree"
@@ -63,7 +67,7 @@ def _beside(result: Comparison, curve: CurveBeside) -> Iterator[str]:
         )
 
 
-def _energies(measured: np.ndarray, computed: np.ndarray) -> Iterator[str]:
+def _energies(measured: FloatArray, computed: FloatArray) -> Iterator[str]:
     gap = measured - computed
     signs = (np.sign(measured) == np.sign(computed)).all()
     same = "of the same sign" if signs else "not of the same sign throughout"
@@ -117,20 +121,20 @@ def _rivals(result: Comparison) -> Iterator[str]:
     odds = float(np.exp(min(second.behind, 700.0)))
     if odds < SAME_ODDS:
         yield (
-            f"The measurements do not tell {best.title!r} and {second.title!r} apart: odds {odds:.3g} to 1, the "
+            f"The measurements do not tell {best.file} and {second.file} apart: odds {odds:.3g} to 1, the "
             "energies' uncertainty integrated out."
         )
     else:
         yield (
-            f"The measurements favour {best.title!r} over {second.title!r} by odds of {odds:.3g} to 1, the energies' "
+            f"The measurements favour {best.file} over {second.file} by odds of {odds:.3g} to 1, the energies' "
             "uncertainty integrated out."
         )
 
 
-def _between(t: np.ndarray) -> str:
+def _between(t: FloatArray) -> str:
     return f"at {t[0]:g} K" if len(t) == 1 else f"from {t.min():g} K to {t.max():g} K"
 
 
-def _range(values: np.ndarray) -> str:
+def _range(values: FloatArray) -> str:
     low, high = f"{np.min(values):.4g}", f"{np.max(values):.4g}"
     return low if low == high else f"{low} to {high}"

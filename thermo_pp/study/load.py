@@ -36,6 +36,8 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.results import EffectiveRate
+    from thermo_pp.measured.results import Comparison
+    from thermo_pp.measured.rows import Measurements
     from thermo_pp.profile import Profile
     from thermo_pp.study.choices import Choices
 
@@ -274,6 +276,50 @@ class Study:
         from thermo_pp.kinetics.effective import effective
 
         return effective(self, **options)
+
+    def compare(
+        self,
+        measured: str | os.PathLike[str] | Measurements,
+        *,
+        deviation: Any = None,
+        saddle_deviation: Any = None,
+        rivals: Iterable[Study] = (),
+    ) -> Comparison:
+        """Set the study against measured rate constants.
+
+        Parameters
+        ----------
+        measured : str, PathLike or Measurements
+            A CSV file; ``docs/cli.md`` (compare) describes its columns.
+        deviation, saddle_deviation : float, text or None
+            Standard deviations of the electronic energies of species and of saddle points, kJ/mol
+            or a text with a unit. With one alone: `deviation` counts for saddle points too,
+            `saddle_deviation` leaves the others exactly known.
+        rivals : iterable of Study
+            Ranked with this one by the likelihood of the measurements.
+
+        Raises
+        ------
+        StudyError
+            A row that cannot be read or set against this study, a deviation that is not above 0.
+        """
+        from thermo_pp.measured.comparison import compare
+        from thermo_pp.measured.deviations import make_deviations
+        from thermo_pp.measured.read import read_measurements
+        from thermo_pp.measured.rows import Measurements
+
+        rows = measured if isinstance(measured, Measurements) else read_measurements(measured)
+        others: dict[str, Study] = {}
+        for rival in rivals:
+            name = str(rival.path)
+            if name in others or name == str(self.path):
+                raise StudyError(
+                    f"the rival {name} is the study itself or stands twice",
+                    where="--rival",
+                    mend="name each study once",
+                )
+            others[name] = rival
+        return compare(self, rows, make_deviations(deviation, saddle_deviation), others)
 
     def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
         """Return the isotope effects of every set in ``[isotopologues]``.
