@@ -43,7 +43,9 @@ def acetone(t: np.ndarray) -> np.ndarray:
     return 8.8e-12 * np.exp(-1320.0 / t) + 1.7e-14 * np.exp(423.0 / t)
 
 
-def fitted(form: str, k: np.ndarray, t: np.ndarray, unit: object, state: StandardState = BAR) -> Fit:
+def fitted(
+    form: str, k: np.ndarray, t: np.ndarray, unit: object, state: StandardState = BAR
+) -> Fit:
     own = unit
     assert isinstance(own, type(CM3))
     sigma = np.full(len(t), 0.05)
@@ -142,7 +144,14 @@ def test_covariance_of_scipy(noisy: tuple[np.ndarray, np.ndarray, np.ndarray], f
         found = fit(form, t, y, given, 2, BAR)  # type: ignore[arg-type]
         start = found.values * 1.001
         values, covariance = curve_fit(
-            function, t, y, start, sigma=given, absolute_sigma=given is not None, xtol=1e-14, ftol=1e-14
+            function,
+            t,
+            y,
+            start,
+            sigma=given,
+            absolute_sigma=given is not None,
+            xtol=1e-14,
+            ftol=1e-14,
         )
         assert found.values == pytest.approx(values, rel=1e-5)
         assert found.deviations == pytest.approx(np.sqrt(np.diag(covariance)), rel=1e-3)
@@ -174,7 +183,9 @@ def test_deviations_are_those_of_repeated_measurements() -> None:
         logs, energies = [], []
         for _ in range(400):
             try:
-                one = fit(form, t, clean + 0.01 * random.standard_normal(13), np.full(13, 0.01), 2, BAR)
+                one = fit(
+                    form, t, clean + 0.01 * random.standard_normal(13), np.full(13, 0.01), 2, BAR
+                )
             except NoFitError:
                 continue
             logs.append(one.log(ROOM)[0][0])
@@ -194,7 +205,9 @@ def test_band_and_chance() -> None:
     assert scatter.band_factor() == pytest.approx(2.776445, abs=1e-6)  # Student, 4 degrees, 95 %
     assert scatter.chance is None
     assert weighted.chance is not None
-    assert weighted.chance == pytest.approx(np.exp(-weighted.chi_square / 2) * (1 + weighted.chi_square / 2))
+    assert weighted.chance == pytest.approx(
+        np.exp(-weighted.chi_square / 2) * (1 + weighted.chi_square / 2)
+    )
 
 
 def test_ill_conditioned_temperatures() -> None:
@@ -202,14 +215,20 @@ def test_ill_conditioned_temperatures() -> None:
     t = np.linspace(298.0, 298.3, 7)
     found = fitted("power", sulfur_trioxide(t), t, CM6)
     assert found.energy_kj_mol(ROOM)[0][0] == pytest.approx(-51.93089, abs=1e-4, rel=0.0)
-    assert found.log(ROOM)[0][0] == pytest.approx(np.log(sulfur_trioxide(298.15) * CM6.factor), abs=1e-10)
+    assert found.log(ROOM)[0][0] == pytest.approx(
+        np.log(sulfur_trioxide(298.15) * CM6.factor), abs=1e-10
+    )
 
 
 def test_too_little_is_refused() -> None:
     t, y = np.array([280.0, 300.0, 300.0]), np.array([1.0, 2.0, 2.1])
-    with pytest.raises(NoFitError, match="3 parameters need 3 temperatures and, with standard deviations, 3 points"):
+    with pytest.raises(
+        NoFitError, match="3 parameters need 3 temperatures and, with standard deviations, 3 points"
+    ):
         fit("power", t, y, np.full(3, 0.1), 1, BAR)
-    with pytest.raises(NoFitError, match=r"without standard deviations, 4 points; there are 3 and 3"):
+    with pytest.raises(
+        NoFitError, match=r"without standard deviations, 4 points; there are 3 and 3"
+    ):
         fit("power", np.array([280.0, 290.0, 300.0]), y, None, 1, BAR)
     straight = np.linspace(250.0, 400.0, 9)
     for form in ("series", "parallel"):

@@ -55,13 +55,16 @@ class Cells:
         """Return a cell that must be one finite number."""
         text = self.text(name, mend)
         try:
-            return split_quantity(f"{text} K", "K", where=self.where)[0]
+            number, unit = split_quantity(f"{text} K", "K", where=self.where)
         except StudyError:
+            unit = ""
+        if unit != "K":
             raise StudyError(
                 f"{text!r} in column {name!r} is not a finite number",
                 where=self.where,
                 mend="write one number, as in 3.3e-39; units stand in the heading",
-            ) from None
+            )
+        return number
 
     def optional(self, name: str) -> float | None:
         """Return a number, None where the cell is empty or the column is not there."""

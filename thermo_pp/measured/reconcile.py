@@ -84,22 +84,31 @@ class _Residuals:
         own = self.both(z)[0]
         return float(own @ own + (z @ z if self.prior else 0.0))
 
-    def least(self) -> FloatArray | None:
-        """Return z of the least sum of squares, by Gauss-Newton with halved steps.
+    def gradient(self, z: FloatArray) -> FloatArray:
+        """Return half the gradient of the sum of squares."""
+        residuals, slopes = self.both(z)
+        return slopes.T @ residuals + (z if self.prior else 0.0)
 
-        None where it lies farther away than is looked, or is not found.
+    def least(self) -> FloatArray | None:
+        """Return z of the least sum of squares: Gauss-Newton, each step's length by the secant rule.
+
+        The length matters where much is left of the residuals and the rates bend: steps of length 1
+        would swing to and fro. None where the least lies farther away than is looked, or is not found.
         """
         z = np.zeros(self.directions.shape[1])
         now = self.squares(z)
         for _ in range(_MOST_STEPS):
-            residuals, slopes = self.both(z)
-            if self.prior:
-                residuals, slopes = np.append(residuals, z), np.vstack([slopes, np.eye(len(z))])
-            step = np.linalg.lstsq(slopes, -residuals, rcond=None)[0]
+            slopes = self.both(z)[1]
+            downhill = -self.gradient(z)
+            normal = slopes.T @ slopes + (np.eye(len(z)) if self.prior else 0.0)
+            step = np.linalg.lstsq(normal, downhill, rcond=None)[0]
             longest = np.abs(self.directions @ step).max(initial=0.0)
             if longest < _NO_STEP_KJ_MOL:
                 return z
             step *= min(1.0, _LONGEST_STEP_KJ_MOL / longest)
+            start, end = downhill @ step, -self.gradient(z + step) @ step
+            if start > end:
+                step *= np.clip(start / (start - end), *_LENGTHS)
             while (after := self.squares(z + step)) > now:
                 step = 0.5 * step
                 if np.abs(self.directions @ step).max() < _NO_STEP_KJ_MOL:
@@ -113,6 +122,7 @@ class _Residuals:
 _MOST_STEPS = 50
 _LONGEST_STEP_KJ_MOL = 20.0
 _NO_STEP_KJ_MOL = 1e-6
+_LENGTHS = (0.1, 2.0)
 
 
 def alone(observed: Observed, name: str) -> Single | None:

@@ -17,7 +17,7 @@ from thermo_pp.units import GAS_J_MOL_K
 FloatArray = NDArray[np.float64]
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Row:
     """What points and expressions have in common.
 
@@ -51,7 +51,7 @@ class Row:
         return f"{self.file}:{self.line}"
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Point(Row):
     """One measured rate constant.
 
@@ -165,7 +165,7 @@ class Expression(Row):
         return np.asarray((t >= self.from_k) & (t <= self.to_k))
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Measurements:
     """A measurement file.
 
