@@ -5,7 +5,7 @@ Expressions (k in cm, molecule, s):
 SO3 + 2 H2O: 2.26e-43 T exp(6544/T), 250-360 K, Lovejoy, Hanson, Huey, J. Phys. Chem. 1996, 100, 19911.
 OH + dimethyl sulfide, addition: 9.5e-39 [O2] exp(5270/T)/(1 + 7.5e-29 [O2] exp(5610/T)), 240-360 K, IUPAC evaluation,
 parameters as public atmospheric mechanisms have them.
-OH + acetone: 8.8e-12 exp(-1320/T) + 1.7e-14 exp(423/T), 202-395 K, Wollenhaupt et al., J. Phys. Chem. A 2000, 104, 2695.
+OH + acetone: 8.8e-12 exp(-1320/T) + 1.7e-14 exp(423/T), 202-395 K, Wollenhaupt et al., JPCA 2000, 104, 2695.
 """
 
 from __future__ import annotations

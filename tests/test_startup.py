@@ -28,7 +28,8 @@ def loaded(code: str) -> set[str]:
 
 
 @pytest.mark.parametrize(
-    "command", [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"], ["isotopes"]]
+    "command",
+    [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"], ["compare"], ["isotopes"]],
 )
 def test_help_loads_nothing_heavy(command: list[str]) -> None:
     arguments = [*command, "--help"]

@@ -19,6 +19,7 @@ from thermo_pp.conditions import Conditions, Held, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.kinetics.controls import sensitivity
 from thermo_pp.kinetics.model import Model, Rates
+from thermo_pp.kinetics.network import NotLinear
 from thermo_pp.kinetics.shifts import Slope, shifted, slope
 from thermo_pp.measured.rows import Expression, Point, Row
 from thermo_pp.mechanism import Mechanism, write_sum
@@ -106,7 +107,8 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
     ------
     StudyError
         A definition that does not apply, an amount or an order of something that the study does not
-        hold at a stated amount, an order that the computed rate does not have.
+        hold at a stated amount, an order that the computed rate does not have, a network that is
+        not linear.
     """
     stated = [name for name, one in study.conditions.held.items() if one.form != "equilibrium"]
     for name in (*held, *row.orders):
@@ -119,8 +121,15 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
     conditions = replace(study.conditions, held={**study.conditions.held, **held})
     model = Model(study.mechanism, conditions, study.treatment, study.species)
     rates = model.at(np.asarray(temperature_k, dtype=np.float64))
-    rates.check()
-    known = rates.definitions()
+    try:
+        rates.check()
+        known = rates.definitions()
+    except NotLinear as error:
+        raise StudyError(
+            f"{error.what}: no rate constant alone describes the study, so none can be set against this one",
+            where=row.where,
+            mend=f"{error.mend}; a rate constant is compared with networks that are linear",
+        ) from None
     if row.definition not in known:
         raise StudyError(
             f"the study has no rate of the definition {row.definition!r}",
