@@ -31,6 +31,7 @@ COMMANDS = (
     "profile",
     "choices",
     "barrier",
+    "compare",
     "isotopes",
 )
 SURVEY_KEYS = (
@@ -397,7 +398,10 @@ def test_examples_of_the_docs_parse() -> None:
     assert len(lines) > 10
     for line in lines:
         words = [word.strip('"') for word in re.findall(r'"[^"]*"|\S+', line)]
-        words = [WATER if word.endswith((".toml", ".out", ".xyz")) else word for word in words]
+        words = [
+            WATER if word.endswith((".toml", ".out", ".xyz", "measured.csv")) else word
+            for word in words
+        ]
         words = [str(PSI4) if word.endswith("outputs/") else word for word in words]
         command = main.commands[words[0]]
         command.make_context(words[0], words[1:])

@@ -353,6 +353,16 @@ def test_a_rate_constant_of_the_wrong_order(tmp_path: Path) -> None:
     assert "their dimensions differ" in error.value.what
 
 
+def test_a_network_that_is_not_linear_is_refused(tmp_path: Path) -> None:
+    text = STUDY.replace('equation = "C = P"', 'equation = "C + A = P + A"')
+    text = text.replace('TS = { composition = "H2O4S"', 'TS = { composition = "S2O7H2"')
+    study = load(tmp_path, text=text)
+    file = points(tmp_path, np.ones(5))
+    with pytest.raises(StudyError, match="no rate constant alone describes the study") as error:
+        study.compare(file)
+    assert error.value.where == f"{file}:2"
+
+
 def test_backwards_is_refused(tmp_path: Path) -> None:
     """At these amounts the net reaction runs backwards: there is no constant to compare."""
     text = STUDY.replace('W = "1e-3 mol/L"', 'W = "1e-3 mol/L", P = "1 bar", A = "1e-30 bar"')
@@ -425,6 +435,13 @@ def test_docs_have_the_numbers(plume: Comparison) -> None:
     shown = {one.name: f"{one.mean_kj_mol:+.1f}" for one in plume.states}
     sentence = f"TS2 alone by {shown['TS2']} kJ/mol, SO3 alone by {shown['SO3']} or W alone by {shown['W']}"
     assert sentence in " ".join(text.split())
+    lefts = sorted(np.exp(one.mean_rms) for one in plume.states if one.mean_rms is not None)
+    assert f"a factor of {lefts[0]:.2f} to {lefts[-1]:.2f} (root mean square)" in " ".join(
+        text.split()
+    )
+    assert [one.name for one in plume.states if one.within] == ["W"]
+    assert plume.joint is not None
+    assert f"more than {max(map(abs, plume.joint.multiple.values())):.1f} of its deviation" in text
 
 
 # the command
