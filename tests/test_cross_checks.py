@@ -78,6 +78,7 @@ def test_a_line_that_is_not_needed(fixture: str, mark: bytes, which: int) -> Non
 
 
 CHANGED = [
+    ("gamess/good/carbon_monoxide_hessian.out", b"RELWFN=NONE", b"RELWFN=NYNE", "with RELWFN=NYNE"),
     (
         "gaussian/good/water_b2plyp_energy.log",
         b"   1          8 ",

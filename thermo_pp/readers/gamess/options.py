@@ -31,6 +31,7 @@ _ALONE = {
     "VBTYP": ("NONE", ""),
     "RUNTYP": ("ENERGY", "GRADIENT", "HESSIAN", "OPTIMIZE", "SADPOINT", "RAMAN", "PROP", "TDHF"),
     "TDDFT": ("NONE", "EXCITE", ""),
+    "RELWFN": ("NONE", "", "DK", "IOTC", "LUT-IOTC", "RESC", "NESC"),
 }
 """The values of options that are read."""
 KINDS = {
