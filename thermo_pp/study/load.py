@@ -26,6 +26,7 @@ from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
+from thermo_pp.study.questions import make_regimes, make_selectivity
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
 
 if TYPE_CHECKING:
@@ -35,7 +36,9 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.courses import Transient
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
+    from thermo_pp.kinetics.regime_map import RegimeQuestion, Regimes
     from thermo_pp.kinetics.results import EffectiveRate
+    from thermo_pp.kinetics.selectivity import Selectivity, SelectivityQuestion
     from thermo_pp.profile import Profile
     from thermo_pp.study.choices import Choices
 
@@ -73,6 +76,10 @@ class Study:
         Part by part, of every structure that is read.
     formation_question : FormationQuestion or None
         Of ``[formation]``.
+    regime_question : RegimeQuestion or None
+        Of ``[regimes]``.
+    selectivity_question : SelectivityQuestion or None
+        Of ``[selectivity]``.
     """
 
     title: str
@@ -88,6 +95,8 @@ class Study:
     level_names: tuple[str, ...] = ()
     energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
     formation_question: FormationQuestion | None = None
+    regime_question: RegimeQuestion | None = None
+    selectivity_question: SelectivityQuestion | None = None
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -175,6 +184,8 @@ class Study:
             level_names=tuple(keys.levels),
             energies=members.energies,
             formation_question=formation,
+            regime_question=make_regimes(keys, conditions, file),
+            selectivity_question=make_selectivity(keys, mechanism, file),
             _origin=origin,
         )
 
@@ -265,6 +276,22 @@ class Study:
         from thermo_pp.kinetics.effective import effective
 
         return effective(self, **options)
+
+    def regimes(self, question: RegimeQuestion | None = None) -> Regimes | None:
+        """Return the map of regimes that `question`, else ``[regimes]``, asks for; None where neither does."""
+        from thermo_pp.kinetics.regimes import regimes
+
+        asked = question or self.regime_question
+        return None if asked is None else regimes(self, asked)
+
+    def selectivity(self, effective: EffectiveRate | None = None) -> Selectivity | None:
+        """Return how products compete, None where there is one and ``[selectivity]`` asks nothing.
+
+        `effective` is the study's effective rate where it is known already.
+        """
+        from thermo_pp.kinetics.selectivity import selectivity
+
+        return selectivity(self, effective or self.effective(), self.selectivity_question)
 
     def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
         """Return the isotope effects of every set in ``[isotopologues]``.
