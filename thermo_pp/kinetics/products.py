@@ -88,7 +88,9 @@ class _Flux:
     entry: tuple[int, int]  # source, and product that it leads to; TO_REACTANT for the reactant
     log: FloatArray
     sign: FloatArray
-    slope_j_mol: FloatArray  # R T^2 d ln/dT of the amount it starts from and of those it is driven by
+    slope_j_mol: (
+        FloatArray  # R T^2 d ln/dT of the amount it starts from and of those it is driven by
+    )
     growth: FloatArray  # d ln/d(affinity over RT)
     counts: FloatArray  # of the affinity, over the species
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from thermo_pp.kinetics.results import WITHIN, EffectiveRate, Window
 
 if TYPE_CHECKING:
-    from thermo_pp.kinetics.selectivity import CurtinHammett, ProductRatio, Selectivity
+    from thermo_pp.kinetics.product_ratio import CurtinHammett, ProductRatio, Selectivity
 
 FloatArray = NDArray[np.float64]
 WORKING_K = 298.15

@@ -8,7 +8,7 @@ import numpy as np
 
 from thermo_pp.kinetics.regime_map import AmountWindow, RegimeMap, Regimes
 from thermo_pp.names import EnergyUnit
-from thermo_pp.output.barrier import KEYS, TITLES
+from thermo_pp.output.definitions import KEYS, TITLES
 from thermo_pp.output.notes import kelvin, some, usual
 from thermo_pp.output.tables import (
     Block,
@@ -142,9 +142,16 @@ def tables(regimes: Regimes, unit: EnergyUnit) -> list[Block]:
         ]
         title = f"Regimes over {regimes.species}: {TITLES[name].lower()}"
         columns = [Column("T", "K", "$T$"), *_map_columns(regimes, unit)]
-        if one.resting is None:
-            columns, rows = columns[:-2], [row[:-2] for row in rows]
-        blocks.append(Table(title, columns, rows, notes))
+        left_out = {"order"} if one.resting is not None else {"order", "rests", "share"}
+        shown_columns = [k for k, c in enumerate(columns) if c.quantity not in left_out]
+        blocks.append(
+            Table(
+                title,
+                [columns[k] for k in shown_columns],
+                [[row[k] for k in shown_columns] for row in rows],
+                notes,
+            )
+        )
     blocks += _windows(regimes)
     blocks += _contour(regimes)
     return blocks

@@ -6,7 +6,7 @@ from typing import Any
 
 import numpy as np
 
-from thermo_pp.kinetics.selectivity import CurtinHammett, ProductRatio, Selectivity
+from thermo_pp.kinetics.product_ratio import CurtinHammett, ProductRatio, Selectivity
 from thermo_pp.names import EnergyUnit
 from thermo_pp.output.notes import kelvin, some
 from thermo_pp.output.tables import (
@@ -86,9 +86,7 @@ def tables(selectivity: Selectivity, unit: EnergyUnit) -> list[Block]:
     blocks: list[Block] = []
     shown = some(len(selectivity.temperature_k), SIDE_BY_SIDE)
     for one in selectivity.ratios:
-        rows = [
-            _ratio(selectivity, one, k, unit) for k in range(len(selectivity.temperature_k))
-        ]
+        rows = [_ratio(selectivity, one, k, unit) for k in range(len(selectivity.temperature_k))]
         blocks.append(
             Table(f"Selectivity: {one.product} over {one.other}", _columns(unit), rows, _notes(one))
         )
@@ -106,7 +104,9 @@ def tables(selectivity: Selectivity, unit: EnergyUnit) -> list[Block]:
             for name, values in counting.items()
         ]
         title = f"Control of {one.product} over {one.other}"
-        notes = ["Control: d ln(ratio)/d(-G/RT) of each state; ‡: saddle points, or steps without one."]
+        notes = [
+            "Control: d ln(ratio)/d(-G/RT) of each state; ‡: saddle points, or steps without one."
+        ]
         blocks.append(Table(title, columns, controls, notes))
     return blocks
 
@@ -116,9 +116,7 @@ def _notes(one: ProductRatio) -> list[str]:
     found = one.curtin_hammett
     if found is not None:
         within = ", ".join(
-            "throughout"
-            if w.open_below and w.open_above
-            else f"{w.from_k:.2f} K to {w.to_k:.2f} K"
+            "throughout" if w.open_below and w.open_above else f"{w.from_k:.2f} K to {w.to_k:.2f} K"
             for w in found.windows
         )
         notes.append(f"C-H: Curtin-Hammett, within 5 % of the exact ratio {within or 'nowhere'}.")

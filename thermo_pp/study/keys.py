@@ -745,7 +745,8 @@ class SelectivityKeys(Keys, frozen=True, kw_only=True):
         ),
     ]
     kind: Annotated[
-            Meta(
+        SelectivityKind,
+        Meta(
             description="what tells them apart; mirror images (`enantiomeric`) are looked at for being "
             "counted twice"
         ),

@@ -26,8 +26,8 @@ from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
-from thermo_pp.study.questions import make_regimes, make_selectivity
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
+from thermo_pp.study.questions import make_regimes, make_selectivity
 
 if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
@@ -36,9 +36,9 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.courses import Transient
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
+    from thermo_pp.kinetics.product_ratio import Selectivity, SelectivityQuestion
     from thermo_pp.kinetics.regime_map import RegimeQuestion, Regimes
     from thermo_pp.kinetics.results import EffectiveRate
-    from thermo_pp.kinetics.selectivity import Selectivity, SelectivityQuestion
     from thermo_pp.profile import Profile
     from thermo_pp.study.choices import Choices
 

@@ -14,8 +14,8 @@ from thermo_pp.study.check import place
 from thermo_pp.study.keys import Quantity, StudyKeys
 
 if TYPE_CHECKING:
+    from thermo_pp.kinetics.product_ratio import SelectivityQuestion
     from thermo_pp.kinetics.regime_map import RegimeQuestion
-    from thermo_pp.kinetics.selectivity import SelectivityQuestion
 
 
 def make_regimes(keys: StudyKeys, conditions: Conditions, file: str) -> RegimeQuestion | None:
@@ -80,7 +80,7 @@ def make_selectivity(
     keys: StudyKeys, mechanism: Mechanism, file: str
 ) -> SelectivityQuestion | None:
     """Turn ``[selectivity]`` into what is asked, None where the file has no such table."""
-    from thermo_pp.kinetics.selectivity import SelectivityQuestion
+    from thermo_pp.kinetics.product_ratio import SelectivityQuestion
 
     asked = keys.selectivity
     if isinstance(asked, UnsetType):
