@@ -47,8 +47,9 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "found", "results",
     ),
     "output": (
-        "tables", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "conformers", "energies", "profile", "courses", "barrier", "barrier_tables", "isotopes",
+        "tables", "definitions", "notes", "plain", "delimited", "latex", "json_text", "files",
+        "survey", "species", "conformers", "energies", "profile", "courses", "regimes", "selectivity",
+        "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare",
     ),

@@ -176,6 +176,14 @@ species.W = { 2 = "T" }
 [[paths]]
 name = "x"
 steps = [1, -1]
+[regimes]
+over = "W"
+from = "1e-6 mol/L"
+to = 0.1
+points = 12
+[selectivity]
+products = ["P", "Q"]
+kind = "diastereomeric"
 [formation]
 atoms = ["A"]
 atomization = ["A"]

@@ -281,7 +281,32 @@ MUTATIONS: list[tuple[str, Mutation, str, str | None]] = [
         "network",
         of_rate("free", approximations=approximation(PRE, ratio=np.array([1.0, 1.5, 2.0]))),
         r"Pre-equilibrium .*",
-        "its ratio to the exact constant is 1 to 2.",
+        "its ratio to the exact constant is 1 to 2;",
+    ),
+    # why an approximation stops
+    (
+        "network",
+        of_step(2, reversibility=np.array([0.99, 0.98, 0.5])),
+        r"Pre-equilibrium holds .*",
+        "; above, at 400 K, A + W = C2 is no longer in equilibrium, its return is 0.5 of its way there.",
+    ),
+    (
+        "network",
+        of_step(2, reversibility=np.array([0.99, 0.94, 0.5])),
+        r"Pre-equilibrium holds .* above, .* A \+ W = C2 .*",
+        "; above, at 400 K, C1 = C2 is no longer in equilibrium, its return is 0.933 of its way there.",
+    ),
+    (
+        "network",
+        of_rate("pool", populations=entry("D", [0.9, 0.25, 0.0])),
+        r"Steady state of D holds .*",
+        "; below, at 300 K, D holds 25 % of the pool.",
+    ),
+    (
+        "network",
+        of_rate("free", control=entry("T2", [0.0, 0.0, 0.0])),
+        r"Energetic span holds .*; above, .* by TP \(0.93\) and T2 \(0.061\).*",
+        "is 0.6144 to 1.068; below, at 300 K, the control is shared by TP (0.85) and T3 (0.12).",
     ),
     (
         "network",
@@ -396,6 +421,10 @@ N = r"-?[0-9.]+(e[+-][0-9]+)?"  # a number
 RANGE = rf"{N}( to {N})?"
 WHERE = rf"(at every temperature|((and )?(at {N} K|from {N} K to {N} K) ?)+)"
 LIST = rf"(as|is)? ?\S+ \((control )?{RANGE}( %)?\) {WHERE}"
+WHY = (
+    rf"((; above|; below), at {N} K, (.+ = .+ is no longer in equilibrium, its return is {N} of its way "
+    rf"there|\S+ holds {N} % of the pool|the control is shared by .+ \({N}\) and .+ \({N}\)))*"
+)
 TEMPLATES = [
     r"The net reaction is .+ = .+; rates count its extent(, with (.+ at .+ mol/L)+)?\.",
     rf"Relative to .+ the constant is {N} s\^-1 at {N} K( and {N} s\^-1 at {N} K)?\.",
@@ -412,7 +441,7 @@ TEMPLATES = [
     rf"The saddle that controls this rate most {LIST}(, {LIST})*\.",
     rf".+ does not hold anywhere in the range; its ratio .+ is ({RANGE}|undefined)\.",
     rf".+ holds at every temperature of the range; its ratio .+ is {RANGE}\.",
-    rf".+ holds (up to|from) {N} K.*; its ratio .+ is {RANGE}\.",
+    rf".+ holds (up to|from) {N} K.*; its ratio .+ is {RANGE}{WHY}\.",
     rf".+ holds at {N} K; its ratio .+ is {RANGE}\.",
     rf".+ does not hold at {N} K; its ratio .+ is ({RANGE}|undefined)\.",
     r"It makes no difference here \(5 %\) whether the rate is taken over free .+ or over the pool\.",

@@ -138,14 +138,15 @@ class Held:
     Attributes
     ----------
     form : {"concentration", "pressure", "equilibrium"}
-    value : float or None
-        mol/L, or Pa; None at equilibrium.
+    value : float, shape (b,), or None
+        mol/L, or Pa; None at equilibrium. An array has one amount for each temperature of a batch
+        (maps over an amount).
     text : str
         As the user wrote it.
     """
 
     form: Literal["concentration", "pressure", "equilibrium"]
-    value: float | None
+    value: float | FloatArray | None
     text: str
 
     def concentration_mol_l(self, temperature_k: ArrayLike) -> FloatArray:

@@ -21,6 +21,7 @@ Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
 Duplicates = Literal["count", "once"]
 Thermal = Literal["own", "nearest"]
 Definition = Literal["free", "pool", "relaxation", "cycle"]
+SelectivityKind = Literal["products", "enantiomeric", "diastereomeric", "isotopic"]
 PolynomialForm = Literal["nasa7", "nasa9", "shomate"]
 
 SEVERITIES: tuple[Severity, ...] = get_args(Severity)

@@ -21,7 +21,9 @@ from thermo_pp.cli.options import (
 )
 
 if TYPE_CHECKING:
+    from thermo_pp.kinetics.regime_map import RegimeQuestion
     from thermo_pp.output.tables import Block
+    from thermo_pp.study.load import Study
 
 
 def _times(
@@ -39,6 +41,17 @@ def _seconds(text: str) -> float:
     return usage(lambda: quantity(number(text), "s", where="--time"))
 
 
+def _regimes(study: Study, over: tuple[str, str, str] | None, points: int) -> RegimeQuestion | None:
+    """Return the question of --regimes, None where it is not given."""
+    if over is None:
+        return None
+    from thermo_pp.study.questions import regime_question
+
+    name, low, high = over
+    ends = number(low), number(high)
+    return regime_question(study.conditions, name, *ends, points, "--regimes")
+
+
 @click.command(short_help="The effective rate and barrier, and what controls them.")
 @click.argument("study", type=STUDY)
 @click.option(
@@ -51,6 +64,21 @@ def _seconds(text: str) -> float:
     callback=_times,
     help='Follow the study in time from [conditions] initial; at a time: 10 (s), "2 h". Repeatable.',
 )
+@click.option(
+    "--regimes",
+    "over",
+    nargs=3,
+    metavar="NAME FROM TO",
+    help='Map the regimes over a held amount: W 1e-6 1e-1 (mol/L), W "1 mbar" "50 mbar".',
+)
+@click.option(
+    "--regime-points",
+    type=click.IntRange(min=2),
+    default=25,
+    show_default=True,
+    metavar="N",
+    help="Points of that map along the amount.",
+)
 @temperature_options
 @treatment_options
 @LEVEL
@@ -58,6 +86,8 @@ def _seconds(text: str) -> float:
 def barrier(
     study: Path,
     times: tuple[float, ...] | None,
+    over: tuple[str, str, str] | None,
+    regime_points: int,
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
     level: str | None,
@@ -68,7 +98,9 @@ def barrier(
     The rate per free reactant, per pool, of relaxation or of the catalytic cycle, whichever apply:
     exact, beside the usual approximations and where these hold. Temperatures and treatment are the
     study's unless given here. A network that is not linear is followed in time from [conditions]
-    initial, and a flow is solved for its steady state.
+    initial, and a flow is solved for its steady state. Where several products compete, their ratios
+    follow; with --regimes or [regimes] a map says which approximation holds, which state rests and
+    which one controls where.
 
     \b
     Example:
@@ -77,9 +109,12 @@ def barrier(
         thermo-pp barrier study.toml --low-modes rotor-enthalpy --format json
         thermo-pp barrier study.toml --time
         thermo-pp barrier study.toml --time "10 s" --time "1 h"
+        thermo-pp barrier study.toml --regimes W 1e-6 1e-1
     """
     from thermo_pp.output import barrier as output
     from thermo_pp.output import barrier_tables, courses
+    from thermo_pp.output import regimes as regimes_output
+    from thermo_pp.output import selectivity as selectivity_output
     from thermo_pp.output.notes import usual
     from thermo_pp.study.load import Study
 
@@ -95,7 +130,9 @@ def barrier(
     if times is not None or (alone and (conditions.initial or conditions.total)):
         transient = loaded.transient(times_s=times or (), temperature_k=kelvin)
     flow = loaded.flow() if conditions.flow is not None else None
-    further = [one for one in (transient, flow) if one is not None]
+    regimes = loaded.regimes(_regimes(loaded, over, regime_points))
+    selectivity = loaded.selectivity(result)
+    further = [one for one in (transient, flow, selectivity) if one is not None]
     findings = tuple(
         dict.fromkeys(
             (*loaded.findings, *result.findings, *(f for one in further for f in one.findings))
@@ -112,14 +149,19 @@ def barrier(
             )
             found += [] if transient is None else courses.time_course_wide(transient, unit)
             found += [] if flow is None else courses.flow_tables(flow, unit, people=False)
+            found += [] if selectivity is None else selectivity_output.wide(selectivity, unit)
+            found += [] if regimes is None else regimes_output.wide(regimes, unit)
             return found
         found = [] if transient is None else courses.time_course_tables(transient, unit)
         found += [] if flow is None else courses.flow_tables(flow, unit, people=True)
-        return [*found, *barrier_tables.tables(result, treatment, unit, loaded.levels)]
+        return [
+            *found,
+            *barrier_tables.tables(result, treatment, unit, loaded.levels, regimes, selectivity),
+        ]
 
     show(
         showing,
         findings,
         blocks,
-        lambda: output.keys(result, treatment, findings, transient, flow),
+        lambda: output.keys(result, treatment, findings, transient, flow, regimes, selectivity),
     )

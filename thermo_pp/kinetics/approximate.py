@@ -49,10 +49,10 @@ def approximate(
             continue
         names = list(here)
 
-        def ratios(temperature_k: FloatArray, of: Definition = definition) -> FloatArray:
+        def curves(temperature_k: FloatArray, of: Definition = definition) -> FloatArray:
             return _ratios(rates.model.at(temperature_k), of)
 
-        found = windows(ratios, scan_k, _ratios(wide, definition))
+        found = windows(curves, scan_k, _ratios(wide, definition))
         exact = rates.rate(definition)
         approximations = []
         for k, name in enumerate(names):
@@ -74,10 +74,14 @@ def approximate(
 _Logs = dict[str, tuple[FloatArray, tuple[str, ...] | None, tuple[str, ...] | None]]
 
 
-def _ratios(rates: Rates, definition: Definition) -> FloatArray:
+def ratios(rates: Rates, definition: Definition) -> dict[str, FloatArray]:
+    """Return the ratio of each approximation of one definition to the exact rate, shape (b,) each."""
     exact = rates.rate(definition)
-    logs = [entry[0] for entry in _logs(rates, definition).values()]
-    return np.stack([_ratio(log, exact) for log in logs], axis=1)
+    return {name: _ratio(entry[0], exact) for name, entry in _logs(rates, definition).items()}
+
+
+def _ratios(rates: Rates, definition: Definition) -> FloatArray:
+    return np.stack(list(ratios(rates, definition).values()), axis=1)
 
 
 def _ratio(log: FloatArray, exact: LogRate) -> FloatArray:

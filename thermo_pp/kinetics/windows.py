@@ -95,6 +95,52 @@ def _locate(curves: Curves, column: int, low: float, high: float, sign_low: floa
     return 0.5 * (low + high)
 
 
+Lines = Callable[[NDArray[np.intp], FloatArray], FloatArray]
+"""Numbers of lines and places along them, (n,) each -> values (n,)."""
+_BATCH_POINTS = 12
+
+
+def crossings_of_lines(
+    curve: Lines, scan: FloatArray, values: FloatArray, located: float
+) -> list[list[Root]]:
+    """Return where each of many lines passes through 0, ascending; all are located together.
+
+    Parameters
+    ----------
+    curve : callable
+    scan : shape (n,)
+        Where all lines were looked at: temperatures, or logarithms of an amount.
+    values : shape (l, n)
+        The lines there.
+    located : float
+        How far apart the places are between which a root is located at last.
+    """
+    signs = np.where(values < 0.0, -1.0, 1.0)
+    line, at = np.nonzero(signs[:, 1:] != signs[:, :-1])
+    brackets = [(line, scan[at], scan[at + 1], signs[line, at])]
+    dips = [(k, int(d)) for k in range(len(values)) for d in _dips(signs[k] * values[k], signs[k])]
+    if dips:
+        own, place = np.array(dips).T
+        finer = np.linspace(scan[place - 1], scan[place + 1], 2 * _REFINE_POINTS, axis=1)
+        looked = curve(np.repeat(own, finer.shape[1]), finer.ravel()).reshape(finer.shape)
+        side = np.where(looked < 0.0, -1.0, 1.0)
+        row, at = np.nonzero(side[:, 1:] != side[:, :-1])
+        brackets.append((own[row], finer[row, at], finer[row, at + 1], side[row, at]))
+    line, low, high, below = (np.concatenate(parts) for parts in zip(*brackets, strict=True))
+    while len(line) and np.max(high - low) > located:
+        grid = np.linspace(low, high, _BATCH_POINTS, axis=1)
+        found = curve(np.repeat(line, _BATCH_POINTS), grid.ravel()).reshape(grid.shape)
+        other = np.where(found < 0.0, -1.0, 1.0) != below[:, np.newaxis]
+        other[:, 0], other[:, -1] = False, True
+        first = np.argmax(other, axis=1)
+        rows = np.arange(len(line))
+        low, high = grid[rows, first - 1], grid[rows, first]
+    roots: list[list[Root]] = [[] for _ in range(len(values))]
+    for k, root, sign in zip(line, 0.5 * (low + high), below, strict=True):
+        roots[int(k)].append((float(root), float(sign)))
+    return [sorted(one) for one in roots]
+
+
 def sign_changes(roots: list[Root]) -> tuple[SignChange, ...]:
     """Name each root of the Arrhenius energy: positive below and negative above is a maximum of the rate."""
     return tuple(SignChange(root, "maximum" if below > 0 else "minimum") for root, below in roots)

@@ -12,6 +12,7 @@ from itertools import groupby
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.kinetics.reasons import reasons
 from thermo_pp.kinetics.results import (
     NEXT_DECAY_BELOW,
     NOTABLE,
@@ -38,7 +39,7 @@ def words(result: EffectiveRate) -> tuple[str, ...]:
         if rate.populations is not None:
             sentences.append(_resting(result, definition, rate))
         sentences += _controlling(result, rate)
-        sentences += [_window(result, one) for one in rate.approximations]
+        sentences += [_window(result, rate, one) for one in rate.approximations]
     sentences += _comparisons(result)
     sentences += _limits(result)
     return tuple(sentences)
@@ -119,7 +120,7 @@ def _controlling(result: EffectiveRate, rate: Rate) -> Iterator[str]:
     yield f"The saddle that controls this rate most is {', '.join(parts)}."
 
 
-def _window(result: EffectiveRate, one: Approximation) -> str:
+def _window(result: EffectiveRate, rate: Rate, one: Approximation) -> str:
     name = one.name[0].upper() + one.name[1:]
     ratio = f"its ratio to the exact constant is {_range(one.ratio)}"
     if len(result.temperature_k) == 1:
@@ -129,7 +130,9 @@ def _window(result: EffectiveRate, one: Approximation) -> str:
         return f"{name} does not hold anywhere in the range; {ratio}."
     if all(w.open_below and w.open_above for w in one.windows):
         return f"{name} holds at every temperature of the range; {ratio}."
-    return f"{name} holds {' and '.join(_interval(w) for w in one.windows)}; {ratio}."
+    where = " and ".join(_interval(w) for w in one.windows)
+    why = "".join(f"; {reason}" for w in one.windows for reason in reasons(result, rate, one, w))
+    return f"{name} holds {where}; {ratio}{why}."
 
 
 def _interval(window: Window) -> str:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import asdict
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,11 +13,16 @@ from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.courses import Transient
 from thermo_pp.kinetics.flow import FlowState
+from thermo_pp.kinetics.product_ratio import Selectivity
+from thermo_pp.kinetics.regime_map import Regimes
 from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate, StepRate
 from thermo_pp.names import DEFINITIONS, Definition, EnergyUnit
 from thermo_pp.output.courses import flow_keys, time_course_keys
+from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import kelvin
+from thermo_pp.output.regimes import keys as regimes_keys
+from thermo_pp.output.selectivity import keys as selectivity_keys
 from thermo_pp.output.tables import (
     ENTROPY_UNIT,
     Block,
@@ -32,13 +37,6 @@ from thermo_pp.output.tables import (
 
 FloatArray = NDArray[np.float64]
 
-_KEYS: dict[Definition, str] = {
-    "free": "per_free_reactant",
-    "pool": "per_pool",
-    "relaxation": "relaxation",
-    "cycle": "cycle",
-}
-
 
 def keys(
     effective: EffectiveRate,
@@ -46,6 +44,8 @@ def keys(
     findings: Sequence[Finding],
     transient: Transient | None = None,
     flow: FlowState | None = None,
+    regimes: Regimes | None = None,
+    selectivity: Selectivity | None = None,
 ) -> dict[str, Any]:
     """Return the JSON answer."""
     rates = {name: effective.rates.get(name) for name in DEFINITIONS}
@@ -57,16 +57,24 @@ def keys(
         net_reaction=effective.net_reaction or None,
         reactant_coefficient=effective.reactant_coefficient,
         held_mol_l=effective.held_mol_l,
-        rates={_KEYS[name]: rate and _rate(rate) for name, rate in rates.items()},
+        rates={KEYS[name]: rate and _rate(rate) for name, rate in rates.items()},
         steps=[vars(step) for step in effective.steps],
         time_course=transient and time_course_keys(transient),
         flow=flow and flow_keys(flow),
-        words=" ".join((*effective.words, *_further(transient), *_further(flow))),
+        regimes=regimes and regimes_keys(regimes),
+        selectivity=selectivity and selectivity_keys(selectivity),
+        words=" ".join(all_words(effective, transient, flow, selectivity, regimes)),
     )
 
 
-def _further(result: Transient | FlowState | None) -> tuple[str, ...]:
-    return () if result is None else result.words
+class _Told(Protocol):
+    @property
+    def words(self) -> tuple[str, ...]: ...
+
+
+def all_words(*results: _Told | None) -> tuple[str, ...]:
+    """Return the closing paragraph of everything that was worked out, a sentence each."""
+    return tuple(word for result in results if result is not None for word in result.words)
 
 
 def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> list[Block]:

@@ -8,17 +8,23 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.conditions import Treatment
+from thermo_pp.kinetics.product_ratio import Selectivity
+from thermo_pp.kinetics.regime_map import Regimes
 from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, Window
 from thermo_pp.names import Definition, EnergyUnit
 from thermo_pp.output.barrier import (
     activation_cells,
     all_orders,
+    all_words,
     cell_at,
     rates_of,
     steps_table,
     tunnelling_cells,
 )
+from thermo_pp.output.definitions import TITLES
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
+from thermo_pp.output.regimes import tables as regimes_tables
+from thermo_pp.output.selectivity import tables as selectivity_tables
 from thermo_pp.output.tables import (
     ENTROPY_UNIT,
     Block,
@@ -33,12 +39,6 @@ from thermo_pp.output.tables import (
 
 FloatArray = NDArray[np.float64]
 
-TITLES: dict[Definition, str] = {
-    "free": "Rate per free reactant",
-    "pool": "Rate per pool (reactant and intermediates)",
-    "relaxation": "Relaxation to equilibrium",
-    "cycle": "Turnover of the catalyst",
-}
 SAFETY = (
     "A computed rate is no basis for safety: for anything hazardous use measured data, local codes "
     "and qualified practice."
@@ -52,7 +52,12 @@ SHOWN_CONTROL = 0.001
 
 
 def tables(
-    effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit, levels: Sequence[str] = ()
+    effective: EffectiveRate,
+    treatment: Treatment,
+    unit: EnergyUnit,
+    levels: Sequence[str] = (),
+    regimes: Regimes | None = None,
+    selectivity: Selectivity | None = None,
 ) -> list[Block]:
     """Return the tables for people and the closing paragraph.
 
@@ -64,6 +69,8 @@ def tables(
         Of energies.
     levels : sequence of str
         The levels of theory in words.
+    regimes : Regimes or None
+    selectivity : Selectivity or None
     """
     rates = rates_of(effective)
     blocks: list[Block] = []
@@ -76,9 +83,12 @@ def tables(
     blocks += _approximations(rates, effective)
     for name, rate in rates.items():
         blocks.append(_control(rate, effective, f"Control of the {TITLES[name].lower()}", unit))
+    blocks += [] if selectivity is None else selectivity_tables(selectivity, unit)
+    blocks += [] if regimes is None else regimes_tables(regimes, unit)
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
-    return [*blocks, " ".join(notes), " ".join(effective.words), SAFETY]
+    told = all_words(effective, selectivity, regimes)
+    return [*blocks, " ".join(notes), " ".join(told), SAFETY]
 
 
 def _rate(

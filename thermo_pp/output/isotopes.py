@@ -10,16 +10,11 @@ from thermo_pp.errors import Finding
 from thermo_pp.isotopes import Isotopologues
 from thermo_pp.kinetics.isotope_effects import IsotopeEffects
 from thermo_pp.names import Definition, EnergyUnit
+from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
 from thermo_pp.output.tables import Block, Cell, Column, Table, defined, energy_column, in_unit
 
-_KEYS: dict[Definition, str] = {
-    "free": "per_free_reactant",
-    "pool": "per_pool",
-    "relaxation": "relaxation",
-    "cycle": "cycle",
-}
 _WORDS: dict[Definition, str] = {
     "free": "per free reactant (competition)",
     "pool": "per pool (parallel runs)",
@@ -45,7 +40,7 @@ def keys(
                 "species": [_species(species, one) for species in one.species],
                 "steps": [vars(step) for step in one.steps],
                 "rates": {
-                    _KEYS[rate.definition]: {
+                    KEYS[rate.definition]: {
                         key: value for key, value in vars(rate).items() if key != "definition"
                     }
                     for rate in one.rates

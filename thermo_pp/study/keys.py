@@ -18,6 +18,7 @@ from thermo_pp.names import (
     Phase,
     Reference,
     Rotor,
+    SelectivityKind,
     Thermal,
     Tunnelling,
 )
@@ -718,6 +719,40 @@ class FormationKeys(Keys, frozen=True, kw_only=True):
     ] = False
 
 
+class RegimesKeys(Keys, frozen=True, kw_only=True, rename={"from_": "from"}):
+    """The map of regimes over temperature and one held amount, for `barrier`."""
+
+    over: Annotated[str, Meta(description="the held species whose amount varies")]
+    from_: Annotated[
+        Quantity,
+        Meta(description="lower end; a number is in mol/L, of a species held at a pressure in Pa"),
+    ]
+    to: Annotated[Quantity, Meta(description="upper end")]
+    points: Annotated[
+        int, Meta(ge=2, description="points of the map along the amount, even in its logarithm")
+    ] = 25
+
+
+class SelectivityKeys(Keys, frozen=True, kw_only=True):
+    """How products compete, for `barrier`."""
+
+    products: Annotated[
+        list[str],
+        Meta(
+            min_length=2,
+            description="the products to compare, the first one over each other; unless given, all of "
+            "`[effective] product`",
+        ),
+    ]
+    kind: Annotated[
+        SelectivityKind,
+        Meta(
+            description="what tells them apart; mirror images (`enantiomeric`) are looked at for being "
+            "counted twice"
+        ),
+    ] = "products"
+
+
 def _one_of(*names: str) -> dict[str, Any]:
     """Return the schema of "exactly one of these keys"."""
     return {"oneOf": [{"required": [name]} for name in names]}
@@ -785,6 +820,13 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
     ] = []
     formation: Annotated[
         FormationKeys | UnsetType, Meta(description="enthalpies of formation, for `functions`")
+    ] = UNSET
+    regimes: Annotated[
+        RegimesKeys | UnsetType,
+        Meta(description="a map over temperature and one held amount, for `barrier`"),
+    ] = UNSET
+    selectivity: Annotated[
+        SelectivityKeys | UnsetType, Meta(description="which products to compare, for `barrier`")
     ] = UNSET
 
 

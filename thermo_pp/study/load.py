@@ -27,6 +27,7 @@ from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
+from thermo_pp.study.questions import make_regimes, make_selectivity
 
 if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
@@ -35,6 +36,8 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.courses import Transient
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
+    from thermo_pp.kinetics.product_ratio import Selectivity, SelectivityQuestion
+    from thermo_pp.kinetics.regime_map import RegimeQuestion, Regimes
     from thermo_pp.kinetics.results import EffectiveRate
     from thermo_pp.measured.results import Comparison
     from thermo_pp.measured.rows import Measurements
@@ -77,6 +80,10 @@ class Study:
         Of ``[formation]``.
     duplicates : {"count", "once"}
         How a conformer counts that is there twice.
+    regime_question : RegimeQuestion or None
+        Of ``[regimes]``.
+    selectivity_question : SelectivityQuestion or None
+        Of ``[selectivity]``.
     """
 
     title: str
@@ -93,6 +100,8 @@ class Study:
     energies: Mapping[str, ElectronicEnergy] = field(default_factory=dict)
     formation_question: FormationQuestion | None = None
     duplicates: Duplicates = "count"
+    regime_question: RegimeQuestion | None = None
+    selectivity_question: SelectivityQuestion | None = None
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -181,6 +190,8 @@ class Study:
             energies=members.energies,
             formation_question=formation,
             duplicates=keys.treatment.duplicates,
+            regime_question=make_regimes(keys, conditions, file),
+            selectivity_question=make_selectivity(keys, mechanism, file),
             _origin=origin,
         )
 
@@ -320,6 +331,22 @@ class Study:
                 )
             others[name] = rival
         return compare(self, rows, make_deviations(deviation, saddle_deviation), others)
+
+    def regimes(self, question: RegimeQuestion | None = None) -> Regimes | None:
+        """Return the map of regimes that `question`, else ``[regimes]``, asks for; None where neither does."""
+        from thermo_pp.kinetics.regimes import regimes
+
+        asked = question or self.regime_question
+        return None if asked is None else regimes(self, asked)
+
+    def selectivity(self, effective: EffectiveRate | None = None) -> Selectivity | None:
+        """Return how products compete, None where there is one and ``[selectivity]`` asks nothing.
+
+        `effective` is the study's effective rate where it is known already.
+        """
+        from thermo_pp.kinetics.selectivity import selectivity
+
+        return selectivity(self, effective or self.effective(), self.selectivity_question)
 
     def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
         """Return the isotope effects of every set in ``[isotopologues]``.
