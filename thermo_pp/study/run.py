@@ -16,6 +16,7 @@ from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.names import LOW_MODES, LowModes
 from thermo_pp.profile import Choice, Profile, profiles
 from thermo_pp.species import Thermochemistry, low_mode_spread_kj_mol
+from thermo_pp.study.key_lines import DeclaredNumber, declared_numbers
 from thermo_pp.units import BAR_PA
 
 if TYPE_CHECKING:
@@ -110,6 +111,8 @@ class Answers:
         The minima as a gas, fitted by NASA polynomials.
     inputs : tuple of InputFile
         The study file first.
+    declared : tuple of DeclaredNumber
+        Every number of the study file.
     left_out : mapping of str to str
         Part -> why it is not there.
     findings : tuple of Finding
@@ -131,6 +134,7 @@ class Answers:
     formation: Formations | None
     phase: GasPhase | None
     inputs: tuple[InputFile, ...]
+    declared: tuple[DeclaredNumber, ...]
     left_out: Mapping[str, str] = field(default_factory=dict)
     findings: tuple[Finding, ...] = ()
 
@@ -213,6 +217,7 @@ class _Run:
             formation=formation,
             phase=phase,
             inputs=_inputs(study),
+            declared=declared_numbers(study.path.read_text(encoding="utf-8-sig")),
             left_out=self.left_out,
             findings=each_once(self.said),
         )
