@@ -48,7 +48,11 @@ def qcschema_text(calculation: Calculation) -> str:
                 "molecular_multiplicity": calculation.multiplicity,
                 "fix_com": True,
                 "fix_orientation": True,
-                "provenance": {"creator": "thermo_pp", "version": __version__},
+                "provenance": {
+                    "creator": "thermo_pp",
+                    "version": __version__,
+                    "routine": "qcschema",
+                },
             },
             "driver": "energy" if hessian is None else "hessian",
             "model": model,
