@@ -48,7 +48,8 @@ def declared(folder: Path, text: str = TEXT) -> Path:
 @pytest.fixture(scope="module")
 def bundled(tmp_path_factory: pytest.TempPathFactory) -> Path:
     folder = tmp_path_factory.mktemp("bundled") / "report"
-    done = run(BUNDLED / "study.toml", "-o", folder, "-T", "280", "-T", "298.15")
+    measured = ("--measured", BUNDLED / "measured.csv", "--deviation", "4 kJ/mol")
+    done = run(BUNDLED / "study.toml", "-o", folder, "-T", "280", "-T", "298.15", *measured)
     assert done.exit_code == 0, done.output
     assert done.stdout == ""
     return folder
@@ -71,6 +72,7 @@ def test_the_manifest_lists_every_file_with_its_hash(bundled: Path) -> None:
     for one in manifest["inputs"]:
         assert one["sha256"] == hashlib.sha256((BUNDLED / one["path"]).read_bytes()).hexdigest()
     assert manifest["options"]["temperature_k"] == [280.0, 298.15]
+    assert manifest["options"]["measured"] == manifest["inputs"][1]["path"] == "measured.csv"
     assert manifest["libraries"]["numpy"]
 
 
@@ -146,10 +148,11 @@ def test_same_input_same_bytes(bundled: Path, tmp_path: Path) -> None:
     """Another hash seed, another folder, another place to ask from, other times of the files."""
     place = tmp_path / "two" / "deep"
     shutil.copytree(BUNDLED / "outputs", place / "outputs", copy_function=shutil.copy)
-    shutil.copy(BUNDLED / "study.toml", place / "study.toml")
+    for name in ("study.toml", "measured.csv"):
+        shutil.copy(BUNDLED / name, place / name)
     subprocess.run(
         [sys.executable, "-m", "thermo_pp", "report", "two/deep/study.toml", "-o", "report",
-         "-T", "280", "-T", "298.15", "--quiet"],
+         "-T", "280", "-T", "298.15", "--quiet", "--measured", "two/deep/measured.csv", "--deviation", "4 kJ/mol"],
         cwd=tmp_path, check=True, timeout=120,
         env={**os.environ, "PYTHONPATH": str(ROOT), "PYTHONHASHSEED": "4242"},
     )  # fmt: skip
@@ -241,6 +244,7 @@ def test_wrong_places(tmp_path: Path) -> None:
     assert done.exit_code == 1
     assert "cannot be written: No such file or directory" in done.output
     assert run(study).exit_code == 2
+    assert run(study, "-o", tmp_path / "r", "--deviation", "4 kJ/mol").exit_code == 2
 
 
 def test_odd_names_are_text_and_no_path(tmp_path: Path) -> None:

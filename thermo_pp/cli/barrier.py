@@ -14,6 +14,7 @@ from thermo_pp.cli.options import (
     TIMES,
     Showing,
     Treating,
+    number,
     output_options,
     temperature_options,
     treatment_options,

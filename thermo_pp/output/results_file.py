@@ -12,12 +12,15 @@ from thermo_pp.mechanism import Mechanism, Step
 from thermo_pp.output import (
     barrier,
     choices,
+    compare,
     conformers,
     courses,
     energies,
     functions,
     isotopes,
     profile,
+    regimes,
+    selectivity,
 )
 from thermo_pp.output.json_text import json_text, treatment_keys
 from thermo_pp.output.provenance import provenance
@@ -28,6 +31,8 @@ from thermo_pp.study.run import Answers, SpeciesAnswer
 FORMAT = "thermo-pp/results/1"
 _COMMON = ("format", "treatment", "standard_state", "findings", "energies")
 """Keys of a command's answer that a report says once for all parts, or elsewhere."""
+
+_ELSEWHERE = ("time_course", "flow", "selectivity", "regimes")
 
 
 def results_text(answers: Answers) -> str:
@@ -74,10 +79,17 @@ def results_keys(answers: Answers) -> dict[str, Any]:
             {
                 "low_modes": low_modes,
                 "standard_state": effective.standard_state,
-                **_own(barrier.keys(effective, treatment, ()), "time_course", "flow"),
+                **_own(barrier.keys(effective, treatment, ()), *_ELSEWHERE),
             }
             for low_modes, effective in answers.effective_by_treatment.items()
         ],
+        "selectivity": answers.selectivity
+        and {
+            **selectivity.keys(answers.selectivity),
+            "words": " ".join(answers.selectivity.words),
+        },
+        "regimes": answers.regimes
+        and {**regimes.keys(answers.regimes), "words": " ".join(answers.regimes.words)},
         "time_course": answers.transient
         and {
             **courses.time_course_keys(answers.transient),
@@ -89,6 +101,7 @@ def results_keys(answers: Answers) -> dict[str, Any]:
         if answers.isotopes
         else None,
         "choices": answers.choices and _own(choices.keys(answers.choices, treatment, ())),
+        "comparison": answers.comparison and _own(compare.keys(answers.comparison, treatment)),
         "conformers": answers.ensembles and _own(conformers.keys(answers.ensembles)),
         "formation": answers.formation and functions.formation_keys(answers.formation),
         "gas_phase": answers.phase and _phase(answers.phase),
