@@ -33,6 +33,7 @@ COMMANDS = (
     "barrier",
     "compare",
     "isotopes",
+    "report",
 )
 SURVEY_KEYS = (
     "path reader program program_version method basis formula charge multiplicity energy_hartree "

@@ -51,11 +51,12 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "survey", "species", "conformers", "energies", "profile", "courses", "regimes", "selectivity",
         "barrier", "barrier_tables", "isotopes",
         "functions",
-        "cantera_phase", "choices", "compare",
+        "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
+        "report",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
-        "isotopes", "compare",
+        "isotopes", "compare", "report",
     ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")

@@ -15,6 +15,7 @@ from thermo_pp.cli.draft import draft
 from thermo_pp.cli.functions import functions
 from thermo_pp.cli.isotopes import isotopes
 from thermo_pp.cli.profile import profile
+from thermo_pp.cli.report import report
 from thermo_pp.cli.species import species
 from thermo_pp.cli.survey import survey
 from thermo_pp.errors import ThermoError
@@ -58,5 +59,6 @@ for _command in (
     barrier,
     compare,
     isotopes,
+    report,
 ):
     main.add_command(_command)

@@ -52,16 +52,28 @@ def show_text(
 ) -> None:
     """Show a text that `text` makes, and findings, as `show` does."""
     say(showing, findings, every=always)
-    ended = showing.strict and any(finding.severity == "error" for finding in findings)
-    if always or not ended:
+    if always:
         _write(showing, text())
-    if ended:
-        errors = sum(finding.severity == "error" for finding in findings)
+    end_if_strict(showing, findings)
+    if not always:
+        _write(showing, text())
+
+
+def end_if_strict(showing: Showing, findings: Sequence[Finding]) -> None:
+    """End the run under --strict where there is a finding of severity error."""
+    errors = sum(finding.severity == "error" for finding in findings)
+    if showing.strict and errors:
         ending = "finding of severity error" if errors == 1 else "findings of severity error"
         raise click.ClickException(f"{errors} {ending} (--strict)")
 
 
-def say(showing: Showing, findings: Sequence[Finding], *, every: bool = False) -> None:
+def say(
+    showing: Showing,
+    findings: Sequence[Finding],
+    *,
+    every: bool = False,
+    all_in: str = "--format json",
+) -> None:
     """Write findings to standard error, unless --quiet.
 
     Parameters
@@ -70,6 +82,8 @@ def say(showing: Showing, findings: Sequence[Finding], *, every: bool = False) -
     findings : sequence of Finding
     every : bool
         Also those below the severity error that are like `ALIKE` others before.
+    all_in : str
+        What has all of them.
     """
     from thermo_pp.output.tables import printable
 
@@ -86,9 +100,7 @@ def say(showing: Showing, findings: Sequence[Finding], *, every: bool = False) -
         click.echo(f"{printable(text)}\n  mend: {printable(finding.mend)}", err=True)
     for (severity, code), count in alike.items():
         if count > ALIKE and severity != "error" and not every:
-            text = (
-                f"{severity}: {count - ALIKE} more like this; --format json has them all [{code}]"
-            )
+            text = f"{severity}: {count - ALIKE} more like this; {all_in} has them all [{code}]"
             click.echo(text, err=True)
 
 

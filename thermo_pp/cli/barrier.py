@@ -11,34 +11,19 @@ from thermo_pp.cli.answers import show
 from thermo_pp.cli.options import (
     LEVEL,
     STUDY,
+    TIMES,
     Showing,
     Treating,
     number,
     output_options,
     temperature_options,
     treatment_options,
-    usage,
 )
 
 if TYPE_CHECKING:
     from thermo_pp.kinetics.regime_map import RegimeQuestion
     from thermo_pp.output.tables import Block
     from thermo_pp.study.load import Study
-
-
-def _times(
-    ctx: click.Context, parameter: click.Parameter, value: tuple[str, ...]
-) -> tuple[float, ...] | None:
-    """Return the times in s, none where the whole course is asked for; None without the option."""
-    if not value:
-        return None
-    return tuple(_seconds(text) for text in value if text)
-
-
-def _seconds(text: str) -> float:
-    from thermo_pp.units import quantity
-
-    return usage(lambda: quantity(number(text), "s", where="--time"))
 
 
 def _regimes(study: Study, over: tuple[str, str, str] | None, points: int) -> RegimeQuestion | None:
@@ -54,16 +39,7 @@ def _regimes(study: Study, over: tuple[str, str, str] | None, points: int) -> Re
 
 @click.command(short_help="The effective rate and barrier, and what controls them.")
 @click.argument("study", type=STUDY)
-@click.option(
-    "--time",
-    "times",
-    multiple=True,
-    is_flag=False,
-    flag_value="",
-    metavar="[T]",
-    callback=_times,
-    help='Follow the study in time from [conditions] initial; at a time: 10 (s), "2 h". Repeatable.',
-)
+@TIMES
 @click.option(
     "--regimes",
     "over",

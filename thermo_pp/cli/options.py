@@ -31,6 +31,44 @@ if TYPE_CHECKING:
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 OUTPUTS = click.Path(exists=True, path_type=Path)
+
+
+def _times(
+    ctx: click.Context, parameter: click.Parameter, value: tuple[str, ...]
+) -> tuple[float, ...] | None:
+    """Return the times in s, none where the whole course is asked for; None without the option."""
+    if not value:
+        return None
+    return tuple(_seconds(text) for text in value if text)
+
+
+def _seconds(text: str) -> float:
+    from thermo_pp.units import quantity
+
+    return usage(lambda: quantity(number(text), "s", where="--time"))
+
+
+DEVIATION = click.option(
+    "--deviation",
+    metavar="ENERGY",
+    help='Standard deviation of the electronic energies: "4 kJ/mol". Of saddle points too, unless '
+    "they have their own.",
+)
+SADDLE_DEVIATION = click.option(
+    "--saddle-deviation",
+    metavar="ENERGY",
+    help="Standard deviation of the electronic energies of saddle points.",
+)
+TIMES = click.option(
+    "--time",
+    "times",
+    multiple=True,
+    is_flag=False,
+    flag_value="",
+    metavar="[T]",
+    callback=_times,
+    help='Follow the study in time from [conditions] initial; at a time: 10 (s), "2 h". Repeatable.',
+)
 LEVEL = click.option(
     "--level", metavar="NAME", help="A named level of theory of the study, in place of its own."
 )

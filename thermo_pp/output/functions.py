@@ -92,33 +92,39 @@ def keys(
         "functions",
         findings,
         treatment,
-        species=[
-            {
-                "name": curve.name,
-                "kind": curve.kind,
-                "temperature_k": curve.temperature_k,
-                "heat_capacity_j_mol_k": curve.heat_capacity_j_mol_k,
-                "entropy_j_mol_k": curve.entropy_j_mol_k,
-                "gibbs_function_j_mol_k": curve.gibbs_function_j_mol_k,
-                "enthalpy_from_298_kj_mol": curve.from_room_kj_mol,
-                "enthalpy_from_0_kj_mol": curve.from_zero_kj_mol,
-                "gibbs_kj_mol": curve.gibbs_kj_mol,
-                "enthalpy_298_kj_mol": curve.room_enthalpy_kj_mol,
-                "enthalpy_0_kj_mol": curve.zero_enthalpy_kj_mol,
-                "fit": _fit_keys(by_name[curve.name]) if curve.name in by_name else None,
-            }
-            for curve in curves
-        ],
-        formation=None
-        if formation is None
-        else {
-            "references": {name: asdict(known) for name, known in formation.references.items()},
-            "derived": [asdict(row) for row in formation.rows],
-        },
+        species=[curve_keys(curve, by_name.get(curve.name)) for curve in curves],
+        formation=None if formation is None else formation_keys(formation),
     )
 
 
-def _fit_keys(fit: Fit) -> dict[str, Any]:
+def curve_keys(curve: Functions, fit: Fit | None) -> dict[str, Any]:
+    """Return the functions of one species, and its fit if there is one."""
+    return {
+        "name": curve.name,
+        "kind": curve.kind,
+        "temperature_k": curve.temperature_k,
+        "heat_capacity_j_mol_k": curve.heat_capacity_j_mol_k,
+        "entropy_j_mol_k": curve.entropy_j_mol_k,
+        "gibbs_function_j_mol_k": curve.gibbs_function_j_mol_k,
+        "enthalpy_from_298_kj_mol": curve.from_room_kj_mol,
+        "enthalpy_from_0_kj_mol": curve.from_zero_kj_mol,
+        "gibbs_kj_mol": curve.gibbs_kj_mol,
+        "enthalpy_298_kj_mol": curve.room_enthalpy_kj_mol,
+        "enthalpy_0_kj_mol": curve.zero_enthalpy_kj_mol,
+        "fit": None if fit is None else fit_keys(fit),
+    }
+
+
+def formation_keys(formation: Formations) -> dict[str, Any]:
+    """Return enthalpies of formation and what they rest on."""
+    return {
+        "references": {name: asdict(known) for name, known in formation.references.items()},
+        "derived": [asdict(row) for row in formation.rows],
+    }
+
+
+def fit_keys(fit: Fit) -> dict[str, Any]:
+    """Return the coefficients of a fit and its largest residuals."""
     polynomial = fit.polynomial
     return {
         "form": polynomial.form,

@@ -1,0 +1,51 @@
+"""The report: every file of the folder, made from the answers in a fixed order."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from pathlib import Path
+from typing import Any
+
+from thermo_pp.output.exports import write_exports
+from thermo_pp.output.files import write_file
+from thermo_pp.output.manifest import NAME, manifest_text
+from thermo_pp.output.results_file import results_text
+from thermo_pp.study.run import Answers
+
+Maker = Callable[[Answers, Path], None]
+
+
+def _write_results(answers: Answers, folder: Path) -> None:
+    write_file(folder / "results.json", results_text(answers))
+
+
+PARTS: tuple[tuple[str, str, Maker], ...] = (
+    ("results", "", _write_results),
+    ("exports", "exports", write_exports),
+)
+"""What a report consists of: its name, its folder in the report ("": the report's own), its maker."""
+
+
+def write_report(
+    answers: Answers,
+    folder: Path,
+    options: Mapping[str, Any],
+    progress: Callable[[int, int, str], None] | None = None,
+) -> None:
+    """Write all parts into an empty folder, the manifest last.
+
+    Parameters
+    ----------
+    answers : Answers
+    folder : Path
+    options : mapping
+        See `manifest.manifest_text`.
+    progress : callable or None
+        Called before each part and once at the end.
+    """
+    told = progress or (lambda done, of, what: None)
+    for number, (name, place, make) in enumerate(PARTS):
+        told(number, len(PARTS), name)
+        make(answers, folder / place if place else folder)
+    write_file(folder / NAME, manifest_text(answers, folder, options))
+    told(len(PARTS), len(PARTS), "")
