@@ -149,7 +149,7 @@ class Study:
         if not keys.steps and given(keys.formation) is None:
             raise missing("steps", file)
         own = make_treatment(keys.treatment, file)
-        steps = make_steps(keys.steps, keys.treatment, file)
+        steps = make_steps(keys.steps, keys.treatment, file, keys.outputs)
         saddles = {step.through for step in steps if step.through is not None}
         formation = given(keys.formation)
         if formation is not None:

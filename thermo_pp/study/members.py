@@ -26,6 +26,7 @@ from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structur
 from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.ensembles import Making, Reading, is_read, make_ensemble
+from thermo_pp.study.files import inside
 from thermo_pp.study.keys import (
     ConformerKeys,
     EnergyKeys,
@@ -440,7 +441,7 @@ def _settled(
         torsions=make_torsions(
             given(member.torsions) or [],
             calc,
-            lambda output, at: open_source(_inside(maker, output, at)),
+            lambda output, at: open_source(inside(maker.outputs, maker.folder, output, at)),
             f"{where} torsions".strip(),
         ),
         where=where,
@@ -524,7 +525,7 @@ def _imaginary_mode(member: StructureKeys, kind: Kind, where: str) -> float | No
 
 def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
     """Read the output `name` once."""
-    path = _inside(maker, name, where)
+    path = inside(maker.outputs, maker.folder, name, where)
     if str(path) not in maker.read:
         maker.read[str(path)] = read_source(open_source(path))
     maker.opened[str(path)] = maker.read[str(path)]
@@ -533,32 +534,9 @@ def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
 
 def _calculations(maker: _Maker, name: str, where: str) -> tuple[Calculation, ...]:
     """Read every structure of the file `name`."""
-    found = read_all(open_source(_inside(maker, name, where)))
+    found = read_all(open_source(inside(maker.outputs, maker.folder, name, where)))
     maker.read |= {calc.path: calc for calc in found}
     return found
-
-
-def _inside(maker: _Maker, name: str, where: str) -> Path:
-    """Return the path of an output; StudyError where it is not there or outside the folders."""
-    path = maker.outputs / name
-    allowed = (_plain(maker.outputs), _plain(maker.folder))
-    if not any(_plain(path).is_relative_to(folder) for folder in allowed):
-        raise StudyError(
-            f"{name!r} is outside the folder {str(maker.outputs)!r}",
-            where=where,
-            mend="name a file of that folder, or let `outputs` name the folder it is in",
-        )
-    if not os.path.isfile(path):  # noqa: PTH113 (a name too long is no file, not an OSError)
-        there = sorted(p.name for p in maker.outputs.iterdir() if p.is_file())
-        raise StudyError(
-            f"there is no file {str(path)!r}", where=where, mend=suggestion(name, there, "files")
-        )
-    return path
-
-
-def _plain(path: Path) -> Path:
-    """Return the absolute path without ``..``; links are not followed."""
-    return Path(os.path.normpath(path.absolute()))
 
 
 def _same_file(frequencies: Mapping[str, Calculation], file: str) -> list[Finding]:
