@@ -167,6 +167,7 @@ through = "T"
 barrier = { scan = "scan.csv" }
 deviation = "5 kJ/mol"
 permittivity = [["280 K", 84.0], ["360 K", 58.0]]
+reaction = { anchor = "W", free_energy = 1, equilibrium_constant = "1 mol/L", pKa = 3, potential = "1 V", standard_state = "1 bar", temperature = 300, enthalpy = 1 }
 falloff.low = { A = "1 L/mol/s", n = 0.5, E = "-2 kJ/mol" }
 falloff.high = { A = "1 s^-1", n = 0.5, E = "-2 kJ/mol" }
 falloff.form = "troe"

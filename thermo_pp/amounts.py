@@ -112,7 +112,9 @@ def check_total(
     """
     if total is None:
         return
-    stated = {name: one for name, one in amounts.items() if one.value is not None}
+    stated = {
+        name: one for name, one in amounts.items() if one.form in ("concentration", "pressure")
+    }
     for t in temperature_k:
         whole = float(total.concentration_mol_l(t))
         share = sum(float(one.concentration_mol_l(t)) for one in stated.values()) / whole

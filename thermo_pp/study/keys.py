@@ -641,6 +641,46 @@ class FalloffKeys(Keys, frozen=True, kw_only=True):
     ]
 
 
+class ReactionKeys(Keys, frozen=True, kw_only=True):
+    """A measured free energy of one step, in place of the computed one."""
+
+    anchor: Annotated[
+        str, Meta(description="the species of the step that is moved until the value is met")
+    ]
+    free_energy: Annotated[
+        Quantity | UnsetType,
+        Meta(description="free energy of the step; one of these four / kJ/mol"),
+    ] = UNSET
+    equilibrium_constant: Annotated[
+        str | float | UnsetType,
+        Meta(description='"1.7e-5 mol/L", "40 L/mol"; a number where both sides have as many'),
+    ] = UNSET
+    pKa: Annotated[float | UnsetType, Meta(description="of a step HA = A + H+, in solution")] = (
+        UNSET
+    )
+    potential: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="redox potential of a step with electrons on its left side, in solution / V"
+        ),
+    ] = UNSET
+    standard_state: Annotated[
+        str | UnsetType,
+        Meta(
+            description='of `free_energy`, "1 bar" or "1 mol/L"; required where molecules are made'
+        ),
+    ] = UNSET
+    temperature: Annotated[
+        Quantity | UnsetType, Meta(description="where the value holds, 298.15 K unless given / K")
+    ] = UNSET
+    enthalpy: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="measured enthalpy of the step; without it the computed entropy stays / kJ/mol"
+        ),
+    ] = UNSET
+
+
 class StepKeys(Keys, frozen=True, kw_only=True):
     """One reversible step: exactly one of `through`, `barrier`, `rate`, `arrhenius`, `falloff`."""
 
@@ -692,6 +732,13 @@ class StepKeys(Keys, frozen=True, kw_only=True):
         Meta(
             description="relative permittivity of the solvent, for two ions that meet: 78.4, or "
             "pairs of temperature and permittivity"
+        ),
+    ] = UNSET
+    reaction: Annotated[
+        ReactionKeys | UnsetType,
+        Meta(
+            description="measured free energy of the step, `{ equilibrium_constant = 40, "
+            'anchor = "C" }`'
         ),
     ] = UNSET
     tunnelling: Annotated[

@@ -22,7 +22,14 @@ from thermo_pp.nearest import suggestion
 from thermo_pp.readers import read_all, read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
-from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structure, solution_finding
+from thermo_pp.species import (
+    Declared,
+    ElectronicEnergy,
+    SpeciesModel,
+    Structure,
+    parse_composition,
+    solution_finding,
+)
 from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.ensembles import Making, Reading, is_read, make_ensemble
@@ -220,7 +227,9 @@ def _check_member(
     if have == ["frequencies"] or given(member.relative_to) is not None:
         return
     computed = _computed(species)
-    if computed:
+    # nuclei and electrons apart are the zero of every computed energy, so these two stand on it
+    alone = parse_composition(str(member.composition), where=where) in (({"H": 1}, 1), ({}, -1))
+    if computed and not alone:
         raise StudyError(
             f"{name} is declared beside species that are read ({computed[0]}): "
             "their enthalpies do not have one zero",
@@ -485,6 +494,13 @@ def _declared(
                 mend="let relative_to lead to species that are read, or that have no relative_to",
             )
         reference.append((_make(maker, other, (*on_the_way, name)), count))
+    atoms, _ = parse_composition(str(member.composition), where=where)
+    if not atoms and (standard_state.form, standard_state.value) != ("concentration", 1.0):
+        raise StudyError(
+            f"{name} are electrons, whose activity counts against 1 mol/L",
+            where=f"{where} standard_state",
+            mend='write standard_state = "1 mol/L"',
+        )
     temperature = given(member.temperature)
     return Declared.make(
         str(member.composition),
