@@ -65,6 +65,7 @@ class Case:
             kappa_energy_j_mol=np.zeros((1, n)),
             log_limit=np.zeros((1, n)),
             limit_energy_j_mol=np.zeros((1, n)),
+            log_transmission=np.zeros((1, n)),
             collider_orders={},
             findings=(),
         )

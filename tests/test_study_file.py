@@ -167,7 +167,17 @@ through = "T"
 barrier = { scan = "scan.csv" }
 deviation = "5 kJ/mol"
 permittivity = [["280 K", 84.0], ["360 K", 58.0]]
-reaction = { anchor = "W", free_energy = 1, equilibrium_constant = "1 mol/L", pKa = 3, potential = "1 V", standard_state = "1 bar", temperature = 300, enthalpy = 1 }
+kind = "crossing"
+crossing.transmission = 0.5
+crossing.landau_zener = { spin_orbit = 50, gradient_difference = "1 N", reduced_mass = "9 u" }
+reaction.anchor = "W"
+reaction.free_energy = 1
+reaction.equilibrium_constant = "1 mol/L"
+reaction.pKa = 3
+reaction.potential = "1 V"
+reaction.standard_state = "1 bar"
+reaction.temperature = 300
+reaction.enthalpy = 1
 falloff.low = { A = "1 L/mol/s", n = 0.5, E = "-2 kJ/mol" }
 falloff.high = { A = "1 s^-1", n = 0.5, E = "-2 kJ/mol" }
 falloff.form = "troe"

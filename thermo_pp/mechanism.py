@@ -10,7 +10,7 @@ from types import MappingProxyType
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.names import Tunnelling
 from thermo_pp.nearest import nearest, suggestion
-from thermo_pp.rate_laws import Arrhenius, Falloff, Height
+from thermo_pp.rate_laws import Arrhenius, Crossing, Falloff, Height
 
 _TERM = re.compile(r"(?:([0-9]{1,3})\s+)?(\S+)")
 
@@ -36,6 +36,8 @@ class Step:
         Of a saddle that is not located.
     falloff : Falloff or None
         Declared forward rate constant that depends on how much there is of a collider.
+    crossing : Crossing or None
+        The step changes the spin state at the point that it goes through.
     viscosity : tuple of (temperature / K, Pa s) pairs or None
         One pair: constant.
     permittivity : tuple of (temperature / K, relative permittivity) pairs or None
@@ -53,6 +55,7 @@ class Step:
     rate: Arrhenius | None = None
     height: Height | None = None
     falloff: Falloff | None = None
+    crossing: Crossing | None = None
     viscosity: tuple[tuple[float, float], ...] | None = None
     permittivity: tuple[tuple[float, float], ...] | None = None
     tunnelling: Tunnelling = "none"

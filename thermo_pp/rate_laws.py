@@ -61,3 +61,21 @@ class Falloff:
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "collider", MappingProxyType(dict(self.collider)))
+
+
+@dataclass(frozen=True)
+class Crossing:
+    """How likely the spin state changes at a crossing point.
+
+    Attributes
+    ----------
+    transmission : float or None
+        Declared probability, the same at every temperature; None: by Landau and Zener.
+    coupling_j, gradient_n, mass_kg : float
+        Spin-orbit coupling, difference of the gradients and reduced mass along it, SI.
+    """
+
+    transmission: float | None
+    coupling_j: float = 0.0
+    gradient_n: float = 0.0
+    mass_kg: float = 0.0

@@ -234,6 +234,8 @@ class StepRate:
     limited : shape (t,), bool
         Whether the collision or diffusion limit has more than half a share.
     tunnelling : {"none", "wigner", "eckart"}
+    log_transmission : shape (t,)
+        ln of the probability to change the spin state at a crossing; 0 elsewhere.
     log_tunnelling : shape (t,)
         ln of the factor of the saddle point's rate constant, before a limit is joined.
     tunnelling_energy_kj_mol : shape (t,)
@@ -248,6 +250,7 @@ class StepRate:
     reversibility: FloatArray
     limited: NDArray[np.bool_]
     tunnelling: Tunnelling
+    log_transmission: FloatArray
     log_tunnelling: FloatArray
     tunnelling_energy_kj_mol: FloatArray
 

@@ -16,11 +16,13 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import MOLAR, Conditions, Held, Treatment
 from thermo_pp.errors import Finding
+from thermo_pp.formulas.crossing import landau_zener
 from thermo_pp.formulas.rates import log_frequency_factor
 from thermo_pp.kinetics.given import given_rate, height_saddle
 from thermo_pp.kinetics.limits import Side, join, limit_of
 from thermo_pp.kinetics.tunnelling import tunnelling
 from thermo_pp.mechanism import Mechanism
+from thermo_pp.rate_laws import Crossing
 from thermo_pp.species import SaddleMember, SpeciesModel
 from thermo_pp.units import BAR_PA, FARADAY_C_MOL, GAS_J_MOL_K
 
@@ -105,6 +107,9 @@ class ElementaryRates:
     log_limit, limit_energy_j_mol : shape (b, n)
         What a limit of encounter adds to ln k of a step that has a saddle as well, and to R T^2
         times its temperature derivative, both in the effective saddle already; 0 elsewhere.
+    log_transmission : shape (b, n)
+        ln of the probability to change the spin state, in the effective saddle already; 0 where
+        nothing crosses.
     collider_orders : mapping of str to shape (b, n)
         d ln k/d ln c of the colliders of fall-off steps.
     findings : tuple of Finding
@@ -120,6 +125,7 @@ class ElementaryRates:
     kappa_energy_j_mol: FloatArray
     log_limit: FloatArray
     limit_energy_j_mol: FloatArray
+    log_transmission: FloatArray
     collider_orders: Mapping[str, FloatArray]
     findings: tuple[Finding, ...]
 
@@ -167,6 +173,7 @@ def elementary_rates(
     forward, reverse = np.empty((b, n)), np.empty((b, n))
     limited = np.zeros((b, n), np.bool_)
     log_kappa, kappa_energy = np.zeros((b, n)), np.zeros((b, n))
+    log_transmission = np.zeros((b, n))
     log_limit, limit_energy = np.zeros((b, n)), np.zeros((b, n))
     orders: dict[str, FloatArray] = {}
     findings: list[Finding] = []
@@ -194,6 +201,9 @@ def elementary_rates(
                 column = energies.index(step.through)
                 saddle = energies.reduced[:, column]
                 saddle_slope = energies.slope_j_mol[:, column]
+            if step.crossing is not None:
+                log_transmission[:, k], lift = _crossing(step.crossing, t)
+                saddle, saddle_slope = saddle - log_transmission[:, k], saddle_slope + lift
             if step.tunnelling != "none":
                 log_kappa[:, k], kappa_energy[:, k] = tunnelling(
                     step,
@@ -222,9 +232,18 @@ def elementary_rates(
         kappa_energy,
         log_limit,
         limit_energy,
+        log_transmission,
         orders,
         tuple(findings),
     )
+
+
+def _crossing(crossing: Crossing, t: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return ln of the probability to cross, and R T^2 times its temperature derivative."""
+    if crossing.transmission is not None:
+        return np.full(t.shape, np.log(crossing.transmission)), np.zeros(t.shape)
+    log, slope = landau_zener(t, crossing.coupling_j, crossing.gradient_n, crossing.mass_kg)
+    return log, GAS_J_MOL_K * t * slope
 
 
 def _side(counts: Mapping[str, int], energies: Energetics) -> Side:

@@ -641,6 +641,28 @@ class FalloffKeys(Keys, frozen=True, kw_only=True):
     ]
 
 
+class LandauZenerKeys(Keys, frozen=True, kw_only=True):
+    """What the probability to change the spin state follows from."""
+
+    spin_orbit: Annotated[Quantity, Meta(description="spin-orbit coupling at the crossing / cm^-1")]
+    gradient_difference: Annotated[
+        str, Meta(description='size of the difference of the gradients, "0.05 hartree/bohr"')
+    ]
+    reduced_mass: Annotated[str, Meta(description='reduced mass along it, "12 u"')]
+
+
+class CrossingKeys(Keys, frozen=True, kw_only=True):
+    """How likely a step changes the spin state at its crossing point."""
+
+    transmission: Annotated[
+        Positive | UnsetType, Meta(description="declared probability, at most 1; this or the next")
+    ] = UNSET
+    landau_zener: Annotated[
+        LandauZenerKeys | UnsetType,
+        Meta(description="probability by Landau and Zener, averaged over thermal energies"),
+    ] = UNSET
+
+
 class ReactionKeys(Keys, frozen=True, kw_only=True):
     """A measured free energy of one step, in place of the computed one."""
 
@@ -732,6 +754,19 @@ class StepKeys(Keys, frozen=True, kw_only=True):
         Meta(
             description="relative permittivity of the solvent, for two ions that meet: 78.4, or "
             "pairs of temperature and permittivity"
+        ),
+    ] = UNSET
+    kind: Annotated[
+        Literal["crossing"] | UnsetType,
+        Meta(
+            description='"crossing": the step changes the spin state at a minimum-energy crossing '
+            "point, which `through` names; needs `crossing`"
+        ),
+    ] = UNSET
+    crossing: Annotated[
+        CrossingKeys | UnsetType,
+        Meta(
+            description='of a step of kind "crossing": `{ transmission = 0.01 }` or `landau_zener`'
         ),
     ] = UNSET
     reaction: Annotated[

@@ -26,7 +26,13 @@ from thermo_pp.study.keys import (
     StudyKeys,
     TreatmentKeys,
 )
-from thermo_pp.study.rate_laws import make_arrhenius, make_falloff, make_height, rate_unit
+from thermo_pp.study.rate_laws import (
+    make_arrhenius,
+    make_crossing,
+    make_falloff,
+    make_height,
+    rate_unit,
+)
 from thermo_pp.units import quantity
 
 
@@ -278,6 +284,7 @@ def _step(keys: StepKeys, number: int, treatment: TreatmentKeys, file: str, outp
         if isinstance(keys.falloff, UnsetType)
         else make_falloff(keys.falloff, molecules, where),
         viscosity=_viscosity(keys.viscosity, place(file, "steps", number, "viscosity")),
+        crossing=make_crossing(keys, where),
         permittivity=_permittivity(keys.permittivity, f"{where} permittivity"),
         tunnelling=_tunnelling(keys, treatment.tunnelling, where),
         where=where,
@@ -291,7 +298,7 @@ def _tunnelling(keys: StepKeys, usual: Tunnelling, where: str) -> Tunnelling:
     """Return the step's own word on tunnelling, else that of ``[treatment]``; a saddle point tunnels."""
     has_saddle = not isinstance(keys.through, UnsetType)
     if isinstance(keys.tunnelling, UnsetType):
-        return usual if has_saddle else "none"
+        return usual if has_saddle and isinstance(keys.kind, UnsetType) else "none"
     if keys.tunnelling != "none" and not has_saddle:
         raise StudyError(
             f"the step {keys.equation!r} has no saddle point, so nothing tunnels",
