@@ -10,7 +10,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.conditions import Conditions, Treatment
+from thermo_pp.conditions import Conditions, Held, Treatment
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.closed import decays, relaxation
 from thermo_pp.kinetics.cycle import Turn, alike, per_cycle, turns
@@ -61,7 +61,8 @@ class Model:
 
     def of(self, energies: Energetics) -> Rates:
         """Return the rates that free energies lead to."""
-        return Rates(self, energies, elementary_rates(self.mechanism, energies, self.treatment))
+        steps = elementary_rates(self.mechanism, energies, self.treatment, self.conditions)
+        return Rates(self, energies, steps)
 
 
 @dataclass(frozen=True, eq=False)
@@ -180,7 +181,7 @@ class Rates:
         reactant_slope = np.zeros(len(t))
         if name in held and held[name].value is not None:
             reactant = log_concentration(held[name], t)
-            reactant_slope = _slope(held[name].form, t)
+            reactant_slope = self._holding(held[name], t)
         found: list[Amount | None] = []
         for number in self.products:
             end = self.network.states[number]
@@ -191,9 +192,14 @@ class Rates:
             slope = -reactant_slope
             for member, count in end:
                 log = log + count * log_concentration(held[member], t)
-                slope = slope + count * _slope(held[member].form, t)
+                slope = slope + count * self._holding(held[member], t)
             found.append(Amount(log, slope))
         return tuple(found)
+
+    def _holding(self, held: Held, temperature_k: FloatArray) -> FloatArray:
+        """Return R T^2 d ln c/dT of a held species."""
+        seen = self.model.conditions.seen
+        return GAS_J_MOL_K * temperature_k * held.log_slope(temperature_k, seen)
 
     @cached_property
     def free(self) -> LogRate:
@@ -259,8 +265,3 @@ class Rates:
         reduced[:, column] += shift
         slope[:, column] += by_j_mol
         return replace(self, energies=replace(self.energies, reduced=reduced, slope_j_mol=slope))
-
-
-def _slope(form: str, temperature_k: FloatArray) -> FloatArray:
-    """Return R T^2 d ln c/dT of a held species."""
-    return -GAS_J_MOL_K * temperature_k if form == "pressure" else np.zeros(len(temperature_k))

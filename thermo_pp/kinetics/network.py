@@ -302,7 +302,7 @@ def _with_numbers(
         if name in stated:
             at = conditions.held[name]
             potential[:, column] += log_concentration(at, t)
-            slope[:, column] += rt if at.form == "pressure" else 0.0
+            slope[:, column] -= rt * at.log_slope(t, conditions.seen)
     m = len(edges)
     counts = np.zeros((2, m, len(species)))
     exchange, product_change = np.zeros((m, len(stated))), np.zeros(m)

@@ -28,6 +28,7 @@ from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
 from thermo_pp.study.questions import make_regimes, make_selectivity
+from thermo_pp.study.reactions import anchor_species
 
 if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
@@ -149,7 +150,7 @@ class Study:
         if not keys.steps and given(keys.formation) is None:
             raise missing("steps", file)
         own = make_treatment(keys.treatment, file)
-        steps = make_steps(keys.steps, keys.treatment, file)
+        steps = make_steps(keys.steps, keys.treatment, file, keys.outputs)
         saddles = {step.through for step in steps if step.through is not None}
         formation = given(keys.formation)
         if formation is not None:
@@ -164,8 +165,9 @@ class Study:
         else:
             known_level(keys, level, file)
         members = make_species(keys, own, saddles, file, level=level, read=origin.read)
+        species, measured = anchor_species(keys.steps, steps, members.species, own.phase, file)
         used = {name for step in steps for name in step.species} | saddles
-        in_steps = {name: model for name, model in members.species.items() if name in used}
+        in_steps = {name: model for name, model in species.items() if name in used}
         mechanism = Mechanism(
             steps,
             {name: model.composition for name, model in in_steps.items()},
@@ -173,7 +175,8 @@ class Study:
             where=file,
             **question,
         )
-        findings = [*members.findings, *check_mechanism(mechanism)]
+        check_electrons(conditions, mechanism)
+        findings = [*members.findings, *measured, *check_mechanism(mechanism)]
         findings += _check_network(mechanism, conditions)
         return cls(
             title=keys.title if isinstance(keys.title, str) else Path(file).stem,
@@ -181,10 +184,10 @@ class Study:
             treatment=own,
             conditions=conditions,
             mechanism=mechanism,
-            species=members.species,
+            species=species,
             levels=members.levels,
             findings=tuple(dict.fromkeys(findings)),
-            labels=make_labels(keys.isotopologues, members.species, file),
+            labels=make_labels(keys.isotopologues, species, file),
             level=level,
             level_names=tuple(keys.levels),
             energies=members.energies,
@@ -438,6 +441,18 @@ def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
     """Return a table of the file, an empty one where it is missing or, for the check to see, none."""
     table = data.get(name, {})
     return table if isinstance(table, Mapping) else {}
+
+
+def check_electrons(conditions: Conditions, mechanism: Mechanism) -> None:
+    """Check that nothing but electrons is held at a potential."""
+    for name, held in conditions.held.items():
+        is_electron = not mechanism.composition[name] and mechanism.charge.get(name) == -1
+        if held.form == "potential" and not is_electron:
+            raise StudyError(
+                f"{held.text!r} is a potential, and {name} is no electron",
+                where=f"{mechanism.where} [conditions] held.{name}",
+                mend='write a concentration; electrons have composition = "e-"',
+            )
 
 
 def _check_network(mechanism: Mechanism, conditions: Conditions) -> tuple[Finding, ...]:

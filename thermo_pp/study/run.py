@@ -363,7 +363,7 @@ class _Run:
         if not any(effective.rates.values()):
             return None
         for name, held in self.study.conditions.held.items():
-            if isinstance(held.value, float) and held.form != "equilibrium":
+            if isinstance(held.value, float) and held.form in ("concentration", "pressure"):
                 low, high = held.value / REGIME_FACTOR, held.value * REGIME_FACTOR
                 return RegimeQuestion(name, held.form, low, high, REGIME_POINTS)
         return None
