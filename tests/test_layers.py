@@ -51,7 +51,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "survey", "species", "conformers", "energies", "profile", "courses", "regimes", "selectivity",
         "barrier", "barrier_tables", "isotopes",
         "functions",
-        "cantera_phase", "choices", "compare",
+        "cantera_phase", "choices", "compare", "figures",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
