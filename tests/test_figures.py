@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import hashlib
+import os
 import re
 import subprocess
 import sys
 import zlib
+from dataclasses import replace
 from html import unescape
 from itertools import combinations
 from pathlib import Path
@@ -401,6 +404,51 @@ def test_a_rate_that_runs_backwards_is_said_to_be_left_out() -> None:
         figures.rates.draw(ax, forwards, "cycle")
 
 
+def test_temperatures_out_of_order_give_the_same_figure() -> None:
+    drawn = []
+    for order in (np.arange(5), np.array([3, 0, 4, 2, 1])):
+        rates = rates_over(5, approximations=0)
+        rate = rates.rates["pool"]
+        assert rate is not None
+        rate = replace(
+            rate,
+            rate_constant=rate.rate_constant[order],
+            populations={"A": np.arange(5.0)[order] / 9},
+        )
+        mixed = replace(rates, temperature_k=rates.temperature_k[order], rates={"pool": rate})
+        figure, axes = figures.new_figure(rows=2)
+        figures.rates.draw(axes[0], mixed)
+        figures.populations.of_rate(axes[1], mixed)
+        drawn.append(figures.content(figure, "svg"))
+    assert drawn[0] == drawn[1]
+
+
+def test_a_map_of_a_study_and_more_regimes_than_colours(seen: Seen) -> None:
+    t, c = np.array([300.0, 280.0, 320.0]), np.logspace(-8, -4, 5)
+    codes = np.arange(15).reshape(3, 5) % 10
+    energy = np.linspace(-1.0, 1.0, 15).reshape(3, 5)
+    one = SimpleNamespace(
+        holding=codes - 1, approximations=tuple("abcdefghi"), controlling=codes, saddles=tuple("ABCDEFGHIJ"),
+        resting=None, states=(), arrhenius_energy_kj_mol=energy,
+    )  # fmt: skip
+    regimes: Any = SimpleNamespace(
+        temperature_k=t, amount=c, species=LONG, unit="Pa", maps={"pool": one}
+    )
+    figure, (ax,) = figures.new_figure(height_mm=100.0)
+    figures.regimes.of_map(ax, regimes)
+    rendered(figure, seen)
+    assert seen.problems(figure) == []
+    said = [text for text, _ in seen.boxes]
+    assert "3 others" in said
+    assert any(text.startswith("$p$(") for text in said)
+    figure, (ax,) = figures.new_figure()
+    regimes.maps["pool"].holding = np.full((3, 5), -1)
+    figures.regimes.of_map(ax, regimes, layer="holding")
+    assert "no approximation holds" in [text.get_text() for text in figure.findobj(Text)]
+    with pytest.raises(ValueError, match="no layer 'resting'"):
+        figures.regimes.of_map(ax, regimes, layer="resting")
+
+
 def test_doubt_never_rounds_to_certainty() -> None:
     figure, (ax,) = figures.new_figure()
     figures.doubt.draw(ax, np.array([-5.0, -4.0, 1.0]), 0.99999)
@@ -451,34 +499,39 @@ def test_no_dates_and_no_versions(form: Any) -> None:
         figures.save(figure, "x.gif")
 
 
-SCRIPT = """
-import hashlib, sys
-sys.path.insert(0, {folder!r})
-import test_figures as t
-from thermo_pp import figures
-figure, (ax,) = figures.new_figure()
-figures.profile.draw(ax, t.odd_names(), temperatures_k=t.TWO_K)
-other, (ax,) = figures.new_figure()
-t.draw_regimes(ax)
-for form in ("svg", "pdf", "png"):
-    print(hashlib.sha256(figures.content(figure, form) + figures.content(other, form)).hexdigest())
-"""
+def hashes() -> list[str]:
+    figure, (ax,) = figures.new_figure()
+    figures.profile.draw(ax, odd_names(), temperatures_k=TWO_K)
+    other, (ax,) = figures.new_figure()
+    draw_regimes(ax)
+    forms: tuple[Any, ...] = ("svg", "pdf", "png")
+    return [
+        hashlib.sha256(figures.content(figure, f) + figures.content(other, f)).hexdigest()
+        for f in forms
+    ]
 
 
 def test_two_runs_give_the_same_bytes_whatever_the_users_settings(tmp_path: Path) -> None:
-    code = SCRIPT.format(folder=str(Path(__file__).parent))
     (tmp_path / "matplotlibrc").write_text("font.size: 20\nlines.linewidth: 9\naxes.grid: True\n")
-    root = str(Path(tp.__file__).parents[1])
-    runs = [
-        subprocess.run(
-            [sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=folder, timeout=120,
-            env={"PATH": "", "PYTHONPATH": root, "PYTHONHASHSEED": seed, "HOME": str(tmp_path),
-                 "MPLCONFIGDIR": mpl.get_configdir()},
-        ).stdout
-        for folder, seed in ((tmp_path, "1"), (Path.cwd(), "2"))
-    ]  # fmt: skip
-    assert runs[0] == runs[1]
-    assert len(set(runs[0].split())) == 3
+    folders = [str(Path(tp.__file__).parents[1]), str(Path(__file__).parent)]
+    env = {
+        "PYTHONPATH": os.pathsep.join(folders),
+        "PYTHONHASHSEED": "1",
+        "MATPLOTLIBRC": str(tmp_path),
+        "MPLCONFIGDIR": mpl.get_configdir(),
+    }
+    code = (
+        "import matplotlib, test_figures as t\nprint(matplotlib.rcParams['font.size'], *t.hashes())"
+    )
+    run = subprocess.run(
+        [sys.executable, "-c", code],
+        capture_output=True,
+        text=True,
+        check=True,
+        timeout=240,
+        env=env,
+    )
+    assert run.stdout.split() == ["20.0", *hashes()]
 
 
 def test_a_figure_leaves_no_settings_behind(bundled: Profile) -> None:

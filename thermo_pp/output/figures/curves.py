@@ -42,6 +42,8 @@ def draw_curves(
     if len(x) == 1:
         _bars(ax, {name: float(curves[name][0]) for name in chosen})
         return chosen
+    order = np.argsort(x, kind="stable")  # a study keeps temperatures in the order given
+    x, curves = x[order], {name: values[order] for name, values in curves.items()}
     every = max(1, -(-len(x) // marks))
     handles: list[Artist] = []
     for name in curves:

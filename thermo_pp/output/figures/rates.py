@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -113,12 +113,13 @@ def draw(
     if rate is None:
         raise ValueError(f"there is no rate {definition!r}")
     chosen = _chosen(rate, approximations)
-    t = effective.temperature_k
+    order = np.argsort(effective.temperature_k, kind="stable")
+    t = effective.temperature_k[order]
     _frame(ax, effective, rate, form, points, lines)
     handles: list[Artist | Container] = []
     names: list[str] = []
     handles += ax.plot(
-        1000.0 / t, _height(t, rate.rate_constant, form), color=INK, linewidth=1.6, marker="o",
+        1000.0 / t, _height(t, rate.rate_constant[order], form), color=INK, linewidth=1.6, marker="o",
         markersize=3.2 if len(t) == 1 else 0.0, zorder=2.0,
     )  # fmt: skip
     names.append("computed, exact")
@@ -138,7 +139,7 @@ def draw(
         names.append(some.label)
     for k, approximation in enumerate(chosen):
         ax.plot(
-            1000.0 / t, _height(t, approximation.rate_constant, form), color=COLOURS[k], linestyle=DASHES[k],
+            1000.0 / t, _height(t, approximation.rate_constant[order], form), color=COLOURS[k], linestyle=DASHES[k],
             linewidth=0.8, zorder=3.0,
         )  # fmt: skip
     key(ax, handles, names)
@@ -227,11 +228,11 @@ def _line(ax: Axes, line: Line, form: Form, number: int) -> tuple[Artist, str]:
     return handle, line.label
 
 
-def _above(ax: Axes, height_pt: float) -> Callable[[Axes, RendererBase | None], Bbox]:
+def _above(ax: Axes, height_pt: float) -> Callable[[Any, RendererBase], Bbox]:
     """Return a locator of axes of that height above `ax`; a share of its height would never settle."""
     from matplotlib.transforms import Bbox
 
-    def place(_: Axes, __: RendererBase | None) -> Bbox:
+    def place(_: Any, __: RendererBase) -> Bbox:
         figure = ax.get_figure(root=True)
         assert figure is not None
         area, point = ax.get_position(), 1.0 / (72.0 * figure.get_figheight())

@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.kinetics.regime_map import NOTHING, Regimes
+from thermo_pp.names import Definition
 from thermo_pp.output.figures.key import key
 from thermo_pp.output.figures.style import HATCHES, INK, PALE, TINTS, heading, log_axis, styled
-from thermo_pp.output.figures.words import shown
+from thermo_pp.output.figures.words import elided
 
 if TYPE_CHECKING:
     from matplotlib.artist import Artist
@@ -23,11 +25,12 @@ FloatArray = NDArray[np.float64]
 def draw(
     ax: Axes,
     temperature_k: FloatArray,
-    concentration_mol_l: FloatArray,
+    amount: FloatArray,
     codes: NDArray[np.int64],
     names: Mapping[int, str],
     *,
     species: str,
+    unit: Literal["mol/L", "Pa"] = "mol/L",
     energies_kj_mol: FloatArray | None = None,
 ) -> Axes:
     """Draw the map into an axes and return it; every grid point fills the area next to it.
@@ -36,13 +39,14 @@ def draw(
     ----------
     ax : Axes
     temperature_k : shape (t,), rising
-    concentration_mol_l : shape (c,), rising, above 0
+    amount : shape (c,), rising, above 0
     codes : shape (c, t)
         The regime at each point; a code that has no name is left white.
     names : mapping of int to str
-        Up to eight regimes.
+        With more than eight regimes the seven most common have an area of their own.
     species : str
-        Whose concentration it is.
+        Whose amount it is.
+    unit : {"mol/L", "Pa"}
     energies_kj_mol : shape (c, t) or None
         Arrhenius energy; its zero is drawn as a line.
     """
@@ -51,27 +55,32 @@ def draw(
     from matplotlib.patches import Patch
 
     present = [code for code in names if (codes == code).any()]
+    areas = [(names[code], codes == code) for code in present]
     if len(present) > len(TINTS):
-        raise ValueError(f"{len(present)} regimes; at most {len(TINTS)} can be told apart")
+        common = sorted(present, key=lambda code: -int((codes == code).sum()))[: len(TINTS) - 1]
+        rest = [code for code in present if code not in common]
+        areas = [(names[code], codes == code) for code in present if code in common]
+        areas.append((f"{len(rest)} others", np.isin(codes, rest)))
     heading(ax, "x", "$T$", "K")
-    heading(ax, "y", "$c$", "mol L⁻¹", after=shown(species))
+    symbol, written = ("$c$", "mol L⁻¹") if unit == "mol/L" else ("$p$", "Pa")
+    heading(ax, "y", symbol, written, after=elided(species, 90.0))
     across = _edges(temperature_k)
-    up = np.exp(_edges(np.log(concentration_mol_l)))
+    up = np.exp(_edges(np.log(amount)))
     handles: list[Artist] = []
-    for k, code in enumerate(present):
+    for k, (_, inside) in enumerate(areas):
         area = PolyCollection(
-            _rectangles(codes == code, across, up), facecolors=TINTS[k], edgecolors=TINTS[k],
+            _rectangles(inside, across, up), facecolors=TINTS[k], edgecolors=TINTS[k],
             linewidths=0.15, zorder=0.5,
         )  # fmt: skip
         ax.add_collection(area)
         if HATCHES[k]:
             cover = PolyCollection(
-                _rectangles(codes == code, across, up), facecolors="none", edgecolors=INK,
+                _rectangles(inside, across, up), facecolors="none", edgecolors=INK,
                 linewidths=0.0, hatch=HATCHES[k], zorder=0.6,
             )  # fmt: skip
             ax.add_collection(cover)
         handles.append(Patch(facecolor=TINTS[k], hatch=HATCHES[k], edgecolor=INK, linewidth=0.3))
-    labels = [names[code] for code in present]
+    labels = [name for name, _ in areas]
     log_axis(ax, "y")
     ax.set_xlim(across[0], across[-1])
     ax.set_ylim(up[0], up[-1])
@@ -79,7 +88,7 @@ def draw(
         if np.nanmin(energies_kj_mol) < 0.0 < np.nanmax(energies_kj_mol):
             for colour, width in (("white", 3.0), (INK, 1.3)):
                 ax.contour(
-                    temperature_k, concentration_mol_l, energies_kj_mol, levels=[0.0], colors=[colour],
+                    temperature_k, amount, energies_kj_mol, levels=[0.0], colors=[colour],
                     linewidths=[width], linestyles=["solid"], zorder=2.0,
                 )  # fmt: skip
             handles.append(Line2D([], [], color=INK, linewidth=1.3))
@@ -90,6 +99,41 @@ def draw(
             labels.append(f"Eₐ {sign} zero everywhere")
     key(ax, handles, labels)
     return ax
+
+
+def of_map(
+    ax: Axes,
+    regimes: Regimes,
+    definition: Definition = "pool",
+    layer: Literal["holding", "controlling", "resting"] = "controlling",
+) -> Axes:
+    """Draw a map of a study: which approximation holds, which saddle point controls, what is at rest.
+
+    Raises
+    ------
+    ValueError
+        The map or the layer is not there.
+    """
+    one = regimes.maps.get(definition)
+    if one is None:
+        raise ValueError(f"there is no map of the rate {definition!r}")
+    layers: dict[str, tuple[NDArray[np.intp] | None, tuple[str, ...]]] = {
+        "holding": (one.holding, one.approximations),
+        "controlling": (one.controlling, one.saddles),
+        "resting": (one.resting, one.states),
+    }
+    codes, said = layers[layer]
+    if codes is None:
+        raise ValueError(f"the map of the rate {definition!r} has no layer {layer!r}")
+    names = dict(enumerate(said))
+    if layer == "holding":
+        names[NOTHING] = "no approximation holds"
+    order = np.argsort(regimes.temperature_k, kind="stable")
+    return draw(
+        ax, regimes.temperature_k[order], regimes.amount, codes[order].T.astype(np.int64), names,
+        species=regimes.species, unit="mol/L" if regimes.unit == "mol/L" else "Pa",
+        energies_kj_mol=one.arrhenius_energy_kj_mol[order].T,
+    )  # fmt: skip
 
 
 def _edges(points: FloatArray) -> FloatArray:

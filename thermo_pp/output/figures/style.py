@@ -117,8 +117,8 @@ def new_figure(
     Examples
     --------
     >>> figure, (ax,) = new_figure()
-    >>> round(figure.get_figwidth() * 25.4, 6)
-    85.0
+    >>> bool(abs(figure.get_figwidth() * 25.4 - 85.0) < 1e-9)
+    True
     """
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure

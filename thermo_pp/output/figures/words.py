@@ -46,7 +46,7 @@ def elided(text: str, most_pt: float, size_pt: float = TEXT_PT) -> str:
     """Return a line that is no wider, its middle left out where it has to be.
 
     >>> elided("a-very-long-name-of-a-species-17", 60.0)
-    'a-very-…cies-17'
+    'a-very-l…cies-17'
     """
     text = shown(text)
     if width_pt(text, size_pt) <= most_pt:
