@@ -61,11 +61,11 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
-        "figures", "report",
+        "figures", "report", "sweep",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
-        "isotopes", "compare", "report",
+        "isotopes", "compare", "report", "sweep",
     ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")

@@ -21,6 +21,7 @@ from thermo_pp.names import Duplicates, PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
+from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
 from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
@@ -249,6 +250,53 @@ class Study:
         own = {**_table(data, "treatment"), **treatment}
         origin = replace(self._origin, data={**data, "treatment": own, "species": tables})
         return self._made(origin, self.level)
+
+    def changed(self, changes: Mapping[str, Any]) -> Study:
+        """Return the study with other values at dotted keys of its file; no output is read again.
+
+        Parameters
+        ----------
+        changes : mapping of str to object
+            ``{"conditions.held.W": "1e-3 mol/L"}``; see `thermo_pp.study.changes`.
+
+        Raises
+        ------
+        StudyError
+            As `load`; a key that no study file has.
+        """
+        origin = self._changed_origin(changes)
+        return self._made(origin, None if "level" in changes else self.level)
+
+    def check_changes(self, changes: Mapping[str, Any]) -> None:
+        """Check the keys of changes, not their values; StudyError where one is wrong."""
+        self._changed_origin(changes)
+
+    def _changed_origin(self, changes: Mapping[str, Any]) -> _Origin:
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file has no keys to change")
+        if self._origin.temperatures is not None and any(
+            key.startswith("conditions.temperatures") for key in changes
+        ):
+            raise StudyError(
+                "the temperatures are given twice: as an option and as what changes",
+                where=self._origin.file,
+                mend="take one of the two away",
+            )
+        data = changed_data(self._origin.data, changes, self._origin.file)
+        return replace(self._origin, data=data)
+
+    def recipe(self) -> tuple[Any, ...]:
+        """Return what `from_recipe` makes this study of in another process, what was read included."""
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file cannot be made again")
+        origin = self._origin
+        return origin.data, origin.file, origin.temperatures, dict(origin.read), self.level
+
+    @classmethod
+    def from_recipe(cls, recipe: tuple[Any, ...]) -> Study:
+        """Make a study of what `recipe` of another one returned."""
+        *origin, level = recipe
+        return cls._made(_Origin(*origin), level)
 
     def choices(self, **options: Any) -> Choices:
         """Return what each choice is worth; see `thermo_pp.study.choices.choices`."""
