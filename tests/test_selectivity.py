@@ -49,6 +49,14 @@ TWO = Plan(
 )
 HELD = {"A": "1.0 mol/L", "P": "2e5 mol/L", "Q": "1e-4 mol/L"}
 """So much of P that its way back counts, and P makes Q."""
+CROSSED = replace(
+    TWO,
+    species={**TWO.species, "TBP": member((84.0, 315.0))},
+    steps=(*TWO.steps, Line("B = P", "through", "TBP")),
+    held={"A": "20 bar", "P": "5e6 bar", "Q": "2e7 bar"},
+    temperatures=(300.0, 350.0, 400.0),
+)
+"""P makes Q by way of B, close to equilibrium at the highest temperature; amounts that change with it."""
 CYCLE = Plan(
     {
         "cat": Member("CH4", 0.0, 200.0),
@@ -130,10 +138,23 @@ def test_curtin_hammett_ends_where_the_closed_form_has_it(tmp_path: Path) -> Non
         replace(TWO, held=HELD),
         replace(TWO, held=HELD, driven=True),
         replace(TWO, held={"A": "1.0 mol/L", "P": "2e5 mol/L"}),
+        CROSSED,
+        replace(CROSSED, driven=True),
+        replace(CROSSED, held={"A": "20 bar", "P": "5e6 bar"}),
         CYCLE,
         replace(CYCLE, held={**CYCLE.held, "R1": "1e-3 mol/L", "R2": "1e-4 mol/L"}, driven=True),
     ],
-    ids=["absent", "held", "driven", "one held", "cycle", "driven cycle"],
+    ids=[
+        "absent",
+        "held",
+        "driven",
+        "one held",
+        "crossed",
+        "crossed, driven",
+        "crossed, one held",
+        "cycle",
+        "driven cycle",
+    ],
 )
 def test_derivative_controls_and_sums(plan: Plan, tmp_path: Path) -> None:
     """E, X of ln(r1/r2) by central differences of whole studies; rates sum to the whole rate."""
@@ -178,7 +199,7 @@ def test_derivative_controls_and_sums(plan: Plan, tmp_path: Path) -> None:
             )
         control = -R * t * (moved[1] - moved[0]) / (2.0 * move)
         found_control = one.control.get(name, np.zeros(len(t)))  # a product that is absent has none
-        assert found_control == pytest.approx(control, rel=1e-5, abs=2e-6), name
+        assert found_control == pytest.approx(control, rel=1e-4, abs=2e-6), name
 
 
 def test_a_cycle_against_its_closed_form(tmp_path: Path) -> None:
