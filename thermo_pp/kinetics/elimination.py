@@ -330,7 +330,10 @@ def _present(mantissas: Sequence[FloatArray]) -> Indices:
     """Return the places (last axis) at which any number is not 0."""
     found = np.zeros(mantissas[0].shape[1], np.bool_)
     for mantissa in mantissas:
-        found |= mantissa.any(axis=0)
+        found |= mantissa[0] != 0.0
+    for mantissa in mantissas:
+        if not found.all():  # what the first row has need not be looked for in the others
+            found[~found] = mantissa[:, ~found].any(axis=0)
     return np.flatnonzero(found)
 
 

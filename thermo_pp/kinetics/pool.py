@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges
-from thermo_pp.kinetics.elimination import Reduction
+from thermo_pp.kinetics.elimination import Indices, Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
 
@@ -170,9 +170,9 @@ def _longest(times: Scaled) -> tuple[Scaled, Scaled, FloatArray]:
     """Return the right and left vectors of the largest eigenvalue of a positive matrix, and its logarithm."""
     start = times.sum(axis=2)
     plain, top = _similar(times)
-    right, left, settled = _iterate(plain)
-    if not settled:
-        right, left = _square(plain)
+    right, left, unsettled = _iterate(plain)
+    if len(unsettled):
+        right[unsettled], left[unsettled] = _square(plain[unsettled])
     value = np.einsum("bi,bij,bj->b", left, plain, right) / np.einsum("bi,bi->b", left, right)
     log = np.log(value) + top * np.log(2.0)
     return Scaled.from_float(right) * start, Scaled.from_float(left) / start, log
@@ -182,21 +182,30 @@ MOST_ITERATIONS = 100
 """Plain iterations before the matrix is squared: enough for decays whose ratio is above 1.5."""
 
 
-def _iterate(plain: FloatArray) -> tuple[FloatArray, FloatArray, bool]:
-    """Return right and left vectors by iteration, and whether they have settled to the last digit."""
+def _iterate(plain: FloatArray) -> tuple[FloatArray, FloatArray, Indices]:
+    """Return right and left vectors by iteration, and the rows that have not settled to the last digit."""
     b, n, _ = plain.shape
+    all_right, all_left = np.ones((b, n)), np.ones((b, n))
+    rows = np.arange(b)
     turned = plain.transpose(0, 2, 1)
     right, left = np.ones((b, n, 1)), np.ones((b, n, 1))
     for turn in range(MOST_ITERATIONS):
         next_right, next_left = plain @ right, turned @ left
         next_right /= next_right.max(axis=1, keepdims=True)
         next_left /= next_left.max(axis=1, keepdims=True)
-        if turn % 8 == 7:
-            change = max(np.abs(next_right - right).max(), np.abs(next_left - left).max())
-            if change <= 1e-15:
-                return next_right[:, :, 0], next_left[:, :, 0], True
+        change = None
+        if turn % 4 == 3:
+            change = np.maximum(np.abs(next_right - right), np.abs(next_left - left))
         right, left = next_right, next_left
-    return right[:, :, 0], left[:, :, 0], False
+        if change is not None:
+            open_ = change.max(axis=(1, 2)) > 1e-15
+            all_right[rows], all_left[rows] = right[:, :, 0], left[:, :, 0]
+            rows, right, left = rows[open_], right[open_], left[open_]
+            if not len(rows):
+                break
+            plain = plain[open_]
+            turned = plain.transpose(0, 2, 1)
+    return all_right, all_left, rows
 
 
 def _square(plain: FloatArray) -> tuple[FloatArray, FloatArray]:
