@@ -188,7 +188,6 @@ rate = "1 s^-1"
 arrhenius = { A = "1 s^-1", n = 0.5, E = "-2 kJ/mol" }
 viscosity = [["280 K", "1 mPa s"], ["360 K", "0.5 mPa s"]]
 tunnelling = "none"
-deviation = "3 kJ/mol"
 [effective]
 reactant = "A"
 catalyst = "A"

@@ -59,7 +59,7 @@ def tables(
     levels: Sequence[str] = (),
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
-    beside: Sequence[Block] = (),
+    after: Sequence[Block] = (),
 ) -> list[Block]:
     """Return the tables for people and the closing paragraph.
 
@@ -73,7 +73,7 @@ def tables(
         The levels of theory in words.
     regimes : Regimes or None
     selectivity : Selectivity or None
-    beside : sequence of Block
+    after : sequence of Block
         What stands after the closing paragraph.
     """
     rates = rates_of(effective)
@@ -98,7 +98,7 @@ def tables(
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     told = all_words(effective, selectivity, regimes)
-    return [*blocks, " ".join(notes), " ".join(told), *beside, SAFETY]
+    return [*blocks, " ".join(notes), " ".join(told), *after, SAFETY]
 
 
 def _rate(
