@@ -60,6 +60,7 @@ def _rate_keys(rate: RateDoubt) -> dict[str, Any]:
         spread = {
             name: value if name not in probabilities or value is None else vars(value)
             for name, value in vars(rate.spread).items()
+            if name != "energies_kj_mol"  # one number a sample: for figures
         }
     return {
         **vars(rate.answer),

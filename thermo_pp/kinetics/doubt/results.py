@@ -133,6 +133,8 @@ class Spread:
         The same of the resting state and the preferred product.
     same_answer : Probability
         That all of these stay.
+    energies_kj_mol : shape (samples,)
+        E_a of every sample at the temperature nearest to 298.15 K, for a figure.
     branching_bands : mapping of str to shape (q, t), or None
         Quantiles of each product's share.
     """
@@ -150,6 +152,7 @@ class Spread:
     same_resting: Probability | None
     same_product: Probability | None
     same_answer: Probability
+    energies_kj_mol: FloatArray
     branching_bands: Mapping[str, FloatArray] | None = None
 
     def __post_init__(self) -> None:

@@ -12,6 +12,7 @@ from thermo_pp.kinetics.doubt.answers import Found, find
 from thermo_pp.kinetics.doubt.moved import moved
 from thermo_pp.kinetics.doubt.results import QUANTILES, Probability, Spread
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
+from thermo_pp.kinetics.given import REFERENCE_K
 from thermo_pp.kinetics.model import Rates
 from thermo_pp.kinetics.scaled import Ordinary
 from thermo_pp.names import Definition
@@ -83,7 +84,8 @@ def sample(
         rates = moved(base, uncertainty, shifts[rows])
         for name, found in _found(rates, definitions).items():
             gathered[name].take(rows, found)
-    return {name: _spread(kept) for name, kept in gathered.items()}
+    usual = int(np.argmin(np.abs(base.energies.temperature_k - REFERENCE_K)))
+    return {name: _spread(kept, usual) for name, kept in gathered.items()}
 
 
 def _found(rates: Rates, definitions: Sequence[Definition]) -> dict[Definition, Found]:
@@ -95,7 +97,7 @@ def _found(rates: Rates, definitions: Sequence[Definition]) -> dict[Definition, 
         return {name: find(rates, name) for name in definitions}
 
 
-def _spread(kept: _Gathered) -> Spread:
+def _spread(kept: _Gathered, usual: int) -> Spread:
     found, samples = kept.found, len(kept.log)
     same = kept.controlling == found.controlling
     same_all = same
@@ -130,6 +132,7 @@ def _spread(kept: _Gathered) -> Spread:
         same_resting=same_resting,
         same_product=same_product,
         same_answer=_probability(same_all),
+        energies_kj_mol=kept.energy[:, usual],
         branching_bands=bands,
     )
 
