@@ -58,6 +58,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     "output": (
         "tables", "definitions", "notes", "plain", "delimited", "latex", "json_text", "files",
         "survey", "species", "conformers", "energies", "profile", "courses", "limits", "regimes", "selectivity",
+        "doubt",
         "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",

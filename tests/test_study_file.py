@@ -136,6 +136,7 @@ heat_capacity = "30 J/mol/K"
 temperature = "25 degC"
 ground = "-3 kJ/mol"
 imaginary_mode = "1200 cm^-1"
+deviation = "2 kJ/mol"
 relative_to = { A = 1 }
 [species.C]
 thermal = "nearest"
@@ -205,6 +206,14 @@ points = 12
 [selectivity]
 products = ["P", "Q"]
 kind = "diastereomeric"
+[doubt]
+deviation = "4 kJ/mol"
+saddle_deviation = 6
+correlation = { same_kind = 0.5, across = 0.3 }
+pairs = [["A", "T", 0.9]]
+samples = 1000
+seed = 2
+alternatives = false
 [formation]
 atoms = ["A"]
 atomization = ["A"]

@@ -63,6 +63,7 @@ def effective(study: StudyLike) -> EffectiveRate:
         The network is not linear, has no way from reactant to product, or holds species that are
         out of balance.
     """
+    import scipy.linalg  # noqa: F401  a library that is not loaded yet cannot be limited
     from threadpoolctl import threadpool_limits
 
     # the matrices are small: threads would only wait for each other; what is too large for an

@@ -19,6 +19,7 @@ from thermo_pp.kinetics.free import Amount, per_free_reactant
 from thermo_pp.kinetics.network import Network, check_loops, linear_network
 from thermo_pp.kinetics.pool import Pool, per_pool
 from thermo_pp.kinetics.products import per_free_reactant_driven
+from thermo_pp.kinetics.scaled import Scaled
 from thermo_pp.kinetics.spectrum import Spectrum
 from thermo_pp.kinetics.steps import (
     ElementaryRates,
@@ -74,19 +75,23 @@ class Rates:
     model : Model
     energies : Energetics
     steps : ElementaryRates
+    numbers : type
+        What rates are worked out in: `Scaled`, or `Ordinary` where speed counts.
     """
 
     model: Model
     energies: Energetics
     steps: ElementaryRates
+    numbers: type[Scaled] = Scaled
 
     @cached_property
     def network(self) -> Network:
         """The linear network."""
         model = self.model
-        return linear_network(
+        network = linear_network(
             model.mechanism, model.conditions, self.energies, self.steps, self.equilibrium
         )
+        return replace(network, numbers=self.numbers)
 
     @cached_property
     def equilibrium(self) -> dict[str, dict[str, Fraction]]:

@@ -146,6 +146,7 @@ def elementary_rates(
     energies: Energetics,
     treatment: Treatment,
     conditions: Conditions,
+    kappa: tuple[FloatArray, FloatArray] | None = None,
 ) -> ElementaryRates:
     """Return the rate constants of every step; each gets an effective saddle whatever it came from.
 
@@ -158,6 +159,8 @@ def elementary_rates(
         The phase decides which limit fits.
     conditions : Conditions
         How much there is of the colliders of fall-off steps.
+    kappa : pair of shape (b, n), or None
+        `log_kappa` and `kappa_energy_j_mol` in place of what tunnelling gives.
 
     Raises
     ------
@@ -205,12 +208,16 @@ def elementary_rates(
                 log_transmission[:, k], lift = _crossing(step.crossing, t)
                 saddle, saddle_slope = saddle - log_transmission[:, k], saddle_slope + lift
             if step.tunnelling != "none":
-                log_kappa[:, k], kappa_energy[:, k] = tunnelling(
-                    step,
-                    energies.saddle_members[str(step.through)],
-                    energies.grounds_kj_mol,
-                    t,
-                    treatment.tunnelling_scale,
+                log_kappa[:, k], kappa_energy[:, k] = (
+                    (kappa[0][:, k], kappa[1][:, k])
+                    if kappa is not None
+                    else tunnelling(
+                        step,
+                        energies.saddle_members[str(step.through)],
+                        energies.grounds_kj_mol,
+                        t,
+                        treatment.tunnelling_scale,
+                    )
                 )
                 saddle, saddle_slope = saddle - log_kappa[:, k], saddle_slope + kappa_energy[:, k]
             if limit is not None:

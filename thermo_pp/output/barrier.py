@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.courses import Transient
+from thermo_pp.kinetics.doubt.results import Doubt
 from thermo_pp.kinetics.flow import FlowState
 from thermo_pp.kinetics.product_ratio import Selectivity
 from thermo_pp.kinetics.regime_map import Regimes
@@ -19,6 +20,7 @@ from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate,
 from thermo_pp.names import DEFINITIONS, Constant, Definition, EnergyUnit
 from thermo_pp.output.courses import flow_keys, time_course_keys
 from thermo_pp.output.definitions import KEYS
+from thermo_pp.output.doubt import doubt_keys
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import kelvin
 from thermo_pp.output.regimes import keys as regimes_keys
@@ -48,6 +50,7 @@ def keys(
     flow: FlowState | None = None,
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
+    doubt: Doubt | None = None,
 ) -> dict[str, Any]:
     """Return the JSON answer."""
     rates = {name: effective.rates.get(name) for name in DEFINITIONS}
@@ -66,7 +69,8 @@ def keys(
         flow=flow and flow_keys(flow),
         regimes=regimes and regimes_keys(regimes),
         selectivity=selectivity and selectivity_keys(selectivity),
-        words=" ".join(all_words(effective, transient, flow, selectivity, regimes)),
+        doubt=doubt and doubt_keys(doubt),
+        words=" ".join(all_words(effective, transient, flow, selectivity, regimes, doubt)),
     )
 
 

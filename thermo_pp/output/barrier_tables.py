@@ -59,6 +59,7 @@ def tables(
     levels: Sequence[str] = (),
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
+    after: Sequence[Block] = (),
 ) -> list[Block]:
     """Return the tables for people and the closing paragraph.
 
@@ -72,6 +73,8 @@ def tables(
         The levels of theory in words.
     regimes : Regimes or None
     selectivity : Selectivity or None
+    after : sequence of Block
+        What stands after the closing paragraph.
     """
     rates = rates_of(effective)
     blocks: list[Block] = []
@@ -95,7 +98,7 @@ def tables(
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     told = all_words(effective, selectivity, regimes)
-    return [*blocks, " ".join(notes), " ".join(told), SAFETY]
+    return [*blocks, " ".join(notes), " ".join(told), *after, SAFETY]
 
 
 def _rate(

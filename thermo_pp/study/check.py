@@ -197,6 +197,10 @@ def _check_number(
         raise StudyError(
             f"{value!r} is below {kind.ge:g}", where=place(file, *path), mend=_mend(path)
         )
+    if kind.le is not None and not number <= kind.le:
+        raise StudyError(
+            f"{value!r} is above {kind.le:g}", where=place(file, *path), mend=_mend(path)
+        )
 
 
 def _mend(path: tuple[str | int, ...]) -> str:

@@ -31,6 +31,7 @@ Quantity = str | float
 
 Positive = Annotated[float, Meta(gt=0.0)]
 Whole = Annotated[int, Meta(ge=1)]
+Correlation = Annotated[float, Meta(ge=-1.0, le=1.0)]
 Levels = Annotated[list[tuple[Whole, Quantity]], Meta(min_length=1)]
 Pairs = Annotated[list[tuple[Quantity, Quantity]], Meta(min_length=1)]
 
@@ -566,6 +567,10 @@ class SpeciesKeys(StructureKeys, frozen=True, kw_only=True):
     entropy_correction: Annotated[
         Quantity | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
     ] = UNSET
+    deviation: Annotated[
+        Quantity | UnsetType,
+        Meta(description="standard deviation of the energy in place of that of `[doubt]` / kJ/mol"),
+    ] = UNSET
     relative_to: Annotated[
         dict[str, int] | UnsetType,
         Meta(
@@ -722,7 +727,10 @@ class StepKeys(Keys, frozen=True, kw_only=True):
     ] = UNSET
     deviation: Annotated[
         Quantity | UnsetType,
-        Meta(description="standard deviation of the height in `barrier` / kJ/mol"),
+        Meta(
+            description="standard deviation of the height in `barrier`; in `[doubt]` that of saddle points "
+            "unless given / kJ/mol"
+        ),
     ] = UNSET
     rate: Annotated[
         str | UnsetType,
@@ -783,6 +791,54 @@ class StepKeys(Keys, frozen=True, kw_only=True):
             "step, zero-point energies included; as in `[treatment]` unless given"
         ),
     ] = UNSET
+
+
+class CorrelationKeys(Keys, frozen=True, kw_only=True):
+    """Correlation of the errors of the energies, from -1 to 1."""
+
+    same_kind: Annotated[
+        Correlation,
+        Meta(description="of minima with each other, and of saddle points with each other"),
+    ] = 0.0
+    across: Annotated[Correlation, Meta(description="of minima with saddle points")] = 0.0
+
+
+class DoubtKeys(Keys, frozen=True, kw_only=True):
+    """How sure the energies are; with this table `barrier` shows the doubt about every answer."""
+
+    deviation: Annotated[
+        Quantity, Meta(description="standard deviation of the energies of minima / kJ/mol")
+    ]
+    saddle_deviation: Annotated[
+        Quantity | UnsetType,
+        Meta(description="of those of saddle points; the same unless given / kJ/mol"),
+    ] = UNSET
+    correlation: Annotated[
+        CorrelationKeys,
+        Meta(description="`{ same_kind = 0.5, across = 0.3 }`; 0 unless given"),
+    ] = CorrelationKeys()
+    pairs: Annotated[
+        list[tuple[str, str, Correlation]],
+        Meta(
+            description='correlation of two energies in place of that of their kinds: `[["A", "TS1", '
+            "0.9], ...]`; a step with a height in `barrier` goes under its equation"
+        ),
+    ] = []
+    samples: Annotated[
+        Annotated[int, Meta(ge=100, le=1_000_000)],
+        Meta(description="how many sets of energies are drawn, 100 to 1000000"),
+    ] = 10_000
+    seed: Annotated[
+        Annotated[int, Meta(ge=0)],
+        Meta(description="of the random numbers: the same seed gives the same answer"),
+    ] = 1
+    alternatives: Annotated[
+        bool,
+        Meta(
+            description="whether every named level of theory and every other choice of treatment is "
+            "shown beside"
+        ),
+    ] = True
 
 
 class EffectiveKeys(Keys, frozen=True, kw_only=True):
@@ -975,6 +1031,7 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
         ),
     ] = []
     effective: _EffectiveTable | UnsetType = UNSET
+    doubt: DoubtKeys | UnsetType = UNSET
     isotopologues: Annotated[
         dict[str, IsotopologueKeys],
         Meta(

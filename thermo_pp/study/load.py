@@ -15,6 +15,7 @@ from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.functions.formation import FormationQuestion
 from thermo_pp.graph import check_reach
+from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.names import Duplicates, PolynomialForm
@@ -30,12 +31,14 @@ from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
 from thermo_pp.study.questions import make_regimes, make_selectivity
 from thermo_pp.study.reactions import anchor_species
+from thermo_pp.study.uncertainty import check_unused, make_uncertainty
 
 if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.fits import Fit
     from thermo_pp.functions.formation import Formations
     from thermo_pp.kinetics.courses import Transient
+    from thermo_pp.kinetics.doubt.results import Doubt
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.product_ratio import Selectivity, SelectivityQuestion
@@ -78,6 +81,10 @@ class Study:
         The named levels of theory of the file: alternatives, for `at_level`.
     energies : mapping of str to ElectronicEnergy
         Part by part, of every structure that is read.
+    uncertainty : Uncertainty or None
+        How sure the energies are; None without ``[doubt]``.
+    with_alternatives : bool
+        Whether `doubt` shows other levels and choices beside.
     formation_question : FormationQuestion or None
         Of ``[formation]``.
     duplicates : {"count", "once"}
@@ -104,6 +111,8 @@ class Study:
     duplicates: Duplicates = "count"
     regime_question: RegimeQuestion | None = None
     selectivity_question: SelectivityQuestion | None = None
+    uncertainty: Uncertainty | None = None
+    with_alternatives: bool = False
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -179,6 +188,12 @@ class Study:
         check_electrons(conditions, mechanism)
         findings = [*members.findings, *measured, *check_mechanism(mechanism)]
         findings += _check_network(mechanism, conditions)
+        doubt = given(keys.doubt)
+        if doubt is None:
+            check_unused(keys.species, file)
+            uncertainty = None
+        else:
+            uncertainty = make_uncertainty(doubt, keys.species, steps, file)
         return cls(
             title=keys.title if isinstance(keys.title, str) else Path(file).stem,
             path=Path(file),
@@ -196,6 +211,8 @@ class Study:
             duplicates=keys.treatment.duplicates,
             regime_question=make_regimes(keys, conditions, file),
             selectivity_question=make_selectivity(keys, mechanism, file),
+            uncertainty=uncertainty,
+            with_alternatives=doubt is not None and doubt.alternatives,
             _origin=origin,
         )
 
@@ -398,6 +415,26 @@ class Study:
         from thermo_pp.kinetics.selectivity import selectivity
 
         return selectivity(self, effective or self.effective(), self.selectivity_question)
+
+    def doubt(self) -> Doubt:
+        """Return how sure the answers are; see `thermo_pp.kinetics.doubt.assess.assess`.
+
+        Raises
+        ------
+        StudyError
+            The study has no ``[doubt]``; held species in balance only as the energies are.
+        """
+        from thermo_pp.kinetics.doubt.assess import assess
+        from thermo_pp.study.alternatives import alternative_answers
+
+        if self.uncertainty is None:
+            raise StudyError(
+                "the study does not say how sure its energies are",
+                where=f"{self.path} [doubt]",
+                mend='write [doubt] and, for instance, deviation = "4 kJ/mol"',
+            )
+        beside = alternative_answers(self) if self.with_alternatives else ((), ())
+        return assess(self, self.uncertainty, *beside)
 
     def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
         """Return the isotope effects of every set in ``[isotopologues]``.
