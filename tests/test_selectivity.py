@@ -53,7 +53,7 @@ CROSSED = replace(
     TWO,
     species={**TWO.species, "TBP": member((84.0, 315.0))},
     steps=(*TWO.steps, Line("B = P", "through", "TBP")),
-    held={"A": "20 bar", "P": "5e6 bar", "Q": "2e7 bar"},
+    held={"A": "0.6 mol/L", "P": "5e6 bar", "Q": "2e7 bar"},
     temperatures=(300.0, 350.0, 400.0),
 )
 """P makes Q by way of B, close to equilibrium at the highest temperature; amounts that change with it."""
@@ -140,7 +140,7 @@ def test_curtin_hammett_ends_where_the_closed_form_has_it(tmp_path: Path) -> Non
         replace(TWO, held={"A": "1.0 mol/L", "P": "2e5 mol/L"}),
         CROSSED,
         replace(CROSSED, driven=True),
-        replace(CROSSED, held={"A": "20 bar", "P": "5e6 bar"}),
+        replace(CROSSED, held={"A": "0.6 mol/L", "P": "5e6 bar"}),
         CYCLE,
         replace(CYCLE, held={**CYCLE.held, "R1": "1e-3 mol/L", "R2": "1e-4 mol/L"}, driven=True),
     ],
