@@ -62,7 +62,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
-        "figures", "report", "sweep",
+        "figures", "figures_folder", "report", "sweep",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",

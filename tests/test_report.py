@@ -19,6 +19,7 @@ from click.testing import CliRunner
 from declared_study import TEXT
 
 from thermo_pp.cli import main
+from thermo_pp.output import report
 from thermo_pp.study.load import Study
 
 ROOT = Path(__file__).parents[1]
@@ -59,6 +60,23 @@ def bundled(tmp_path_factory: pytest.TempPathFactory) -> Path:
 def results(bundled: Path) -> dict[str, Any]:
     found: dict[str, Any] = json.loads((bundled / "results.json").read_text(encoding="utf-8"))
     return found
+
+
+@pytest.fixture(autouse=True)
+def without_figures(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Figures take most of the time; `bundled`, made before this, has them."""
+    monkeypatch.setattr(report, "PARTS", tuple(p for p in report.PARTS if p[0] != "figures"))
+
+
+def test_every_figure_is_there_in_three_formats(bundled: Path) -> None:
+    found = {path.name for path in (bundled / "figures").iterdir()}
+    stems = {name.rpartition(".")[0] for name in found}
+    assert found == {f"{stem}.{form}" for stem in stems for form in ("svg", "pdf", "png")}
+    kinds = {f"{kind}-{name}" for kind in ("arrhenius", "eyring", "controls")
+             for name in ("free", "pool", "relaxation")}  # fmt: skip
+    maps = {f"regimes-{layer}-{name}" for layer in ("holding", "controlling", "resting")
+            for name in ("free", "pool")} - {"regimes-resting-free"}  # fmt: skip
+    assert stems == {*kinds, *maps, "populations-pool", "profile", "profile-enthalpy-gibbs"}
 
 
 def test_the_manifest_lists_every_file_with_its_hash(bundled: Path) -> None:
@@ -276,7 +294,8 @@ def test_killed_while_it_runs(tmp_path: Path) -> None:
     assert run(study, "-o", tmp_path / "other", "-T", "300").exit_code == 0
     new = files(tmp_path / "other")
     code = (
-        "import sys\nfrom thermo_pp.cli import main\nimport thermo_pp.output.report\nprint('on', flush=True)\n"
+        "import sys\nfrom thermo_pp.cli import main\nimport thermo_pp.output.report as report\n"
+        "report.PARTS = tuple(p for p in report.PARTS if p[0] != 'figures')\nprint('on', flush=True)\n"
         "main(['report', *sys.argv[1:]])"
     )
     for wait in (0.0, 0.15, 0.4, 0.8):

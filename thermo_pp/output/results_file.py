@@ -24,6 +24,7 @@ from thermo_pp.output import (
 )
 from thermo_pp.output.json_text import json_text, treatment_keys
 from thermo_pp.output.provenance import provenance
+from thermo_pp.rate_laws import Arrhenius
 from thermo_pp.species import Declared, SpeciesModel
 from thermo_pp.species.result import ModeTable
 from thermo_pp.study.run import Answers, SpeciesAnswer
@@ -156,12 +157,36 @@ def _mechanism(mechanism: Mechanism) -> dict[str, Any]:
 
 
 def _step(step: Step) -> dict[str, Any]:
-    left_out = ("where", "reactants", "products")
+    """Return a step; factors of rate laws are in L, mol and s, temperature over 298.15 K."""
+    falloff = step.falloff
     return {
-        **{name: value for name, value in vars(step).items() if name not in left_out},
+        "equation": step.equation,
         "reactants": step.reactants,
         "products": step.products,
+        "through": step.through,
+        "barrierless": step.barrierless,
+        "rate": step.rate and _arrhenius(step.rate),
+        "height": step.height and vars(step.height),
+        "falloff": falloff
+        and {
+            **vars(falloff),
+            "low": _arrhenius(falloff.low),
+            "high": _arrhenius(falloff.high),
+        },
+        "crossing": step.crossing and vars(step.crossing),
+        "viscosity_pa_s": step.viscosity and _over_temperature(step.viscosity),
+        "permittivity": step.permittivity and _over_temperature(step.permittivity),
+        "tunnelling": step.tunnelling,
     }
+
+
+def _arrhenius(law: Arrhenius) -> dict[str, float]:
+    return dict(zip(("factor_l_mol_s", "power", "energy_kj_mol"), law, strict=True))
+
+
+def _over_temperature(pairs: tuple[tuple[float, float], ...]) -> dict[str, Any]:
+    """Return a value over temperature; a single one is constant."""
+    return {"temperature_k": [t for t, _ in pairs], "value": [value for _, value in pairs]}
 
 
 def _species(answers: Answers, name: str, one: SpeciesAnswer) -> dict[str, Any]:
