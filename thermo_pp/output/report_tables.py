@@ -14,6 +14,7 @@ from thermo_pp.output import (
     compare,
     conformers,
     courses,
+    doubt,
     energies,
     isotopes,
     profile,
@@ -135,13 +136,15 @@ def _barrier(answers: Answers, unit: EnergyUnit) -> Shown | None:
         people += courses.flow_tables(answers.flow, unit, people=True)
         wide += courses.flow_tables(answers.flow, unit, people=False)
     regime, ratio = answers.regimes, answers.selectivity
-    people += barrier_tables.tables(found, treatment, unit, levels, regime, ratio)
+    beside = [] if answers.doubt is None else doubt.doubt_tables(answers.doubt, unit)
+    people += barrier_tables.tables(found, treatment, unit, levels, regime, ratio, beside)
     if any(found.rates.values()):
         wide = [*barrier.wide(found, treatment, unit, levels), *wide]
     else:
         wide = [barrier.steps_wide(found, unit), *wide]
     wide += [] if ratio is None else selectivity.wide(ratio, unit)
     wide += [] if regime is None else regimes.wide(regime, unit)
+    wide += [] if answers.doubt is None else doubt.doubt_wide(answers.doubt, unit)
     return Shown("barrier", people, wide)
 
 

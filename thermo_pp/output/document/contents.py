@@ -69,7 +69,7 @@ def contents(
 
 
 def _words(answers: Answers) -> tuple[str, ...]:
-    own = all_words(answers.effective, answers.selectivity, answers.regimes)
+    own = all_words(answers.effective, answers.selectivity, answers.regimes, answers.doubt)
     others = [part for part in (answers.transient, answers.flow) if part is not None]
     return tuple(" ".join(words) for words in (own, *(part.words for part in others)) if words)
 
