@@ -43,6 +43,7 @@ _SIGNS = {
     "Å": r"\AA{}",
     "ₐ": r"$_{\mathrm{a}}$",
     "ₕ": r"$_{\mathrm{h}}$",
+    "…": r"\ldots{}",
     "∞": r"$\infty$",
     "√": r"$\surd$",
     "≈": r"$\approx$",

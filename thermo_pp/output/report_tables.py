@@ -11,11 +11,14 @@ from thermo_pp.output import (
     barrier,
     barrier_tables,
     choices,
+    compare,
     conformers,
     courses,
     energies,
     isotopes,
     profile,
+    regimes,
+    selectivity,
     study_species,
 )
 from thermo_pp.output.columns import check_columns, select
@@ -131,11 +134,14 @@ def _barrier(answers: Answers, unit: EnergyUnit) -> Shown | None:
     if answers.flow is not None:
         people += courses.flow_tables(answers.flow, unit, people=True)
         wide += courses.flow_tables(answers.flow, unit, people=False)
-    people += barrier_tables.tables(found, treatment, unit, levels)
+    regime, ratio = answers.regimes, answers.selectivity
+    people += barrier_tables.tables(found, treatment, unit, levels, regime, ratio)
     if any(found.rates.values()):
         wide = [*barrier.wide(found, treatment, unit, levels), *wide]
     else:
         wide = [barrier.steps_wide(found, unit), *wide]
+    wide += [] if ratio is None else selectivity.wide(ratio, unit)
+    wide += [] if regime is None else regimes.wide(regime, unit)
     return Shown("barrier", people, wide)
 
 
@@ -171,6 +177,14 @@ def _isotopes(answers: Answers, unit: EnergyUnit) -> Shown | None:
     return Shown("isotopes", people, isotopes.wide(found, unit))
 
 
+def _compare(answers: Answers, unit: EnergyUnit) -> Shown | None:
+    study, found = answers.study, answers.comparison
+    if found is None:
+        return None
+    people = compare.tables(found, study.treatment, unit, study.levels)
+    return Shown("compare", people, compare.wide(found, study.treatment, unit))
+
+
 _MAKERS: tuple[Callable[[Answers, EnergyUnit], Shown | None], ...] = (
     _profile,
     _barrier,
@@ -178,4 +192,5 @@ _MAKERS: tuple[Callable[[Answers, EnergyUnit], Shown | None], ...] = (
     _conformers,
     _choices,
     _isotopes,
+    _compare,
 )

@@ -6,6 +6,7 @@ from collections.abc import Iterator, Sequence
 
 from thermo_pp.mechanism import Step
 from thermo_pp.names import EnergyUnit
+from thermo_pp.output.barrier import all_words
 from thermo_pp.output.barrier_tables import SAFETY
 from thermo_pp.output.document.geometries import Shape, imaginary_modes, listing, shapes
 from thermo_pp.output.document.methods import methods
@@ -56,6 +57,7 @@ def contents(
         Section("Conformers", _pieces(tables.get("conformers", []))),
         Section("What each choice is worth", _pieces(tables.get("choices", []))),
         Section("Isotope effects", _pieces(tables.get("isotopes", []))),
+        Section("Measured rates", _pieces(tables.get("compare", []))),
         Section("Energies and where they are from", tuple(_provenance(answers, found))),
         Section("Imaginary modes", _pieces([one for one in [imaginary_modes(found)] if one])),
         Section("Geometries", tuple(_geometries(found))),
@@ -67,8 +69,9 @@ def contents(
 
 
 def _words(answers: Answers) -> tuple[str, ...]:
-    parts = (answers.effective, answers.transient, answers.flow)
-    return tuple(" ".join(part.words) for part in parts if part is not None and part.words)
+    own = all_words(answers.effective, answers.selectivity, answers.regimes)
+    others = [part for part in (answers.transient, answers.flow) if part is not None]
+    return tuple(" ".join(words) for words in (own, *(part.words for part in others)) if words)
 
 
 def _some(tables: dict[str, Sequence[Block]], *names: str) -> list[Block]:
@@ -115,7 +118,7 @@ def _way(step: Step) -> str:
         return f"through {step.through}"
     if step.rate is not None:
         return "rate constant declared"
-    return "no barrier"
+    return "no barrier" if step.height is None else "height declared or from a scan"
 
 
 def _provenance(answers: Answers, found: tuple[Shape, ...]) -> Iterator[Piece]:
@@ -174,6 +177,10 @@ def _provenance(answers: Answers, found: tuple[Shape, ...]) -> Iterator[Piece]:
     ]
     columns = [*map(Column, ("File", "program", "version", "level", "SHA-256"))]
     yield Table("Files", columns, files)
+    numbers: list[list[Cell]] = [[one.place, str(one.value), one.line] for one in answers.declared]
+    if numbers:
+        columns = [*map(Column, ("Key", "value", "line"))]
+        yield Table(f"Declared in {answers.study.path}", columns, numbers)
 
 
 def _geometries(found: tuple[Shape, ...]) -> Iterator[Listing]:

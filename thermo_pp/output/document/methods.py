@@ -155,6 +155,15 @@ def _steps(answers: Answers) -> Iterator[Paragraph]:
                 "others."
             )
         break
+    if any(step.falloff is not None for step in steps):
+        yield Paragraph(
+            "Rate constants with fall-off are those of the declared limits and broadening."
+        )
+    if any(step.crossing is not None for step in steps):
+        yield Paragraph(
+            "Crossings between spin states have a declared probability, or Landau's and Zener's averaged "
+            "over thermal energies."
+        )
     used = {step.tunnelling for step in steps if step.through is not None}
     if "wigner" in used:
         yield Paragraph("Tunnelling: Wigner's factor, 1 + u²/24.", ("Wigner1932",))
