@@ -11,8 +11,8 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from openpyxl import load_workbook
 from click.testing import CliRunner, Result
+from openpyxl import load_workbook
 
 import thermo_pp as tp
 from thermo_pp.cli import main
