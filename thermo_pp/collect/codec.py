@@ -34,7 +34,8 @@ _FIELDS = {kind: tuple(field.name for field in fields(kind)) for kind in CLASSES
 _LEFT_OUT = {(Calculation, "hessian_hartree_bohr2")}
 _ARRAY = 1
 _DTYPES = ("<f8", "<i8", "|b1", "<f4", "<i4")
-_PLAIN = (float, int, bool, type(None))
+_PLAIN = frozenset((float, int, bool, type(None)))
+_AS_IT_IS = _PLAIN | {np.ndarray}
 
 
 class CodecError(ValueError):
@@ -143,6 +144,8 @@ def _in(value: Any) -> Any:
     kind = type(value)
     if kind is bytes:
         return value.decode("utf-8", "surrogatepass")
+    if kind in _AS_IT_IS:  # most values: not asked about one kind after the other
+        return value
     if kind is list:
         return tuple([_in(each) for each in value])
     if kind is not dict:

@@ -178,6 +178,8 @@ class Processes:
 
     def _hand_out(self) -> None:
         """Give batches to the processes that have too few."""
+        if not self._todo or min(worker.batches() for worker in self._workers) >= AHEAD:
+            return
         flying = sum(ticket.size for worker in self._workers for ticket in worker.tickets)
         for ahead in range(AHEAD):
             for worker in self._workers:
@@ -202,11 +204,13 @@ class Processes:
         return batch
 
     def _receive(self, worker: _Worker) -> None:
-        """Take the answers that are there; where the process has died, start another."""
+        """Take the answers that are there, one at least; where the process has died, start another."""
         try:
-            while worker.connection.poll():
+            more = True
+            while more:
                 data = worker.connection.recv_bytes()
                 worker.tickets.popleft().answer = Answer.from_bytes(data)
+                more = worker.connection.poll()
         except (EOFError, OSError):
             self._replace(worker)
 

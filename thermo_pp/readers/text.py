@@ -14,11 +14,13 @@ from dataclasses import replace
 import numpy as np
 
 from thermo_pp.errors import ReadError
+from thermo_pp.readers.line_index import LineIndex
 from thermo_pp.sources import Source
 
 LONGEST_LINE = 1 << 20
 """A line of twice this many bytes is refused."""
 CUT_SHORT = "the output is cut short or damaged here; rerun or re-copy it"
+_LINE_END = ord("\n")
 _NUMBER = re.compile(rb"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eEdD][+-]?\d+)?")
 _FIRST_WORD = re.compile(rb"[ \t]*(" + _NUMBER.pattern + rb")(\S*)")
 _BLANK_LINE = re.compile(rb"\n[ \t]*\r?\n")
@@ -32,13 +34,22 @@ class Text:
     source : Source
     start, end : int
         The part of the file that is searched, the whole unless given.
+    index : LineIndex or None
+        With it, marks that begin with a line end are not searched for but looked up; see `indexed`.
     """
 
-    def __init__(self, source: Source, start: int = 0, end: int | None = None) -> None:
+    def __init__(
+        self,
+        source: Source,
+        start: int = 0,
+        end: int | None = None,
+        index: LineIndex | None = None,
+    ) -> None:
         self.source = source
         self.data = source.data
         self.start = start
         self.end = len(source.data) if end is None else end
+        self.index = index
         if start == 0 and end is None:
             self._check_lines()
 
@@ -52,18 +63,28 @@ class Text:
 
     def part(self, start: int, end: int | None = None) -> Text:
         """Return the same text, searched from `start` to `end` only."""
-        return Text(self.source, start, self.end if end is None else end)
+        return Text(self.source, start, self.end if end is None else end, self.index)
+
+    def indexed(self) -> Text:
+        """Return the same text with an index of its lines, for a reader that looks for many marks."""
+        return Text(self.source, self.start, self.end, LineIndex(self.data))
 
     def find(self, mark: bytes, start: int | None = None) -> int:
         """Return where `mark` first stands at or after `start`, -1 where it does not."""
+        if self.index is not None and mark[0] == _LINE_END:
+            return self.index.find(mark, self.start if start is None else start, self.end)
         return self.data.find(mark, self.start if start is None else start, self.end)
 
     def last(self, mark: bytes, end: int | None = None) -> int:
         """Return where `mark` last stands before `end`, -1 where it does not."""
+        if self.index is not None and mark[0] == _LINE_END:
+            return self.index.last(mark, self.start, self.end if end is None else end)
         return self.data.rfind(mark, self.start, self.end if end is None else end)
 
     def all(self, mark: bytes) -> list[int]:
         """Return every place at which `mark` stands."""
+        if self.index is not None:
+            return self.index.all(mark, self.start, self.end)
         places, at = [], self.last(mark)
         while at >= 0:
             places.append(at)
@@ -73,7 +94,7 @@ class Text:
 
     def has(self, mark: bytes) -> bool:
         """Tell whether `mark` stands anywhere; see `holds`."""
-        return self.data.rfind(mark, self.start, self.end) >= 0
+        return self.last(mark) >= 0
 
     def need(
         self, mark: bytes, start: int | None = None, *, lacking: str, mend: str = CUT_SHORT
@@ -96,10 +117,15 @@ class Text:
 
     def line_number(self, at: int) -> int:
         """Return the 1-based line number of the byte offset `at`."""
+        if self.index is not None:
+            return self.index.line_number(at)
         return _line_ends(self.data, 0, at) + 1
 
     def line_numbers(self, places: Mapping[str, int]) -> dict[str, int]:
         """Return the 1-based line number of each byte offset, the line ends counted once for all of them."""
+        if self.index is not None:
+            found = np.searchsorted(self.index.ends, list(places.values())) + 1
+            return dict(zip(places, found.tolist(), strict=True))
         numbers: dict[str, int] = {}
         line, counted = 1, 0
         for name, at in sorted(places.items(), key=lambda item: item[1]):

@@ -53,7 +53,7 @@ def read(source: Source) -> Calculation:
         No normal end, an SCF that did not converge, no energy, values printed twice that do not
         agree, anything damaged; names file and line.
     """
-    text = Text(plain_lines(source))
+    text = Text(plain_lines(source)).indexed()
     layout.check_end(text)
     marks = layout.Layout(text)
     chosen = choice.choose(text, marks)

@@ -280,9 +280,9 @@ def _other(part: Text, final: Final, method: str | None) -> str:
 
 def _is_density(part: Text, method: str | None, functional: bool) -> bool:
     """Tell whether the SCF is one of a density functional."""
-    if part.has(b".... DFT(GTOs)"):
+    if part.find(b".... DFT(GTOs)") >= 0:  # near the beginning, where it is there
         return True
-    if part.has(b".... Hartree-Fock(GTOs)"):
+    if part.find(b".... Hartree-Fock(GTOs)") >= 0:
         return False
     if method is None and not functional:
         raise part.error(

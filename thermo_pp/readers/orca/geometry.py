@@ -97,7 +97,7 @@ def _block(text: Text, heading: int) -> Geometry:
     lines = text.data.count(b"\n", first, end)
     with suppress(KeyError, ValueError):
         if len(words) == 4 * lines:
-            table = np.array([[float(word) for word in words[i::4]] for i in (1, 2, 3)]).T
+            table = np.array([list(map(float, words[i::4])) for i in (1, 2, 3)]).T
             atoms = [NUMBERS[word.decode("ascii", "replace")] for word in words[::4]]
             if atoms and np.all(np.isfinite(table)):
                 return Geometry(first, np.array(atoms), table, tuple(range(lines)), 0, 0)
@@ -161,7 +161,7 @@ def masses(layout: Layout, geometry: Geometry) -> tuple[FloatArray, Origin, int 
     words = text.data[first : text.blank_line(first)].split()
     if geometry.rows == tuple(range(listed)) and len(words) == 8 * listed:
         with suppress(ValueError):
-            table = np.array([[float(word) for word in words[i::8]] for i in (4, 5, 6, 7)])
+            table = np.array([list(map(float, words[i::8])) for i in (4, 5, 6, 7)])
             apart = np.abs(table[1:].T * BOHR_ANGSTROM - geometry.positions_angstrom)
             if np.all(apart <= _PRINTED_TWICE * _scale(geometry)) and table[0].min() > 0.0:
                 return table[0], "printed", first

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import NUMBERS
 from thermo_pp.readers import joined_hessian
+from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.orca.geometry import Geometry
 from thermo_pp.readers.orca.vibrations import Vibrations
 from thermo_pp.readers.printed_matrix import printed_matrix
@@ -23,8 +24,8 @@ from thermo_pp.units import BOHR_ANGSTROM
 
 FloatArray = NDArray[np.float64]
 
-_NAME = re.compile(rb"\nNAME = ([^\n]*)")
-_BASE = re.compile(rb"\n\| *\d+> *%base +\"([^\"\n]+)\"", re.IGNORECASE)
+_NAME = b"\nNAME = "
+_BASE = re.compile(rb"\| *\d+> *%base +\"([^\"\n]+)\"", re.IGNORECASE)
 _MARK = b"$orca_hessian_file"
 _HESSIAN = re.compile(rb"\n\$hessian *\n *(\d+) *\n")
 _ATOMS = re.compile(rb"\n\$atoms *\n *(\d+) *\n")
@@ -35,10 +36,9 @@ _SAME_MASS = 2e-3
 
 def beside(text: Text) -> Source | None:
     """Return the file with the Hessian beside the output, None where there is none."""
-    names = [match.group(1) for match in _BASE.finditer(text.data, 0, min(text.end, 1 << 20))]
-    names += [
-        match.group(1).strip() for match in _NAME.finditer(text.data, 0, min(text.end, 1 << 20))
-    ]
+    start = text.part(0, min(text.end, 1 << 20))
+    names = [match.group(1) for match in matches(_BASE, b"%", text, 0, start.end)]
+    names += [text.rest(at + len(_NAME)).strip() for at in start.all(_NAME)]
     stems = [re.split(r"[/\\]", name.decode("utf-8", "replace"))[-1] for name in names[:4]]
     stems = [stem.removesuffix(".inp") for stem in stems]
     for stem in dict.fromkeys([*stems, text.source.file_name.rpartition(".")[0]]):

@@ -7,6 +7,7 @@ from bisect import bisect_left
 from dataclasses import dataclass
 from itertools import pairwise
 
+from thermo_pp.readers.line_index import LineIndex
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 INPUT_BYTES = 1 << 20
@@ -23,7 +24,7 @@ _FAILED = (
     b"ORCA TERMINATED ABNORMALLY",
 )
 
-_KEY = 8
+_RULE = b"\n-----"
 _HEADING = re.compile(rb"\n-----[- ]*\n[ |*]*([A-Za-z][A-Za-z -][^\n]*)")
 _FINAL = re.compile(
     rb"[ :]*(\([^()\n]*\))? *(-?\d+\.\d+)? *(\([^()\n]*\))?[ \t]*(?:\n|$)", re.MULTILINE
@@ -47,31 +48,33 @@ class Final:
 
 
 class Layout:
-    """The headings under rules of dashes, in order of their offsets; one pass over the file.
+    """The headings under rules of dashes, in order of their offsets.
 
     `blocks` keeps what was made of the block under a heading, so that it is made once.
     """
 
     def __init__(self, text: Text) -> None:
         self.text = text
-        self.offsets: list[int] = []
-        self.titles: list[bytes] = []
         self.blocks: dict[int, object] = {}
-        self._by_key: dict[bytes, list[int]] = {}
-        for match in _HEADING.finditer(text.data):
-            title = match.group(1).rstrip()
-            self._by_key.setdefault(title[:_KEY], []).append(len(self.offsets))
-            self.offsets.append(match.start(1))
-            self.titles.append(title)
+        self._by_title: dict[bytes, list[int]] = {}
+        index = text.index or LineIndex(text.data)
+        rules = index.above(_RULE, besides=b"\n-")
+        matches = [match for at in rules if (match := _HEADING.match(text.data, at)) is not None]
+        self.offsets = [match.start(1) for match in matches]
+        self.titles = [match.group(1).rstrip() for match in matches]
 
     def between(self, start: int, end: int) -> list[bytes]:
         """Return the headings from `start` up to `end`."""
         return self.titles[bisect_left(self.offsets, start) : bisect_left(self.offsets, end)]
 
     def all(self, title: bytes) -> list[int]:
-        """Return the offsets of the headings that begin with `title`, eight letters or more."""
-        known = self._by_key.get(title[:_KEY], [])
-        return [self.offsets[i] for i in known if self.titles[i].startswith(title)]
+        """Return the offsets of the headings that begin with `title`."""
+        found = self._by_title.get(title)
+        if found is None:
+            headings = zip(self.offsets, self.titles, strict=True)
+            found = [at for at, each in headings if each.startswith(title)]
+            self._by_title[title] = found
+        return found
 
     def last(self, title: bytes, end: int | None = None) -> int:
         """Return the offset of the last heading before `end` that begins with `title`, -1 without one."""
@@ -130,6 +133,9 @@ def finals(text: Text) -> list[Final]:
 def jobs(text: Text) -> list[tuple[int, int]]:
     """Return start and end of the jobs that one input file asks for; one of the whole text without any."""
     end = text.find(b"****END OF INPUT****")
-    several = end < 0 or b"$new_job" in text.data[max(end - INPUT_BYTES, 0) : end].lower()
+    begin = max(end - INPUT_BYTES, 0)
+    several = end < 0 or (
+        text.data.find(b"$", begin, end) >= 0 and b"$new_job" in text.data[begin:end].lower()
+    )
     marks = [match.start() for match in _JOB.finditer(text.data)] if several else []
     return list(pairwise([*marks, text.end])) if marks else [(0, text.end)]

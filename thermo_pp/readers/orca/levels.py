@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.orca.energies import Energy, is_without_scf
 from thermo_pp.readers.orca.layout import Layout
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -36,12 +37,13 @@ _HEADING = b"                INPUT FILE"
 _FIRST_LINE = b"\n|  1> "
 _END_OF_INPUT = b"****END OF INPUT****"
 _LINE = re.compile(rb"\n\| *(\d+)>")
-_BANG = re.compile(rb"^\|\s*\d+>\s*(?:[^\n]*?\W)?!([^\n]*)", re.MULTILINE)
+_BANG = re.compile(rb"\|\s*\d+>\s*(?:[^\n]*?\W)?!([^\n]*)")
 _FUNCTIONAL = re.compile(
     rb"^\|\s*\d+>[^\n#]*\bfunctional\s+([^\s#]+)", re.MULTILINE | re.IGNORECASE
 )
 _BASIS = b"Your calculation utilizes the basis:"
 _OWN_BASIS = re.compile(rb"^\|\s*\d+>[^\n#]*\b(?:newgto|addgto)\b", re.MULTILINE | re.IGNORECASE)
+_FROZEN_MARKS = (b"\nFrozen core treatment", b"\nFreezing NCore=")
 _FROZEN = re.compile(rb"\nFrozen core treatment +\.\.\. ([^\n]*)|\nFreezing NCore=(\d+)[^\n]*")
 _DISPERSION = re.compile(rb"\b(DFTD2|DFTD3|DFTD4|DFT-D2)\b")
 _WITH_DISPERSION = re.compile(
@@ -80,7 +82,7 @@ class Level:
 class Asked:
     """The input: its keywords, upper case, the functionals among them, where it stands, its text.
 
-    `only` tells whether it is that of the only job.
+    `only` tells whether it is that of the only job, `own_basis` whether it changes the basis set.
     """
 
     words: tuple[str, ...]
@@ -88,6 +90,7 @@ class Asked:
     at: int
     text: Text
     only: bool = True
+    own_basis: bool = False
 
     @property
     def method(self) -> str | None:
@@ -128,13 +131,18 @@ def asked(text: Text, before: int, job: int, jobs: int) -> Asked:
         if len(cuts) == jobs + 1:
             part = text.part(cuts[job], cuts[job + 1])
     words: list[str] = []
-    for line in _BANG.finditer(part.data, part.start, part.end):
+    for line in matches(_BANG, b"!", part, part.start, part.end):
+        if line.start() < part.start:  # the line with which this job of several begins
+            continue
         bare = line.group(1).partition(b"#")[0].decode("utf-8", "replace")
         words += bare.upper().replace("!", " ").split()
     functionals = [name for word in words if (name := _functional(word))]
-    for named in _FUNCTIONAL.finditer(part.data, part.start, part.end):
+    lower = part.data[part.start : part.end].lower()
+    in_block = b"functional" in lower
+    for named in _FUNCTIONAL.finditer(part.data, part.start, part.end) if in_block else ():
         functionals.append(named.group(1).decode("utf-8", "replace").upper().strip("\"'"))
-    return Asked(tuple(words), tuple(functionals), part.start, part, jobs == 1)
+    own_basis = _OWN_BASIS.search(lower) is not None if b"gto" in lower else False
+    return Asked(tuple(words), tuple(functionals), part.start, part, jobs == 1, own_basis)
 
 
 def _echo(text: Text, before: int) -> tuple[int, int] | None:
@@ -145,11 +153,12 @@ def _echo(text: Text, before: int) -> tuple[int, int] | None:
     ReadError
         An echo without its beginning or its end, or with a line missing: its lines are numbered.
     """
-    end = text.last(_END_OF_INPUT, before)
+    ends = [at for at in text.all(_END_OF_INPUT) if at + len(_END_OF_INPUT) <= before]
+    end = ends[-1] if ends else -1
     start = max(text.last(_FIRST_LINE, before), text.last(_HEADING, before))
     if start < 0 and end < 0:
         return None
-    if start > end or start < text.last(_END_OF_INPUT, max(end, 0)):
+    if start > end or start < (ends[-2] if len(ends) > 1 else -1):
         raise text.error(
             max(start, end), "an echo of the input without beginning or end", mend=CUT_SHORT
         )
@@ -218,8 +227,7 @@ def _basis(text: Text, end: int, first: bool, inputs: Asked, at: dict[str, int])
     if not name:
         return None
     at["basis"] = place
-    own = _OWN_BASIS.search(inputs.text.data, inputs.text.start, inputs.text.end)
-    return f"{name} with changes of the input" if own else name
+    return f"{name} with changes of the input" if inputs.own_basis else name
 
 
 def _dispersion(
@@ -280,7 +288,8 @@ def _grid(layout: Layout, part: Text, at: dict[str, int]) -> str | None:
     """Return the grid of the functional: the final one where there are two, none of those for exchange."""
     start = layout.last(b"SETTING UP THE FINAL GRID", part.end)
     start = start if start >= part.start else part.start
-    match = _GRID.search(part.data, start, part.end)
+    start = part.find(b"IntAcc", start)
+    match = None if start < 0 else _GRID.search(part.data, start, part.end)
     if match is None:
         return None
     at["grid"] = match.start()
@@ -290,9 +299,9 @@ def _grid(layout: Layout, part: Text, at: dict[str, int]) -> str | None:
 def _frozen_core(part: Text, energy: Energy, at: dict[str, int]) -> str | None:
     if energy.label in ("HF", "DFT"):
         return "none" if energy.label == "HF" else None
-    found = None
-    for found in _FROZEN.finditer(part.data, part.start, part.end):  # noqa: B007
-        pass
+    places = sorted(at for mark in _FROZEN_MARKS for at in part.all(mark))
+    lines = (_FROZEN.match(part.data, at, part.end) for at in reversed(places))
+    found = next((line for line in lines if line is not None), None)
     if found is None:
         return None
     at["frozen_core"] = found.start() + 1

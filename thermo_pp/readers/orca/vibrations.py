@@ -38,9 +38,10 @@ PRINTED_STEPS = 6.0
 
 _FIRST = re.compile(rb"\n +0: ")
 _ROW = re.compile(rb" *(\d+): +(-?\d+\.\d+) cm\*\*-1([^\n]*)\n")
+_DECIMALS = re.compile(rb"(?:\d+\.\d+(?: |$))*")
 _IMAGINARY = b"imaginary mode"
 _SCALE = re.compile(rb"Scaling factor for frequencies = +(\d+\.\d+)")
-_USED = re.compile(rb"^freq\. +(\d+\.\d+) +E\(vib\)", re.MULTILINE)
+_USED = re.compile(rb"freq\. +(\d+\.\d+) +E\(vib\)")
 _LENGTH = 2e-3
 _EH = rb" +(?:\.\.\. *)? *(-?\d+\.\d+) Eh"
 _VALUES: dict[str, re.Pattern[bytes]] = {
@@ -148,6 +149,9 @@ def _wavenumbers(part: Text, heading: int, count: int) -> tuple[int, FloatArray]
     if begin is None:
         raise part.error(heading, "no wavenumbers after this line", mend=CUT_SHORT)
     at = first = begin.start() + 1
+    plain = _plain_wavenumbers(part.data[first : part.blank_line(first)], count)
+    if plain is not None:
+        return first, plain
     values: list[float] = []
     while (match := _ROW.match(part.data, at, part.end)) is not None:
         value = float(match.group(2))
@@ -158,6 +162,19 @@ def _wavenumbers(part: Text, heading: int, count: int) -> tuple[int, FloatArray]
     if len(values) != count:
         raise part.expected(at, f"wavenumber {len(values)} of {count}")
     return first, np.array(values)
+
+
+def _plain_wavenumbers(lines: bytes, count: int) -> FloatArray | None:
+    """Return the wavenumbers of a table in which none is imaginary; None where any line is of another form."""
+    words = lines.split()
+    if lines.count(b"\n") != count:
+        return None
+    if words[::3] != [b"%d:" % i for i in range(count)] or words[2::3] != count * [b"cm**-1"]:
+        return None
+    digits = words[1::3]
+    if len(words) != 3 * count or _DECIMALS.fullmatch(b" ".join(digits)) is None:
+        return None
+    return np.array(list(map(float, digits)))
 
 
 def _modes(part: Text, heading: int, count: int) -> tuple[FloatArray, int]:
@@ -202,7 +219,7 @@ def _whole_table(part: Text, first: int, count: int) -> FloatArray | None:
     """Return the columns of the table of modes in one go; None where a line of it is not as expected."""
     columns = np.empty((count, count))
     rows = [b"%d" % row for row in range(count)]
-    at, done, end = first, 0, part.blank_line(first)
+    at, done, end = first, 0, part.end
     while done < count:
         width = min(6, count - done)
         blocks = (count - done) // width  # all those of six columns at once
@@ -242,7 +259,8 @@ def _check_used(
     section: Text, wavenumbers: FloatArray, printed: dict[str, tuple[str, str, int]]
 ) -> None:
     """Compare the wavenumbers that the thermochemistry lists with the real ones among the modes."""
-    listed = list(_USED.finditer(section.data, section.start, section.end))
+    lines = [_USED.match(section.data, at + 1, section.end) for at in section.all(b"\nfreq.")]
+    listed = [match for match in lines if match is not None]
     real = wavenumbers[wavenumbers > 0.0]
     used = np.sort([float(match.group(1)) for match in listed])
     if listed:
