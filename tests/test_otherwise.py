@@ -102,6 +102,7 @@ def test_the_lowest_conformer_has_frequencies_of_another(tmp_path: Path) -> None
 
 
 TUNNELS = edited(
+    ('enthalpy = "80 kJ/mol"', 'enthalpy = "35 kJ/mol"'),  # so that both ways count
     ('entropy = "310 J/mol/K"', 'entropy = "310 J/mol/K"\nimaginary_mode = "1400 cm^-1"'),
     ('entropy = "370 J/mol/K"', 'entropy = "370 J/mol/K"\nimaginary_mode = "900 cm^-1"'),
     ('through = "TS2"', 'through = "TS2"\ntunnelling = "wigner"'),
@@ -127,8 +128,8 @@ def test_a_step_s_own_word_on_tunnelling_gives_way(tmp_path: Path) -> None:
         other = load(tmp_path, text).effective().rates["free"]
         assert other is not None
         worth = np.log(other.rate_constant / base.rate_constant)
-        assert row.change[tried[name]] == pytest.approx(worth, abs=1e-12)
-        assert np.all(abs(worth) > (1e-11 if name == "wigner" else 1e-2))
+        assert row.change[tried[name]] == pytest.approx(worth, abs=1e-9)
+        assert np.all(abs(worth) > 1e-4)
     assert np.isnan(row.change[tried["eckart"]]).all()
     [refused] = [one for one in found.findings if one.code == "choice-not-made"]
     assert refused.what.startswith("tunnelling cannot be eckart: the Eckart barrier of ")
