@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding, StudyError, ThermoError
 from thermo_pp.kinetics.model import Model
 from thermo_pp.names import DEFINITIONS, Definition
+from thermo_pp.rich import shown
 from thermo_pp.study.otherwise import (
     ONSETS_CM,
     SCALES,
@@ -98,7 +99,7 @@ class Choices:
         )
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def choices(

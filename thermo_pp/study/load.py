@@ -21,6 +21,7 @@ from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.names import Duplicates, PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
+from thermo_pp.rich import shown
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
 from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
@@ -34,6 +35,8 @@ from thermo_pp.study.reactions import anchor_species
 from thermo_pp.study.uncertainty import check_unused, make_uncertainty
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.fits import Fit
     from thermo_pp.functions.formation import Formations
@@ -344,6 +347,31 @@ class Study:
         """Make a study of what `recipe` of another one returned."""
         *origin, level = recipe
         return cls._made(_Origin(*origin), level)
+
+    def table(self) -> pd.DataFrame:
+        """Return one row a species, as plain values.
+
+        Columns: ``species, kind, composition, charge, energy_hartree`` (None where it is declared or has
+        conformers), ``files``.
+        """
+        import pandas as pd
+
+        return pd.DataFrame(
+            {
+                "species": name,
+                "kind": model.kind,
+                "composition": " ".join(f"{el}{n}" for el, n in model.composition.items()),
+                "charge": model.charge,
+                "energy_hartree": energy.value_hartree
+                if (energy := self.energies.get(name)) is not None
+                else None,
+                "files": ", ".join(model.files),
+            }
+            for name, model in self.species.items()
+        )
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())
 
     def choices(self, **options: Any) -> Choices:
         """Return what each choice is worth; see `thermo_pp.study.choices.choices`."""
