@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -55,6 +56,12 @@ def test_what_is_tried(found: Choices) -> None:
         ("scale factors", "times 0.99"),
         ("scale factors", "times 1.01"),
         ("handedness", "one hand"),
+        ("tunnelling", "wigner"),
+        ("tunnelling", "eckart"),
+        ("level of theory", "MP2/aug-cc-pV(T+d)Z"),
+        ("level of theory", "MP2/aug-cc-pV(Q+d)Z"),
+        ("level of theory", "CCSD(T)/cc-pV(D+d)Z"),
+        ("level of theory", "composite"),
     ]
     assert not any(np.isnan(row.change).any() for row in found.rows)
 
@@ -89,20 +96,23 @@ def test_a_barrier_changes_by_what_its_species_change(found: Choices) -> None:
 
 
 @pytest.mark.parametrize(
-    ("choice", "instead", "treatment"),
+    ("choice", "instead", "options"),
     [
-        ("soft modes", "harmonic", {"low_modes": "harmonic"}),
-        ("onset", "150 cm^-1", {"onset": 150.0}),
-        ("rotor", "classical", {"rotor": "classical"}),
+        ("soft modes", "harmonic", {"treatment": {"low_modes": "harmonic"}}),
+        ("onset", "150 cm^-1", {"treatment": {"onset": 150.0}}),
+        ("rotor", "classical", {"treatment": {"rotor": "classical"}}),
+        ("tunnelling", "eckart", {"treatment": {"tunnelling": "eckart"}}),
+        ("level of theory", "composite", {"level": "composite"}),
     ],
 )
 def test_as_the_study_loaded_that_way(
-    found: Choices, plume: Study, choice: str, instead: str, treatment: dict[str, object]
+    found: Choices, plume: Study, choice: str, instead: str, options: dict[str, Any]
 ) -> None:
-    other = Study.load(PLUME, temperatures=T, treatment=treatment)
+    other = Study.load(PLUME, temperatures=T, **options)
     mine, base = other.effective().rates["pool"], plume.effective().rates["pool"]
     assert mine is not None
     assert base is not None
+    assert abs(np.log(mine.rate_constant / base.rate_constant)).max() > 1e-3
     assert change(found, choice, instead, "C2") == pytest.approx(
         other.species["C2"].at(T).gibbs_kj_mol - plume.species["C2"].at(T).gibbs_kj_mol, abs=1e-9
     )
@@ -139,7 +149,16 @@ def test_what_is_declared_does_not_change(tmp_path: Path) -> None:
     study = load(tmp_path, TEXT)
     found = study.choices()
     assert {row.kind for row in found.rows} == {"species", "barrier", "rate"}
-    assert all(np.all(row.change == 0.0) for row in found.rows)
+    tunnels = np.array([one.choice == "tunnelling" for one in found.alternatives])
+    assert list(tunnels).count(True) == 2
+    for row in found.rows:  # the saddle points have no imaginary mode, so nothing is made of those
+        assert np.isnan(row.change[tunnels]).all()
+        assert np.all(row.change[~tunnels] == 0.0)
+    told = [finding.what for finding in found.findings]
+    assert [what.split(":")[0] for what in told] == [
+        "tunnelling cannot be wigner",
+        "tunnelling cannot be eckart",
+    ]
 
 
 def test_without_a_question_there_is_no_rate(tmp_path: Path) -> None:
@@ -172,7 +191,7 @@ def test_the_command(form: str) -> None:
     if form == "json":
         answer = json.loads(done.stdout)
         assert answer["format"] == "thermo-pp/choices/1"
-        assert len(answer["quantities"][0]["change"]) == len(answer["alternatives"]) == 11
+        assert len(answer["quantities"][0]["change"]) == len(answer["alternatives"]) == 17
     else:
         assert "-4.44" in done.stdout  # RT ln 6 of SO3
 

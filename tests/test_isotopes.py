@@ -311,6 +311,10 @@ def test_kinetic_isotope_effect_of_a_real_step(tmp_path: Path) -> None:
     assert step.forward_without_symmetry == pytest.approx(step.harmonic_forward, rel=2e-4)
     assert 4.0 < expected < 6.0
     assert step.tunnelling == pytest.approx([1.0])
+    frame = effects.table().set_index(["kind", "name"])
+    assert frame.effect["step", "C2 = acid + W"] == step.forward[0]
+    assert list(frame.effect["rate"]) == [rate.effect[0] for rate in effects.rates]
+    assert "<table" in effects._repr_html_()
     for one in effects.species:
         assert one.log_full_ratio(t) == pytest.approx(
             one.log_reduced_ratio(np.array([t])), abs=1e-4

@@ -16,7 +16,7 @@ import thermo_pp
 PACKAGE = Path(thermo_pp.__file__).parent
 
 FLOORS: tuple[tuple[str, ...], ...] = (
-    ("names", "errors", "nearest", "units"),  # 1
+    ("names", "errors", "nearest", "units", "rich"),  # 1
     (
         "data",
         "formulas",

@@ -247,6 +247,7 @@ def test_flow_of_one_irreversible_step(tmp_path: Path) -> None:
     made = study(tmp_path, f"temperatures = [{T}]\n{flow}", members,
                  [("A + A = P", 'arrhenius = { A = "1e4 L/mol/s", E = "20 kJ/mol" }')], AP)  # fmt: skip
     result = made.flow()
+    assert "A mol/L" in result._repr_html_()
     k = 1e4 * np.exp(-20e3 / (GAS_J_MOL_K * T))
     a = (np.sqrt(1.0 + 8.0 * k * 5.0 * 0.4) - 1.0) / (4.0 * k * 5.0)
     assert result.concentration_mol_l["A"][0] == pytest.approx(a, rel=1e-12)

@@ -16,6 +16,7 @@ from thermo_pp.mechanism import Mechanism, parse_equation, write_sum
 from thermo_pp.names import LOW_MODES, Kind, LowModes
 from thermo_pp.paths import Path, filled_up, find_paths
 from thermo_pp.paths import State as Place
+from thermo_pp.rich import shown
 from thermo_pp.species import SpeciesModel, Thermochemistry
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -119,7 +120,7 @@ class Profile:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 class StudyLike(Protocol):

@@ -27,8 +27,9 @@ def choices(
 ) -> None:
     """Make every choice of STUDY (a TOML file) otherwise, one at a time, and give what changes.
 
-    Soft modes and their onset, symmetry numbers, masses, rotor, scale factors and handedness; the
-    change in G of every species, in every barrier, and in the effective rate where there is one.
+    Soft modes and their onset, symmetry numbers, torsions, conformers, masses, rotor, scale factors,
+    handedness, tunnelling and named levels of theory; the change in G of every species, in every
+    barrier, and in the effective rate where there is one.
 
     \b
     Example:

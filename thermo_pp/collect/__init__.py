@@ -18,6 +18,7 @@ from thermo_pp.collect.walk import Skipped, walk
 from thermo_pp.collect.workers import one_thread
 from thermo_pp.errors import Finding, ReadError
 from thermo_pp.records import Calculation
+from thermo_pp.rich import shown
 
 __all__ = ["Cache", "Collection", "Outcome", "Paths", "PerFile", "Progress", "Skipped", "gather"]
 
@@ -83,7 +84,7 @@ class Collection:
         return pd.DataFrame(rows, columns=list(COLUMNS))
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def gather(

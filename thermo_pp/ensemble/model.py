@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -17,9 +18,13 @@ from thermo_pp.ensemble.hands import counted
 from thermo_pp.errors import Finding, each_once
 from thermo_pp.formulas.mixture import Mixture, Sums, mixed, part
 from thermo_pp.names import Duplicates, Kind, LowModes
+from thermo_pp.rich import shown
 from thermo_pp.species import SaddleMember, SpeciesModel, Structure, Thermochemistry
 from thermo_pp.species.result import Part
 from thermo_pp.units import GAS_J_MOL_K
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 FloatArray = NDArray[np.float64]
 
@@ -223,6 +228,31 @@ class Ensemble:
         result = self._once(t, low_modes, standard_state, gibbs)
         g = np.array([member.degeneracy for member in self.members])
         return result, distribution(t, g, gibbs, missed_kj_mol)
+
+    def table(self) -> pd.DataFrame:
+        """Return one row a member, as plain values; members are numbered from 1.
+
+        Columns: ``member, file, degeneracy, ground_kj_mol`` (electronic and zero-point energy, nan
+        where it is not known), ``same_as, mirror_of`` (members), ``thermal_from``.
+        """
+        import pandas as pd
+
+        grounds = ground_energies([member.model for member in self.members])
+        return pd.DataFrame(
+            {
+                "member": number,
+                "file": member.file,
+                "degeneracy": member.degeneracy,
+                "ground_kj_mol": ground,
+                "same_as": None if member.same_as is None else member.same_as + 1,
+                "mirror_of": None if member.mirror_of is None else member.mirror_of + 1,
+                "thermal_from": member.thermal_from,
+            }
+            for number, (member, ground) in enumerate(zip(self.members, grounds, strict=True), 1)
+        )
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())
 
     def _once(
         self,

@@ -11,6 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 from thermo_pp.conditions import StandardState
 from thermo_pp.errors import Finding
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind, LowModes
+from thermo_pp.rich import shown
 from thermo_pp.species import SpeciesModel
 
 if TYPE_CHECKING:
@@ -86,7 +87,7 @@ class Functions:
         )
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def functions(

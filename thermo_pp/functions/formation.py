@@ -15,6 +15,7 @@ from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.partition import electronic
 from thermo_pp.mechanism import write_reaction
 from thermo_pp.names import DEFAULT_TEMPERATURE_K
+from thermo_pp.rich import shown
 from thermo_pp.species import SpeciesModel
 from thermo_pp.units import GAS_J_MOL_K, WAVENUMBER_KJ_MOL
 
@@ -162,7 +163,7 @@ class Formations:
         )
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def formations(question: FormationQuestion, species: Mapping[str, SpeciesModel]) -> Formations:

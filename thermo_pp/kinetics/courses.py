@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.results import freeze_arrays
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -122,3 +123,6 @@ class Transient:
                     row["rate_mol_l_s"] = course.rate_mol_l_s[k]
                 rows.append(row)
         return pd.DataFrame(rows)
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())

@@ -16,6 +16,7 @@ from thermo_pp.kinetics.mass_action import System
 from thermo_pp.kinetics.results import freeze_arrays
 from thermo_pp.kinetics.start import Start, systems
 from thermo_pp.kinetics.stationary import NoSteadyState, Steady, at_rest, settle
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -90,6 +91,9 @@ class FlowState:
             columns["rate_mol_l_s"] = self.rate_mol_l_s
             columns["arrhenius_energy_kj_mol"] = self.arrhenius_energy_kj_mol
         return pd.DataFrame(columns)
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())
 
 
 def flow(study: StudyLike, *, temperature_k: Sequence[float] | None = None) -> FlowState:

@@ -17,8 +17,11 @@ from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.results import freeze_arrays
 from thermo_pp.mechanism import Step
 from thermo_pp.names import Definition
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from thermo_pp.kinetics.asked import StudyLike
 
 FloatArray = NDArray[np.float64]
@@ -111,6 +114,33 @@ class IsotopeEffects:
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
+
+    def table(self) -> pd.DataFrame:
+        """Return one row a step or effective rate and temperature: isotope effects, light over heavy.
+
+        Columns: ``kind`` (step, rate), ``name`` (equation or definition), ``temperature_k, effect`` (on
+        the forward or the effective rate constant), ``without_symmetry``.
+        """
+        import pandas as pd
+
+        named = [
+            *(("step", s.equation, s.forward, s.forward_without_symmetry) for s in self.steps),
+            *(("rate", r.definition, r.effect, r.without_symmetry) for r in self.rates),
+        ]
+        return pd.DataFrame(
+            {
+                "kind": kind,
+                "name": name,
+                "temperature_k": temperature,
+                "effect": effect[k],
+                "without_symmetry": bare[k],
+            }
+            for kind, name, effect, bare in named
+            for k, temperature in enumerate(self.temperature_k)
+        )
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())
 
 
 def isotope_effects(

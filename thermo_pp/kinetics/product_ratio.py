@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.results import Window, freeze_arrays
 from thermo_pp.names import SelectivityKind
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -153,4 +154,4 @@ class Selectivity:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.kinetics.results import WITHIN, SignChange, freeze_arrays
 from thermo_pp.names import Definition
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -204,4 +205,4 @@ class Regimes:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
 from thermo_pp.names import Constant, Definition, Tunnelling
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -323,4 +324,4 @@ class EffectiveRate:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())

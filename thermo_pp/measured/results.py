@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,6 +13,10 @@ from thermo_pp.errors import Finding
 from thermo_pp.kinetics.results import freeze_arrays
 from thermo_pp.measured.fits import Form
 from thermo_pp.measured.rows import Expression, Measurements, Point
+from thermo_pp.rich import shown
+
+if TYPE_CHECKING:
+    import pandas as pd
 
 FloatArray = NDArray[np.float64]
 
@@ -273,3 +278,52 @@ class Comparison:
     rivals: tuple[Rival, ...]
     words: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
+
+    def table(self) -> pd.DataFrame:
+        """Return one row a measured point, then one a computed curve and temperature, plain numbers.
+
+        Columns: ``kind`` (point, curve), ``name, lines`` (of the file), ``definition, unit,
+        temperature_k, computed, measured`` (both in `unit`), ``log_ratio`` (ln of measured over computed,
+        of points), ``computed_energy_kj_mol, measured_energy_kj_mol``; nan where there is none.
+        """
+        import pandas as pd
+
+        rows: list[dict[str, object]] = [
+            {
+                "kind": "point",
+                "name": beside.point.source,
+                "lines": str(beside.point.line),
+                "definition": beside.point.definition,
+                "unit": beside.point.unit.text,
+                "temperature_k": beside.point.temperature_k,
+                "computed": beside.computed,
+                "measured": beside.point.rate_constant,
+                "log_ratio": beside.log_ratio,
+                "computed_energy_kj_mol": np.nan,
+                "measured_energy_kj_mol": np.nan,
+            }
+            for beside in self.points
+        ]
+        for curve in self.curves:
+            none = np.full(curve.temperature_k.shape, np.nan)
+            measured, energy = curve.measured, curve.measured_energy_kj_mol
+            rows += [
+                {
+                    "kind": "curve",
+                    "name": curve.name,
+                    "lines": ", ".join(map(str, curve.lines)),
+                    "definition": curve.definition,
+                    "unit": curve.unit,
+                    "temperature_k": temperature,
+                    "computed": curve.computed[k],
+                    "measured": (none if measured is None else measured)[k],
+                    "log_ratio": np.nan,
+                    "computed_energy_kj_mol": curve.arrhenius_energy_kj_mol[k],
+                    "measured_energy_kj_mol": (none if energy is None else energy)[k],
+                }
+                for k, temperature in enumerate(curve.temperature_k)
+            ]
+        return pd.DataFrame(rows)
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())

@@ -19,7 +19,8 @@ from thermo_pp.output.tables import (
     energy_column,
     in_unit,
 )
-from thermo_pp.study.choices import Alternative, Choices, Worth
+from thermo_pp.study.choices import Choices, Worth
+from thermo_pp.study.otherwise import Alternative
 
 _TITLES = {
     "species": "Change of G of each species",

@@ -12,6 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 from thermo_pp.conditions import StandardState
 from thermo_pp.errors import Finding
 from thermo_pp.names import LOW_MODES, Kind, LowModes, Origin, RotorKind
+from thermo_pp.rich import shown
 from thermo_pp.species.ideal_gas import seal
 
 if TYPE_CHECKING:
@@ -190,7 +191,7 @@ class Thermochemistry:
         return pd.DataFrame(columns)
 
     def _repr_html_(self) -> str:
-        return str(self.parts().to_html())
+        return shown(self.parts())
 
 
 _PART_COLUMNS = ("enthalpy_kj_mol", "entropy_j_mol_k", "gibbs_kj_mol", "heat_capacity_j_mol_k")

@@ -3,64 +3,29 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
 from functools import cached_property
-from pathlib import Path
-from typing import TYPE_CHECKING, Any, Protocol
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.conditions import Treatment
-from thermo_pp.errors import Finding, StudyError
-from thermo_pp.kinetics.asked import StudyLike as EffectiveStudy
+from thermo_pp.errors import Finding, StudyError, ThermoError
 from thermo_pp.kinetics.model import Model
-from thermo_pp.names import DEFINITIONS, LOW_MODES, Definition
+from thermo_pp.names import DEFINITIONS, Definition
+from thermo_pp.rich import shown
+from thermo_pp.study.otherwise import (
+    ONSETS_CM,
+    SCALES,
+    Alternative,
+    StudyLike,
+    alternatives,
+)
 
 if TYPE_CHECKING:
     import pandas as pd
 
 FloatArray = NDArray[np.float64]
-
-
-class StudyLike(EffectiveStudy, Protocol):
-    """What this needs of a study."""
-
-    @property
-    def path(self) -> Path: ...  # noqa: D102
-    @property
-    def read_species(self) -> tuple[str, ...]: ...  # noqa: D102
-    def altered(  # noqa: D102
-        self, treatment: Mapping[str, Any], species: Mapping[str, Mapping[str, Any]]
-    ) -> StudyLike: ...
-
-
-ONSETS_CM = (50.0, 150.0)
-SCALES = (0.99, 1.01)
-"""Factors of the scale factors that are tried."""
-
-
-@dataclass(frozen=True)
-class Alternative:
-    """One choice made otherwise.
-
-    Attributes
-    ----------
-    choice : str
-        What is chosen: ``"soft modes"``.
-    taken, instead : str
-        As the study has it, and what is tried.
-    treatment : mapping of str to object
-        Keys of ``[treatment]`` in place of the study's.
-    species : mapping of str to mapping
-        Keys of species in place of the study's.
-    """
-
-    choice: str
-    taken: str
-    instead: str
-    treatment: Mapping[str, Any] = field(default_factory=dict)
-    species: Mapping[str, Mapping[str, Any]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, eq=False)
@@ -134,7 +99,7 @@ class Choices:
         )
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def choices(
@@ -142,9 +107,8 @@ def choices(
 ) -> Choices:
     """Make each choice of a study otherwise, one at a time, and return what that changes.
 
-    Soft-mode treatment (the other three), its onset, symmetry numbers (1), masses, rotor, scale
-    factors (both times a factor, and 1 where the study has others) and handedness. Free energies are in
-    the study's standard states; rates are at its conditions.
+    What is tried: see `thermo_pp.study.otherwise.alternatives`. Free energies are in the study's
+    standard states; rates are at its conditions.
 
     Parameters
     ----------
@@ -161,9 +125,9 @@ def choices(
     change = np.full((len(quantities), len(tried), len(t)), np.nan)
     for a, alternative in enumerate(tried):
         try:
-            other = _Made(study.altered(alternative.treatment, alternative.species))
+            other = _Made(alternative.of(study))
             values = [quantity.of(other) for quantity in quantities]
-        except StudyError as error:
+        except ThermoError as error:
             findings.append(not_made(alternative, error))
             continue
         findings += _new_doubts(alternative, study, other.study)
@@ -174,59 +138,6 @@ def choices(
         for q, quantity in enumerate(quantities)
     )
     return Choices(t, tried, rows, tuple(findings))
-
-
-def alternatives(
-    study: StudyLike, onsets_cm: Sequence[float], scales: Sequence[float]
-) -> tuple[Alternative, ...]:
-    """Return every choice that can be made otherwise."""
-    own = study.treatment
-    low = [
-        Alternative("soft modes", own.low_modes, name, {"low_modes": name})
-        for name in LOW_MODES
-        if name != own.low_modes
-    ]
-    onsets = [
-        Alternative("onset", f"{own.onset_cm:g} cm^-1", f"{onset:g} cm^-1", {"onset": onset})
-        for onset in onsets_cm
-        if onset != own.onset_cm and own.low_modes != "harmonic"
-    ]
-    masses = "program" if own.masses == "average" else "average"
-    rotor = "auto" if own.rotor == "classical" else "classical"
-    hands = "both hands" if own.enantiopure else "one hand"
-    return (
-        *low,
-        *onsets,
-        Alternative(
-            "symmetry number",
-            "as it is",
-            "1",
-            species={name: {"symmetry_number": 1} for name in study.read_species},
-        ),
-        Alternative("masses", own.masses, masses, {"masses": masses}),
-        Alternative("rotor", own.rotor, rotor, {"rotor": rotor}),
-        *_scales(own, scales),
-        Alternative(
-            "handedness",
-            "one hand" if own.enantiopure else "both hands",
-            hands,
-            {"enantiopure": not own.enantiopure},
-        ),
-    )
-
-
-def _scales(own: Treatment, factors: Sequence[float]) -> list[Alternative]:
-    """Return both scale factors times a factor, and without any where there are some."""
-    pair = own.frequency_scale, own.zero_point_scale
-    taken = f"{pair[0]:g}" if pair[0] == pair[1] else f"{pair[0]:g} and {pair[1]:g}"
-    found = []
-    for factor in factors:
-        keys = {"frequency_scale": pair[0] * factor, "zero_point_scale": pair[1] * factor}
-        found.append(Alternative("scale factors", taken, f"times {factor:g}", keys))
-    if pair != (1.0, 1.0):
-        keys = {"frequency_scale": 1.0, "zero_point_scale": 1.0}
-        found.append(Alternative("scale factors", taken, "1", keys))
-    return found
 
 
 @dataclass(frozen=True)
@@ -327,7 +238,7 @@ def _new_doubts(alternative: Alternative, study: StudyLike, other: StudyLike) ->
     ]
 
 
-def not_made(alternative: Alternative, error: StudyError) -> Finding:
+def not_made(alternative: Alternative, error: ThermoError) -> Finding:
     """Return the finding that an alternative cannot be made."""
     return Finding(
         "choice-not-made",

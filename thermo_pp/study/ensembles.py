@@ -76,7 +76,13 @@ class _Entry:
 
 
 def make_ensemble(
-    name: str, species: SpeciesKeys, duplicates: Duplicates, making: Making, where: str
+    name: str,
+    species: SpeciesKeys,
+    duplicates: Duplicates,
+    making: Making,
+    where: str,
+    *,
+    lowest_only: bool = False,
 ) -> tuple[Ensemble, list[Finding]]:
     """Return the ensemble of a species, and the findings about frequencies that are lent.
 
@@ -89,6 +95,8 @@ def make_ensemble(
     making : Making
     where : str
         File and table, for messages.
+    lowest_only : bool
+        The conformer of least electronic and zero-point energy alone, as if no other were listed.
 
     Raises
     ------
@@ -105,16 +113,23 @@ def make_ensemble(
         for entry in entries
     ]
     lent = [entry.reading.lent if entry.reading else None for entry in entries]
-    ensemble = Ensemble.make(
-        models,
-        name=name,
-        duplicates=duplicates,
-        spin_states=species.spin_states,
-        degeneracies=[given(entry.keys.degeneracy) for entry in entries],
-        thermal_from=[one.source if one else None for one in lent],
-        where=f"{where} conformers",
-    )
-    return ensemble, [one.finding for one in lent if one]
+
+    def ensemble(rows: Sequence[int]) -> Ensemble:
+        sources = [lent[row] for row in rows]
+        return Ensemble.make(
+            [models[row] for row in rows],
+            name=name,
+            duplicates=duplicates,
+            spin_states=species.spin_states,
+            degeneracies=[given(entries[row].keys.degeneracy) for row in rows],
+            thermal_from=[one.source if one else None for one in sources],
+            where=f"{where} conformers",
+        )
+
+    found = ensemble(range(len(models)))
+    if lowest_only:
+        found = ensemble([found.members.index(found.lowest)])
+    return found, [one.finding for one in lent if one]
 
 
 def is_read(species: SpeciesKeys) -> bool:

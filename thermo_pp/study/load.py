@@ -21,6 +21,7 @@ from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.names import Duplicates, PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
+from thermo_pp.rich import shown
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
 from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
@@ -34,6 +35,8 @@ from thermo_pp.study.reactions import anchor_species
 from thermo_pp.study.uncertainty import check_unused, make_uncertainty
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.fits import Fit
     from thermo_pp.functions.formation import Formations
@@ -174,7 +177,15 @@ class Study:
             level = keys.level if isinstance(keys.level, str) else None
         else:
             known_level(keys, level, file)
-        members = make_species(keys, own, saddles, file, level=level, read=origin.read)
+        members = make_species(
+            keys,
+            own,
+            saddles,
+            file,
+            level=level,
+            read=origin.read,
+            lowest_only=origin.lowest_only,
+        )
         species, measured = anchor_species(keys.steps, steps, members.species, own.phase, file)
         used = {name for step in steps for name in step.species} | saddles
         in_steps = {name: model for name, model in species.items() if name in used}
@@ -241,17 +252,34 @@ class Study:
         """The outputs that were read, by the name under which a species has them."""
         return MappingProxyType({} if self._origin is None else self._origin.read)
 
+    @property
+    def tables(self) -> Mapping[str, Any]:
+        """The tables of the study file with the options in them; empty where there is no file."""
+        return MappingProxyType({} if self._origin is None else dict(self._origin.data))
+
     def altered(
-        self, treatment: Mapping[str, Any], species: Mapping[str, Mapping[str, Any]]
+        self,
+        treatment: Mapping[str, Any],
+        species: Mapping[str, Mapping[str, Any]],
+        *,
+        steps: Mapping[int, Mapping[str, Any]] | None = None,
+        level: str | None = None,
+        lowest_only: bool = False,
     ) -> Study:
         """Return the study with other keys, checked like those of the file; no output is read again.
 
         Parameters
         ----------
         treatment : mapping
-            Keys of ``[treatment]`` in place of the study's.
+            Keys of ``[treatment]`` in place of the study's; None takes a key out, here and below.
         species : mapping of str to mapping
             Keys of species in place of the study's.
+        steps : mapping of int to mapping or None
+            Keys of steps, which are numbered from 0.
+        level : str or None
+            A named level of theory in place of the study's energies; its outputs are read.
+        lowest_only : bool
+            Of several conformers, the one of least electronic and zero-point energy alone.
 
         Raises
         ------
@@ -260,13 +288,17 @@ class Study:
         """
         if self._origin is None:
             raise ValueError("a study that was not loaded from a file has no keys to change")
-        data = self._origin.data
-        tables = {**data["species"]}
+        data = dict(self._origin.data)
+        data["treatment"] = _with(_table(data, "treatment"), treatment)
+        data["species"] = dict(data["species"])
         for name, keys in species.items():
-            tables[name] = {**tables[name], **keys}
-        own = {**_table(data, "treatment"), **treatment}
-        origin = replace(self._origin, data={**data, "treatment": own, "species": tables})
-        return self._made(origin, self.level)
+            data["species"][name] = _with(data["species"][name], keys)
+        data["steps"] = list(data.get("steps", ()))
+        for number, keys in (steps or {}).items():
+            data["steps"][number] = _with(data["steps"][number], keys)
+        only = self._origin.lowest_only or lowest_only
+        origin = replace(self._origin, data=data, lowest_only=only)
+        return self._made(origin, level or self.level)
 
     def changed(self, changes: Mapping[str, Any]) -> Study:
         """Return the study with other values at dotted keys of its file; no output is read again.
@@ -307,13 +339,39 @@ class Study:
         if self._origin is None:
             raise ValueError("a study that was not loaded from a file cannot be made again")
         origin = self._origin
-        return origin.data, origin.file, origin.temperatures, dict(origin.read), self.level
+        made_of = (origin.data, origin.file, origin.temperatures, dict(origin.read))
+        return *made_of, origin.lowest_only, self.level
 
     @classmethod
     def from_recipe(cls, recipe: tuple[Any, ...]) -> Study:
         """Make a study of what `recipe` of another one returned."""
         *origin, level = recipe
         return cls._made(_Origin(*origin), level)
+
+    def table(self) -> pd.DataFrame:
+        """Return one row a species, as plain values.
+
+        Columns: ``species, kind, composition, charge, energy_hartree`` (None where it is declared or has
+        conformers), ``files``.
+        """
+        import pandas as pd
+
+        return pd.DataFrame(
+            {
+                "species": name,
+                "kind": model.kind,
+                "composition": " ".join(f"{el}{n}" for el, n in model.composition.items()),
+                "charge": model.charge,
+                "energy_hartree": energy.value_hartree
+                if (energy := self.energies.get(name)) is not None
+                else None,
+                "files": ", ".join(model.files),
+            }
+            for name, model in self.species.items()
+        )
+
+    def _repr_html_(self) -> str:
+        return shown(self.table())
 
     def choices(self, **options: Any) -> Choices:
         """Return what each choice is worth; see `thermo_pp.study.choices.choices`."""
@@ -478,12 +536,16 @@ class Study:
 
 @dataclass(frozen=True, eq=False)
 class _Origin:
-    """What a study is made of: the file's tables with the options, and the outputs read so far."""
+    """What a study is made of: the file's tables with the options, and the outputs read so far.
+
+    With `lowest_only`, of several conformers the lowest counts alone.
+    """
 
     data: Mapping[str, Any]
     file: str
     temperatures: tuple[Any, ...] | None
     read: dict[str, Calculation]
+    lowest_only: bool = False
 
 
 _EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}
@@ -520,6 +582,11 @@ def _is_read(keys: Mapping[str, Any]) -> bool:
         or isinstance(listed, Mapping)
         or any("composition" not in one for one in listed)
     )
+
+
+def _with(table: Mapping[str, Any], keys: Mapping[str, Any]) -> dict[str, Any]:
+    """Return a table with other keys; None takes one out."""
+    return {key: value for key, value in {**table, **keys}.items() if value is not None}
 
 
 def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:

@@ -103,6 +103,7 @@ class _Maker:
     outputs: Path
     level: str | None = None
     read: dict[str, Calculation] = field(default_factory=dict)
+    lowest_only: bool = False
     done: dict[str, SpeciesModel] = field(default_factory=dict)
     findings: list[Finding] = field(default_factory=list)
     frequencies: dict[str, Calculation] = field(default_factory=dict)
@@ -118,6 +119,7 @@ def make_species(
     *,
     level: str | None = None,
     read: dict[str, Calculation] | None = None,
+    lowest_only: bool = False,
 ) -> Members:
     """Read or make every species of a study.
 
@@ -134,6 +136,8 @@ def make_species(
         The named level of theory whose energies are taken; None: the species' own.
     read : dict or None
         Outputs that were read before, by path; those read now are added.
+    lowest_only : bool
+        Of several conformers, the one of least electronic and zero-point energy alone.
 
     Raises
     ------
@@ -151,7 +155,7 @@ def make_species(
             mend="name the folder of the outputs, from the folder of the study file",
         )
     known = {} if read is None else read
-    maker = _Maker(keys, treatment, saddles, file, folder, outputs, level, known)
+    maker = _Maker(keys, treatment, saddles, file, folder, outputs, level, known, lowest_only)
     for name, member in keys.species.items():
         _check_member(name, member, keys.species, file)
     for name in keys.species:
@@ -358,7 +362,10 @@ def _ensemble(
         declared,
     )
     where = place(maker.file, "species", name)
-    found, findings = make_ensemble(name, member, maker.keys.treatment.duplicates, making, where)
+    duplicates = maker.keys.treatment.duplicates
+    found, findings = make_ensemble(
+        name, member, duplicates, making, where, lowest_only=maker.lowest_only
+    )
     maker.findings += findings
     return found
 

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from thermo_pp.collect.workers import usable_cores
 from thermo_pp.errors import StudyError, ThermoError
 from thermo_pp.names import Definition
+from thermo_pp.rich import shown
 from thermo_pp.study.changes import parse_value
 from thermo_pp.study.load import Study
 
@@ -117,7 +118,7 @@ class Sweep:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
 
 
 def sweep(
