@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.results import freeze_arrays
 from thermo_pp.names import Definition
+from thermo_pp.rich import shown
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -268,4 +269,4 @@ class Doubt:
         return pd.DataFrame(rows)
 
     def _repr_html_(self) -> str:
-        return str(self.table().to_html(index=False))
+        return shown(self.table())
