@@ -8,8 +8,8 @@ from typing import Any
 
 from thermo_pp.output.json_text import plain
 
-MOST_BYTES = 6_000_000
-"""Up to here the page holds all results."""
+MOST_BYTES = 8_000_000
+"""Up to here the page holds all results; with the drawing library it stays below 10 MB."""
 FEW = 6
 """A list of up to so many numbers keeps its place in the provenance of a smaller page."""
 
@@ -30,39 +30,47 @@ def contents(results: Mapping[str, Any], most: int = MOST_BYTES) -> tuple[str, l
         Bytes.
     """
     kept: Results = plain(results)
-    text, away = _text(kept), []
+    texts = {name: _text(value) for name, value in kept.items()}
+    away: list[str] = []
     for what, lessen in LESS:
-        if len(text.encode("utf-8", "backslashreplace")) <= most:
+        if sum(map(_size, texts.values())) <= most:
             break
-        lesser = lessen(kept)
-        if lesser != kept:
-            kept, text = lesser, _text(lesser)
+        changed = lessen(kept)
+        lesser = {name: value for name, value in changed.items() if value != kept.get(name)}
+        if lesser:
+            kept |= lesser
+            texts |= {name: _text(value) for name, value in lesser.items()}
             away.append(what)
-    return text, away
+    return "{" + ",".join(f"{_text(name)}:{text}" for name, text in texts.items()) + "}", away
 
 
-def _text(results: Results) -> str:
+def _text(value: Any) -> str:
     """Return compact JSON that a script element can hold: no character of it can open a tag."""
-    text = json.dumps(results, ensure_ascii=False, allow_nan=False, separators=(",", ":"))
+    text = json.dumps(value, ensure_ascii=False, allow_nan=False, separators=(",", ":"))
     return text.replace("<", "\\u003c")
 
 
-def _without(*names: str) -> Callable[[Results], Results]:
+def _size(text: str) -> int:
+    return len(text.encode("utf-8", "backslashreplace"))
+
+
+def _nothing_of(name: str) -> Callable[[Results], Results]:
+    return lambda results: {name: None}
+
+
+def _no_rows_of(name: str) -> Callable[[Results], Results]:
+    return lambda results: {name: []}
+
+
+def _species_without(*left_out: str) -> Callable[[Results], Results]:
     def lessen(results: Results) -> Results:
-        return {**results, **{name: None for name in names if name in results}}
+        return {"species": [_without(one, left_out) for one in results["species"]]}
 
     return lessen
 
 
-def _species_lists(results: Results) -> Results:
-    left_out = ("parts", "modes", "functions", "temperature_k", "slope_enthalpy_kj_mol")
-    return {
-        **results,
-        "species": [
-            {name: value for name, value in one.items() if name not in left_out}
-            for one in results["species"]
-        ],
-    }
+def _without(one: Results, left_out: tuple[str, ...]) -> Results:
+    return {name: value for name, value in one.items() if name not in left_out}
 
 
 def _long_lists(results: Results) -> Results:
@@ -72,50 +80,51 @@ def _long_lists(results: Results) -> Results:
             return row
         return {**row, "value": "a list of numbers"}
 
-    return {**results, "provenance": [shortened(row) for row in results["provenance"]]}
-
-
-def _own_state(results: Results) -> Results:
-    own = results["standard_state"]
-    return {
-        **results,
-        "profiles": [one for one in results["profiles"] if one["standard_state"] == own],
-    }
-
-
-def _own_treatment(results: Results) -> Results:
-    own = results["treatment"]["low_modes"]
-    return {
-        **results,
-        **{
-            name: [one for one in results[name] if one["low_modes"] == own]
-            for name in ("profiles", "barriers")
-        },
-    }
+    return {"provenance": [shortened(row) for row in results["provenance"]]}
 
 
 def _map_ratios(results: Results) -> Results:
     regimes = results.get("regimes")
     if not regimes:
-        return results
+        return {}
     left_out = ("ratios", "windows", "windows_open")
-    maps = {
-        name: {key: value for key, value in one.items() if key not in left_out}
-        for name, one in regimes["maps"].items()
-    }
-    return {**results, "regimes": {**regimes, "maps": maps}}
+    maps = {name: _without(one, left_out) for name, one in regimes["maps"].items()}
+    return {"regimes": {**regimes, "maps": maps}}
+
+
+def _own(key: str, own: Callable[[Results], str], *names: str) -> Callable[[Results], Results]:
+    def lessen(results: Results) -> Results:
+        wanted = own(results)
+        return {name: [one for one in results[name] if one[key] == wanted] for name in names}
+
+    return lessen
 
 
 LESS: tuple[tuple[str, Callable[[Results], Results]], ...] = (
-    ("modes, shares and functions of each species", _species_lists),
-    ("the fitted gas phase", _without("gas_phase")),
+    (
+        "shares, modes and functions of each species",
+        _species_without("parts", "modes", "functions", "temperature_k", "slope_enthalpy_kj_mol"),
+    ),
+    ("the fitted gas phase", _nothing_of("gas_phase")),
     ("lists of numbers in the provenance (wavenumbers, positions, masses)", _long_lists),
     ("ratios and windows of the regime map", _map_ratios),
-    ("what each choice is worth", _without("choices")),
-    ("profiles in other standard states", _own_state),
-    ("profiles and rates with other soft-mode treatments", _own_treatment),
-    ("where every number came from", _without("provenance")),
-    ("energies part by part", _without("energies")),
-    ("the species", _without("species")),
+    (
+        "profiles in other standard states",
+        _own("standard_state", lambda results: results["standard_state"], "profiles"),
+    ),
+    ("what each choice is worth", _nothing_of("choices")),
+    (
+        "heat capacities of each species, and the spread over soft-mode treatments",
+        _species_without("heat_capacity_j_mol_k", "low_mode_spread_kj_mol"),
+    ),
+    (
+        "profiles and rates with other soft-mode treatments",
+        _own("low_modes", lambda results: results["treatment"]["low_modes"], "profiles", "barriers"),
+    ),
+    ("energies part by part", _nothing_of("energies")),
+    ("where every number came from", _no_rows_of("provenance")),
+    ("the regime map", _nothing_of("regimes")),
+    ("the species", _nothing_of("species")),
+    ("the profile at the concentrations held", _nothing_of("profile_at_conditions")),
 )
 """What is left away where the page would be too long, in this order."""

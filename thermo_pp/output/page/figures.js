@@ -1,7 +1,7 @@
 // What all figures share: the frame, axes, and labels that keep their distance.
 function figure(parent, { title, about, caption, readout, focusable }) {
   const box = parent.append("figure");
-  const scroll = box.append("div").attr("class", "scroll");
+  const scroll = box.append("div").attr("class", "scroll").attr("tabindex", 0).attr("role", "region").attr("aria-label", title);
   const svg = scroll.append("svg").attr("role", focusable ? "group" : "img");
   const id = `figure-${document.querySelectorAll("figure").length}`;
   svg.attr("aria-labelledby", `${id}-title ${id}-desc`);
@@ -12,8 +12,16 @@ function figure(parent, { title, about, caption, readout, focusable }) {
   const below = box.append("figcaption").text(caption ?? "");
   const canvas = svg.append("g");
   const width = () => Math.max(280, scroll.node().clientWidth);
+  const onWidth = (draw) => {
+    let known = width();
+    new ResizeObserver(() => {
+      if (width() === known) return;
+      known = width();
+      draw();
+    }).observe(box.node());
+  };
   const size = (w, h) => svg.attr("width", w).attr("height", h).attr("viewBox", `0 0 ${w} ${h}`);
-  return { box, svg, canvas, desc, said, below, width, size };
+  return { box, svg, canvas, desc, said, below, width, size, onWidth };
 }
 
 // Moves labels apart: each {y, height}, kept in order and between top and bottom.

@@ -20,9 +20,16 @@ function general(value, digits = 4) {
   if (absent(value)) return NONE;
   if (value === 0) return "0";
   const [front, power] = value.toExponential(digits - 1).split("e");
-  if (power >= -3 && power < digits + 1) return minus(value.toPrecision(digits).replace(/\.$/, ""));
+  if (power >= -3 && power < digits) return minus(value.toPrecision(digits));
   return `${minus(front)} × 10${raised(power)}`;
 }
+// A mark on an axis: short where that is exact, a power of ten where it is one.
+function mark(value) {
+  const plain = Number(value.toPrecision(3)), power = Math.log10(value);
+  if (plain === 0 || (Math.abs(plain) < 10000 && Math.abs(plain) >= 0.001)) return minus(String(plain));
+  return Number.isInteger(power) ? `10${raised(power)}` : general(value, 2);
+}
+const degree = (value) => minus(String(Number(value.toFixed(2))));
 const kelvin = (value) => `${minus(String(Number(value.toPrecision(10))))} K`;
 const unit = (text) => text.replace(/\^(-?\d+)/g, (_, power) => raised(power)).replace(/ /g, "\u00a0");
 

@@ -98,6 +98,7 @@ d3.select("#about").text([
   `Soft modes: ${own}, onset ${DATA.treatment.onset_cm} cm⁻¹. Standard state: ${DATA.standard_state}.`,
 ].filter(Boolean).map(printable).join(" · "));
 d3.select("#made").text(`thermo_pp ${DATA.version}; constants: ${DATA.constants}. Every value is that of results.json; point at a number in a table for all its digits. Drawn with D3 (ISC licence, in this file).`);
+addEventListener("beforeprint", () => d3.selectAll("details").attr("open", ""));
 temperature();
 choices();
 sections();

@@ -27,7 +27,7 @@ function doubtSection(root, state) {
       value("share of the doubt of Eₐ", (r) => r.energy_share?.[state.k], share),
     ],
   });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
+  chart.onWidth(draw);
   function draw() {
     const rate = found.rates[state.definition] ?? Object.values(found.rates)[0], s = rate?.samples ?? null;
     chart.box.attr("hidden", s ? null : "");
@@ -67,7 +67,7 @@ function courseSection(root, state) {
     value("t / s", (k) => courses[number].time_s[k], general, { head: true }),
     ...most.map((name) => value(`[${brief(name, 30)}] / mol L⁻¹`, (k) => courses[number].concentration_mol_l[name]?.[k])),
   ] });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
+  chart.onWidth(draw);
   function draw() {
     const course = courses[number], times = course.time_s, width = chart.width(), left = 76, right = width - 14, bottom = 260, canvas = chart.canvas;
     const later = d3.range(times.length).filter((k) => times[k] > 0);
@@ -75,8 +75,8 @@ function courseSection(root, state) {
     const y = d3.scaleLinear([0, d3.max(most, (name) => d3.max(course.concentration_mol_l[name] ?? [0])) || 1], [bottom, 22]).nice();
     chart.size(width, bottom + 44);
     canvas.selectAll("*").remove();
-    axis(canvas, d3.axisLeft(y).ticks(5).tickFormat((v) => general(v, 2)), left, 0, "concentration / mol L⁻¹", 2, 12);
-    axis(canvas, d3.axisBottom(x).ticks(Math.max(2, width / 120)).tickFormat((v) => general(v, 1)), 0, bottom, "t / s", right, bottom + 36, "end");
+    axis(canvas, d3.axisLeft(y).ticks(5).tickFormat(mark), left, 0, "concentration / mol L⁻¹", 2, 12);
+    axis(canvas, d3.axisBottom(x).ticks(Math.max(2, width / 120)).tickFormat(mark), 0, bottom, "t / s", right, bottom + 36, "end");
     most.forEach((name, n) => canvas.append("path").attr("class", "curve").attr("stroke", colour(n)).attr("stroke-dasharray", ["none", "7 3", "2 3"][n % 3])
       .attr("d", d3.line().x((k) => x(times[k])).y((k) => y(course.concentration_mol_l[name]?.[k] ?? 0))(later)));
     swatches(legend, most.map((name, n) => [colour(n), name]));
@@ -92,7 +92,7 @@ function choicesSection(root, state) {
   const rows = [...quantities].sort((a, b) => ranks.indexOf(a.kind) - ranks.indexOf(b.kind))
     .flatMap((q) => alternatives.map((a, n) => ({ q, a, n })));
   const fill = table(root, { caption: "What each choice is worth", columns: [
-    text("Of", (r) => r.q.name, { head: true }), text("Quantity", (r) => r.q.unit ? `${r.q.quantity} / ${unit(r.q.unit)}` : r.q.quantity),
+    text("Of", (r) => r.q.name, { head: true }), text("Kind", (r) => r.q.kind), text("Quantity", (r) => r.q.unit ? `${r.q.quantity} / ${unit(r.q.unit)}` : r.q.quantity),
     text("Choice", (r) => r.a.choice), text("taken", (r) => r.a.taken), text("instead", (r) => r.a.instead),
     value("change", (r) => r.q.change[r.n]?.[state.k], share),
   ] });

@@ -1,6 +1,6 @@
 // The profile: levels of G (full) and H (dashed) of every state, their labels apart, and the table.
 const ALL = "all";
-const LEVEL = 46; // width of a level
+const LEVEL = 44; // width of a level; its labels stand to the right of it
 
 function profileSection(root, state) {
   const paths = [...new Set(DATA.profiles.flatMap((p) => p.states.map((s) => s.path)))];
@@ -30,7 +30,7 @@ function profileSection(root, state) {
     ],
     note: "All against the reference state. soft: largest less smallest G over the four treatments of soft modes.",
   });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
+  chart.onWidth(draw);
 
   function draw() {
     const profile = state.profile();
@@ -89,13 +89,13 @@ function draw_levels(chart, legend, states, paths, k, shown) {
   const kinds = shown === "both" ? ["enthalpy_kj_mol", "gibbs_kj_mol"] : [shown];
   const main = kinds[kinds.length - 1], letter = main === "gibbs_kj_mol" ? "G" : "H";
   const { nodes, links, slots, paths: drawn } = nodesOf(states, paths);
-  const width = Math.max(chart.width(), 60 + slots * 92), step = (width - 56) / slots;
+  const width = Math.max(chart.width(), 60 + slots * 122), step = (width - 56) / slots;
   const most = d3.max(d3.rollup(nodes, (list) => list.length, (n) => n.slot).values()) ?? 1;
   const labelled = most <= 14;
-  const height = Math.max(430, labelled ? most * (kinds.length === 2 ? 62 : 44) + 60 : 430);
+  const height = Math.max(430, labelled ? most * (kinds.length === 2 ? 54 : 36) + 60 : 430);
   const top = 22, bottom = height - 18;
   const y = d3.scaleLinear(padded(d3.extent([0, ...numbers(states.flatMap((s) => kinds.map((q) => s[q])))]), 0.08), [bottom, top]).nice();
-  const x = (n) => 52 + (n.slot + 0.5) * step;
+  const x = (n) => 56 + n.slot * step + LEVEL / 2;
   const ink = (one) => one.paths.length > 1 && drawn.length > 1 ? "var(--ink)" : colour(one.paths[0]);
   chart.size(width, height);
   const canvas = chart.canvas;
@@ -127,28 +127,26 @@ function draw_levels(chart, legend, states, paths, k, shown) {
   }
   if (labelled) labels();
   function labels() {
-    const letters = Math.max(6, Math.floor((step - 8) / 7));
+    const grounds = canvas.append("g");
+    const letters = Math.max(6, Math.floor((step - LEVEL - 10) / 6.9));
     for (const [, list] of d3.group(nodes, (n) => n.slot)) {
       const found = [];
       for (const n of list.filter((one) => !absent(one.s[main][k]))) {
-        const name = lines(n.s.state, letters), at = y(n.s[main][k]), tall = 15 * (name.length + 1) + 3;
-        const h = n.s.enthalpy_kj_mol[k], under = kinds.length === 2 && !absent(h) && y(h) < at;
-        found.push({ n, rows: [...name, fixed(n.s[main][k], 1)], at, side: under ? 1 : -1, height: tall, y: at + (under ? 1 : -1) * (tall / 2 + 5) });
-        if (kinds.length === 2 && !absent(h) && Math.abs(y(h) - at) > 8) {
-          found.push({ n, rows: [`H ${fixed(h, 1)}`], h: true, at: y(h), side: under ? -1 : 1, height: 17, y: y(h) + (under ? -1 : 1) * 13 });
-        }
+        const rows = [...lines(n.s.state, letters), `${letter} ${fixed(n.s[main][k], 1)}`], h = n.s.enthalpy_kj_mol[k];
+        found.push({ n, rows, at: y(n.s[main][k]), height: 14 * rows.length + 3, y: y(n.s[main][k]) });
+        if (kinds.length === 2 && !absent(h)) found.push({ n, rows: [`H ${fixed(h, 1)}`], h: true, at: y(h), height: 17, y: y(h) });
       }
-      found.forEach((one) => { one.wish = one.y; });
-      apart(found, 14, height - 2);
-      for (const one of found) {
-        const block = canvas.append("g").attr("class", "label").attr("aria-hidden", "true");
-        if (Math.abs(one.y - one.wish) > 12) {
-          block.append("path").attr("class", "leader").attr("fill", "none")
-            .attr("d", `M${x(one.n) - LEVEL / 2},${one.at}L${x(one.n) - LEVEL / 2 - 8},${one.y}`);
-        }
-        one.rows.forEach((text, row) => block.append("text").attr("x", x(one.n)).attr("text-anchor", "middle")
+      const kept = found.filter((one) => !one.h || Math.abs(one.at - y(one.n.s[main][k])) >= 1); // at the start H and G are both 0
+      apart(kept, 14, height - 2);
+      for (const one of kept) {
+        const block = canvas.append("g").attr("class", "label").attr("aria-hidden", "true"), end = x(one.n) + LEVEL / 2;
+        block.append("path").attr("class", "leader").attr("fill", "none").attr("d", `M${end + 1},${one.at}L${end + 6},${one.y}`);
+        one.rows.forEach((text, row) => block.append("text").attr("x", end + 8)
           .attr("class", one.h ? "halo soft" : row === one.rows.length - 1 ? "halo value" : "halo")
-          .attr("y", one.y - one.height / 2 + 13 + 15 * row).text(text));
+          .attr("y", one.y - one.height / 2 + 12 + 14 * row).text(text));
+        const size = block.node().getBBox(); // a ground that lines do not run through
+        grounds.append("rect").attr("class", "ground").attr("x", end + 6).attr("y", size.y)
+          .attr("width", Math.max(0, size.x + size.width - end - 4)).attr("height", size.height);
       }
     }
   }

@@ -49,10 +49,8 @@ function barrierSection(root, state) {
       { name: "tunnelling", get: (s) => s.tunnelling },
     ],
   });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
-  const words = root.append("details");
-  words.append("summary").text("In words");
-  const text = words.append("p");
+  chart.onWidth(draw);
+  const words = inWords(root, "");
 
   function draw() {
     const rate = state.rate(), barrier = state.barrier();
@@ -62,7 +60,7 @@ function barrierSection(root, state) {
       more(`Eₐ at ${kelvin(state.t)}`, energy(rate.arrhenius_energy_kj_mol[state.k]), "kJ mol⁻¹"),
       more("G‡ at the concentrations held", energy(rate.activation_gibbs_kj_mol?.[state.k]), "kJ mol⁻¹"),
       ...(rate.resting_state ? [more("Resting state", printable(rate.resting_state[state.k]), "")] : []),
-      ...rate.sign_changes.map((c) => more("Eₐ changes its sign at", kelvin(Number(c.temperature_k.toFixed(2))), `${c.kind} of the rate`)),
+      ...rate.sign_changes.map((c) => more("Eₐ changes its sign at", `${degree(c.temperature_k)} K`, `${c.kind} of the rate`)),
     ];
     const boxes = facts.selectAll("div").data(list).join((enter) => {
       const box = enter.append("div");
@@ -74,7 +72,7 @@ function barrierSection(root, state) {
     boxes.select("dt").text((f) => f.name);
     boxes.select("dd span").text((f) => f.value);
     boxes.select("dd small").text((f) => ` ${f.about}`);
-    text.text(printable(barrier.words));
+    words.text(printable(barrier.words));
     curves(chart, rate, state);
     chart.below.text(`${printable(barrier.net_reaction)}, ${DEFINITIONS[state.definition]}; soft modes ${barrier.low_modes}. Bars: where an approximation stays within 5 % of the exact constant; a bar without an end mark goes on beyond the temperatures of the study.`);
     over(d3.range(DATA.temperature_k.length), `Rate ${DEFINITIONS[state.definition]}: ${barrier.net_reaction}; k / ${unit(rate.unit)}`);
@@ -86,9 +84,9 @@ function barrierSection(root, state) {
 
 const windowsText = (a) => a.windows_k.length === 0 ? "nowhere" : a.windows_k.map(([from, to], n) => {
   const [below, above] = a.windows_open[n];
-  if (below && above) return `throughout ${general(from, 5)} to ${general(to, 5)} K`;
-  if (below) return `up to ${general(to, 5)} K`;
-  return above ? `from ${general(from, 5)} K` : `${general(from, 5)} to ${general(to, 5)} K`;
+  if (below && above) return `throughout ${degree(from)} to ${degree(to)} K`;
+  if (below) return `up to ${degree(to)} K`;
+  return above ? `from ${degree(from)} K` : `${degree(from)} to ${degree(to)} K`;
 }).join(", ");
 
 function curves(chart, rate, state) {
@@ -106,7 +104,7 @@ function curves(chart, rate, state) {
     const y = d3.scaleLog(low === high ? [low / 2, high * 2] : [low / 1.2, high * 1.2], [22 + tall, 22]);
     const decades = y.ticks(5).filter((v) => Number.isInteger(Math.log10(v)) || high / low < 20);
     axis(canvas, d3.axisLeft(y).tickValues(decades.length ? decades.filter((_, n) => n % Math.ceil(decades.length / 6) === 0) : [low, high])
-      .tickFormat((v) => general(v, 1)), left, 0, `k / ${unit(rate.unit)}`, 2, 12);
+      .tickFormat(mark), left, 0, `k / ${unit(rate.unit)}`, 2, 12);
     canvas.append("path").attr("class", "curve").attr("stroke", "var(--p0)").attr("d", line(t, constants, x, y));
     dots(constants, y, "var(--p0)", "k");
   }
@@ -156,9 +154,9 @@ function controlSection(root, state) {
     ],
     note: "Control: d ln k/d(−G/RT) of each state. move: of the energy of one state, which would bring Eₐ to zero.",
   });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
+  chart.onWidth(draw);
   function draw() {
-    const rate = state.rate(), saddles = new Set(DATA.mechanism.saddles), species = new Set(DATA.species.map((s) => s.name));
+    const rate = state.rate(), saddles = new Set(DATA.mechanism.saddles), species = new Set(DATA.mechanism.steps.flatMap((s) => Object.keys({ ...s.reactants, ...s.products })));
     const rows = Object.entries(rate.control).map(([name, values]) => ({
       name, value: values[state.k], move: rate.sign_shift_kj_mol[name]?.[state.k], values,
       what: saddles.has(name) ? "saddle point" : species.has(name) ? "state" : "step without a saddle",

@@ -9,7 +9,7 @@ function regimeSection(root, state) {
   let key = "arrhenius_energy_kj_mol";
   const map = () => found.maps[state.definition] ?? Object.values(found.maps)[0];
   const name = () => found.maps[state.definition] ? state.definition : Object.keys(found.maps)[0];
-  root.append("p").text(printable(found.words));
+  inWords(root, found.words);
   const bar = root.append("div").attr("class", "choices");
   pick(bar, "Coloured by", MAPS.filter(([k]) => Object.values(found.maps).some((m) => !absent(m[k]))), key, (value) => { key = value; draw(); });
   const chart = figure(root, { title: "Map of regimes", about: "Cells over temperature and amount. The table below has the values at the chosen temperature.",
@@ -27,7 +27,7 @@ function regimeSection(root, state) {
       { name: "resting", get: (p) => p.resting },
     ],
   });
-  new ResizeObserver(() => draw()).observe(chart.box.node());
+  chart.onWidth(draw);
   const point = (m, i, j) => ({ amount: amounts[j], ...Object.fromEntries(MAPS.map(([k]) => [k, m[k]?.[i]?.[j]])) });
   const say = (m, i, j) => {
     const p = point(m, i, j);
@@ -58,7 +58,7 @@ function regimeSection(root, state) {
       .attr("width", x(cols[order.indexOf(at) + 1]) - x(cols[order.indexOf(at)])).attr("height", bottom - top);
     const decades = d3.ticks(Math.ceil(Math.log10(amounts[0])), Math.floor(Math.log10(amounts[amounts.length - 1])), 6).filter(Number.isInteger);
     axis(canvas, d3.axisLeft(y).tickValues(decades.length ? decades.map((v) => 10 ** v) : [amounts[0], amounts[amounts.length - 1]])
-      .tickFormat((v) => decades.length ? `10${raised(Math.round(Math.log10(v)))}` : general(v, 2)), left, 0, `${brief(found.over, 20)} / ${unit(found.unit)}`, 2, 12);
+      .tickFormat(mark), left, 0, `${brief(found.over, 20)} / ${unit(found.unit)}`, 2, 12);
     axis(canvas, d3.axisBottom(x).ticks(Math.max(2, Math.min(8, width / 90))), 0, bottom, "T / K", right, bottom + 36, "end");
     swatches(legend, items);
     chart.below.text(`${MAPS.find(([k]) => k === key)[1]}, rate ${DEFINITIONS[name()]}, with the study's own soft-mode treatment.` + (zeros.length ? " Circles: Eₐ changes its sign." : ""));

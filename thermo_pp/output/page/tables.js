@@ -10,10 +10,10 @@ function table(parent, { caption, columns, note, mark }) {
   const scroll = box.append("div").attr("class", "scroll").attr("tabindex", 0)
     .attr("role", "region").attr("aria-label", printable(caption));
   const inner = scroll.append("table");
-  const title = inner.append("caption").text(printable(caption));
+  const title = inner.append("caption").append("span").text(printable(caption));
   const heads = inner.append("thead").append("tr").selectAll("th").data(columns).join("th")
     .attr("scope", "col").attr("aria-sort", "none").classed("number", (c) => c.number);
-  heads.append("button").attr("type", "button").text((c) => c.name);
+  heads.append("button").attr("type", "button").text((c) => c.name.replace(/ \/ (.*)$/, (_, of) => ` / ${of.replace(/ /g, "\u00a0")}`));
   const body = inner.append("tbody");
   const pages = box.append("div").attr("class", "pages").attr("hidden", "");
   const back = pages.append("button").attr("type", "button").text("Earlier rows");
@@ -73,6 +73,13 @@ function table(parent, { caption, columns, note, mark }) {
     }
     draw();
   };
+}
+
+// A long text that opens; returns its paragraph.
+function inWords(parent, words) {
+  const box = parent.append("details");
+  box.append("summary").text("In words");
+  return box.append("p").text(printable(words));
 }
 
 // A list of choices with its label; returns the select.
