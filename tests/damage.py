@@ -275,5 +275,7 @@ def _is_said(value: float, said: np.ndarray) -> bool:
 
 def _text_is_said(text: str, changed: list[bytes]) -> bool:
     words = [word for word in re.split(r"[^\w*()+-]+", text.lower()) if word]
+    inside = re.search(r"\(([^()]{3,})\)$", text.lower())  # the name of a solvent
+    words += [] if inside is None else [inside.group(1)]
     whole = b"\n".join(changed).decode("utf-8", "replace").lower()
     return any(word in whole for word in words) if changed else False

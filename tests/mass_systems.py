@@ -63,6 +63,10 @@ class Case:
             limited=np.zeros((1, n), np.bool_),
             log_kappa=np.zeros((1, n)),
             kappa_energy_j_mol=np.zeros((1, n)),
+            log_limit=np.zeros((1, n)),
+            limit_energy_j_mol=np.zeros((1, n)),
+            log_transmission=np.zeros((1, n)),
+            collider_orders={},
             findings=(),
         )
         return mass_action(made, Conditions((T,)), energies, rates, {})[0]

@@ -33,6 +33,8 @@ COMMANDS = (
     "barrier",
     "compare",
     "isotopes",
+    "report",
+    "sweep",
 )
 SURVEY_KEYS = (
     "path reader program program_version method basis formula charge multiplicity energy_hartree "
@@ -399,7 +401,9 @@ def test_examples_of_the_docs_parse() -> None:
     for line in lines:
         words = [word.strip('"') for word in re.findall(r'"[^"]*"|\S+', line)]
         words = [
-            WATER if word.endswith((".toml", ".out", ".xyz", "measured.csv")) else word
+            WATER
+            if word.endswith((".toml", ".out", ".xyz", "measured.csv", "values.csv"))
+            else word
             for word in words
         ]
         words = [str(PSI4) if word.endswith("outputs/") else word for word in words]

@@ -78,6 +78,8 @@ def test_a_line_that_is_not_needed(fixture: str, mark: bytes, which: int) -> Non
 
 
 CHANGED = [
+    ("orca/good/water_scs_mp2.out", b"! RI-SCS-MP2", b"! RI-SXS-MP2", "no keyword that is known"),
+    ("psi4/good/water_b97d_energy.out", b"             75\n", b"             7x\n", "grid points"),
     ("gamess/good/carbon_monoxide_hessian.out", b"RELWFN=NONE", b"RELWFN=NYNE", "with RELWFN=NYNE"),
     (
         "gaussian/good/water_b2plyp_energy.log",
@@ -125,6 +127,14 @@ def test_a_changed_digit(fixture: str, old: bytes, new: bytes, what: str | None)
         return
     with pytest.raises(ReadError, match=what):
         read_source(changed)
+
+
+def test_a_damaged_word_beside_its_numbers() -> None:
+    data = (FIXTURES / "orca/good/water_two_jobs.out").read_bytes()
+    old = b"Perturbative triple excitations            ... ON"
+    assert old in data
+    calc = read_source(Source("x.out", data.replace(old, old[:-1] + b"X")))
+    assert calc.energy_label == "CCSD(T)"
 
 
 @pytest.mark.parametrize(

@@ -15,8 +15,8 @@ from thermo_pp.study.load import Study
 ALL_SPECIES = "known species: A, W, W2, C, P, TS1, TS2"
 IN_STEPS = "known species: W, W2, A, C, P"
 EXACTLY_ONE = (
-    'give exactly one of through = "TS", barrier = "none", rate = "..." and '
-    'arrhenius = { A = "...", E = "..." }'
+    'give exactly one of through = "TS", barrier = "none", rate = "...", '
+    'arrhenius = { A = "...", E = "..." } and falloff = { ... }'
 )
 LIMIT = (
     "a collision or diffusion limit needs two molecules that meet: split the step, name its saddle "
@@ -168,12 +168,11 @@ CASES = {  # name: (changes, where, what, mend)
         "on its right side",
         LIMIT,
     ),
-    "barrier of a stated height": (
-        [('"A + W = C"\nbarrier = "none"', '"A + W = C"\nbarrier = "12 kJ/mol"')],
+    "barrier below zero": (
+        [('"A + W = C"\nbarrier = "none"', '"A + W = C"\nbarrier = "-12 kJ/mol"')],
         "[steps.2] barrier",
-        "a barrier of a stated height is not taken yet, found '12 kJ/mol'",
-        'write barrier = "none" for a step without one, through = "..." for its saddle point, or '
-        "declare a saddle point species with enthalpy and entropy",
+        "the barrier '-12 kJ/mol' is below 0",
+        'it counts from the higher side; write barrier = "none" for a step without one',
     ),
     "tunnelling without a saddle point": (
         [('"A + W = C"\nbarrier = "none"', '"A + W = C"\nbarrier = "none"\ntunnelling = "wigner"')],

@@ -17,7 +17,16 @@ PACKAGE = Path(thermo_pp.__file__).parent
 
 FLOORS: tuple[tuple[str, ...], ...] = (
     ("names", "errors", "nearest", "units"),  # 1
-    ("data", "formulas", "records", "sources", "mechanism", "conditions"),  # 2
+    (
+        "data",
+        "formulas",
+        "records",
+        "sources",
+        "rate_laws",
+        "mechanism",
+        "conditions",
+        "amounts",
+    ),  # 2
     ("readers",),  # 3
     ("collect", "scans", "species", "isotopes"),  # 4
     ("pairing", "audit", "grouping", "energies", "ensemble"),  # 5
@@ -31,8 +40,8 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
-        "turning", "rates", "tunnelling", "isotope_ratios", "extrapolation", "repulsion", "polynomials",
-        "mixture",
+        "turning", "rates", "falloff", "crossing", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
+        "polynomials", "mixture",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),
     "collect": (
@@ -48,15 +57,16 @@ INSIDE: dict[str, tuple[str, ...]] = {
     ),
     "output": (
         "tables", "definitions", "notes", "plain", "delimited", "latex", "json_text", "files",
-        "survey", "species", "conformers", "energies", "profile", "courses", "regimes", "selectivity",
+        "survey", "species", "conformers", "energies", "profile", "courses", "limits", "regimes", "selectivity",
+        "doubt",
         "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
-        "report",
+        "figures", "figures_folder", "report", "sweep",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",
-        "isotopes", "compare", "report",
+        "isotopes", "compare", "report", "sweep",
     ),
 }  # fmt: skip
 PURE = ("names", "errors", "units")

@@ -19,6 +19,7 @@ from click.testing import CliRunner
 from declared_study import TEXT
 
 from thermo_pp.cli import main
+from thermo_pp.output import report
 from thermo_pp.study.load import Study
 
 ROOT = Path(__file__).parents[1]
@@ -48,7 +49,8 @@ def declared(folder: Path, text: str = TEXT) -> Path:
 @pytest.fixture(scope="module")
 def bundled(tmp_path_factory: pytest.TempPathFactory) -> Path:
     folder = tmp_path_factory.mktemp("bundled") / "report"
-    done = run(BUNDLED / "study.toml", "-o", folder, "-T", "280", "-T", "298.15")
+    measured = ("--measured", BUNDLED / "measured.csv", "--deviation", "4 kJ/mol")
+    done = run(BUNDLED / "study.toml", "-o", folder, "-T", "280", "-T", "298.15", *measured)
     assert done.exit_code == 0, done.output
     assert done.stdout == ""
     return folder
@@ -58,6 +60,23 @@ def bundled(tmp_path_factory: pytest.TempPathFactory) -> Path:
 def results(bundled: Path) -> dict[str, Any]:
     found: dict[str, Any] = json.loads((bundled / "results.json").read_text(encoding="utf-8"))
     return found
+
+
+@pytest.fixture(autouse=True)
+def without_figures(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Figures take most of the time; `bundled`, made before this, has them."""
+    monkeypatch.setattr(report, "PARTS", tuple(p for p in report.PARTS if p[0] != "figures"))
+
+
+def test_every_figure_is_there_in_three_formats(bundled: Path) -> None:
+    found = {path.name for path in (bundled / "figures").iterdir()}
+    stems = {name.rpartition(".")[0] for name in found}
+    assert found == {f"{stem}.{form}" for stem in stems for form in ("svg", "pdf", "png")}
+    kinds = {f"{kind}-{name}" for kind in ("arrhenius", "eyring", "controls")
+             for name in ("free", "pool", "relaxation")}  # fmt: skip
+    maps = {f"regimes-{layer}-{name}" for layer in ("holding", "controlling", "resting")
+            for name in ("free", "pool")} - {"regimes-resting-free"}  # fmt: skip
+    assert stems == {*kinds, *maps, "populations-pool", "profile", "profile-enthalpy-gibbs"}
 
 
 def test_the_manifest_lists_every_file_with_its_hash(bundled: Path) -> None:
@@ -71,6 +90,7 @@ def test_the_manifest_lists_every_file_with_its_hash(bundled: Path) -> None:
     for one in manifest["inputs"]:
         assert one["sha256"] == hashlib.sha256((BUNDLED / one["path"]).read_bytes()).hexdigest()
     assert manifest["options"]["temperature_k"] == [280.0, 298.15]
+    assert manifest["options"]["measured"] == manifest["inputs"][1]["path"] == "measured.csv"
     assert manifest["libraries"]["numpy"]
 
 
@@ -146,10 +166,11 @@ def test_same_input_same_bytes(bundled: Path, tmp_path: Path) -> None:
     """Another hash seed, another folder, another place to ask from, other times of the files."""
     place = tmp_path / "two" / "deep"
     shutil.copytree(BUNDLED / "outputs", place / "outputs", copy_function=shutil.copy)
-    shutil.copy(BUNDLED / "study.toml", place / "study.toml")
+    for name in ("study.toml", "measured.csv"):
+        shutil.copy(BUNDLED / name, place / name)
     subprocess.run(
         [sys.executable, "-m", "thermo_pp", "report", "two/deep/study.toml", "-o", "report",
-         "-T", "280", "-T", "298.15", "--quiet"],
+         "-T", "280", "-T", "298.15", "--quiet", "--measured", "two/deep/measured.csv", "--deviation", "4 kJ/mol"],
         cwd=tmp_path, check=True, timeout=120,
         env={**os.environ, "PYTHONPATH": str(ROOT), "PYTHONHASHSEED": "4242"},
     )  # fmt: skip
@@ -241,6 +262,7 @@ def test_wrong_places(tmp_path: Path) -> None:
     assert done.exit_code == 1
     assert "cannot be written: No such file or directory" in done.output
     assert run(study).exit_code == 2
+    assert run(study, "-o", tmp_path / "r", "--deviation", "4 kJ/mol").exit_code == 2
 
 
 def test_odd_names_are_text_and_no_path(tmp_path: Path) -> None:
@@ -272,7 +294,8 @@ def test_killed_while_it_runs(tmp_path: Path) -> None:
     assert run(study, "-o", tmp_path / "other", "-T", "300").exit_code == 0
     new = files(tmp_path / "other")
     code = (
-        "import sys\nfrom thermo_pp.cli import main\nimport thermo_pp.output.report\nprint('on', flush=True)\n"
+        "import sys\nfrom thermo_pp.cli import main\nimport thermo_pp.output.report as report\n"
+        "report.PARTS = tuple(p for p in report.PARTS if p[0] != 'figures')\nprint('on', flush=True)\n"
         "main(['report', *sys.argv[1:]])"
     )
     for wait in (0.0, 0.15, 0.4, 0.8):

@@ -14,7 +14,7 @@ from thermo_pp.conditions import standard_state
 from thermo_pp.errors import StudyError
 from thermo_pp.names import LOW_MODES
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, answer, course_temperatures, standard_states
+from thermo_pp.study.run import Answers, Measured, answer, course_temperatures, standard_states
 
 ROOT = Path(__file__).parents[1]
 BUNDLED = ROOT / "fixtures" / "stack-plume" / "study.toml"
@@ -85,7 +85,9 @@ def test_inputs_are_the_study_and_its_outputs(bundled: Answers) -> None:
 
 
 def test_what_is_not_asked_is_left_out_with_a_reason(bundled: Answers) -> None:
-    assert set(bundled.left_out) == {"transient", "flow", "isotopes", "ensembles", "formation"}
+    assert set(bundled.left_out) == {
+        *("transient", "flow", "isotopes", "ensembles", "formation", "selectivity", "comparison"),
+    }
     assert bundled.left_out["flow"] == "the study has no [conditions] flow"
     assert bundled.transient is None
     assert bundled.isotopes == ()
@@ -140,6 +142,27 @@ def test_time_courses_are_at_the_ends_and_near_room_temperature(tmp_path: Path) 
     assert found.transient.courses[0].time_s.tolist() == [0.1, 1.0]
     assert course_temperatures((360.0, 300.0, 280.0, 290.0)) == (280.0, 300.0, 360.0)
     assert course_temperatures((400.0,)) == (400.0,)
+
+
+def test_regimes_over_what_is_held(bundled: Answers, tmp_path: Path) -> None:
+    assert bundled.regimes is not None
+    assert bundled.regimes.species == "W"
+    assert bundled.regimes.amount[[0, -1]] == pytest.approx([2e-6, 2e-2], rel=1e-12)
+    asked = TEXT + '\n[regimes]\nover = "W"\nfrom = "1e-4 mol/L"\nto = "1e-3 mol/L"\npoints = 3\n'
+    found = answer(written(tmp_path, asked))
+    assert found.regimes is not None
+    assert found.regimes.amount[[0, -1]].tolist() == [1e-4, 1e-3]
+
+
+def test_measurements(tmp_path: Path) -> None:
+    study = Study.load(BUNDLED, temperatures=["298.15 K"])
+    file = BUNDLED.with_name("measured.csv")
+    found = answer(study, measured=Measured(file))
+    assert found.comparison is not None
+    assert found.comparison.words == study.compare(file).words
+    assert found.inputs[1].path == str(file)
+    with pytest.raises(StudyError, match=r"none\.csv"):
+        answer(written(tmp_path), measured=Measured(tmp_path / "none.csv"))
 
 
 def test_standard_states_once_each() -> None:

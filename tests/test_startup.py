@@ -29,7 +29,17 @@ def loaded(code: str) -> set[str]:
 
 @pytest.mark.parametrize(
     "command",
-    [[], ["survey"], ["species"], ["draft"], ["profile"], ["barrier"], ["compare"], ["isotopes"]],
+    [
+        [],
+        ["survey"],
+        ["species"],
+        ["draft"],
+        ["profile"],
+        ["barrier"],
+        ["compare"],
+        ["isotopes"],
+        ["report"],
+    ],
 )
 def test_help_loads_nothing_heavy(command: list[str]) -> None:
     arguments = [*command, "--help"]

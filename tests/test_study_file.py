@@ -84,6 +84,9 @@ duplicates = "once"
 [conditions]
 temperatures = { from = "280 K", to = 360, step = "5 K" }
 held = { W = "2e-4 mol/L" }
+total_pressure = "1 bar"
+constant = "pressure"
+stated_at = "298.15 K"
 driven = false
 initial = { A = "0.1 mol/L" }
 total = { A = "0.1 mol/L" }
@@ -133,6 +136,7 @@ heat_capacity = "30 J/mol/K"
 temperature = "25 degC"
 ground = "-3 kJ/mol"
 imaginary_mode = "1200 cm^-1"
+deviation = "2 kJ/mol"
 relative_to = { A = 1 }
 [species.C]
 thermal = "nearest"
@@ -161,7 +165,25 @@ conformers = { ensemble = "many.xyz" }
 [[steps]]
 equation = "A = W"
 through = "T"
-barrier = "none"
+barrier = { scan = "scan.csv" }
+deviation = "5 kJ/mol"
+permittivity = [["280 K", 84.0], ["360 K", 58.0]]
+kind = "crossing"
+crossing.transmission = 0.5
+crossing.landau_zener = { spin_orbit = 50, gradient_difference = "1 N", reduced_mass = "9 u" }
+reaction.anchor = "W"
+reaction.free_energy = 1
+reaction.equilibrium_constant = "1 mol/L"
+reaction.pKa = 3
+reaction.potential = "1 V"
+reaction.standard_state = "1 bar"
+reaction.temperature = 300
+reaction.enthalpy = 1
+falloff.low = { A = "1 L/mol/s", n = 0.5, E = "-2 kJ/mol" }
+falloff.high = { A = "1 s^-1", n = 0.5, E = "-2 kJ/mol" }
+falloff.form = "troe"
+falloff.centre = [0.6, "100 K", 1000]
+falloff.collider = { W = 6 }
 rate = "1 s^-1"
 arrhenius = { A = "1 s^-1", n = 0.5, E = "-2 kJ/mol" }
 viscosity = [["280 K", "1 mPa s"], ["360 K", "0.5 mPa s"]]
@@ -184,6 +206,14 @@ points = 12
 [selectivity]
 products = ["P", "Q"]
 kind = "diastereomeric"
+[doubt]
+deviation = "4 kJ/mol"
+saddle_deviation = 6
+correlation = { same_kind = 0.5, across = 0.3 }
+pairs = [["A", "T", 0.9]]
+samples = 1000
+seed = 2
+alternatives = false
 [formation]
 atoms = ["A"]
 atomization = ["A"]

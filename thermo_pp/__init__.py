@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from thermo_pp.errors import ReadError as ReadError
     from thermo_pp.errors import StudyError as StudyError
     from thermo_pp.errors import ThermoError as ThermoError
+    from thermo_pp.output import figures as figures
     from thermo_pp.readers import read as read
     from thermo_pp.records import Calculation as Calculation
     from thermo_pp.species import thermochemistry as thermochemistry
@@ -39,14 +40,15 @@ _HOME = {
     "StudyError": "errors",
     "ThermoError": "errors",
     "collect": "audit",
+    "figures": "output.figures",
     "read": "readers",
     "thermochemistry": "species",
 }
-"""Public name -> the module it lives in; imported on first use."""
+"""Public name -> the module it lives in, or is; imported on first use."""
 
 __all__ = [  # noqa: RUF022
     "read", "collect", "thermochemistry", "Study", "Calculation", "Collection",
-    "Finding", "ThermoError", "ReadError", "StudyError", "__version__",
+    "Finding", "ThermoError", "ReadError", "StudyError", "figures", "__version__",
 ]  # fmt: skip
 
 
@@ -66,7 +68,8 @@ def __getattr__(name: str) -> Any:
     """Import a public name from where it lives."""
     if name not in _HOME:
         raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
-    value = getattr(import_module(f"{__name__}.{_HOME[name]}"), name)
+    home = import_module(f"{__name__}.{_HOME[name]}")
+    value = home if _HOME[name].endswith(f".{name}") else getattr(home, name)
     globals()[name] = value
     return value
 

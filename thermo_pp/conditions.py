@@ -15,12 +15,13 @@ from thermo_pp.names import (
     DEFAULT_LOW_MODES,
     DEFAULT_ONSET_CM,
     DEFAULT_STANDARD_STATE,
+    Constant,
     LowModes,
     Masses,
     Phase,
     Rotor,
 )
-from thermo_pp.units import BAR_PA, GAS_J_MOL_K, quantity, split_quantity
+from thermo_pp.units import BAR_PA, FARADAY_C_MOL, GAS_J_MOL_K, quantity, split_quantity
 
 FloatArray = NDArray[np.float64]
 
@@ -137,15 +138,17 @@ class Held:
 
     Attributes
     ----------
-    form : {"concentration", "pressure", "equilibrium"}
+    form : {"concentration", "pressure", "equilibrium", "potential"}
+        What stays constant over temperature; "potential" is of electrons, whose activity against
+        1 mol/L is exp(-F E/RT).
     value : float, shape (b,), or None
-        mol/L, or Pa; None at equilibrium. An array has one amount for each temperature of a batch
-        (maps over an amount).
+        mol/L, Pa, or V; None at equilibrium. An array has one amount for each temperature of a
+        batch (maps over an amount).
     text : str
         As the user wrote it.
     """
 
-    form: Literal["concentration", "pressure", "equilibrium"]
+    form: Literal["concentration", "pressure", "equilibrium", "potential"]
     value: float | FloatArray | None
     text: str
 
@@ -156,7 +159,22 @@ class Held:
             raise ValueError("an equilibrium concentration follows from the mechanism")
         if self.form == "concentration":
             return np.full(t.shape, self.value)
+        if self.form == "potential":
+            return np.asarray(np.exp(-FARADAY_C_MOL * self.value / (GAS_J_MOL_K * t)))
         return np.asarray(self.value / (1000.0 * GAS_J_MOL_K * t))
+
+    def log_slope(self, temperature_k: FloatArray, seen: Constant | None = None) -> FloatArray:
+        """Return T d ln c/dT at each temperature, not for "equilibrium".
+
+        `seen` says what counts as constant here in place of the form, for a gas.
+        """
+        form = (
+            seen if seen is not None and self.form in ("concentration", "pressure") else self.form
+        )
+        if form == "potential":
+            volts = np.asarray(self.value, dtype=np.float64)
+            return np.asarray(FARADAY_C_MOL * volts / (GAS_J_MOL_K * temperature_k))
+        return np.full(temperature_k.shape, -1.0 if form == "pressure" else 0.0)
 
 
 @dataclass(frozen=True)
@@ -194,6 +212,12 @@ class Conditions:
     flow : Flow or None
     quasi_steady : tuple of str
         Species whose quasi-steady state is set beside the time course.
+    constant : {"concentration", "pressure"} or None
+        What of a gas the study says stays when the temperature changes.
+    total_gas : Held or None
+        All of the gas, where the total pressure is stated.
+    seen : {"concentration", "pressure"} or None
+        What counts as constant in derivatives by temperature, in place of what is held so.
     """
 
     temperature_k: tuple[float, ...]
@@ -203,6 +227,9 @@ class Conditions:
     total: dict[str, Held] = field(default_factory=dict)
     flow: Flow | None = None
     quasi_steady: tuple[str, ...] = ()
+    constant: Constant | None = None
+    total_gas: Held | None = None
+    seen: Constant | None = None
 
 
 def held(value: Any, *, where: str) -> Held:

@@ -10,6 +10,7 @@ from types import MappingProxyType
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.names import Tunnelling
 from thermo_pp.nearest import nearest, suggestion
+from thermo_pp.rate_laws import Arrhenius, Crossing, Falloff, Height
 
 _TERM = re.compile(r"(?:([0-9]{1,3})\s+)?(\S+)")
 
@@ -31,8 +32,16 @@ class Step:
     rate : tuple or None
         Declared forward rate constant: (A, n, E_a): k = A (T/298.15 K)^n exp(-E_a/RT), A in
         (mol/L)^(1-m) s^-1, E_a in kJ/mol.
+    height : Height or None
+        Of a saddle that is not located.
+    falloff : Falloff or None
+        Declared forward rate constant that depends on how much there is of a collider.
+    crossing : Crossing or None
+        The step changes the spin state at the point that it goes through.
     viscosity : tuple of (temperature / K, Pa s) pairs or None
         One pair: constant.
+    permittivity : tuple of (temperature / K, relative permittivity) pairs or None
+        The same, for the encounter of ions.
     tunnelling : {"none", "wigner", "eckart"}
     where : str
         ``study.toml [steps.3]``, for messages; steps count from 1.
@@ -43,14 +52,23 @@ class Step:
     products: Mapping[str, int]
     through: str | None = None
     barrierless: bool = False
-    rate: tuple[float, float, float] | None = None
+    rate: Arrhenius | None = None
+    height: Height | None = None
+    falloff: Falloff | None = None
+    crossing: Crossing | None = None
     viscosity: tuple[tuple[float, float], ...] | None = None
+    permittivity: tuple[tuple[float, float], ...] | None = None
     tunnelling: Tunnelling = "none"
     where: str = ""
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "reactants", MappingProxyType(dict(self.reactants)))
         object.__setattr__(self, "products", MappingProxyType(dict(self.products)))
+
+    @property
+    def is_declared(self) -> bool:
+        """Whether the rate constant itself is declared."""
+        return self.rate is not None or self.falloff is not None
 
     @property
     def species(self) -> tuple[str, ...]:

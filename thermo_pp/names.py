@@ -20,6 +20,10 @@ Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
 """How a reference energy goes to the limit of the basis set."""
 Duplicates = Literal["count", "once"]
 Thermal = Literal["own", "nearest"]
+Constant = Literal["concentration", "pressure"]
+"""What of a gas stays when the temperature changes."""
+Broadening = Literal["lindemann", "troe", "iupac", "jpl"]
+"""How a rate constant is broadened between its limits of low and high pressure."""
 Definition = Literal["free", "pool", "relaxation", "cycle"]
 SelectivityKind = Literal["products", "enantiomeric", "diastereomeric", "isotopic"]
 PolynomialForm = Literal["nasa7", "nasa9", "shomate"]

@@ -23,6 +23,7 @@ AVOGADRO_MOL = 6.02214076e23
 LIGHT_M_S = 299792458.0
 ELEMENTARY_CHARGE_C = 1.602176634e-19
 GAS_J_MOL_K = 8.31446261815324  # k N_A
+FARADAY_C_MOL = 96485.33212331001  # e N_A
 BAR_PA = 1.0e5
 ATM_PA = 101325.0
 CALORIE_J = 4.184  # thermochemical calorie
@@ -30,6 +31,7 @@ CALORIE_J = 4.184  # thermochemical calorie
 ATOMIC_MASS_KG = 1.66053906892e-27
 HARTREE_J = 4.3597447222060e-18
 BOHR_M = 5.29177210544e-11
+VACUUM_PERMITTIVITY_F_M = 8.8541878188e-12
 ELECTRON_MASS_KG = 9.1093837139e-31
 ELECTRON_MASS_U = ELECTRON_MASS_KG / ATOMIC_MASS_KG
 
@@ -64,6 +66,8 @@ _NUMBER = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*
 _UNIT = re.compile(
     r"(?:1/)?[A-Za-zµμ°Å(](?:[A-Za-zµμ°Å_/().\s]|\*(?!\*)|\^[+-]?\d\b|[+-]?\d\b){0,60}"
 )
+_POWER = re.compile(r"(?<![A-Za-z])([cdmµμ]?m|s|mol|L|K)(-?[1-4])(?![0-9])")
+"""A power without its ``^``: ``cm3``, ``mol-1``."""
 _PER_MOLECULE = re.compile(r"\b(?:molecules|molecule)\b")
 
 
@@ -145,7 +149,7 @@ def convert(number: float, unit_text: str, unit: str, *, where: str, shown: str 
     if unit == "1/cm" and compact in _MOLECULAR_ENERGY_KJ_MOL:
         return number * _MOLECULAR_ENERGY_KJ_MOL[compact] / WAVENUMBER_KJ_MOL
     per_mole = "mol" in unit and "J" not in unit  # "-50 kJ" lacks its amount
-    spelled = _PER_MOLECULE.sub("particle", unit_text)
+    spelled = _POWER.sub(r"\1^\2", _PER_MOLECULE.sub("particle", unit_text))
     registry = _registry()
     try:
         source = registry.parse_units(spelled)

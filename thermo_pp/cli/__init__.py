@@ -18,6 +18,7 @@ from thermo_pp.cli.profile import profile
 from thermo_pp.cli.report import report
 from thermo_pp.cli.species import species
 from thermo_pp.cli.survey import survey
+from thermo_pp.cli.sweep import sweep
 from thermo_pp.errors import ThermoError
 
 _SETTINGS = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
@@ -59,6 +60,7 @@ for _command in (
     barrier,
     compare,
     isotopes,
+    sweep,
     report,
 ):
     main.add_command(_command)

@@ -14,6 +14,7 @@ from thermo_pp.cli.options import (
     TIMES,
     Showing,
     Treating,
+    number,
     output_options,
     temperature_options,
     treatment_options,
@@ -54,6 +55,12 @@ def _regimes(study: Study, over: tuple[str, str, str] | None, points: int) -> Re
     metavar="N",
     help="Points of that map along the amount.",
 )
+@click.option(
+    "--doubt/--no-doubt",
+    "doubting",
+    default=None,
+    help="Show how sure every answer is; as the study has [doubt] or not unless given.",
+)
 @temperature_options
 @treatment_options
 @LEVEL
@@ -63,6 +70,7 @@ def barrier(
     times: tuple[float, ...] | None,
     over: tuple[str, str, str] | None,
     regime_points: int,
+    doubting: bool | None,
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
     level: str | None,
@@ -75,19 +83,22 @@ def barrier(
     study's unless given here. A network that is not linear is followed in time from [conditions]
     initial, and a flow is solved for its steady state. Where several products compete, their ratios
     follow; with --regimes or [regimes] a map says which approximation holds, which state rests and
-    which one controls where.
+    which one controls where. With [doubt] in the study, how sure every answer
+    is, and what other levels of theory and choices of treatment make of it.
 
     \b
     Example:
         thermo-pp barrier study.toml
         thermo-pp barrier study.toml --temperature-range 250 400 10 --format csv -o barrier.csv
         thermo-pp barrier study.toml --low-modes rotor-enthalpy --format json
+        thermo-pp barrier study.toml --no-doubt
         thermo-pp barrier study.toml --time
         thermo-pp barrier study.toml --time "10 s" --time "1 h"
         thermo-pp barrier study.toml --regimes W 1e-6 1e-1
     """
     from thermo_pp.output import barrier as output
     from thermo_pp.output import barrier_tables, courses
+    from thermo_pp.output import doubt as doubts
     from thermo_pp.output import regimes as regimes_output
     from thermo_pp.output import selectivity as selectivity_output
     from thermo_pp.output.notes import usual
@@ -107,7 +118,9 @@ def barrier(
     flow = loaded.flow() if conditions.flow is not None else None
     regimes = loaded.regimes(_regimes(loaded, over, regime_points))
     selectivity = loaded.selectivity(result)
-    further = [one for one in (transient, flow, selectivity) if one is not None]
+    wanted = loaded.uncertainty is not None if doubting is None else doubting
+    doubt = loaded.doubt() if wanted else None
+    further = [one for one in (transient, flow, selectivity, doubt) if one is not None]
     findings = tuple(
         dict.fromkeys(
             (*loaded.findings, *result.findings, *(f for one in further for f in one.findings))
@@ -126,17 +139,23 @@ def barrier(
             found += [] if flow is None else courses.flow_tables(flow, unit, people=False)
             found += [] if selectivity is None else selectivity_output.wide(selectivity, unit)
             found += [] if regimes is None else regimes_output.wide(regimes, unit)
+            found += [] if doubt is None else doubts.doubt_wide(doubt, unit)
             return found
         found = [] if transient is None else courses.time_course_tables(transient, unit)
         found += [] if flow is None else courses.flow_tables(flow, unit, people=True)
+        beside = [] if doubt is None else doubts.doubt_tables(doubt, unit)
         return [
             *found,
-            *barrier_tables.tables(result, treatment, unit, loaded.levels, regimes, selectivity),
+            *barrier_tables.tables(
+                result, treatment, unit, loaded.levels, regimes, selectivity, beside
+            ),
         ]
 
     show(
         showing,
         findings,
         blocks,
-        lambda: output.keys(result, treatment, findings, transient, flow, regimes, selectivity),
+        lambda: output.keys(
+            result, treatment, findings, transient, flow, regimes, selectivity, doubt
+        ),
     )

@@ -8,7 +8,9 @@ import click
 
 from thermo_pp.cli.answers import show
 from thermo_pp.cli.options import (
+    DEVIATION,
     LEVEL,
+    SADDLE_DEVIATION,
     STUDY,
     Showing,
     Treating,
@@ -21,17 +23,8 @@ from thermo_pp.cli.options import (
 @click.command(short_help="Computed against measured rate constants, and rival mechanisms.")
 @click.argument("study", type=STUDY)
 @click.argument("measured", type=STUDY)
-@click.option(
-    "--deviation",
-    metavar="ENERGY",
-    help='Standard deviation of the electronic energies: "4 kJ/mol". Of saddle points too, unless '
-    "they have their own.",
-)
-@click.option(
-    "--saddle-deviation",
-    metavar="ENERGY",
-    help="Standard deviation of the electronic energies of saddle points.",
-)
+@DEVIATION
+@SADDLE_DEVIATION
 @click.option(
     "--rival",
     "rivals",

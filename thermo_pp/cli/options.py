@@ -48,6 +48,17 @@ def _seconds(text: str) -> float:
     return usage(lambda: quantity(number(text), "s", where="--time"))
 
 
+DEVIATION = click.option(
+    "--deviation",
+    metavar="ENERGY",
+    help='Standard deviation of the electronic energies: "4 kJ/mol". Of saddle points too, unless '
+    "they have their own.",
+)
+SADDLE_DEVIATION = click.option(
+    "--saddle-deviation",
+    metavar="ENERGY",
+    help="Standard deviation of the electronic energies of saddle points.",
+)
 TIMES = click.option(
     "--time",
     "times",

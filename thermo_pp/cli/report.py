@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import re
 import sys
 from collections.abc import Callable, Iterator
@@ -14,7 +15,9 @@ import click
 
 from thermo_pp.cli.answers import end_if_strict, say
 from thermo_pp.cli.options import (
+    DEVIATION,
     LEVEL,
+    SADDLE_DEVIATION,
     STUDY,
     TIMES,
     Showing,
@@ -40,6 +43,13 @@ Progress = Callable[[int, int, str], None]
     type=click.Path(path_type=Path),
     help="The folder to write. An older report there is replaced, anything else is not.",
 )
+@click.option(
+    "--measured",
+    type=STUDY,
+    help="Measured rate constants (a CSV file, as for compare) to set beside the computed ones.",
+)
+@DEVIATION
+@SADDLE_DEVIATION
 @TIMES
 @temperature_options
 @treatment_options
@@ -49,6 +59,9 @@ Progress = Callable[[int, int, str], None]
 def report(
     study: Path,
     folder: Path,
+    measured: Path | None,
+    deviation: str | None,
+    saddle_deviation: str | None,
     times: tuple[float, ...] | None,
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
@@ -67,15 +80,25 @@ def report(
         thermo-pp report study.toml -o report
         thermo-pp report study.toml -o report --temperature-range 250 400 10
         thermo-pp report study.toml -o report --low-modes rotor-enthalpy --quiet
+        thermo-pp report study.toml -o report --measured measured.csv --deviation "4 kJ/mol"
     """
+    if measured is None and (deviation or saddle_deviation):
+        raise click.UsageError("a deviation is for the comparison: give --measured too")
     from thermo_pp.output.folders import whole_folder
     from thermo_pp.output.manifest import check_report
     from thermo_pp.output.report import write_report
     from thermo_pp.study.load import Study
-    from thermo_pp.study.run import answer
+    from thermo_pp.study.run import Measured, answer
 
     showing = Showing("table", "kJ/mol", None, strict, quiet)
+    beside = None
+    if measured is not None:  # as the study would name it
+        name = os.path.relpath(measured.resolve(), study.parent.resolve())
+        beside = Measured(Path(Path(name).as_posix()), deviation, saddle_deviation)
     options = {
+        "measured": None if beside is None else str(beside.file),
+        "deviation": deviation,
+        "saddle_deviation": saddle_deviation,
         "temperature_k": temperature_k,
         "treatment": treating.keys(),
         "level": level,
@@ -86,7 +109,7 @@ def report(
             loaded = Study.load(
                 study.name, temperatures=temperature_k, treatment=treating.keys(), level=level
             )
-            answers = answer(loaded, times_s=times or (), progress=computing)
+            answers = answer(loaded, times_s=times or (), measured=beside, progress=computing)
             write_report(answers, part, options, writing)
         findings = _from_here(answers.findings, study.parent)
         say(showing, findings, all_in="results.json")

@@ -12,8 +12,10 @@ from thermo_pp.units import (
     ATOMIC_MASS_KG,
     AVOGADRO_MOL,
     BOLTZMANN_J_K,
+    ELEMENTARY_CHARGE_C,
     GAS_J_MOL_K,
     PLANCK_J_S,
+    VACUUM_PERMITTIVITY_F_M,
 )
 
 FloatArray = NDArray[np.float64]
@@ -111,3 +113,39 @@ def diffusion_rate(
     t = np.asarray(temperature_k, dtype=np.float64)
     limit = 8.0 * GAS_J_MOL_K * t / (3.0 * np.asarray(viscosity_pa_s, dtype=np.float64))
     return np.asarray((0.5 if like else 1.0) * limit * _LITRES_PER_M3)
+
+
+def ion_factor(
+    temperature_k: ArrayLike,
+    charges: int,
+    permittivity: ArrayLike,
+    distance_angstrom: float,
+) -> tuple[FloatArray, FloatArray]:
+    """Return ln of the factor by which ions meet more or less often than neutral partners do.
+
+    f = d/(exp(d) - 1), d = z1 z2 e^2/(4 pi eps0 eps k T R).
+
+    Parameters
+    ----------
+    temperature_k, permittivity : shapes that broadcast
+        The permittivity is relative to that of the vacuum.
+    charges : int
+        z1 z2.
+    distance_angstrom : float
+        Distance R at which they have met.
+
+    Returns
+    -------
+    tuple of shape (...)
+        ln f, and d ln f/d ln d.
+
+    Source: P. Debye, Trans. Electrochem. Soc. 1942, 82, 265 (from memory).
+    """
+    t = np.asarray(temperature_k, dtype=np.float64)
+    onsager = ELEMENTARY_CHARGE_C**2 / (4.0 * np.pi * VACUUM_PERMITTIVITY_F_M * BOLTZMANN_J_K)
+    d = charges * onsager / (np.asarray(permittivity) * t * distance_angstrom * 1e-10)
+    size = np.abs(d)
+    # of attraction -d = |d|: f = |d|/(1 - exp(-|d|)); repulsion is smaller by exp(-|d|)
+    log_factor = np.log(size / -np.expm1(-size)) - np.where(d > 0.0, size, 0.0)
+    by_log = 1.0 - size / np.expm1(size) - np.where(d > 0.0, size, 0.0)
+    return np.asarray(log_factor), np.asarray(by_log)

@@ -65,6 +65,22 @@ def sensitivity(rate: LogRate, network: Network, step_names: tuple[str, ...]) ->
     return Sensitivity(control, saddles, orders)
 
 
+def collider_orders(
+    rate: LogRate, network: Network, by_step: Mapping[str, FloatArray]
+) -> dict[str, FloatArray]:
+    """Return the order of a rate in the colliders of its steps, which act on both directions alike.
+
+    Parameters
+    ----------
+    rate : LogRate
+    network : Network
+    by_step : mapping of str to shape (t, n)
+        Order of every step's constants in each collider.
+    """
+    steps = [edge.step for edge in network.edges]
+    return {name: (rate.saddles * orders[:, steps]).sum(axis=1) for name, orders in by_step.items()}
+
+
 def activation(rate: LogRate, temperature_k: FloatArray) -> Activation:
     """Return the activation quantities of the pseudo-first-order constant: H = E_a - RT, G by the Eyring equation."""
     rt = GAS_J_MOL_K * temperature_k
@@ -95,7 +111,7 @@ def standard_activation(
         concentration = held.concentration_mol_l(temperature_k)
         in_bar = np.log(concentration * 1000.0 * GAS_J_MOL_K * temperature_k / 1.0e5)
         log_activity = in_bar - state.log_ratio_to_bar(temperature_k)
-        slope = (1.0 if held.form == "concentration" else 0.0) - state.log_ratio_slope
+        slope = 1.0 + held.log_slope(temperature_k) - state.log_ratio_slope
         enthalpy = enthalpy - rt * order * slope
         gibbs = gibbs + rt * order * log_activity
     if not whole.any():

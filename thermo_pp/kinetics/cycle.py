@@ -113,13 +113,13 @@ def per_cycle(
         if label[0] <= 0:  # no product, or counted the other way round
             return None
         driving = affinity(label)  # 1 - exp(-A), which may be far below zero
-        worth = Scaled.from_log(log_drive(driving)) * Scaled.from_float(
+        worth = network.numbers.from_log(log_drive(driving)) * network.numbers.from_float(
             np.full(b, label[0] / turn[1])
         )
-        return Scaled(worth.mantissa * np.sign(driving), worth.exponent)
+        return worth.signed(np.sign(driving))
 
-    ends = Scaled.zeros((b, n, 2))
-    ends[:, :, 1] = Scaled.from_float(np.ones((b, n)))
+    ends = network.numbers.zeros((b, n, 2))
+    ends[:, :, 1] = network.numbers.from_float(np.ones((b, n)))
     at_once: list[tuple[int, int, int, Label, Scaled]] = []
     for number, edge in enumerate(network.edges):
         if edge.tail != edge.head or edge.tail not in inside or not labels[number][0]:
@@ -130,13 +130,13 @@ def per_cycle(
         assert worth is not None
         log = (network.log_forward, network.log_reverse)[way][:, number]
         row = inside.index(edge.tail)
-        gain = Scaled.from_log(log) * worth
+        gain = network.numbers.from_log(log) * worth
         ends[:, row, 0] = ends[:, row, 0] + gain
         at_once.append((number, way, row, label, gain))
     reduced = Reduction(edges.ways, ends, np.zeros(2), run=run, reward=0)
     passages = reduced.eliminate_to(1)
-    share = Scaled.zeros((b, n))
-    share[:, 0] = Scaled.from_float(np.ones(b))
+    share = network.numbers.zeros((b, n))
+    share[:, 0] = network.numbers.from_float(np.ones(b))
     for row, passage in enumerate(passages, start=1):
         share[:, row] = (share[:, passage.rows] * passage.into).sum(axis=1) / passage.leaving
     reward, mass = reduced.ends[:, 0, 0], reduced.ends[:, 0, 1]
@@ -161,6 +161,6 @@ def per_cycle(
         :, np.newaxis
     ]  # in equilibrium nothing controls the rate
     forward, reverse = forward * defined, reverse * defined
-    size = Scaled(np.abs(reward.mantissa), reward.exponent)
+    size = reward.signed(sign)
     rate = from_edges(network, size.log() - mass.log(), forward, reverse, sign, driving)
     return rate, inside, fraction(share, share.sum(axis=1)[:, np.newaxis])

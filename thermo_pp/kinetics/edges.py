@@ -84,7 +84,7 @@ class EdgeMatrix:
         b, n = len(network.temperature_k), len(chosen)
         self.shape = b, len(network.edges)
         self.ways: dict[Label, Scaled] = {}
-        self.ends = Scaled.zeros((b, n, len(ends)))
+        self.ends = network.numbers.zeros((b, n, len(ends)))
         self.one_way: list[tuple[int, int, Label | None, int, int, Scaled]] = []
         for number, edge in enumerate(network.edges):
             label = labels[number] if labels is not None else ()
@@ -99,7 +99,7 @@ class EdgeMatrix:
                 row = place[source]
                 if target in place:
                     if mark not in self.ways:
-                        self.ways[mark] = Scaled.zeros((b, n, n))
+                        self.ways[mark] = network.numbers.zeros((b, n, n))
                     matrix, column = self.ways[mark], place[target]
                 else:
                     matrix, column = self.ends, end[target]
@@ -107,7 +107,7 @@ class EdgeMatrix:
                 kind = mark if target in place else None
                 self.one_way.append((number, way, kind, row, column, rate))
         if not self.ways:
-            self.ways[labels[0] if labels else ()] = Scaled.zeros((b, n, n))
+            self.ways[labels[0] if labels else ()] = network.numbers.zeros((b, n, n))
 
     def back(
         self, ways: Mapping[Label, FloatArray], ends: FloatArray, offset: int = 0

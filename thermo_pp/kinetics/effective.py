@@ -12,9 +12,17 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.approximate import approximate
 from thermo_pp.kinetics.closed import decay_shares
-from thermo_pp.kinetics.controls import Sensitivity, activation, sensitivity, standard_activation
+from thermo_pp.kinetics.controls import (
+    Sensitivity,
+    activation,
+    collider_orders,
+    sensitivity,
+    standard_activation,
+)
 from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import steady_state
+from thermo_pp.kinetics.holding import with_holding
+from thermo_pp.kinetics.limit_share import with_limits
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.net_reaction import net_reaction, write_side
 from thermo_pp.kinetics.network import NotLinear
@@ -55,6 +63,7 @@ def effective(study: StudyLike) -> EffectiveRate:
         The network is not linear, has no way from reactant to product, or holds species that are
         out of balance.
     """
+    import scipy.linalg  # noqa: F401  a library that is not loaded yet cannot be limited
     from threadpoolctl import threadpool_limits
 
     # the matrices are small: threads would only wait for each other; what is too large for an
@@ -85,7 +94,7 @@ def _effective(study: StudyLike) -> EffectiveRate:
         found[definition] = _rate(
             definition, rates, changes[definition], approximations[definition]
         )
-    found = with_tunnelling(found, rates)
+    found = with_limits(with_holding(with_tunnelling(found, rates), rates), rates)
     steps = _step_rates(rates)
     findings = (
         *study.findings,
@@ -102,6 +111,7 @@ def _effective(study: StudyLike) -> EffectiveRate:
         rates=found,
         steps=steps,
         held_mol_l=_held(rates),
+        constant=study.conditions.constant,
         findings=tuple(dict.fromkeys(findings)),
     )
     return replace(result, words=words(result))
@@ -155,6 +165,7 @@ def _rate(
         control=sensed.control,
         saddles=sensed.saddles,
         orders=sensed.orders,
+        collider_orders=collider_orders(log_rate, network, rates.steps.collider_orders),
         approximations=approximations,
         sign_shift_kj_mol=_sign_shifts(definition, rates, log_rate, sensed),
     )
@@ -351,9 +362,13 @@ def _findings(
         for number, step in enumerate(rates.model.mechanism.steps):
             name = rates.steps.names[number]
             one_side = 1 in (sum(step.reactants.values()), sum(step.products.values()))
-            if one_side and any(
-                rate is not None and np.any(np.abs(rate.control[name]) > HIGH_PRESSURE_CONTROL)
-                for rate in found.values()
+            if (
+                one_side
+                and step.falloff is None
+                and any(
+                    rate is not None and np.any(np.abs(rate.control[name]) > HIGH_PRESSURE_CONTROL)
+                    for rate in found.values()
+                )
             ):
                 add(
                     "high-pressure-limit",

@@ -156,7 +156,7 @@ class Reduction:
         kept, through = {}, []
         for label, terms in added.items():
             if label not in self.ways:
-                self.ways[label] = Scaled.zeros(next(iter(self.ways.values())).shape)
+                self.ways[label] = type(self.ends).zeros(next(iter(self.ways.values())).shape)
             old = self.ways[label][:, block[0], block[1]]
             new = _add_up([old, *(term for _, _, term in terms)])
             self.ways[label][:, block[0], block[1]] = new
@@ -213,7 +213,7 @@ class Reduction:
                         runs.append(
                             (label_in, label_out, label, place_in_rows, place_in_columns, gain)
                         )
-                    term[back] = Scaled.zeros((len(term.mantissa), len(place_in_rows)))
+                    term[back] = type(term).zeros((len(term.mantissa), len(place_in_rows)))
                 added.setdefault(label, []).append((label_in, label_out, term))
         return added, runs
 
@@ -330,7 +330,10 @@ def _present(mantissas: Sequence[FloatArray]) -> Indices:
     """Return the places (last axis) at which any number is not 0."""
     found = np.zeros(mantissas[0].shape[1], np.bool_)
     for mantissa in mantissas:
-        found |= mantissa.any(axis=0)
+        found |= mantissa[0] != 0.0
+    for mantissa in mantissas:
+        if not found.all():  # what the first row has need not be looked for in the others
+            found[~found] = mantissa[:, ~found].any(axis=0)
     return np.flatnonzero(found)
 
 
@@ -349,7 +352,7 @@ def _leaving(out: Mapping[Label, Scaled], ends: Scaled, exits: FloatArray) -> Sc
 
 def _total(by_label: Mapping[Label, Scaled], size: int, like: Scaled) -> Scaled:
     if not by_label:
-        return Scaled.zeros((len(like.mantissa), size))
+        return type(like).zeros((len(like.mantissa), size))
     return _add_up(list(by_label.values()))
 
 

@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, count_end, from_edges, log_drive
 from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.network import Network
-from thermo_pp.kinetics.scaled import Scaled
 
 FloatArray = NDArray[np.float64]
 
@@ -112,7 +111,7 @@ def steady_state(
     inside = network.members(reactant, products)
     edges = EdgeMatrix(network, inside, products)
     b, n, k = edges.ends.shape
-    ways = Scaled.zeros((b, n + 1, n))
+    ways = network.numbers.zeros((b, n + 1, n))
     ways[:, 1:, :] = edges.ways[()]
     levels: dict[int, FloatArray] = {reactant: np.zeros(b)}
     for product, amount in zip(products, amounts, strict=True):
@@ -126,15 +125,15 @@ def steady_state(
                 (edge.head, edge.tail, network.log_reverse),
             ):
                 if source == product and target in inside:
-                    feed = Scaled.from_log(logs[:, number] + amount.log_over_reactant)
+                    feed = network.numbers.from_log(logs[:, number] + amount.log_over_reactant)
                     column = inside.index(target)
                     ways[:, 0, column] = ways[:, 0, column] + feed
-    ends = Scaled.zeros((b, n + 1, k))
+    ends = network.numbers.zeros((b, n + 1, k))
     ends[:, 1:, :] = edges.ends
     reduced = Reduction({(): ways}, ends, np.ones(k), sources=1)
     passages = reduced.eliminate_to(1, tape=False)
-    amount_of = Scaled.zeros((b, n + 1))
-    amount_of[:, :2] = Scaled.from_float(np.ones((b, 2)))
+    amount_of = network.numbers.zeros((b, n + 1))
+    amount_of[:, :2] = network.numbers.from_float(np.ones((b, 2)))
     for row, passage in enumerate(passages, start=2):
         arriving = (amount_of[:, passage.rows] * passage.into).sum(axis=1)
         amount_of[:, row] = arriving / passage.leaving

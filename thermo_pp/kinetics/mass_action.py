@@ -253,7 +253,7 @@ def mass_action(
     mu = np.stack([energies.reduced[:, energies.index(name)] for name in columns], axis=1)
     for name in stated:
         mu[:, place[name]] += logs[name]
-        slope[:, place[name]] += rt if held[name].form == "pressure" else 0.0
+        slope[:, place[name]] -= rt * held[name].log_slope(t, conditions.seen)
     frequency = log_frequency_factor(t)[:, np.newaxis]
     saddles = tuple(dict.fromkeys(rates.names))
     responses = (*saddles, *columns, TEMPERATURE)

@@ -10,7 +10,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.conditions import Conditions, Treatment
+from thermo_pp.conditions import Conditions, Held, Treatment
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.closed import decays, relaxation
 from thermo_pp.kinetics.cycle import Turn, alike, per_cycle, turns
@@ -19,6 +19,7 @@ from thermo_pp.kinetics.free import Amount, per_free_reactant
 from thermo_pp.kinetics.network import Network, check_loops, linear_network
 from thermo_pp.kinetics.pool import Pool, per_pool
 from thermo_pp.kinetics.products import per_free_reactant_driven
+from thermo_pp.kinetics.scaled import Scaled
 from thermo_pp.kinetics.spectrum import Spectrum
 from thermo_pp.kinetics.steps import (
     ElementaryRates,
@@ -61,7 +62,8 @@ class Model:
 
     def of(self, energies: Energetics) -> Rates:
         """Return the rates that free energies lead to."""
-        return Rates(self, energies, elementary_rates(self.mechanism, energies, self.treatment))
+        steps = elementary_rates(self.mechanism, energies, self.treatment, self.conditions)
+        return Rates(self, energies, steps)
 
 
 @dataclass(frozen=True, eq=False)
@@ -73,19 +75,23 @@ class Rates:
     model : Model
     energies : Energetics
     steps : ElementaryRates
+    numbers : type
+        What rates are worked out in: `Scaled`, or `Ordinary` where speed counts.
     """
 
     model: Model
     energies: Energetics
     steps: ElementaryRates
+    numbers: type[Scaled] = Scaled
 
     @cached_property
     def network(self) -> Network:
         """The linear network."""
         model = self.model
-        return linear_network(
+        network = linear_network(
             model.mechanism, model.conditions, self.energies, self.steps, self.equilibrium
         )
+        return replace(network, numbers=self.numbers)
 
     @cached_property
     def equilibrium(self) -> dict[str, dict[str, Fraction]]:
@@ -180,7 +186,7 @@ class Rates:
         reactant_slope = np.zeros(len(t))
         if name in held and held[name].value is not None:
             reactant = log_concentration(held[name], t)
-            reactant_slope = _slope(held[name].form, t)
+            reactant_slope = self._holding(held[name], t)
         found: list[Amount | None] = []
         for number in self.products:
             end = self.network.states[number]
@@ -191,9 +197,14 @@ class Rates:
             slope = -reactant_slope
             for member, count in end:
                 log = log + count * log_concentration(held[member], t)
-                slope = slope + count * _slope(held[member].form, t)
+                slope = slope + count * self._holding(held[member], t)
             found.append(Amount(log, slope))
         return tuple(found)
+
+    def _holding(self, held: Held, temperature_k: FloatArray) -> FloatArray:
+        """Return R T^2 d ln c/dT of a held species."""
+        seen = self.model.conditions.seen
+        return GAS_J_MOL_K * temperature_k * held.log_slope(temperature_k, seen)
 
     @cached_property
     def free(self) -> LogRate:
@@ -259,8 +270,3 @@ class Rates:
         reduced[:, column] += shift
         slope[:, column] += by_j_mol
         return replace(self, energies=replace(self.energies, reduced=reduced, slope_j_mol=slope))
-
-
-def _slope(form: str, temperature_k: FloatArray) -> FloatArray:
-    """Return R T^2 d ln c/dT of a held species."""
-    return -GAS_J_MOL_K * temperature_k if form == "pressure" else np.zeros(len(temperature_k))

@@ -86,6 +86,8 @@ class Network:
         Products of a catalytic cycle that are not held: there is none of them.
     absent_change : shape (m, a)
         How much of each is given off along each edge.
+    numbers : type
+        What rates are worked out in: `Scaled`, or `Ordinary` where speed counts.
     """
 
     temperature_k: FloatArray
@@ -106,6 +108,7 @@ class Network:
     equilibrium: Mapping[str, Mapping[str, Fraction]]
     absent: tuple[str, ...] = ()
     absent_change: FloatArray = field(default_factory=lambda: np.zeros((0, 0)))
+    numbers: type[Scaled] = Scaled
 
     def state(self, name: str) -> int:
         """Return the number of the state that is one molecule of `name`."""
@@ -114,7 +117,8 @@ class Network:
     @cached_property
     def scaled(self) -> tuple[Scaled, Scaled]:
         """The constants of all edges, forward and reverse, shape (b, m)."""
-        return Scaled.from_log(self.log_forward), Scaled.from_log(self.log_reverse)
+        kind = self.numbers
+        return kind.from_log(self.log_forward), kind.from_log(self.log_reverse)
 
     @cached_property
     def exists(self) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
@@ -302,7 +306,7 @@ def _with_numbers(
         if name in stated:
             at = conditions.held[name]
             potential[:, column] += log_concentration(at, t)
-            slope[:, column] += rt if at.form == "pressure" else 0.0
+            slope[:, column] -= rt * at.log_slope(t, conditions.seen)
     m = len(edges)
     counts = np.zeros((2, m, len(species)))
     exchange, product_change = np.zeros((m, len(stated))), np.zeros(m)

@@ -92,6 +92,7 @@ def step_rates(rates: Rates, reversibility: Mapping[int, FloatArray]) -> tuple[S
             reversibility=reversibility[number],
             limited=rates.steps.limited[:, number],
             tunnelling=step.tunnelling,
+            log_transmission=rates.steps.log_transmission[:, number],
             log_tunnelling=rates.steps.log_kappa[:, number],
             tunnelling_energy_kj_mol=rates.steps.kappa_energy_j_mol[:, number] / 1000.0,
         )

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges
-from thermo_pp.kinetics.elimination import Reduction
+from thermo_pp.kinetics.elimination import Indices, Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
 
@@ -60,10 +60,11 @@ class Pool:
         system = 1.0 / (1.0 + faster)
         if np.linalg.cond(system) > _WORST_CONDITION:
             return None
-        ways = Scaled.zeros((n, *self.ways.shape[1:])) + self.ways[row : row + 1]
-        ends = Scaled.zeros((n, self.ends.shape[1], 2))
+        kind = type(self.ways)
+        ways = kind.zeros((n, *self.ways.shape[1:])) + self.ways[row : row + 1]
+        ends = kind.zeros((n, self.ends.shape[1], 2))
         ends[:, :, 0] = ends[:, :, 0] + self.ends[row : row + 1].sum(axis=2)
-        ends[:, :, 1] = ends[:, :, 1] + Scaled.from_log(log_decay)[:, np.newaxis]
+        ends[:, :, 1] = ends[:, :, 1] + kind.from_log(log_decay)[:, np.newaxis]
         reduced = Reduction({(): ways}, ends, np.ones(2))
         reduced.eliminate_to(1, tape=False)
         out = reduced.ends[:, 0, :]
@@ -103,10 +104,10 @@ def per_pool(network: Network, reactant: int, products: Sequence[int]) -> Pool:
     right, left, log_longest = _longest(times)
     b, n, k = edges.ends.shape
     # 1/lambda = left . times . right with both vectors fixed: one elimination gives its derivative
-    source = Scaled.zeros((b, n + 1, n))
+    source = network.numbers.zeros((b, n + 1, n))
     source[:, 1:, :] = edges.ways[()]
     source[:, 0, :] = left
-    ends = Scaled.zeros((b, n + 1, k + 1))
+    ends = network.numbers.zeros((b, n + 1, k + 1))
     ends[:, 1:, :k] = edges.ends
     ends[:, 1:, k] = right
     exits = np.append(np.ones(k), 0.0)
@@ -148,14 +149,15 @@ def log_slowest(
 def mean_times(ways: Scaled, ends: Scaled) -> Scaled:
     """Return the mean time spent in state j after a start in i, shape (b, n, n): the inverse, all positive."""
     b, n, k = ends.shape
-    rewards = Scaled.zeros((b, n, k + n))
+    kind = type(ends)
+    rewards = kind.zeros((b, n, k + n))
     rewards[:, :, :k] = ends
     square = np.arange(n)
-    rewards[:, square, k + square] = Scaled.from_float(np.ones((b, n)))
+    rewards[:, square, k + square] = kind.from_float(np.ones((b, n)))
     reduced = Reduction({(): ways}, rewards, np.append(np.ones(k), np.zeros(n)))
     passages = reduced.eliminate_to(1, tape=False)
     first = reduced.ends[:, 0, :]
-    times = Scaled.zeros((b, n, n))
+    times = kind.zeros((b, n, n))
     times[:, 0, :] = first[:, k:] / first[:, :k].sum(axis=1)[:, np.newaxis]
     for row, passage in enumerate(passages, start=1):
         own = passage.end_columns >= k
@@ -170,33 +172,48 @@ def _longest(times: Scaled) -> tuple[Scaled, Scaled, FloatArray]:
     """Return the right and left vectors of the largest eigenvalue of a positive matrix, and its logarithm."""
     start = times.sum(axis=2)
     plain, top = _similar(times)
-    right, left, settled = _iterate(plain)
-    if not settled:
-        right, left = _square(plain)
+    right, left, unsettled = _iterate(plain)
+    if len(unsettled):
+        right[unsettled], left[unsettled] = _square(plain[unsettled])
     value = np.einsum("bi,bij,bj->b", left, plain, right) / np.einsum("bi,bi->b", left, right)
     log = np.log(value) + top * np.log(2.0)
-    return Scaled.from_float(right) * start, Scaled.from_float(left) / start, log
+    kind = type(times)
+    return kind.from_float(right) * start, kind.from_float(left) / start, log
 
 
-MOST_ITERATIONS = 100
-"""Plain iterations before the matrix is squared: enough for decays whose ratio is above 1.5."""
+MOST_ITERATIONS = 64
+"""Plain iterations before the matrix is squared: enough for decays whose ratio is above 2."""
 
 
-def _iterate(plain: FloatArray) -> tuple[FloatArray, FloatArray, bool]:
-    """Return right and left vectors by iteration, and whether they have settled to the last digit."""
+def _iterate(plain: FloatArray) -> tuple[FloatArray, FloatArray, Indices]:
+    """Return right and left vectors by iteration, and the rows that have not settled to the last digit."""
     b, n, _ = plain.shape
-    turned = plain.transpose(0, 2, 1)
-    right, left = np.ones((b, n, 1)), np.ones((b, n, 1))
-    for turn in range(MOST_ITERATIONS):
-        next_right, next_left = plain @ right, turned @ left
-        next_right /= next_right.max(axis=1, keepdims=True)
-        next_left /= next_left.max(axis=1, keepdims=True)
-        if turn % 8 == 7:
-            change = max(np.abs(next_right - right).max(), np.abs(next_left - left).max())
-            if change <= 1e-15:
-                return next_right[:, :, 0], next_left[:, :, 0], True
-        right, left = next_right, next_left
-    return right[:, :, 0], left[:, :, 0], False
+    all_right, all_left = np.ones((b, n)), np.ones((b, n))
+    rows = np.arange(b)
+    right, left = np.ones((b, n)), np.ones((b, n))
+    power = plain @ plain
+    power = power @ power  # four steps at once
+    for _ in range(MOST_ITERATIONS // 8):
+        right, left = _step(power, right, left)
+        before = right, left
+        right, left = _step(power, right, left)
+        change = np.maximum(np.abs(right - before[0]), np.abs(left - before[1])).max(axis=1)
+        all_right[rows], all_left[rows] = right, left
+        unsettled = change > 1e-15
+        rows, right, left = rows[unsettled], right[unsettled], left[unsettled]
+        if not len(rows):
+            break
+        power = power[unsettled]
+    return *_step(plain, all_right, all_left), rows
+
+
+def _step(matrix: FloatArray, right: FloatArray, left: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return the vectors times the matrix, the largest entry 1."""
+    right = np.einsum("bij,bj->bi", matrix, right)
+    left = np.einsum("bi,bij->bj", left, matrix)
+    right /= right.max(axis=1, keepdims=True)
+    left /= left.max(axis=1, keepdims=True)
+    return right, left
 
 
 def _square(plain: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -209,12 +226,7 @@ def _square(plain: FloatArray) -> tuple[FloatArray, FloatArray]:
         spread /= power.sum(axis=(1, 2))[:, np.newaxis, np.newaxis]
         if np.all(np.abs(power - spread) <= 1e-15 * spread.max(axis=(1, 2), keepdims=True)):
             break
-    right, left = power.sum(axis=2), power.sum(axis=1)
-    right = (plain @ right[:, :, np.newaxis])[:, :, 0]
-    right /= right.max(axis=1, keepdims=True)
-    left = (left[:, np.newaxis, :] @ plain)[:, 0, :]
-    left /= left.max(axis=1, keepdims=True)
-    return right, left
+    return _step(plain, power.sum(axis=2), power.sum(axis=1))
 
 
 def _similar(times: Scaled) -> tuple[FloatArray, NDArray[np.int32]]:
@@ -224,8 +236,7 @@ def _similar(times: Scaled) -> tuple[FloatArray, NDArray[np.int32]]:
     """
     start = times.sum(axis=2)
     similar = times * start[:, np.newaxis, :] / start[:, :, np.newaxis]
-    top = similar.sum(axis=2).exponent.max(axis=1)
-    return np.ldexp(similar.mantissa, similar.exponent - top[:, np.newaxis, np.newaxis]), top
+    return similar.levelled()
 
 
 MOST_SQUARINGS = 60

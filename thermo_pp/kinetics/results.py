@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.names import Definition, Tunnelling
+from thermo_pp.names import Constant, Definition, Tunnelling
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -174,6 +174,16 @@ class Rate:
     catalyst_order : shape (t,) or None
         Where the balance of the catalyst is not linear: d ln(rate)/d ln(total catalyst), the rate
         being turnover frequency times total.
+    arrhenius_energy_constant_kj_mol : mapping of {"concentration", "pressure"} to shape (t,)
+        The Arrhenius energy at constant concentrations and at constant pressures of a gas, at the
+        amounts of each temperature; empty in solution and where nothing is held.
+    collider_orders : mapping of str to shape (t,)
+        d ln k/d ln c of the colliders of fall-off steps, as far as they act as such.
+    log_limit, limit_energy_kj_mol : shape (t,) or None
+        What the limits of encounter that are joined with a saddle add to ln k and to the Arrhenius
+        energy; None where none does.
+    control_without_limit : mapping of str to shape (t,) or None
+        `control` of the same rate without these limits.
     """
 
     definition: Definition
@@ -198,6 +208,11 @@ class Rate:
     log_tunnelling: FloatArray | None = None
     tunnelling_energy_kj_mol: FloatArray | None = None
     catalyst_order: FloatArray | None = None
+    arrhenius_energy_constant_kj_mol: Mapping[str, FloatArray] = field(default_factory=dict)
+    collider_orders: Mapping[str, FloatArray] = field(default_factory=dict)
+    log_limit: FloatArray | None = None
+    limit_energy_kj_mol: FloatArray | None = None
+    control_without_limit: Mapping[str, FloatArray] | None = None
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -219,6 +234,8 @@ class StepRate:
     limited : shape (t,), bool
         Whether the collision or diffusion limit has more than half a share.
     tunnelling : {"none", "wigner", "eckart"}
+    log_transmission : shape (t,)
+        ln of the probability to change the spin state at a crossing; 0 elsewhere.
     log_tunnelling : shape (t,)
         ln of the factor of the saddle point's rate constant, before a limit is joined.
     tunnelling_energy_kj_mol : shape (t,)
@@ -233,6 +250,7 @@ class StepRate:
     reversibility: FloatArray
     limited: NDArray[np.bool_]
     tunnelling: Tunnelling
+    log_transmission: FloatArray
     log_tunnelling: FloatArray
     tunnelling_energy_kj_mol: FloatArray
 
@@ -259,6 +277,8 @@ class EffectiveRate:
     steps : tuple of StepRate
     held_mol_l : mapping of str to shape (t,)
         Free concentrations of the held species, equilibrium ones included.
+    constant : {"concentration", "pressure"} or None
+        What of a gas the study says stays when the temperature changes.
     words : tuple of str
         The closing paragraph, a sentence each.
     findings : tuple of Finding
@@ -272,6 +292,7 @@ class EffectiveRate:
     rates: Mapping[Definition, Rate | None]
     steps: tuple[StepRate, ...]
     held_mol_l: Mapping[str, FloatArray]
+    constant: Constant | None = None
     words: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
 

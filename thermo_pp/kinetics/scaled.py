@@ -93,6 +93,15 @@ class Scaled:
         total = np.ldexp(self.mantissa, self.exponent - top).sum(axis=axis)
         return Scaled.normalised(total, np.squeeze(top, axis=axis))
 
+    def signed(self, sign: FloatArray) -> Scaled:
+        """Return the numbers times 1, -1 or 0."""
+        return Scaled(self.mantissa * sign, self.exponent)
+
+    def levelled(self) -> tuple[FloatArray, NDArray[np.int32]]:
+        """Return matrices (b, n, n) over 2**power with their largest row sums in [0.5, 1), and power (b,)."""
+        top = self.sum(axis=2).exponent.max(axis=1)
+        return np.ldexp(self.mantissa, self.exponent - top[:, np.newaxis, np.newaxis]), top
+
     def copy(self) -> Scaled:
         """Return an array that can be changed without changing this one."""
         return Scaled(self.mantissa.copy(), self.exponent.copy())
@@ -109,9 +118,86 @@ class Scaled:
         return np.where(self.mantissa == 0.0, -np.inf, logarithm)
 
 
+class Ordinary(Scaled):
+    """The same with ordinary numbers: several times faster, for batches.
+
+    What leaves their range is no answer but a FloatingPointError; the batch is worked out again with scaled
+    numbers then. `mantissa` is the number, `exponent` is not used.
+    """
+
+    __slots__ = ()
+
+    def __init__(self, mantissa: FloatArray) -> None:
+        super().__init__(mantissa, _NO_EXPONENT)
+
+    @classmethod
+    def from_float(cls, values: Any) -> Ordinary:
+        """Return an array of numbers."""
+        return cls(np.asarray(values, dtype=np.float64))
+
+    @classmethod
+    def from_log(cls, logarithm: NDArray[np.floating[Any]]) -> Ordinary:
+        """Return exp(logarithm); -inf gives 0."""
+        with np.errstate(under="raise", over="raise"):
+            return cls(np.exp(np.asarray(logarithm, dtype=np.float64)))
+
+    @classmethod
+    def zeros(cls, shape: tuple[int, ...]) -> Ordinary:
+        """Return an array of zeros."""
+        return cls(np.zeros(shape))
+
+    def __getitem__(self, key: Any) -> Ordinary:
+        return Ordinary(self.mantissa[key])
+
+    def __setitem__(self, key: Any, value: Scaled) -> None:
+        self.mantissa[key] = value.mantissa
+
+    def __mul__(self, other: Scaled) -> Ordinary:
+        with np.errstate(under="raise", over="raise"):
+            return Ordinary(self.mantissa * other.mantissa)
+
+    def __truediv__(self, other: Scaled) -> Ordinary:
+        with np.errstate(under="raise", over="raise", divide="raise"):
+            return Ordinary(self.mantissa / other.mantissa)
+
+    def __add__(self, other: Scaled) -> Ordinary:
+        return Ordinary(self.mantissa + other.mantissa)
+
+    def sum(self, axis: int) -> Ordinary:
+        """Return the sum over one axis."""
+        return Ordinary(self.mantissa.sum(axis=axis))
+
+    def signed(self, sign: FloatArray) -> Ordinary:
+        """Return the numbers times 1, -1 or 0."""
+        return Ordinary(self.mantissa * sign)
+
+    def levelled(self) -> tuple[FloatArray, NDArray[np.int32]]:
+        """Return matrices (b, n, n) over 2**power with their largest row sums in [0.5, 1), and power (b,)."""
+        top = np.frexp(self.mantissa.sum(axis=2).max(axis=1))[1]
+        return np.ldexp(self.mantissa, -top[:, np.newaxis, np.newaxis]), top
+
+    def copy(self) -> Ordinary:
+        """Return an array that can be changed without changing this one."""
+        return Ordinary(self.mantissa.copy())
+
+    def to_float(self) -> FloatArray:
+        """Return the numbers."""
+        return self.mantissa
+
+    def log(self) -> FloatArray:
+        """Return the natural logarithm; -inf for 0."""
+        with np.errstate(divide="ignore"):
+            return np.asarray(np.log(self.mantissa))
+
+
+_NO_EXPONENT = np.zeros(0, np.int32)
+
+
 def fraction(part: Scaled, whole: Scaled) -> FloatArray:
     """Return part/whole as ordinary numbers, 0 where both are 0."""
     with np.errstate(divide="ignore", invalid="ignore", over="ignore", under="ignore"):
         ratio = part.mantissa / whole.mantissa
         ratio = np.where(whole.mantissa == 0.0, 0.0, ratio)
+        if isinstance(part, Ordinary):
+            return np.asarray(ratio)
         return np.asarray(np.ldexp(ratio, part.exponent - whole.exponent))

@@ -75,7 +75,7 @@ def systems(
         )
     names = (*mechanism.species, *mechanism.saddles)
     energies = energetics({name: study.species[name] for name in names}, temperature_k)
-    rates = elementary_rates(mechanism, energies, study.treatment)
+    rates = elementary_rates(mechanism, energies, study.treatment, conditions)
     equilibrium = equilibrium_of(mechanism, conditions.held, driven=conditions.driven)
     held = log_held(conditions.held, equilibrium, energies)
     if not conditions.driven:

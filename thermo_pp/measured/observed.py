@@ -96,8 +96,7 @@ class Curve:
 
 def _amount_energy(held: Held, temperature_k: FloatArray) -> FloatArray:
     """Return R T^2 d ln c/dT of a held amount, kJ/mol."""
-    slope_of = -1.0 if held.form == "pressure" else 0.0
-    return slope_of * GAS_J_MOL_K * temperature_k / 1000.0
+    return held.log_slope(temperature_k) * GAS_J_MOL_K * temperature_k / 1000.0
 
 
 def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: FloatArray) -> Curve:

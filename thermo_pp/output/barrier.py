@@ -12,13 +12,15 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
 from thermo_pp.kinetics.courses import Transient
+from thermo_pp.kinetics.doubt.results import Doubt
 from thermo_pp.kinetics.flow import FlowState
 from thermo_pp.kinetics.product_ratio import Selectivity
 from thermo_pp.kinetics.regime_map import Regimes
 from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate, StepRate
-from thermo_pp.names import DEFINITIONS, Definition, EnergyUnit
+from thermo_pp.names import DEFINITIONS, Constant, Definition, EnergyUnit
 from thermo_pp.output.courses import flow_keys, time_course_keys
 from thermo_pp.output.definitions import KEYS
+from thermo_pp.output.doubt import doubt_keys
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import kelvin
 from thermo_pp.output.regimes import keys as regimes_keys
@@ -37,6 +39,8 @@ from thermo_pp.output.tables import (
 
 FloatArray = NDArray[np.float64]
 
+_CONSTANT: tuple[Constant, ...] = ("concentration", "pressure")
+
 
 def keys(
     effective: EffectiveRate,
@@ -46,6 +50,7 @@ def keys(
     flow: FlowState | None = None,
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
+    doubt: Doubt | None = None,
 ) -> dict[str, Any]:
     """Return the JSON answer."""
     rates = {name: effective.rates.get(name) for name in DEFINITIONS}
@@ -57,13 +62,15 @@ def keys(
         net_reaction=effective.net_reaction or None,
         reactant_coefficient=effective.reactant_coefficient,
         held_mol_l=effective.held_mol_l,
+        constant=effective.constant,
         rates={KEYS[name]: rate and _rate(rate) for name, rate in rates.items()},
         steps=[vars(step) for step in effective.steps],
         time_course=transient and time_course_keys(transient),
         flow=flow and flow_keys(flow),
         regimes=regimes and regimes_keys(regimes),
         selectivity=selectivity and selectivity_keys(selectivity),
-        words=" ".join(all_words(effective, transient, flow, selectivity, regimes)),
+        doubt=doubt and doubt_keys(doubt),
+        words=" ".join(all_words(effective, transient, flow, selectivity, regimes, doubt)),
     )
 
 
@@ -95,6 +102,8 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
         *(Column("slow share"), Column("next decay ratio")),
         *(Column("inverse mean time", "s⁻¹"), Column("headline", "s⁻¹"), Column("resting state")),
         *(Column("ln k of tunnelling"), energy_column("Ea of tunnelling", unit)),
+        *(energy_column(f"Ea at constant {name}", unit) for name in _CONSTANT),
+        *(Column("ln k of limits"), energy_column("Ea of limits", unit)),
     ]
     rows: list[list[Cell]] = [
         [
@@ -107,6 +116,15 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
             *(cell_at(rate.inverse_mean_time, k), cell_at(rate.headline, k)),
             None if rate.resting_state is None else rate.resting_state[k],
             *tunnelling_cells(rate, k, unit),
+            *(
+                None if not one else in_unit(one[name][k], unit)
+                for one in [rate.arrhenius_energy_constant_kj_mol]
+                for name in _CONSTANT
+            ),
+            cell_at(rate.log_limit, k),
+            None
+            if rate.limit_energy_kj_mol is None
+            else in_unit(rate.limit_energy_kj_mol[k], unit),
         ]
         for name, rate in rates.items()
         for k in every
@@ -114,7 +132,12 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
     controls: list[list[Cell]] = [
         [name, float(effective.temperature_k[k]), what, species, defined(values[k])]
         for name, rate in rates.items()
-        for what, family in (("control", rate.control), ("order", all_orders(rate, effective)))
+        for what, family in (
+            ("control", rate.control),
+            ("order", all_orders(rate, effective)),
+            ("order as collider", rate.collider_orders),
+            ("control without limits", rate.control_without_limit or {}),
+        )
         for species, values in family.items()
         for k in every
     ]
@@ -239,12 +262,21 @@ def _rate(rate: Rate) -> dict[str, Any]:
         "control": rate.control,
         "sign_shift_kj_mol": rate.sign_shift_kj_mol,
         "orders": rate.orders,
+        **{
+            f"arrhenius_energy_constant_{name}_kj_mol": values
+            for name, values in rate.arrhenius_energy_constant_kj_mol.items()
+        },
         "approximations": [_approximation(one) for one in rate.approximations],
     }
     if rate.definition == "pool":
         for name in ("slow_share", "next_decay_ratio", "inverse_mean_time", "headline"):
             keys[name] = getattr(rate, name)
-    optional = ("catalyst_order", "log_tunnelling", "tunnelling_energy_kj_mol")
+    if rate.collider_orders:
+        keys["collider_orders"] = rate.collider_orders
+    optional = (
+        *("catalyst_order", "log_tunnelling", "tunnelling_energy_kj_mol"),
+        *("log_limit", "limit_energy_kj_mol", "control_without_limit"),
+    )
     for name in ("resting_state", "populations", "branching", *optional):
         if getattr(rate, name) is not None:
             keys[name] = getattr(rate, name)

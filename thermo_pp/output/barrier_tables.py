@@ -22,6 +22,7 @@ from thermo_pp.output.barrier import (
     tunnelling_cells,
 )
 from thermo_pp.output.definitions import TITLES
+from thermo_pp.output.limits import constant_table, limits_table
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
 from thermo_pp.output.regimes import tables as regimes_tables
 from thermo_pp.output.selectivity import tables as selectivity_tables
@@ -58,6 +59,7 @@ def tables(
     levels: Sequence[str] = (),
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
+    after: Sequence[Block] = (),
 ) -> list[Block]:
     """Return the tables for people and the closing paragraph.
 
@@ -71,6 +73,8 @@ def tables(
         The levels of theory in words.
     regimes : Regimes or None
     selectivity : Selectivity or None
+    after : sequence of Block
+        What stands after the closing paragraph.
     """
     rates = rates_of(effective)
     blocks: list[Block] = []
@@ -79,16 +83,22 @@ def tables(
         notes = _about(rate, effective)
         notes[:0] = [] if number else _about_all(effective)
         blocks.append(_rate(rate, effective, title, unit, notes))
+        if effective.constant is not None or rate.collider_orders:
+            beside = constant_table(rate, effective, f"What stays constant: {TITLES[name]}", unit)
+            blocks += [] if beside is None else [beside]
         blocks += _shares(rate, effective)
     blocks += _approximations(rates, effective)
     for name, rate in rates.items():
-        blocks.append(_control(rate, effective, f"Control of the {TITLES[name].lower()}", unit))
+        title = f"Control of the {TITLES[name].lower()}"
+        blocks.append(_control(rate, effective, title, unit))
+        changed = limits_table(rate, effective, f"{title}, with and without limits of encounter")
+        blocks += [] if changed is None else [changed]
     blocks += [] if selectivity is None else selectivity_tables(selectivity, unit)
     blocks += [] if regimes is None else regimes_tables(regimes, unit)
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     told = all_words(effective, selectivity, regimes)
-    return [*blocks, " ".join(notes), " ".join(told), SAFETY]
+    return [*blocks, " ".join(notes), " ".join(told), *after, SAFETY]
 
 
 def _rate(
@@ -200,7 +210,8 @@ def _control(rate: Rate, effective: EffectiveRate, title: str, unit: EnergyUnit)
     }
     saddles = {name: values for name, values in counting.items() if name in rate.saddles}
     states = {name: values for name, values in counting.items() if name not in rate.saddles}
-    orders = all_orders(rate, effective)
+    orders = {**all_orders(rate, effective)}
+    orders |= {f"{name} as collider": values for name, values in rate.collider_orders.items()}
     table = _family(title, {"‡": saddles, "": states, "order": orders}, effective, decimals=3)
     k = usual(effective.temperature_k)
     moves = [rate.sign_shift_kj_mol.get(name) for name in (*saddles, *states)]

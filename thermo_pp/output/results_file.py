@@ -12,15 +12,19 @@ from thermo_pp.mechanism import Mechanism, Step
 from thermo_pp.output import (
     barrier,
     choices,
+    compare,
     conformers,
     courses,
     energies,
     functions,
     isotopes,
     profile,
+    regimes,
+    selectivity,
 )
 from thermo_pp.output.json_text import json_text, treatment_keys
 from thermo_pp.output.provenance import provenance
+from thermo_pp.rate_laws import Arrhenius
 from thermo_pp.species import Declared, SpeciesModel
 from thermo_pp.species.result import ModeTable
 from thermo_pp.study.run import Answers, SpeciesAnswer
@@ -28,6 +32,8 @@ from thermo_pp.study.run import Answers, SpeciesAnswer
 FORMAT = "thermo-pp/results/1"
 _COMMON = ("format", "treatment", "standard_state", "findings", "energies")
 """Keys of a command's answer that a report says once for all parts, or elsewhere."""
+
+_ELSEWHERE = ("time_course", "flow", "selectivity", "regimes")
 
 
 def results_text(answers: Answers) -> str:
@@ -74,10 +80,17 @@ def results_keys(answers: Answers) -> dict[str, Any]:
             {
                 "low_modes": low_modes,
                 "standard_state": effective.standard_state,
-                **_own(barrier.keys(effective, treatment, ()), "time_course", "flow"),
+                **_own(barrier.keys(effective, treatment, ()), *_ELSEWHERE),
             }
             for low_modes, effective in answers.effective_by_treatment.items()
         ],
+        "selectivity": answers.selectivity
+        and {
+            **selectivity.keys(answers.selectivity),
+            "words": " ".join(answers.selectivity.words),
+        },
+        "regimes": answers.regimes
+        and {**regimes.keys(answers.regimes), "words": " ".join(answers.regimes.words)},
         "time_course": answers.transient
         and {
             **courses.time_course_keys(answers.transient),
@@ -89,6 +102,7 @@ def results_keys(answers: Answers) -> dict[str, Any]:
         if answers.isotopes
         else None,
         "choices": answers.choices and _own(choices.keys(answers.choices, treatment, ())),
+        "comparison": answers.comparison and _own(compare.keys(answers.comparison, treatment)),
         "conformers": answers.ensembles and _own(conformers.keys(answers.ensembles)),
         "formation": answers.formation and functions.formation_keys(answers.formation),
         "gas_phase": answers.phase and _phase(answers.phase),
@@ -143,12 +157,36 @@ def _mechanism(mechanism: Mechanism) -> dict[str, Any]:
 
 
 def _step(step: Step) -> dict[str, Any]:
-    left_out = ("where", "reactants", "products")
+    """Return a step; factors of rate laws are in L, mol and s, temperature over 298.15 K."""
+    falloff = step.falloff
     return {
-        **{name: value for name, value in vars(step).items() if name not in left_out},
+        "equation": step.equation,
         "reactants": step.reactants,
         "products": step.products,
+        "through": step.through,
+        "barrierless": step.barrierless,
+        "rate": step.rate and _arrhenius(step.rate),
+        "height": step.height and vars(step.height),
+        "falloff": falloff
+        and {
+            **vars(falloff),
+            "low": _arrhenius(falloff.low),
+            "high": _arrhenius(falloff.high),
+        },
+        "crossing": step.crossing and vars(step.crossing),
+        "viscosity_pa_s": step.viscosity and _over_temperature(step.viscosity),
+        "permittivity": step.permittivity and _over_temperature(step.permittivity),
+        "tunnelling": step.tunnelling,
     }
+
+
+def _arrhenius(law: Arrhenius) -> dict[str, float]:
+    return dict(zip(("factor_l_mol_s", "power", "energy_kj_mol"), law, strict=True))
+
+
+def _over_temperature(pairs: tuple[tuple[float, float], ...]) -> dict[str, Any]:
+    """Return a value over temperature; a single one is constant."""
+    return {"temperature_k": [t for t, _ in pairs], "value": [value for _, value in pairs]}
 
 
 def _species(answers: Answers, name: str, one: SpeciesAnswer) -> dict[str, Any]:

@@ -7,6 +7,7 @@ From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes``, ``ener
 structures at once.
 """
 
+from thermo_pp.species.anchored import Anchored
 from thermo_pp.species.declared import Declared, parse_composition
 from thermo_pp.species.direct import (
     choice,
@@ -26,6 +27,7 @@ from thermo_pp.species.structure import Structure
 from thermo_pp.species.torsion_keys import parse_torsions
 
 __all__ = [
+    "Anchored",
     "Declared",
     "ElectronicEnergy",
     "EnergyPart",

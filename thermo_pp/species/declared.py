@@ -231,13 +231,15 @@ def parse_composition(text: str, *, where: str) -> tuple[dict[str, int], int]:
     """Turn ``"H3O+"`` into atoms by element and the charge.
 
     Every sign at the end counts one (``"Ca++"``); ``"SO4^2-"`` is a charge of -2, ``"Fe3+"`` three
-    atoms of iron and a charge of +1.
+    atoms of iron and a charge of +1. ``"e-"`` is an electron: no atoms, charge -1.
 
     Raises
     ------
     StudyError
         Not a formula.
     """
+    if text.strip() == "e-":
+        return {}, -1
     formula, charge = text.strip(), 0
     match = _CHARGE.search(formula)
     if match is not None:

@@ -13,7 +13,7 @@ from msgspec import inspect
 
 from thermo_pp.errors import StudyError
 from thermo_pp.nearest import suggestion
-from thermo_pp.study.keys import NOT_YET, ConformerKeys, StructureKeys, StudyKeys
+from thermo_pp.study.keys import ConformerKeys, StructureKeys, StudyKeys
 
 _WORDS: dict[type, str] = {
     inspect.StrType: "a text",
@@ -133,9 +133,6 @@ def _word(kind: inspect.Type) -> str:
 
 
 def _wrong(value: Any, word: str, file: str, path: tuple[str | int, ...]) -> StudyError:
-    later = _later(path)
-    if later is not None:
-        return StudyError(f"{later[0]}, found {value!r}", where=place(file, *path), mend=later[1])
     return StudyError(
         f"expected {word}, found {value!r}", where=place(file, *path), mend=_mend(path)
     )
@@ -147,9 +144,6 @@ def _check_table(
     fields = {field.encode_name: field for field in kind.fields}
     for name in value:
         if name not in fields:
-            later = _later((*path, name))
-            if later is not None:
-                raise StudyError(later[0], where=place(file, *path, name), mend=later[1])
             raise StudyError(
                 f"unknown key {name!r}",
                 where=place(file, *path, name),
@@ -174,9 +168,6 @@ def _check_choice(
 ) -> None:
     if value in kind.values:
         return
-    later = _later(path)
-    if later is not None:
-        raise StudyError(f"{later[0]}, found {value!r}", where=place(file, *path), mend=later[1])
     raise StudyError(
         f"unknown {path[-1]} {value!r}",
         where=place(file, *path),
@@ -206,11 +197,10 @@ def _check_number(
         raise StudyError(
             f"{value!r} is below {kind.ge:g}", where=place(file, *path), mend=_mend(path)
         )
-
-
-def _later(path: tuple[str | int, ...]) -> tuple[str, str] | None:
-    """Return what is said of a key that a later version takes."""
-    return NOT_YET.get((str(path[0]), str(path[-1]))) if len(path) > 1 else None
+    if kind.le is not None and not number <= kind.le:
+        raise StudyError(
+            f"{value!r} is above {kind.le:g}", where=place(file, *path), mend=_mend(path)
+        )
 
 
 def _mend(path: tuple[str | int, ...]) -> str:

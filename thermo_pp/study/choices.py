@@ -164,7 +164,7 @@ def choices(
             other = _Made(study.altered(alternative.treatment, alternative.species))
             values = [quantity.of(other) for quantity in quantities]
         except StudyError as error:
-            findings.append(_not_made(alternative, error))
+            findings.append(not_made(alternative, error))
             continue
         findings += _new_doubts(alternative, study, other.study)
         for q, value in enumerate(values):
@@ -327,7 +327,8 @@ def _new_doubts(alternative: Alternative, study: StudyLike, other: StudyLike) ->
     ]
 
 
-def _not_made(alternative: Alternative, error: StudyError) -> Finding:
+def not_made(alternative: Alternative, error: StudyError) -> Finding:
+    """Return the finding that an alternative cannot be made."""
     return Finding(
         "choice-not-made",
         "note",

@@ -11,6 +11,8 @@ from thermo_pp.names import (
     DEFAULT_LOW_MODES,
     DEFAULT_ONSET_CM,
     DEFAULT_STANDARD_STATE,
+    Broadening,
+    Constant,
     Duplicates,
     LowModes,
     Masses,
@@ -29,6 +31,7 @@ Quantity = str | float
 
 Positive = Annotated[float, Meta(gt=0.0)]
 Whole = Annotated[int, Meta(ge=1)]
+Correlation = Annotated[float, Meta(ge=-1.0, le=1.0)]
 Levels = Annotated[list[tuple[Whole, Quantity]], Meta(min_length=1)]
 Pairs = Annotated[list[tuple[Quantity, Quantity]], Meta(min_length=1)]
 
@@ -159,9 +162,29 @@ class ConditionsKeys(Keys, frozen=True, kw_only=True):
         dict[str, str],
         Meta(
             description="species -> free concentration that stays constant: a concentration, "
-            'a partial pressure (gas only), or "equilibrium" with those held at stated values'
+            'a partial pressure or a mole fraction ("400 ppm", "21 %", "0.21 mol/mol"; gas only), '
+            '"pH 7", electrons at a potential ("-0.4 V"), or "equilibrium" with those held at '
+            "stated values"
         ),
     ] = {}
+    total_pressure: Annotated[
+        Quantity | UnsetType,
+        Meta(description="of the whole gas; mole fractions and the collider M need it / Pa"),
+    ] = UNSET
+    constant: Annotated[
+        Constant | UnsetType,
+        Meta(
+            description='"concentration" or "pressure": what of a gas stays when the temperature '
+            "changes; the form in which each amount is stated unless given"
+        ),
+    ] = UNSET
+    stated_at: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="the temperature at which amounts hold that are stated in the other form "
+            "than `constant` / K"
+        ),
+    ] = UNSET
     driven: Annotated[
         bool, Meta(description="true: held species may be out of balance with each other")
     ] = False
@@ -544,6 +567,10 @@ class SpeciesKeys(StructureKeys, frozen=True, kw_only=True):
     entropy_correction: Annotated[
         Quantity | UnsetType, Meta(description="as in `[treatment]`, for this species alone")
     ] = UNSET
+    deviation: Annotated[
+        Quantity | UnsetType,
+        Meta(description="standard deviation of the energy in place of that of `[doubt]` / kJ/mol"),
+    ] = UNSET
     relative_to: Annotated[
         dict[str, int] | UnsetType,
         Meta(
@@ -577,8 +604,112 @@ class ArrheniusKeys(Keys, frozen=True, kw_only=True):
     E: Annotated[Quantity, Meta(description="energy, may be negative / kJ/mol")]
 
 
+class ScanKeys(Keys, frozen=True, kw_only=True):
+    """The maximum of a scan as the height of a saddle that is not located."""
+
+    scan: Annotated[
+        str | Annotated[list[str], Meta(min_length=3)],
+        Meta(
+            description="outputs, the left side of the step first, or a table (CSV) with a column "
+            '"energy / kJ mol^-1"'
+        ),
+    ]
+
+
+class FalloffKeys(Keys, frozen=True, kw_only=True):
+    """A declared forward rate constant between its limits of low and high pressure."""
+
+    low: Annotated[
+        ArrheniusKeys, Meta(description="limit at low pressure, of one order more, as `arrhenius`")
+    ]
+    high: Annotated[ArrheniusKeys, Meta(description="limit at high pressure, as `arrhenius`")]
+    form: Annotated[
+        Broadening,
+        Meta(
+            description='"lindemann" (no centre), "troe" (c = -0.4 - 0.67 log F), "iupac" '
+            '(log F/(1 + (log P/N)^2)) or "jpl" (log F/(1 + (log P)^2))'
+        ),
+    ]
+    centre: Annotated[
+        float | list[Quantity] | UnsetType,
+        Meta(
+            description="F_cent, or `[a, T3, T1]` or `[a, T3, T1, T2]` of its dependence on "
+            "temperature; required but for lindemann"
+        ),
+    ] = UNSET
+    collider: Annotated[
+        str | Annotated[dict[str, Positive], Meta(min_length=1)],
+        Meta(
+            description='"M" for the whole gas (`total_pressure`), a held species, or efficiencies, '
+            "`{ N2 = 1, W = 6 }`"
+        ),
+    ]
+
+
+class LandauZenerKeys(Keys, frozen=True, kw_only=True):
+    """What the probability to change the spin state follows from."""
+
+    spin_orbit: Annotated[Quantity, Meta(description="spin-orbit coupling at the crossing / cm^-1")]
+    gradient_difference: Annotated[
+        str, Meta(description='size of the difference of the gradients, "0.05 hartree/bohr"')
+    ]
+    reduced_mass: Annotated[str, Meta(description='reduced mass along it, "12 u"')]
+
+
+class CrossingKeys(Keys, frozen=True, kw_only=True):
+    """How likely a step changes the spin state at its crossing point."""
+
+    transmission: Annotated[
+        Positive | UnsetType, Meta(description="declared probability, at most 1; this or the next")
+    ] = UNSET
+    landau_zener: Annotated[
+        LandauZenerKeys | UnsetType,
+        Meta(description="probability by Landau and Zener, averaged over thermal energies"),
+    ] = UNSET
+
+
+class ReactionKeys(Keys, frozen=True, kw_only=True):
+    """A measured free energy of one step, in place of the computed one."""
+
+    anchor: Annotated[
+        str, Meta(description="the species of the step that is moved until the value is met")
+    ]
+    free_energy: Annotated[
+        Quantity | UnsetType,
+        Meta(description="free energy of the step; one of these four / kJ/mol"),
+    ] = UNSET
+    equilibrium_constant: Annotated[
+        str | float | UnsetType,
+        Meta(description='"1.7e-5 mol/L", "40 L/mol"; a number where both sides have as many'),
+    ] = UNSET
+    pKa: Annotated[float | UnsetType, Meta(description="of a step HA = A + H+, in solution")] = (
+        UNSET
+    )
+    potential: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="redox potential of a step with electrons on its left side, in solution / V"
+        ),
+    ] = UNSET
+    standard_state: Annotated[
+        str | UnsetType,
+        Meta(
+            description='of `free_energy`, "1 bar" or "1 mol/L"; required where molecules are made'
+        ),
+    ] = UNSET
+    temperature: Annotated[
+        Quantity | UnsetType, Meta(description="where the value holds, 298.15 K unless given / K")
+    ] = UNSET
+    enthalpy: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="measured enthalpy of the step; without it the computed entropy stays / kJ/mol"
+        ),
+    ] = UNSET
+
+
 class StepKeys(Keys, frozen=True, kw_only=True):
-    """One reversible step, with exactly one of `through`, `barrier`, `rate` and `arrhenius`."""
+    """One reversible step: exactly one of `through`, `barrier`, `rate`, `arrhenius`, `falloff`."""
 
     equation: Annotated[
         str, Meta(description='what becomes what, `"SO3 + 2 W = C2"`, spaces around + and counts')
@@ -587,8 +718,19 @@ class StepKeys(Keys, frozen=True, kw_only=True):
         str | UnsetType, Meta(description="the saddle point, a species of this file")
     ] = UNSET
     barrier: Annotated[
-        Literal["none"] | UnsetType,
-        Meta(description='"none": the rate is the collision or diffusion limit of two molecules'),
+        Quantity | ScanKeys | UnsetType,
+        Meta(
+            description='"none": the rate is the collision or diffusion limit of two molecules; or '
+            "the height of a saddle that is not located, in free energy above the higher side at "
+            '1 mol/L; or `{ scan = "scan.csv" }` / kJ/mol'
+        ),
+    ] = UNSET
+    deviation: Annotated[
+        Quantity | UnsetType,
+        Meta(
+            description="standard deviation of the height in `barrier`; in `[doubt]` that of saddle points "
+            "unless given / kJ/mol"
+        ),
     ] = UNSET
     rate: Annotated[
         str | UnsetType,
@@ -604,11 +746,42 @@ class StepKeys(Keys, frozen=True, kw_only=True):
             '`{ A = "1e11 L/mol/s", n = 0.5, E = "-2 kJ/mol" }`'
         ),
     ] = UNSET
+    falloff: Annotated[
+        FalloffKeys | UnsetType,
+        Meta(description="forward rate constant between two limits of pressure"),
+    ] = UNSET
     viscosity: Annotated[
         Quantity | Pairs | UnsetType,
         Meta(
             description='viscosity for the diffusion limit in solution: "0.89 mPa s", or pairs of '
             "temperature and viscosity / Pa s",
+        ),
+    ] = UNSET
+    permittivity: Annotated[
+        Positive | Annotated[list[tuple[Quantity, Positive]], Meta(min_length=1)] | UnsetType,
+        Meta(
+            description="relative permittivity of the solvent, for two ions that meet: 78.4, or "
+            "pairs of temperature and permittivity"
+        ),
+    ] = UNSET
+    kind: Annotated[
+        Literal["crossing"] | UnsetType,
+        Meta(
+            description='"crossing": the step changes the spin state at a minimum-energy crossing '
+            "point, which `through` names; needs `crossing`"
+        ),
+    ] = UNSET
+    crossing: Annotated[
+        CrossingKeys | UnsetType,
+        Meta(
+            description='of a step of kind "crossing": `{ transmission = 0.01 }` or `landau_zener`'
+        ),
+    ] = UNSET
+    reaction: Annotated[
+        ReactionKeys | UnsetType,
+        Meta(
+            description="measured free energy of the step, `{ equilibrium_constant = 40, "
+            'anchor = "C" }`'
         ),
     ] = UNSET
     tunnelling: Annotated[
@@ -618,6 +791,54 @@ class StepKeys(Keys, frozen=True, kw_only=True):
             "step, zero-point energies included; as in `[treatment]` unless given"
         ),
     ] = UNSET
+
+
+class CorrelationKeys(Keys, frozen=True, kw_only=True):
+    """Correlation of the errors of the energies, from -1 to 1."""
+
+    same_kind: Annotated[
+        Correlation,
+        Meta(description="of minima with each other, and of saddle points with each other"),
+    ] = 0.0
+    across: Annotated[Correlation, Meta(description="of minima with saddle points")] = 0.0
+
+
+class DoubtKeys(Keys, frozen=True, kw_only=True):
+    """How sure the energies are; with this table `barrier` shows the doubt about every answer."""
+
+    deviation: Annotated[
+        Quantity, Meta(description="standard deviation of the energies of minima / kJ/mol")
+    ]
+    saddle_deviation: Annotated[
+        Quantity | UnsetType,
+        Meta(description="of those of saddle points; the same unless given / kJ/mol"),
+    ] = UNSET
+    correlation: Annotated[
+        CorrelationKeys,
+        Meta(description="`{ same_kind = 0.5, across = 0.3 }`; 0 unless given"),
+    ] = CorrelationKeys()
+    pairs: Annotated[
+        list[tuple[str, str, Correlation]],
+        Meta(
+            description='correlation of two energies in place of that of their kinds: `[["A", "TS1", '
+            "0.9], ...]`; a step with a height in `barrier` goes under its equation"
+        ),
+    ] = []
+    samples: Annotated[
+        Annotated[int, Meta(ge=100, le=1_000_000)],
+        Meta(description="how many sets of energies are drawn, 100 to 1000000"),
+    ] = 10_000
+    seed: Annotated[
+        Annotated[int, Meta(ge=0)],
+        Meta(description="of the random numbers: the same seed gives the same answer"),
+    ] = 1
+    alternatives: Annotated[
+        bool,
+        Meta(
+            description="whether every named level of theory and every other choice of treatment is "
+            "shown beside"
+        ),
+    ] = True
 
 
 class EffectiveKeys(Keys, frozen=True, kw_only=True):
@@ -771,7 +992,8 @@ _SpeciesTable = Annotated[
     ),
 ]
 _StepTable = Annotated[
-    StepKeys, Meta(extra_json_schema=_one_of("through", "barrier", "rate", "arrhenius"))
+    StepKeys,
+    Meta(extra_json_schema=_one_of("through", "barrier", "rate", "arrhenius", "falloff")),
 ]
 _EffectiveTable = Annotated[EffectiveKeys, Meta(extra_json_schema=_one_of("reactant", "catalyst"))]
 
@@ -809,6 +1031,7 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
         ),
     ] = []
     effective: _EffectiveTable | UnsetType = UNSET
+    doubt: DoubtKeys | UnsetType = UNSET
     isotopologues: Annotated[
         dict[str, IsotopologueKeys],
         Meta(
@@ -828,16 +1051,6 @@ class StudyKeys(Keys, frozen=True, kw_only=True):
     selectivity: Annotated[
         SelectivityKeys | UnsetType, Meta(description="which products to compare, for `barrier`")
     ] = UNSET
-
-
-NOT_YET: dict[tuple[str, str], tuple[str, str]] = {
-    ("steps", "barrier"): (
-        "a barrier of a stated height is not taken yet",
-        'write barrier = "none" for a step without one, through = "..." for its saddle point, or '
-        "declare a saddle point species with enthalpy and entropy",
-    ),
-}
-"""Table and key that a later version takes -> what is said now, and the way round it."""
 
 
 def json_schema() -> dict[str, Any]:

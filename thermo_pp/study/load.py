@@ -15,12 +15,14 @@ from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.functions.formation import FormationQuestion
 from thermo_pp.graph import check_reach
+from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.names import Duplicates, PolynomialForm
 from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
+from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
 from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
@@ -28,12 +30,15 @@ from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
 from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
 from thermo_pp.study.questions import make_regimes, make_selectivity
+from thermo_pp.study.reactions import anchor_species
+from thermo_pp.study.uncertainty import check_unused, make_uncertainty
 
 if TYPE_CHECKING:
     from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.fits import Fit
     from thermo_pp.functions.formation import Formations
     from thermo_pp.kinetics.courses import Transient
+    from thermo_pp.kinetics.doubt.results import Doubt
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.product_ratio import Selectivity, SelectivityQuestion
@@ -76,6 +81,10 @@ class Study:
         The named levels of theory of the file: alternatives, for `at_level`.
     energies : mapping of str to ElectronicEnergy
         Part by part, of every structure that is read.
+    uncertainty : Uncertainty or None
+        How sure the energies are; None without ``[doubt]``.
+    with_alternatives : bool
+        Whether `doubt` shows other levels and choices beside.
     formation_question : FormationQuestion or None
         Of ``[formation]``.
     duplicates : {"count", "once"}
@@ -102,6 +111,8 @@ class Study:
     duplicates: Duplicates = "count"
     regime_question: RegimeQuestion | None = None
     selectivity_question: SelectivityQuestion | None = None
+    uncertainty: Uncertainty | None = None
+    with_alternatives: bool = False
     _origin: _Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
@@ -149,7 +160,7 @@ class Study:
         if not keys.steps and given(keys.formation) is None:
             raise missing("steps", file)
         own = make_treatment(keys.treatment, file)
-        steps = make_steps(keys.steps, keys.treatment, file)
+        steps = make_steps(keys.steps, keys.treatment, file, keys.outputs)
         saddles = {step.through for step in steps if step.through is not None}
         formation = given(keys.formation)
         if formation is not None:
@@ -164,8 +175,9 @@ class Study:
         else:
             known_level(keys, level, file)
         members = make_species(keys, own, saddles, file, level=level, read=origin.read)
+        species, measured = anchor_species(keys.steps, steps, members.species, own.phase, file)
         used = {name for step in steps for name in step.species} | saddles
-        in_steps = {name: model for name, model in members.species.items() if name in used}
+        in_steps = {name: model for name, model in species.items() if name in used}
         mechanism = Mechanism(
             steps,
             {name: model.composition for name, model in in_steps.items()},
@@ -173,18 +185,25 @@ class Study:
             where=file,
             **question,
         )
-        findings = [*members.findings, *check_mechanism(mechanism)]
+        check_electrons(conditions, mechanism)
+        findings = [*members.findings, *measured, *check_mechanism(mechanism)]
         findings += _check_network(mechanism, conditions)
+        doubt = given(keys.doubt)
+        if doubt is None:
+            check_unused(keys.species, file)
+            uncertainty = None
+        else:
+            uncertainty = make_uncertainty(doubt, keys.species, steps, file)
         return cls(
             title=keys.title if isinstance(keys.title, str) else Path(file).stem,
             path=Path(file),
             treatment=own,
             conditions=conditions,
             mechanism=mechanism,
-            species=members.species,
+            species=species,
             levels=members.levels,
             findings=tuple(dict.fromkeys(findings)),
-            labels=make_labels(keys.isotopologues, members.species, file),
+            labels=make_labels(keys.isotopologues, species, file),
             level=level,
             level_names=tuple(keys.levels),
             energies=members.energies,
@@ -192,6 +211,8 @@ class Study:
             duplicates=keys.treatment.duplicates,
             regime_question=make_regimes(keys, conditions, file),
             selectivity_question=make_selectivity(keys, mechanism, file),
+            uncertainty=uncertainty,
+            with_alternatives=doubt is not None and doubt.alternatives,
             _origin=origin,
         )
 
@@ -246,6 +267,53 @@ class Study:
         own = {**_table(data, "treatment"), **treatment}
         origin = replace(self._origin, data={**data, "treatment": own, "species": tables})
         return self._made(origin, self.level)
+
+    def changed(self, changes: Mapping[str, Any]) -> Study:
+        """Return the study with other values at dotted keys of its file; no output is read again.
+
+        Parameters
+        ----------
+        changes : mapping of str to object
+            ``{"conditions.held.W": "1e-3 mol/L"}``; see `thermo_pp.study.changes`.
+
+        Raises
+        ------
+        StudyError
+            As `load`; a key that no study file has.
+        """
+        origin = self._changed_origin(changes)
+        return self._made(origin, None if "level" in changes else self.level)
+
+    def check_changes(self, changes: Mapping[str, Any]) -> None:
+        """Check the keys of changes, not their values; StudyError where one is wrong."""
+        self._changed_origin(changes)
+
+    def _changed_origin(self, changes: Mapping[str, Any]) -> _Origin:
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file has no keys to change")
+        if self._origin.temperatures is not None and any(
+            key.startswith("conditions.temperatures") for key in changes
+        ):
+            raise StudyError(
+                "the temperatures are given twice: as an option and as what changes",
+                where=self._origin.file,
+                mend="take one of the two away",
+            )
+        data = changed_data(self._origin.data, changes, self._origin.file)
+        return replace(self._origin, data=data)
+
+    def recipe(self) -> tuple[Any, ...]:
+        """Return what `from_recipe` makes this study of in another process, what was read included."""
+        if self._origin is None:
+            raise ValueError("a study that was not loaded from a file cannot be made again")
+        origin = self._origin
+        return origin.data, origin.file, origin.temperatures, dict(origin.read), self.level
+
+    @classmethod
+    def from_recipe(cls, recipe: tuple[Any, ...]) -> Study:
+        """Make a study of what `recipe` of another one returned."""
+        *origin, level = recipe
+        return cls._made(_Origin(*origin), level)
 
     def choices(self, **options: Any) -> Choices:
         """Return what each choice is worth; see `thermo_pp.study.choices.choices`."""
@@ -348,6 +416,26 @@ class Study:
 
         return selectivity(self, effective or self.effective(), self.selectivity_question)
 
+    def doubt(self) -> Doubt:
+        """Return how sure the answers are; see `thermo_pp.kinetics.doubt.assess.assess`.
+
+        Raises
+        ------
+        StudyError
+            The study has no ``[doubt]``; held species in balance only as the energies are.
+        """
+        from thermo_pp.kinetics.doubt.assess import assess
+        from thermo_pp.study.alternatives import alternative_answers
+
+        if self.uncertainty is None:
+            raise StudyError(
+                "the study does not say how sure its energies are",
+                where=f"{self.path} [doubt]",
+                mend='write [doubt] and, for instance, deviation = "4 kJ/mol"',
+            )
+        beside = alternative_answers(self) if self.with_alternatives else ((), ())
+        return assess(self, self.uncertainty, *beside)
+
     def isotope_effects(self) -> tuple[IsotopeEffects, ...]:
         """Return the isotope effects of every set in ``[isotopologues]``.
 
@@ -438,6 +526,18 @@ def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
     """Return a table of the file, an empty one where it is missing or, for the check to see, none."""
     table = data.get(name, {})
     return table if isinstance(table, Mapping) else {}
+
+
+def check_electrons(conditions: Conditions, mechanism: Mechanism) -> None:
+    """Check that nothing but electrons is held at a potential."""
+    for name, held in conditions.held.items():
+        is_electron = not mechanism.composition[name] and mechanism.charge.get(name) == -1
+        if held.form == "potential" and not is_electron:
+            raise StudyError(
+                f"{held.text!r} is a potential, and {name} is no electron",
+                where=f"{mechanism.where} [conditions] held.{name}",
+                mend='write a concentration; electrons have composition = "e-"',
+            )
 
 
 def _check_network(mechanism: Mechanism, conditions: Conditions) -> tuple[Finding, ...]:

@@ -22,10 +22,18 @@ from thermo_pp.nearest import suggestion
 from thermo_pp.readers import read_all, read_source
 from thermo_pp.records import Calculation
 from thermo_pp.sources import open_source
-from thermo_pp.species import Declared, ElectronicEnergy, SpeciesModel, Structure, solution_finding
+from thermo_pp.species import (
+    Declared,
+    ElectronicEnergy,
+    SpeciesModel,
+    Structure,
+    parse_composition,
+    solution_finding,
+)
 from thermo_pp.study.check import place
 from thermo_pp.study.energies import energy_keys, make_energy, solution_findings
 from thermo_pp.study.ensembles import Making, Reading, is_read, make_ensemble
+from thermo_pp.study.files import inside
 from thermo_pp.study.keys import (
     ConformerKeys,
     EnergyKeys,
@@ -219,7 +227,9 @@ def _check_member(
     if have == ["frequencies"] or given(member.relative_to) is not None:
         return
     computed = _computed(species)
-    if computed:
+    # nuclei and electrons apart are the zero of every computed energy, so these two stand on it
+    alone = parse_composition(str(member.composition), where=where) in (({"H": 1}, 1), ({}, -1))
+    if computed and not alone:
         raise StudyError(
             f"{name} is declared beside species that are read ({computed[0]}): "
             "their enthalpies do not have one zero",
@@ -440,7 +450,7 @@ def _settled(
         torsions=make_torsions(
             given(member.torsions) or [],
             calc,
-            lambda output, at: open_source(_inside(maker, output, at)),
+            lambda output, at: open_source(inside(maker.outputs, maker.folder, output, at)),
             f"{where} torsions".strip(),
         ),
         where=where,
@@ -484,6 +494,13 @@ def _declared(
                 mend="let relative_to lead to species that are read, or that have no relative_to",
             )
         reference.append((_make(maker, other, (*on_the_way, name)), count))
+    atoms, _ = parse_composition(str(member.composition), where=where)
+    if not atoms and (standard_state.form, standard_state.value) != ("concentration", 1.0):
+        raise StudyError(
+            f"{name} are electrons, whose activity counts against 1 mol/L",
+            where=f"{where} standard_state",
+            mend='write standard_state = "1 mol/L"',
+        )
     temperature = given(member.temperature)
     return Declared.make(
         str(member.composition),
@@ -524,7 +541,7 @@ def _imaginary_mode(member: StructureKeys, kind: Kind, where: str) -> float | No
 
 def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
     """Read the output `name` once."""
-    path = _inside(maker, name, where)
+    path = inside(maker.outputs, maker.folder, name, where)
     if str(path) not in maker.read:
         maker.read[str(path)] = read_source(open_source(path))
     maker.opened[str(path)] = maker.read[str(path)]
@@ -533,32 +550,9 @@ def _calculation(maker: _Maker, name: str, where: str) -> Calculation:
 
 def _calculations(maker: _Maker, name: str, where: str) -> tuple[Calculation, ...]:
     """Read every structure of the file `name`."""
-    found = read_all(open_source(_inside(maker, name, where)))
+    found = read_all(open_source(inside(maker.outputs, maker.folder, name, where)))
     maker.read |= {calc.path: calc for calc in found}
     return found
-
-
-def _inside(maker: _Maker, name: str, where: str) -> Path:
-    """Return the path of an output; StudyError where it is not there or outside the folders."""
-    path = maker.outputs / name
-    allowed = (_plain(maker.outputs), _plain(maker.folder))
-    if not any(_plain(path).is_relative_to(folder) for folder in allowed):
-        raise StudyError(
-            f"{name!r} is outside the folder {str(maker.outputs)!r}",
-            where=where,
-            mend="name a file of that folder, or let `outputs` name the folder it is in",
-        )
-    if not os.path.isfile(path):  # noqa: PTH113 (a name too long is no file, not an OSError)
-        there = sorted(p.name for p in maker.outputs.iterdir() if p.is_file())
-        raise StudyError(
-            f"there is no file {str(path)!r}", where=where, mend=suggestion(name, there, "files")
-        )
-    return path
-
-
-def _plain(path: Path) -> Path:
-    """Return the absolute path without ``..``; links are not followed."""
-    return Path(os.path.normpath(path.absolute()))
 
 
 def _same_file(frequencies: Mapping[str, Calculation], file: str) -> list[Finding]:

@@ -4,16 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from itertools import pairwise
+from pathlib import Path
 from typing import Any, TypedDict
 
 from msgspec import UNSET, UnsetType
 
 from thermo_pp import conditions as made
+from thermo_pp.amounts import Surroundings, check_total
 from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import StudyError
 from thermo_pp.mechanism import Step, parse_equation
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase, Tunnelling
 from thermo_pp.nearest import suggestion
+from thermo_pp.rate_laws import Arrhenius
 from thermo_pp.study.check import place
 from thermo_pp.study.keys import (
     ConditionsKeys,
@@ -22,6 +25,13 @@ from thermo_pp.study.keys import (
     StepKeys,
     StudyKeys,
     TreatmentKeys,
+)
+from thermo_pp.study.rate_laws import (
+    make_arrhenius,
+    make_crossing,
+    make_falloff,
+    make_height,
+    rate_unit,
 )
 from thermo_pp.units import quantity
 
@@ -97,6 +107,7 @@ def make_conditions(
     """Turn ``[conditions]`` into Conditions; `temperatures` stand in place of the file's."""
     kelvin = make_temperatures(keys, temperatures, file)
     known = list(dict.fromkeys(name for step in steps for name in step.species))
+    around = make_surroundings(keys, phase, file)
     held = {}
     for name, value in keys.held.items():
         where = place(file, "conditions", "held", name)
@@ -104,7 +115,7 @@ def make_conditions(
             raise StudyError(
                 f"unknown species {name!r}", where=where, mend=suggestion(name, known, "species")
             )
-        held[name] = made.held(value, where=where)
+        held[name] = around.amount(value, where=where)
         if phase == "solution" and held[name].form == "pressure":
             raise StudyError(
                 f"{value!r} is a partial pressure, and the phase is a solution",
@@ -112,14 +123,14 @@ def make_conditions(
                 mend='write a concentration, for instance "0.5 mol/L"',
             )
     initial, total = (
-        _amounts(getattr(keys, key), known, held, phase, place(file, "conditions", key))
+        _amounts(getattr(keys, key), known, held, around, phase, place(file, "conditions", key))
         for key in ("initial", "total")
     )
     flow = None
     if not isinstance(keys.flow, UnsetType):
         where = place(file, "conditions", "flow")
         residence = above_zero(keys.flow.residence_time, "s", f"{where}.residence_time")
-        feed = _amounts(keys.flow.feed, known, held, phase, f"{where}.feed")
+        feed = _amounts(keys.flow.feed, known, held, around, phase, f"{where}.feed")
         flow = made.Flow(residence, feed)
     for name in keys.quasi_steady:
         where = place(file, "conditions", "quasi_steady")
@@ -127,13 +138,27 @@ def make_conditions(
             what = f"{name!r} is held" if name in held else f"unknown species {name!r}"
             raise StudyError(what, where=where, mend=suggestion(name, known, "species"))
     resting = tuple(dict.fromkeys(keys.quasi_steady))
-    return Conditions(kelvin, held, keys.driven, initial, total, flow, resting)
+    where = place(file, "conditions")
+    whole = around.total(f"{where} total_pressure")
+    check_total(held, whole, kelvin, f"{where} held")
+    return Conditions(
+        kelvin,
+        held,
+        keys.driven,
+        initial,
+        total,
+        flow,
+        resting,
+        constant=around.constant,
+        total_gas=whole,
+    )
 
 
 def _amounts(
     given: Mapping[str, str],
     known: Sequence[str],
     held: Mapping[str, made.Held],
+    around: Surroundings,
     phase: Phase,
     where: str,
 ) -> dict[str, made.Held]:
@@ -148,9 +173,9 @@ def _amounts(
             raise StudyError(
                 f"{name!r} is held too", where=here, mend="name it here or under held, not in both"
             )
-        amount = made.held(value, where=here)
+        amount = around.stated(value, where=here)
         only = phase == "solution" or where.endswith("total")
-        if amount.form == "equilibrium" or (only and amount.form == "pressure"):
+        if amount.form in ("equilibrium", "potential") or (only and amount.form == "pressure"):
             raise StudyError(
                 f"{value!r} is not a concentration",
                 where=here,
@@ -179,41 +204,93 @@ def make_temperatures(
     return made.temperature_range(wanted.from_, wanted.to, wanted.step, where=where)
 
 
-def make_steps(keys: Sequence[StepKeys], treatment: TreatmentKeys, file: str) -> tuple[Step, ...]:
+def make_surroundings(keys: ConditionsKeys, phase: Phase, file: str) -> Surroundings:
+    """Turn what the gas is like as a whole into Surroundings."""
+    for key in ("total_pressure", "constant", "stated_at"):
+        if phase == "solution" and given(getattr(keys, key)) is not None:
+            raise StudyError(
+                f"{key} has no meaning in a solution",
+                where=place(file, "conditions", key),
+                mend="take the key out; amounts in solution are concentrations",
+            )
+    constant, pressure, stated = (
+        given(keys.constant),
+        given(keys.total_pressure),
+        given(keys.stated_at),
+    )
+    if stated is not None and constant is None:
+        raise StudyError(
+            "stated_at says when amounts hold, but not what stays constant",
+            where=place(file, "conditions", "stated_at"),
+            mend='write constant = "concentration" or constant = "pressure" as well',
+        )
+    return Surroundings(
+        None
+        if pressure is None
+        else above_zero(pressure, "Pa", place(file, "conditions", "total_pressure")),
+        constant,
+        None
+        if stated is None
+        else made.temperature(stated, where=place(file, "conditions", "stated_at")),
+    )
+
+
+def make_steps(
+    keys: Sequence[StepKeys], treatment: TreatmentKeys, file: str, outputs: str = "."
+) -> tuple[Step, ...]:
     """Turn ``[[steps]]`` into Steps; phase and tunnelling are those of ``[treatment]``."""
-    return tuple(_step(step, number, treatment, file) for number, step in enumerate(keys))
+    folder = Path(file).parent / outputs
+    return tuple(_step(step, number, treatment, file, folder) for number, step in enumerate(keys))
 
 
-def _step(keys: StepKeys, number: int, treatment: TreatmentKeys, file: str) -> Step:
+def _step(keys: StepKeys, number: int, treatment: TreatmentKeys, file: str, outputs: Path) -> Step:
     where = place(file, "steps", number)
     reactants, products = parse_equation(
         keys.equation, where=place(file, "steps", number, "equation")
     )
-    given = [
+    said = [
         name
-        for name in ("through", "barrier", "rate", "arrhenius")
+        for name in ("through", "barrier", "rate", "arrhenius", "falloff")
         if not isinstance(getattr(keys, name), UnsetType)
     ]
-    if len(given) != 1:
-        has = f"has {' and '.join(given)}" if given else "says nothing of its rate"
+    if len(said) != 1:
+        has = f"has {' and '.join(said)}" if said else "says nothing of its rate"
         raise StudyError(
             f"the step {keys.equation!r} {has}",
             where=where,
-            mend='give exactly one of through = "TS", barrier = "none", rate = "..." and '
-            'arrhenius = { A = "...", E = "..." }',
+            mend='give exactly one of through = "TS", barrier = "none", rate = "...", '
+            'arrhenius = { A = "...", E = "..." } and falloff = { ... }',
         )
+    barrier = given(keys.barrier)
+    height = None
+    if barrier is not None and barrier != "none":
+        height = make_height(barrier, keys, where, Path(file).parent, outputs)
+    elif given(keys.deviation) is not None:
+        raise StudyError(
+            "a deviation without the height that it is of",
+            where=f"{where} deviation",
+            mend='write barrier = "35 kJ/mol" beside it, or take it out',
+        )
+    molecules = sum(reactants.values())
     step = Step(
         keys.equation,
         reactants,
         products,
         through=keys.through if isinstance(keys.through, str) else None,
-        barrierless=not isinstance(keys.barrier, UnsetType),
-        rate=_rate(keys, sum(reactants.values()), number, file),
+        barrierless=barrier == "none",
+        rate=_rate(keys, molecules, where),
+        height=height,
+        falloff=None
+        if isinstance(keys.falloff, UnsetType)
+        else make_falloff(keys.falloff, molecules, where),
         viscosity=_viscosity(keys.viscosity, place(file, "steps", number, "viscosity")),
+        crossing=make_crossing(keys, where),
+        permittivity=_permittivity(keys.permittivity, f"{where} permittivity"),
         tunnelling=_tunnelling(keys, treatment.tunnelling, where),
         where=where,
     )
     _check_viscosity(step, treatment.phase)
+    _check_broadened(step, treatment.phase)
     return step
 
 
@@ -221,7 +298,7 @@ def _tunnelling(keys: StepKeys, usual: Tunnelling, where: str) -> Tunnelling:
     """Return the step's own word on tunnelling, else that of ``[treatment]``; a saddle point tunnels."""
     has_saddle = not isinstance(keys.through, UnsetType)
     if isinstance(keys.tunnelling, UnsetType):
-        return usual if has_saddle else "none"
+        return usual if has_saddle and isinstance(keys.kind, UnsetType) else "none"
     if keys.tunnelling != "none" and not has_saddle:
         raise StudyError(
             f"the step {keys.equation!r} has no saddle point, so nothing tunnels",
@@ -231,32 +308,13 @@ def _tunnelling(keys: StepKeys, usual: Tunnelling, where: str) -> Tunnelling:
     return keys.tunnelling
 
 
-def rate_unit(molecules: int) -> str:
-    """Return the unit of a rate constant of a step with so many molecules on its left side.
-
-    >>> rate_unit(1), rate_unit(2), rate_unit(3)
-    ('1/s', 'L/mol/s', 'L^2/mol^2/s')
-    """
-    if molecules == 1:
-        return "1/s"
-    power = "" if molecules == 2 else f"^{molecules - 1}"
-    return f"L{power}/mol{power}/s"
-
-
-def _rate(
-    keys: StepKeys, molecules: int, number: int, file: str
-) -> tuple[float, float, float] | None:
+def _rate(keys: StepKeys, molecules: int, where: str) -> Arrhenius | None:
     """Return A, n and E of a declared rate constant, None where the step has none."""
-    unit = rate_unit(molecules)
     if not isinstance(keys.rate, UnsetType):
-        return above_zero(keys.rate, unit, place(file, "steps", number, "rate")), 0.0, 0.0
+        return above_zero(keys.rate, rate_unit(molecules), f"{where} rate"), 0.0, 0.0
     if isinstance(keys.arrhenius, UnsetType):
         return None
-    factor = above_zero(keys.arrhenius.A, unit, place(file, "steps", number, "arrhenius", "A"))
-    energy = quantity(
-        keys.arrhenius.E, "kJ/mol", where=place(file, "steps", number, "arrhenius", "E")
-    )
-    return factor, keys.arrhenius.n, energy
+    return make_arrhenius(keys.arrhenius, molecules, f"{where} arrhenius")
 
 
 def _viscosity(
@@ -271,13 +329,46 @@ def _viscosity(
         (made.temperature(kelvin, where=where), above_zero(eta, "Pa*s", where))
         for kelvin, eta in value
     )
+    _check_rising(pairs, "viscosity", where)
+    return pairs
+
+
+def _permittivity(
+    value: float | list[tuple[Quantity, float]] | UnsetType, where: str
+) -> tuple[tuple[float, float], ...] | None:
+    """Return pairs of temperature / K and relative permittivity; one pair where it is constant."""
+    if isinstance(value, UnsetType):
+        return None
+    if not isinstance(value, list):
+        return ((DEFAULT_TEMPERATURE_K, value),)
+    pairs = tuple((made.temperature(kelvin, where=where), number) for kelvin, number in value)
+    _check_rising(pairs, "permittivity", where)
+    return pairs
+
+
+def _check_rising(pairs: Sequence[tuple[float, float]], what: str, where: str) -> None:
     if any(later[0] <= sooner[0] for sooner, later in pairwise(pairs)):
         raise StudyError(
-            "the temperatures of the viscosity do not rise",
+            f"the temperatures of the {what} do not rise",
             where=where,
             mend="list the pairs by temperature, each temperature once",
         )
-    return pairs
+
+
+def _check_broadened(step: Step, phase: Phase) -> None:
+    """Refuse a permittivity without a diffusion limit, and a fall-off in solution."""
+    if step.permittivity is not None and step.viscosity is None:
+        raise StudyError(
+            "a permittivity has no use here: the step has no diffusion limit",
+            where=f"{step.where} permittivity",
+            mend="give the step its viscosity too, or take the permittivity out",
+        )
+    if step.falloff is not None and phase == "solution":
+        raise StudyError(
+            "a fall-off in solution",
+            where=f"{step.where} falloff",
+            mend="declare the rate constant itself: arrhenius or rate",
+        )
 
 
 def _check_viscosity(step: Step, phase: Phase) -> None:
@@ -295,7 +386,7 @@ def _check_viscosity(step: Step, phase: Phase) -> None:
     unused = ""
     if phase == "gas":
         unused = "the phase is a gas"
-    elif step.rate is not None:
+    elif step.is_declared:
         unused = "the step has a declared rate constant"
     elif max(step.molecules) < 2:
         unused = "no two molecules meet in the step"

@@ -29,7 +29,10 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.courses import Transient
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
+    from thermo_pp.kinetics.product_ratio import Selectivity
+    from thermo_pp.kinetics.regime_map import RegimeQuestion, Regimes
     from thermo_pp.kinetics.results import EffectiveRate
+    from thermo_pp.measured.results import Comparison
     from thermo_pp.study.choices import Choices
     from thermo_pp.study.load import Study
 
@@ -38,6 +41,8 @@ Progress = Callable[[int, int, str], None]
 """Called with how many stages are done, how many there are, and what comes next."""
 
 USUAL_K = 298.15
+REGIME_FACTOR, REGIME_POINTS = 100.0, 25
+"""How far a map of regimes goes to either side of the amount held, and its points."""
 
 
 @dataclass(frozen=True)
@@ -100,10 +105,15 @@ class Answers:
     effective : EffectiveRate or None
     effective_by_treatment : mapping of str to EffectiveRate
         By soft-mode treatment, the study's own included.
+    selectivity : Selectivity or None
+    regimes : Regimes or None
+        As ``[regimes]`` asks, else over a hundredth to a hundred times the first amount that is held.
     transient : Transient or None
     flow : FlowState or None
     isotopes : tuple of IsotopeEffects
     choices : Choices or None
+    comparison : Comparison or None
+        With the measured rate constants that were named.
     ensembles : Ensembles or None
         The species that consist of conformers.
     formation : Formations or None
@@ -126,10 +136,13 @@ class Answers:
     profile_at_conditions: Profile | None
     effective: EffectiveRate | None
     effective_by_treatment: Mapping[LowModes, EffectiveRate]
+    selectivity: Selectivity | None
+    regimes: Regimes | None
     transient: Transient | None
     flow: FlowState | None
     isotopes: tuple[IsotopeEffects, ...]
     choices: Choices | None
+    comparison: Comparison | None
     ensembles: Ensembles | None
     formation: Formations | None
     phase: GasPhase | None
@@ -148,8 +161,28 @@ class Answers:
         return self.profiles.get(self.own)
 
 
+@dataclass(frozen=True)
+class Measured:
+    """Measured rate constants to set the study against.
+
+    Attributes
+    ----------
+    file : Path
+    deviation, saddle_deviation : str or None
+        Standard deviations of the electronic energies; see `Study.compare`.
+    """
+
+    file: Path
+    deviation: str | None = None
+    saddle_deviation: str | None = None
+
+
 def answer(
-    study: Study, *, times_s: Sequence[float] = (), progress: Progress | None = None
+    study: Study,
+    *,
+    times_s: Sequence[float] = (),
+    measured: Measured | None = None,
+    progress: Progress | None = None,
 ) -> Answers:
     """Compute everything that a report of a study shows.
 
@@ -159,6 +192,7 @@ def answer(
         Loaded from a file.
     times_s : sequence of float
         Times of the time courses; spread by themselves unless given.
+    measured : Measured or None
     progress : callable or None
         Called before each stage and once at the end.
 
@@ -167,7 +201,8 @@ def answer(
     StudyError
         A part that the study asks for cannot be computed. What it does not ask for is left out.
     """
-    return _Run(study, tuple(times_s), progress or (lambda done, of, what: None)).answers()
+    told = progress or (lambda done, of, what: None)
+    return _Run(study, tuple(times_s), measured, told).answers()
 
 
 @dataclass
@@ -176,12 +211,13 @@ class _Run:
 
     study: Study
     times_s: tuple[float, ...]
+    measured: Measured | None
     progress: Progress
     left_out: dict[str, str] = field(default_factory=dict)
     said: list[Finding] = field(default_factory=list)
     done: int = 0
 
-    STAGES = 10 + len(LOW_MODES)
+    STAGES = 13 + len(LOW_MODES)
 
     def answers(self) -> Answers:
         study = self.study
@@ -191,14 +227,18 @@ class _Run:
         at_conditions = self.stage("profile at the conditions", self.at_conditions)
         effective = self.stage("rates", self.effective)
         by_treatment = self.by_treatment(effective)
+        selectivity = self.stage("selectivity", lambda: self.selectivity(effective))
+        regimes = self.stage("regimes", lambda: self.regimes(effective))
         transient = self.stage("time courses", self.transient)
         flow = self.stage("flow", self.flow)
         isotopes = self.stage("isotope effects", self.isotopes)
         choices = self.stage("choices", self.choices)
+        comparison = self.stage("comparison", self.comparison)
         ensembles = self.stage("conformers", self.ensembles)
         formation, phase = self.stage("functions", self.functions)
         self.progress(self.STAGES, self.STAGES, "")
-        parts = (effective, transient, flow, *isotopes, choices, ensembles, formation, phase)
+        rates = (effective, selectivity, transient, flow, *isotopes)
+        parts = (*rates, choices, comparison, ensembles, formation, phase)
         for part in (*found.values(), *parts):
             self.said += () if part is None else part.findings
         return Answers(
@@ -209,14 +249,17 @@ class _Run:
             profile_at_conditions=at_conditions,
             effective=effective,
             effective_by_treatment=by_treatment,
+            selectivity=selectivity,
+            regimes=regimes,
             transient=transient,
             flow=flow,
             isotopes=isotopes,
             choices=choices,
+            comparison=comparison,
             ensembles=ensembles,
             formation=formation,
             phase=phase,
-            inputs=_inputs(study),
+            inputs=_inputs(study, self.measured),
             declared=declared_numbers(study.path.read_text(encoding="utf-8-sig")),
             left_out=self.left_out,
             findings=each_once(self.said),
@@ -294,6 +337,37 @@ class _Run:
             self.left_out[f"effective_by_treatment {low}"] = error.what
             return None
 
+    def selectivity(self, effective: EffectiveRate | None) -> Selectivity | None:
+        found = None if effective is None else self.study.selectivity(effective)
+        if found is None:
+            self.left_out["selectivity"] = "no two products compete in a linear network"
+        return found
+
+    def regimes(self, effective: EffectiveRate | None) -> Regimes | None:
+        if self.study.regime_question is not None:
+            return self.study.regimes()
+        question = None if effective is None else self.usual_question(effective)
+        if question is None:
+            self.left_out["regimes"] = "no rate of a linear network, or nothing held at an amount"
+            return None
+        try:
+            return self.study.regimes(question)
+        except StudyError as error:
+            self.left_out["regimes"] = error.what
+            return None
+
+    def usual_question(self, effective: EffectiveRate) -> RegimeQuestion | None:
+        """Return the question for the first species held at an amount, None where there is none."""
+        from thermo_pp.kinetics.regime_map import RegimeQuestion
+
+        if not any(effective.rates.values()):
+            return None
+        for name, held in self.study.conditions.held.items():
+            if isinstance(held.value, float) and held.form in ("concentration", "pressure"):
+                low, high = held.value / REGIME_FACTOR, held.value * REGIME_FACTOR
+                return RegimeQuestion(name, held.form, low, high, REGIME_POINTS)
+        return None
+
     def transient(self) -> Transient | None:
         conditions = self.study.conditions
         if not conditions.initial and not conditions.total:
@@ -322,6 +396,15 @@ class _Run:
             self.left_out["choices"] = "the study has no steps"
             return None
         return self.study.choices()
+
+    def comparison(self) -> Comparison | None:
+        if self.measured is None:
+            self.left_out["comparison"] = "no measured rate constants were named"
+            return None
+        one = self.measured
+        return self.study.compare(
+            one.file, deviation=one.deviation, saddle_deviation=one.saddle_deviation
+        )
 
     def ensembles(self) -> Ensembles | None:
         from thermo_pp.ensemble import MISSED_KJ_MOL, Ensemble, results
@@ -381,9 +464,10 @@ def course_temperatures(temperature_k: Sequence[float]) -> tuple[float, ...]:
     return tuple(sorted({min(temperature_k), usual, max(temperature_k)}))
 
 
-def _inputs(study: Study) -> tuple[InputFile, ...]:
-    """Return the study file and every file that its species stand on, each once."""
-    found = {str(study.path): InputFile(str(study.path), _digest(study.path))}
+def _inputs(study: Study, measured: Measured | None) -> tuple[InputFile, ...]:
+    """Return the study file, the measurements, and every file that the species stand on, each once."""
+    first = [study.path] if measured is None else [study.path, measured.file]
+    found = {str(path): InputFile(str(path), _digest(path)) for path in first}
     for name in _files(study):
         calculation = study.calculations.get(name)
         if name in found:

@@ -94,7 +94,14 @@ def choose(text: Text, layout: Layout) -> Chosen:
         job = next(i for i, (start, end) in enumerate(jobs) if final.at < end or i == len(jobs) - 1)
         inputs = levels.asked(text, final.at, job, len(jobs))
         functional = bool(inputs.functionals)
-        return energies.energy(layout, final, inputs.method, functional, inputs.states), inputs
+        found = energies.energy(layout, final, inputs.method, functional, inputs.states)
+        if found.label == "MP2" and inputs.words and not inputs.correlated:
+            raise text.error(
+                inputs.at,
+                "an MP2 energy, but no keyword that is known says of which kind, scaled or not",
+                mend="look at the keywords of the input: one is damaged, or not known to this reader",
+            )
+        return found, inputs
 
     own, inputs = energy_of(base)
     best = own

@@ -243,7 +243,8 @@ def _coupled_cluster(
     match = found.get(b"TOT")
     place = part.last(_TRIPLES)
     with_triples = [each for name, each in found.items() if name.endswith(b"(T)")]
-    asked = bool(with_triples) if place < 0 else part.line(place + 1).split()[-1] == "ON"
+    said = "" if place < 0 else part.line(place + 1).split()[-1]
+    asked = said == "ON" if said in ("ON", "OFF") else bool(with_triples)
     if asked and not excited:
         if not with_triples:
             raise part.error(

@@ -30,6 +30,7 @@ _CORRELATED = re.compile(
     r"(?:MP2|MP3|MP4|MP4\(SDQ\)|CCSD|CCSD\(T\)|CCSD\(T1\)|QCISD|QCISD\(T\)|CISD|CEPA/?\d|CPF/?\d?|ACPF|NCPF/?\d?|"
     r"LCCSD|BD|BD\(T\)|CCSDT|CC2|CC3|CCD|DCSD|DCD|CCSDT-1)(?:-F12(?:D)?(?:/RI)?)?)"
 )
+_CORRELATED_BLOCK = re.compile(rb"% *(?:mp2|method|compound|mdci)\b", re.IGNORECASE)
 _MULTICONFIGURATION = re.compile(r"(?:DLPNO-|FIC-|SC-|RI-|PC-)*(?:CASSCF|NEVPT2|MRCI|CASPT2)")
 _HEADING = b"                INPUT FILE"
 _FIRST_LINE = b"\n|  1> "
@@ -99,6 +100,13 @@ class Asked:
                 w for w in self.words if w in ("HF", "RHF", "UHF", "ROHF") or is_without_scf(w)
             }
         return names.pop() if len(names) == 1 else None
+
+    @property
+    def correlated(self) -> bool:
+        """Whether a correlated method may be asked for: by a known keyword, or in a block."""
+        if any(_CORRELATED.fullmatch(word) for word in self.words):
+            return True
+        return _CORRELATED_BLOCK.search(self.text.data, self.text.start, self.text.end) is not None
 
     @property
     def states(self) -> bool:

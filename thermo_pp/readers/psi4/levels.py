@@ -349,7 +349,10 @@ def _grid(part: Text, at: dict[str, int]) -> str | None:
     words = []
     for mark in (b"Radial Points", b"Spherical Points"):
         place = part.need(mark, start, lacking=f"no {mark.decode().lower()} of the grid")
-        words.append(part.number_text(place, "the number of grid points"))
+        word = part.rest(place).partition(b"=")[2].strip()
+        if not word.isdigit():
+            raise part.expected(place, "the number of grid points")
+        words.append(word.decode())
     if int(words[1]) not in _LEBEDEV:
         raise part.expected(place, "the number of points of a Lebedev grid")
     place = part.find(b"Pruning Scheme", start)

@@ -1,0 +1,1 @@
+"""Doubt: what the uncertainty of the energies makes of every answer."""

@@ -1,0 +1,165 @@
+"""The doubt about every answer of a study: samples, first order, and what would narrow it."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from thermo_pp.errors import Finding, StudyError
+from thermo_pp.kinetics.doubt.answers import answer
+from thermo_pp.kinetics.doubt.first_order import both_ways, deviation, narrowing, slopes
+from thermo_pp.kinetics.doubt.moved import moved
+from thermo_pp.kinetics.doubt.results import AlternativeAnswer, Doubt, RateDoubt, Spread
+from thermo_pp.kinetics.doubt.sampling import sample
+from thermo_pp.kinetics.doubt.words import words
+from thermo_pp.kinetics.model import Model, Rates
+from thermo_pp.kinetics.network import NotLinear
+from thermo_pp.units import GAS_J_MOL_K
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
+    from thermo_pp.kinetics.asked import StudyLike
+    from thermo_pp.kinetics.doubt.results import Answer
+    from thermo_pp.kinetics.doubt.uncertain import Uncertainty
+    from thermo_pp.names import Definition
+
+
+def assess(
+    study: StudyLike,
+    uncertainty: Uncertainty,
+    alternatives: Sequence[AlternativeAnswer] = (),
+    findings: Sequence[Finding] = (),
+) -> Doubt:
+    """Return the doubt about every answer of a study over its temperatures.
+
+    Parameters
+    ----------
+    study : StudyLike
+    uncertainty : Uncertainty
+        Of the energies.
+    alternatives : sequence of AlternativeAnswer
+        The answers with other choices, shown beside.
+    findings : sequence of Finding
+        Of these.
+
+    Raises
+    ------
+    StudyError
+        Held species whose stated amounts are in balance only as the energies are.
+    """
+    import scipy.linalg  # noqa: F401  a library that is not loaded yet cannot be limited
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1), np.errstate(over="ignore"):
+        rates, found = _rates(study, uncertainty)
+    own = list(findings)
+    if not rates:
+        own.append(
+            Finding(
+                "doubt-not-linear",
+                "warning",
+                study.mechanism.where,
+                None,
+                "the network is not linear, so the doubt about its answers is not worked out",
+                "hold all but one species of each side, or run the study with energies moved by hand",
+            )
+        )
+    if found is not None and np.any(found.steps.log_kappa != 0.0):
+        own.append(
+            Finding(
+                "doubt-tunnelling-kept",
+                "note",
+                study.mechanism.where,
+                None,
+                "tunnelling factors are kept as they are in every sample of the energies",
+                'compare with tunnelling = "none" to see what they are worth',
+            )
+        )
+    for definition, rate in rates.items():
+        if rate.spread is not None and np.any(rate.spread.backwards.value > 0.0):
+            own.append(
+                Finding(
+                    "doubt-direction",
+                    "note",
+                    study.mechanism.where,
+                    None,
+                    f"{definition}: the net reaction runs backwards in up to "
+                    f"{100.0 * rate.spread.backwards.value.max():.3g} % of the samples; their size and E_a "
+                    "are in the bands",
+                    "read the bands as those of the size of the rate",
+                )
+            )
+    result = Doubt(
+        temperature_k=np.array(study.conditions.temperature_k),
+        names=uncertainty.names,
+        deviation_kj_mol=uncertainty.deviation_kj_mol,
+        correlation=uncertainty.correlation,
+        samples=uncertainty.samples,
+        seed=uncertainty.seed,
+        rates=rates,
+        alternatives=tuple(alternatives),
+        findings=tuple(own),
+    )
+    return replace(result, words=words(result))
+
+
+def answers(study: StudyLike) -> dict[Definition, Answer]:
+    """Return the answers of a study as it stands; StudyError where it has none."""
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1), np.errstate(over="ignore"):
+        rates = _base(study)
+        rates.check()
+        return {name: answer(rates, name) for name in rates.definitions()}
+
+
+def _base(study: StudyLike) -> Rates:
+    model = Model(study.mechanism, study.conditions, study.treatment, study.species)
+    return model.at(np.array(study.conditions.temperature_k))
+
+
+def _rates(
+    study: StudyLike, uncertainty: Uncertainty
+) -> tuple[Mapping[Definition, RateDoubt], Rates | None]:
+    """Return the doubt about each definition, and the rates without shifts; nothing where not linear."""
+    base = _base(study)
+    try:
+        _ = base.network
+    except NotLinear:
+        return {}, None
+    base.check()
+    definitions = base.definitions()
+    _check_balance(base, uncertainty)
+    sampled: tuple[Definition, ...] = tuple(d for d in definitions if d != "relaxation")
+    spreads: Mapping[Definition, Spread] = sample(base, uncertainty, sampled)
+    around = both_ways(base, uncertainty)
+    found: dict[Definition, RateDoubt] = {}
+    for definition in definitions:
+        by_log, by_energy = slopes(base, around, uncertainty, definition)
+        by_first = deviation(by_log, uncertainty)
+        found[definition] = RateDoubt(
+            answer=answer(base, definition),
+            first_order_log_deviation=by_first,
+            first_order_energy_deviation_kj_mol=deviation(by_energy, uncertainty),
+            gibbs_deviation_kj_mol=by_first * GAS_J_MOL_K * base.energies.temperature_k / 1000.0,
+            narrowing=narrowing(by_log, by_energy, uncertainty),
+            spread=spreads.get(definition),
+        )
+    return found, base
+
+
+def _check_balance(base: Rates, uncertainty: Uncertainty) -> None:
+    """Refuse held species that are in balance with each other only as the energies are."""
+    try:
+        moved(base, uncertainty, uncertainty.drawn()[:1]).check()
+    except StudyError as error:
+        raise StudyError(
+            "held species are in balance at their stated amounts only as long as no energy is moved "
+            f"({error.what})",
+            where=error.where,
+            mend='hold one of them at "equilibrium", so that its amount follows the energies, or take '
+            "[doubt] out",
+        ) from None
