@@ -61,7 +61,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "doubt",
         "barrier", "barrier_tables", "isotopes",
         "functions",
-        "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
+        "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "page", "exports", "manifest",
         "figures", "figures_folder", "report", "sweep",
     ),
     "cli": (

@@ -33,7 +33,7 @@ def contents(results: Mapping[str, Any], most: int = MOST_BYTES) -> tuple[str, l
     texts = {name: _text(value) for name, value in kept.items()}
     away: list[str] = []
     for what, lessen in LESS:
-        if sum(map(_size, texts.values())) <= most:
+        if len(_joined(texts).encode("utf-8", "backslashreplace")) <= most:
             break
         changed = lessen(kept)
         lesser = {name: value for name, value in changed.items() if value != kept.get(name)}
@@ -41,7 +41,7 @@ def contents(results: Mapping[str, Any], most: int = MOST_BYTES) -> tuple[str, l
             kept |= lesser
             texts |= {name: _text(value) for name, value in lesser.items()}
             away.append(what)
-    return "{" + ",".join(f"{_text(name)}:{text}" for name, text in texts.items()) + "}", away
+    return _joined(texts), away
 
 
 def _text(value: Any) -> str:
@@ -50,8 +50,8 @@ def _text(value: Any) -> str:
     return text.replace("<", "\\u003c")
 
 
-def _size(text: str) -> int:
-    return len(text.encode("utf-8", "backslashreplace"))
+def _joined(texts: Mapping[str, str]) -> str:
+    return "{" + ",".join(f"{_text(name)}:{text}" for name, text in texts.items()) + "}"
 
 
 def _nothing_of(name: str) -> Callable[[Results], Results]:

@@ -55,7 +55,7 @@ function temperature() {
 }
 
 function choices() {
-  const form = d3.select("#choices").on("submit", (event) => event.preventDefault());
+  const form = d3.select("#chosen").on("submit", (event) => event.preventDefault());
   const lows = [...new Set([...DATA.profiles, ...DATA.barriers].map((one) => one.low_modes))];
   const states = [...new Set(DATA.profiles.map((p) => p.standard_state))].map((s) => [s, s]);
   if (DATA.profile_at_conditions) states.push([HELD, `at the concentrations held (${own})`]);

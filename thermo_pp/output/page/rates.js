@@ -167,7 +167,7 @@ function controlSection(root, state) {
     chart.below.text(`Control at ${kelvin(state.t)}, rate ${DEFINITIONS[state.definition]}; states below ${CONTROL} are in the table only.`);
     const width = chart.width(), row = 30, height = counting.length * row + 40, room = Math.min(170, width * 0.34);
     const [low, high] = d3.extent([0, ...numbers(counting.map((r) => r.values))]);
-    const x = d3.scaleLinear(padded([low, high], 0.16), [room, width - 8]), canvas = chart.canvas;
+    const x = d3.scaleLinear([low, high], [room + 48, width - 48]), canvas = chart.canvas;
     chart.size(width, height);
     canvas.selectAll("*").remove();
     canvas.append("line").attr("class", "zero").attr("x1", x(0)).attr("x2", x(0)).attr("y1", 0).attr("y2", height - 36);
