@@ -13,13 +13,16 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from declared_study import TEXT
 
-from thermo_pp.output.json_text import json_text
+from thermo_pp.output.doubt import doubt_keys
+from thermo_pp.output.json_text import json_text, plain
 from thermo_pp.output.page import page_text, write_page
 from thermo_pp.output.page.contents import LESS, contents
 from thermo_pp.output.page.document import DRAWING_SHA256, SCRIPTS
 from thermo_pp.output.results_file import results_keys
-from thermo_pp.study.run import Answers
+from thermo_pp.study.load import Study
+from thermo_pp.study.run import Answers, answer
 
 BROWSER, DRIVER = shutil.which("chromium"), shutil.which("chromedriver")
 HOSTILE = '<b>&_%$"x'
@@ -223,7 +226,9 @@ class Browser:
 def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Browser]:
     pytest.importorskip("selenium", reason="selenium is not installed")
     if BROWSER is None or DRIVER is None:
-        pytest.skip("there is no chromium with its chromedriver (Debian: chromium, chromium-driver)")
+        pytest.skip(
+            "there is no chromium with its chromedriver (Debian: chromium, chromium-driver)"
+        )
     found = Browser(tmp_path_factory.mktemp("browser"))
     yield found
     found.driver.quit()
@@ -305,11 +310,17 @@ def test_choices_show_the_profile_and_rates_of_that_treatment(
             rows = shown.table(f"Rate {title}")
             assert [float(row[1]) for row in rows] == rate["rate_constant"]
             assert [float(row[2]) for row in rows] == rate["arrhenius_energy_kj_mol"]
-            drawn = shown.run("return [...document.querySelectorAll('circle[data-of=E]')].map(c => Number(c.dataset.value))")  # fmt: skip
+            drawn = shown.run(
+                """return [...document.querySelectorAll("circle[data-of=E]")]
+                .map(c => Number(c.dataset.value))"""
+            )
             assert drawn == rate["arrhenius_energy_kj_mol"]
     held = shown.run("return document.querySelector('#standard-state').options.length")
     assert held == 3
-    shown.run("const s = document.querySelector('#standard-state'); s.selectedIndex = 2; s.dispatchEvent(new Event('change'))")  # fmt: skip
+    shown.run(
+        """const s = document.querySelector("#standard-state");
+        s.selectedIndex = 2; s.dispatchEvent(new Event("change"))"""
+    )
     assert shown.levels() == gibbs(results["profile_at_conditions"], 1)
 
 
@@ -357,7 +368,12 @@ def test_all_is_reached_by_keyboard(shown: Browser) -> None:
     seen = []
     for _ in range(24):
         ActionChains(shown.driver).send_keys(Keys.TAB).perform()
-        seen.append(shown.run("const e = document.activeElement; return e.id || e.getAttribute('class') || e.tagName"))  # fmt: skip
+        seen.append(
+            shown.run(
+                """const e = document.activeElement;
+                return e.id || e.getAttribute("class") || e.tagName"""
+            )
+        )
     assert seen[:5] == ["skip", "temperature", "low-modes", "standard-state", "definition"]
     assert "node" in seen
 
@@ -373,7 +389,8 @@ def test_a_reader_of_the_screen_finds_landmarks_names_and_captions(shown: Browse
         ...[...document.querySelectorAll("figure svg[role]")].filter(s => !s.querySelector("title")?.textContent
             || !s.querySelector("desc")?.textContent || !s.getAttribute("aria-labelledby")),
         ...[...document.querySelectorAll("input,select")].filter(i => !i.labels?.length && !i.ariaLabel),
-        ...[...document.querySelectorAll("section")].filter(s => !s.querySelector("h2") || !s.querySelector("table,li")),
+        ...[...document.querySelectorAll("section")].filter(s => !s.querySelector("h2")
+            || !s.querySelector("table,li")),
         ].map(e => e.outerHTML.slice(0, 80))"""
     )
     assert bare == []
@@ -406,7 +423,9 @@ def test_findings_and_origins_are_shown_with_file_and_line(
 @pytest.mark.parametrize(("width", "scheme"), [(360, "light"), (768, "dark"), (1600, "light")])
 def test_no_width_overflows(browser: Browser, page: Path, width: int, scheme: str) -> None:
     browser.open(page, width, scheme)
-    inner, outer = browser.run("return [document.documentElement.scrollWidth, document.documentElement.clientWidth]")  # fmt: skip
+    inner, outer = browser.run(
+        "const page = document.documentElement; return [page.scrollWidth, page.clientWidth]"
+    )
     assert inner <= outer
     cut = browser.run(OUTSIDE)
     assert cut == []
@@ -416,12 +435,14 @@ OUTSIDE = """return [...document.querySelectorAll("figure svg")].flatMap(svg => 
   const box = svg.getBoundingClientRect();
   return [...svg.querySelectorAll("text")].filter(t => {
     const b = t.getBoundingClientRect();
-    return b.width && (b.left < box.left - 1 || b.right > box.right + 1 || b.top < box.top - 1 || b.bottom > box.bottom + 1);
+    return b.width && (b.left < box.left - 1 || b.right > box.right + 1
+      || b.top < box.top - 1 || b.bottom > box.bottom + 1);
   }).map(t => t.textContent);
 })"""
 """Texts of figures that are cut off."""
 
-COLLIDING = """const all = [...document.querySelectorAll("#profiles g.label text")].map(t => [t.textContent, t.getBBox()]);
+COLLIDING = """const texts = [...document.querySelectorAll("#profiles g.label text")];
+const all = texts.map(t => [t.textContent, t.getBBox()]);
 return all.flatMap(([a, p], n) => all.slice(n + 1).filter(([, q]) =>
   p.x + p.width > q.x && q.x + q.width > p.x && p.y + p.height > q.y + 3 && q.y + q.height > p.y + 3
 ).map(([b]) => `${a} on ${b}`))"""
@@ -497,12 +518,63 @@ def test_a_large_study_is_still_usable(browser: Browser, large: Path) -> None:
     quiet(browser)
 
 
+COURSE = """
+[conditions]
+temperatures = ["280 K", "25 degC"]
+initial = { A = "0.1 mol/L", W = "0.2 mol/L" }
+"""
+DOUBT = """
+[doubt]
+deviation = "4 kJ/mol"
+samples = 200
+"""
+
+
+def declared(folder: Path, text: str) -> tuple[Study, dict[str, Any]]:
+    path = folder / "study.toml"
+    path.write_text(text, encoding="utf-8")
+    study = Study.load(path)
+    return study, json.loads(json_text(results_keys(answer(study))))
+
+
+def test_doubt_is_drawn(browser: Browser, tmp_path: Path) -> None:
+    study, results = declared(tmp_path, TEXT + DOUBT)
+    results["doubt"] = plain(doubt_keys(study.doubt()))
+    (tmp_path / "index.html").write_text(page_text(results), encoding="utf-8")
+    browser.open(tmp_path / "index.html", 360)
+    samples = results["doubt"]["rates"]["per_pool"]["samples"]
+    rows = browser.table("Doubt")
+    assert [float(row[1]) for row in rows] == samples["negative_energy"]["value"]
+    median = results["doubt"]["quantiles"].index(0.5)
+    assert [float(row[4 + median]) for row in rows] == samples["energy_bands_kj_mol"][median]
+    assert browser.run("return document.querySelectorAll('#doubt path.band').length") == 2
+    assert browser.run(OUTSIDE) == []
+    quiet(browser)
+
+
+def test_time_courses_are_drawn_where_no_rate_is_asked_for(
+    browser: Browser, tmp_path: Path
+) -> None:
+    steps = TEXT.split("[species.A]", 1)[1]
+    text = COURSE + "[species.A]" + steps.split("[effective]")[0]
+    _, results = declared(tmp_path, text)
+    (tmp_path / "index.html").write_text(page_text(results), encoding="utf-8")
+    browser.open(tmp_path / "index.html", 360)
+    course = results["time_course"]["courses"][0]
+    rows = browser.table("Time course")
+    assert [float(row[0]) for row in rows] == course["time_s"][: len(rows)]
+    drawn = browser.run("return document.querySelectorAll('#time_course path.curve').length")
+    assert drawn == min(7, len(course["concentration_mol_l"]))
+    assert browser.run(OUTSIDE) == []
+    assert "Profile" in browser.run("return document.querySelector('#absent').textContent")
+    quiet(browser)
+
+
 def quiet(browser: Browser) -> None:
     """No error on the console, and no request but for files on disk."""
     assert browser.driver.get_log("browser") == []
     asked = [
-        json.loads(entry["message"])["message"]
-        for entry in browser.driver.get_log("performance")
+        json.loads(entry["message"])["message"] for entry in browser.driver.get_log("performance")
     ]
     urls = [
         one["params"]["request"]["url"]

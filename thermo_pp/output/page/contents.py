@@ -119,7 +119,9 @@ LESS: tuple[tuple[str, Callable[[Results], Results]], ...] = (
     ),
     (
         "profiles and rates with other soft-mode treatments",
-        _own("low_modes", lambda results: results["treatment"]["low_modes"], "profiles", "barriers"),
+        _own(
+            "low_modes", lambda results: results["treatment"]["low_modes"], "profiles", "barriers"
+        ),
     ),
     ("energies part by part", _nothing_of("energies")),
     ("where every number came from", _no_rows_of("provenance")),

@@ -39,6 +39,18 @@ function apart(labels, top, bottom) {
   }
 }
 
+// Shortens texts that are wider than their place; the whole name is in the table.
+function fit(texts, width) {
+  texts.each(function () {
+    let letters = [...this.textContent];
+    while (letters.length > 2 && this.getComputedTextLength() > width) {
+      letters = letters.slice(0, Math.min(letters.length - 2, Math.floor(letters.length * width / this.getComputedTextLength())));
+      this.textContent = `${letters.join("")}…`;
+      letters.push("…");
+    }
+  });
+}
+
 function axis(canvas, make, x, y, label, labelX, labelY, anchor = "start") {
   canvas.append("g").attr("class", "axis").attr("transform", `translate(${x},${y})`).call(make);
   canvas.append("text").attr("class", "soft").attr("x", labelX).attr("y", labelY)

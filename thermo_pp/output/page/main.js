@@ -23,6 +23,7 @@ const SECTIONS = [
   ["profiles", "Profile", profileSection, DATA.profiles.length > 0],
   ["effective", "Barrier", barrierSection, rated],
   ["control", "Controls", controlSection, rated],
+  ["steps", "Steps", stepSection, DATA.barriers.length > 0],
   ["regimes", "Regime map", regimeSection],
   ["doubt", "Doubt", doubtSection],
   ["selectivity", "Selectivity", plainSection("selectivity")],
@@ -89,7 +90,7 @@ function sections() {
     .join("li").text(printable);
   link("absent", "Not on this page");
 }
-const NAMES = { conformers: "ensembles", time_course: "transient", control: "effective" };
+const NAMES = { conformers: "ensembles", time_course: "transient", control: "effective", steps: "effective" };
 const reasonFor = (key) => DATA.left_out[NAMES[key] ?? key] ??
   (LEFT_AWAY.length && key in DATA === false ? "see below" : "the study has none");
 

@@ -13,7 +13,7 @@ function doubtSection(root, state) {
     columns: [
       value("T / K", (r) => r.t, (v) => minus(String(v)), { head: true }),
       value("P(Eₐ < 0)", (r) => r.s.negative_energy?.value[r.k], share),
-      value("± ", (r) => r.s.negative_energy?.error[r.k], share),
+      value("±", (r) => r.s.negative_energy?.error[r.k], share),
       value("P(same answer)", (r) => r.s.same_answer?.value[r.k], share),
       ...percent.map((p, n) => value(`Eₐ, ${p}`, (r) => r.s.energy_bands_kj_mol?.[n]?.[r.k], energy)),
       ...percent.map((p, n) => value(`ln k, ${p}`, (r) => r.s.log_bands?.[n]?.[r.k], share)),

@@ -143,7 +143,7 @@ function draw_levels(chart, legend, states, paths, k, shown) {
         block.append("path").attr("class", "leader").attr("fill", "none").attr("d", `M${end + 1},${one.at}L${end + 6},${one.y}`);
         one.rows.forEach((text, row) => block.append("text").attr("x", end + 8)
           .attr("class", one.h ? "halo soft" : row === one.rows.length - 1 ? "halo value" : "halo")
-          .attr("y", one.y - one.height / 2 + 12 + 14 * row).text(text));
+          .attr("y", one.y - one.height / 2 + 12 + 14 * row).text(text).call(fit, step - LEVEL - 10));
         const size = block.node().getBBox(); // a ground that lines do not run through
         grounds.append("rect").attr("class", "ground").attr("x", end + 6).attr("y", size.y)
           .attr("width", Math.max(0, size.x + size.width - end - 4)).attr("height", size.height);

@@ -36,19 +36,6 @@ function barrierSection(root, state) {
       { name: "k", number: true, show: general, get: (a) => a.rate_constant[state.k] },
     ],
   });
-  const steps = table(root, {
-    caption: "Steps",
-    columns: [
-      { name: "Step", head: true, get: (s) => s.equation },
-      { name: "k forward", number: true, show: general, get: (s) => s.forward_rate_constant?.[state.k] },
-      { name: "unit", get: (s) => unit(s.forward_unit ?? "") },
-      { name: "k back", number: true, show: general, get: (s) => s.reverse_rate_constant?.[state.k] },
-      { name: "unit", get: (s) => unit(s.reverse_unit ?? "") },
-      { name: "reversibility", number: true, show: share, get: (s) => s.reversibility?.[state.k] },
-      { name: "encounter limit", get: (s) => absent(s.limited?.[state.k]) ? null : s.limited[state.k] ? "yes" : "no" },
-      { name: "tunnelling", get: (s) => s.tunnelling },
-    ],
-  });
   chart.onWidth(draw);
   const words = inWords(root, "");
 
@@ -77,7 +64,6 @@ function barrierSection(root, state) {
     chart.below.text(`${printable(barrier.net_reaction)}, ${DEFINITIONS[state.definition]}; soft modes ${barrier.low_modes}. Bars: where an approximation stays within 5 % of the exact constant; a bar without an end mark goes on beyond the temperatures of the study.`);
     over(d3.range(DATA.temperature_k.length), `Rate ${DEFINITIONS[state.definition]}: ${barrier.net_reaction}; k / ${unit(rate.unit)}`);
     near(rate.approximations, `Approximations of the rate ${DEFINITIONS[state.definition]} at ${kelvin(state.t)}`);
-    steps(barrier.steps, `Steps at ${kelvin(state.t)}`);
   }
   return draw;
 }
@@ -115,7 +101,7 @@ function curves(chart, rate, state) {
   dots(energies, y, "var(--p1)", "E");
   near.forEach((a, n) => {
     const at = third + n * row, ends = [left, right];
-    canvas.append("text").attr("x", left).attr("y", at + 10).text(brief(a.windows_k.length ? a.name : `${a.name}: nowhere`, Math.floor((right - left) / 6.6)));
+    canvas.append("text").attr("x", left).attr("y", at + 10).text(printable(a.windows_k.length ? a.name : `${a.name}: nowhere`)).call(fit, right - left);
     canvas.append("path").attr("d", `M${left},${at + 20}H${right}`).attr("stroke", "var(--line)").attr("stroke-width", 6);
     a.windows_k.forEach(([from, to], m) => {
       const [below, above] = a.windows_open[m];
@@ -138,6 +124,23 @@ function curves(chart, rate, state) {
     const k = d3.least(d3.range(t.length), (n) => Math.abs(x(t[n]) - at));
     chart.said.text(`${kelvin(t[k])}: k ${general(constants[k])} ${unit(rate.unit)}, Eₐ ${energy(energies[k])} kJ/mol`);
   });
+}
+
+function stepSection(root, state) {
+  const fill = table(root, {
+    caption: "Steps",
+    columns: [
+      { name: "Step", head: true, get: (s) => s.equation },
+      { name: "k forward", number: true, show: general, get: (s) => s.forward_rate_constant?.[state.k] },
+      { name: "unit", get: (s) => unit(s.forward_unit ?? "") },
+      { name: "k back", number: true, show: general, get: (s) => s.reverse_rate_constant?.[state.k] },
+      { name: "unit", get: (s) => unit(s.reverse_unit ?? "") },
+      { name: "reversibility", number: true, show: share, get: (s) => s.reversibility?.[state.k] },
+      { name: "encounter limit", get: (s) => absent(s.limited?.[state.k]) ? null : s.limited[state.k] ? "yes" : "no" },
+      { name: "tunnelling", get: (s) => s.tunnelling },
+    ],
+  });
+  return () => fill(state.barrier().steps, `Steps at ${kelvin(state.t)}, soft modes ${state.barrier().low_modes}`);
 }
 
 function controlSection(root, state) {
@@ -165,7 +168,7 @@ function controlSection(root, state) {
     const counting = rows.filter((r) => Math.abs(r.value) >= CONTROL).sort((a, b) => Math.abs(b.value) - Math.abs(a.value)).slice(0, 20);
     fill([...rows, ...orders], `Control of the rate ${DEFINITIONS[state.definition]} at ${kelvin(state.t)}`);
     chart.below.text(`Control at ${kelvin(state.t)}, rate ${DEFINITIONS[state.definition]}; states below ${CONTROL} are in the table only.`);
-    const width = chart.width(), row = 30, height = counting.length * row + 40, room = Math.min(170, width * 0.34);
+    const width = chart.width(), row = 30, height = counting.length * row + 40, room = Math.max(110, Math.min(190, width * 0.3));
     const [low, high] = d3.extent([0, ...numbers(counting.map((r) => r.values))]);
     const x = d3.scaleLinear([low, high], [room + 48, width - 48]), canvas = chart.canvas;
     chart.size(width, height);
@@ -173,7 +176,7 @@ function controlSection(root, state) {
     canvas.append("line").attr("class", "zero").attr("x1", x(0)).attr("x2", x(0)).attr("y1", 0).attr("y2", height - 36);
     const groups = canvas.selectAll("g.control").data(counting).join("g").attr("class", "control").attr("transform", (_, n) => `translate(0,${n * row})`);
     groups.append("text").attr("x", room - 8).attr("y", 19).attr("text-anchor", "end")
-      .text((r) => brief(r.name + (r.what === "saddle point" ? " ‡" : ""), Math.floor(room / 7)));
+      .text((r) => printable(r.name) + (r.what === "saddle point" ? " ‡" : "")).call(fit, room - 10);
     groups.append("rect").attr("class", (r) => r.value < 0 ? "bar minus" : "bar").attr("y", 6).attr("height", 18)
       .attr("x", (r) => Math.min(x(0), x(r.value))).attr("width", (r) => Math.max(1, Math.abs(x(r.value) - x(0))));
     groups.append("text").attr("class", "halo").attr("y", 19).attr("x", (r) => x(r.value) + (r.value < 0 ? -5 : 5))

@@ -1,6 +1,10 @@
 // Tables: headings that sort, pages where they are long, a field to search in.
 const ROWS = 40;
 
+// A heading breaks before its unit only.
+const heading = (name) => name.length < 10 ? name.replace(/ /g, "\u00a0")
+  : name.replace(/ \/ (.*)$/, (_, of) => ` / ${of.replace(/ /g, "\u00a0")}`);
+
 // A column is {name, get(row), show(value), number, long, head}; show is printable() unless given.
 function table(parent, { caption, columns, note, mark }) {
   const box = parent.append("div").attr("class", "table");
@@ -13,7 +17,7 @@ function table(parent, { caption, columns, note, mark }) {
   const title = inner.append("caption").append("span").text(printable(caption));
   const heads = inner.append("thead").append("tr").selectAll("th").data(columns).join("th")
     .attr("scope", "col").attr("aria-sort", "none").classed("number", (c) => c.number);
-  heads.append("button").attr("type", "button").text((c) => c.name.replace(/ \/ (.*)$/, (_, of) => ` / ${of.replace(/ /g, "\u00a0")}`));
+  heads.append("button").attr("type", "button").text((c) => heading(c.name));
   const body = inner.append("tbody");
   const pages = box.append("div").attr("class", "pages").attr("hidden", "");
   const back = pages.append("button").attr("type", "button").text("Earlier rows");
