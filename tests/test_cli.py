@@ -12,6 +12,7 @@ from typing import Any
 
 import pytest
 from click.testing import CliRunner, Result
+from openpyxl import load_workbook
 
 import thermo_pp as tp
 from thermo_pp.cli import main
@@ -226,15 +227,23 @@ def test_species_table_has_iupac_headings_and_notes() -> None:
 
 
 @pytest.mark.parametrize("format_name", FORMATS)
-def test_every_format_of_species_and_survey(format_name: str, folder: Path) -> None:
+def test_every_format_of_species_and_survey(format_name: str, folder: Path, tmp_path: Path) -> None:
     for command in ("survey", "species"):
-        text = run(command, str(folder), "--format", format_name).stdout
+        words = [command, str(folder), "--format", format_name]
+        if format_name == "xlsx":
+            book = tmp_path / "book.xlsx"
+            run(*words, "-o", str(book))
+            cells = [cell.value for row in load_workbook(book).worksheets[0] for cell in row]
+            assert any("water_hf_opt_freq" in str(value) for value in cells)
+            continue
+        text = run(*words).stdout
         assert "water_hf_opt_freq" in text.replace("\\", "")
         marks = {
             "latex": r"\toprule",
             "json": '"format"',
             "markdown": "|--",
             "csv": ",",
+            "html": '<th scope="col">',
             "table": "──",
         }
         assert marks[format_name] in text.replace("|:-", "|--")

@@ -210,7 +210,11 @@ def test_barrier_table(study: str, effective: EffectiveRate) -> None:
 def test_barrier_for_papers(study: str, format_name: str) -> None:
     text = run("barrier", study, "--format", format_name).stdout
     assert "no basis for safety" in text
-    heading = "Eₐ / kJ mol⁻¹" if format_name == "markdown" else r"$E_\mathrm{a}$ / kJ\,mol$^{-1}$"
+    heading = (
+        "Eₐ / kJ mol⁻¹"
+        if format_name == "markdown"
+        else r"\shortstack[c]{$E_\mathrm{a}$ /\\kJ\,mol$^{-1}$}"
+    )
     assert heading in text
 
 

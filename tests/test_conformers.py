@@ -339,10 +339,10 @@ def test_calculations_without_frequencies_join_on_demand(tmp_path: Path) -> None
     assert "no conformer in" in result.stderr
 
 
-@pytest.mark.parametrize("format_name", FORMATS)
+@pytest.mark.parametrize("format_name", [name for name in FORMATS if name != "xlsx"])
 def test_every_format(format_name: str) -> None:
     result = run(str(STUDY), "--format", format_name, "-T", "298.15")
-    assert "tg.out" in result.stdout.replace("\\_", "_")
+    assert "tg.out" in result.stdout.replace("\\_", "_").replace("\\allowbreak{}", "")
     if format_name == "csv":
         rows = list(csv.DictReader(io.StringIO(result.stdout)))
         assert len(rows) == 4

@@ -56,13 +56,14 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "found", "results",
     ),
     "output": (
-        "tables", "definitions", "notes", "plain", "delimited", "latex", "json_text", "files",
+        "tables", "columns", "definitions", "notes", "plain", "delimited", "parts", "latex", "html", "workbook",
+        "json_text", "files",
         "survey", "species", "conformers", "energies", "profile", "courses", "limits", "regimes", "selectivity",
         "doubt",
         "barrier", "barrier_tables", "isotopes",
         "functions",
         "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "page", "exports", "manifest",
-        "figures", "figures_folder", "report", "sweep",
+        "figures", "figures_folder", "study_species", "report_tables", "document", "report", "sweep",
     ),
     "cli": (
         "options", "answers", "survey", "species", "conformers", "functions", "draft", "profile", "choices", "barrier",

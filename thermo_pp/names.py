@@ -14,7 +14,7 @@ Masses = Literal["program", "average"]
 Tunnelling = Literal["none", "wigner", "eckart"]
 NuclearSpins = Literal["equilibrium", "normal", "ortho", "para"]
 EnergyUnit = Literal["kJ/mol", "kcal/mol", "eV", "hartree"]
-Format = Literal["table", "csv", "markdown", "latex", "json"]
+Format = Literal["table", "csv", "markdown", "latex", "html", "json", "xlsx"]
 Origin = Literal["printed", "derived", "declared"]
 Reference = Literal["largest", "exp(-1.63 X)", "(X+1) exp(-9 sqrt X)"]
 """How a reference energy goes to the limit of the basis set."""

@@ -208,7 +208,11 @@ def freeze(record: object, name: str, dtype: type, shape: tuple[int, ...]) -> No
 
 def hill_formula(numbers: NDArray[np.int64]) -> str:
     """Return the formula in Hill order: C, H, then the rest by alphabet; all by alphabet without carbon."""
-    counts = Counter(SYMBOLS[int(z)] for z in numbers)
+    return hill_text(Counter(SYMBOLS[int(z)] for z in numbers))
+
+
+def hill_text(counts: Mapping[str, int]) -> str:
+    """Return the formula of counts by element symbol, as `hill_formula`."""
     first = [symbol for symbol in ("C", "H") if symbol in counts] if "C" in counts else []
     order = first + sorted(symbol for symbol in counts if symbol not in first)
     return "".join(symbol + (str(counts[symbol]) if counts[symbol] > 1 else "") for symbol in order)

@@ -46,7 +46,7 @@ def show(
 def show_text(
     showing: Showing,
     findings: Sequence[Finding],
-    text: Callable[[], str],
+    text: Callable[[], str | bytes],
     *,
     always: bool = False,
 ) -> None:
@@ -119,33 +119,53 @@ def _text(
     showing: Showing,
     blocks: Callable[[], Sequence[Block]],
     keys: Callable[[], Mapping[str, Any]],
-) -> str:
+) -> str | bytes:
     if showing.format == "json":
         from thermo_pp.output.json_text import json_text
 
         return json_text(keys())
+    found = blocks()
+    if showing.columns:
+        from thermo_pp.cli.options import usage
+        from thermo_pp.output.columns import check_columns, select
+
+        usage(lambda: check_columns(found, showing.columns, where="--columns"))
+        found = select(found, showing.columns)
+    return _rendered(showing, found)
+
+
+def _rendered(showing: Showing, blocks: Sequence[Block]) -> str | bytes:
     if showing.format == "csv":
         from thermo_pp.output.delimited import csv_text
 
-        return csv_text(blocks())
-    if showing.format == "latex":
-        from thermo_pp.output.latex import latex
+        return csv_text(blocks)
+    if showing.format == "xlsx":
+        from thermo_pp.output.workbook import workbook
 
-        return latex(blocks())
+        return workbook(blocks)
+    if showing.format == "latex":
+        from thermo_pp.output.latex import latex, latex_document
+
+        return latex_document(latex(blocks))
+    if showing.format == "html":
+        from thermo_pp.output.html import html_document
+
+        return html_document(blocks, "thermo_pp")
     if showing.format == "markdown":
         from thermo_pp.output.plain import markdown
 
-        return markdown(blocks())
+        return markdown(blocks)
     from thermo_pp.output.plain import terminal
 
-    return terminal(blocks())
+    return terminal(blocks)
 
 
-def _write(showing: Showing, text: str) -> None:
+def _write(showing: Showing, text: str | bytes) -> None:
     from thermo_pp.output.files import write_file
 
     if showing.path is not None:
         write_file(showing.path, text)
         return
+    assert isinstance(text, str)  # what has bytes has a path, see `output_options`
     encoding = sys.stdout.encoding or "utf-8"  # what it cannot show is written out
     click.echo(text.encode(encoding, "backslashreplace").decode(encoding))

@@ -106,7 +106,7 @@ def barrier(
 
     loaded = Study.load(study, temperatures=temperature_k, treatment=treating.keys(), level=level)
     result = loaded.effective()
-    everything = showing.format in ("csv", "json")
+    everything = showing.wide or showing.format == "json"
     kelvin = loaded.conditions.temperature_k
     if not everything:
         kelvin = (kelvin[usual(result.temperature_k)],)
@@ -129,9 +129,9 @@ def barrier(
     treatment, unit = loaded.treatment, showing.energy_unit
 
     def blocks() -> list[Block]:
-        if showing.format == "csv":
+        if showing.wide:
             found = (
-                output.wide(result, treatment, unit)
+                output.wide(result, treatment, unit, loaded.levels)
                 if not alone
                 else [output.steps_wide(result, unit)]
             )

@@ -48,7 +48,7 @@ def choices(
         findings,
         lambda: (
             output.wide(result, treatment, unit)
-            if showing.format == "csv"
+            if showing.wide
             else output.tables(result, treatment, unit)
         ),
         lambda: output.keys(result, treatment, findings),

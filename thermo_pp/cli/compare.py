@@ -73,7 +73,7 @@ def compare(
         result.findings,
         lambda: (
             output.wide(result, treatment, unit)
-            if showing.format == "csv"
+            if showing.wide
             else output.tables(result, treatment, unit, loaded.levels)
         ),
         lambda: output.keys(result, treatment),

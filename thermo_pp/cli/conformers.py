@@ -107,7 +107,7 @@ def conformers(
     show(
         showing,
         found.findings,
-        lambda: output.wide(found, unit) if showing.format == "csv" else output.tables(found, unit),
+        lambda: output.wide(found, unit) if showing.wide else output.tables(found, unit),
         lambda: output.keys(found),
     )
 

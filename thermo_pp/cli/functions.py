@@ -91,7 +91,7 @@ def functions(
     if cantera is not None:
         findings += _write_phase(cantera, asked, form or "nasa7", range_k)
     told = tuple(dict.fromkeys(findings))
-    make = output.wide if showing.format == "csv" else output.tables
+    make = output.wide if showing.wide else output.tables
     formation, treatment = asked.formation, asked.treatment
     show(
         showing,

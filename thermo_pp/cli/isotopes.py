@@ -53,7 +53,7 @@ def isotopes(
         findings,
         lambda: (
             output.wide(effects, unit)
-            if showing.format == "csv"
+            if showing.wide
             else output.tables(effects, treatment, unit, loaded.levels)
         ),
         lambda: output.keys(effects, treatment, findings),

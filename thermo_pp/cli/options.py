@@ -113,6 +113,12 @@ class Showing:
     path: Path | None
     strict: bool
     quiet: bool
+    columns: tuple[str, ...] = ()
+
+    @property
+    def wide(self) -> bool:
+        """Whether the format is one that takes every temperature and all digits."""
+        return self.format in ("csv", "xlsx")
 
 
 def temperature_options(command: Command) -> Command:
@@ -216,6 +222,12 @@ def output_options(command: Command) -> Command:
         type=click.Path(dir_okay=False, path_type=Path),
         help="Write the answer to this file instead of standard output.",
     )
+    @click.option(
+        "--columns",
+        metavar="NAMES",
+        default="",
+        help='Show these columns only, in this order: "G,H,S". Not with json.',
+    )
     @click.option("--strict", is_flag=True, help="Let findings of severity error end the run.")
     @click.option("--quiet", is_flag=True, help="Write no findings and hints to standard error.")
     @wraps(command)
@@ -224,11 +236,17 @@ def output_options(command: Command) -> Command:
         energy_unit: EnergyUnit,
         format_name: Format,
         path: Path | None,
+        columns: str,
         strict: bool,
         quiet: bool,
         **others: Any,
     ) -> Any:
-        showing = Showing(format_name, energy_unit, path, strict, quiet)
+        if format_name == "xlsx" and path is None:
+            raise click.UsageError("--format xlsx needs -o FILE.xlsx")
+        named = tuple(name.strip() for name in columns.split(",") if name.strip())
+        if named and format_name == "json":
+            raise click.UsageError("--columns is for tables; json has every key")
+        showing = Showing(format_name, energy_unit, path, strict, quiet, named)
         return command(*args, showing=showing, **others)
 
     return with_output  # type: ignore[return-value]

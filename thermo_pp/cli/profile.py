@@ -63,8 +63,8 @@ def profile(
         showing,
         findings,
         lambda: (
-            output.wide(result, treatment, unit)
-            if showing.format == "csv"
+            output.wide(result, treatment, unit, loaded.levels)
+            if showing.wide
             else [
                 *energies.tables(loaded.energies),
                 *output.tables(result, treatment, unit, loaded.levels),

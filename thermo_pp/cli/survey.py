@@ -41,7 +41,7 @@ def survey(paths: tuple[Path, ...], collecting: Collecting, showing: Showing) ->
     show(
         showing,
         result.findings,
-        lambda: output.wide(result) if showing.format == "csv" else output.tables(result),
+        lambda: output.wide(result) if showing.wide else output.tables(result),
         lambda: output.keys(result),
         always=True,
     )

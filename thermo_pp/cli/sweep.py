@@ -78,7 +78,7 @@ def sweep(
         names, sets = (str(key),), [(parse_value(text),) for text in values]
     result = work(loaded, names, sets, jobs=jobs)
     treatment, unit = loaded.treatment, showing.energy_unit
-    people = showing.format not in ("csv", "json")
+    people = not showing.wide and showing.format != "json"
     show(
         showing,
         loaded.findings,

@@ -22,7 +22,7 @@ from thermo_pp.output.courses import flow_keys, time_course_keys
 from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.doubt import doubt_keys
 from thermo_pp.output.json_text import answer
-from thermo_pp.output.notes import kelvin
+from thermo_pp.output.notes import kelvin, of_treatment, stamp
 from thermo_pp.output.regimes import keys as regimes_keys
 from thermo_pp.output.selectivity import keys as selectivity_keys
 from thermo_pp.output.tables import (
@@ -31,6 +31,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     defined,
     energy_column,
     in_unit,
@@ -84,8 +85,10 @@ def all_words(*results: _Told | None) -> tuple[str, ...]:
     return tuple(word for result in results if result is not None for word in result.words)
 
 
-def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> list[Block]:
-    """Return the tables for CSV: rates, controls and orders, approximations, steps; full digits."""
+def wide(
+    effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit, levels: Sequence[str] = ()
+) -> list[Block]:
+    """Return the tables for CSV and xlsx: rates, controls and orders, approximations, steps; full digits."""
     every = range(len(effective.temperature_k))
     rates = rates_of(effective)
     constants = [
@@ -151,7 +154,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
         for k in every
     ]
     head = [Column("definition"), Column("T", "K")]
-    return [
+    blocks: list[Block] = [
         Table("rates", columns, rows, constants=constants),
         Table("control", [*head, Column("what"), Column("species"), Column("value")], controls),
         Table(
@@ -161,6 +164,7 @@ def wide(effective: EffectiveRate, treatment: Treatment, unit: EnergyUnit) -> li
         ),
         steps_wide(effective, unit),
     ]
+    return about_all(blocks, [of_treatment(treatment), *levels, stamp()])
 
 
 def all_orders(rate: Rate, effective: EffectiveRate) -> dict[str, FloatArray]:

@@ -32,6 +32,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     defined,
     energy_column,
     in_unit,
@@ -96,9 +97,10 @@ def tables(
     blocks += [] if selectivity is None else selectivity_tables(selectivity, unit)
     blocks += [] if regimes is None else regimes_tables(regimes, unit)
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
-    notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
+    about = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     told = all_words(effective, selectivity, regimes)
-    return [*blocks, " ".join(notes), " ".join(told), *after, SAFETY]
+    shown = [*about_all(blocks, about), " ".join(told), *about_all(after, about)]
+    return [*shown, SAFETY]
 
 
 def _rate(

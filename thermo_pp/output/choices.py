@@ -14,6 +14,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     defined,
     energy_column,
     in_unit,
@@ -50,8 +51,7 @@ def tables(choices: Choices, treatment: Treatment, unit: EnergyUnit) -> list[Blo
         stamp(),
         *([ALL_DIGITS] if len(choices.temperature_k) > 1 else []),
     ]
-    last = blocks.pop()
-    return [*blocks, Table(last.title, last.columns, last.rows, notes)]
+    return about_all(blocks, notes)
 
 
 def wide(choices: Choices, treatment: Treatment, unit: EnergyUnit) -> list[Block]:
@@ -78,7 +78,8 @@ def wide(choices: Choices, treatment: Treatment, unit: EnergyUnit) -> list[Block
         for k, temperature in enumerate(choices.temperature_k)
     ]
     constants = [("standard state", treatment.standard_state.text)]
-    return [Table("choices", columns, rows, constants=constants)]
+    notes = [of_treatment(treatment), stamp()]
+    return [Table("choices", columns, rows, constants=constants, about=notes)]
 
 
 def keys(choices: Choices, treatment: Treatment, findings: Sequence[Any]) -> dict[str, Any]:

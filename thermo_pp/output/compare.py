@@ -17,6 +17,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     defined,
     energy_column,
     in_unit,
@@ -180,7 +181,7 @@ def tables(
         f"Measured: {'; '.join(sources)} ({result.measurements.file}).",
         *(of_treatment(treatment), *levels, stamp(), ALL_DIGITS),
     ]
-    return [*blocks, " ".join(notes), " ".join(result.words), SAFETY]
+    return [*about_all(blocks, notes), " ".join(result.words), SAFETY]
 
 
 def _point_columns(*, people: bool) -> list[Column]:

@@ -14,6 +14,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     energy_column,
     in_unit,
 )
@@ -26,10 +27,8 @@ CONVERGED_KJ_MOL = 0.1
 
 def tables(found: Ensembles, unit: EnergyUnit) -> list[Block]:
     """Return a table of the members of each ensemble, and one of all ensembles over temperature."""
-    return [
-        *(_members(found, one, unit) for one in found.computed),
-        _ensembles(found, unit),
-    ]
+    blocks = [*(_members(found, one, unit) for one in found.computed), _ensembles(found, unit)]
+    return about_all(blocks, [of_treatment(found.treatment), stamp()])
 
 
 def _members(found: Ensembles, one: ComputedEnsemble, unit: EnergyUnit) -> Table:
@@ -118,8 +117,6 @@ def _ensembles(found: Ensembles, unit: EnergyUnit) -> Table:
         f"{CONVERGED_KJ_MOL:g} kJ/mol of its value here. missed: what one more conformer, "
         f"{missed:g} kJ/mol above the lowest G, would change G by.",
         f"A conformer that is listed twice is counted {_COUNTED[found.duplicates]}.",
-        of_treatment(found.treatment),
-        stamp(),
     ]
     return Table("Ensembles", columns, rows, notes)
 
@@ -169,7 +166,8 @@ def wide(found: Ensembles, unit: EnergyUnit) -> list[Block]:
         ("onset / cm⁻¹", f"{found.treatment.onset_cm:.10g}"),
         ("duplicates", found.duplicates),
     ]
-    return [Table("conformers", columns, rows, constants=constants)]
+    notes = [of_treatment(found.treatment), stamp()]
+    return [Table("conformers", columns, rows, constants=constants, about=notes)]
 
 
 def _named(one: ComputedEnsemble, number: int | None) -> str | None:

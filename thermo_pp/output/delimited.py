@@ -1,4 +1,9 @@
-"""CSV: full digits, a row of headings; what holds for every row stands in further columns."""
+"""CSV: full digits, a row of headings; what holds for every row stands in further columns.
+
+A spreadsheet would take text that starts with one of `FORMULA_SIGNS` for a formula. Such text is
+written with an apostrophe before it, and so is text that starts with an apostrophe: a reader who
+takes one apostrophe off the front of every text has what was there.
+"""
 
 from __future__ import annotations
 
@@ -7,6 +12,8 @@ import io
 from collections.abc import Sequence
 
 from thermo_pp.output.tables import Block, Cell, Table
+
+FORMULA_SIGNS = ("=", "+", "-", "@", "\t", "\r")
 
 
 def csv_text(blocks: Sequence[Block]) -> str:
@@ -19,10 +26,9 @@ def csv_text(blocks: Sequence[Block]) -> str:
 def _table(table: Table) -> str:
     stream = io.StringIO()
     writer = csv.writer(stream, lineterminator="\n")
-    writer.writerow(
-        [column.heading for column in table.columns] + [name for name, _ in table.constants]
-    )
-    constants = [value for _, value in table.constants]
+    headings = [column.heading for column in table.columns]
+    writer.writerow([_cell(text) for text in (*headings, *(name for name, _ in table.constants))])
+    constants = [_cell(value) for _, value in table.constants]
     for row in table.rows:
         writer.writerow([_cell(cell) for cell in row] + constants)
     return stream.getvalue()
@@ -31,4 +37,6 @@ def _table(table: Table) -> str:
 def _cell(cell: Cell) -> str:
     if cell is None:
         return ""
-    return cell if isinstance(cell, str) else repr(cell.item() if hasattr(cell, "item") else cell)
+    if isinstance(cell, str):
+        return f"'{cell}" if cell.startswith((*FORMULA_SIGNS, "'")) else cell
+    return repr(cell.item() if hasattr(cell, "item") else cell)

@@ -10,6 +10,7 @@ from thermo_pp.names import DEFINITIONS
 from thermo_pp.output import figures
 from thermo_pp.output.exports.structures import file_stem
 from thermo_pp.output.figures.saving import FORMATS
+from thermo_pp.output.notes import usual
 from thermo_pp.study.run import Answers
 
 if TYPE_CHECKING:
@@ -47,6 +48,7 @@ def _drawn(answers: Answers) -> Iterator[tuple[str, Figure]]:
         yield "profile", figure
     yield from _of_rates(answers)
     yield from _of_regimes(answers)
+    yield from _of_doubt(answers)
     for course in () if answers.transient is None else answers.transient.courses:
         figure, (ax,) = figures.new_figure()
         figures.courses.draw(ax, course)
@@ -83,6 +85,23 @@ def _of_rates(answers: Answers) -> Iterator[tuple[str, Figure]]:
             figure, (ax,) = figures.new_figure()
             figures.populations.of_rate(ax, effective, definition)
             yield f"populations-{definition}", figure
+
+
+def _of_doubt(answers: Answers) -> Iterator[tuple[str, Figure]]:
+    if answers.doubt is None:
+        return
+    k = usual(answers.doubt.temperature_k)
+    for definition, rate in answers.doubt.rates.items():
+        if rate.spread is None:
+            continue
+        figure, (ax,) = figures.new_figure()
+        figures.doubt.draw(
+            ax,
+            rate.spread.energies_kj_mol,
+            rate.spread.negative_energy.value[k],
+            nominal_kj_mol=rate.answer.arrhenius_energy_kj_mol[k],
+        )
+        yield f"doubt-{definition}", figure
 
 
 def _of_regimes(answers: Answers) -> Iterator[tuple[str, Figure]]:

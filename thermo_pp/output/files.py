@@ -8,15 +8,15 @@ from pathlib import Path
 from thermo_pp.errors import StudyError
 
 
-def write_file(path: Path, text: str) -> None:
-    """Write `text` to `path`; a reader finds the old answer or the new one, never half of one.
+def write_file(path: Path, text: str | bytes) -> None:
+    """Write a text or bytes to `path`; a reader finds the old answer or the new one, never half of one.
 
     Raises
     ------
     StudyError
         The file cannot be written.
     """
-    data = (text + "\n").encode("utf-8", "backslashreplace")
+    data = text if isinstance(text, bytes) else (text + "\n").encode("utf-8", "backslashreplace")
     try:
         target = path.resolve()
         if target.exists() and not target.is_file():

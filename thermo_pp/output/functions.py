@@ -21,6 +21,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     energy_column,
     in_unit,
 )
@@ -49,9 +50,7 @@ def tables(
     if formation is not None:
         blocks.append(_formation(formation, unit))
     notes = ["G is absolute, the electronic energy included.", of_treatment(treatment), stamp()]
-    last = blocks.pop()
-    assert isinstance(last, Table)
-    return [*blocks, Table(last.title, last.columns, last.rows, [*last.notes, *notes])]
+    return about_all(blocks, notes)
 
 
 def wide(
@@ -76,7 +75,7 @@ def wide(
         blocks += [_coefficients(fits), _residuals(fits, unit)]
     if formation is not None:
         blocks.append(_formation(formation, unit))
-    return blocks
+    return about_all(blocks, [of_treatment(treatment), stamp()])
 
 
 def keys(

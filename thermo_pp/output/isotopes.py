@@ -13,7 +13,16 @@ from thermo_pp.names import Definition, EnergyUnit
 from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.json_text import answer
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
-from thermo_pp.output.tables import Block, Cell, Column, Table, defined, energy_column, in_unit
+from thermo_pp.output.tables import (
+    Block,
+    Cell,
+    Column,
+    Table,
+    about_all,
+    defined,
+    energy_column,
+    in_unit,
+)
 
 _WORDS: dict[Definition, str] = {
     "free": "per free reactant (competition)",
@@ -132,7 +141,7 @@ def tables(
             blocks.append(_rates(one, unit))
         blocks += [_steps(one), _species_table(one)]
     notes = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
-    return [*blocks, " ".join(notes)]
+    return about_all(blocks, notes)
 
 
 def _rates(one: IsotopeEffects, unit: EnergyUnit) -> Table:

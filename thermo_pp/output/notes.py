@@ -2,11 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp import __version__
 from thermo_pp.conditions import Treatment
+from thermo_pp.output.tables import Block
 
 USUAL_K = 298.15
 ALL_DIGITS = "Every temperature and all digits: --format csv or json."
@@ -52,6 +56,16 @@ def of_treatment(treatment: Treatment) -> str:
 def stamp() -> str:
     """Return what made the table."""
     return f"thermo_pp {__version__}; constants: CODATA 2022."
+
+
+def for_a_report(blocks: Sequence[Block]) -> list[Block]:
+    """Return blocks without the hint that a command has more digits: a report has them beside."""
+    return [
+        block
+        if isinstance(block, str)
+        else replace(block, about=[note for note in block.about if note != ALL_DIGITS])
+        for block in blocks
+    ]
 
 
 def usual(temperature_k: NDArray[np.float64]) -> int:

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import re
 import textwrap
 from collections.abc import Sequence
 
 from tabulate import tabulate
 
-from thermo_pp.output.tables import Block, Table
+from thermo_pp.output.tables import Block, Table, printable
 
 GAP = 2
 """Spaces between two columns."""
@@ -17,26 +18,32 @@ WIDTH = 100
 
 def terminal(blocks: Sequence[Block]) -> str:
     """Return tables and paragraphs for a terminal."""
+    last = {tuple(block.about): block for block in blocks if isinstance(block, Table)}
     return "\n\n".join(
-        _wrapped(block) if isinstance(block, str) else _terminal_table(block) for block in blocks
+        _wrapped(block)
+        if isinstance(block, str)
+        else _terminal_table(block, last[tuple(block.about)] is block)
+        for block in blocks
     )
 
 
 def markdown(blocks: Sequence[Block]) -> str:
     """Return tables and paragraphs as Markdown (pipe tables)."""
     return "\n\n".join(
-        _escaped(block) if isinstance(block, str) else _markdown_table(block) for block in blocks
+        markdown_text(block) if isinstance(block, str) else _markdown_table(block)
+        for block in blocks
     )
 
 
-def _terminal_table(table: Table) -> str:
+def _terminal_table(table: Table, last: bool) -> str:
     cells = table_cells(table)
     headings = _fitted(table, cells)
     lines = _grid(table, "plain", [headings, *cells]).splitlines()
     rule = "─" * max(map(len, lines))
     high = 1 + max(heading.count("\n") for heading in headings)
     grid = [rule, *lines[:high], rule, *lines[high:], rule]
-    return "\n".join([table.title, *grid, *(_wrapped(note) for note in table.notes)])
+    notes = table.all_notes if last else table.notes
+    return "\n".join([printable(table.title), *grid, *(_wrapped(note) for note in notes)])
 
 
 def _fitted(table: Table, cells: Sequence[Sequence[str]]) -> list[str]:
@@ -61,12 +68,12 @@ def _fitted(table: Table, cells: Sequence[Sequence[str]]) -> list[str]:
 
 
 def _markdown_table(table: Table) -> str:
-    cells = [[_escaped(cell) for cell in row] for row in table_cells(table)]
-    headings = [_escaped(column.heading) for column in table.columns]
+    cells = [[markdown_inline(cell) for cell in row] for row in table_cells(table)]
+    headings = [markdown_inline(column.heading) for column in table.columns]
     grid = _grid(table, "pipe", cells, headings)
-    parts = [f"**{_escaped(table.title)}**", "", grid]
-    if table.notes:
-        parts += ["", *(f"- {_escaped(note)}" for note in table.notes)]
+    parts = [f"**{markdown_inline(table.title)}**", "", grid]
+    if table.all_notes:
+        parts += ["", *(f"- {markdown_text(note)}" for note in table.all_notes)]
     return "\n".join(parts)
 
 
@@ -92,10 +99,19 @@ def _grid(table: Table, style: str, cells: list[list[str]], headings: Sequence[s
 
 
 def _wrapped(text: str) -> str:
-    return textwrap.fill(text, WIDTH, break_long_words=False, break_on_hyphens=False)
+    return textwrap.fill(printable(text), WIDTH, break_long_words=False, break_on_hyphens=False)
 
 
-def _escaped(text: str) -> str:
-    for sign in ("\\", "|", "*", "_", "<", "`"):
-        text = text.replace(sign, "\\" + sign)
-    return text
+def markdown_inline(text: str) -> str:
+    """Return plain text for the inside of a line of Markdown, where it is shown as it is."""
+    return re.sub(r"[\\|*_<`&\[\]~$]", r"\\\g<0>", printable(text))
+
+
+def markdown_text(text: str) -> str:
+    """Return plain text as a line of Markdown; nothing in it makes a heading, a list or a quotation."""
+    return re.sub(r"^(\s*)([#>+=-]|\d+(?=[.)]))", _at_the_start, markdown_inline(text))
+
+
+def _at_the_start(found: re.Match[str]) -> str:
+    space, sign = found.groups()
+    return f"{space}{sign}\\" if sign.isdigit() else f"{space}\\{sign}"

@@ -16,6 +16,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     energy_column,
     in_unit,
 )
@@ -57,12 +58,13 @@ def tables(
             blocks.append(_gibbs(states, profile, title, unit))
     notes = [_reference(profile), of_treatment(treatment), *levels, stamp()]
     notes += [] if few else [ALL_DIGITS]
-    last = blocks.pop()
-    return [*blocks, Table(last.title, last.columns, last.rows, notes)]
+    return about_all(blocks, notes)
 
 
-def wide(profile: Profile, treatment: Treatment, unit: EnergyUnit) -> list[Block]:
-    """Return the one table for CSV: a row a state and temperature, full digits."""
+def wide(
+    profile: Profile, treatment: Treatment, unit: EnergyUnit, levels: Sequence[str] = ()
+) -> list[Block]:
+    """Return the one table for CSV and xlsx: a row a state and temperature, full digits."""
     columns = [
         Column("path"),
         Column("state"),
@@ -86,7 +88,8 @@ def wide(profile: Profile, treatment: Treatment, unit: EnergyUnit) -> list[Block
         ("standard state", profile.standard_state),
         ("soft modes", treatment.low_modes),
     ]
-    return [Table("profile", columns, rows, constants=constants)]
+    notes = [_reference(profile), of_treatment(treatment), *levels, stamp()]
+    return [Table("profile", columns, rows, constants=constants, about=notes)]
 
 
 def keys(

@@ -6,11 +6,13 @@ from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any
 
+from thermo_pp.output.document import write_document
 from thermo_pp.output.exports import write_exports
 from thermo_pp.output.figures_folder import write_figures
 from thermo_pp.output.files import write_file
 from thermo_pp.output.manifest import NAME, manifest_text
 from thermo_pp.output.page import write_page
+from thermo_pp.output.report_tables import write_tables
 from thermo_pp.output.results_file import results_text
 from thermo_pp.study.run import Answers
 
@@ -25,6 +27,8 @@ PARTS: tuple[tuple[str, str, Maker], ...] = (
     ("results", "", _write_results),
     ("figures", "figures", write_figures),
     ("page", "", write_page),
+    ("tables", "tables", write_tables),
+    ("supporting information", "document", write_document),
     ("exports", "exports", write_exports),
 )
 """What a report consists of: its name, its folder in the report ("": the report's own), its maker."""

@@ -15,6 +15,7 @@ from thermo_pp.output import (
     compare,
     conformers,
     courses,
+    doubt,
     energies,
     functions,
     isotopes,
@@ -33,7 +34,7 @@ FORMAT = "thermo-pp/results/1"
 _COMMON = ("format", "treatment", "standard_state", "findings", "energies")
 """Keys of a command's answer that a report says once for all parts, or elsewhere."""
 
-_ELSEWHERE = ("time_course", "flow", "selectivity", "regimes")
+_ELSEWHERE = ("time_course", "flow", "selectivity", "regimes", "doubt")
 
 
 def results_text(answers: Answers) -> str:
@@ -91,6 +92,8 @@ def results_keys(answers: Answers) -> dict[str, Any]:
         },
         "regimes": answers.regimes
         and {**regimes.keys(answers.regimes), "words": " ".join(answers.regimes.words)},
+        "doubt": answers.doubt
+        and {**doubt.doubt_keys(answers.doubt), "words": " ".join(answers.doubt.words)},
         "time_course": answers.transient
         and {
             **courses.time_course_keys(answers.transient),

@@ -14,6 +14,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     energy_column,
     in_unit,
 )
@@ -74,10 +75,9 @@ def tables(found: Structures, unit: EnergyUnit) -> list[Block]:
     notes = [
         "H and G are absolute, electronic energy included. soft: largest less smallest G over the "
         "four soft-mode treatments.",
-        of_treatment(found.treatment),
-        stamp(),
     ]
-    return [what, Table("H, S and G", columns, rows, notes)]
+    about = [of_treatment(found.treatment), stamp()]
+    return about_all([what, Table("H, S and G", columns, rows, notes)], about)
 
 
 def wide(found: Structures, unit: EnergyUnit) -> list[Block]:
@@ -119,7 +119,8 @@ def wide(found: Structures, unit: EnergyUnit) -> list[Block]:
         ("soft modes", found.treatment.low_modes),
         ("onset / cm⁻¹", f"{found.treatment.onset_cm:.10g}"),
     ]
-    return [Table("species", columns, rows, constants=constants)]
+    notes = [of_treatment(found.treatment), stamp()]
+    return [Table("species", columns, rows, constants=constants, about=notes)]
 
 
 def keys(found: Structures) -> dict[str, Any]:

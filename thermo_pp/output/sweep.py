@@ -16,6 +16,7 @@ from thermo_pp.output.tables import (
     Cell,
     Column,
     Table,
+    about_all,
     defined,
     energy_column,
     in_unit,
@@ -63,7 +64,8 @@ def tables(sweep: Sweep, treatment: Treatment, unit: EnergyUnit, *, people: bool
     if not any(row.error for row in sweep.rows) and people:
         columns, rows = columns[:-1], [row[:-1] for row in rows]
     table = Table(f"{', '.join(sweep.keys)}: rates", columns, rows)
-    return [table, " ".join([of_treatment(treatment), stamp(), ALL_DIGITS])] if people else [table]
+    notes = [of_treatment(treatment), stamp(), *([ALL_DIGITS] if people else [])]
+    return about_all([table], notes)
 
 
 _COLUMNS = 8

@@ -1,15 +1,15 @@
 """Tables: headings written quantity / unit, cells with one rule of rounding a column, notes below.
 
 Whoever fills a table takes fields of a result; nothing is computed here. Each format has one
-renderer (`plain.py`: terminal and markdown, `delimited.py`: CSV, `latex.py`), which takes tables
-and paragraphs in their order.
+renderer (`plain.py`: terminal and markdown, `delimited.py`: CSV, `latex.py`, `html.py`,
+`workbook.py`: xlsx), which takes tables and paragraphs in their order.
 """
 
 from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -95,7 +95,10 @@ class Table:
     rows : sequence of sequence of str, int, float or None
         One cell a column.
     notes : sequence of str
-        Sentences below the table: temperature, standard state, soft modes, level, version.
+        Sentences below the table, about this one.
+    about : sequence of str
+        Sentences below it that tables of one answer share: standard state, soft modes, level of
+        theory, version. A terminal shows them once, below the last of these tables.
     constants : sequence of (str, str)
         What holds for every row; CSV, which has no notes, writes them as further columns.
     """
@@ -105,6 +108,7 @@ class Table:
     rows: Sequence[Sequence[Cell]]
     notes: Sequence[str] = ()
     constants: Sequence[tuple[str, str]] = field(default=())
+    about: Sequence[str] = ()
 
     def __post_init__(self) -> None:
         for row in self.rows:
@@ -113,6 +117,11 @@ class Table:
                     f"{len(row)} cells for {len(self.columns)} columns in {self.title}"
                 )
 
+    @property
+    def all_notes(self) -> tuple[str, ...]:
+        """Every sentence below the table."""
+        return (*self.notes, *self.about)
+
     def right(self, column: int) -> bool:
         """Whether a column holds no text (and is set to the right)."""
         return not any(isinstance(row[column], str) for row in self.rows)
@@ -120,6 +129,13 @@ class Table:
 
 Block = Table | str
 """A table or a paragraph."""
+
+
+def about_all(blocks: Sequence[Block], about: Sequence[str]) -> list[Block]:
+    """Return the blocks, each table with sentences that hold for all of them."""
+    return [
+        block if isinstance(block, str) else replace(block, about=tuple(about)) for block in blocks
+    ]
 
 
 _RAISED = str.maketrans("0123456789-", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻")

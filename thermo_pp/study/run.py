@@ -27,6 +27,7 @@ if TYPE_CHECKING:
     from thermo_pp.functions.formation import Formations
     from thermo_pp.functions.phase import GasPhase
     from thermo_pp.kinetics.courses import Transient
+    from thermo_pp.kinetics.doubt.results import Doubt
     from thermo_pp.kinetics.flow import FlowState
     from thermo_pp.kinetics.isotope_effects import IsotopeEffects
     from thermo_pp.kinetics.product_ratio import Selectivity
@@ -108,6 +109,8 @@ class Answers:
     selectivity : Selectivity or None
     regimes : Regimes or None
         As ``[regimes]`` asks, else over a hundredth to a hundred times the first amount that is held.
+    doubt : Doubt or None
+        Where the study has ``[doubt]``.
     transient : Transient or None
     flow : FlowState or None
     isotopes : tuple of IsotopeEffects
@@ -138,6 +141,7 @@ class Answers:
     effective_by_treatment: Mapping[LowModes, EffectiveRate]
     selectivity: Selectivity | None
     regimes: Regimes | None
+    doubt: Doubt | None
     transient: Transient | None
     flow: FlowState | None
     isotopes: tuple[IsotopeEffects, ...]
@@ -217,7 +221,7 @@ class _Run:
     said: list[Finding] = field(default_factory=list)
     done: int = 0
 
-    STAGES = 13 + len(LOW_MODES)
+    STAGES = 14 + len(LOW_MODES)
 
     def answers(self) -> Answers:
         study = self.study
@@ -229,6 +233,7 @@ class _Run:
         by_treatment = self.by_treatment(effective)
         selectivity = self.stage("selectivity", lambda: self.selectivity(effective))
         regimes = self.stage("regimes", lambda: self.regimes(effective))
+        doubt = self.stage("doubt", lambda: self.doubt(effective))
         transient = self.stage("time courses", self.transient)
         flow = self.stage("flow", self.flow)
         isotopes = self.stage("isotope effects", self.isotopes)
@@ -237,7 +242,7 @@ class _Run:
         ensembles = self.stage("conformers", self.ensembles)
         formation, phase = self.stage("functions", self.functions)
         self.progress(self.STAGES, self.STAGES, "")
-        rates = (effective, selectivity, transient, flow, *isotopes)
+        rates = (effective, selectivity, doubt, transient, flow, *isotopes)
         parts = (*rates, choices, comparison, ensembles, formation, phase)
         for part in (*found.values(), *parts):
             self.said += () if part is None else part.findings
@@ -251,6 +256,7 @@ class _Run:
             effective_by_treatment=by_treatment,
             selectivity=selectivity,
             regimes=regimes,
+            doubt=doubt,
             transient=transient,
             flow=flow,
             isotopes=isotopes,
@@ -367,6 +373,12 @@ class _Run:
                 low, high = held.value / REGIME_FACTOR, held.value * REGIME_FACTOR
                 return RegimeQuestion(name, held.form, low, high, REGIME_POINTS)
         return None
+
+    def doubt(self, effective: EffectiveRate | None) -> Doubt | None:
+        if self.study.uncertainty is None or effective is None:
+            self.left_out["doubt"] = "no rate, or the study has no [doubt]"
+            return None
+        return self.study.doubt()
 
     def transient(self) -> Transient | None:
         conditions = self.study.conditions
