@@ -62,7 +62,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "doubt",
         "barrier", "barrier_tables", "isotopes",
         "functions",
-        "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "exports", "manifest",
+        "cantera_phase", "choices", "compare", "folders", "provenance", "results_file", "page", "exports", "manifest",
         "figures", "figures_folder", "study_species", "report_tables", "document", "report", "sweep",
     ),
     "cli": (

@@ -11,6 +11,7 @@ from thermo_pp.output.exports import write_exports
 from thermo_pp.output.figures_folder import write_figures
 from thermo_pp.output.files import write_file
 from thermo_pp.output.manifest import NAME, manifest_text
+from thermo_pp.output.page import write_page
 from thermo_pp.output.report_tables import write_tables
 from thermo_pp.output.results_file import results_text
 from thermo_pp.study.run import Answers
@@ -25,6 +26,7 @@ def _write_results(answers: Answers, folder: Path) -> None:
 PARTS: tuple[tuple[str, str, Maker], ...] = (
     ("results", "", _write_results),
     ("figures", "figures", write_figures),
+    ("page", "", write_page),
     ("tables", "tables", write_tables),
     ("supporting information", "document", write_document),
     ("exports", "exports", write_exports),
