@@ -76,7 +76,15 @@ def test_every_figure_is_there_in_three_formats(bundled: Path) -> None:
              for name in ("free", "pool", "relaxation")}  # fmt: skip
     maps = {f"regimes-{layer}-{name}" for layer in ("holding", "controlling", "resting")
             for name in ("free", "pool")} - {"regimes-resting-free"}  # fmt: skip
-    assert stems == {*kinds, *maps, "populations-pool", "profile", "profile-enthalpy-gibbs"}
+    doubts = {"doubt-free", "doubt-pool"}
+    assert stems == {
+        *kinds,
+        *maps,
+        *doubts,
+        "populations-pool",
+        "profile",
+        "profile-enthalpy-gibbs",
+    }
 
 
 def test_the_manifest_lists_every_file_with_its_hash(bundled: Path) -> None:
@@ -222,6 +230,18 @@ def test_a_folder_that_is_no_report_is_not_replaced(tmp_path: Path, text: str) -
     assert done.exit_code == 1
     assert "thesis: the folder is no report of this program, so it is not replaced" in done.output
     assert files(folder) == before
+
+
+def test_columns_are_chosen_and_one_that_no_table_has_ends_it(tmp_path: Path) -> None:
+    study = declared(tmp_path)
+    chosen = run(study, "-o", tmp_path / "chosen", "--columns", "G,State", "-T", "298.15")
+    assert chosen.exit_code == 0, chosen.output
+    heading = (tmp_path / "chosen" / "tables" / "profile.md").read_text(encoding="utf-8")
+    assert "| ΔG / kJ mol⁻¹ | State |" in " ".join(heading.split())
+    wrong = run(study, "-o", tmp_path / "wrong", "--columns", "Gibs", "-T", "298.15")
+    assert wrong.exit_code == 1
+    assert "there is no column 'Gibs'" in wrong.output
+    assert not (tmp_path / "wrong").exists()
 
 
 def test_a_study_that_cannot_be_computed_leaves_nothing(tmp_path: Path) -> None:

@@ -197,6 +197,20 @@ def treatment_options(command: Command) -> Command:
     return with_treatment  # type: ignore[return-value]
 
 
+def _names(context: click.Context, parameter: click.Parameter, value: str) -> tuple[str, ...]:
+    """Take the names in a list with commas."""
+    return tuple(name.strip() for name in value.split(",") if name.strip())
+
+
+COLUMNS = click.option(
+    "--columns",
+    metavar="NAMES",
+    default="",
+    callback=_names,
+    help='Show these columns only, in this order: "G,H,S". Not in json.',
+)
+
+
 def output_options(command: Command) -> Command:
     """Add the options of what is shown and where; the command gets `showing`."""
 
@@ -222,12 +236,7 @@ def output_options(command: Command) -> Command:
         type=click.Path(dir_okay=False, path_type=Path),
         help="Write the answer to this file instead of standard output.",
     )
-    @click.option(
-        "--columns",
-        metavar="NAMES",
-        default="",
-        help='Show these columns only, in this order: "G,H,S". Not with json.',
-    )
+    @COLUMNS
     @click.option("--strict", is_flag=True, help="Let findings of severity error end the run.")
     @click.option("--quiet", is_flag=True, help="Write no findings and hints to standard error.")
     @wraps(command)
@@ -236,17 +245,16 @@ def output_options(command: Command) -> Command:
         energy_unit: EnergyUnit,
         format_name: Format,
         path: Path | None,
-        columns: str,
+        columns: tuple[str, ...],
         strict: bool,
         quiet: bool,
         **others: Any,
     ) -> Any:
         if format_name == "xlsx" and path is None:
             raise click.UsageError("--format xlsx needs -o FILE.xlsx")
-        named = tuple(name.strip() for name in columns.split(",") if name.strip())
-        if named and format_name == "json":
+        if columns and format_name == "json":
             raise click.UsageError("--columns is for tables; json has every key")
-        showing = Showing(format_name, energy_unit, path, strict, quiet, named)
+        showing = Showing(format_name, energy_unit, path, strict, quiet, columns)
         return command(*args, showing=showing, **others)
 
     return with_output  # type: ignore[return-value]

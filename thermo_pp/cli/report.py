@@ -15,6 +15,7 @@ import click
 
 from thermo_pp.cli.answers import end_if_strict, say
 from thermo_pp.cli.options import (
+    COLUMNS,
     DEVIATION,
     LEVEL,
     SADDLE_DEVIATION,
@@ -54,6 +55,7 @@ Progress = Callable[[int, int, str], None]
 @temperature_options
 @treatment_options
 @LEVEL
+@COLUMNS
 @click.option("--strict", is_flag=True, help="Let findings of severity error end the run.")
 @click.option("--quiet", is_flag=True, help="Write no findings and no progress to standard error.")
 def report(
@@ -66,6 +68,7 @@ def report(
     temperature_k: tuple[float, ...] | None,
     treating: Treating,
     level: str | None,
+    columns: tuple[str, ...],
     strict: bool,
     quiet: bool,
 ) -> None:
@@ -80,6 +83,7 @@ def report(
         thermo-pp report study.toml -o report
         thermo-pp report study.toml -o report --temperature-range 250 400 10
         thermo-pp report study.toml -o report --low-modes rotor-enthalpy --quiet
+        thermo-pp report study.toml -o report --columns "State,G,H,S"
         thermo-pp report study.toml -o report --measured measured.csv --deviation "4 kJ/mol"
     """
     if measured is None and (deviation or saddle_deviation):
@@ -103,6 +107,7 @@ def report(
         "treatment": treating.keys(),
         "level": level,
         "times_s": times,
+        "columns": columns,
     }
     with whole_folder(folder, check_report) as part:
         with _progress(showing) as (computing, writing), _inside(study.parent):
@@ -110,7 +115,7 @@ def report(
                 study.name, temperatures=temperature_k, treatment=treating.keys(), level=level
             )
             answers = answer(loaded, times_s=times or (), measured=beside, progress=computing)
-            write_report(answers, part, options, writing)
+            write_report(answers, part, options, writing, columns=columns)
         findings = _from_here(answers.findings, study.parent)
         say(showing, findings, all_in="results.json")
         end_if_strict(showing, findings)

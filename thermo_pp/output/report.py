@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -16,7 +16,8 @@ from thermo_pp.output.report_tables import write_tables
 from thermo_pp.output.results_file import results_text
 from thermo_pp.study.run import Answers
 
-Maker = Callable[[Answers, Path], None]
+Maker = Callable[..., None]
+"""Called with the answers and the folder; those of `TABLES` with the columns too."""
 
 
 def _write_results(answers: Answers, folder: Path) -> None:
@@ -33,12 +34,17 @@ PARTS: tuple[tuple[str, str, Maker], ...] = (
 )
 """What a report consists of: its name, its folder in the report ("": the report's own), its maker."""
 
+TABLES: tuple[Maker, ...] = (write_tables, write_document)
+"""Parts whose tables may have some columns only."""
+
 
 def write_report(
     answers: Answers,
     folder: Path,
     options: Mapping[str, Any],
     progress: Callable[[int, int, str], None] | None = None,
+    *,
+    columns: Sequence[str] = (),
 ) -> None:
     """Write all parts into an empty folder, the manifest last.
 
@@ -50,10 +56,21 @@ def write_report(
         See `manifest.manifest_text`.
     progress : callable or None
         Called before each part and once at the end.
+    columns : sequence of str
+        Of the tables, those of the document included, in this order; all of them unless given.
+
+    Raises
+    ------
+    StudyError
+        No table has one of the columns.
     """
     told = progress or (lambda done, of, what: None)
     for number, (name, place, make) in enumerate(PARTS):
         told(number, len(PARTS), name)
-        make(answers, folder / place if place else folder)
+        inside = folder / place if place else folder
+        if make in TABLES:
+            make(answers, inside, columns=columns)
+        else:
+            make(answers, inside)
     write_file(folder / NAME, manifest_text(answers, folder, options))
     told(len(PARTS), len(PARTS), "")
