@@ -127,6 +127,7 @@ def grown(results: dict[str, Any], species: int, paths: int) -> dict[str, Any]:
     rows = found["provenance"]
     found["provenance"] = [{**rows[k % len(rows)], "of": f"X{k // 8}"} for k in range(8 * species)]
     found["inputs"] = [{**found["inputs"][1], "path": f"outputs/x{k}.out"} for k in range(2 * species)]  # fmt: skip
+    found["doubt"] = None  # it stands at two temperatures only
     found["temperature_k"] = found["temperature_k"][:1] + [300.0 + k for k in range(16)]
     for profile in (*found["profiles"], found["profile_at_conditions"]):
         states = profile["states"][:4]
