@@ -55,7 +55,7 @@ def tables(survey: Survey) -> list[Block]:
     ]
     notes = [f"Level {number}: {words}." for words, number in levels.items()]
     notes += _skipped(survey)
-    notes += [_verdicts(survey), stamp()]
+    notes += [*_verdicts(survey), stamp()]
     title = f"{_count(len(survey.files), 'output')}" + (f" in {folder}" if folder else "")
     return [Table(title, columns, rows, notes)]
 
@@ -106,11 +106,11 @@ def _skipped(survey: Survey) -> list[str]:
     return notes
 
 
-def _verdicts(survey: Survey) -> str:
+def _verdicts(survey: Survey) -> list[str]:
     counts = Counter(file.verdict for file in survey.files)
     order: tuple[Verdict, ...] = ("ok", "note", "warning", "error")
     said = ", ".join(f"{counts[verdict]} {verdict}" for verdict in order if counts[verdict])
-    return f"Verdict is the worst finding of a file: {said}."
+    return [f"Verdict is the worst finding of a file: {said}."] if said else []
 
 
 def _count(number: int, noun: str) -> str:
