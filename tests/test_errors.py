@@ -9,6 +9,7 @@ import pytest
 from declared_study import TEXT, edited, load
 
 from thermo_pp.errors import Finding, ReadError, StudyError, ThermoError
+from thermo_pp.nearest import MOST_LISTED
 from thermo_pp.study.keys import Keys, SpeciesKeys, StudyKeys, TreatmentKeys
 from thermo_pp.study.load import Study
 
@@ -27,8 +28,9 @@ HELD = 'write a concentration ("2e-4 mol/L"), a partial pressure ("20 mbar") or 
 
 
 def names(table: type[Keys]) -> str:
-    """Every key of a table, in the order of the model."""
-    return ", ".join(table.__struct_fields__)
+    """The keys of a table, in the order of the model, as far as they are listed."""
+    keys = table.__struct_fields__
+    return ", ".join(keys[:MOST_LISTED]) + (", ..." if len(keys) > MOST_LISTED else "")
 
 
 CASES = {  # name: (changes, where, what, mend)

@@ -762,7 +762,7 @@ def test_declared_errors() -> None:
         ("Ca(OH)2", {"Ca": 1, "O": 2, "H": 2}, 0),
         ("Fe(CN(H2O)2)3^3+", {"Fe": 1, "C": 3, "N": 3, "H": 12, "O": 6}, 3),
         ("CH3CHO", {"C": 2, "H": 4, "O": 1}, 0),
-        ("e-", None, 0),
+        ("e-", {}, -1),
         ("", None, 0),
         ("H0", None, 0),
         ("h2o", None, 0),

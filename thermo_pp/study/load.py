@@ -249,8 +249,10 @@ class Study:
 
     @property
     def calculations(self) -> Mapping[str, Calculation]:
-        """The outputs that were read, by the name under which a species has them."""
-        return MappingProxyType({} if self._origin is None else self._origin.read)
+        """The outputs that the species stand on, by the name under which a species has them."""
+        read = {} if self._origin is None else self._origin.read  # those of other levels too
+        files = {file for model in self.species.values() for file in model.files}
+        return MappingProxyType({name: read[name] for name in read if name in files})
 
     @property
     def tables(self) -> Mapping[str, Any]:
