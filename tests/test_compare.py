@@ -199,7 +199,7 @@ def test_joint_shift_of_a_linear_model(study: Study, tmp_path: Path) -> None:
     file = points(tmp_path, k, relative=2e-4)
     rows = read_measurements(file)
     observed = observe(study, rows.points, (), weighted=True)
-    covariance = Deviations(1e-3, 2e-3).covariance(observed.names, ("TS",))
+    covariance = Deviations(1e-3, 2e-3).of(observed.names, ("TS",)).covariance
     found = together(observed, covariance)
     values, slopes = observed.computed(np.zeros(len(observed.names)))
     residual = observed.measured - values
@@ -391,6 +391,88 @@ def test_without_deviations_it_says_so(study: Study, tmp_path: Path) -> None:
     found = study.compare(points(tmp_path, rate(study, TEMPERATURES)))
     assert found.joint is None
     assert found.words[-1].startswith("No standard deviations of the energies are given")
+
+
+DOUBT = '[doubt]\ndeviation = "3 kJ/mol"\nsaddle_deviation = "5 kJ/mol"\n'
+SAME = "correlation = { same_kind = 0.9, across = 0.9 }\n"
+
+
+def test_deviations_are_those_of_the_study(study: Study, tmp_path: Path) -> None:
+    """[doubt] without correlations is what equal options are; every number is the same."""
+    file = points(tmp_path, rate(study, TEMPERATURES, TS=-3.0))
+    doubting = load(tmp_path, "doubt.toml", STUDY + DOUBT)
+    found = doubting.compare(file)
+    same = study.compare(file, deviation=3.0, saddle_deviation=5.0)
+    assert found.joint is not None
+    assert same.joint is not None
+    assert found.joint.shift_kj_mol == pytest.approx(same.joint.shift_kj_mol, rel=1e-9)
+    assert found.joint.length == pytest.approx(same.joint.length, rel=1e-9)
+    assert found.curves[0].log_deviation == pytest.approx(same.curves[0].log_deviation, rel=1e-12)
+    assert [one.deviation_kj_mol for one in found.states] == [
+        one.deviation_kj_mol for one in same.states
+    ]
+    assert (
+        "The standard deviations of the energies, 3 to 5 kJ/mol, independent of each other, are those of "
+        f"{tmp_path / 'doubt.toml'} [doubt]." in found.words
+    )
+    assert same.overridden is None
+    assert study.compare(file).energy_doubt is None
+
+
+def test_correlations_of_the_study_count(study: Study, tmp_path: Path) -> None:
+    """Var ln k = g^T S g with the study's covariance, written out here; errors in common cancel."""
+    file = points(tmp_path, rate(study, TEMPERATURES, TS=-3.0))
+    found = load(tmp_path, "doubt.toml", STUDY + DOUBT + SAME).compare(file)
+    grid = np.array(study.conditions.temperature_k)
+    slopes = slope(model(study).at(grid), "pool").by_energy
+    spread = np.array([3.0, 3.0, 3.0, 3.0, 5.0])  # A, W, C, P, TS
+    covariance = np.outer(spread, spread) * (0.9 + 0.1 * np.eye(5))
+    expected = np.sqrt(np.einsum("ti,ij,tj->t", slopes, covariance, slopes))
+    assert found.curves[0].log_deviation == pytest.approx(expected, rel=1e-9)
+    apart = study.compare(file, deviation=3.0, saddle_deviation=5.0)
+    assert apart.curves[0].log_deviation is not None
+    assert (expected < 0.8 * apart.curves[0].log_deviation).all()
+    assert found.joint is not None
+    assert apart.joint is not None
+    assert found.joint.length > 1.1 * apart.joint.length
+
+
+def test_options_stand_in_place_of_the_study(study: Study, tmp_path: Path) -> None:
+    file = points(tmp_path, rate(study, TEMPERATURES, TS=-3.0))
+    doubting = load(tmp_path, "doubt.toml", STUDY + DOUBT + SAME)
+    found, plain = (one.compare(file, deviation=4.0) for one in (doubting, study))
+    assert found.joint is not None
+    assert plain.joint is not None
+    assert found.joint.shift_kj_mol == pytest.approx(plain.joint.shift_kj_mol, rel=1e-12)
+    assert found.overridden == f"{tmp_path / 'doubt.toml'} [doubt]"
+    said = "The standard deviations of the energies, 4 kJ/mol, independent of each other, are those of the options"
+    assert f"{said}, not those of {found.overridden}." in found.words
+    assert f"{said}." in plain.words
+
+
+def test_each_rival_has_its_own_doubt(study: Study, tmp_path: Path) -> None:
+    file = points(tmp_path, rate(study, TEMPERATURES, TS=-3.0))
+    one = load(tmp_path, "one.toml", STUDY + DOUBT)
+    surer = load(
+        tmp_path, "surer.toml", STUDY + DOUBT.replace("3 kJ", "1 kJ").replace("5 kJ", "1 kJ")
+    )
+    length = {Path(r.file).name: r.length for r in one.compare(file, rivals=[surer]).rivals}
+    assert length["surer.toml"] > 1.5 * length["one.toml"]
+    with pytest.raises(StudyError, match=r"the rival has no \[doubt\]") as caught:
+        one.compare(file, rivals=[study])
+    assert caught.value.where == str(tmp_path / "study.toml")
+
+
+def test_a_stated_height_is_kept_and_said_to_be(study: Study, tmp_path: Path) -> None:
+    text = STUDY.replace('through = "TS"', 'barrier = "60 kJ/mol"').replace("TS = {", "# TS = {")
+    high = load(tmp_path, "height.toml", text + DOUBT)
+    found = high.compare(points(tmp_path, rate(high, TEMPERATURES)))
+    assert [one.file for one in found.findings if one.code == "heights-kept"] == [
+        str(tmp_path / "height.toml")
+    ]
+    assert "heights-kept" not in [
+        one.code for one in study.compare(tmp_path / "measured.csv").findings
+    ]
 
 
 def test_points_that_scatter_more(study: Study, tmp_path: Path) -> None:

@@ -9,9 +9,11 @@ import subprocess
 import sys
 import zlib
 from dataclasses import replace
+from functools import cache
 from html import unescape
 from itertools import combinations
 from pathlib import Path
+from tempfile import TemporaryDirectory
 from types import SimpleNamespace
 from typing import Any
 
@@ -25,11 +27,12 @@ from matplotlib.text import Text
 import thermo_pp as tp
 from thermo_pp import figures
 from thermo_pp.kinetics.results import Activation, Approximation, EffectiveRate, Rate, Window
+from thermo_pp.measured.results import Comparison
 from thermo_pp.output.figures.key import size_pt
 from thermo_pp.output.figures.labels import Labels
 from thermo_pp.output.figures.network import network
 from thermo_pp.output.figures.placement import Request, placed
-from thermo_pp.output.figures.style import TEXT_PT
+from thermo_pp.output.figures.style import COLOURS, INK, TEXT_PT
 from thermo_pp.output.figures.words import elided, shown, width_pt, wrapped
 from thermo_pp.profile import Profile, State
 
@@ -339,6 +342,27 @@ def draw_doubt(ax: Axes) -> Axes:
     return figures.doubt.draw(ax, samples, float((samples < 0).mean()), nominal_kj_mol=-6.0)
 
 
+_A = "A / cm^6 molecule^-2 s^-1"
+_POINT = "temperature / K,k / s^-1,sigma / s^-1,source"
+MEASURED = f"""kind,definition,orders,from / K,to / K,{_A},sigma {_A},n,T0 / K,E / K,{_POINT}
+expression,pool,2 W,250,330,2.26e-43,0.85e-43,1,1,-6544,,,,"{LONG}"
+point,pool,,,,,,,,,290,4000,400,"{LONG}"
+point,pool,,,,,,,,,310,1500,1200,"$x$"
+point,pool,,,,,,,,,330,500,600,"$x$"
+"""
+
+
+@cache
+def comparison(count: int) -> Comparison:
+    """The bundled study against an expression and against points of two sources."""
+    with TemporaryDirectory() as folder:
+        file = Path(folder) / "measured.csv"
+        file.write_text(MEASURED)
+        t = list(np.linspace(360.0, 280.0, count)) if count > 1 else [300.0]
+        study = tp.Study.load(BUNDLED, temperatures=t)
+        return study.compare(file, deviation="4 kJ/mol")
+
+
 OTHERS = {
     "arrhenius": lambda ax: draw_rates(ax, 17, "arrhenius"),
     "eyring": lambda ax: draw_rates(ax, 17, "eyring"),
@@ -354,6 +378,9 @@ OTHERS = {
         ax, [course(280.0), course(360.0)], LONG
     ),
     "doubt": draw_doubt,
+    "measured, points": lambda ax: figures.measured.draw(ax, comparison(17)),
+    "measured, expression": lambda ax: figures.measured.draw(ax, comparison(17), 2, form="eyring"),
+    "measured, one temperature": lambda ax: figures.measured.draw(ax, comparison(1)),
 }
 
 
@@ -371,6 +398,50 @@ def test_the_bundled_rates_can_be_drawn(effective: EffectiveRate, seen: Seen) ->
         draw(ax, effective)
         rendered(figure, seen)
         assert seen.problems(figure) == []
+
+
+def handle_data(ax: Axes) -> dict[str, Any]:
+    """Of the first line in each colour: x and y."""
+    return {line.get_color(): line.get_xydata() for line in reversed(ax.get_lines())}
+
+
+@pytest.mark.parametrize("form", ["arrhenius", "eyring"])
+def test_measured_and_computed_are_those_of_the_comparison(form: Any) -> None:
+    found = comparison(17)
+    second, first = found.curves  # points, then expressions
+    order = np.argsort(first.temperature_k)
+    t = first.temperature_k[order]
+    over = t if form == "eyring" else np.ones_like(t)
+    _, (ax,) = figures.new_figure()
+    assert figures.measured.draw(ax, found, 2, form=form) is ax
+    drawn = handle_data(ax)
+    assert drawn[INK][:, 0] == pytest.approx(1000.0 / t, rel=1e-12)
+    assert drawn[INK][:, 1] == pytest.approx(first.computed[order] / over, rel=1e-12)
+    assert first.measured is not None
+    assert first.log_deviation is not None
+    line = drawn[COLOURS[1]][:, 1]
+    assert line == pytest.approx(first.measured[order] / over, rel=1e-12, nan_ok=True)
+    assert np.isnan(line[t > 330.0]).all()
+    # the band is one standard deviation: its corners are edges of the computed curve
+    corners = ax.collections[0].get_paths()[0].vertices[:, 1]
+    high = (first.computed * np.exp(first.log_deviation))[order] / over
+    assert corners.max() == pytest.approx(high.max(), rel=1e-12)
+
+    _, (ax,) = figures.new_figure()
+    figures.measured.draw(ax, found, 1, form=form)
+    (fit,) = (one for one in second.fits if one.form == form)
+    line = handle_data(ax)[COLOURS[1]][:, 1]
+    assert line == pytest.approx(fit.rate_constant[order] / over, rel=1e-12)
+    groups = [bars.lines[0].get_xydata() for bars in ax.containers]
+    at = np.array([one.point.temperature_k for one in found.points])
+    k = np.array([one.point.rate_constant for one in found.points])
+    expected = np.column_stack([1000.0 / at, k / at if form == "eyring" else k])
+    assert [len(group) for group in groups] == [1, 2]  # one marker a source
+    assert np.concatenate(groups) == pytest.approx(expected, rel=1e-12)
+    bar = ax.containers[0].lines[2][0].get_segments()[0]
+    assert bar[1, 1] - bar[0, 1] == pytest.approx(800.0 / (290.0 if form == "eyring" else 1.0))
+    with pytest.raises(ValueError, match="no curve 3: the comparison has 2"):
+        figures.measured.draw(ax, found, 3)
 
 
 def test_windows_are_where_the_result_has_them() -> None:
@@ -504,9 +575,13 @@ def hashes() -> list[str]:
     figures.profile.draw(ax, odd_names(), temperatures_k=TWO_K)
     other, (ax,) = figures.new_figure()
     draw_regimes(ax)
+    third, (ax,) = figures.new_figure()
+    figures.measured.draw(ax, comparison(17))
     forms: tuple[Any, ...] = ("svg", "pdf", "png")
     return [
-        hashlib.sha256(figures.content(figure, f) + figures.content(other, f)).hexdigest()
+        hashlib.sha256(
+            b"".join(figures.content(one, f) for one in (figure, other, third))
+        ).hexdigest()
         for f in forms
     ]
 

@@ -84,6 +84,7 @@ def test_every_figure_is_there_in_three_formats(bundled: Path) -> None:
         "populations-pool",
         "profile",
         "profile-enthalpy-gibbs",
+        "measured-1",
     }
 
 

@@ -9,17 +9,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.conditions import Held, StandardState
-from thermo_pp.measured.deviations import Deviations
 from thermo_pp.measured.fits import FORMS, Fit, NoFitError, fit
 from thermo_pp.measured.observed import StudyLike, by_amounts, curve
-from thermo_pp.measured.results import CurveBeside, FitBeside, PointBeside
+from thermo_pp.measured.results import CurveBeside, EnergyDoubt, FitBeside, PointBeside
 from thermo_pp.measured.rows import Expression, Point, Row
 
 FloatArray = NDArray[np.float64]
 
 
 def points_beside(
-    study: StudyLike, points: Sequence[Point], deviations: Deviations | None
+    study: StudyLike, points: Sequence[Point], doubt: EnergyDoubt | None
 ) -> list[PointBeside]:
     """Return every point with the computed rate constant beside it, in the order of the file."""
     found: dict[Point, PointBeside] = {}
@@ -27,7 +26,7 @@ def points_beside(
         t = np.array([point.temperature_k for point in group])
         beside = curve(study, group[0], group[0].held, t)
         slope = beside.at()
-        spread = _spread(study, beside.rates.energies.names, slope.by_energy, deviations)
+        spread = _spread(slope.by_energy, doubt)
         for k, point in enumerate(group):
             found[point] = PointBeside(
                 point,
@@ -38,21 +37,15 @@ def points_beside(
     return [found[point] for point in points]
 
 
-def _spread(
-    study: StudyLike,
-    names: Sequence[str],
-    by_energy: FloatArray,
-    deviations: Deviations | None,
-) -> FloatArray | None:
+def _spread(by_energy: FloatArray, doubt: EnergyDoubt | None) -> FloatArray | None:
     """Return the first-order standard deviation of ln k computed."""
-    if deviations is None:
+    if doubt is None:
         return None
-    covariance = deviations.covariance(names, study.mechanism.saddles)
-    return np.asarray(np.sqrt(np.einsum("ti,ij,tj->t", by_energy, covariance, by_energy)))
+    return np.asarray(np.sqrt(np.einsum("ti,ij,tj->t", by_energy, doubt.covariance, by_energy)))
 
 
 def point_curves(
-    study: StudyLike, points: Sequence[Point], deviations: Deviations | None
+    study: StudyLike, points: Sequence[Point], doubt: EnergyDoubt | None
 ) -> list[CurveBeside]:
     """Return a curve, with fits, for every set of points of one definition and order.
 
@@ -65,12 +58,10 @@ def point_curves(
         apart = number if first.unit.order == 1 else None
         key = (first.definition, first.unit, frozenset(first.orders.items()), apart)
         groups.setdefault(key, []).extend(group)
-    return [curve_beside(study, group, deviations) for group in groups.values()]
+    return [curve_beside(study, group, doubt) for group in groups.values()]
 
 
-def curve_beside(
-    study: StudyLike, rows: Sequence[Row], deviations: Deviations | None
-) -> CurveBeside:
+def curve_beside(study: StudyLike, rows: Sequence[Row], doubt: EnergyDoubt | None) -> CurveBeside:
     """Return the computed curve over the study's temperatures beside rows that belong together."""
     first = rows[0]
     amounts = [dict(row.held) for row in rows]
@@ -90,7 +81,7 @@ def curve_beside(
         temperature_k=grid,
         computed=np.exp(slope.log - np.log(first.unit.factor)),
         arrhenius_energy_kj_mol=slope.energy_kj_mol,
-        log_deviation=_spread(study, beside.rates.energies.names, slope.by_energy, deviations),
+        log_deviation=_spread(slope.by_energy, doubt),
         orders=beside.orders(),
     )
     if isinstance(first, Expression):

@@ -10,12 +10,13 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.measured.beside import curve_beside, point_curves, points_beside
-from thermo_pp.measured.deviations import Deviations
+from thermo_pp.measured.deviations import Deviations, energy_doubt
 from thermo_pp.measured.observed import Observed, StudyLike, observe
 from thermo_pp.measured.reconcile import Joint, alone, together
 from thermo_pp.measured.results import (
     Comparison,
     CurveBeside,
+    EnergyDoubt,
     JointShift,
     Rival,
     StateShift,
@@ -45,8 +46,8 @@ def compare(
     study : StudyLike
     measurements : Measurements
     deviations : Deviations or None
-        Of the energies, of the study and of its rivals; without them there are no bands, no joint
-        shift and no ranking.
+        Of the energies, of the study and of its rivals, in place of what each has in ``[doubt]``;
+        without either there are no bands, no joint shift and no ranking.
     rivals : mapping of str to StudyLike, or None
         Other studies under their files' names.
 
@@ -72,39 +73,43 @@ def _compare(
     known = any(point.sigma is not None for point in points) or any(
         row.uncertain for row in expressions
     )
+    doubt = energy_doubt(study, deviations)
     if rivals:
-        _check_ranking(measurements, deviations, known)
+        _check_ranking(measurements, doubt, known)
     flat = observe(study, points, expressions, weighted=False)
     weighted = observe(study, points, expressions, weighted=True) if known else None
+    observations = 0 if weighted is None else len(weighted.measured)
     joint = None
-    if weighted is not None and deviations is not None:
-        joint = together(weighted, _covariance(study, weighted, deviations))
+    if weighted is not None and doubt is not None:
+        joint = together(weighted, doubt.covariance)
     curves = [
-        *point_curves(study, points, deviations),
-        *(curve_beside(study, [row], deviations) for row in expressions),
+        *point_curves(study, points, doubt),
+        *(curve_beside(study, [row], doubt) for row in expressions),
     ]
     result = Comparison(
         measurements,
-        tuple(points_beside(study, points, deviations)),
+        doubt,
+        None if deviations is None or study.uncertainty is None else study.uncertainty.where,
+        tuple(points_beside(study, points, doubt)),
         tuple(curves),
-        tuple(_states(study, flat, weighted, deviations)),
-        None if joint is None or weighted is None else _joint(study, weighted, joint, deviations),
+        tuple(_states(flat, weighted, doubt)),
+        None if joint is None or doubt is None else _joint(joint, doubt, observations),
         _ranked(study, measurements, deviations, rivals, joint),
         findings=tuple(
             dict.fromkeys(
-                (*study.findings, *measurements.findings, *_findings(study, curves, rivals))
+                (*study.findings, *measurements.findings, *_findings(study, curves, rivals, doubt))
             )
         ),
     )
     return replace(result, words=words(result))
 
 
-def _check_ranking(measurements: Measurements, deviations: Deviations | None, known: bool) -> None:
-    if deviations is None:
+def _check_ranking(measurements: Measurements, doubt: EnergyDoubt | None, known: bool) -> None:
+    if doubt is None:
         raise StudyError(
             "rival studies are ranked with the energies' standard deviations, and none is given",
             where="--rival",
-            mend='say how well the energies are known: --deviation "4 kJ/mol"',
+            mend='say how well the energies are known: --deviation "4 kJ/mol", or [doubt] in the study',
         )
     if not known:
         raise StudyError(
@@ -114,15 +119,8 @@ def _check_ranking(measurements: Measurements, deviations: Deviations | None, kn
         )
 
 
-def _covariance(study: StudyLike, observed: Observed, deviations: Deviations) -> FloatArray:
-    return deviations.covariance(observed.names, study.mechanism.saddles)
-
-
 def _states(
-    study: StudyLike,
-    flat: Observed,
-    weighted: Observed | None,
-    deviations: Deviations | None,
+    flat: Observed, weighted: Observed | None, doubt: EnergyDoubt | None
 ) -> list[StateShift]:
     """Return what each controlling state alone would have to move, the largest control first."""
     controls = np.zeros(len(flat.names))
@@ -132,9 +130,7 @@ def _states(
         here = -slope.by_energy * rt[:, np.newaxis]
         largest = here[np.argmax(np.abs(here), axis=0), np.arange(len(controls))]
         controls = np.where(np.abs(largest) > np.abs(controls), largest, controls)
-    spread = None
-    if deviations is not None:
-        spread = np.sqrt(np.diag(_covariance(study, flat, deviations)))
+    spread = None if doubt is None else doubt.deviation_kj_mol
     found = []
     for k in np.argsort(-np.abs(controls), kind="stable"):
         if abs(controls[k]) < CONTROLLING:
@@ -158,28 +154,21 @@ def _states(
     return found
 
 
-def _joint(
-    study: StudyLike, observed: Observed, joint: Joint, deviations: Deviations | None
-) -> JointShift | None:
+def _joint(joint: Joint, doubt: EnergyDoubt, observations: int) -> JointShift:
     from scipy.special import chdtrc
 
-    if deviations is None:
-        return None
-    spread = np.sqrt(np.diag(_covariance(study, observed, deviations)))
+    spread = doubt.deviation_kj_mol
     moved = {
-        name: k
-        for k, name in enumerate(observed.names)
-        if abs(joint.shift_kj_mol[k]) > SHOWN_KJ_MOL
+        name: k for k, name in enumerate(doubt.names) if abs(joint.shift_kj_mol[k]) > SHOWN_KJ_MOL
     }
-    count = len(observed.measured)
     return JointShift(
         {name: float(joint.shift_kj_mol[k]) for name, k in moved.items()},
         {name: float(joint.shift_kj_mol[k] / spread[k]) for name, k in moved.items()},
         joint.length,
         joint.chi_square_before,
         joint.chi_square,
-        count,
-        float(chdtrc(count, joint.chi_square)),
+        observations,
+        float(chdtrc(observations, joint.chi_square)),
     )
 
 
@@ -191,14 +180,19 @@ def _ranked(
     own: Joint | None,
 ) -> tuple[Rival, ...]:
     """Return the study and its rivals in the order of their likelihood."""
-    if not rivals or own is None or deviations is None:
+    if not rivals or own is None:
         return ()
     found = [(study.mechanism.where, study.title, own)]
     for file, rival in rivals.items():
+        doubt = energy_doubt(rival, deviations)
+        if doubt is None:
+            raise StudyError(
+                "the rival has no [doubt], so nothing says how well its energies are known",
+                where=file,
+                mend='give it [doubt], or --deviation "4 kJ/mol", which counts for all studies',
+            )
         observed = observe(rival, measurements.points, measurements.expressions, weighted=True)
-        found.append(
-            (file, rival.title, together(observed, _covariance(rival, observed, deviations)))
-        )
+        found.append((file, rival.title, together(observed, doubt.covariance)))
     found.sort(key=lambda one: -one[2].log_evidence)
     best = found[0][2].log_evidence
     odds = np.exp([one.log_evidence - best for _, _, one in found])
@@ -218,9 +212,25 @@ def _ranked(
 
 
 def _findings(
-    study: StudyLike, curves: Sequence[CurveBeside], rivals: Mapping[str, StudyLike]
+    study: StudyLike,
+    curves: Sequence[CurveBeside],
+    rivals: Mapping[str, StudyLike],
+    doubt: EnergyDoubt | None,
 ) -> list[Finding]:
     findings = []
+    heights = [step.equation for step in study.mechanism.steps if step.height is not None]
+    if doubt is not None and heights:
+        findings.append(
+            Finding(
+                "heights-kept",
+                "note",
+                study.mechanism.where,
+                None,
+                f"the height of {', '.join(heights)} is kept as it is: bands and shifts are those of species and "
+                "located saddle points",
+                "see barrier ([doubt]) for what the deviation of a height does",
+            )
+        )
     for one in curves:
         best = [fit.chance for fit in one.fits if fit.chance is not None]
         if best and max(best) < UNLIKELY:

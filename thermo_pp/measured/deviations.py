@@ -1,16 +1,21 @@
-"""Standard deviations of the electronic energies, as options give them."""
+"""Standard deviations of the electronic energies, as options give them or the study's ``[doubt]`` has them."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import StudyError
+from thermo_pp.measured.results import EnergyDoubt
 from thermo_pp.units import quantity
+
+if TYPE_CHECKING:
+    from thermo_pp.kinetics.doubt.uncertain import Uncertainty
+    from thermo_pp.measured.observed import StudyLike
 
 FloatArray = NDArray[np.float64]
 
@@ -30,10 +35,40 @@ class Deviations:
     minimum_kj_mol: float
     saddle_kj_mol: float
 
-    def covariance(self, names: Sequence[str], saddles: Sequence[str]) -> FloatArray:
-        """Return the covariance of the energies `names`, (kJ/mol)^2."""
+    def of(self, names: Sequence[str], saddles: Sequence[str]) -> EnergyDoubt:
+        """Return the deviations of the energies `names`, independent of each other."""
         spread = [self.saddle_kj_mol if name in saddles else self.minimum_kj_mol for name in names]
-        return np.diag(np.square(np.array(spread, dtype=np.float64)))
+        return EnergyDoubt("options", tuple(names), np.array(spread), np.eye(len(names)))
+
+
+def energy_doubt(study: StudyLike, deviations: Deviations | None) -> EnergyDoubt | None:
+    """Return how sure the energies of a study are.
+
+    Parameters
+    ----------
+    study : StudyLike
+    deviations : Deviations or None
+        As options give them: they stand in place of the study's ``[doubt]``.
+
+    Returns
+    -------
+    EnergyDoubt or None
+        In the order of the energies of the rates; None where nothing says how sure they are.
+    """
+    names = (*study.mechanism.species, *study.mechanism.saddles)
+    if deviations is not None:
+        return deviations.of(names, study.mechanism.saddles)
+    return None if study.uncertainty is None else _of_study(study.uncertainty, names)
+
+
+def _of_study(uncertainty: Uncertainty, names: Sequence[str]) -> EnergyDoubt:
+    places = [uncertainty.names.index(name) for name in names]
+    return EnergyDoubt(
+        uncertainty.where,
+        tuple(names),
+        uncertainty.deviation_kj_mol[places],
+        uncertainty.correlation[np.ix_(places, places)],
+    )
 
 
 def make_deviations(deviation: Any, saddle_deviation: Any) -> Deviations | None:

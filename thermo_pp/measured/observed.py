@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from thermo_pp.conditions import Conditions, Held, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.kinetics.controls import sensitivity
+from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.network import NotLinear
 from thermo_pp.kinetics.shifts import Slope, shifted, slope
@@ -44,6 +45,8 @@ class StudyLike(Protocol):
     def mechanism(self) -> Mechanism: ...  # noqa: D102
     @property
     def species(self) -> Mapping[str, SpeciesModel]: ...  # noqa: D102
+    @property
+    def uncertainty(self) -> Uncertainty | None: ...  # noqa: D102
     @property
     def findings(self) -> tuple[Finding, ...]: ...  # noqa: D102
 

@@ -22,6 +22,40 @@ FloatArray = NDArray[np.float64]
 
 
 @dataclass(frozen=True, eq=False)
+class EnergyDoubt:
+    """How sure the electronic energies of a study are, n of them.
+
+    Attributes
+    ----------
+    origin : str
+        ``"options"``, or the table of the study file.
+    names : tuple of str
+        Species, then saddle points.
+    deviation_kj_mol : shape (n,)
+        Standard deviations.
+    correlation : shape (n, n)
+    """
+
+    origin: str
+    names: tuple[str, ...]
+    deviation_kj_mol: FloatArray
+    correlation: FloatArray
+
+    def __post_init__(self) -> None:
+        freeze_arrays(self)
+
+    @property
+    def covariance(self) -> FloatArray:
+        """Of the energies, (kJ/mol)^2, shape (n, n)."""
+        return np.asarray(self.correlation * np.outer(self.deviation_kj_mol, self.deviation_kj_mol))
+
+    @property
+    def correlated(self) -> bool:
+        """Whether any two go together."""
+        return bool(np.any(self.correlation != np.eye(len(self.names))))
+
+
+@dataclass(frozen=True, eq=False)
 class PointBeside:
     """A measured point and the computed rate constant beside it.
 
@@ -257,6 +291,10 @@ class Comparison:
     Attributes
     ----------
     measurements : Measurements
+    energy_doubt : EnergyDoubt or None
+        What the deviations of everything computed come from; None where none are given.
+    overridden : str or None
+        The table of the study that options stand in place of.
     points : tuple of PointBeside
     curves : tuple of CurveBeside
     states : tuple of StateShift
@@ -271,6 +309,8 @@ class Comparison:
     """
 
     measurements: Measurements
+    energy_doubt: EnergyDoubt | None
+    overridden: str | None
     points: tuple[PointBeside, ...]
     curves: tuple[CurveBeside, ...]
     states: tuple[StateShift, ...]

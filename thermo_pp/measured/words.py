@@ -7,7 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.measured.results import Comparison, CurveBeside, JointShift
+from thermo_pp.measured.results import Comparison, CurveBeside, EnergyDoubt, JointShift
 
 FloatArray = NDArray[np.float64]
 SAME_ODDS = 3.0
@@ -19,6 +19,8 @@ def words(result: Comparison) -> tuple[str, ...]:
     sentences: list[str] = []
     for curve in result.curves:
         sentences += _beside(result, curve)
+    if result.energy_doubt is not None:
+        sentences.append(_energies_known(result.energy_doubt, result.overridden))
     sentences += _alone(result)
     if result.joint is not None:
         sentences += _joint(result.joint)
@@ -75,6 +77,15 @@ def _energies(measured: FloatArray, computed: FloatArray) -> Iterator[str]:
         f"E_a is {_range(measured)} kJ/mol measured and {_range(computed)} kJ/mol computed, {same}; the difference is "
         f"{_range(gap)} kJ/mol."
     )
+
+
+def _energies_known(doubt: EnergyDoubt, overridden: str | None) -> str:
+    how = "correlated" if doubt.correlated else "independent of each other"
+    spread = f"{_range(doubt.deviation_kj_mol)} kJ/mol, {how}"
+    if doubt.origin != "options":
+        return f"The standard deviations of the energies, {spread}, are those of {doubt.origin}."
+    instead = "" if overridden is None else f", not those of {overridden}"
+    return f"The standard deviations of the energies, {spread}, are those of the options{instead}."
 
 
 def _alone(result: Comparison) -> Iterator[str]:

@@ -35,6 +35,9 @@ def keys(result: Comparison, treatment: Treatment) -> dict[str, Any]:
         result.findings,
         treatment,
         measured=result.measurements.file,
+        deviations=None
+        if result.energy_doubt is None
+        else {**vars(result.energy_doubt), "overridden": result.overridden},
         fits=[
             {
                 "name": curve.name,

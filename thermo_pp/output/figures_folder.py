@@ -49,6 +49,7 @@ def _drawn(answers: Answers) -> Iterator[tuple[str, Figure]]:
     yield from _of_rates(answers)
     yield from _of_regimes(answers)
     yield from _of_doubt(answers)
+    yield from _of_measured(answers)
     for course in () if answers.transient is None else answers.transient.courses:
         figure, (ax,) = figures.new_figure()
         figures.courses.draw(ax, course)
@@ -102,6 +103,15 @@ def _of_doubt(answers: Answers) -> Iterator[tuple[str, Figure]]:
             nominal_kj_mol=rate.answer.arrhenius_energy_kj_mol[k],
         )
         yield f"doubt-{definition}", figure
+
+
+def _of_measured(answers: Answers) -> Iterator[tuple[str, Figure]]:
+    if answers.comparison is None:
+        return
+    for number, _ in enumerate(answers.comparison.curves, start=1):
+        figure, (ax,) = figures.new_figure(height_mm=80.0)
+        figures.measured.draw(ax, answers.comparison, number)
+        yield f"measured-{number}", figure
 
 
 def _of_regimes(answers: Answers) -> Iterator[tuple[str, Figure]]:

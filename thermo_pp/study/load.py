@@ -433,7 +433,7 @@ class Study:
         deviation, saddle_deviation : float, text or None
             Standard deviations of the electronic energies of species and of saddle points, kJ/mol
             or a text with a unit. With one alone: `deviation` counts for saddle points too,
-            `saddle_deviation` leaves the others exactly known.
+            `saddle_deviation` leaves the others exactly known. With neither, those of ``[doubt]``.
         rivals : iterable of Study
             Ranked with this one by the likelihood of the measurements.
 

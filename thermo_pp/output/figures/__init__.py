@@ -3,15 +3,17 @@
 >>> from thermo_pp import figures
 >>> figure, (ax,) = figures.new_figure()
 
-``profile`` levels of paths, ``rates`` Arrhenius and Eyring plots, ``populations`` and ``controls`` over
-temperature, ``regimes`` the map, ``courses`` over time, ``doubt`` the distribution of E_a. `save` writes
-SVG, PDF or PNG, the same bytes in every run. matplotlib is imported when something is drawn.
+``profile`` levels of paths, ``rates`` Arrhenius and Eyring plots, ``measured`` against computed,
+``populations`` and ``controls`` over temperature, ``regimes`` the map, ``courses`` over time, ``doubt``
+the distribution of E_a. `save` writes SVG, PDF or PNG, the same bytes in every run. matplotlib is
+imported when something is drawn.
 """
 
 from thermo_pp.output.figures import (
     controls,
     courses,
     doubt,
+    measured,
     populations,
     profile,
     rates,
@@ -27,6 +29,7 @@ __all__ = [
     "controls",
     "courses",
     "doubt",
+    "measured",
     "new_figure",
     "populations",
     "profile",
