@@ -6,7 +6,6 @@ from collections.abc import Iterator, Sequence
 
 from thermo_pp.mechanism import Step
 from thermo_pp.names import EnergyUnit
-from thermo_pp.output.barrier import all_words
 from thermo_pp.output.barrier_tables import SAFETY
 from thermo_pp.output.document.geometries import Shape, imaginary_modes, listing, shapes
 from thermo_pp.output.document.methods import methods
@@ -69,9 +68,10 @@ def contents(
 
 
 def _words(answers: Answers) -> tuple[str, ...]:
-    own = all_words(answers.effective, answers.selectivity, answers.regimes, answers.doubt)
-    others = [part for part in (answers.transient, answers.flow) if part is not None]
-    return tuple(" ".join(words) for words in (own, *(part.words for part in others)) if words)
+    """Return a paragraph of every answer."""
+    rates = (answers.effective, answers.selectivity, answers.regimes, answers.doubt)
+    told = [part for part in (*rates, answers.transient, answers.flow) if part is not None]
+    return tuple(" ".join(part.words) for part in told if part.words)
 
 
 def _some(tables: dict[str, Sequence[Block]], *names: str) -> list[Block]:
