@@ -1,6 +1,6 @@
 """Remake what follows from the model of the study file: its JSON Schema and the table of ``study-file.md``.
 
-Run it after a change of ``thermo_pp/study/keys.py`` (a test fails until then): ``python docs/remake_study_file.py``.
+Run it after a change of ``thermo_pp/study/keys/`` (a test fails until then): ``python docs/remake_study_file.py``.
 """
 
 from __future__ import annotations

@@ -55,6 +55,9 @@ INSIDE: dict[str, tuple[str, ...]] = {
         "alike", "hands", "checks", "block", "nearest", "levels", "distribution", "model",
         "found", "results",
     ),
+    "study/keys": (
+        "base", "treatment", "conditions", "energies", "structure", "species", "rate_laws", "steps", "questions",
+    ),
     "output": (
         "tables", "columns", "definitions", "notes", "plain", "delimited", "parts", "latex", "html", "workbook",
         "json_text", "files",
@@ -135,10 +138,12 @@ def test_order_inside_a_folder(folder: str) -> None:
     files = sorted((PACKAGE / folder).glob("*.py"))
     unknown = {path.stem for path in files} - set(order)
     assert not unknown, f"not in the table of {folder}/: {unknown}"
+    inside = tuple(folder.split("/"))
+    depth = len(inside)
     for path in files:
         for other in imported(path):
-            if other[0] == folder and len(other) > 1:
-                assert order.index(other[1]) < order.index(path.stem), f"{path} imports {other}"
+            if other[:depth] == inside and len(other) > depth:
+                assert order.index(other[depth]) < order.index(path.stem), f"{path} imports {other}"
 
 
 def test_no_circle_inside_any_folder() -> None:

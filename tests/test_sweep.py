@@ -69,7 +69,7 @@ def test_no_output_is_read_again(monkeypatch: pytest.MonkeyPatch) -> None:
     def refuse(*_: Any) -> None:
         raise AssertionError("an output was read again")
 
-    monkeypatch.setattr("thermo_pp.study.members.read_source", refuse)
+    monkeypatch.setattr("thermo_pp.study.outputs.read_source", refuse)
     found = sweep(study, ["treatment.low_modes"], [["harmonic"], ["raised"]], jobs=1)
     assert [row.error for row in found.rows] == [None, None]
     first, second = (row.rates[0].rate_constant[0] for row in found.rows)
