@@ -22,6 +22,8 @@ from thermo_pp.kinetics.doubt.sampling import sample
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.scaled import Ordinary
+from thermo_pp.output import barrier_tables
+from thermo_pp.output.tables import Table
 from thermo_pp.study.load import Study
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -314,3 +316,16 @@ def test_levels_and_choices_stand_beside(tmp_path: Path) -> None:
         assert np.exp(one.answers["pool"].log_rate[0]) == pytest.approx(own.rate_constant[0])
     choices = {one.choice for one in result.alternatives}
     assert {"soft modes", "onset", "symmetry number", "scale factors"} <= choices
+
+
+@pytest.mark.parametrize(("deviation", "shown"), [(5.0, (2, 0)), (0.5, (3, 1)), (1e-4, (4, 2))])
+def test_digits_follow_the_doubt(tmp_path: Path, deviation: float, shown: tuple[int, int]) -> None:
+    """Digits of k, decimals of E_a: the standard deviation of ln k is 4.5, 0.45 or 9e-5."""
+    study = doubted(tmp_path, deviation=deviation, saddle=deviation, samples=100)
+    blocks = barrier_tables.tables(
+        study.effective(), study.treatment, "kJ/mol", doubt=study.doubt()
+    )
+    table = next(block for block in blocks if isinstance(block, Table))
+    columns = {column.quantity: column for column in table.columns}
+    assert (columns["k"].digits, columns["Eₐ"].decimals) == shown
+    assert any("[doubt]" in note for note in table.notes)

@@ -143,11 +143,10 @@ def barrier(
             return found
         found = [] if transient is None else courses.time_course_tables(transient, unit)
         found += [] if flow is None else courses.flow_tables(flow, unit, people=True)
-        beside = [] if doubt is None else doubts.doubt_tables(doubt, unit)
         return [
             *found,
             *barrier_tables.tables(
-                result, treatment, unit, loaded.levels, regimes, selectivity, beside
+                result, treatment, unit, loaded.levels, regimes, selectivity, doubt
             ),
         ]
 

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.conditions import Treatment
+from thermo_pp.kinetics.doubt.results import Doubt
 from thermo_pp.kinetics.product_ratio import Selectivity
 from thermo_pp.kinetics.regime_map import Regimes
 from thermo_pp.kinetics.results import Approximation, EffectiveRate, Rate, Window
@@ -22,6 +23,7 @@ from thermo_pp.output.barrier import (
     tunnelling_cells,
 )
 from thermo_pp.output.definitions import TITLES
+from thermo_pp.output.doubt import as_certain, doubt_tables
 from thermo_pp.output.limits import constant_table, limits_table
 from thermo_pp.output.notes import ALL_DIGITS, kelvin, of_treatment, some, stamp, usual
 from thermo_pp.output.regimes import tables as regimes_tables
@@ -60,7 +62,7 @@ def tables(
     levels: Sequence[str] = (),
     regimes: Regimes | None = None,
     selectivity: Selectivity | None = None,
-    after: Sequence[Block] = (),
+    doubt: Doubt | None = None,
 ) -> list[Block]:
     """Return the tables for people and the closing paragraph.
 
@@ -74,8 +76,8 @@ def tables(
         The levels of theory in words.
     regimes : Regimes or None
     selectivity : Selectivity or None
-    after : sequence of Block
-        What stands after the closing paragraph.
+    doubt : Doubt or None
+        Its tables stand after the closing paragraph; digits follow its standard deviations.
     """
     rates = rates_of(effective)
     blocks: list[Block] = []
@@ -83,7 +85,8 @@ def tables(
         title = f"{TITLES[name]}: {effective.net_reaction}"
         notes = _about(rate, effective)
         notes[:0] = [] if number else _about_all(effective)
-        blocks.append(_rate(rate, effective, title, unit, notes))
+        table = _rate(rate, effective, title, unit, notes)
+        blocks.append(table if doubt is None else as_certain(table, doubt.rates.get(name), unit))
         if effective.constant is not None or rate.collider_orders:
             beside = constant_table(rate, effective, f"What stays constant: {TITLES[name]}", unit)
             blocks += [] if beside is None else [beside]
@@ -99,7 +102,8 @@ def tables(
     blocks.append(steps_table(effective, [usual(effective.temperature_k)], unit, people=True))
     about = [of_treatment(treatment), *levels, stamp(), ALL_DIGITS]
     told = all_words(effective, selectivity, regimes)
-    shown = [*about_all(blocks, about), " ".join(told), *about_all(after, about)]
+    after = [] if doubt is None else about_all(doubt_tables(doubt, unit), about)
+    shown = [*about_all(blocks, about), " ".join(told), *after]
     return [*shown, SAFETY]
 
 

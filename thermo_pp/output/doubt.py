@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
+from math import floor, log10
 from typing import Any
 
 import numpy as np
@@ -12,6 +14,7 @@ from thermo_pp.names import Definition, EnergyUnit
 from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.notes import kelvin, some, usual
 from thermo_pp.output.tables import Block, Cell, Column, Table, defined, energy_column, in_unit
+from thermo_pp.units import ENERGY_PER_KJ_MOL, GAS_J_MOL_K
 
 SHOWN_TEMPERATURES = 5
 """How many temperatures are shown at most."""
@@ -73,6 +76,37 @@ def _rate_keys(rate: RateDoubt) -> dict[str, Any]:
         },
         "samples": spread,
     }
+
+
+def as_certain(table: Table, rate: RateDoubt | None, unit: EnergyUnit) -> Table:
+    """Return a table of rates with as many digits as the doubt leaves a meaning.
+
+    Energies to the second digit of their smallest standard deviation over temperature, the rate
+    constant to the second digit of its relative one; never more than the table has.
+    """
+    if rate is None:
+        return table
+    slope = rate.first_order_energy_deviation_kj_mol
+    energy = float(np.min(slope)) * ENERGY_PER_KJ_MOL[unit]
+    barrier = float(np.min(rate.gibbs_deviation_kj_mol)) * ENERGY_PER_KJ_MOL[unit]
+    over_rt = rate.first_order_log_deviation / rate.gibbs_deviation_kj_mol
+    entropy = GAS_J_MOL_K * float(np.min(slope * over_rt))
+    relative = float(np.min(rate.first_order_log_deviation))
+    if not all(0.0 < value < np.inf for value in (energy, barrier, entropy, relative)):
+        return table
+    decimals = {"Eₐ": energy, "H‡": energy, "H‡°": energy, "G‡": barrier, "G‡°": barrier}
+    decimals |= {"S‡": entropy, "S‡°": entropy}
+    columns = []
+    for column in table.columns:
+        if column.quantity in decimals and column.decimals is not None:
+            kept = 1 - floor(log10(decimals[column.quantity]))
+            column = replace(column, decimals=min(max(kept, 0), column.decimals))
+        elif column.quantity == "k" and column.digits is not None:
+            kept = 2 - min(floor(log10(relative)), 0)
+            column = replace(column, digits=min(kept, column.digits))
+        columns.append(column)
+    note = "Digits of k, Eₐ, H‡, S‡ and G‡ as their standard deviations by [doubt] leave them."
+    return replace(table, columns=columns, notes=[*table.notes, note])
 
 
 def doubt_tables(result: Doubt, unit: EnergyUnit) -> list[Block]:

@@ -136,8 +136,7 @@ def _barrier(answers: Answers, unit: EnergyUnit) -> Shown | None:
         people += courses.flow_tables(answers.flow, unit, people=True)
         wide += courses.flow_tables(answers.flow, unit, people=False)
     regime, ratio = answers.regimes, answers.selectivity
-    beside = [] if answers.doubt is None else doubt.doubt_tables(answers.doubt, unit)
-    people += barrier_tables.tables(found, treatment, unit, levels, regime, ratio, beside)
+    people += barrier_tables.tables(found, treatment, unit, levels, regime, ratio, answers.doubt)
     if any(found.rates.values()):
         wide = [*barrier.wide(found, treatment, unit, levels), *wide]
     else:
