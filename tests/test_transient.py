@@ -14,6 +14,8 @@ from declared_study import edited, load
 from thermo_pp.cli import main
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.courses import TimeCourse
+from thermo_pp.output.courses import time_course_tables
+from thermo_pp.output.tables import Table
 from thermo_pp.study.load import Study
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -426,3 +428,24 @@ def test_replace_keeps_results_frozen(tmp_path: Path) -> None:
     [course] = second(tmp_path).transient(times_s=[1.0]).courses
     with pytest.raises(ValueError, match="read-only"):
         replace(course).concentration_mol_l["A"][0] = 1.0  # type: ignore[index]
+
+
+def test_products_share_by_rates_first_and_by_stability_last(tmp_path: Path) -> None:
+    """B is formed three times as fast as C, which is the more stable one: closed forms at both ends."""
+    members = [("A", "CO", 0.0, 100.0), ("B", "CO", -20.0, 100.0), ("C", "CO", -23.0, 100.0)]
+    steps = [("A = B", 'rate = "3 s^-1"'), ("A = C", 'rate = "1 s^-1"')]
+    conditions = f'temperatures = [{T}]\ninitial = {{ A = "1 mol/L" }}'
+    question = 'reactant = "A"\nproduct = ["B", "C"]'
+    made = study(tmp_path, conditions, members, steps, question)
+    [early] = made.transient(times_s=[1e-4]).courses
+    assert early.product_share["B"] == pytest.approx([0.75], rel=1e-6)
+    [course] = made.transient().courses
+    b, c = course.product_share["B"], course.product_share["C"]
+    assert b[1:] + c[1:] == pytest.approx(1.0, abs=1e-12)
+    ratio = np.exp(3000.0 / (GAS_J_MOL_K * T))
+    assert c[-1] == pytest.approx(ratio / (1.0 + ratio), rel=1e-6)
+    table = next(b for b in time_course_tables(made.transient(), "kJ/mol")
+                 if isinstance(b, Table) and b.title.startswith("Products"))  # fmt: skip
+    assert table.rows[-1][1:] == pytest.approx([b[-1], c[-1], b[-1] - c[-1]])
+    only = study(tmp_path, conditions, members, steps, 'reactant = "A"\nproduct = "B"')
+    assert only.transient().courses[0].product_share == {}

@@ -61,6 +61,9 @@ class TimeCourse:
         The same for the rate.
     quasi_steady_energy_kj_mol : shape (t,) or None
         E_a of that rate at the composition of the other species.
+    product_share : mapping of str to shape (t,)
+        Of what has been formed of all products since the start, the share of each; nan before any
+        is there, empty where fewer than two compete.
     """
 
     temperature_k: float
@@ -82,6 +85,7 @@ class TimeCourse:
     quasi_steady_ratio: Mapping[str, FloatArray] = field(default_factory=dict)
     quasi_steady_rate_ratio: FloatArray | None = None
     quasi_steady_energy_kj_mol: FloatArray | None = None
+    product_share: Mapping[str, FloatArray] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         freeze_arrays(self)

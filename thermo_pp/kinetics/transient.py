@@ -47,6 +47,7 @@ def transient(
     *,
     times_s: Sequence[float] = (),
     temperature_k: Sequence[float] | None = None,
+    products: Sequence[str] = (),
 ) -> Transient:
     """Return the time courses of a study from its initial concentrations.
 
@@ -58,6 +59,8 @@ def transient(
         time scale.
     temperature_k : sequence of float or None
         The study's unless given.
+    products : sequence of str
+        Whose shares are followed; those of the mechanism unless given.
 
     Raises
     ------
@@ -75,7 +78,7 @@ def transient(
     with threadpool_limits(1), np.errstate(all="ignore"):
         starts = systems(study, np.array(kelvin))
         courses = tuple(
-            _course(study, start, t, followed, forming, times_s)
+            _course(study, start, t, followed, forming, times_s, products or mechanism.products)
             for start, t in zip(starts, kelvin, strict=True)
         )
     result = Transient(followed, forming, courses)
@@ -90,6 +93,7 @@ def _course(
     followed: str,
     forming: bool,
     times_s: Sequence[float],
+    products: Sequence[str],
 ) -> TimeCourse:
     whole, where = start.system, f"{study.mechanism.where} [conditions] initial"
     there = whole.present(start.concentration)
@@ -140,12 +144,26 @@ def _course(
         next_lifetime_s=float(lives[1]) if len(lives) > 1 else np.nan,
         used=_used(system, start, now, run),
         steps=run.steps,
+        product_share=_product_share(names, run.concentration - now, products),
     )
     sign = 1.0 if forming else -1.0
     if followed in names:
         course = _with_rate(course, clocked, run, names.index(followed), sign)
     resting = [name for name in study.conditions.quasi_steady if name in names]
     return _with_quasi_steady(course, system, run, resting, followed, sign) if resting else course
+
+
+def _product_share(
+    names: Sequence[str], formed: FloatArray, products: Sequence[str]
+) -> dict[str, FloatArray]:
+    """Return the share of each product in what has been formed of all of them, (t, names)."""
+    competing = [name for name in products if name in names]
+    if len(competing) < 2:
+        return {}
+    columns = formed[:, [names.index(name) for name in competing]]
+    total = columns.sum(axis=1)
+    shares = np.where(total > 0.0, columns.T / np.where(total > 0.0, total, 1.0), np.nan)
+    return dict(zip(competing, shares, strict=True))
 
 
 def _with_clock(system: System) -> System:

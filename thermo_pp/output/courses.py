@@ -77,7 +77,8 @@ def time_course_tables(result: Transient, unit: EnergyUnit) -> list[Block]:
             )
         title = f"Time course at {kelvin(course.temperature_k)}"
         blocks.append(Table(title, columns, rows, notes))
-        blocks += [*_quasi_steady(course, shown, unit), *_control(course)]
+        blocks += [*_products(course, shown), *_quasi_steady(course, shown, unit)]
+        blocks += _control(course)
     return [*blocks, " ".join(result.words)]
 
 
@@ -109,6 +110,11 @@ def time_course_wide(result: Transient, unit: EnergyUnit) -> list[Block]:
             for species, values in family.items()
             for k, time in enumerate(course.time_s)
         ]
+        controls += [
+            [course.temperature_k, float(time), "share of products", name, defined(share[k])]
+            for name, share in course.product_share.items()
+            for k, time in enumerate(course.time_s)
+        ]
         ratios: dict[str, FloatArray] = dict(course.quasi_steady_ratio)
         if course.quasi_steady_rate_ratio is not None:
             ratios["rate"] = course.quasi_steady_rate_ratio
@@ -119,6 +125,29 @@ def time_course_wide(result: Transient, unit: EnergyUnit) -> list[Block]:
         ]
     head = [Column("T", "K"), Column("t", "s"), Column("what"), Column("species"), Column("value")]
     return [Table("time course", columns, rows), Table("control over time", head, controls)]
+
+
+def _products(course: TimeCourse, shown: Sequence[int]) -> list[Block]:
+    """Return how the products share what has been formed, and the excess of the first of two."""
+    shares = course.product_share
+    if not shares:
+        return []
+    columns = [Column("t", "s", "$t$", digits=3)]
+    columns += [Column(f"share of {name}", decimals=4, whole=True) for name in shares]
+    first, second = list(shares.values())[:2]
+    pair = len(shares) == 2
+    columns += [Column("excess", decimals=4)] if pair else []
+    rows: list[list[Cell]] = []
+    for k in shown:
+        row: list[Cell] = [float(course.time_s[k])]
+        row += [defined(share[k]) for share in shares.values()]
+        row += [defined(first[k] - second[k])] if pair else []
+        rows.append(row)
+    note = "Shares of what has been formed of all products since the start."
+    notes = (
+        [note, f"excess: of {next(iter(shares))}, the difference of the two."] if pair else [note]
+    )
+    return [Table(f"Products at {kelvin(course.temperature_k)}", columns, rows, notes)]
 
 
 def flow_tables(result: FlowState, unit: EnergyUnit, *, people: bool) -> list[Block]:

@@ -527,7 +527,8 @@ class Study:
         """Return the time courses; see `thermo_pp.kinetics.transient.transient`."""
         from thermo_pp.kinetics.transient import transient
 
-        return transient(self, **options)
+        asked = self.selectivity_question
+        return transient(self, products=() if asked is None else asked.products, **options)
 
     def flow(self, **options: Any) -> FlowState:
         """Return the steady states of the flow; see `thermo_pp.kinetics.flow.flow`."""
