@@ -15,16 +15,16 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.conditions import Conditions, Held, Treatment
-from thermo_pp.errors import Finding, StudyError
+from thermo_pp.conditions import Held
+from thermo_pp.errors import StudyError
+from thermo_pp.kinetics.asked import StudyLike as RatesOf
 from thermo_pp.kinetics.controls import sensitivity
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.network import NotLinear
 from thermo_pp.kinetics.shifts import Slope, shifted, slope
 from thermo_pp.measured.rows import Expression, Point, Row
-from thermo_pp.mechanism import Mechanism, write_sum
-from thermo_pp.species import SpeciesModel
+from thermo_pp.mechanism import write_sum
 from thermo_pp.units import GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
@@ -32,23 +32,13 @@ GRID = 15
 """At how many temperatures an expression is set against the computed curve."""
 
 
-class StudyLike(Protocol):
+class StudyLike(RatesOf, Protocol):
     """What a comparison needs of a study."""
 
     @property
     def title(self) -> str: ...  # noqa: D102
     @property
-    def treatment(self) -> Treatment: ...  # noqa: D102
-    @property
-    def conditions(self) -> Conditions: ...  # noqa: D102
-    @property
-    def mechanism(self) -> Mechanism: ...  # noqa: D102
-    @property
-    def species(self) -> Mapping[str, SpeciesModel]: ...  # noqa: D102
-    @property
     def uncertainty(self) -> Uncertainty | None: ...  # noqa: D102
-    @property
-    def findings(self) -> tuple[Finding, ...]: ...  # noqa: D102
 
 
 @dataclass(frozen=True, eq=False)
