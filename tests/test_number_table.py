@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from thermo_pp.readers.number_table import decimal_table, number_table
+from thermo_pp.readers.number_table import decimal_list, decimal_table, number_table
 
 ROWS = 40
 
@@ -65,3 +65,29 @@ def test_number_table() -> None:
     assert number_table(b"1 2", 3) is None
     assert number_table(b"1 nan 2", 3) is None
     assert number_table(b"1 *** 2", 3) is None
+
+
+@pytest.mark.parametrize("decimals", [1, 8])
+def test_a_list_of_decimals_is_what_float_makes_of_its_words(decimals: int) -> None:
+    values = np.random.default_rng(8).normal(0.0, 3.0, 50)
+    words = [f"{value:.{decimals}f}" for value in values]
+    words[3], words[4], words[17] = "0.", "-12.", "0."
+    found = decimal_list(",".join(words), 50)
+    assert found is not None
+    assert np.array_equal(found, [float(word) for word in words])
+    assert decimal_list(",".join(words), 49) is None
+
+
+@pytest.mark.parametrize("wrong", " -.*xe+\n\t,0\x00\xff")
+def test_a_changed_character_of_a_list_is_seen_or_read(wrong: str) -> None:
+    text = ",".join(f"{value:.5f}" for value in (-0.25, 0.75, 13.5, -0.00001, 2.0))
+    for at in range(len(text)):
+        damaged = text[:at] + wrong + text[at + 1 :]
+        found = decimal_list(damaged, 5)
+        if found is not None:
+            assert np.array_equal(found, [float(word) for word in damaged.split(",")]), damaged
+
+
+@pytest.mark.parametrize("text", ["", "1,2", "nan,0.5", "0.5,1e3", "0.12345678901234567890,0.1"])
+def test_another_list_is_left_to_others(text: str) -> None:
+    assert decimal_list(text, text.count(",") + 1) is None

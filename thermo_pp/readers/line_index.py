@@ -26,8 +26,8 @@ class LineIndex:
 
     def __init__(self, data: bytes) -> None:
         self._data = data
-        self.ends: NDArray[np.intp] = np.flatnonzero(np.frombuffer(data, np.uint8) == _LINE_END)
-        whole = int(np.searchsorted(self.ends, len(data) - _KEY))  # those with a whole key behind
+        self.ends: NDArray[np.intp] = (np.frombuffer(data, np.uint8) == _LINE_END).nonzero()[0]
+        whole = int(self.ends.searchsorted(len(data) - _KEY))  # those with a whole key behind
         keys = np.ndarray((max(len(data) - _KEY + 1, 0),), "<u8", data, 0, (1,))
         self._keys = keys[self.ends[:whole] + 1]
         self._last_ends: list[int] = self.ends[whole:].tolist()
@@ -35,7 +35,7 @@ class LineIndex:
 
     def line_number(self, at: int) -> int:
         """Return the 1-based line number of a byte offset."""
-        return int(np.searchsorted(self.ends, at)) + 1
+        return int(self.ends.searchsorted(at)) + 1
 
     def places(self, mark: bytes) -> list[int]:
         """Return every offset of `mark`, in the whole text; one that begins with a line end costs no search."""
@@ -66,7 +66,7 @@ class LineIndex:
 
         Lines in the last eight bytes of the text are left out.
         """
-        lines = np.flatnonzero(self._begin_with(mark)[:-1])
+        lines = self._begin_with(mark)[:-1].nonzero()[0]
         below = self._keys[lines + 1].astype(np.uint8)
         for byte in besides:
             lines, below = lines[below != byte], below[below != byte]
@@ -76,7 +76,7 @@ class LineIndex:
     def _places(self, mark: bytes) -> list[int]:
         if mark[0] != _LINE_END:
             return _everywhere(self._data, mark)
-        found: list[int] = self.ends[np.flatnonzero(self._begin_with(mark))].tolist()
+        found: list[int] = self.ends[self._begin_with(mark).nonzero()[0]].tolist()
         found += self._last_ends
         starts = self._data.startswith
         return [at for at in found if starts(mark, at)]

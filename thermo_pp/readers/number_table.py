@@ -7,7 +7,7 @@ import warnings
 import numpy as np
 from numpy.typing import NDArray
 
-_DOT, _MINUS, _BLANK, _ZERO, _LINE_END = b".- 0\n"
+_DOT, _MINUS, _BLANK, _ZERO, _LINE_END, _COMMA = b".- 0\n,"
 _MOST_DIGITS = 15
 """Of a whole number that a float holds without rounding."""
 
@@ -25,6 +25,34 @@ def number_table(data: bytes, count: int) -> NDArray[np.float64] | None:
         except (DeprecationWarning, ValueError):
             return None
     return found if len(found) == count and bool(np.isfinite(found).all()) else None
+
+
+def decimal_list(text: str, count: int) -> NDArray[np.float64] | None:
+    """Return the `count` decimal numbers between the commas of a text, all with as many decimals or none (``0.``).
+
+    None where there is anything else in it or another count. Their digits are read as whole numbers and divided once,
+    which gives what `float` gives in less than half the time.
+    """
+    decimals = max(len(number.partition(".")[2]) for number in text[:1000].split(",")[:20])
+    if not 0 < decimals < _MOST_DIGITS:
+        return None
+    whole = f"{text},".replace(".,", f".{decimals * '0'},")
+    bare = whole[:-1].replace(".", "")
+    characters = np.frombuffer(whole.encode("ascii", "replace"), np.uint8)
+    dots, commas = ((characters == sign).nonzero()[0] for sign in (_DOT, _COMMA))
+    if len(dots) != count or len(commas) != count or bool((characters <= _BLANK).any()):
+        return None
+    if bool((commas - dots != decimals + 1).any()):
+        return None
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")  # for what is no number
+        try:
+            found = np.fromstring(bare, dtype=np.int64, sep=",")
+        except (DeprecationWarning, ValueError):
+            return None
+    if len(found) != count or int(np.abs(found).max()) >= 10**_MOST_DIGITS:
+        return None
+    return found / 10.0**decimals
 
 
 def decimal_table(lines: NDArray[np.uint8]) -> tuple[bytes, NDArray[np.float64]] | None:

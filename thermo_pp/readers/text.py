@@ -96,6 +96,19 @@ class Text:
         """Tell whether `mark` stands anywhere; see `holds`."""
         return self.last(mark) >= 0
 
+    def line_match(self, pattern: re.Pattern[bytes], mark: bytes) -> re.Match[bytes] | None:
+        """Return the first match of `pattern` where `mark` stands, with which all its matches begin; None without one.
+
+        A line that begins with the part counts as in it.
+        """
+        at = self.find(mark, max(self.start - 1, 0))
+        while at >= 0:
+            match = pattern.match(self.data, at, self.end)
+            if match is not None:
+                return match
+            at = self.find(mark, at + 1)
+        return None
+
     def need(
         self, mark: bytes, start: int | None = None, *, lacking: str, mend: str = CUT_SHORT
     ) -> int:

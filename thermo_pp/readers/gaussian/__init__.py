@@ -45,9 +45,7 @@ _AGREE = 2e-7
 
 def sniff(head: bytes) -> bool:
     """Tell whether `head`, the first 64 KiB of a file, is this program's."""
-    if not holds(head, b"Gaussian, Inc."):
-        return False
-    return _BANNER.search(head.replace(b"\r\n", b"\n")) is not None
+    return holds(head, b"Gaussian, Inc.") and _BANNER.search(head) is not None
 
 
 def read(source: Source) -> Calculation:
@@ -59,7 +57,7 @@ def read(source: Source) -> Calculation:
         An error termination, no normal end, an SCF that did not converge, an energy that is missing
         or not known to this reader, values printed twice that do not agree, anything damaged.
     """
-    text = Text(plain_lines(source))
+    text = Text(plain_lines(source)).indexed()
     found = steps.steps(text)
     chosen = choice.choose(text, found)
     shape, energy, modes = chosen.shape, chosen.energy, chosen.modes
@@ -77,7 +75,7 @@ def read(source: Source) -> Calculation:
         masses, origin, place = geometry.masses(chosen.base, shape)
         if place is not None:
             at["masses_u"] = place
-    state = chosen.base.state()
+    state = chosen.base.state
     if state is not None:
         at["charge"] = at["multiplicity"] = state[2]
     if energy is not None and level is not None:
@@ -100,7 +98,7 @@ def read(source: Source) -> Calculation:
         )
     if chosen.run is not None:
         at["optimised"] = chosen.run.at
-    version = _VERSION.search(text.data)
+    version = text.line_match(_VERSION, b"\n Gaussian ")
     if version is not None:
         at["program_version"] = version.start() + 1
     doubts = _doubts(chosen)

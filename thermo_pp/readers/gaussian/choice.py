@@ -210,7 +210,7 @@ def _check_repulsion(step: Step, shape: Geometry, at: int) -> None:
     Not done where the electrons do not make up for the nuclei (effective core potentials, valence methods, a part of
     the molecule) or point charges count too.
     """
-    text, state = step.text, step.state()
+    text, state = step.text, step.state
     place = text.data.rfind(_REPULSION, shape.at, at)
     counted = None if place < 0 else _ELECTRONS.search(text.data, max(place - 300, shape.at), place)
     if counted is None or state is None or _CHARGES.search(step.route) is not None:

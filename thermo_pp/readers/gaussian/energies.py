@@ -51,6 +51,7 @@ _ROUTE_DETAIL = re.compile(
 _DOUBLE_HYBRID = b" E2("
 _DOUBLE = re.compile(rb"E2\([^)]+\)" + _VALUE + rb" +E\(([^)]+)\)" + _VALUE)
 _SCALED = b" ScalE2="
+_SETTINGS = b"\n IExCor="
 _NOT_SCALED = b"=  1.000000  1.000000"
 _ONIOM = b"ONIOM: extrapolated energy ="
 _UNCONVERGED = b"Convergence criterion not met"
@@ -142,7 +143,8 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
             )
         value = part.number(oniom + len(_ONIOM), "the ONIOM energy")
         return Energy(value, "ONIOM", oniom, scf_at, name)
-    double = part.last(_DOUBLE_HYBRID) if _may_be_double(step) else -1
+    scaled = _is_scaled(step)
+    double = part.last(_DOUBLE_HYBRID) if scaled is not False else -1
     if double >= 0:
         found = _DOUBLE.search(part.data, double, part.end)
         if found is None:
@@ -150,7 +152,7 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
         return Energy(_number(found.group(3)), "DFT", double, scf_at, name)
     reference = plain(name)
     wanted = _AS_LABELS.get(method or "", method or "")
-    if reference != "HF" and step.part.has(_SCALED) and _may_be_double(step):
+    if reference != "HF" and scaled:
         raise part.error(
             scf_at,
             "a functional with scaled MP2, but no energy of a double hybrid (looked for ' E2(')",
@@ -162,7 +164,8 @@ def energy(step: Step, index: int, places: list[int]) -> Energy:
             return Energy(best[0], wanted if wanted in RANK else best[2], best[1], scf_at, name)
         return Energy(scf, "HF", scf_at, scf_at, name)
     label = "semiempirical" if _SEMIEMPIRICAL.fullmatch(reference) else "DFT"
-    if label == "DFT" and step.part.has(b" DFT=F ") and not step.part.has(b" DFT=T "):
+    used = [step.text.line(at + 1) for at in step.part.all(_SETTINGS)]
+    if label == "DFT" and used and all(" DFT=F " in line for line in used):
         raise part.error(
             scf_at,
             f"an energy of {name!r}, but no functional is used (DFT=F)",
@@ -221,10 +224,10 @@ def _last_in_text(part: Text, mark: bytes) -> int:
     return at
 
 
-def _may_be_double(step: Step) -> bool:
-    """Tell whether a functional may have an MP2 part: the settings say by how much it is scaled."""
-    scaled = step.part.find(_SCALED)
-    return scaled < 0 or step.text.data.find(_NOT_SCALED, scaled, scaled + 40) < 0
+def _is_scaled(step: Step) -> bool | None:
+    """Tell whether a functional has an MP2 part, which the settings scale; None where they do not say."""
+    at = step.part.all(_SCALED)[:1]
+    return None if not at else step.text.data.find(_NOT_SCALED, at[0], at[0] + 40) < 0
 
 
 def _refuse(step: Step, part: Text, method: str | None) -> None:

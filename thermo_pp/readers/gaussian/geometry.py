@@ -53,7 +53,7 @@ def block(text: Text, heading: int) -> Geometry:
     lines = text.data.count(b"\n", first, end)
     words = text.data[first:end].split()
     try:
-        table = np.array([float(word) for word in words]).reshape(lines, 6)
+        table = np.array(list(map(float, words))).reshape(lines, 6)
         whole = bool(np.all(np.isfinite(table)))
     except ValueError:
         whole = False

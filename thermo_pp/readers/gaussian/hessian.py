@@ -16,7 +16,7 @@ from thermo_pp.formulas.frames import kabsch
 from thermo_pp.readers.gaussian.geometry import Geometry
 from thermo_pp.readers.gaussian.steps import Archive
 from thermo_pp.readers.joined_hessian import square
-from thermo_pp.readers.number_table import number_table
+from thermo_pp.readers.number_table import decimal_list
 
 FloatArray = NDArray[np.float64]
 
@@ -50,8 +50,8 @@ def hessian(
     if places is None:
         return None
     size = 3 * len(shape.numbers)
-    triangle = archive.fields[place + 2].replace(",", " ").encode()
-    matrix = square(number_table(triangle, size * (size + 1) // 2), len(shape.numbers))
+    triangle = decimal_list(archive.fields[place + 2], size * (size + 1) // 2)
+    matrix = square(triangle, len(shape.numbers))
     if matrix is None or not _fits(matrix, masses_u, places, wavenumbers_cm):
         return None
     here = shape.positions_angstrom - shape.positions_angstrom.mean(axis=0)

@@ -10,7 +10,7 @@ from thermo_pp.readers.gaussian.steps import Step
 from thermo_pp.readers.text import Text
 
 _BASIS = re.compile(rb"\n Standard basis: ([^\n]*)")
-_GENERAL = re.compile(rb"\n General basis read from cards:")
+_GENERAL = b"\n General basis read from cards:"
 _COMPONENTS = re.compile(r" *\(\d+[DdCc], *\d+[FfCc]\) *$")
 _ROUTE_BASIS = re.compile(r"/([^\s/:]+)")
 _GRID = re.compile(rb"\n IRadAn= *(\d+)")
@@ -18,6 +18,7 @@ _ROUTE_GRID = re.compile(
     r"(?:integral|int)\s*[=(][^ ]*?(?:grid *= *)?(ultrafine\w*|superfine\w*|fine\w*|sg1\w*|coarse\w*|-?\d{4,})",
     re.IGNORECASE,
 )
+_DISPERSION_MARK = b"R6Disp: "
 _DISPERSION = re.compile(rb"R6Disp: +(?:Grimme-)?(\S+?) Dispersion energy")
 _ROUTE_DISPERSION = re.compile(r"empiricaldispersion|(?<![\w])em=", re.IGNORECASE)
 _WITH_DISPERSION = re.compile(r"(?:97X?|PLYP|PE|\w\w)D[23]?(?![\w])")
@@ -74,13 +75,13 @@ def _basis(step: Step, at: dict[str, int]) -> str | None:
     if step.archive is not None and step.archive.basis:
         at["basis"] = step.archive.at
         return step.archive.basis
-    match = _BASIS.search(step.text.data, step.start, step.end)
+    match = step.part.line_match(_BASIS, b"\n Standard basis: ")
     if match is not None:
         at["basis"] = match.start() + 1
         return _COMPONENTS.sub("", match.group(1).decode("utf-8", "replace").strip()) or None
-    general = _GENERAL.search(step.text.data, step.start, step.end)
-    if general is not None:
-        at["basis"] = general.start() + 1
+    general = step.part.find(_GENERAL)
+    if general >= 0:
+        at["basis"] = general + 1
         return "Gen"
     return None
 
@@ -91,7 +92,7 @@ def _grid(step: Step, at: dict[str, int]) -> str | None:
     if named is not None:
         at["grid"] = step.route_at
         return named.group(1).lower()
-    match = _GRID.search(step.text.data, step.start, step.end)
+    match = step.part.line_match(_GRID, b"\n IRadAn=")
     if match is None:
         return None
     at["grid"] = match.start() + 1
@@ -100,24 +101,25 @@ def _grid(step: Step, at: dict[str, int]) -> str | None:
 
 
 def _dispersion(step: Step, energy: Energy, density: bool, at: dict[str, int]) -> str | None:
-    match = _DISPERSION.search(step.text.data, step.start, energy.scf_at) if density else None
+    printed = step.text.all(_DISPERSION_MARK) if density else []
+    before = (place for place in printed if step.start <= place < energy.scf_at)
+    match = next((m for place in before if (m := _DISPERSION.match(step.text.data, place))), None)
     if match is not None:
         at["dispersion"] = match.start()
         return match.group(1).decode("utf-8", "replace")
     names = f"{method_name(step)} {plain(energy.scf_name)}"
     asked = _ROUTE_DISPERSION.search(step.route) or _WITH_DISPERSION.search(names)
-    elsewhere = density and _DISPERSION.search(step.text.data) is not None
-    return None if asked or elsewhere else "none"
+    return None if asked or printed else "none"
 
 
 def _solvent(step: Step, energy: Energy, at: dict[str, int]) -> str | None:
     asked = "scrf" in step.route.lower() and "scrf=check" not in step.route.lower()
     part: Text = step.text.part(step.start, energy.scf_at)
-    place = part.find(_CONTINUUM)
-    if place < 0:
-        elsewhere = step.text.data.find(_CONTINUUM) >= 0
+    printed = step.text.all(_CONTINUUM)
+    place = next((place for place in printed if step.start <= place < energy.scf_at), None)
+    if place is None:
         cavity = part.find(b"\n Solvent  ") >= 0 or part.find(b"\n Model  ") >= 0
-        return None if asked or elsewhere or cavity else "none"
+        return None if asked or printed or cavity else "none"
     at["solvent"] = place
     end = min(place + 4000, part.end)
     model = _MODEL.search(part.data, place, end)

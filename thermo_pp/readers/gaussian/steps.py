@@ -14,16 +14,20 @@ from functools import cached_property
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.text import CUT_SHORT, Text
 
-THERMOCHEMISTRY = b" - Thermochemistry -"
-NORMAL = b"Normal termination of Gaussian"
-_ERROR = b"Error termination"
+THERMOCHEMISTRY = b"\n - Thermochemistry -"
+NORMAL = b"\n Normal termination of Gaussian"
+_ERROR = b"\n Error termination"
 _STEPS = b"-- Number of steps exceeded"
 _STOPPED = b"Optimization stopped."
 _DONE = b" SCF Done:"
 _VIRIAL = b"-V/T"
 _BEHIND_DONE = 600
 """Within so many bytes behind its energy an SCF prints its virial ratio."""
-_GOES_ON = (b"Proceeding to internal job step", b"Entering Link 1 =", b"Initial command:")
+_GOES_ON = (
+    b"\n Link1:  Proceeding to internal job step",
+    b"\n Entering Link 1 =",
+    b"\n Initial command:",
+)
 _ROUTE = re.compile(rb"\n (-{3,})\n( *#[^\n]*(?:\n(?! ---)[^\n]*)*)\n (-{3,})\n")
 _GEOMETRY = re.compile(rb"\n +(Standard|Input|Z-Matrix|Principal axis) orientation: *\n -{20,}\n")
 _LIKE_A_HEADING = re.compile(rb"rientation|Standard|Input|orient")
@@ -90,18 +94,20 @@ class Step:
         return self.text.part(self.start, self.end)
 
     @cached_property
+    def _route(self) -> re.Match[bytes] | None:
+        return self.part.line_match(_ROUTE, b"\n ---")
+
+    @cached_property
     def route_at(self) -> int:
         """Where the route stands, the start of the step where there is none."""
-        match = _ROUTE.search(self.text.data, max(self.start - 1, 0), self.end)
-        return self.start if match is None else match.start(2)
+        return self.start if self._route is None else self._route.start(2)
 
     @cached_property
     def route(self) -> str:
         """The route, its lines joined, empty where there is none."""
-        match = _ROUTE.search(self.text.data, max(self.start - 1, 0), self.end)
-        if match is None:
+        if self._route is None:
             return ""
-        lines = match.group(2).decode("utf-8", "replace").split("\n")
+        lines = self._route.group(2).decode("utf-8", "replace").split("\n")
         return "".join(line[1:] for line in lines)
 
     @cached_property
@@ -138,7 +144,8 @@ class Step:
     def thermochemistry_at(self) -> int:
         """Where the last thermochemistry stands, -1 without any."""
         single = self.archive is not None and self.archive.job in ("SP", "Force")
-        return -1 if single and not self.asks_frequencies else self.part.last(THERMOCHEMISTRY)
+        at = -1 if single and not self.asks_frequencies else self.part.last(THERMOCHEMISTRY)
+        return at + 1 if at >= 0 else -1
 
     @cached_property
     def blocks(self) -> list[int]:
@@ -165,7 +172,7 @@ class Step:
     @cached_property
     def energies_at(self) -> list[int]:
         """Where the SCFs are done, in order; ReadError where one has lost its energy."""
-        found = self.part.all(_DONE)
+        found = [at + 1 for at in self.part.all(b"\n" + _DONE)]
         for at in self.part.all(_VIRIAL):  # printed with each of them
             if self.text.data.rfind(_DONE, max(at - _BEHIND_DONE, self.start), at) < 0:
                 raise self.text.error(
@@ -178,13 +185,13 @@ class Step:
     @cached_property
     def atoms(self) -> int | None:
         """How many atoms the program says that there are, None where it does not."""
-        match = _ATOMS.search(self.text.data, self.start, self.end)
+        match = self.part.line_match(_ATOMS, b"\n NAtoms=")
         return None if match is None else int(match.group(1))
 
     @cached_property
     def formula(self) -> tuple[dict[str, int], int] | None:
         """The elements that the program counts and where; None where it does not, or counts ghosts and dummies too."""
-        match = _STOICHIOMETRY.search(self.text.data, self.start, self.end)
+        match = self.part.line_match(_STOICHIOMETRY, b"\n Stoichiometry ")
         if match is not None:
             words, at = match.group(1).decode("utf-8", "replace"), match.start(1)
         elif self.archive is not None:
@@ -201,9 +208,10 @@ class Step:
         """Whether the step goes through several structures: a scan, a path."""
         return _SEVERAL.search(self.route) is not None
 
+    @cached_property
     def state(self) -> tuple[int, int, int] | None:
-        """Return charge, multiplicity and where they stand."""
-        match = _CHARGE.search(self.text.data, self.start, self.end)
+        """Charge, multiplicity and where they stand."""
+        match = self.part.line_match(_CHARGE, b"\n Charge =")
         return (
             None if match is None else (int(match.group(1)), int(match.group(2)), match.start() + 1)
         )
@@ -218,10 +226,8 @@ def steps(text: Text) -> list[Step]:
         An error termination (other than that of an optimisation that ran out of steps), no normal
         end, a step that was announced and is not there, a composite method, a trajectory.
     """
-    ends = [
-        text.next_line(at) if text.find(b"\n", at) >= 0 else text.end for at in text.all(NORMAL)
-    ]
-    begin = ends[-1] if len(ends) == 1 else 0  # in one step an error would be its end
+    ends = [_line_behind(text, at + 1) for at in text.all(NORMAL)]
+    begin = ends[-1] - 1 if len(ends) == 1 else 0  # in one step an error would be its end
     failed = text.part(begin).last(_ERROR)
     found = (
         [Step(text, start, end, True) for start, end in zip([0, *ends[:-1]], ends, strict=True)]
@@ -230,8 +236,8 @@ def steps(text: Text) -> list[Step]:
     )
     last = ends[-1] if ends else 0
     if failed >= 0:
-        ran_out = failed > last and text.find(_STEPS, last) >= 0
-        first = text.find(_ERROR)
+        ran_out = failed + 1 >= last and text.find(_STEPS, last) >= 0
+        first = text.find(_ERROR) + 1
         if not ran_out or first < last:
             raise text.error(
                 first,
@@ -239,10 +245,10 @@ def steps(text: Text) -> list[Step]:
                 mend="mend the job and rerun it",
             )
         found.append(Step(text, last, text.end, False))
-    elif not ends or any(text.find(mark, last) >= 0 for mark in _GOES_ON):
+    elif not ends or any(text.find(mark, last - 1) >= 0 for mark in _GOES_ON):
         raise text.error(
             len(text.data.rstrip()),
-            f"the output does not end normally (looked for {NORMAL.decode()!r})",
+            f"the output does not end normally (looked for {NORMAL.decode().strip()!r})",
             mend=CUT_SHORT,
         )
     for step in found:
@@ -256,14 +262,20 @@ def steps(text: Text) -> list[Step]:
     return found
 
 
+def _line_behind(text: Text, at: int) -> int:
+    """Return where the line behind that of `at` begins; the end of the text where there is none."""
+    return text.data.find(b"\n", at) + 1 or text.end
+
+
 def _check_whole(step: Step) -> None:
     """Refuse a step in which another one begins: the end of the one before is lost."""
-    done = step.part.find(_DONE)
-    begins = [step.text.data.find(mark, done, step.end) for mark in _GOES_ON] if done >= 0 else []
+    done = step.part.find(b"\n" + _DONE)
+    begins = [step.part.find(mark, done) for mark in _GOES_ON] if done >= 0 else []
     at = min((at for at in begins if at >= 0), default=-1)
     if at >= 0:
         raise step.text.error(
-            at,
-            f"a step begins here, but the one before has no end (looked for {NORMAL.decode()!r})",
+            at + 1,
+            "a step begins here, but the one before has no end "
+            f"(looked for {NORMAL.decode().strip()!r})",
             mend="the output is damaged, or the step before did not end; give the steps apart",
         )

@@ -7,14 +7,17 @@ modes again. Displacements are Cartesian and of unit length, imaginary wavenumbe
 
 from __future__ import annotations
 
+import math
 import re
+from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import groupby
 
 import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.readers.gaussian.steps import THERMOCHEMISTRY, Step
-from thermo_pp.readers.number_table import number_table
+from thermo_pp.readers.number_table import decimal_table, number_table
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 FloatArray = NDArray[np.float64]
@@ -34,9 +37,10 @@ PRINTED_STEPS = 2.0
 """Older versions have older constants, and sums are printed of rounded parts."""
 
 _SETS = b" and normal coordinates:"
-_LINE = b" Frequencies --"
+_LINE = b"\n Frequencies -- "
+_FINE_LINE = b" Frequencies ---"
 _TABLE = re.compile(rb" Atom +AN +X +Y +Z[^\n]*\n")
-_FINE_TABLE = b" Coord Atom Element:"
+_FINE_TABLE = b"\n Coord Atom Element:"
 _MOST_OFF = 0.3
 _EH = rb" *= *(-?\d+\.\d+)"
 _VALUES: dict[str, re.Pattern[bytes]] = {
@@ -110,7 +114,7 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
     thermo = part.find(THERMOCHEMISTRY, first)
     end = min(place for place in (following, thermo, part.end) if place >= 0)
     own = part.part(first, end)
-    fine = own.has(_LINE + b"-")
+    fine = own.has(_FINE_TABLE)
     found = _fine_set(own, atoms) if fine else _set(own, atoms)
     _check(part, found, atoms)
     if fine and following >= 0:
@@ -125,7 +129,7 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
 
 
 def _check(part: Text, found: Vibrations, atoms: int) -> None:
-    listed = _TEMPERATURES.search(part.data, found.at, part.end)
+    listed = part.part(found.at).line_match(_TEMPERATURES, b"\n Vibrational temperature")
     if listed is not None:
         count = len(re.findall(rb"\d+\.\d+", listed.group(1)))
         if count != int(np.sum(found.wavenumbers_cm > 0.0)):
@@ -148,15 +152,14 @@ def _numbers(own: Text, fine: bool) -> tuple[FloatArray, list[tuple[int, int]]]:
     """Return the wavenumbers of a set and, for each line of them, where it begins and its columns."""
     values: list[float] = []
     lines: list[tuple[int, int]] = []
-    for at in own.all(_LINE):
-        behind = own.rest(at + len(_LINE))
-        if behind.startswith(b"-") is not fine:
-            continue
+    mark = _FINE_LINE if fine else _LINE
+    for place in own.all(mark):
+        at = place + (not fine)
         try:
-            row = [float(word) for word in behind[fine:].split()]
+            row = [float(word) for word in own.rest(place + len(mark)).split()]
         except ValueError:
             row = []
-        if not row or not np.all(np.isfinite(row)):
+        if not row or not math.isfinite(sum(row)):
             raise own.expected(at, "wavenumbers")
         values += row
         lines.append((at, len(row)))
@@ -165,31 +168,87 @@ def _numbers(own: Text, fine: bool) -> tuple[FloatArray, list[tuple[int, int]]]:
 
 def _set(own: Text, atoms: int) -> Vibrations:
     values, lines = _numbers(own, fine=False)
-    columns: list[FloatArray] = []
+    tables: list[tuple[int, int]] = []
     for line, width in lines:
         table = _TABLE.search(own.data, line, own.end)
         if table is None:
             raise own.expected(line, "displacements below this line")
-        end = _lines_on(own, table.end(), atoms)
-        rows = _array(own, table.end(), end, atoms, 2 + 3 * width)
-        if not np.array_equal(rows[:, 0], np.arange(1, atoms + 1)):
-            raise own.expected(table.end(), "displacements of all atoms")
-        columns.append(rows[:, 2:].reshape(atoms, width, 3).transpose(1, 0, 2))
+        tables.append((table.end(), 3 * width))
+    order = [list(range(1, atoms + 1))]
+    columns = [
+        rows.reshape(atoms, -1, 3).transpose(1, 0, 2) for rows in _tables(own, tables, order, 2)
+    ]
     return _made(own, values, columns, lines, atoms)
 
 
 def _fine_set(own: Text, atoms: int) -> Vibrations:
     values, lines = _numbers(own, fine=True)
-    order = np.stack([np.tile([1.0, 2.0, 3.0], atoms), np.repeat(np.arange(1.0, atoms + 1), 3)]).T
-    columns: list[FloatArray] = []
-    for line, width in lines:
-        table = own.next_line(own.need(_FINE_TABLE, line, lacking="no displacements"))
-        end = _lines_on(own, table, 3 * atoms)
-        rows = _array(own, table, end, 3 * atoms, 3 + width)
-        if not (rows[:, :2] == order).all():
-            raise own.expected(table, "displacements of all atoms")
-        columns.append(rows[:, 3:].reshape(atoms, 3, width).transpose(2, 0, 1))
+    tables = [
+        (own.next_line(own.need(_FINE_TABLE, line, lacking="no displacements") + 1), width)
+        for line, width in lines
+    ]
+    order = [atoms * [1, 2, 3], [atom for atom in range(1, atoms + 1) for _ in range(3)]]
+    columns = [
+        rows.reshape(atoms, 3, -1).transpose(2, 0, 1) for rows in _tables(own, tables, order, 3)
+    ]
     return _made(own, values, columns, lines, atoms)
+
+
+def _tables(
+    own: Text, tables: list[tuple[int, int]], order: Sequence[list[int]], before: int
+) -> list[FloatArray]:
+    """Return the displacements of tables, (rows, columns) each.
+
+    Parameters
+    ----------
+    own : Text
+    tables : list of (int, int)
+        Where the lines of each begin and its columns.
+    order : sequence of lists of int
+        The first words of the lines, a list for each of their columns.
+    before : int
+        How many words stand before the displacements.
+
+    Raises
+    ------
+    ReadError
+        Any other form of a line; names it.
+    """
+    rows = len(order[0])
+    words = [[b"%d" % number for number in column] for column in order]
+    found: list[FloatArray] = []
+    for width, alike in groupby(tables, key=lambda table: table[1]):
+        starts = [start for start, _ in alike]
+        whole = _at_once(own, starts, words, before)
+        if whole is not None and whole.shape[2] == width:
+            found += list(whole)
+            continue
+        for start in starts:
+            table = _array(own, start, _lines_on(own, start, rows), rows, before + width)
+            if not np.array_equal(table[:, : len(order)].T, order):
+                raise own.expected(start, "displacements of all atoms")
+            found.append(table[:, before:])
+    return found
+
+
+def _at_once(
+    own: Text, starts: list[int], order: list[list[bytes]], before: int
+) -> FloatArray | None:
+    """Return tables of one layout (tables, rows, columns), None where a line has another."""
+    rows = len(order[0])
+    length = own.data.find(b"\n", starts[0], own.end) + 1 - starts[0]
+    if length < 1 or max(starts) + rows * length > own.end:
+        return None
+    parts = [np.frombuffer(own.data, np.uint8, rows * length, start) for start in starts]
+    table = decimal_table(np.concatenate(parts).reshape(-1, length))
+    if table is None:
+        return None
+    words = table[0].split()
+    if len(words) != before * rows * len(starts):
+        return None
+    if any(words[i::before] != column * len(starts) for i, column in enumerate(order)):
+        return None
+    return table[1].reshape(len(starts), rows, -1)
 
 
 def _made(
