@@ -196,9 +196,8 @@ _MAPPINGS = ("method_energies", "printed", "where")
 def freeze(record: object, name: str, dtype: type, shape: tuple[int, ...]) -> None:
     """Replace the field `name` of a frozen record by a read-only copy of the given type and shape (-1: any)."""
     array: NDArray[np.generic] = np.array(getattr(record, name), dtype=dtype)
-    if array.ndim != len(shape) or any(
-        want not in (-1, have) for want, have in zip(shape, array.shape, strict=True)
-    ):
+    free = [have if want == -1 else want for want, have in zip(shape, array.shape, strict=False)]
+    if array.ndim != len(shape) or array.shape != tuple(free):
         raise ValueError(f"{name} has shape {array.shape}, expected {shape}")
     if dtype is np.float64 and not np.isfinite(array).all():
         raise ValueError(f"{name} holds a number that is not finite")

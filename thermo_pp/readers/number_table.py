@@ -71,13 +71,15 @@ def decimal_table(lines: NDArray[np.uint8]) -> tuple[bytes, NDArray[np.float64]]
     tuple of (bytes, shape (r, c)) or None
         None where any line is of another form.
     """
-    dots = np.flatnonzero(lines[0] == _DOT)
+    dots = (lines[0] == _DOT).nonzero()[0]
     decimals = lines.shape[1] - 2 - int(dots[-1]) if len(dots) else 0
     if len(dots) < 2 or decimals < 1:
         return None
     width = int(dots[1] - dots[0])
     start, whole = int(dots[0]) + decimals + 1 - width, width - decimals - 1
-    if start < 0 or whole < 1 or width - 1 > _MOST_DIGITS or np.any(np.diff(dots) != width):
+    if start < 0 or whole < 1 or width - 1 > _MOST_DIGITS:
+        return None
+    if bool((dots[1:] - dots[:-1] != width).any()):
         return None
     cells = np.ascontiguousarray(lines[:, start:-1].reshape(-1, width).T)  # (width, numbers)
     digits = cells - np.uint8(_ZERO)  # what is below 0 turns into more than 9
@@ -93,11 +95,9 @@ def decimal_table(lines: NDArray[np.uint8]) -> tuple[bytes, NDArray[np.float64]]
     )
     if not fits:
         return None
-    digits[~number] = 0
-    values = np.zeros(cells.shape[1])
-    for place in (*range(whole), *range(whole + 1, width)):
-        values *= 10.0
-        values += digits[place]
+    digits *= number
+    powers = 10.0 ** np.arange(width - 1)[::-1]
+    values = np.einsum("w,wn->n", np.insert(powers, whole, 0.0), digits)  # whole numbers: exact
     values /= 10.0**decimals
     np.negative(values, out=values, where=minus.any(axis=0))
     return lines[:, :start].tobytes(), values.reshape(len(lines), -1)

@@ -34,10 +34,10 @@ _SAME_MASS = 2e-3
 """Masses are printed with three decimals in the output."""
 
 
-def beside(text: Text) -> Source | None:
-    """Return the file with the Hessian beside the output, None where there is none."""
+def beside(text: Text, inputs: Text) -> Source | None:
+    """Return the file with the Hessian beside the output with these inputs, None where there is none."""
     start = text.part(0, min(text.end, 1 << 20))
-    names = [match.group(1) for match in matches(_BASE, b"%", text, 0, start.end)]
+    names = [m.group(1) for m in matches(_BASE, b"%", text, inputs.start, inputs.end)]
     names += [text.rest(at + len(_NAME)).strip() for at in start.all(_NAME)]
     stems = [re.split(r"[/\\]", name.decode("utf-8", "replace"))[-1] for name in names[:4]]
     stems = [stem.removesuffix(".inp") for stem in stems]

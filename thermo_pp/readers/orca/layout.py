@@ -61,7 +61,8 @@ class Layout:
         rules = index.above(_RULE, besides=b"\n-")
         matches = [match for at in rules if (match := _HEADING.match(text.data, at)) is not None]
         self.offsets = [match.start(1) for match in matches]
-        self.titles = [match.group(1).rstrip() for match in matches]
+        self.titles = [match.group(1) for match in matches]
+        self._in_order = sorted(zip(self.titles, self.offsets, strict=True))
 
     def between(self, start: int, end: int) -> list[bytes]:
         """Return the headings from `start` up to `end`."""
@@ -71,9 +72,9 @@ class Layout:
         """Return the offsets of the headings that begin with `title`."""
         found = self._by_title.get(title)
         if found is None:
-            headings = zip(self.offsets, self.titles, strict=True)
-            found = [at for at, each in headings if each.startswith(title)]
-            self._by_title[title] = found
+            first = bisect_left(self._in_order, (title, -1))
+            last = bisect_left(self._in_order, (title + b"\xff", -1), first)
+            found = self._by_title[title] = sorted(at for _, at in self._in_order[first:last])
         return found
 
     def last(self, title: bytes, end: int | None = None) -> int:

@@ -162,11 +162,13 @@ def _echo(text: Text, before: int) -> tuple[int, int] | None:
         raise text.error(
             max(start, end), "an echo of the input without beginning or end", mend=CUT_SHORT
         )
-    for count, match in enumerate(_LINE.finditer(text.data, start, end), start=1):
-        if int(match.group(1)) != count:
-            raise text.error(
-                match.start(1), f"line {count} of the input is not in its echo", mend=CUT_SHORT
-            )
+    numbers = _LINE.findall(text.data, start, end)
+    if numbers != [b"%d" % count for count in range(1, len(numbers) + 1)]:
+        lines = enumerate(_LINE.finditer(text.data, start, end), start=1)
+        count, match = next((i, m) for i, m in lines if m.group(1) != b"%d" % i)
+        raise text.error(
+            match.start(1), f"line {count} of the input is not in its echo", mend=CUT_SHORT
+        )
     return start, end
 
 

@@ -41,7 +41,7 @@ _ROW = re.compile(rb" *(\d+): +(-?\d+\.\d+) cm\*\*-1([^\n]*)\n")
 _DECIMALS = re.compile(rb"(?:\d+\.\d+(?: |$))*")
 _IMAGINARY = b"imaginary mode"
 _SCALE = re.compile(rb"Scaling factor for frequencies = +(\d+\.\d+)")
-_USED = re.compile(rb"freq\. +(\d+\.\d+) +E\(vib\)")
+_USED = re.compile(rb"\nfreq\. +(\d+\.\d+) +E\(vib\)")
 _LENGTH = 2e-3
 _EH = rb" +(?:\.\.\. *)? *(-?\d+\.\d+) Eh"
 _VALUES: dict[str, re.Pattern[bytes]] = {
@@ -259,15 +259,16 @@ def _check_used(
     section: Text, wavenumbers: FloatArray, printed: dict[str, tuple[str, str, int]]
 ) -> None:
     """Compare the wavenumbers that the thermochemistry lists with the real ones among the modes."""
-    lines = [_USED.match(section.data, at + 1, section.end) for at in section.all(b"\nfreq.")]
-    listed = [match for match in lines if match is not None]
+    first = _USED.search(section.data, section.start, section.end)
+    if first is None:
+        return
+    listed = _USED.findall(section.data, first.start(), section.end)
+    printed["modes_used"] = (str(len(listed)), "", first.start() + 1)
     real = wavenumbers[wavenumbers > 0.0]
-    used = np.sort([float(match.group(1)) for match in listed])
-    if listed:
-        printed["modes_used"] = (str(len(listed)), "", listed[0].start())
-    if len(used) > len(real) or np.any(np.abs(used - real[len(real) - len(used) :]) > 0.011):
+    used = np.sort(list(map(float, listed)))
+    if len(used) > len(real) or bool((abs(used - real[len(real) - len(used) :]) > 0.011).any()):
         raise section.error(
-            listed[0].start(),
+            first.start() + 1,
             "the wavenumbers of the thermochemistry are not those of the modes",
             mend="the output is damaged; rerun or re-copy it",
         )
