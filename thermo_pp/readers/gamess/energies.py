@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from thermo_pp.formulas.repulsion import nuclear_repulsion
 from thermo_pp.readers.gamess.geometry import Geometry
 from thermo_pp.readers.gamess.options import Run
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import first_match, last_match
 from thermo_pp.readers.text import CUT_SHORT, Text
 
@@ -66,19 +67,6 @@ class Energy:
     value: float
     at: int
     scf_at: int
-
-
-@dataclass(frozen=True)
-class Level:
-    """The level; `at` has the offset of the line that says so, by field."""
-
-    method: str
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
-    at: dict[str, int]
 
 
 def label_of(text: Text, run: Run) -> str:

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
 
 from thermo_pp.readers.gaussian.energies import Energy, method_name, plain
 from thermo_pp.readers.gaussian.steps import Step
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.text import Text
 
 _BASIS = re.compile(rb"\n Standard basis: ([^\n]*)")
@@ -26,19 +26,6 @@ _CONTINUUM = b"Polarizable Continuum Model"
 _MODEL = re.compile(rb"\n +Model +: ([^\n]+)")
 _SOLVENT = re.compile(rb"\n +Solvent +: ([^,\n]+)(?:, *Eps *= *(\d+\.\d+))?")
 _FROZEN = re.compile(rb"\n NBasis= *\d+ +NAE= *\d+ +NBE= *\d+ +NFC= *(\d+)")
-
-
-@dataclass(frozen=True)
-class Level:
-    """The level of theory of an energy, as the file has it; what it does not say is None."""
-
-    method: str | None
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
-    at: dict[str, int]
 
 
 def level(step: Step, energy: Energy) -> Level:

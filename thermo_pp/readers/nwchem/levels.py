@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.nwchem.energies import CORRELATED, Energy
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
@@ -54,21 +55,14 @@ _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 
 
 @dataclass(frozen=True)
-class Level:
-    """Level of theory of one energy, charge and multiplicity; `at`: field -> offset of the line that says so."""
+class LevelOfTask(Level):
+    """Level of theory of one energy of a task, with its charge and multiplicity."""
 
-    method: str
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
     charge: int | None
     multiplicity: int | None
-    at: dict[str, int]
 
 
-def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> Level:
+def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> LevelOfTask:
     """Return the level of theory of an energy of a task."""
     at: dict[str, int] = {"method": energy.at}
     before = text.part(task.start, energy.solution.at)
@@ -89,7 +83,7 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> Level:
     method = _relativistic(text, task, energy) + method
     charge, multiplicity, electrons = _state(before, energy.solution.label, at)
     _check_electrons(text, geometry, charge, electrons, at)
-    return Level(
+    return LevelOfTask(
         method=method,
         basis=_basis(before, geometry, at),
         dispersion=dispersion,

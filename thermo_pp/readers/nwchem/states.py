@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from thermo_pp.readers.nwchem import energies, levels, tasks
 from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, Solution
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry, belongs
-from thermo_pp.readers.nwchem.levels import Level
+from thermo_pp.readers.nwchem.levels import LevelOfTask
 from thermo_pp.readers.nwchem.tasks import Task
 from thermo_pp.readers.text import CUT_SHORT, Text
 
@@ -21,7 +21,7 @@ class State:
     task: Task
     geometry: Geometry
     energy: Energy
-    level: Level
+    level: LevelOfTask
 
     def same(self, other: State) -> bool:
         """Tell whether both are one molecule in one geometry, charge and multiplicity."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.orca.energies import Energy, is_without_scf
 from thermo_pp.readers.orca.layout import Layout
@@ -63,19 +64,6 @@ _XYZ = re.compile(
     rb"^\|\s*\d+> *\* *(?:xyzfile|xyz|int|internal|gzmt|gzmtfile|pdbfile) +(-?\d+) +(\d+)",
     re.MULTILINE | re.IGNORECASE,
 )
-
-
-@dataclass(frozen=True)
-class Level:
-    """The level of theory of an energy, as the file has it; what it does not say is None."""
-
-    method: str | None
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
-    at: dict[str, int]
 
 
 @dataclass(frozen=True)

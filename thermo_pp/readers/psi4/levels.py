@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.text import CUT_SHORT, Text
 
@@ -102,19 +103,6 @@ class Energy:
     def rank(self) -> int:
         """Place of the label in `RANKS`."""
         return RANKS[self.label]
-
-
-@dataclass(frozen=True)
-class Level:
-    """Level of theory of one energy; `at` has the offset of the line that says so, by field."""
-
-    method: str
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
-    at: dict[str, int]
 
 
 def best_energy(part: Text) -> Energy:

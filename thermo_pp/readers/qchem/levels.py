@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
 
+from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import first_match
 from thermo_pp.readers.qchem.energies import Energy, method_at, method_name
 from thermo_pp.readers.text import Text
@@ -31,24 +31,6 @@ _DISPERSION = {
 }
 _IN_NAME = re.compile(r"-(?:d\d?|d3\(.*\)|v|rv)$|vv10")
 _OFF = ("none", "false", "0")
-
-
-@dataclass(frozen=True)
-class Level:
-    """The level; `at` has the offset of the line that says so, by field."""
-
-    method: str
-    basis: str | None
-    dispersion: str | None
-    solvent: str | None
-    grid: str | None
-    frozen_core: str | None
-    at: dict[str, int]
-
-    @property
-    def words(self) -> str:
-        """Method and basis set."""
-        return "/".join(part for part in (self.method, self.basis) if part)
 
 
 def level(text: Text, energy: Energy) -> Level:
