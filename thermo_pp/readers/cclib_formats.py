@@ -11,7 +11,6 @@ A formatted checkpoint has no mark of its end; its arrays must be whole, and its
 from __future__ import annotations
 
 import contextlib
-import difflib
 import importlib.util
 import io
 import logging
@@ -26,6 +25,7 @@ from thermo_pp.data.elements import AVERAGE_MASSES, ISOTOPES, MOST_ABUNDANT, SYM
 from thermo_pp.errors import Finding, ReadError
 from thermo_pp.names import Origin
 from thermo_pp.readers import cclib_checks as checks
+from thermo_pp.readers import checkpoint
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source
@@ -50,14 +50,6 @@ class Format(NamedTuple):
 
 
 _CHECKPOINT = "formatted checkpoint"
-_HEADING = re.compile(
-    rb"^[A-Za-z/][^\n]{39}   ([IRCLH])(?:   N=[ ]*(\d+)|     [^\n]*)[ ]*\r?\n", re.MULTILINE
-)
-"""Name, type and number of elements of an array; name, type and value of a number."""
-_PER_LINE = {b"I": 6, b"R": 5}
-_NAMES = ("Real atomic weights", "Vib-AtMass", "Total Energy", "SCF Energy")
-_NEAR = 0.85
-"""Names that are as much alike are one name, one of them damaged; "Integer atomic weights" has 0.78."""
 FORMATS: tuple[Format, ...] = (
     Format("ADF", "ADF", re.compile(rb"Amsterdam Density Functional +\(ADF\)")),
     Format("DALTON", "DALTON", re.compile(rb"Dalton - An Electronic Structure Program")),
@@ -105,7 +97,7 @@ def read(source: Source) -> Calculation:
     if form is None:
         raise text.error(0, "none of the formats that are read through cclib", mend=CUT_SHORT)
     if form.program == _CHECKPOINT:
-        _check_arrays(text)
+        checkpoint.check_arrays(text)
     data = _parse(text, form)
     metadata: dict[str, Any] = getattr(data, "metadata", {})
     if form.program != _CHECKPOINT and not (
@@ -165,7 +157,7 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
     positions = geometries[-1]
     charge, multiplicity = _state(text, data, numbers)
     if form.program == _CHECKPOINT:
-        _check_checkpoint(text, data)
+        checkpoint.check_answer(text, data)
     energy, label, energy_at = _energy(text, form, data, metadata, geometries)
     masses, origin = _masses(text, form, data, numbers)
     at = {} if energy_at is None else {"energy_hartree": energy_at}
@@ -202,10 +194,8 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
         sha256=text.source.sha256,
         program=form.program,
         program_version=_words(metadata.get("package_version")),
-        method=_checkpoint_method(text)
-        if form.program == _CHECKPOINT
-        else _method(label, metadata),
-        basis=_checkpoint_basis(text)
+        method=checkpoint.method(text) if form.program == _CHECKPOINT else _method(label, metadata),
+        basis=checkpoint.basis(text)
         if form.program == _CHECKPOINT
         else _words(metadata.get("basis_set")),
         solvent=_words(metadata.get("solvent_model")),
@@ -269,7 +259,7 @@ def _energy(
 ) -> tuple[float | None, str | None, int | None]:
     """Return the energy as printed, its label and where it stands; None where there is none."""
     if form.program == _CHECKPOINT:
-        return _checkpoint_energy(text, data)
+        return checkpoint.energy(text)
     from cclib.parser.utils import convertor
 
     per_hartree = float(convertor(1.0, "hartree", "eV"))
@@ -339,103 +329,11 @@ def _method(label: str | None, metadata: dict[str, Any]) -> str | None:
     return label
 
 
-def _check_checkpoint(text: Text, data: Any) -> None:
-    """Refuse a checkpoint without charge or multiplicity, or one that announces modes and has none."""
-    for name in ("charge", "mult"):
-        if not hasattr(data, name):
-            raise text.error(0, f"no {name} in this formatted checkpoint", mend=CUT_SHORT)
-    for mark in (b"\nNumber of Normal Modes", b"\nVib-Modes ", b"\nVib-E2 "):
-        at = text.find(mark)
-        if at >= 0 and not hasattr(data, "vibfreqs"):
-            raise text.error(at + 1, "modes without their wavenumbers", mend=CUT_SHORT)
-
-
-def _checkpoint_method(text: Text) -> str:
-    """Return the method of the second line, without the kind of its SCF."""
-    at = text.next_line(0)
-    words = text.line(at).split()
-    method = words[1].upper() if len(words) > 2 else ""
-    if re.fullmatch(r"[A-Z0-9][A-Z0-9()+\-,*]*", method) is None:
-        raise text.expected(at, "the kind of job, the method and the basis set")
-    return re.sub(r"^(?:RO|R|U)(?=[A-Z])", "", method)
-
-
-def _checkpoint_basis(text: Text) -> str | None:
-    """Return the basis set: the last 30 columns of the second line."""
-    return text.line(text.next_line(0))[40:].strip() or None
-
-
-def _checkpoint_energy(text: Text, data: Any) -> tuple[float | None, str | None, int | None]:
-    at = text.find(b"\nTotal Energy  ")
-    scf_at = text.find(b"\nSCF Energy  ")
-    if at < 0 or scf_at < 0:
-        return None, None, None
-    value = float(text.rest(at + 1).split()[-1])
-    scf = float(text.rest(scf_at + 1).split()[-1])
-    method = _checkpoint_method(text)
-    place = at + 1
-    if abs(value - scf) < 1e-9:
-        if method in checks.RANKS and method not in ("HF", "DFT"):
-            raise text.error(place, f"no {method} energy beside that of the SCF", mend=CUT_SHORT)
-        return value, "HF" if method == "HF" else "DFT", place
-    name = "MP4" if method.startswith("MP4") else method
-    if name not in checks.RANKS or name in ("HF", "DFT"):
-        raise text.error(
-            place,
-            f"a total energy that is not the SCF's with the method {method!r}: an excited state or a double hybrid",
-            mend="give the program's own output",
-        )
-    return value, name, place
-
-
-def _check_arrays(text: Text) -> None:
-    """Refuse a formatted checkpoint that ends within an array, or in which an array has another length than it says."""
-    headings = list(_HEADING.finditer(text.data))
-    arrays = [i for i, one in enumerate(headings) if one.group(2) is not None]
-    if not arrays:
-        raise text.error(text.end, "no arrays in this formatted checkpoint", mend=CUT_SHORT)
-    for i in arrays:
-        kind, wanted = headings[i].group(1), int(headings[i].group(2))
-        if kind not in _PER_LINE:
-            continue
-        begin, last = headings[i].end(), i + 1 == len(headings)
-        stop = len(text.data) if last else headings[i + 1].start()
-        lines = text.data.count(b"\n", begin, stop)
-        if lines != -(-wanted // _PER_LINE[kind]):
-            raise text.error(
-                headings[i].start(),
-                f"this array should have {wanted} numbers on {-(-wanted // _PER_LINE[kind])} lines, "
-                f"there are {lines}",
-                mend=CUT_SHORT,
-            )
-    names = [one.group()[:40].decode("utf-8", "replace").strip() for one in headings]
-    for needed in _NAMES:
-        near = [] if needed in names else difflib.get_close_matches(needed, names, 1, _NEAR)
-        if near:
-            raise text.expected(headings[names.index(near[0])].start(), f"the name {needed!r}")
-    kind, wanted = headings[arrays[-1]].group(1), int(headings[arrays[-1]].group(2))
-    if kind == b"C" and headings[arrays[-1]] is headings[-1]:
-        lines = text.data.count(b"\n", headings[-1].end())
-        if lines < -(-wanted // 5):
-            raise text.error(text.end, "the last array of this file is not whole", mend=CUT_SHORT)
-    if not text.data.endswith(b"\n"):
-        raise text.error(text.end, "the last line of this file is not whole", mend=CUT_SHORT)
-
-
-def _checkpoint_masses(text: Text, count: int) -> list[float]:
-    """Return the masses that a checkpoint's modes were computed with (cclib reads those of the molecule)."""
-    at = text.find(b"\nVib-AtMass ")
-    if at < 0:
-        return []
-    lines = [5] * (count // 5) + ([count % 5] if count % 5 else [])
-    return text.rows(text.next_line(at + 1), lines, "the masses of the modes")[0]
-
-
 def _masses(
     text: Text, form: Format, data: Any, numbers: NDArray[np.int64]
 ) -> tuple[FloatArray, Origin]:
     """Return the masses that cclib reads, else those that the program is known to take."""
-    if form.program == _CHECKPOINT and (analysed := _checkpoint_masses(text, len(numbers))):
+    if form.program == _CHECKPOINT and (analysed := checkpoint.masses(text, len(numbers))):
         return np.array(analysed), "printed"
     found = np.asarray(getattr(data, "atommasses", []), dtype=np.float64)
     if found.shape == numbers.shape:
