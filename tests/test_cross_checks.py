@@ -8,6 +8,7 @@ import pytest
 
 from thermo_pp.errors import ReadError
 from thermo_pp.readers import read_source
+from thermo_pp.records import Printed
 from thermo_pp.sources import Source
 
 FIXTURES = Path(__file__).parents[1] / "fixtures"
@@ -163,3 +164,13 @@ def test_no_check_where_other_charges_count(fixture: str, old: bytes, new: bytes
         read_source(Source("x.out", moved))
     calc = read_source(Source("x.out", moved.replace(old, new, 1)))
     assert calc.energy_hartree == read_source(Source("x.out", data)).energy_hartree
+
+
+def test_a_digit_that_turns_into_an_exponent_is_damage() -> None:
+    data = (FIXTURES / "gaussian/good/co2_mp2_numerical_freq.log").read_bytes()
+    line = b"nuclear repulsion energy        57.8928914099"
+    damaged = data.replace(line, line[:-6] + b"D14099", 1)
+    assert damaged != data
+    with pytest.raises(ReadError, match="expected the nuclear repulsion energy"):
+        read_source(Source("x", damaged))
+    assert Printed("57.8928D14099", "hartree", 1).step == float("inf")

@@ -49,7 +49,7 @@ class Printed:
         """One unit of the last printed digit."""
         mantissa, _, exponent = self.text.lower().replace("d", "e").partition("e")
         decimals = len(mantissa.partition(".")[2])
-        return float(10.0 ** (int(exponent or 0) - decimals))
+        return float(f"1e{int(exponent or 0) - decimals}")  # without overflow
 
 
 @dataclass(frozen=True)

@@ -183,9 +183,10 @@ class Text:
     def number_text(self, at: int, what: str) -> str:
         """Return the digits of the first number on the line at or after `at`, with `e` for the exponent."""
         match = _NUMBER.search(self.rest(at))
-        if match is None:
+        digits = "" if match is None else match.group().decode().lower().replace("d", "e")
+        if not digits or not math.isfinite(float(digits)):
             raise self.expected(at, what)
-        return match.group().decode().lower().replace("d", "e")
+        return digits
 
     def exact_text(self, at: int, what: str, suffix: bytes = b"") -> str:
         """Return the first word of the line from `at` on, which must be a number; ReadError where it is not.
@@ -196,8 +197,10 @@ class Text:
         match = _FIRST_WORD.match(self.data, at)
         if match is None or match.group(2) not in (b"", suffix):
             raise self.expected(at, what)
-        digits = match.group(1)
-        return digits.decode().lower().replace("d", "e")
+        digits = match.group(1).decode().lower().replace("d", "e")
+        if not math.isfinite(float(digits)):
+            raise self.expected(at, what)
+        return digits
 
     def floats(self, at: int, count: int, what: str, skip: int = 0) -> list[float]:
         """Return `count` numbers of the line from `at` on after `skip` words; ReadError where they are not numbers."""
