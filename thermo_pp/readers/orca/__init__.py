@@ -76,9 +76,7 @@ def read(source: Source) -> Calculation:
         at["optimised"] = chosen.run.at
     doubts = _doubts(text, marks, chosen, value)
     printed = {} if modes is None else modes.printed
-    written = None
-    if modes is not None and len(shape.numbers) > 1:
-        written = joined.beside(text, chosen.inputs.text)
+    written = joined.beside(text) if modes is not None and len(shape.numbers) > 1 else None
     hessian = None
     if written is not None and modes is not None:
         hessian = joined.hessian(written, shape, masses, modes)

@@ -16,6 +16,7 @@ from thermo_pp.data.elements import NUMBERS
 from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.orca.geometry import Geometry
+from thermo_pp.readers.orca.levels import END_OF_INPUT
 from thermo_pp.readers.orca.vibrations import Vibrations
 from thermo_pp.readers.printed_matrix import printed_matrix
 from thermo_pp.readers.text import Text
@@ -34,10 +35,11 @@ _SAME_MASS = 2e-3
 """Masses are printed with three decimals in the output."""
 
 
-def beside(text: Text, inputs: Text) -> Source | None:
-    """Return the file with the Hessian beside the output with these inputs, None where there is none."""
+def beside(text: Text) -> Source | None:
+    """Return the file with the Hessian beside the output, None where there is none."""
     start = text.part(0, min(text.end, 1 << 20))
-    names = [m.group(1) for m in matches(_BASE, b"%", text, inputs.start, inputs.end)]
+    echoed = start.all(END_OF_INPUT)
+    names = [m.group(1) for m in matches(_BASE, b"%", text, 0, echoed[-1] if echoed else 0)]
     names += [text.rest(at + len(_NAME)).strip() for at in start.all(_NAME)]
     stems = [re.split(r"[/\\]", name.decode("utf-8", "replace"))[-1] for name in names[:4]]
     stems = [stem.removesuffix(".inp") for stem in stems]

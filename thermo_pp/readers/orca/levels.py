@@ -36,7 +36,7 @@ _CORRELATED_BLOCK = re.compile(rb"% *(?:mp2|method|compound|mdci)\b", re.IGNOREC
 _MULTICONFIGURATION = re.compile(r"(?:DLPNO-|FIC-|SC-|RI-|PC-)*(?:CASSCF|NEVPT2|MRCI|CASPT2)")
 _HEADING = b"                INPUT FILE"
 _FIRST_LINE = b"\n|  1> "
-_END_OF_INPUT = b"****END OF INPUT****"
+END_OF_INPUT = b"****END OF INPUT****"
 _LINE = re.compile(rb"\n\| *(\d+)>")
 _BANG = re.compile(rb"\|\s*\d+>\s*(?:[^\n]*?\W)?!([^\n]*)")
 _FUNCTIONAL = re.compile(
@@ -141,7 +141,7 @@ def _echo(text: Text, before: int) -> tuple[int, int] | None:
     ReadError
         An echo without its beginning or its end, or with a line missing: its lines are numbered.
     """
-    ends = [at for at in text.all(_END_OF_INPUT) if at + len(_END_OF_INPUT) <= before]
+    ends = [at for at in text.all(END_OF_INPUT) if at + len(END_OF_INPUT) <= before]
     end = ends[-1] if ends else -1
     start = max(text.last(_FIRST_LINE, before), text.last(_HEADING, before))
     if start < 0 and end < 0:
