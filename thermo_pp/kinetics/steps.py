@@ -16,13 +16,12 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import MOLAR, Conditions, Held, Treatment
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.crossing import landau_zener
 from thermo_pp.formulas.rates import log_frequency_factor
+from thermo_pp.kinetics.crossing import transmission
 from thermo_pp.kinetics.given import given_rate, height_saddle
 from thermo_pp.kinetics.limits import Side, join, limit_of
 from thermo_pp.kinetics.tunnelling import tunnelling
 from thermo_pp.mechanism import Mechanism
-from thermo_pp.rate_laws import Crossing
 from thermo_pp.species import SaddleMember, SpeciesModel
 from thermo_pp.units import BAR_PA, FARADAY_C_MOL, GAS_J_MOL_K
 
@@ -205,7 +204,9 @@ def elementary_rates(
                 saddle = energies.reduced[:, column]
                 saddle_slope = energies.slope_j_mol[:, column]
             if step.crossing is not None:
-                log_transmission[:, k], lift = _crossing(step.crossing, t)
+                log_transmission[:, k], lift = transmission(
+                    step, energies.saddle_members[str(step.through)], t
+                )
                 saddle, saddle_slope = saddle - log_transmission[:, k], saddle_slope + lift
             if step.tunnelling != "none":
                 log_kappa[:, k], kappa_energy[:, k] = (
@@ -243,14 +244,6 @@ def elementary_rates(
         orders,
         tuple(findings),
     )
-
-
-def _crossing(crossing: Crossing, t: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return ln of the probability to cross, and R T^2 times its temperature derivative."""
-    if crossing.transmission is not None:
-        return np.full(t.shape, np.log(crossing.transmission)), np.zeros(t.shape)
-    log, slope = landau_zener(t, crossing.coupling_j, crossing.gradient_n, crossing.mass_kg)
-    return log, GAS_J_MOL_K * t * slope
 
 
 def _side(counts: Mapping[str, int], energies: Energetics) -> Side:

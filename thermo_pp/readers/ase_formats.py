@@ -7,7 +7,7 @@ Modes are taken where the file has them under these keys, in `info` of extended 
 - ``hessian``: eV/A^2, 3N x 3N numbers, flat or nested; translations and rotations are projected out.
 
 With both, the frequencies must be those of the Hessian. They are of the masses in the file, else of
-the most abundant isotopes.
+the most abundant isotopes. Forces, eV/A, are taken as the gradient.
 
 Only formats with a mark of their own are read, through ASE's reader of exactly that format; none of
 them executes or unpickles anything. ASE's energies come in eV of CODATA 2014; ASE's own number
@@ -112,6 +112,7 @@ def _extended_xyz(text: Text) -> Images:
         return {
             "positions_angstrom": comment + 1,
             "energy_hartree": comment,
+            "gradient_hartree_bohr": comment + 1,
             "wavenumbers_cm": comment,
         }
 
@@ -156,6 +157,7 @@ def _data_base(text: Text) -> Images:
         if number + 1 < len(rows):
             return {}
         marks = {"positions_angstrom": b'"positions"', "energy_hartree": b'"energy"'}
+        marks["gradient_hartree_bohr"] = b'"forces"'
         key = next((key for key in _MODE_KEYS if key in rows[number].data), None)
         if key is not None:
             marks["wavenumbers_cm"] = f'"{key}"'.encode()
@@ -226,8 +228,13 @@ def _calculation(text: Text, images: Images, number: int, path: str, sha256: str
         raise text.error(0, "a position that is not finite, or a mass not above 0", mend=CUT_SHORT)
     energy = _energy(text, atoms)
     wavenumbers, modes, hessian = _vibrations(text, atoms, masses)
+    gradient = _gradient(text, atoms)
     lines = images.lines(number)
-    for name, value in (("energy_hartree", energy), ("wavenumbers_cm", wavenumbers)):
+    for name, value in (
+        ("energy_hartree", energy),
+        ("wavenumbers_cm", wavenumbers),
+        ("gradient_hartree_bohr", gradient),
+    ):
         if value is None:
             lines.pop(name, None)
     return Calculation(
@@ -244,6 +251,7 @@ def _calculation(text: Text, images: Images, number: int, path: str, sha256: str
         wavenumbers_cm=wavenumbers,
         modes=modes,
         hessian_hartree_bohr2=hessian,
+        gradient_hartree_bohr=gradient,
         kind_of_job=_kinds(energy, wavenumbers),
         where=lines,
     )
@@ -278,6 +286,22 @@ def _energy(text: Text, atoms: Atoms) -> float | None:
     if not math.isfinite(energy):
         raise text.error(0, f"energy {str(value)[:80]} is not a finite number", mend=CUT_SHORT)
     return energy
+
+
+def _gradient(text: Text, atoms: Atoms) -> FloatArray | None:
+    """Return the gradient in hartree/bohr, None where the file has no forces."""
+    from ase.units import Bohr, Hartree
+
+    forces = None if atoms.calc is None else atoms.calc.results.get("forces")
+    if forces is None:
+        return None
+    try:
+        gradient = -np.asarray(forces, dtype=np.float64) / (Hartree / Bohr)
+    except (TypeError, ValueError):
+        gradient = np.full(1, math.nan)
+    if gradient.shape != (len(atoms), 3) or not np.all(np.isfinite(gradient)):
+        raise text.error(0, "forces: not three finite numbers an atom", mend=CUT_SHORT)
+    return gradient
 
 
 def _kinds(energy: float | None, wavenumbers: FloatArray | None) -> tuple[str, ...]:
