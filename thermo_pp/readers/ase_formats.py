@@ -4,6 +4,8 @@ Modes are taken where the file has them under these keys, in `info` of extended 
 (so on the comment line) or in `data` of a row of a data base; ASE itself has no place for them:
 
 - ``frequencies``: cm^-1, imaginary ones negative, 3N-6 (3N-5) of them or 3N with null modes;
+- ``seam_frequencies``, in their place: those along the seam of a crossing point, one less, as a
+  program projected them;
 - ``hessian``: eV/A^2, 3N x 3N numbers, flat or nested; translations and rotations are projected out.
 
 With both, the frequencies must be those of the Hessian. They are of the masses in the file, else of
@@ -64,7 +66,7 @@ class Images:
 _MEND_MODES = (
     "write frequencies in cm^-1 (3N-6, or 3N with null modes) and the hessian in eV/A^2 (3N x 3N)"
 )
-_MODE_KEYS = ("frequencies", "hessian")
+_MODE_KEYS = ("frequencies", "seam_frequencies", "hessian")
 _ASYMMETRY = 0.05
 """eV/A^2."""
 _TRAJECTORY = b"- of UlmASE-Trajectory"
@@ -319,6 +321,18 @@ def _vibrations(
     n = len(masses)
     listed = _floats(text, atoms, "frequencies")
     flat = _floats(text, atoms, "hessian")
+    along = _floats(text, atoms, "seam_frequencies")
+    if along is not None:
+        if (
+            listed is not None
+            or flat is not None
+            or len(along) != mode_lists.count(masses, atoms.positions) - 1
+        ):
+            raise text.error(
+                0, "seam_frequencies must be one less than the modes of the structure, and stand alone",
+                mend=_MEND_MODES,
+            )  # fmt: skip
+        return np.sort(along), None, None
     wavenumbers = None
     if listed is not None:
         try:

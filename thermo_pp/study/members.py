@@ -116,7 +116,8 @@ def make_species(
         found += [
             one for one in calc.findings if one.code != "ghost-atoms" or calc.path not in meant
         ]
-        found += audit_alone(calc)
+        not_here = structures.not_plain.get(calc.path, ())
+        found += [one for one in audit_alone(calc) if one.code not in not_here]
     found += structures.findings
     found += [finding for model in maker.done.values() for finding in model.findings]
     found += level_findings([*structures.frequencies.values(), *structures.seams], "frequencies")

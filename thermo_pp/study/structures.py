@@ -27,6 +27,9 @@ from thermo_pp.study.parts import entropy_correction, given, real_below
 from thermo_pp.study.seams import make_seam
 from thermo_pp.study.torsions import make_torsions
 
+SEAM_DOUBTS = {"mode-count", "imaginary-modes", "small-imaginary-mode"}
+"""What the audit says of modes, where the modes of one state do not count."""
+
 
 @dataclass(frozen=True, eq=False)
 class Structures:
@@ -50,6 +53,8 @@ class Structures:
         By structure.
     seams : list of Calculation
         Outputs that the seams of crossing points stand on beside their frequency jobs.
+    not_plain : dict of str to set of str
+        By path of an output at a crossing point: the doubts of the audit that do not hold there.
     """
 
     keys: StudyKeys
@@ -61,6 +66,7 @@ class Structures:
     frequencies: dict[str, Calculation] = field(default_factory=dict)
     energies: dict[str, CheckedEnergy] = field(default_factory=dict)
     seams: list[Calculation] = field(default_factory=list)
+    not_plain: dict[str, set[str]] = field(default_factory=dict)
 
 
 def species_structure(
@@ -137,6 +143,8 @@ def make_structure(
         structures.frequencies[name] = calc
     structures.energies[name] = energy
     seam_keys, seam = given(member.seam), None
+    if kind == "crossing":
+        structures.not_plain[calc.path] = {"mode-count"}
     if seam_keys is not None:
         at = f"{where} seam"
         if kind != "crossing":
@@ -149,6 +157,8 @@ def make_structure(
             seam_keys, calc, given(member.multiplicity), structures.outputs, name=name, where=at
         )
         structures.seams.extend(others)
+        for one in (calc, *others):
+            structures.not_plain[one.path] = SEAM_DOUBTS
     return Structure.make(
         calc if reading.lent is None else reading.lent.calculation,
         treatment,
