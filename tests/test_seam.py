@@ -369,6 +369,9 @@ def test_one_hessian(tmp_path: Path) -> None:
     )
 
 
+KEYS = {"energy": '"return_energy"', "gradient": '"return_gradient"', "Hessian": '"return_result"'}
+
+
 def test_where_everything_comes_from(mecp: Structure) -> None:
     """The note has the numbers; each part has its file and line."""
     assert mecp.seam is not None
@@ -380,12 +383,13 @@ def test_where_everything_comes_from(mecp: Structure) -> None:
         "electronic energy of its own state",
         "gradient of the other state",
         "electronic energy of the other state",
+        "share of the other state's Hessian",
     ]
     for part in mecp.seam.parts:
         assert part.file is not None
         assert part.line is not None
-        key = '"return_energy"' if "energy" in part.quantity else '"return_gradient"'
-        assert key in Path(part.file).read_text().splitlines()[part.line - 1]
+        key = next(key for key in KEYS if key in part.quantity)
+        assert KEYS[key] in Path(part.file).read_text().splitlines()[part.line - 1]
     assert [Path(file).name for file in mecp.files] == [
         "crossing_singlet.json",
         "crossing_triplet.json",

@@ -85,7 +85,6 @@ def _of_seam(name: str, model: Structure) -> Iterator[dict[str, Any]]:
         yield _row(name, part.quantity, part.value, part.unit, part.origin, part.file, part.line)
     for quantity, value, unit in (
         ("energy of its own state less the other", seam.gap_kj_mol, "kJ/mol"),
-        ("share of the other state's Hessian", seam.other_share, ""),
         ("slope across the seam", across.slope, "hartree/bohr"),
         ("reduced mass across the seam", across.reduced_mass_u, "u"),
     ):

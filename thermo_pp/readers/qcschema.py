@@ -98,7 +98,7 @@ def read(source: Source) -> Calculation:
         "program_version": ("provenance", "version"),
     }
     if modes is not None:
-        places["wavenumbers_cm"] = ("return_result",)
+        places["wavenumbers_cm"] = places["hessian_hartree_bohr2"] = ("return_result",)
     if gradient is not None:
         places["gradient_hartree_bohr"] = gradient_keys
     return Calculation(

@@ -33,6 +33,7 @@ from thermo_pp.units import HARTREE_KJ_MOL, quantity
 FloatArray = NDArray[np.float64]
 
 _GRADIENT, _DIFFERENCE = "gradient of {} state", "gradient difference, own state less other"
+_SHARE = "share of the other state's Hessian"
 _UNIT = "hartree/bohr"
 _NOT_TURNED = 1e-9
 MOST_OVERALL = 0.1
@@ -113,15 +114,18 @@ def make_seam(
         gap = (job.energy_hartree - other.energy_hartree) * HARTREE_KJ_MOL
     notes = overall_motion(across, job, name)
     hessian, used = job.hessian_hartree_bohr2, None
+    parts = (*one.parts, *two.parts)
     if two.hessian is None:
         notes.append(one_hessian(job, name, f"{two.label} holds no Hessian"))
     else:
         hessian, used = seam_hessian(hessian, two.hessian, share), share
+        line = other.where.get("hessian_hartree_bohr2")
+        parts = (*parts, SeamPart(_SHARE, share, "", "derived", other.path, line))
     notes += where_it_lies(one, two, share, gap, job, name)
     words = f"gradients of {one.label} less {two.label}"
     notes.append(modes_along(job, across, used, name, words))
     files = tuple(dict.fromkeys(calc.path for calc in (other, *read)))
-    return Seam(apart, hessian, used, gap, (*one.parts, *two.parts), files, tuple(notes)), (
+    return Seam(apart, hessian, used, gap, parts, files, tuple(notes)), (
         other,
         *read,
     )
