@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import gzip
 import json
+import re
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -18,7 +20,12 @@ from structures import made, masses, turn
 import thermo_pp as tp
 from thermo_pp.errors import ReadError, StudyError
 from thermo_pp.formulas.normal_modes import normal_modes
-from thermo_pp.formulas.seam import crossing_coordinate, seam_hessian, share_of_other
+from thermo_pp.formulas.seam import (
+    crossing_coordinate,
+    seam_hessian,
+    share_of_other,
+    turning_residual,
+)
 from thermo_pp.isotopes import isotopologues
 from thermo_pp.species import Structure
 from thermo_pp.study.load import Study
@@ -127,6 +134,40 @@ def test_modes_are_those_of_points_on_the_seam(mecp: Structure) -> None:
     assert np.abs(alone - expected).max() > 1.0, (
         "one Hessian alone must differ, or this tests nothing"
     )
+
+
+def test_two_nwchem_outputs(tmp_path: Path) -> None:
+    """Another program, text alone: its gradients of six digits, its Hessians with overall motion projected
+    out in its own way, which moves a mode of the triplet alone by 70 cm^-1."""
+    text = POINT.replace("crossing_", "nwchem_").replace(".json", ".out.gz")
+    loaded = study(tmp_path, text)
+    expected, _ = wavenumbers_on_seam()
+    assert point(loaded).modes.wavenumbers_cm == pytest.approx(expected, abs=0.1)
+    assert codes(loaded) & {"seam-hessian-turns", "seam-not-degenerate", "mixed-level"} == set()
+    mixed = POINT.replace("crossing_triplet.json", "nwchem_triplet.out.gz")
+    again = study(tmp_path, mixed)
+    assert np.abs(point(again).modes.wavenumbers_cm - expected).max() > 2.0
+    found = next(one for one in again.findings if one.code == "seam-hessian-turns")
+    assert "off by 8.5% of the slope across it" in found.what
+
+
+def test_exchanged_gradients(tmp_path: Path) -> None:
+    """Where no file says whose gradient it is, the Hessians do."""
+    rows = [document(name)[1].tolist() for name in ("crossing_triplet", "crossing_singlet")]
+    loaded = study(tmp_path, POINT.replace(" }", f", gradients = {rows} }}"))
+    assert "seam-hessian-turns" in codes(loaded)
+
+
+def test_turning() -> None:
+    """A spring that is stretched: its gradient turns with it; a Hessian of a spring at rest does not."""
+    x = np.array([[0.0, 0, 0], [1.0, 2.0, 2.0]])
+    e, k, stretch = x[1] / 3.0, 0.3, 0.4
+    block = k * np.outer(e, e) + k * stretch / 3.0 * (np.eye(3) - np.outer(e, e))
+    hessian = np.kron([[1.0, -1.0], [-1.0, 1.0]], block)
+    g = np.array([-e, e]) * k * stretch
+    assert turning_residual(hessian, g, x) == pytest.approx(0.0, abs=1e-14)
+    rest = np.kron([[1.0, -1.0], [-1.0, 1.0]], k * np.outer(e, e))
+    assert turning_residual(rest, g, x) == pytest.approx(k * stretch * np.sqrt(2.0), rel=1e-12)
 
 
 def _frame() -> tuple[FloatArray, FloatArray]:
@@ -648,10 +689,40 @@ def test_gradients_of_readers() -> None:
         np.linalg.norm(one.gradient_hartree_bohr), rel=1e-6
     )
     assert two.where["gradient_hartree_bohr"] == 3
-    assert (
-        tp.read(METHYLENE.parent / "nwchem" / "good" / "water_hf_freq.out").gradient_hartree_bohr
-        is None
-    )
+    task = METHYLENE.parent / "nwchem" / "good" / "water_hf_freq.out"
+    assert tp.read(task).gradient_hartree_bohr is None
+
+
+def test_gradient_of_a_task(tmp_path: Path) -> None:
+    """NWChem: that of the gradient task; none where its table is of another state, an error where damaged."""
+    data = gzip.decompress((METHYLENE / "outputs" / "nwchem_triplet.out.gz").read_bytes())
+    row = b"   2 H       0.000000   1.606594   1.039237    0.000000  -0.012817   0.037120"
+    assert data.count(row) == 1
+    calc = tp.read(METHYLENE / "outputs" / "nwchem_triplet.out.gz")
+    assert calc.gradient_hartree_bohr == pytest.approx(document("crossing_triplet")[1], abs=5e-6)
+    assert data.splitlines()[calc.where["gradient_hartree_bohr"]].startswith(row)
+    for new, sentence in (
+        (row.replace(b"1.606594", b"1.606694"), "a gradient at other coordinates than the energy"),
+        (row.replace(b"-0.012817", b" ********"), "expected"),
+        (row.replace(b"   2 H", b"   3 H"), "the gradient of atom 2"),
+    ):
+        path = tmp_path / "a.out"
+        path.write_bytes(data.replace(row, new))
+        with pytest.raises(ReadError, match=sentence):
+            tp.read(path)
+    # the gradient task a little lower in energy, its parts too: another state
+    parts = [
+        re.search(rb"(?:%s) += +(-?\d+\.\d+)" % name, data)
+        for name in (b"Total DFT energy", b"One electron energy")
+    ]
+    other = data
+    for part in parts:
+        assert part is not None
+        text = part.group(1)
+        lower = b"%.12f" % (float(text) - 1e-4)
+        other = other[: part.start(1)] + lower[: len(text)] + other[part.end(1) :]
+    (tmp_path / "a.out").write_bytes(other)
+    assert tp.read(tmp_path / "a.out").gradient_hartree_bohr is None
 
 
 def test_forces_that_are_none(tmp_path: Path) -> None:

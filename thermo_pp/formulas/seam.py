@@ -60,6 +60,33 @@ def seam_hessian(hessian_one: ArrayLike, hessian_other: ArrayLike, share: float)
     return np.asarray((1.0 - share) * one + share * other)
 
 
+def turning_residual(hessian: ArrayLike, gradient: ArrayLike, positions_bohr: ArrayLike) -> float:
+    """Return by how much a Hessian does not turn with its gradient, in the unit of the gradient.
+
+    The gradient turns with the structure, so H (a x r) = a x g for every axis a. At a point that is not
+    stationary a Hessian out of which rotations were projected misses that by the gradient itself.
+
+    Parameters
+    ----------
+    hessian : shape (3n, 3n)
+    gradient : shape (n, 3)
+    positions_bohr : shape (n, 3)
+        In the unit of length of the Hessian.
+
+    Returns
+    -------
+    float
+        Norm of the difference for the axis for which it is largest; 0 is perfect.
+    """
+    g = np.asarray(gradient, dtype=np.float64)
+    x = np.asarray(positions_bohr, dtype=np.float64)
+    x = x - x.mean(axis=0)
+    axes = np.eye(3)[:, np.newaxis]
+    turned = np.cross(axes, x).reshape(3, -1) @ np.asarray(hessian, dtype=np.float64)
+    apart = turned - np.cross(axes, g).reshape(3, -1)
+    return float(np.linalg.svd(apart, compute_uv=False)[0])
+
+
 @dataclass(frozen=True)
 class CrossingCoordinate:
     """The motion across a seam.

@@ -8,10 +8,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.seam import CrossingCoordinate
+from thermo_pp.formulas.seam import CrossingCoordinate, turning_residual
 from thermo_pp.names import Severity
 from thermo_pp.records import Calculation
 from thermo_pp.species import SeamPart
+from thermo_pp.units import BOHR_ANGSTROM
 
 FloatArray = NDArray[np.float64]
 
@@ -20,6 +21,8 @@ DEGENERATE_KJ_MOL = 0.25
 STATIONARY_HARTREE_BOHR = 5e-4
 """Largest component of a gradient along the seam at its minimum; about what optimisations stop at
 (common practice, no source)."""
+TURNS = 0.01
+"""So much of the slope across the seam may a Hessian miss what its gradient asks of it: grids, digits."""
 OVERALL = 0.01
 """So much of the motion across the seam may move the whole structure: grids, printed digits."""
 
@@ -76,6 +79,31 @@ def one_hessian(job: Calculation, name: str, why: str) -> Finding:
         f"{name}: the modes along the seam are those of the Hessian of {job.path} alone, since {why}",
         "give the frequency job of the other state at this geometry",
     )
+
+
+def turns_along(
+    hessian: FloatArray,
+    gradient: FloatArray,
+    across: CrossingCoordinate,
+    job: Calculation,
+    name: str,
+) -> list[Finding]:
+    """Doubt a Hessian along the seam that does not turn with its gradient."""
+    positions = job.positions_angstrom / BOHR_ANGSTROM
+    off = turning_residual(hessian, gradient, positions) / across.slope
+    if off <= TURNS:
+        return []
+    return [
+        _finding(
+            "seam-hessian-turns",
+            "warning",
+            job,
+            f"{name}: the Hessian along the seam does not turn with its gradient (off by {off:.1%} of the "
+            "slope across it)",
+            "check that gradients and Hessians belong together, state by state; take both Hessians from one "
+            "program, since some project overall motion out of it and others do not",
+        )
+    ]
 
 
 def where_it_lies(

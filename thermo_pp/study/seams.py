@@ -26,6 +26,7 @@ from thermo_pp.study.seam_findings import (
     modes_along,
     one_hessian,
     overall_motion,
+    turns_along,
     where_it_lies,
 )
 from thermo_pp.units import HARTREE_KJ_MOL, quantity
@@ -86,23 +87,7 @@ def make_seam(
             mend="name an output with a Hessian, or one whose modes are those along the seam",
         )
     if named is None:
-        if given(keys.gradients) is not None or given(keys.multiplicity) is not None:
-            raise StudyError(
-                f"{name}: gradients and multiplicity are those of an output that is not named",
-                where=where,
-                mend='name the output of the other state: other = "triplet.out"',
-            )
-        assert difference is not None
-        apart = _vectors(difference, job, f"{where}.gradient_difference")
-        across = _across(apart, job, name, f"{where}.gradient_difference")
-        words = "the difference of the gradients is declared"
-        unknown = (
-            "the other state's Hessian is not known, nor whether both states have one energy here"
-        )
-        notes = [one_hessian(job, name, unknown), *overall_motion(across, job, name)]
-        notes.append(modes_along(job, across, None, name, words))
-        parts = (SeamPart(_DIFFERENCE, apart, _UNIT, "declared", None, None),)
-        return Seam(apart, job.hessian_hartree_bohr2, None, None, parts, (), tuple(notes)), ()
+        return _declared(keys, job, name, where), ()
     other = outputs.calculation(named, f"{where}.other")
     spins = _spins(keys, job, other, multiplicity, name, where)
     one, two, read = _states(keys, job, other, spins, outputs, name, where)
@@ -121,14 +106,36 @@ def make_seam(
         hessian, used = seam_hessian(hessian, two.hessian, share), share
         line = other.where.get("hessian_hartree_bohr2")
         parts = (*parts, SeamPart(_SHARE, share, "", "derived", other.path, line))
+    level = (1.0 - share) * one.slope + share * two.slope if used is not None else one.slope
+    notes += turns_along(hessian, level, across, job, name)
     notes += where_it_lies(one, two, share, gap, job, name)
     words = f"gradients of {one.label} less {two.label}"
     notes.append(modes_along(job, across, used, name, words))
     files = tuple(dict.fromkeys(calc.path for calc in (other, *read)))
-    return Seam(apart, hessian, used, gap, parts, files, tuple(notes)), (
-        other,
-        *read,
+    seam = Seam(apart, hessian, used, gap, parts, files, tuple(notes))
+    return seam, (other, *read)
+
+
+def _declared(keys: SeamKeys, job: Calculation, name: str, where: str) -> Seam:
+    """Return the seam of a declared difference of the gradients; the Hessian is the one state's."""
+    if given(keys.gradients) is not None or given(keys.multiplicity) is not None:
+        raise StudyError(
+            f"{name}: gradients and multiplicity are those of an output that is not named",
+            where=where,
+            mend='name the output of the other state: other = "triplet.out"',
+        )
+    at = f"{where}.gradient_difference"
+    apart = _vectors(given(keys.gradient_difference) or (), job, at)
+    across = _across(apart, job, name, at)
+    unknown = "the other state's Hessian is not known, nor whether both states have one energy here"
+    notes = (
+        one_hessian(job, name, unknown),
+        *overall_motion(across, job, name),
+        modes_along(job, across, None, name, "the difference of the gradients is declared"),
     )
+    parts = (SeamPart(_DIFFERENCE, apart, _UNIT, "declared", None, None),)
+    assert job.hessian_hartree_bohr2 is not None
+    return Seam(apart, job.hessian_hartree_bohr2, None, None, parts, (), notes)
 
 
 def _spins(
