@@ -184,6 +184,32 @@ def test_isotopes(mecp: Structure) -> None:
     assert pair.log_full_ratio([300.0]) == pytest.approx(pair.log_reduced_ratio([300.0]), abs=1e-5)
 
 
+def test_isotope_effect_of_a_crossing(tmp_path: Path) -> None:
+    """Both masses across the seam cancel where the probability is small: only the vibrations are left."""
+    new = '[isotopologues.D]\nall = { H = "D" }\n\n[effective]'
+    loaded = study(tmp_path, old="[effective]", new=new)
+    step = loaded.isotope_effects()[0].steps[0]
+    t = np.array([250.0, 298.15, 350.0])
+    pair = isotopologues(point(loaded), {"H": "D"}, where="test")
+    singlet = loaded.species["singlet"]
+    assert isinstance(singlet, Structure)
+    reactant = isotopologues(singlet, {"H": "D"}, where="test")
+    weak = reactant.log_reduced_ratio(t) - pair.log_reduced_ratio(t)
+    assert step.forward_without_symmetry == pytest.approx(np.exp(weak), rel=3e-3)
+    assert step.harmonic_forward == pytest.approx(step.forward_without_symmetry, rel=1e-3)
+
+
+def test_doubt_about_a_crossing(tmp_path: Path) -> None:
+    """Moved energies leave its probability as it is: ln k has the deviation of the barrier alone."""
+    new = '[doubt]\ndeviation = "2 kJ/mol"\nsamples = 4000\n\n[effective]'
+    doubt = study(tmp_path, old="[effective]", new=new).doubt()
+    expected = 2.0 * np.sqrt(2.0) / (8.31446261815324e-3 * np.array([250.0, 298.15, 350.0]))
+    rate = doubt.rates["free"]
+    assert rate.first_order_log_deviation == pytest.approx(expected, rel=1e-6)
+    assert rate.spread is not None
+    assert rate.spread.log_deviation == pytest.approx(expected, rel=0.05)
+
+
 def test_against_other_algebra(mecp: Structure) -> None:
     (x, g1, h1), (_, g2, h2) = document("crossing_singlet"), document("crossing_triplet")
     a, b = np.linalg.norm(g1), np.linalg.norm(g2)

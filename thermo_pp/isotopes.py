@@ -91,8 +91,15 @@ class Isotopologues:
             logs.append(-gibbs / (GAS_J_MOL_K * t))
         found = logs[1] - logs[0]
         found = found - 1.5 * float(np.log(self.heavy.masses_u / self.light.masses_u).sum())
-        found = found - np.log(_across(self.heavy)).sum() + np.log(_across(self.light)).sum()
-        return np.asarray(found)
+        return np.asarray(found + self.log_coordinate_ratio)
+
+    @property
+    def log_coordinate_ratio(self) -> float:
+        """Logarithm of light over heavy of the imaginary wavenumbers; 0 for a minimum.
+
+        Of a crossing point of spin states, of the roots of the inverse reduced masses across the seam.
+        """
+        return float(np.log(_across(self.light)).sum() - np.log(_across(self.heavy)).sum())
 
 
 def isotopologues(
