@@ -36,7 +36,7 @@ FloatArray = NDArray[np.float64]
 _GRADIENT, _DIFFERENCE = "gradient of {} state", "gradient difference, own state less other"
 _SHARE = "share of the other state's Hessian"
 _UNIT = "hartree/bohr"
-_NOT_TURNED = 1e-9
+_NOT_TURNED = 1e-6
 MOST_OVERALL = 0.1
 """Beyond this the gradients are not those of this structure in this orientation."""
 
@@ -228,8 +228,8 @@ def _gradient(calc: Calculation, rotation: FloatArray, whose: str, where: str) -
         raise StudyError(
             f"no gradient is read from {calc.path}",
             where=where,
-            mend='give both: gradients = ["one.xyz", "other.xyz"], extended XYZ with forces or QCSchema, '
-            "or three numbers an atom",
+            mend='give both: gradients = ["one.xyz", "other.xyz"], extended XYZ with forces, QCSchema or '
+            "gradient tasks of NWChem, or three numbers an atom",
         )
     line = calc.where.get("gradient_hartree_bohr")
     turned = bool(np.abs(rotation - np.eye(3)).max() > _NOT_TURNED)
