@@ -66,6 +66,7 @@ class Case:
             log_limit=np.zeros((1, n)),
             limit_energy_j_mol=np.zeros((1, n)),
             log_transmission=np.zeros((1, n)),
+            transmission_energy_j_mol=np.zeros((1, n)),
             collider_orders={},
             findings=(),
         )

@@ -8,6 +8,7 @@ import mpmath as mp
 import numpy as np
 import pytest
 from declared_study import edited, load
+from scipy.integrate import solve_ivp
 
 from thermo_pp.errors import StudyError
 from thermo_pp.formulas.crossing import landau_zener
@@ -32,6 +33,26 @@ def test_mean_against_quadrature(cm: float) -> None:
         lambda x: -mp.expm1(-2 * c / mp.sqrt(x)) * mp.exp(-x), [0, 1e-6, 1e-3, 0.1, 1, 5, 20, 60]
     )
     assert float(np.exp(log)) == pytest.approx(float(mean), rel=1e-7)
+
+
+@pytest.mark.parametrize("coupling", [0.2, 0.45])
+def test_single_passage_against_the_equations_of_motion(coupling: float) -> None:
+    """i c' = [[r t/2, H], [H, -r t/2]] c with hbar = 1 and r = F v: what stays is exp(-2 pi H^2/r).
+
+    The formula's p is of the same exponent; 1 - p^2 is two passages of it.
+    """
+    rate, far = 1.0, 60.0
+
+    def motion(t: float, c: np.ndarray) -> np.ndarray:
+        half = 0.5 * rate * t
+        return np.array(
+            [-1j * (half * c[0] + coupling * c[1]), -1j * (coupling * c[0] - half * c[1])]
+        )
+
+    start = np.array([1.0 + 0j, 0.0])
+    found = solve_ivp(motion, (-far, far), start, method="DOP853", rtol=1e-8, atol=1e-10)
+    stays = abs(found.y[0, -1]) ** 2
+    assert stays == pytest.approx(np.exp(-2 * np.pi * coupling**2 / rate), abs=2 * coupling / far)
 
 
 def test_limits() -> None:

@@ -270,3 +270,22 @@ def test_real_output_with_line_ends_of_windows(value: dict[str, Any]) -> None:
         read_source(Source("x.log", data)),
         read_source(Source("x.log", data.replace(b"\n", b"\r\n"))),
     )
+
+
+def test_projected_modes_may_be_one_less() -> None:
+    """``freq=projected`` (from knowledge of it): 3N-7 modes; without the word the same file is damaged."""
+    lines = []
+    for line in good("water_opt_freq").decode().splitlines():
+        if line.startswith(
+            ("                      1  ", "                     A'", " Frequencies", " Red.")
+        ):
+            line = line[:52]
+        elif re.match(r"     [123] +\d+( +-?\d\.\d\d){9}$", line):
+            line = line[:60]
+        lines.append(line.replace(" 2463.68  5359.62  5539.27", " 2463.68  5359.62"))
+    data = "\n".join(lines).encode()
+    with pytest.raises(ReadError, match="2 modes of 3 atoms, expected 3 or 4"):
+        read_source(Source("x.log", data))
+    assert b" RB3LYP/6-31G(d) Freq" in data
+    calc = read_source(Source("x.log", data.replace(b"(d) Freq", b"(d) Freq=Projected")))
+    assert calc.wavenumbers_cm == pytest.approx([1712.3456, 3725.1234])

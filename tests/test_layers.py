@@ -40,7 +40,7 @@ INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
         "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
-        "turning", "rates", "falloff", "crossing", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
+        "seam", "turning", "rates", "falloff", "crossing", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
         "polynomials", "mixture",
     ),
     "sources": ("limits", "compressed", "archives", "source", "disk"),

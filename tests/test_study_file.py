@@ -104,6 +104,11 @@ rotational_constants = { B = "59.3219 cm^-1", D = "0.04599 cm^-1" }
 nuclear_spins = "normal"
 imaginary = { real_below = "30 cm^-1" }
 standard_state = "1 mol/L"
+[species.A.seam]
+other = "a_triplet.out"
+gradients = ["a_grad.out", [[0.1, "1 hartree/bohr", 0], [0, 0, 0]]]
+gradient_difference = [[0.1, 0, 0], [0, 0, 0]]
+multiplicity = 3
 [species.A.energy]
 sum = [{ file = "b.out", method = "MP2", factor = -1 }]
 counterpoise = [{ atoms = [1, 2], own = "f.out", ghosts = "g.out" }]
@@ -152,6 +157,7 @@ isotopes = { 3 = "D", C = "13C" }
 rotational_constants = { B = "59.3219 cm^-1", D = "0.04599 cm^-1" }
 nuclear_spins = "normal"
 imaginary = { real_below = "30 cm^-1" }
+seam = { other = "a_triplet.out" }
 degeneracy = 2
 composition = "H2O"
 enthalpy = "-1 kJ/mol"

@@ -14,11 +14,13 @@ from thermo_pp.formulas.normal_modes import normal_modes
 from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS, rigid_rotor
 from thermo_pp.formulas.symmetry import rotational_symmetry
 from thermo_pp.names import Rotor
+from thermo_pp.records import Calculation
 from thermo_pp.species import Structure
 from thermo_pp.species.ideal_gas import IdealGas, shares, totals
 from thermo_pp.species.masses import substituted
 from thermo_pp.species.modes import SortedModes, sort_modes
 from thermo_pp.species.rotors import settled_rotor
+from thermo_pp.species.seam import along_seam
 from thermo_pp.species.torsions import settle_torsions
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -68,7 +70,8 @@ class Isotopologues:
         """Return the same by translation, classical rotation and oscillators, without symmetry.
 
         ln Q_heavy/Q_light less 3/2 ln(m_heavy/m_light) of every atom; of a saddle point also less ln
-        of the ratio of the imaginary wavenumbers, which the product rule holds.
+        of the ratio of the imaginary wavenumbers, which the product rule holds (of a crossing point,
+        of the roots of the inverse reduced masses across the seam).
         """
         t = np.atleast_1d(np.asarray(temperature_k, dtype=np.float64))
         logs = []
@@ -88,9 +91,15 @@ class Isotopologues:
             logs.append(-gibbs / (GAS_J_MOL_K * t))
         found = logs[1] - logs[0]
         found = found - 1.5 * float(np.log(self.heavy.masses_u / self.light.masses_u).sum())
-        if self.light.imaginary_cm is not None and self.heavy.imaginary_cm is not None:
-            found = found - np.log(self.heavy.imaginary_cm / self.light.imaginary_cm)
-        return np.asarray(found)
+        return np.asarray(found + self.log_coordinate_ratio)
+
+    @property
+    def log_coordinate_ratio(self) -> float:
+        """Logarithm of light over heavy of the imaginary wavenumbers; 0 for a minimum.
+
+        Of a crossing point of spin states, of the roots of the inverse reduced masses across the seam.
+        """
+        return float(np.log(_across(self.light)).sum() - np.log(_across(self.heavy)).sum())
 
 
 def isotopologues(
@@ -147,8 +156,7 @@ def isotopologues(
         calc.positions_angstrom,
         light.masses_u,
         heavy.masses_u,
-        light.modes.wavenumbers_cm,
-        heavy.modes.wavenumbers_cm,
+        *(np.append(one.modes.oscillators_cm, _across(one)) for one in (light, heavy)),
     )
     notes = []
     if structure.symmetry_origin == "declared":
@@ -181,19 +189,31 @@ def isotopologues(
     )
 
 
+def _across(structure: Structure) -> FloatArray:
+    """Return what stands for the reaction coordinate in ratios of isotopologues, one number or none."""
+    coordinate = structure.crossing_coordinate
+    if coordinate is not None:
+        return np.array([coordinate.reduced_mass_u**-0.5])
+    imaginary_cm = structure.imaginary_cm
+    return np.array([] if imaginary_cm is None else [-imaginary_cm])
+
+
 def _with_masses(structure: Structure, masses_u: FloatArray, where: str) -> Structure:
     """Return a structure with other masses, its modes from the Hessian."""
     calc, treatment = structure.calculation, structure.treatment
     modes = structure.modes
-    if calc.hessian_hartree_bohr2 is not None:
+    along = along_seam(calc, structure.seam, masses_u)
+    if structure.seam is not None:
+        modes = _modes(structure, along)
+    elif calc.hessian_hartree_bohr2 is not None:
         found = normal_modes(calc.hessian_hartree_bohr2, masses_u, calc.positions_angstrom)
-        modes = _modes(structure, np.sort(found.wavenumbers_cm))
+        modes = _modes(structure, replace(calc, wavenumbers_cm=found.wavenumbers_cm))
     symmetry = rotational_symmetry(calc.numbers, calc.positions_angstrom, masses_u)
     declared = structure.symmetry_origin == "declared"
     sigma = structure.symmetry_number if declared else symmetry.order
     turning = settle_torsions(
         [one.choice for one in structure.torsions],
-        calc,
+        along,
         masses_u,
         modes,
         symmetry.chiral,
@@ -235,12 +255,13 @@ def _with_masses(structure: Structure, masses_u: FloatArray, where: str) -> Stru
     )
 
 
-def _modes(structure: Structure, wavenumbers_cm: FloatArray) -> SortedModes:
+def _modes(structure: Structure, calculation: Calculation) -> SortedModes:
     """Return the modes of an isotopologue, which has the parts of the structure's own."""
+    assert calculation.wavenumbers_cm is not None
     return sort_modes(
-        structure.calculation,
-        wavenumbers_cm,
-        structure.kind,
+        calculation,
+        np.sort(calculation.wavenumbers_cm),
+        structure.kind if structure.seam is None else "crossing",
         structure.treatment.real_below_cm,
         name=structure.name,
     )

@@ -9,6 +9,8 @@ LowModes = Literal["harmonic", "raised", "rotor-entropy", "rotor-enthalpy"]
 Rotor = Literal["auto", "classical"]
 RotorKind = Literal["atom", "linear", "nonlinear"]
 Kind = Literal["minimum", "saddle"]
+UsedAs = Literal["minimum", "saddle", "crossing"]
+"""What a structure is used as; a point where spin states cross is the saddle point of its step."""
 Phase = Literal["gas", "solution"]
 Masses = Literal["program", "average"]
 Tunnelling = Literal["none", "wigner", "eckart"]
@@ -31,6 +33,7 @@ PolynomialForm = Literal["nasa7", "nasa9", "shomate"]
 SEVERITIES: tuple[Severity, ...] = get_args(Severity)
 """From the mildest to the worst."""
 LOW_MODES: tuple[LowModes, ...] = get_args(LowModes)
+USED_AS: tuple[UsedAs, ...] = get_args(UsedAs)
 ROTORS: tuple[Rotor, ...] = get_args(Rotor)
 PHASES: tuple[Phase, ...] = get_args(Phase)
 MASSES: tuple[Masses, ...] = get_args(Masses)

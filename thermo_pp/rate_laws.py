@@ -71,11 +71,13 @@ class Crossing:
     ----------
     transmission : float or None
         Declared probability, the same at every temperature; None: by Landau and Zener.
-    coupling_j, gradient_n, mass_kg : float
-        Spin-orbit coupling, difference of the gradients and reduced mass along it, SI.
+    coupling_j : float
+        Spin-orbit coupling of one molecule.
+    across : tuple of float or None
+        Declared size of the difference of the gradients, N, and reduced mass along it, kg; None: those
+        of the crossing point.
     """
 
     transmission: float | None
     coupling_j: float = 0.0
-    gradient_n: float = 0.0
-    mass_kg: float = 0.0
+    across: tuple[float, float] | None = None

@@ -107,6 +107,8 @@ class Calculation:
     modes : shape (m, n, 3) or None
         Cartesian displacements of those modes, not mass-weighted, each of length 1.
     hessian_hartree_bohr2 : shape (3n, 3n) or None
+    gradient_hartree_bohr : shape (n, 3) or None
+        Of the energy, at `positions_angstrom` and in their orientation; None where the reader takes none.
     optimised : bool or None
         Whether an optimisation reached its own thresholds; None where the job is no optimisation.
     ended_normally : bool
@@ -144,6 +146,7 @@ class Calculation:
     wavenumbers_cm: FloatArray | None = None
     modes: FloatArray | None = None
     hessian_hartree_bohr2: FloatArray | None = None
+    gradient_hartree_bohr: FloatArray | None = None
     optimised: bool | None = None
     ended_normally: bool = True
     kind_of_job: tuple[str, ...] = ()
@@ -162,6 +165,8 @@ class Calculation:
             freeze(self, "modes", np.float64, (-1, n, 3))
         if self.hessian_hartree_bohr2 is not None:
             freeze(self, "hessian_hartree_bohr2", np.float64, (3 * n, 3 * n))
+        if self.gradient_hartree_bohr is not None:
+            freeze(self, "gradient_hartree_bohr", np.float64, (n, 3))
         for name in _MAPPINGS:
             object.__setattr__(self, name, MappingProxyType(dict(getattr(self, name))))
 

@@ -24,7 +24,8 @@ class NormalModes:
     Attributes
     ----------
     wavenumbers_cm : shape (m,)
-        Ascending, imaginary ones negative; 3N-6, of a linear structure 3N-5, of an atom none.
+        Ascending, imaginary ones negative; 3N-6, of a linear structure 3N-5, of an atom none; one
+        less where a coordinate is left out.
     modes : shape (m, n, 3)
         Cartesian displacements, not mass-weighted, each of length 1.
     """
@@ -34,7 +35,10 @@ class NormalModes:
 
 
 def normal_modes(
-    hessian_hartree_bohr2: ArrayLike, masses_u: ArrayLike, positions_angstrom: ArrayLike
+    hessian_hartree_bohr2: ArrayLike,
+    masses_u: ArrayLike,
+    positions_angstrom: ArrayLike,
+    across: ArrayLike | None = None,
 ) -> NormalModes:
     """Diagonalise the mass-weighted Hessian in the space that holds no translation and no rotation.
 
@@ -47,6 +51,9 @@ def normal_modes(
         hartree/bohr^2; its symmetric part counts.
     masses_u : shape (n,)
     positions_angstrom : shape (n, 3)
+    across : shape (n, 3) or None
+        A gradient, in any unit: the mass-weighted motion along it is left out as well, so that what
+        is left are the modes in the surface that it stands on.
 
     Returns
     -------
@@ -55,7 +62,8 @@ def normal_modes(
     Raises
     ------
     ValueError
-        A Hessian of another shape or one that holds what is not finite.
+        A Hessian of another shape or one that holds what is not finite; a gradient that is 0 but
+        for overall motion.
     """
     m = np.asarray(masses_u, dtype=np.float64)
     x = np.asarray(positions_angstrom, dtype=np.float64)
@@ -68,11 +76,21 @@ def normal_modes(
     root = np.repeat(np.sqrt(m), 3)
     weighted = 0.5 * (hessian + hessian.T) / np.outer(root, root)
     inner = internal_space(m, x)
+    if across is not None:
+        inner = _within(inner, np.asarray(across, dtype=np.float64).ravel() / root)
     values, vectors = np.linalg.eigh(inner.T @ weighted @ inner)
     modes = (inner @ vectors).T / root
     modes /= np.linalg.norm(modes, axis=1, keepdims=True)
     wavenumbers = np.sign(values) * np.sqrt(np.abs(values)) * _CM_PER_ROOT
     return NormalModes(wavenumbers, modes.reshape(-1, n, 3))
+
+
+def _within(space: FloatArray, normal: FloatArray) -> FloatArray:
+    """Return an orthonormal basis of what of a space, (3n, k), is at right angles to a vector."""
+    inside = normal @ space
+    if not np.linalg.norm(inside) > 1e-12 * np.linalg.norm(normal):
+        raise ValueError("the gradient has no part beside overall motion")
+    return np.asarray(space @ np.linalg.svd(inside[np.newaxis])[2][1:].T)
 
 
 def internal_space(m: FloatArray, x: FloatArray) -> FloatArray:

@@ -48,7 +48,8 @@ class StepEffect:
     harmonic_equilibrium : shape (t,)
         By reduced partition function ratios of harmonic oscillators, without symmetry.
     harmonic_forward : shape (t,) or None
-        The same for the rate constant, without tunnelling; None without a saddle point.
+        The same for the rate constant, without tunnelling, of a crossing with its probability; None without a
+        saddle point.
     """
 
     equation: str
@@ -231,8 +232,9 @@ def _step(
     if step.through is not None:
         harmonic = reduced(step.reactants) - reduced({step.through: 1})
         saddle = labelled.get(step.through)
-        if saddle is not None and saddle.light.imaginary_cm and saddle.heavy.imaginary_cm:
-            harmonic = harmonic + np.log(saddle.light.imaginary_cm / saddle.heavy.imaginary_cm)
+        if saddle is not None:
+            harmonic = harmonic + saddle.log_coordinate_ratio
+        harmonic = harmonic + effect("log_transmission", heavy)
     forward, plain_forward = effect("log_forward", heavy), effect("log_forward", plain)
     reverse, plain_reverse = effect("log_reverse", heavy), effect("log_reverse", plain)
     return StepEffect(

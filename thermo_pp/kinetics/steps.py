@@ -16,18 +16,19 @@ from numpy.typing import NDArray
 
 from thermo_pp.conditions import MOLAR, Conditions, Held, Treatment
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.crossing import landau_zener
 from thermo_pp.formulas.rates import log_frequency_factor
+from thermo_pp.kinetics.crossing import transmission
 from thermo_pp.kinetics.given import given_rate, height_saddle
 from thermo_pp.kinetics.limits import Side, join, limit_of
 from thermo_pp.kinetics.tunnelling import tunnelling
 from thermo_pp.mechanism import Mechanism
-from thermo_pp.rate_laws import Crossing
 from thermo_pp.species import SaddleMember, SpeciesModel
 from thermo_pp.units import BAR_PA, FARADAY_C_MOL, GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
 ExtendedArray = NDArray[np.longdouble]
+Factors = tuple[tuple[FloatArray, FloatArray], ...]
+"""ln of a factor and R T^2 times its temperature derivative, shape (b, n): of tunnelling and of crossing."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -107,9 +108,9 @@ class ElementaryRates:
     log_limit, limit_energy_j_mol : shape (b, n)
         What a limit of encounter adds to ln k of a step that has a saddle as well, and to R T^2
         times its temperature derivative, both in the effective saddle already; 0 elsewhere.
-    log_transmission : shape (b, n)
-        ln of the probability to change the spin state, in the effective saddle already; 0 where
-        nothing crosses.
+    log_transmission, transmission_energy_j_mol : shape (b, n)
+        ln of the probability to change the spin state and R T^2 times its temperature derivative, both
+        in the effective saddle already; 0 where nothing crosses.
     collider_orders : mapping of str to shape (b, n)
         d ln k/d ln c of the colliders of fall-off steps.
     findings : tuple of Finding
@@ -126,8 +127,19 @@ class ElementaryRates:
     log_limit: FloatArray
     limit_energy_j_mol: FloatArray
     log_transmission: FloatArray
+    transmission_energy_j_mol: FloatArray
     collider_orders: Mapping[str, FloatArray]
     findings: tuple[Finding, ...]
+
+    def repeated_factors(self, times: int) -> Factors:
+        """Return tunnelling and crossing as they are here, for so many batches of these temperatures."""
+        return tuple(
+            (np.tile(log, (times, 1)), np.tile(energy, (times, 1)))
+            for log, energy in (
+                (self.log_kappa, self.kappa_energy_j_mol),
+                (self.log_transmission, self.transmission_energy_j_mol),
+            )
+        )
 
     def without_limits(self) -> ElementaryRates:
         """Return the steps that have a saddle as they are without their limit of encounter.
@@ -146,7 +158,7 @@ def elementary_rates(
     energies: Energetics,
     treatment: Treatment,
     conditions: Conditions,
-    kappa: tuple[FloatArray, FloatArray] | None = None,
+    factors: Factors | None = None,
 ) -> ElementaryRates:
     """Return the rate constants of every step; each gets an effective saddle whatever it came from.
 
@@ -159,8 +171,8 @@ def elementary_rates(
         The phase decides which limit fits.
     conditions : Conditions
         How much there is of the colliders of fall-off steps.
-    kappa : pair of shape (b, n), or None
-        `log_kappa` and `kappa_energy_j_mol` in place of what tunnelling gives.
+    factors : Factors or None
+        In place of what tunnelling and crossing give.
 
     Raises
     ------
@@ -176,7 +188,7 @@ def elementary_rates(
     forward, reverse = np.empty((b, n)), np.empty((b, n))
     limited = np.zeros((b, n), np.bool_)
     log_kappa, kappa_energy = np.zeros((b, n)), np.zeros((b, n))
-    log_transmission = np.zeros((b, n))
+    log_transmission, crossing_energy = np.zeros((b, n)), np.zeros((b, n))
     log_limit, limit_energy = np.zeros((b, n)), np.zeros((b, n))
     orders: dict[str, FloatArray] = {}
     findings: list[Finding] = []
@@ -205,12 +217,17 @@ def elementary_rates(
                 saddle = energies.reduced[:, column]
                 saddle_slope = energies.slope_j_mol[:, column]
             if step.crossing is not None:
-                log_transmission[:, k], lift = _crossing(step.crossing, t)
-                saddle, saddle_slope = saddle - log_transmission[:, k], saddle_slope + lift
+                log_transmission[:, k], crossing_energy[:, k] = (
+                    (factors[1][0][:, k], factors[1][1][:, k])
+                    if factors is not None
+                    else transmission(step, energies.saddle_members[str(step.through)], t)
+                )
+                saddle = saddle - log_transmission[:, k]
+                saddle_slope = saddle_slope + crossing_energy[:, k]
             if step.tunnelling != "none":
                 log_kappa[:, k], kappa_energy[:, k] = (
-                    (kappa[0][:, k], kappa[1][:, k])
-                    if kappa is not None
+                    (factors[0][0][:, k], factors[0][1][:, k])
+                    if factors is not None
                     else tunnelling(
                         step,
                         energies.saddle_members[str(step.through)],
@@ -240,17 +257,10 @@ def elementary_rates(
         log_limit,
         limit_energy,
         log_transmission,
+        crossing_energy,
         orders,
         tuple(findings),
     )
-
-
-def _crossing(crossing: Crossing, t: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return ln of the probability to cross, and R T^2 times its temperature derivative."""
-    if crossing.transmission is not None:
-        return np.full(t.shape, np.log(crossing.transmission)), np.zeros(t.shape)
-    log, slope = landau_zener(t, crossing.coupling_j, crossing.gradient_n, crossing.mass_kg)
-    return log, GAS_J_MOL_K * t * slope
 
 
 def _side(counts: Mapping[str, int], energies: Energetics) -> Side:

@@ -9,9 +9,9 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import StudyError
 from thermo_pp.formulas.tunnelling import Tunnelling, eckart, wigner
+from thermo_pp.kinetics.shares import weighted_mean
 from thermo_pp.mechanism import Step, write_sum
 from thermo_pp.species import SaddleMember
-from thermo_pp.units import GAS_J_MOL_K
 
 FloatArray = NDArray[np.float64]
 
@@ -46,8 +46,7 @@ def tunnelling(
         energy at 0 K that is not known.
     """
     where = f"{step.where} tunnelling"
-    rt = GAS_J_MOL_K * temperature_k
-    logs, weights, slopes, energies = [], [], [], []
+    found = []
     for member in members:
         if member.imaginary_cm is None:
             raise StudyError(
@@ -59,25 +58,11 @@ def tunnelling(
         nu = scale * member.imaginary_cm
         heights = [_height(step, member, side, grounds_kj_mol, where) for side in step.sides()]
         if step.tunnelling == "wigner":
-            found = wigner(temperature_k, nu)
+            one = wigner(temperature_k, nu)
         else:
-            found = eckart(temperature_k, nu, *_known(heights, step, member, grounds_kj_mol, where))
-        logs.append(found.log_kappa)
-        energies.append(found.energy_j_mol)
-        weights.append(-1000.0 * member.gibbs_kj_mol / rt)
-        slopes.append(1000.0 * member.slope_enthalpy_kj_mol)
-    if len(members) == 1:
-        return found
-    bare = np.stack(weights)
-    whole = bare + np.stack(logs)
-    log_kappa = np.logaddexp.reduce(whole) - np.logaddexp.reduce(bare)
-    energy = (_shares(whole) * (np.stack(slopes) + np.stack(energies))).sum(axis=0)
-    return Tunnelling(log_kappa, energy - (_shares(bare) * np.stack(slopes)).sum(axis=0))
-
-
-def _shares(logs: FloatArray) -> FloatArray:
-    """Return exp(logs) over their sum along the first axis."""
-    return np.asarray(np.exp(logs - np.logaddexp.reduce(logs)))
+            one = eckart(temperature_k, nu, *_known(heights, step, member, grounds_kj_mol, where))
+        found.append((one.log_kappa, one.energy_j_mol))
+    return Tunnelling(*weighted_mean(members, found, temperature_k))
 
 
 def _height(

@@ -64,6 +64,7 @@ def _of_structure(name: str, model: Structure) -> Iterator[dict[str, Any]]:
         name, "symmetry number", model.symmetry_number, "", model.symmetry_origin, job, geometry
     )
     yield _taken(name, "degeneracy", model.degeneracy, "", "derived", job, geometry)
+    yield from _of_seam(name, model)
     for number, torsion in enumerate(model.torsions, start=1):
         rotor = torsion.rotor
         for quantity, value, unit in (
@@ -73,6 +74,22 @@ def _of_structure(name: str, model: Structure) -> Iterator[dict[str, Any]]:
             yield _taken(
                 name, f"torsion {number}, {quantity}", value, unit, "derived", job, geometry
             )
+
+
+def _of_seam(name: str, model: Structure) -> Iterator[dict[str, Any]]:
+    """Yield what the modes of a crossing point were worked out from."""
+    seam, across = model.seam, model.crossing_coordinate
+    if seam is None or across is None:
+        return
+    for part in seam.parts:
+        yield _row(name, part.quantity, part.value, part.unit, part.origin, part.file, part.line)
+    for quantity, value, unit in (
+        ("energy of its own state less the other", seam.gap_kj_mol, "kJ/mol"),
+        ("slope across the seam", across.slope, "hartree/bohr"),
+        ("reduced mass across the seam", across.reduced_mass_u, "u"),
+    ):
+        if value is not None:
+            yield _row(name, quantity, value, unit, "derived", None, None)
 
 
 def _of_energy(name: str, energy: ElectronicEnergy) -> Iterator[dict[str, Any]]:

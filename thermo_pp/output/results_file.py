@@ -25,7 +25,7 @@ from thermo_pp.output import (
 )
 from thermo_pp.output.json_text import json_text, treatment_keys
 from thermo_pp.output.provenance import provenance
-from thermo_pp.rate_laws import Arrhenius
+from thermo_pp.rate_laws import Arrhenius, Crossing
 from thermo_pp.species import Declared, SpeciesModel
 from thermo_pp.species.result import ModeTable
 from thermo_pp.study.run import Answers, SpeciesAnswer
@@ -176,10 +176,21 @@ def _step(step: Step) -> dict[str, Any]:
             "low": _arrhenius(falloff.low),
             "high": _arrhenius(falloff.high),
         },
-        "crossing": step.crossing and vars(step.crossing),
+        "crossing": step.crossing and _crossing(step.crossing),
         "viscosity_pa_s": step.viscosity and _over_temperature(step.viscosity),
         "permittivity": step.permittivity and _over_temperature(step.permittivity),
         "tunnelling": step.tunnelling,
+    }
+
+
+def _crossing(crossing: Crossing) -> dict[str, Any]:
+    """Return a crossing; what is None of the gradients is that of the crossing point."""
+    gradient_n, mass_kg = crossing.across or (None, None)
+    return {
+        "transmission": crossing.transmission,
+        "coupling_j": crossing.coupling_j,
+        "gradient_n": gradient_n,
+        "mass_kg": mass_kg,
     }
 
 

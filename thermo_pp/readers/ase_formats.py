@@ -4,10 +4,12 @@ Modes are taken where the file has them under these keys, in `info` of extended 
 (so on the comment line) or in `data` of a row of a data base; ASE itself has no place for them:
 
 - ``frequencies``: cm^-1, imaginary ones negative, 3N-6 (3N-5) of them or 3N with null modes;
+- ``seam_frequencies``, in their place: those along the seam of a crossing point, one less, as a
+  program projected them;
 - ``hessian``: eV/A^2, 3N x 3N numbers, flat or nested; translations and rotations are projected out.
 
 With both, the frequencies must be those of the Hessian. They are of the masses in the file, else of
-the most abundant isotopes.
+the most abundant isotopes. Forces, eV/A, are taken as the gradient.
 
 Only formats with a mark of their own are read, through ASE's reader of exactly that format; none of
 them executes or unpickles anything. ASE's energies come in eV of CODATA 2014; ASE's own number
@@ -64,7 +66,7 @@ class Images:
 _MEND_MODES = (
     "write frequencies in cm^-1 (3N-6, or 3N with null modes) and the hessian in eV/A^2 (3N x 3N)"
 )
-_MODE_KEYS = ("frequencies", "hessian")
+_MODE_KEYS = ("frequencies", "seam_frequencies", "hessian")
 _ASYMMETRY = 0.05
 """eV/A^2."""
 _TRAJECTORY = b"- of UlmASE-Trajectory"
@@ -112,6 +114,7 @@ def _extended_xyz(text: Text) -> Images:
         return {
             "positions_angstrom": comment + 1,
             "energy_hartree": comment,
+            "gradient_hartree_bohr": comment + 1,
             "wavenumbers_cm": comment,
         }
 
@@ -156,6 +159,7 @@ def _data_base(text: Text) -> Images:
         if number + 1 < len(rows):
             return {}
         marks = {"positions_angstrom": b'"positions"', "energy_hartree": b'"energy"'}
+        marks["gradient_hartree_bohr"] = b'"forces"'
         key = next((key for key in _MODE_KEYS if key in rows[number].data), None)
         if key is not None:
             marks["wavenumbers_cm"] = f'"{key}"'.encode()
@@ -226,8 +230,13 @@ def _calculation(text: Text, images: Images, number: int, path: str, sha256: str
         raise text.error(0, "a position that is not finite, or a mass not above 0", mend=CUT_SHORT)
     energy = _energy(text, atoms)
     wavenumbers, modes, hessian = _vibrations(text, atoms, masses)
+    gradient = _gradient(text, atoms)
     lines = images.lines(number)
-    for name, value in (("energy_hartree", energy), ("wavenumbers_cm", wavenumbers)):
+    for name, value in (
+        ("energy_hartree", energy),
+        ("wavenumbers_cm", wavenumbers),
+        ("gradient_hartree_bohr", gradient),
+    ):
         if value is None:
             lines.pop(name, None)
     return Calculation(
@@ -244,6 +253,7 @@ def _calculation(text: Text, images: Images, number: int, path: str, sha256: str
         wavenumbers_cm=wavenumbers,
         modes=modes,
         hessian_hartree_bohr2=hessian,
+        gradient_hartree_bohr=gradient,
         kind_of_job=_kinds(energy, wavenumbers),
         where=lines,
     )
@@ -280,6 +290,22 @@ def _energy(text: Text, atoms: Atoms) -> float | None:
     return energy
 
 
+def _gradient(text: Text, atoms: Atoms) -> FloatArray | None:
+    """Return the gradient in hartree/bohr, None where the file has no forces."""
+    from ase.units import Bohr, Hartree
+
+    forces = None if atoms.calc is None else atoms.calc.results.get("forces")
+    if forces is None:
+        return None
+    try:
+        gradient = -np.asarray(forces, dtype=np.float64) / (Hartree / Bohr)
+    except (TypeError, ValueError):
+        gradient = np.full(1, math.nan)
+    if gradient.shape != (len(atoms), 3) or not np.all(np.isfinite(gradient)):
+        raise text.error(0, "forces: not three finite numbers an atom", mend=CUT_SHORT)
+    return gradient
+
+
 def _kinds(energy: float | None, wavenumbers: FloatArray | None) -> tuple[str, ...]:
     if wavenumbers is not None:
         return ("frequencies",)
@@ -295,6 +321,18 @@ def _vibrations(
     n = len(masses)
     listed = _floats(text, atoms, "frequencies")
     flat = _floats(text, atoms, "hessian")
+    along = _floats(text, atoms, "seam_frequencies")
+    if along is not None:
+        if (
+            listed is not None
+            or flat is not None
+            or len(along) != mode_lists.count(masses, atoms.positions) - 1
+        ):
+            raise text.error(
+                0, "seam_frequencies must be one less than the modes of the structure, and stand alone",
+                mend=_MEND_MODES,
+            )  # fmt: skip
+        return np.sort(along), None, None
     wavenumbers = None
     if listed is not None:
         try:

@@ -47,6 +47,12 @@ def no_energy(name: str, line: int | None, what: str) -> Finding:
     )
 
 
+def count(masses_u: FloatArray, positions_angstrom: FloatArray) -> int:
+    """Return how many vibrations a structure has: 3N-6, of a linear one 3N-5, of an atom none."""
+    kind = rotor_kind(masses_u, positions_angstrom)
+    return 3 * len(masses_u) - {"atom": 3, "linear": 5, "nonlinear": 6}[kind]
+
+
 def vibrations(
     wavenumbers_cm: FloatArray, masses_u: FloatArray, positions_angstrom: FloatArray
 ) -> NDArray[np.int64]:
@@ -66,8 +72,7 @@ def vibrations(
         words that fit a ReadError.
     """
     n = len(masses_u)
-    kind = rotor_kind(masses_u, positions_angstrom)
-    overall = {"atom": 3, "linear": 5, "nonlinear": 6}[kind]
+    overall = 3 * n - count(masses_u, positions_angstrom)
     order = np.argsort(wavenumbers_cm, kind="stable")
     if len(order) == 3 * n - overall:
         return order

@@ -2,7 +2,7 @@
 
 The schema is that of the Molecular Sciences Software Institute, as QCElemental 0.51 and Psi4 write
 it. Lengths are in bohr, energies in hartree. A Hessian is diagonalised here, translations and
-rotations projected out.
+rotations projected out; a gradient may stand beside it as `properties.return_gradient`.
 """
 
 from __future__ import annotations
@@ -85,6 +85,7 @@ def read(source: Source) -> Calculation:
         hessian = document.array(9 * len(numbers) ** 2, "return_result")
         hessian = hessian.reshape(3 * len(numbers), -1)
         modes = _modes(document, hessian, masses, positions)
+    gradient, gradient_keys = _gradient(document, driver, len(numbers))
     versioned = document.get("provenance", "version") is not None
     places = {
         "method": (*specification, "model", "method"),
@@ -97,7 +98,9 @@ def read(source: Source) -> Calculation:
         "program_version": ("provenance", "version"),
     }
     if modes is not None:
-        places["wavenumbers_cm"] = ("return_result",)
+        places["wavenumbers_cm"] = places["hessian_hartree_bohr2"] = ("return_result",)
+    if gradient is not None:
+        places["gradient_hartree_bohr"] = gradient_keys
     return Calculation(
         path=source.name,
         sha256=source.sha256,
@@ -117,6 +120,7 @@ def read(source: Source) -> Calculation:
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
         hessian_hartree_bohr2=hessian,
+        gradient_hartree_bohr=gradient,
         kind_of_job=(DRIVERS[driver],),
         where={
             name: document.line(*keys)
@@ -234,6 +238,16 @@ def _energy(document: Document, driver: str, method: str) -> tuple[float, tuple[
                     mend="the document is damaged; write it again",
                 )
     return energies[0], keys[0]
+
+
+def _gradient(
+    document: Document, driver: str, atoms: int
+) -> tuple[FloatArray | None, tuple[str, ...]]:
+    """Return the gradient and where it stands: the result, or a property beside a Hessian."""
+    keys = ("return_result",) if driver == "gradient" else ("properties", "return_gradient")
+    if document.get(*keys) is None:
+        return None, keys
+    return document.array(3 * atoms, *keys).reshape(-1, 3), keys
 
 
 def _check_repulsion(document: Document, numbers: NDArray[np.int64], positions: FloatArray) -> None:

@@ -1,7 +1,7 @@
 """Species: what stands in a mechanism, computed from outputs or declared, and its H, S and G.
 
 From left to right: ``ideal_gas`` has the numbers; ``masses``, ``modes``, ``energy`` and
-``electronic`` settle one structure, ``potentials``, ``torsion_modes``, ``torsions`` and
+``electronic`` settle one structure, ``seam`` a crossing point, ``potentials``, ``torsion_modes``, ``torsions`` and
 ``torsion_keys`` its hindered rotors; ``result`` is what is handed on, ``rows`` its tables;
 ``structure``, ``declared`` and ``direct`` are the ways in, ``many`` the one for thousands of
 structures at once.
@@ -23,6 +23,7 @@ from thermo_pp.species.result import (
     Thermochemistry,
     low_mode_spread_kj_mol,
 )
+from thermo_pp.species.seam import Seam, SeamPart
 from thermo_pp.species.structure import Structure
 from thermo_pp.species.torsion_keys import parse_torsions
 
@@ -32,6 +33,8 @@ __all__ = [
     "ElectronicEnergy",
     "EnergyPart",
     "SaddleMember",
+    "Seam",
+    "SeamPart",
     "SpeciesModel",
     "Structure",
     "Thermochemistry",

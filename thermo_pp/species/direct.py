@@ -22,12 +22,13 @@ from thermo_pp.names import (
     MASSES,
     PHASES,
     ROTORS,
-    Kind,
+    USED_AS,
     LowModes,
     Masses,
     NuclearSpins,
     Phase,
     Rotor,
+    UsedAs,
 )
 from thermo_pp.nearest import suggestion
 from thermo_pp.records import Calculation
@@ -53,7 +54,7 @@ def thermochemistry(
     zero_point_scale: float | None = None,
     enantiopure: bool = False,
     entropy_correction: Any = 0.0,
-    kind: Kind | None = None,
+    kind: UsedAs | None = None,
     energy: Calculation | None = None,
     charge: int | None = None,
     multiplicity: int | None = None,
@@ -88,8 +89,9 @@ def thermochemistry(
     enantiopure : bool
     entropy_correction : float, text or quantity
         Added to the entropy in solution, J/(mol K).
-    kind : {"minimum", "saddle"} or None
-        None: exactly one imaginary mode means saddle, with a note.
+    kind : {"minimum", "saddle", "crossing"} or None
+        None: exactly one imaginary mode means saddle, with a note. "crossing": a point where two spin
+        states cross, whose modes may be those along the seam, one less.
     energy : Calculation or None
         A single point of the same structure whose energy is taken.
     charge, multiplicity, levels, symmetry_number, isotopes, rotational_constants, nuclear_spins
@@ -127,7 +129,7 @@ def thermochemistry(
         entropy_correction_j_mol_k=_entropy_correction(entropy_correction, phase),
     )
     if kind is not None:
-        choice(kind, ("minimum", "saddle"), where=f"{call} kind")
+        choice(kind, USED_AS, where=f"{call} kind")
     structure = Structure.make(
         calculation,
         treatment,

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,7 +11,7 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.normal_modes import normal_modes
 from thermo_pp.formulas.partition import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
-from thermo_pp.names import Kind
+from thermo_pp.names import Kind, UsedAs
 from thermo_pp.records import Calculation
 from thermo_pp.species.ideal_gas import seal
 
@@ -30,7 +31,8 @@ class SortedModes:
     wavenumbers_cm : shape (m,)
         All of them, ascending, imaginary ones negative.
     reaction_coordinate : shape (m,), bool
-        The one mode of a saddle point that enters nothing.
+        The one mode of a saddle point that enters nothing; none where the modes are those along a
+        seam.
     made_real : shape (m,), bool
         Imaginary modes taken as real.
     replaced : shape (m,), int
@@ -65,7 +67,7 @@ class SortedModes:
 
     @property
     def imaginary_cm(self) -> float | None:
-        """The wavenumber of the reaction coordinate, negative; None for a minimum."""
+        """The wavenumber of the reaction coordinate, negative; None where no mode is one."""
         found = self.wavenumbers_cm[self.reaction_coordinate]
         return float(found[0]) if len(found) else None
 
@@ -76,23 +78,44 @@ def place(calculation: Calculation, key: str) -> str:
     return calculation.path if line is None else f"{calculation.path}:{line}"
 
 
-def wavenumbers(calculation: Calculation, masses_u: FloatArray, *, name: str) -> FloatArray:
+def mode_count(masses_u: FloatArray, positions_angstrom: FloatArray) -> int:
+    """Return how many modes a structure has: 3N-6, of a linear one 3N-5, of an atom none."""
+    n = len(masses_u)
+    return {"atom": 0, "linear": 3 * n - 5, "nonlinear": 3 * n - 6}[
+        rotor_kind(masses_u, positions_angstrom)
+    ]
+
+
+def wavenumbers(
+    calculation: Calculation, masses_u: FloatArray, used_as: UsedAs | None = None, *, name: str
+) -> FloatArray:
     """Return all wavenumbers with the given masses, ascending, imaginary ones negative.
 
     Those of the output where the masses are the output's or there is no Hessian; the caller makes
-    sure that this is what the user wants.
+    sure that this is what the user wants. Of a crossing point there may be one less: those along the
+    seam.
 
     Raises
     ------
     StudyError
-        No modes, or not 3N-6 (3N-5, 0) of them.
+        No modes, or not 3N-6 (3N-5, 0) of them; modes along a seam that cannot follow other masses.
     """
     n, positions = len(calculation.numbers), calculation.positions_angstrom
     found = calculation.wavenumbers_cm
     hessian = calculation.hessian_hartree_bohr2
+    expected = mode_count(masses_u, positions)
+    allowed = (expected, expected - 1) if used_as == "crossing" and n > 1 else (expected,)
+    along = found is not None and len(found) == expected - 1 and len(found) in allowed
     if hessian is not None and not (
         found is not None and np.array_equal(masses_u, calculation.masses_u)
     ):
+        if along:
+            raise StudyError(
+                f"{name}: the output has the modes along the seam for its own masses only",
+                where=place(calculation, "wavenumbers_cm"),
+                mend="give the other state, from which they are worked out for any masses: "
+                'seam = { other = "..." }; or leave the masses as they are',
+            )
         found = normal_modes(hessian, masses_u, positions).wavenumbers_cm
     if found is None:
         if n == 1:
@@ -102,19 +125,8 @@ def wavenumbers(calculation: Calculation, masses_u: FloatArray, *, name: str) ->
             where=calculation.path,
             mend="name the output of a frequency job; a single point can stand beside it as energy",
         )
-    kind = rotor_kind(masses_u, positions)
-    expected = {"atom": 0, "linear": 3 * n - 5, "nonlinear": 3 * n - 6}[kind]
-    if len(found) != expected:
-        what = f"{name}: {len(found)} modes where {_shape(kind, n)} has {expected}"
-        mend = "use a frequency job of the whole molecule"
-        if kind != "atom" and len(found) == 6 * n - 11 - expected:
-            width = distance_from_axis(masses_u, positions)
-            what += f"; its atoms lie up to {width:.3f} Å from the axis"
-            mend = (
-                f"optimise it more tightly: below {LINEAR_ANGSTROM} Å it counts as linear, and "
-                "modes and geometry must agree"
-            )
-        raise StudyError(what, where=place(calculation, "wavenumbers_cm"), mend=mend)
+    if len(found) not in allowed:
+        raise _wrong_count(calculation, masses_u, len(found), allowed, name)
     if np.any(found == 0.0):
         raise StudyError(
             f"{name}: a mode of 0 cm^-1, which has no finite entropy",
@@ -124,10 +136,34 @@ def wavenumbers(calculation: Calculation, masses_u: FloatArray, *, name: str) ->
     return np.sort(found)
 
 
+def _wrong_count(
+    calculation: Calculation,
+    masses_u: FloatArray,
+    count: int,
+    allowed: tuple[int, ...],
+    name: str,
+) -> StudyError:
+    """Return the error of another number of modes than a structure has."""
+    n, positions = len(masses_u), calculation.positions_angstrom
+    kind = rotor_kind(masses_u, positions)
+    what = f"{name}: {count} modes where {_shape(kind, n)} has {allowed[0]}"
+    if len(allowed) > 1:
+        what += f", along the seam at a crossing point {allowed[1]}"
+    mend = "use a frequency job of the whole molecule"
+    if kind != "atom" and count == 6 * n - 11 - allowed[0]:
+        width = distance_from_axis(masses_u, positions)
+        what += f"; its atoms lie up to {width:.3f} Å from the axis"
+        mend = (
+            f"optimise it more tightly: below {LINEAR_ANGSTROM} Å it counts as linear, and "
+            "modes and geometry must agree"
+        )
+    return StudyError(what, where=place(calculation, "wavenumbers_cm"), mend=mend)
+
+
 def sort_modes(
     calculation: Calculation,
     wavenumbers_cm: FloatArray,
-    kind: Kind | None,
+    used_as: UsedAs | None,
     real_below_cm: float | None,
     *,
     name: str,
@@ -135,8 +171,10 @@ def sort_modes(
     """Decide which imaginary mode is the reaction coordinate and which are taken as real.
 
     A minimum has no imaginary mode, a saddle point one: the largest. Any other stops the work,
-    unless it is smaller than `real_below_cm`. Where `kind` is None, one imaginary mode (not smaller
-    than that) means a saddle point, with a note.
+    unless it is smaller than `real_below_cm`. Where `used_as` is None, one imaginary mode (not smaller
+    than that) means a saddle point, with a note. At a crossing point the modes along the seam are one
+    less, none of them imaginary; where all are there, the imaginary one is taken for the motion across
+    the seam, with a finding.
 
     Raises
     ------
@@ -147,9 +185,9 @@ def sort_modes(
     sizes = np.abs(wavenumbers_cm)
     small = imaginary & (sizes < (real_below_cm or 0.0))
     findings: list[Finding] = []
-    asked = kind
     line = calculation.where.get("wavenumbers_cm")
-    if kind is None:
+    kind: Kind = "minimum" if used_as == "minimum" else "saddle"
+    if used_as is None:
         large = wavenumbers_cm[imaginary & ~small]
         kind = "saddle" if len(large) == 1 else "minimum"
         if kind == "saddle":
@@ -165,18 +203,20 @@ def sort_modes(
                 )
             )
     coordinate = np.zeros_like(imaginary)
-    if kind == "saddle":
+    along = used_as == "crossing" and len(wavenumbers_cm) < mode_count(
+        calculation.masses_u, calculation.positions_angstrom
+    )
+    if kind == "saddle" and not along:
         if not np.any(imaginary):
-            raise StudyError(
-                f"{name} is used as a saddle point, but has no imaginary mode",
-                where=place(calculation, "wavenumbers_cm"),
-                mend="name the output of a saddle point, or use it as a minimum",
-            )
+            raise _no_coordinate(calculation, used_as, name)
         coordinate[int(np.argmin(wavenumbers_cm))] = True
+        if used_as == "crossing":
+            findings.append(_coordinate_assumed(calculation, wavenumbers_cm[coordinate], name))
     extra = imaginary & ~coordinate
     refused = extra & ~small
     if np.any(refused):
-        raise _refusal(calculation, wavenumbers_cm, imaginary, refused, asked, real_below_cm, name)
+        role = "seam" if along else used_as
+        raise _refusal(calculation, wavenumbers_cm, imaginary, refused, role, real_below_cm, name)
     if np.any(extra):
         findings.append(
             Finding(
@@ -198,18 +238,24 @@ def _refusal(
     wavenumbers_cm: FloatArray,
     imaginary: NDArray[np.bool_],
     refused: NDArray[np.bool_],
-    kind: Kind | None,
+    role: UsedAs | Literal["seam"] | None,
     real_below_cm: float | None,
     name: str,
 ) -> StudyError:
-    """Return the error of imaginary modes that must not be there."""
+    """Return the error of imaginary modes that must not be there; "seam": of modes along it."""
     count = int(np.sum(imaginary))
     listed = _listed(wavenumbers_cm[imaginary])
     modes = f"{count} imaginary mode{'' if count == 1 else 's'} ({listed} cm^-1)"
-    if kind == "saddle":
+    if role == "saddle":
         what = f"{name} is a saddle point with {modes}; it must have exactly one"
         mend = "optimise it again along the smaller ones"
-    elif kind == "minimum":
+    elif role == "seam":
+        what = f"{name} is a crossing point with {modes} along the seam; it must have none there"
+        mend = "displace it along them and look for the lowest crossing again"
+    elif role == "crossing":
+        what = f"{name} is a crossing point with {modes}, of which one can be the motion across the seam"
+        mend = 'give the other state, from which that motion follows: seam = { other = "..." }'
+    elif role == "minimum":
         what = f"{name} is a minimum with {modes}; it must have none"
         mend = (
             "displace it along them and optimise again; a saddle point stands in a step's through"
@@ -224,6 +270,36 @@ def _refusal(
         real = f'imaginary = {{ real_below = "{int(largest) + 1} cm^-1" }}'
         mend += f"; if they are numerical noise, take them as real: {real}"
     return StudyError(what, where=place(calculation, "wavenumbers_cm"), mend=mend)
+
+
+def _no_coordinate(calculation: Calculation, used_as: UsedAs | None, name: str) -> StudyError:
+    """Return the error of a saddle or crossing point without an imaginary mode."""
+    where = place(calculation, "wavenumbers_cm")
+    if used_as != "crossing":
+        return StudyError(
+            f"{name} is used as a saddle point, but has no imaginary mode",
+            where=where,
+            mend="name the output of a saddle point, or use it as a minimum",
+        )
+    return StudyError(
+        f"{name} is used as a crossing point, but no mode shows which motion leads across the seam",
+        where=where,
+        mend='give the other state, from which it follows: seam = { other = "..." }, or an output '
+        "whose modes are those along the seam, one less",
+    )
+
+
+def _coordinate_assumed(calculation: Calculation, imaginary_cm: FloatArray, name: str) -> Finding:
+    """Return the finding that an imaginary mode stands for the motion across the seam."""
+    return Finding(
+        code="crossing-coordinate-assumed",
+        severity="warning",
+        file=calculation.path,
+        line=calculation.where.get("wavenumbers_cm"),
+        what=f"{name}: its imaginary mode ({_listed(imaginary_cm)} cm^-1) is taken for the motion across "
+        "the seam, and its other modes for those along it, from the Hessian of one state",
+        mend='give the other state: seam = { other = "..." }; then both follow from the gradients',
+    )
 
 
 def _listed(wavenumbers_cm: FloatArray) -> str:

@@ -201,7 +201,7 @@ _NO_MODES = ModeTable(_NONE, _NONE, (), _NONE, _NONE, _NONE, _NONE, _NONE)
 
 @dataclass(frozen=True, eq=False)
 class SaddleMember:
-    """One structure that a saddle point consists of, as tunnelling needs it.
+    """One structure that a saddle point consists of, as tunnelling and crossing need it.
 
     Attributes
     ----------
@@ -211,12 +211,16 @@ class SaddleMember:
         Size of the imaginary wavenumber, above 0, not scaled; None where it is not known.
     ground_kj_mol : float or None
         Electronic and zero-point energy; None where it is not known.
+    across : tuple of float or None
+        Of a crossing point whose other state is known: size of the difference of the gradients, N,
+        and reduced mass along it, kg.
     """
 
     gibbs_kj_mol: FloatArray
     slope_enthalpy_kj_mol: FloatArray
     imaginary_cm: float | None
     ground_kj_mol: float | None
+    across: tuple[float, float] | None = None
 
 
 class SpeciesModel(Protocol):

@@ -14,8 +14,9 @@ from thermo_pp.conditions import StandardState, Treatment
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.partition import RigidRotor
+from thermo_pp.formulas.seam import CrossingCoordinate
 from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
-from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin
+from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin, UsedAs
 from thermo_pp.records import Calculation
 from thermo_pp.species.electronic import electronic_energy, electronic_levels, settled_charge
 from thermo_pp.species.energy import Added, ElectronicEnergy, added_shares
@@ -26,8 +27,9 @@ from thermo_pp.species.potentials import TorsionChoice, torsion_note
 from thermo_pp.species.result import SaddleMember, Thermochemistry
 from thermo_pp.species.rotors import settled_rotor
 from thermo_pp.species.rows import mode_table, part_rows
+from thermo_pp.species.seam import NEWTON, Seam, along_seam
 from thermo_pp.species.torsions import Torsion, settle_torsions
-from thermo_pp.units import GAS_J_MOL_K, HARTREE_KJ_MOL
+from thermo_pp.units import ATOMIC_MASS_KG, GAS_J_MOL_K, HARTREE_KJ_MOL
 
 FloatArray = NDArray[np.float64]
 
@@ -66,6 +68,8 @@ class Structure:
     files : tuple of str
     findings : tuple of Finding
     torsions : tuple of Torsion
+    seam : Seam or None
+        Of a crossing point whose other state is known.
     """
 
     name: str
@@ -87,6 +91,7 @@ class Structure:
     files: tuple[str, ...]
     findings: tuple[Finding, ...] = field(default=())
     torsions: tuple[Torsion, ...] = ()
+    seam: Seam | None = None
 
     def __post_init__(self) -> None:
         seal(self)
@@ -103,7 +108,7 @@ class Structure:
 
     @property
     def imaginary_cm(self) -> float | None:
-        """Wavenumber of a saddle point's reaction coordinate, negative; None for a minimum."""
+        """Wavenumber of a saddle point's reaction coordinate, negative; None where no mode is one."""
         return self.modes.imaginary_cm
 
     @property
@@ -114,18 +119,29 @@ class Structure:
         return self.energy_hartree * HARTREE_KJ_MOL + zero_point / 1000.0
 
     def saddle_members(self, temperature_k: ArrayLike) -> tuple[SaddleMember, ...]:
-        """Return what tunnelling needs of a saddle point; nothing for a minimum."""
-        if self.modes.imaginary_cm is None:
+        """Return what tunnelling and crossing need of a saddle point; nothing for a minimum."""
+        if self.kind != "saddle":
             return ()
-        found = self.at(temperature_k)
+        found, imaginary_cm = self.at(temperature_k), self.modes.imaginary_cm
+        across = self.crossing_coordinate
         return (
             SaddleMember(
                 found.gibbs_kj_mol,
                 found.slope_enthalpy_kj_mol,
-                -self.modes.imaginary_cm,
+                None if imaginary_cm is None else -imaginary_cm,
                 self.ground_kj_mol,
+                None
+                if across is None
+                else (across.slope * NEWTON, across.reduced_mass_u * ATOMIC_MASS_KG),
             ),
         )
+
+    @property
+    def crossing_coordinate(self) -> CrossingCoordinate | None:
+        """The motion across the seam of a crossing point whose other state is known, hartree/bohr."""
+        if self.seam is None:
+            return None
+        return self.seam.coordinate(self.masses_u, self.calculation.positions_angstrom)
 
     @classmethod
     def make(
@@ -134,7 +150,7 @@ class Structure:
         treatment: Treatment,
         *,
         name: str,
-        kind: Kind | None = None,
+        kind: UsedAs | None = None,
         energy: Calculation | ElectronicEnergy | None = None,
         charge: int | None = None,
         multiplicity: int | None = None,
@@ -144,6 +160,7 @@ class Structure:
         rotational_constants: Mapping[str, Any] | None = None,
         nuclear_spins: NuclearSpins | None = None,
         torsions: Sequence[TorsionChoice] = (),
+        seam: Seam | None = None,
         where: str = "",
     ) -> Structure:
         """Check one calculation and settle its masses, modes, rotor, symmetry and levels.
@@ -154,8 +171,8 @@ class Structure:
             A frequency job; of a single atom any job.
         treatment : Treatment
         name : str
-        kind : {"minimum", "saddle"} or None
-            None: one imaginary mode means saddle, with a note.
+        kind : {"minimum", "saddle", "crossing"} or None
+            None: one imaginary mode means saddle, with a note. A crossing point becomes a saddle point.
         energy : Calculation, ElectronicEnergy or None
             A single point whose energy is taken, or an energy of parts; that it is the same
             structure is checked by the pairing, here only that a single point has the same atoms.
@@ -174,6 +191,8 @@ class Structure:
             Of H2, D2 and T2: at equilibrium unless given.
         torsions : sequence of TorsionChoice
             Hindered rotors, each in place of a mode.
+        seam : Seam or None
+            Of a crossing point: its modes are those along it.
         where : str
             File and key of the study, or option, for messages.
 
@@ -194,8 +213,9 @@ class Structure:
         )
         masses = chosen_masses(calculation, treatment.masses, isotopes, where=where)
         notes += mass_findings(calculation, masses, isotopes, name, where)
-        found = wavenumbers(calculation, masses, name=name)
-        modes = sort_modes(calculation, found, kind, treatment.real_below_cm, name=name)
+        along = along_seam(calculation, seam, masses)
+        found = wavenumbers(along, masses, kind, name=name)
+        modes = sort_modes(along, found, kind, treatment.real_below_cm, name=name)
         symmetry = rotational_symmetry(calculation.numbers, calculation.positions_angstrom, masses)
         sigma = symmetry.order
         if symmetry_number is not None:
@@ -218,7 +238,7 @@ class Structure:
         )
         notes += doubts
         electronic = electronic_energy(calculation, energy, name)
-        turning = settle_torsions(torsions, calculation, masses, modes, symmetry.chiral, name=name)
+        turning = settle_torsions(torsions, along, masses, modes, symmetry.chiral, name=name)
         modes, inside = turning.modes, any(one.holds_both_hands for one in turning.torsions)
         hands = 2 if symmetry.chiral and not (treatment.enantiopure or inside) else 1
         if inside and treatment.enantiopure:
@@ -266,11 +286,18 @@ class Structure:
                         calculation.path,
                         *electronic.files,
                         *(file for choice in torsions for file in choice.files),
+                        *(() if seam is None else seam.files),
                     )
                 )
             ),
-            findings=(*notes, *modes.findings, *turning.findings),
+            findings=(
+                *notes,
+                *modes.findings,
+                *turning.findings,
+                *(() if seam is None else seam.findings),
+            ),
             torsions=turning.torsions,
+            seam=seam,
         )
 
     def at(

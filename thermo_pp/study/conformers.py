@@ -12,6 +12,7 @@ from thermo_pp.ensemble import Ensemble
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.names import Duplicates
 from thermo_pp.study.check import check_keys
+from thermo_pp.study.crossings import crossing_points
 from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.load import read_data
 from thermo_pp.study.members import make_species
@@ -72,7 +73,8 @@ def conformers_of(
         level = given(keys.level)
     else:
         known_level(keys, level, file)
-    members = make_species(keys, own, saddles, file, level=level)
+    crossings = crossing_points(keys.steps, file)
+    members = make_species(keys, own, saddles, file, crossings=crossings, level=level)
     ensembles = [model for model in members.species.values() if isinstance(model, Ensemble)]
     if not ensembles:
         raise StudyError(

@@ -25,6 +25,7 @@ from thermo_pp.rich import shown
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
 from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
+from thermo_pp.study.crossings import crossing_points
 from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
@@ -182,6 +183,7 @@ class Study:
             own,
             saddles,
             file,
+            crossings=crossing_points(keys.steps, file),
             level=level,
             read=origin.read,
             lowest_only=origin.lowest_only,

@@ -22,6 +22,7 @@ _READ_ONLY = (
     "rotational_constants",
     "nuclear_spins",
     "torsions",
+    "seam",
     "imaginary",
     "entropy_correction",
 )

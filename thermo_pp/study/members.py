@@ -12,7 +12,7 @@ from thermo_pp.audit.scaling import scale_findings, scale_words
 from thermo_pp.conditions import Treatment
 from thermo_pp.energies.recipe import CheckedEnergy, recipe_findings
 from thermo_pp.errors import Finding, StudyError, each_once
-from thermo_pp.names import Kind
+from thermo_pp.names import Kind, UsedAs
 from thermo_pp.nearest import suggestion
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel, solution_finding
@@ -60,6 +60,7 @@ class _Maker:
 
     structures: Structures
     saddles: Collection[str]
+    crossings: Collection[str]
     lowest_only: bool
     done: dict[str, SpeciesModel] = field(default_factory=dict)
 
@@ -70,6 +71,7 @@ def make_species(
     saddles: Collection[str],
     file: str,
     *,
+    crossings: Collection[str] = (),
     level: str | None = None,
     read: dict[str, Calculation] | None = None,
     lowest_only: bool = False,
@@ -85,6 +87,8 @@ def make_species(
         Names of the saddle points.
     file : str
         The study file.
+    crossings : collection of str
+        Those of the saddle points at which spin states cross.
     level : str or None
         The named level of theory whose energies are taken; None: the species' own.
     read : dict or None
@@ -101,7 +105,7 @@ def make_species(
     """
     outputs = Outputs.of(keys.outputs, file, {} if read is None else read)
     structures = Structures(keys, treatment, file, outputs, level)
-    maker = _Maker(structures, saddles, lowest_only)
+    maker = _Maker(structures, saddles, crossings, lowest_only)
     for name, member in keys.species.items():
         check_member(name, member, keys.species, file)
     for name in keys.species:
@@ -112,10 +116,11 @@ def make_species(
         found += [
             one for one in calc.findings if one.code != "ghost-atoms" or calc.path not in meant
         ]
-        found += audit_alone(calc)
+        not_here = structures.not_plain.get(calc.path, ())
+        found += [one for one in audit_alone(calc) if one.code not in not_here]
     found += structures.findings
     found += [finding for model in maker.done.values() for finding in model.findings]
-    found += level_findings([*structures.frequencies.values()], "frequencies")
+    found += level_findings([*structures.frequencies.values(), *structures.seams], "frequencies")
     found += recipe_findings(structures.energies, file)
     found += scale_findings(treatment, [*structures.frequencies.values()], file)
     found += _same_file(structures.frequencies, file)
@@ -157,9 +162,10 @@ def _make(maker: _Maker, name: str, on_the_way: tuple[str, ...]) -> SpeciesModel
         else made.standard_state(state, where=f"{where} standard_state")
     )
     kind: Kind = "saddle" if name in maker.saddles else "minimum"
+    used_as: UsedAs = "crossing" if name in maker.crossings else kind
     model: SpeciesModel
     if given(member.conformers) is not None:
-        model = _ensemble(maker, name, member, kind, standard_state)
+        model = _ensemble(maker, name, member, used_as, standard_state)
     elif given(member.composition) is not None:
         model = declare(
             name,
@@ -170,7 +176,7 @@ def _make(maker: _Maker, name: str, on_the_way: tuple[str, ...]) -> SpeciesModel
             _reference(maker, name, member, where, on_the_way),
         )
     else:
-        model = species_structure(maker.structures, name, member, kind, standard_state)
+        model = species_structure(maker.structures, name, member, used_as, standard_state)
     maker.done[name] = model
     return model
 
@@ -179,7 +185,7 @@ def _ensemble(
     maker: _Maker,
     name: str,
     member: SpeciesKeys,
-    kind: Kind,
+    used_as: UsedAs,
     standard_state: made.StandardState,
 ) -> SpeciesModel:
     """Make the conformers of a species as single species are made, and their ensemble."""
@@ -187,13 +193,14 @@ def _ensemble(
     def structure(label: str, keys: ConformerKeys, reading: Reading, at: str) -> SpeciesModel:
         correction = given(member.entropy_correction)
         return make_structure(
-            maker.structures, label, keys, reading, kind, standard_state, at, correction
+            maker.structures, label, keys, reading, used_as, standard_state, at, correction
         )
 
     def energy(label: str, keys: ConformerKeys, calc: Calculation, at: str) -> CheckedEnergy:
         return conformer_energy(maker.structures, name, label, keys, calc, at)
 
     def declared(label: str, keys: ConformerKeys, at: str) -> SpeciesModel:
+        kind: Kind = "minimum" if used_as == "minimum" else "saddle"
         return declare(label, keys, kind, standard_state, at)
 
     making = Making(

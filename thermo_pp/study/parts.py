@@ -18,6 +18,7 @@ from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase, Tunnelling
 from thermo_pp.nearest import suggestion
 from thermo_pp.rate_laws import Arrhenius
 from thermo_pp.study.check import place
+from thermo_pp.study.crossings import make_crossing
 from thermo_pp.study.keys import (
     ConditionsKeys,
     Quantity,
@@ -28,7 +29,6 @@ from thermo_pp.study.keys import (
 )
 from thermo_pp.study.rate_laws import (
     make_arrhenius,
-    make_crossing,
     make_falloff,
     make_height,
     rate_unit,

@@ -9,20 +9,18 @@ from pathlib import Path
 
 from thermo_pp.audit.levels import level_words
 from thermo_pp.errors import StudyError
-from thermo_pp.rate_laws import Arrhenius, Crossing, Falloff, Height
+from thermo_pp.rate_laws import Arrhenius, Falloff, Height
 from thermo_pp.readers import read_source
 from thermo_pp.sources import open_source
 from thermo_pp.study.files import inside
 from thermo_pp.study.keys import (
     ArrheniusKeys,
-    CrossingKeys,
     FalloffKeys,
-    LandauZenerKeys,
     Quantity,
     ScanKeys,
     StepKeys,
 )
-from thermo_pp.units import AVOGADRO_MOL, HARTREE_KJ_MOL, WAVENUMBER_KJ_MOL, convert, quantity
+from thermo_pp.units import HARTREE_KJ_MOL, convert, quantity
 
 _HEADING = re.compile(r"\s*energy\s*/\s*(.+?)\s*")
 _HEAD_MEND = 'name the column and its unit in the first line: "energy / kJ mol^-1"'
@@ -215,72 +213,3 @@ def _maximum(points: list[tuple[float, str]], where: str) -> tuple[float, str]:
             else "go on with the scan until the energy falls",
         )
     return points[best][0] - points[0][0], points[best][1]
-
-
-def make_crossing(keys: StepKeys, where: str) -> Crossing | None:
-    """Turn ``kind`` and ``crossing`` into a Crossing, None where the step is none.
-
-    Raises
-    ------
-    StudyError
-        One without the other, no crossing point, tunnelling on top, or not exactly one of
-        transmission and landau_zener.
-    """
-    one = keys.crossing
-    is_crossing = keys.kind == "crossing"
-    if isinstance(one, CrossingKeys) != is_crossing:
-        raise StudyError(
-            "a crossing without its probability" if is_crossing else "the step is no crossing",
-            where=f"{where} crossing",
-            mend='write kind = "crossing" and crossing = { transmission = 0.01 }, or '
-            "crossing = { landau_zener = { ... } }",
-        )
-    if not isinstance(one, CrossingKeys):
-        return None
-    at = f"{where} crossing"
-    if not isinstance(keys.through, str):
-        raise StudyError(
-            "a crossing goes through no point",
-            where=f"{where} through",
-            mend='name the crossing point, a species of this file: through = "MECP"',
-        )
-    if keys.tunnelling in ("wigner", "eckart"):
-        raise StudyError(
-            "nothing tunnels at a crossing point",
-            where=f"{where} tunnelling",
-            mend="take the key out: the probability is that of crossing",
-        )
-    declared = isinstance(one.transmission, float | int)
-    law = one.landau_zener
-    if declared == isinstance(law, LandauZenerKeys):
-        raise StudyError(
-            "both transmission and landau_zener"
-            if declared
-            else "neither transmission nor landau_zener",
-            where=at,
-            mend="give exactly one of the two",
-        )
-    if isinstance(one.transmission, float | int):
-        if one.transmission > 1.0:
-            raise StudyError(
-                f"the transmission {one.transmission:g} is above 1",
-                where=f"{at}.transmission",
-                mend="a probability is at most 1",
-            )
-        return Crossing(float(one.transmission))
-    assert isinstance(law, LandauZenerKeys)
-    given = {
-        name: abs(quantity(getattr(law, name), unit, where=f"{at}.landau_zener.{name}"))
-        for name, unit in (
-            ("spin_orbit", "1/cm"),
-            ("gradient_difference", "N"),
-            ("reduced_mass", "kg"),
-        )
-    }
-    for name, value in given.items():
-        if value == 0.0:
-            raise StudyError(
-                f"{name} is 0", where=f"{at}.landau_zener.{name}", mend="write a value above 0"
-            )
-    joule = given["spin_orbit"] * WAVENUMBER_KJ_MOL * 1000.0 / AVOGADRO_MOL
-    return Crossing(None, joule, given["gradient_difference"], given["reduced_mass"])

@@ -8,7 +8,7 @@ from typing import Any
 from thermo_pp.conditions import StandardState, Treatment
 from thermo_pp.energies.recipe import CheckedEnergy
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.names import Kind
+from thermo_pp.names import UsedAs
 from thermo_pp.records import Calculation
 from thermo_pp.species import Structure
 from thermo_pp.study.check import place
@@ -24,7 +24,11 @@ from thermo_pp.study.keys import (
 )
 from thermo_pp.study.outputs import Outputs
 from thermo_pp.study.parts import entropy_correction, given, real_below
+from thermo_pp.study.seams import make_seam
 from thermo_pp.study.torsions import make_torsions
+
+SEAM_DOUBTS = {"mode-count", "imaginary-modes", "small-imaginary-mode"}
+"""What the audit says of modes, where the modes of one state do not count."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -47,6 +51,10 @@ class Structures:
         By structure; those that are lent from another conformer left out.
     energies : dict of str to CheckedEnergy
         By structure.
+    seams : list of Calculation
+        Outputs that the seams of crossing points stand on beside their frequency jobs.
+    not_plain : dict of str to set of str
+        By path of an output at a crossing point: the doubts of the audit that do not hold there.
     """
 
     keys: StudyKeys
@@ -57,13 +65,15 @@ class Structures:
     findings: list[Finding] = field(default_factory=list)
     frequencies: dict[str, Calculation] = field(default_factory=dict)
     energies: dict[str, CheckedEnergy] = field(default_factory=dict)
+    seams: list[Calculation] = field(default_factory=list)
+    not_plain: dict[str, set[str]] = field(default_factory=dict)
 
 
 def species_structure(
     structures: Structures,
     name: str,
     member: SpeciesKeys,
-    kind: Kind,
+    kind: UsedAs,
     standard_state: StandardState,
 ) -> Structure:
     """Make a species of one structure of the outputs that it names."""
@@ -113,7 +123,7 @@ def make_structure(
     name: str,
     member: StructureKeys,
     reading: Reading,
-    kind: Kind,
+    kind: UsedAs,
     standard_state: StandardState,
     where: str,
     correction: Quantity | None,
@@ -132,6 +142,23 @@ def make_structure(
     if reading.lent is None:
         structures.frequencies[name] = calc
     structures.energies[name] = energy
+    seam_keys, seam = given(member.seam), None
+    if kind == "crossing":
+        structures.not_plain[calc.path] = {"mode-count"}
+    if seam_keys is not None:
+        at = f"{where} seam"
+        if kind != "crossing":
+            raise StudyError(
+                f"{name} has a seam, but no step crosses between spin states there",
+                where=at,
+                mend='write kind = "crossing" in the step that goes through it, or take the key out',
+            )
+        seam, others = make_seam(
+            seam_keys, calc, given(member.multiplicity), structures.outputs, name=name, where=at
+        )
+        structures.seams.extend(others)
+        for one in (calc, *others):
+            structures.not_plain[one.path] = SEAM_DOUBTS
     return Structure.make(
         calc if reading.lent is None else reading.lent.calculation,
         treatment,
@@ -151,6 +178,7 @@ def make_structure(
             structures.outputs.source,
             f"{where} torsions".strip(),
         ),
+        seam=seam,
         where=where,
     )
 

@@ -21,7 +21,7 @@ def moved(base: Rates, uncertainty: Uncertainty, shift_kj_mol: FloatArray) -> Ra
     """Return the rates of n sets of shifted energies at t temperatures, as a batch of n t.
 
     An energy is shifted wherever it counts: in its own free energy, and in the effective saddle of a
-    limit or a declared rate constant that starts from it. Tunnelling factors stay as they are.
+    limit or a declared rate constant that starts from it. Tunnelling and crossing factors stay as they are.
 
     Parameters
     ----------
@@ -49,8 +49,8 @@ def moved(base: Rates, uncertainty: Uncertainty, shift_kj_mol: FloatArray) -> Ra
         energies.grounds_kj_mol,
         {},
     )
-    kappa = np.tile(base.steps.log_kappa, (n, 1)), np.tile(base.steps.kappa_energy_j_mol, (n, 1))
-    steps = elementary_rates(model.mechanism, batch, model.treatment, model.conditions, kappa)
+    factors = base.steps.repeated_factors(n)
+    steps = elementary_rates(model.mechanism, batch, model.treatment, model.conditions, factors)
     if by_step.any():
         over_rt = np.broadcast_to(
             _over_rt(by_step, energies.temperature_k), (n, t, by_step.shape[1])

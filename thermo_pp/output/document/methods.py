@@ -118,6 +118,13 @@ def _structures(answers: Answers, found: tuple[Shape, ...]) -> Iterator[Paragrap
             "potential stand in the place of one mode.",
             ("Pitzer1942",),
         )
+    if any(model.seam is not None for model in models):
+        yield Paragraph(
+            "At crossing points of spin states the vibrations are those along the seam: translations, "
+            "rotations and the difference of the gradients of both states were projected out of the "
+            "Hessian that belongs to it.",
+            ("HarveyAschi1999",),
+        )
     if any(isinstance(model, Ensemble) for model in answers.study.species.values()):
         yield Paragraph(
             "Species with several conformers (or spin states) are mixtures of them in equilibrium, the "

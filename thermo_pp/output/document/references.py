@@ -84,6 +84,9 @@ _KNOWN = (
         "10.1039/D1SC00621E",
     ),
     _article("Pitzer1942", "K. S. Pitzer, W. D. Gwinn", "J. Chem. Phys.", 1942, "10", "428"),
+    _article(
+        "HarveyAschi1999", "J. N. Harvey, M. Aschi", "Phys. Chem. Chem. Phys.", 1999, "1", "5555"
+    ),
     _article("Eyring1935", "H. Eyring", "J. Chem. Phys.", 1935, "3", "107"),
     _article("Evans1935", "M. G. Evans, M. Polanyi", "Trans. Faraday Soc.", 1935, "31", "875"),
     _article("Alvarez2013", "S. Alvarez", "Dalton Trans.", 2013, "42", "8617"),

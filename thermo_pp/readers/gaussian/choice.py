@@ -97,7 +97,10 @@ def choose(text: Text, found: list[Step]) -> Chosen:
                 mend="rerun the frequency job without them",
             )
         if first_mode >= 0:
-            modes = vibrations.vibrations(base.part, first_mode, len(shape.numbers))
+            count = len(shape.numbers)
+            modes = vibrations.vibrations(
+                base.part, first_mode, count, projected=base.asks_projection
+            )
     else:
         own = energies.energy(base, len(places) - 1, places)
         shape = _shape_before(base, blocks, places[-1])

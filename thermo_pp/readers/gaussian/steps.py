@@ -38,6 +38,7 @@ _CHARGE = re.compile(rb"\n Charge = *(-?\d+) +Multiplicity = *(\d+)")
 _ARCHIVES = (b"\n 1\\1\\", b"\n 1|1|")
 _OPT = re.compile(r"(?<![\w=(-])(?:f?opt|popt)\b", re.IGNORECASE)  # not stable=opt
 _FREQ = re.compile(r"(?<![\w-])freq\b", re.IGNORECASE)
+_PROJECTED = re.compile(r"(?<![\w-])freq\w* *=? *\(?[^ )]*projected", re.IGNORECASE)
 _BOTH = re.compile(r"(?<![\w/-])(?:g[1-4](?:mp2)?\w*|cbs-\w+|w1\w*)\b", re.IGNORECASE)
 _PATH = re.compile(r"(?<![\w-])(?:bomd|admp|trajectory)\b", re.IGNORECASE)
 _SEVERAL = re.compile(r"(?<![\w-])(?:irc\w*|scan)\b", re.IGNORECASE)
@@ -134,6 +135,11 @@ class Step:
         if not self.route:
             return self.part.has(_STOPPED)
         return _OPT.search(self.route) is not None
+
+    @property
+    def asks_projection(self) -> bool:
+        """Whether the route asks for modes without the direction of the gradient."""
+        return _PROJECTED.search(self.route) is not None
 
     @cached_property
     def asks_frequencies(self) -> bool:

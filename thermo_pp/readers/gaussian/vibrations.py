@@ -101,8 +101,8 @@ def sets(step: Step) -> list[int]:
     return step.part.all(_SETS) if asked else []
 
 
-def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
-    """Return the modes that are printed from `first` on.
+def vibrations(part: Text, first: int, atoms: int, *, projected: bool = False) -> Vibrations:
+    """Return the modes that are printed from `first` on; one less may be there where `projected`.
 
     Raises
     ------
@@ -116,7 +116,7 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
     own = part.part(first, end)
     fine = own.has(_FINE_TABLE)
     found = _fine_set(own, atoms) if fine else _set(own, atoms)
-    _check(part, found, atoms)
+    _check(part, found, atoms, projected)
     if fine and following >= 0:
         second = _numbers(part.part(following, thermo if thermo >= 0 else None), fine=False)[0]
         if len(second) == 0 or not np.array_equal(np.sort(second), found.wavenumbers_cm):
@@ -128,7 +128,7 @@ def vibrations(part: Text, first: int, atoms: int) -> Vibrations:
     return found
 
 
-def _check(part: Text, found: Vibrations, atoms: int) -> None:
+def _check(part: Text, found: Vibrations, atoms: int, projected: bool) -> None:
     listed = part.part(found.at).line_match(_TEMPERATURES, b"\n Vibrational temperature")
     if listed is not None:
         count = len(re.findall(rb"\d+\.\d+", listed.group(1)))
@@ -139,6 +139,8 @@ def _check(part: Text, found: Vibrations, atoms: int) -> None:
                 mend="the output is damaged; rerun or re-copy it",
             )
     expected = {1: (0,), 2: (1,)}.get(atoms, (3 * atoms - 6, 3 * atoms - 5))
+    if projected:
+        expected = (*(count - 1 for count in expected if count), *expected)
     if len(found.wavenumbers_cm) not in expected:
         raise part.error(
             found.at,

@@ -10,6 +10,8 @@ What is taken of a file with several tasks
 - Without one: the geometry of the last task, its energy, or a higher correlated one of an earlier task at the same
   geometry, charge and multiplicity.
 
+The gradient is that of a gradient task at the same geometry and with the same energy.
+
 Formats were checked on NWChem 7.0.2.
 """
 
@@ -23,7 +25,7 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
-from thermo_pp.readers.nwchem import geometry, joined, levels, states, tasks, vibrations
+from thermo_pp.readers.nwchem import geometry, gradients, joined, levels, states, tasks, vibrations
 from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
 from thermo_pp.readers.nwchem.states import State
@@ -92,6 +94,9 @@ def read(source: Source) -> Calculation:
     doubts = [_passed_over(*reason) for reason in passed_over]
     if taken is not None:
         at |= taken.level.at | {"energy_hartree": taken.energy.at}
+    slope = None if taken is None else gradients.gradient(text, blocks, all_tasks, taken)
+    if slope is not None:
+        at["gradient_hartree_bohr"] = slope[1]
     run = _own_run(blocks, all_tasks, main, shape)
     optimised = None
     if run is not None:
@@ -149,6 +154,7 @@ def read(source: Source) -> Calculation:
         wavenumbers_cm=None if modes is None else modes.wavenumbers_cm,
         modes=None if modes is None else modes.modes,
         hessian_hartree_bohr2=hessian,
+        gradient_hartree_bohr=None if slope is None else slope[0][real],
         optimised=optimised,
         ended_normally=text.last(tasks.END) >= 0,
         kind_of_job=_kinds(all_tasks),

@@ -129,7 +129,7 @@ def best(
         later = task.start > main.start or own is None
         if task is main or not (later or _may_be_better(text, task, own)):
             continue
-        reason = _unusable(text, task)
+        reason = unusable(text, task)
         if reason is not None:
             passed_over.append(reason)
             continue
@@ -159,7 +159,7 @@ def _half_known(one: State, other: State) -> bool:
     return any((mine is None) != (theirs is None) for mine, theirs in pairs)
 
 
-def _unusable(text: Text, task: Task) -> tuple[int, str] | None:
+def unusable(text: Text, task: Task) -> tuple[int, str] | None:
     """Return where and why a task has no energy to be used although the file is whole, None where it has one."""
     module = tasks.unknown(task)
     if module is not None:

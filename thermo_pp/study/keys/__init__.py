@@ -35,7 +35,7 @@ from thermo_pp.study.keys.rate_laws import (
 )
 from thermo_pp.study.keys.species import ConformerFileKeys, ConformerKeys, SpeciesKeys
 from thermo_pp.study.keys.steps import ReactionKeys, StepKeys
-from thermo_pp.study.keys.structure import StructureKeys, TorsionKeys
+from thermo_pp.study.keys.structure import SeamKeys, StructureKeys, TorsionKeys
 from thermo_pp.study.keys.treatment import RealBelowKeys, TreatmentKeys
 
 __all__ = [
@@ -59,6 +59,7 @@ __all__ = [
     "RealBelowKeys",
     "ReferenceKeys",
     "ScanKeys",
+    "SeamKeys",
     "SolvationKeys",
     "SpeciesKeys",
     "StepKeys",

@@ -65,9 +65,18 @@ class LandauZenerKeys(Keys, frozen=True, kw_only=True):
 
     spin_orbit: Annotated[Quantity, Meta(description="spin-orbit coupling at the crossing / cm^-1")]
     gradient_difference: Annotated[
-        str, Meta(description='size of the difference of the gradients, "0.05 hartree/bohr"')
-    ]
-    reduced_mass: Annotated[str, Meta(description='reduced mass along it, "12 u"')]
+        str | UnsetType,
+        Meta(
+            description='size of the difference of the gradients, "0.05 hartree/bohr"; that of the '
+            "crossing point's `seam` unless given"
+        ),
+    ] = UNSET
+    reduced_mass: Annotated[
+        str | UnsetType,
+        Meta(
+            description='reduced mass along it, "12 u"; that of the crossing point\'s `seam` unless given'
+        ),
+    ] = UNSET
 
 
 class CrossingKeys(Keys, frozen=True, kw_only=True):

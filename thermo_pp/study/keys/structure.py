@@ -74,6 +74,43 @@ class TorsionKeys(Keys, frozen=True, kw_only=True):
     ] = UNSET
 
 
+Vectors = Annotated[list[tuple[Quantity, Quantity, Quantity]], Meta(min_length=1)]
+
+
+class SeamKeys(Keys, frozen=True, kw_only=True):
+    """The other spin state at a crossing point, so that the modes along the seam can be worked out."""
+
+    other: Annotated[
+        str | UnsetType,
+        Meta(
+            description="output of the other state at the same geometry, best its frequency job; or "
+            "`gradient_difference`"
+        ),
+    ] = UNSET
+    gradients: Annotated[
+        tuple[str | Vectors, str | Vectors] | UnsetType,
+        Meta(
+            description="gradients of the state of `frequencies` and of `other`, where these outputs do "
+            "not hold them: outputs, or three numbers an atom in the order and orientation of "
+            "`frequencies` / hartree/bohr"
+        ),
+    ] = UNSET
+    gradient_difference: Annotated[
+        Vectors | UnsetType,
+        Meta(
+            description="gradient of the state of `frequencies` less that of the other one, three "
+            "numbers an atom, where nothing else is known of the other state / hartree/bohr"
+        ),
+    ] = UNSET
+    multiplicity: Annotated[
+        Whole | UnsetType,
+        Meta(
+            description="spin multiplicity of the other state, where its output does not say it, or where "
+            "both states have the same"
+        ),
+    ] = UNSET
+
+
 class StructureKeys(Keys, frozen=True, kw_only=True):
     """One structure, read from outputs or declared: what a species and a conformer have."""
 
@@ -132,6 +169,13 @@ class StructureKeys(Keys, frozen=True, kw_only=True):
         list[TorsionKeys] | UnsetType,
         Meta(
             description='torsions treated as hindered rotors: `[{ atoms = [1, 2, 3, 4], scan = "scan.csv" }]`'
+        ),
+    ] = UNSET
+    seam: Annotated[
+        SeamKeys | UnsetType,
+        Meta(
+            description='of a point that a step of kind "crossing" goes through: the other spin state, '
+            '`{ other = "triplet.out" }`'
         ),
     ] = UNSET
     imaginary: Annotated[
