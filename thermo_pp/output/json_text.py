@@ -13,6 +13,9 @@ from thermo_pp.conditions import Treatment
 from thermo_pp.errors import Finding
 
 
+_AS_IT_IS = frozenset((str, int, bool, type(None)))
+
+
 def json_text(answer: Mapping[str, Any]) -> str:
     """Return the answer as JSON text; what is not defined (nan in a result's field) is null."""
     return json.dumps(plain(answer), indent=1, ensure_ascii=False, allow_nan=False)
@@ -60,6 +63,8 @@ def treatment_keys(treatment: Treatment) -> dict[str, Any]:
 
 def plain(value: Any) -> Any:
     """Return arrays as lists and numbers as Python's, None where not finite, all the way down."""
+    if type(value) in _AS_IT_IS:
+        return value
     if isinstance(value, np.ndarray):
         return plain(value.tolist())
     if isinstance(value, np.generic):
