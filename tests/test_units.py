@@ -87,6 +87,8 @@ def test_accepted(text: str, unit: str, value: float) -> None:
 
 
 K = 'write one number and its unit, for instance "298.15 K" or "25 degC"'
+
+
 @pytest.mark.parametrize("unit", ["bar", "atm"])
 @pytest.mark.parametrize("number", [1.0, 0.986923266716, 3.7e-5])
 def test_pressures_without_the_unit_library_are_what_it_gives(unit: str, number: float) -> None:
