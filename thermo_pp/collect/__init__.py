@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import contextlib
-import gc
 import hashlib
 import os
 from collections.abc import Callable, Iterable, Iterator, Mapping
@@ -36,8 +35,6 @@ Together = Callable[[tuple[Calculation, ...]], tuple[Finding, ...]]
 """The audit of all calculations side by side."""
 TOGETHER = "all files together"
 """What its answer is remembered as."""
-_COLLECT_EVERY = 50_000
-"""Objects; memory does not grow by it, as what is read leaves nothing that only a collection finds."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -130,7 +127,7 @@ def gather(
     skipped: list[Skipped] = []
     failed: list[tuple[str, ReadError]] = []
     readers: dict[str, str] = {}
-    with _few_collections(), opened_store(cache) as store:
+    with opened_store(cache) as store:
         content = hashlib.sha256()
         found = outcomes(
             walk(given),
@@ -155,18 +152,6 @@ def gather(
     if store is not None and store.trouble:
         findings.append(_not_remembered(store.trouble))
     return Collection(tuple(calculations), tuple(findings), tuple(skipped), tuple(failed), readers)
-
-
-@contextlib.contextmanager
-def _few_collections() -> Iterator[None]:
-    """Have Python look for lost objects less often: outcomes are many objects, all of which are kept."""
-    before = gc.get_threshold()
-    if 0 < before[0] < _COLLECT_EVERY:
-        gc.set_threshold(_COLLECT_EVERY, *before[1:])
-    try:
-        yield
-    finally:
-        gc.set_threshold(*before)
 
 
 def _side_by_side(

@@ -43,6 +43,8 @@ AHEAD = 2
 """Batches that each process has, the one it works on included."""
 IN_FLIGHT_BYTES = 2**30
 """Files read at one time are not larger together, unless a single one is."""
+COLLECT_EVERY = 50_000
+"""Objects: so seldom looks Python for lost ones where answers come in, all of which are kept."""
 ANSWER_EVERY_S = 0.2
 """A process sends what it has when so much time has passed, else when its batch is done."""
 _TRIES = 2
@@ -125,6 +127,7 @@ class Processes:
         self._todo: deque[Ticket] = deque()
         self._todo_bytes = 0
         self._workers: list[_Worker] = []
+        self._collections = gc.get_threshold()
         method = "fork" if sys.platform == "linux" else "spawn"
         self._context = multiprocessing.get_context(method)
 
@@ -140,6 +143,8 @@ class Processes:
             _controller()  # loaded once, before the processes part
             for _ in range(self._jobs):
                 self._start()
+            if 0 < self._collections[0] < COLLECT_EVERY:
+                gc.set_threshold(COLLECT_EVERY, *self._collections[1:])
         if self._workers and (len(self._todo) >= BATCH_FILES or self._todo_bytes >= BATCH_BYTES):
             self._hand_out()
 
@@ -167,6 +172,8 @@ class Processes:
                 worker.process.kill()
                 worker.process.join()
             worker.process.close()
+        if self._workers:
+            gc.set_threshold(*self._collections)
         self._workers.clear()
 
     def _answer_here(self, ticket: Ticket) -> None:
