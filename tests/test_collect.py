@@ -18,14 +18,15 @@ import numpy as np
 import pytest
 
 import thermo_pp as tp
+from thermo_pp.audit.limit import time_limit
 from thermo_pp.collect import Collection, Outcome, Skipped, gather, stream, workers
 from thermo_pp.collect.answers import UNKNOWN, Answer, Task, answer
 from thermo_pp.collect.codec import CLASSES, CodecError, decode, encode
-from thermo_pp.collect.stream import outcomes
+from thermo_pp.collect.stream import opened_store, outcomes
 from thermo_pp.collect.walk import HIDDEN, LINK_BROKEN, LINK_INSIDE, LINK_OUT, NO_FILE, walk
 from thermo_pp.errors import Finding, ReadError, StudyError
 from thermo_pp.records import Calculation, Printed
-from thermo_pp.sources import Looked, Oversize, pieces
+from thermo_pp.sources import Looked, Oversize, file_digest, pieces
 
 FIXTURES = Path(__file__).parents[1] / "fixtures"
 PSI4 = FIXTURES / "psi4" / "good"
@@ -354,6 +355,39 @@ def test_a_process_that_dies_takes_only_its_file_with_it(many: Path) -> None:
     assert {one.skipped for one in found.values()} == {"good"}
 
 
+def dying_in_a_batch(path: Path, name: str, looked: Looked) -> Sequence[Outcome]:
+    """Leave a mark for each try of a file."""
+    (path.parent.parent / f"{path.stem}-{os.getpid()}").touch()
+    return dying(path, name, looked)
+
+
+def test_files_are_tried_again_one_by_one_where_a_process_dies(many: Path) -> None:
+    list(outcomes(walk([many]), dying_in_a_batch, jobs=2))
+    tried = [path.stem.partition("-")[0] for path in many.parent.iterdir() if "-" in path.stem]
+    assert tried.count("07") == tried.count("31") == 2
+    assert max(tried.count(f"{number:02d}") for number in range(60)) == 2
+
+
+LONG = "x" * 1_000_000
+
+
+def long(path: Path, name: str, looked: Looked) -> Sequence[Outcome]:
+    """Answer with more than fits between two processes that do not listen to each other."""
+    looked.at_whole(file_digest(path))
+    return (Outcome(name, reader=str(os.getpid()), skipped=LONG),)
+
+
+def test_long_answers_that_still_hold(many: Path, tmp_path: Path) -> None:
+    found = []
+    for _ in range(2):
+        with opened_store(tmp_path / "cache") as store, time_limit(30.0):
+            found.append(list(outcomes(walk([many]), long, store, jobs=2)))
+        for path in many.iterdir():
+            os.utime(path)  # the bytes are the same: the files are looked at, not read again
+    assert found[0] == found[1]
+    assert found[0][59].skipped == LONG
+
+
 def test_files_on_their_way_are_bounded(many: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(stream, "ON_THEIR_WAY", 5)
     taken: list[Path | Skipped] = []
@@ -394,7 +428,7 @@ def test_workers_end_when_the_program_is_killed(many: Path, tmp_path: Path) -> N
 import os, sys, time
 from pathlib import Path
 from thermo_pp.collect import workers
-from thermo_pp.collect.stream import outcomes
+from thermo_pp.collect.stream import opened_store, outcomes
 workers.FEW_FILES = 4
 def per_file(path, name, looked):
     Path({str(pids)!r}, str(os.getpid())).touch()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+import pint
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -86,6 +87,15 @@ def test_accepted(text: str, unit: str, value: float) -> None:
 
 
 K = 'write one number and its unit, for instance "298.15 K" or "25 degC"'
+
+
+@pytest.mark.parametrize("unit", ["bar", "atm"])
+@pytest.mark.parametrize("number", [1.0, 0.986923266716, 3.7e-5])
+def test_pressures_without_the_unit_library_are_what_it_gives(unit: str, number: float) -> None:
+    theirs = pint.UnitRegistry().Quantity(number, unit).to("Pa").magnitude
+    assert convert(number, unit, "Pa", where="x") == theirs
+
+
 PA = 'write one number and its unit, for instance "1 bar", "1 atm" or "100 Pa"'
 REFUSED = [
     ("10**10**10 K", "K", "'10**10**10 K' is not one number and a unit", K),

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import asdict, dataclass
+from dataclasses import dataclass
 from typing import Any
 
 from thermo_pp.names import SEVERITIES, Severity
@@ -83,7 +83,7 @@ class Finding:
 
     def as_dict(self) -> dict[str, Any]:
         """Return the fields as a plain dictionary, for JSON."""
-        return asdict(self)
+        return dict(vars(self))
 
 
 def each_once(findings: Iterable[Finding]) -> tuple[Finding, ...]:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import lru_cache
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
@@ -212,7 +213,12 @@ def freeze(record: object, name: str, dtype: type, shape: tuple[int, ...]) -> No
 
 def hill_formula(numbers: NDArray[np.int64]) -> str:
     """Return the formula in Hill order: C, H, then the rest by alphabet; all by alphabet without carbon."""
-    return hill_text(Counter(SYMBOLS[int(z)] for z in numbers))
+    return _hill_formula(np.asarray(numbers, dtype=np.int64).tobytes())
+
+
+@lru_cache(maxsize=4096)
+def _hill_formula(numbers: bytes) -> str:
+    return hill_text(Counter(SYMBOLS[z] for z in np.frombuffer(numbers, dtype=np.int64).tolist()))
 
 
 def hill_text(counts: Mapping[str, int]) -> str:

@@ -62,6 +62,7 @@ _MOLECULAR_ENERGY_KJ_MOL: dict[str, float] = {
     "cm^-1": WAVENUMBER_KJ_MOL,
     "1/cm": WAVENUMBER_KJ_MOL,
 }
+_PRESSURE_PA = {"bar": BAR_PA, "atm": ATM_PA}
 _NUMBER = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 _UNIT = re.compile(
     r"(?:1/)?[A-Za-zµμ°Å(](?:[A-Za-zµμ°Å_/().\s]|\*(?!\*)|\^[+-]?\d\b|[+-]?\d\b){0,60}"
@@ -148,6 +149,8 @@ def convert(number: float, unit_text: str, unit: str, *, where: str, shown: str 
         return number * _MOLECULAR_ENERGY_KJ_MOL[compact]
     if unit == "1/cm" and compact in _MOLECULAR_ENERGY_KJ_MOL:
         return number * _MOLECULAR_ENERGY_KJ_MOL[compact] / WAVENUMBER_KJ_MOL
+    if unit == "Pa" and compact in _PRESSURE_PA:  # outputs print them: no unit library for these
+        return _finite(number * _PRESSURE_PA[compact], shown, unit, where)
     per_mole = "mol" in unit and "J" not in unit  # "-50 kJ" lacks its amount
     spelled = _POWER.sub(r"\1^\2", _PER_MOLECULE.sub("particle", unit_text))
     registry = _registry()

@@ -43,7 +43,7 @@ class Answer:
     Attributes
     ----------
     outcomes : bytes
-        As `codec` writes them.
+        As `codec` writes them; none in a task, and none where the task's answer still holds.
     seen_ns : int
         When the file was looked at.
     stamp : Stamp or None
@@ -120,7 +120,7 @@ class Task:
     name : str
         How the user calls it.
     known : bytes or None
-        A remembered answer that holds if the bytes are what they were.
+        A remembered answer, without outcomes, that holds if the bytes are what they were.
     """
 
     location: str
@@ -129,7 +129,7 @@ class Task:
 
 
 def answer(per_file: PerFile, task: Task) -> Answer:
-    """Read one file, or find that its remembered answer still holds.
+    """Read one file, or find that its remembered answer still holds: then there are no outcomes.
 
     Whatever goes wrong with one file becomes the error of that file: a survey of thousands goes on.
     """
@@ -147,7 +147,7 @@ def answer(per_file: PerFile, task: Task) -> Answer:
                 )
                 for each in known.siblings
             )
-            return Answer(known.outcomes, seen_ns, stamp, known.digest, known.whole, siblings)
+            return Answer(b"", seen_ns, stamp, known.digest, known.whole, siblings)
     looked = Looked()
     try:
         outcomes = encode(per_file(path, task.name, looked))

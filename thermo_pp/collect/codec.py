@@ -6,6 +6,7 @@ classes of `CLASSES` are made from them. Hessians are left out: a collection hol
 
 from __future__ import annotations
 
+import struct
 from collections.abc import Mapping, Sequence
 from dataclasses import fields, is_dataclass
 from typing import Any
@@ -31,11 +32,11 @@ CLASSES: tuple[type, ...] = (
 _ERRORS = (ReadError, Damaged, Oversize)
 _NUMBER = {kind: place for place, kind in enumerate(CLASSES)}
 _FIELDS = {kind: tuple(field.name for field in fields(kind)) for kind in CLASSES}
-_LEFT_OUT = {(Calculation, "hessian_hartree_bohr2")}
+_HESSIAN = _FIELDS[Calculation].index("hessian_hartree_bohr2")
 _ARRAY = 1
 _DTYPES = ("<f8", "<i8", "|b1", "<f4", "<i4")
 _PLAIN = frozenset((float, int, bool, type(None)))
-_AS_IT_IS = _PLAIN | {np.ndarray}
+_AS_IT_IS = _PLAIN | {str, np.ndarray}
 
 
 class CodecError(ValueError):
@@ -88,34 +89,43 @@ def text(value: str) -> bytes:
     return value.encode("utf-8", "surrogatepass")
 
 
+def _text(value: str) -> str | bytes:
+    """Return a text as MessagePack has it: as it is, or as bytes where it may be no UTF-8."""
+    return value if value.isascii() else text(value)
+
+
 def _out(value: Any) -> Any:
-    """Return a value as what MessagePack has: texts as bytes, classes as maps with whole numbers as keys."""
+    """Return a value as what MessagePack has: classes as maps with whole numbers as keys."""
     kind = type(value)
-    if kind is str:
-        return value.encode("utf-8", "surrogatepass")
     if kind in _PLAIN:
         return value
+    if kind is str:
+        return _text(value)
     if kind is tuple or kind is list:
-        return [_out(each) for each in value]
+        return [each if type(each) in _PLAIN else _out(each) for each in value]
     if kind in _NUMBER:
-        parts = [
-            None if (kind, name) in _LEFT_OUT else _out(getattr(value, name))
-            for name in _FIELDS[kind]
-        ]
-        return {0: _NUMBER[kind], 1: parts}
+        parts = [getattr(value, name) for name in _FIELDS[kind]]
+        if kind is Calculation:
+            parts[_HESSIAN] = None
+        return {
+            0: _NUMBER[kind],
+            1: [each if type(each) in _PLAIN else _out(each) for each in parts],
+        }
     if kind is np.ndarray:
         return _array_out(value)
     if isinstance(value, Mapping):
-        return {text(key): _out(each) for key, each in value.items()}
+        return {
+            _text(key): each if type(each) in _PLAIN else _out(each) for key, each in value.items()
+        }
     if kind in _ERRORS:
         return {
             0: -1 - _ERRORS.index(kind),
-            1: [text(part) for part in (value.what, value.where, value.mend)],
+            1: [_text(part) for part in (value.what, value.where, value.mend)],
         }
     if isinstance(value, (np.generic,)):
         return _out(value.item())
     if isinstance(value, str):
-        return text(str(value))
+        return _text(str(value))
     raise TypeError(f"{kind.__name__} cannot be remembered")
 
 
@@ -124,16 +134,15 @@ def _array_out(array: np.ndarray[Any, Any]) -> msgspec.msgpack.Ext:
     dtype = plain.dtype.newbyteorder("<").str
     if dtype not in _DTYPES:
         raise TypeError(f"an array of {array.dtype} cannot be remembered")
-    header = bytes((_DTYPES.index(dtype), array.ndim))
-    shape = np.array(array.shape, dtype="<i8").tobytes()
-    return msgspec.msgpack.Ext(_ARRAY, header + shape + plain.astype(dtype, copy=False).tobytes())
+    header = struct.pack(f"<BB{array.ndim}q", _DTYPES.index(dtype), array.ndim, *array.shape)
+    return msgspec.msgpack.Ext(_ARRAY, header + plain.astype(dtype, copy=False).tobytes())
 
 
 def _array_in(code: int, data: memoryview) -> np.ndarray[Any, Any]:
     if code != _ARRAY:
         raise ValueError(f"no value is written with code {code}")
     start = 2 + 8 * data[1]
-    shape = np.frombuffer(bytes(data[2:start]), dtype="<i8")
+    shape = struct.unpack(f"<{data[1]}q", data[2:start])
     return np.frombuffer(bytes(data[start:]), dtype=_DTYPES[data[0]]).reshape(shape)
 
 
@@ -141,20 +150,27 @@ _DECODER = msgspec.msgpack.Decoder(ext_hook=_array_in)
 
 
 def _in(value: Any) -> Any:
+    """Return what `_out` made a value of; most values are as they are, and no call is made for them."""
     kind = type(value)
-    if kind is bytes:
-        return value.decode("utf-8", "surrogatepass")
-    if kind in _AS_IT_IS:  # most values: not asked about one kind after the other
+    if kind in _AS_IT_IS:
         return value
     if kind is list:
-        return tuple([_in(each) for each in value])
+        return tuple([each if type(each) in _AS_IT_IS else _in(each) for each in value])
+    if kind is bytes:
+        return value.decode("utf-8", "surrogatepass")
     if kind is not dict:
         return value
     if 0 not in value:
-        return {key.decode("utf-8", "surrogatepass"): _in(each) for key, each in value.items()}
-    number, parts = value[0], [_in(each) for each in value[1]]
+        return {
+            key if type(key) is str else _in(key): each if type(each) in _AS_IT_IS else _in(each)
+            for key, each in value.items()
+        }
+    number = value[0]
+    parts = [each if type(each) in _AS_IT_IS else _in(each) for each in value[1]]
     if number < 0:
         what, where, mend = parts
         return _ERRORS[-1 - number](what, where=where, mend=mend)
     made = CLASSES[number]
-    return made(**dict(zip(_FIELDS[made], parts, strict=True)))
+    if len(parts) != len(_FIELDS[made]):
+        raise ValueError(f"{made.__name__} with {len(parts)} fields")
+    return made(*parts)

@@ -6,6 +6,7 @@ import contextlib
 import os
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
+from dataclasses import replace
 from itertools import chain
 from pathlib import Path
 
@@ -113,19 +114,20 @@ def _engine(per_file: PerFile, jobs: int | None, scheduler: str | None) -> tuple
 
 
 def _begun(entry: Path | Skipped, engine: Engine, store: Store | None) -> Outcome | bytes | Ticket:
-    """Return the outcome of what was left out, the remembered one of a file, or the ticket of one to be read."""
+    """Return the outcome of what was left out, the remembered ones of a file, or the ticket of one to be read."""
     if isinstance(entry, Skipped):
         return Outcome(entry.path, skipped=entry.reason)
     name, location = str(entry), os.path.abspath(entry)  # noqa: PTH100 - Path.resolve follows links
-    known = None if store is None else store.get(location, name)
-    if known is not None:
-        try:
-            if Answer.from_bytes(known).holds_at_a_glance(entry):
-                return known
-        except CodecError:
-            known = None
+    known, remembered = None, b""
+    found = None if store is None else store.get(location, name)
+    if found is not None:
+        with contextlib.suppress(CodecError):
+            answer = Answer.from_bytes(found)
+            if answer.holds_at_a_glance(entry):
+                return answer.outcomes
+            known, remembered = replace(answer, outcomes=b"").to_bytes(), answer.outcomes
     stamp = stamp_of(entry)
-    ticket = Ticket(Task(location, name, known), stamp[0] if stamp else 0)
+    ticket = Ticket(Task(location, name, known), stamp[0] if stamp else 0, remembered)
     engine.submit(ticket)
     return ticket
 
@@ -137,9 +139,11 @@ def _ready(entry: Outcome | bytes | Ticket) -> bool:
 def _ended(entry: bytes | Ticket, store: Store | None) -> bytes:
     """Return the outcomes of a file that is ready, as bytes; remember them where they are new."""
     if isinstance(entry, bytes):
-        return Answer.from_bytes(entry).outcomes
+        return entry
     answer, task = entry.answer, entry.task
     assert answer is not None
+    if not answer.outcomes:
+        answer = replace(answer, outcomes=entry.remembered)
     if store is not None and answer.digest is not None:
         store.put(task.location, task.name, answer.to_bytes())
     return answer.outcomes

@@ -1,8 +1,12 @@
 """Workers: the same function called for every file, by this process or by several.
 
 The function and what it answers are handed in, so this module knows no format and no audit. Tasks go
-out in small batches, so many at a time that nobody waits; answers come back as bytes. A process that
-dies takes no other file with it: its file is tried once more, then it is the error of that file.
+out in small batches, so many at a time that nobody waits; the answers of a batch come back together, as
+bytes. A process that dies takes no other file with it: the files of its batch are tried once more, each
+alone, and one with which a process dies again is the error of that file.
+
+What is sent out is small (a task has no outcomes), so the asking process never waits for one that itself
+waits to be listened to.
 """
 
 from __future__ import annotations
@@ -13,14 +17,17 @@ import multiprocessing
 import os
 import signal
 import sys
+import time
 from collections import deque
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from functools import cache
+from itertools import chain
 from multiprocessing.connection import Connection, wait
 from typing import TYPE_CHECKING, Any, Protocol
 
 from thermo_pp.collect.answers import Answer, Task, answer, failure
+from thermo_pp.collect.codec import pack, unpack
 from thermo_pp.collect.outcome import PerFile
 
 if TYPE_CHECKING:
@@ -36,6 +43,10 @@ AHEAD = 2
 """Batches that each process has, the one it works on included."""
 IN_FLIGHT_BYTES = 2**30
 """Files read at one time are not larger together, unless a single one is."""
+COLLECT_EVERY = 50_000
+"""Objects: so seldom looks Python for lost ones where answers come in, all of which are kept."""
+ANSWER_EVERY_S = 0.2
+"""A process sends what it has when so much time has passed, else when its batch is done."""
 _TRIES = 2
 
 
@@ -48,13 +59,17 @@ class Ticket:
     task : Task
     size : int
         Of the file, bytes.
+    remembered : bytes
+        The outcomes that hold if the task's remembered answer does.
     answer : Answer or None
         What came back.
     tries : int
+        With how many processes that died it may have been read.
     """
 
     task: Task
     size: int = 0
+    remembered: bytes = b""
     answer: Answer | None = None
     tries: int = 0
 
@@ -112,6 +127,7 @@ class Processes:
         self._todo: deque[Ticket] = deque()
         self._todo_bytes = 0
         self._workers: list[_Worker] = []
+        self._collections = gc.get_threshold()
         method = "fork" if sys.platform == "linux" else "spawn"
         self._context = multiprocessing.get_context(method)
 
@@ -127,6 +143,8 @@ class Processes:
             _controller()  # loaded once, before the processes part
             for _ in range(self._jobs):
                 self._start()
+            if 0 < self._collections[0] < COLLECT_EVERY:
+                gc.set_threshold(COLLECT_EVERY, *self._collections[1:])
         if self._workers and (len(self._todo) >= BATCH_FILES or self._todo_bytes >= BATCH_BYTES):
             self._hand_out()
 
@@ -154,6 +172,8 @@ class Processes:
                 worker.process.kill()
                 worker.process.join()
             worker.process.close()
+        if self._workers:
+            gc.set_threshold(*self._collections)
         self._workers.clear()
 
     def _answer_here(self, ticket: Ticket) -> None:
@@ -178,41 +198,47 @@ class Processes:
 
     def _hand_out(self) -> None:
         """Give batches to the processes that have too few."""
-        if not self._todo or min(worker.batches() for worker in self._workers) >= AHEAD:
+        if not self._todo or min(len(worker.batches) for worker in self._workers) >= AHEAD:
             return
-        flying = sum(ticket.size for worker in self._workers for ticket in worker.tickets)
+        flying = sum(ticket.size for worker in self._workers for ticket in worker.tickets())
         for ahead in range(AHEAD):
             for worker in self._workers:
-                if worker.batches() > ahead or not self._todo:
+                if len(worker.batches) > ahead or not self._todo:
                     continue
                 if flying and flying + self._todo[0].size > IN_FLIGHT_BYTES:
                     return
                 batch = self._batch()
                 flying += sum(ticket.size for ticket in batch)
-                worker.tickets += batch
+                worker.batches.append(batch)
                 with contextlib.suppress(OSError):  # it has died: `_receive` sees that
                     worker.connection.send([ticket.task for ticket in batch])
 
-    def _batch(self) -> list[Ticket]:
-        batch: list[Ticket] = []
+    def _batch(self) -> deque[Ticket]:
+        """Take the next batch; a file with which a process has died goes alone."""
+        batch: deque[Ticket] = deque()
         size = 0
         while self._todo and len(batch) < BATCH_FILES and size < BATCH_BYTES:
-            ticket = self._todo.popleft()
-            batch.append(ticket)
-            size += ticket.size
+            alone = self._todo[0].tries > 0
+            if alone and batch:
+                break
+            batch.append(self._todo.popleft())
+            size += batch[-1].size
+            if alone:
+                break
         self._todo_bytes = max(0, self._todo_bytes - size)
         return batch
 
     def _receive(self, worker: _Worker) -> None:
-        """Take the answers that are there, one at least; where the process has died, start another."""
+        """Take some answers; where the process has died, start another."""
         try:
-            more = True
-            while more:
-                data = worker.connection.recv_bytes()
-                worker.tickets.popleft().answer = Answer.from_bytes(data)
-                more = worker.connection.poll()
+            data = worker.connection.recv_bytes()
         except (EOFError, OSError):
             self._replace(worker)
+            return
+        for each in unpack(data):
+            worker.batches[0].popleft().answer = Answer.from_bytes(each)
+        if not worker.batches[0]:
+            worker.batches.popleft()
 
     def _replace(self, worker: _Worker) -> None:
         worker.connection.close()
@@ -220,29 +246,32 @@ class Processes:
         code = worker.process.exitcode
         worker.process.close()
         self._workers.remove(worker)
-        again = list(worker.tickets)
-        if again:
-            first = again[0]
-            first.tries += 1
-            if first.tries >= _TRIES:
-                del again[0]
-                what = f"the process that read it died ({_how_it_ended(code)})"
-                first.answer = failure(
-                    first.task, what, "look at the file, and at the memory that is free"
-                )
-            self._todo.extendleft(reversed(again))
+        again = list(worker.tickets())
+        suspects = worker.batches[0] if worker.batches else ()
+        for ticket in suspects:
+            ticket.tries += 1
+        if len(suspects) == 1 and again[0].tries >= _TRIES:
+            ticket = again.pop(0)
+            what = f"the process that read it died ({_how_it_ended(code)})"
+            ticket.answer = failure(
+                ticket.task, what, "look at the file, and at the memory that is free"
+            )
+        self._todo.extendleft(reversed(again))
+        self._todo_bytes += sum(ticket.size for ticket in again)
         if again or not self._workers:
             self._start()
 
 
 @dataclass(eq=False)
 class _Worker:
+    """A process, and the batches that it has not answered, in the order in which it takes them."""
+
     process: Any
     connection: Connection[Any, Any]
-    tickets: deque[Ticket]
+    batches: deque[deque[Ticket]]
 
-    def batches(self) -> int:
-        return -(-len(self.tickets) // BATCH_FILES)
+    def tickets(self) -> Iterator[Ticket]:
+        return chain.from_iterable(self.batches)
 
 
 def answers(per_file: PerFile, tasks: Sequence[Task]) -> list[bytes]:
@@ -258,13 +287,19 @@ def _work(
     signal.signal(signal.SIGINT, signal.SIG_IGN)  # the asking process ends this one
     for (
         other
-    ) in inherited:  # with them open, this process would not see that the asking one is gone
+    ) in inherited:  # left open, they would hide from this process that the asking one is gone
         other.close()
     gc.freeze()  # what was there before is not to be looked through, nor its pages to be copied
     with one_thread(), contextlib.suppress(EOFError, OSError):
         while True:
+            found, since = [], time.monotonic()
             for task in connection.recv():
-                connection.send_bytes(answer(per_file, task).to_bytes())
+                found.append(answer(per_file, task).to_bytes())
+                if time.monotonic() - since > ANSWER_EVERY_S:
+                    connection.send_bytes(pack(found))
+                    found, since = [], time.monotonic()
+            if found:
+                connection.send_bytes(pack(found))
 
 
 def _how_it_ended(code: int | None) -> str:
