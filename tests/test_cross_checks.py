@@ -174,3 +174,14 @@ def test_a_digit_that_turns_into_an_exponent_is_damage() -> None:
     with pytest.raises(ReadError, match="expected the nuclear repulsion energy"):
         read_source(Source("x", damaged))
     assert Printed("57.8928D14099", "hartree", 1).step == float("inf")
+
+
+@pytest.mark.parametrize("number", [b" 9.0000000E+999", b"            Inf", b"            nan"])
+def test_a_wavenumber_that_is_not_finite_is_printed_nowhere(number: bytes) -> None:
+    """Once every place of a checkpoint was one of it, which took all memory there is."""
+    pytest.importorskip("cclib")
+    data = (FIXTURES / "cclib/good/ammonia_saddle.fchk").read_bytes()
+    damaged = data.replace(b"-1.07801466E+03", number, 1)
+    assert damaged != data
+    with pytest.raises(ReadError, match="is not printed in this file"):
+        read_source(Source("x", damaged))

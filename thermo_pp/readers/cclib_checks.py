@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Iterator
 
@@ -42,7 +43,12 @@ _SHIFTED_CM, _SHIFTED_SHARE = 2.0, 0.005
 
 
 def printed_at(text: Text, value: float, doubt: float = 1e-9) -> list[int]:
-    """Return the offsets at which a number is printed, fixed or with an exponent, to at least five digits."""
+    """Return the offsets at which a number is printed, fixed or with an exponent, to at least five digits.
+
+    One that is not finite is printed nowhere.
+    """
+    if not math.isfinite(value):
+        return []
     found = []
     for start, number in _candidates(text, value):
         if abs(abs(number) - abs(value)) <= doubt * abs(value) + 1e-12:
