@@ -19,9 +19,12 @@ from reference_networks import (
 
 from thermo_pp.kinetics.closed import decay_shares, decays, relaxation
 from thermo_pp.kinetics.cycle import per_cycle
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.edges import LogRate
+from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.free import Amount, per_free_reactant, steady_state
-from thermo_pp.kinetics.pool import per_pool
+from thermo_pp.kinetics.pool import mean_times, per_pool
+from thermo_pp.kinetics.scaled import Ordinary, Scaled
 
 LOW, HIGH = float(np.log(1e-60)), float(np.log(1e13))
 RATE_ERROR, CONTROL_ERROR, ENERGY_ERROR_KJ_MOL = 1e-10, 1e-8, 1e-8
@@ -225,3 +228,47 @@ def test_tree_weights() -> None:
     assert shares[0, np.argsort(states)] == pytest.approx(
         [197 / 334, 87 / 334, 50 / 334], rel=1e-13
     )
+
+
+@pytest.mark.parametrize("numbers", [Scaled, Ordinary])
+def test_between_is_the_elimination_with_a_source_and_a_reward(numbers: type[Scaled]) -> None:
+    """One elimination, and what passes along it afterwards, give what one with both from the start gives."""
+    case = random_case(np.random.default_rng(31), 9, 6, 0.0, 9.0)
+    network = replace(network_of(case), numbers=numbers)
+    drained = Drained.of(network, 0, [8])
+    n = len(drained.inside)
+    source, reward = (numbers.from_float(np.linspace(a, 3.0, n)[np.newaxis]) for a in (1.0, 9.0))
+    ways, ends = numbers.zeros((1, n + 1, n)), numbers.zeros((1, n + 1, 2))
+    ways[:, 1:], ways[:, 0] = drained.edges.ways[()], source
+    ends[:, 1:, :1], ends[:, 1:, 1] = drained.edges.ends, reward
+    whole = Reduction({(): ways}, ends, np.array([1.0, 0.0]), sources=1)
+    whole.eliminate_to(0)
+    seed = np.zeros((1, 1, 2))
+    seed[:, 0, 1] = -1.0
+    expected = whole.gradient({}, seed)
+    between = drained.reduced.between(source, reward)
+    found = between.gradient(-1.0)
+    assert between.out.to_float() == pytest.approx(whole.ends[:, 0, :1].to_float(), rel=1e-13)
+    assert found.ways[()] == pytest.approx(expected.ways[()], rel=1e-12, abs=1e-15)
+    assert found.ends == pytest.approx(expected.ends, rel=1e-12, abs=1e-15)
+
+
+def test_mean_times_are_the_inverse() -> None:
+    case = random_case(np.random.default_rng(32), 12, 9, 0.0, 9.0)
+    drained = Drained.of(network_of(case), 0, [11])
+    ways, ends = drained.edges.ways[()].to_float()[0], drained.edges.ends.to_float()[0]
+    matrix = np.diag(ways.sum(axis=1) + ends.sum(axis=1)) - ways
+    times = mean_times(drained.reduced).to_float()[0]
+    assert times == pytest.approx(np.linalg.inv(matrix), rel=1e-8)
+
+
+def test_pool_whose_slowest_step_is_its_first() -> None:
+    """A -> B -> C -> P, no way back: what comes after the slowest step has no share in its right vector."""
+    there_and_back = {(0, 1): 1e-3, (1, 0): 1.0, (1, 2): 5.0, (2, 1): 1.0, (2, 3): 2.0, (3, 2): 1.0}
+    network = network_of(constants(there_and_back, 4))
+    dead = np.full_like(network.log_reverse, -np.inf)
+    pool = per_pool(replace(network, log_reverse=dead), 0, [3])
+    assert np.exp(pool.rate.log[0]) == pytest.approx(1e-3, rel=1e-14)
+    assert pool.rate.saddles[0] == pytest.approx([1.0, 0.0, 0.0], abs=1e-14)
+    slow = [1.0, 1e-3 / 4.999, 1e-3 * 5.0 / (4.999 * 1.999)]  # of the slowest mode, by hand
+    assert pool.populations[0] == pytest.approx(np.array(slow) / sum(slow), rel=1e-12)

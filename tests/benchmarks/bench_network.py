@@ -21,6 +21,7 @@ sys.path.insert(0, str(Path(__file__).parents[1]))
 from machine import report
 from reference_networks import Case, network_of, random_case
 
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.free import per_free_reactant
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.pool import per_pool
@@ -95,8 +96,9 @@ def main() -> int:
     product = STATES - 1
 
     def ours() -> np.ndarray:
-        per_free_reactant(network, 0, [product], [None])
-        return np.exp(per_pool(network, 0, [product]).rate.log)
+        drained = Drained.of(network, 0, [product])
+        per_free_reactant(network, 0, [product], [None], drained)
+        return np.exp(per_pool(network, 0, [product], drained).rate.log)
 
     with threadpool_limits(1):
         decays = ours()

@@ -18,6 +18,7 @@ sys.path.insert(0, str(Path(__file__).parents[1]))
 
 from reference_networks import network_of, random_case
 
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.free import per_free_reactant
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.pool import per_pool
@@ -51,8 +52,9 @@ def main() -> int:
             with threadpool_limits(1):
                 for _ in range(3 if states <= 50 else 1):
                     begin = time.process_time()
-                    per_free_reactant(asked, 0, [product], [None])
-                    per_pool(asked, 0, [product])
+                    drained = Drained.of(asked, 0, [product])
+                    per_free_reactant(asked, 0, [product], [None], drained)
+                    per_pool(asked, 0, [product], drained)
                     took.append(time.process_time() - begin)
             costs.append(min(took) / TEMPERATURES)
             print(

@@ -25,7 +25,7 @@ from fractions import Fraction
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.kinetics.scaled import FloatArray, Scaled, fraction
+from thermo_pp.kinetics.scaled import FloatArray, Scaled, fraction, zeros
 
 Label = tuple[int | Fraction, ...]
 Indices = NDArray[np.intp]
@@ -120,11 +120,18 @@ class Reduction:
         self.run = run
         self.reward = reward
         self.left = next(iter(ways.values())).shape[2]
+        self._passages: list[Passage] = []
         self._tape: list[_Record] = []
+
+    @property
+    def passages(self) -> list[Passage]:
+        """How each eliminated state was passed, in the order of states."""
+        return self._passages[::-1]
 
     def eliminate_to(self, left: int, *, tape: bool = True) -> list[Passage]:
         """Eliminate the last states until `left` are left; return how each was passed, in the order of states."""
-        return [self._eliminate(tape) for _ in range(self.left - left)][::-1]
+        self._passages += [self._eliminate(tape) for _ in range(self.left - left)]
+        return self.passages
 
     def _eliminate(self, tape: bool) -> Passage:
         n = self.left - 1
@@ -243,66 +250,29 @@ class Reduction:
         """
         b, all_rows, n = next(iter(self.ways.values())).shape
         top = self.sources + self.left
-        by_ways = {label: np.zeros((b, all_rows, n)) for label in self.ways}
+        by_ways = {label: zeros((b, all_rows, n)) for label in self.ways}
         for label, given in ways.items():
             by_ways[label][:, :top, : self.left] = given
-        by_ends = np.zeros((b, all_rows, ends.shape[2]))
+        by_ends = zeros((b, all_rows, ends.shape[2]))
         by_ends[:, :top] = ends
-        worths: dict[Label, FloatArray] = {}
-        for record in reversed(self._tape):
-            self._back(record, by_ways, by_ends, worths)
-        return Gradient(by_ways, by_ends, worths)
+        return _back(self._tape, by_ways, by_ends, self.sources, self.reward)
 
-    def _back(
-        self,
-        record: _Record,
-        by_ways: dict[Label, FloatArray],
-        by_ends: FloatArray,
-        worths: dict[Label, FloatArray],
-    ) -> None:
-        rows, columns, end_columns = record.rows, record.columns, record.end_columns
-        row = self.sources + record.n
-        b = len(by_ends)
-        leaving = np.zeros(b)
-        into = {label: np.zeros((b, len(rows))) for label in by_ways}
-        out = {label: np.zeros((b, len(columns))) for label in by_ways}
-        if record.reward_kept is not None:
-            gain = by_ends[:, rows, self.reward]
-            by_ends[:, rows, self.reward] = gain * record.reward_kept
-            for label_in, label_out, label, in_rows, in_columns, share in record.runs:
-                term = gain[:, in_rows] * share
-                into[label_in][:, in_rows] += term
-                out[label_out][:, in_columns] += term
-                total = term.sum(axis=1)
-                leaving -= total
-                worths[label] = worths.get(label, np.zeros(b)) + total
-        block = (slice(None), rows[:, np.newaxis], columns[np.newaxis, :])
-        weights = {label: by_ways[label][block] for label in record.kept}
-        for label, share in record.kept.items():
-            by_ways[label][block] = weights[label] * share
-        for label_in, label_out, label, share in record.through:
-            term = weights[label] * share
-            into[label_in] += term.sum(axis=2)
-            by_column = term.sum(axis=1)
-            out[label_out] += by_column
-            leaving -= by_column.sum(axis=1)
-        end_block = (slice(None), rows[:, np.newaxis], end_columns[np.newaxis, :])
-        weight = by_ends[end_block]
-        by_ends[end_block] = weight * record.ends_kept
-        ends = np.zeros((b, len(end_columns)))
-        for label, share in record.to_ends.items():
-            term = weight * share
-            into[label] += term.sum(axis=2)
-            by_end = term.sum(axis=1)
-            ends += by_end
-            leaving -= by_end.sum(axis=1)
-        for label, share in record.shares_out.items():
-            out[label] += leaving[:, np.newaxis] * share
-        ends += leaving[:, np.newaxis] * record.shares_end
-        for label in by_ways:
-            by_ways[label][:, rows, record.n] = into[label]
-            by_ways[label][:, row, columns] = out[label]
-        by_ends[:, row, end_columns] = ends
+    def between(self, source: Scaled, reward: Scaled) -> Between:
+        """Return what a reward at every state is worth to a source into every state.
+
+        As if the source had been a row and the reward an end from the beginning, for a network without
+        labels and without sources that is eliminated, with a tape, to its first state.
+
+        Parameters
+        ----------
+        source, reward : Scaled, shape (b, n)
+        """
+        if self.sources or self.left != 1 or list(self.ways) != [()]:
+            raise ValueError("one state has to be left, without labels and sources")
+        first = Reduction({(): self.ways[()][:, :1, :1]}, self.ends[:, :1], self.exits)
+        first.eliminate_to(0)
+        passages, records = self._passages + first._passages, self._tape + first._tape
+        return _between(passages, records, self.exits, source, reward)
 
 
 _Added = dict[Label, list[tuple[Label, Label, Scaled]]]
@@ -324,6 +294,158 @@ class Gradient:
     ways: dict[Label, FloatArray]
     ends: FloatArray
     worths: dict[Label, FloatArray]
+
+
+@dataclass(frozen=True, eq=False)
+class Between:
+    """What a source into every state of a network makes of a reward at every state.
+
+    Attributes
+    ----------
+    out : Scaled, shape (b, k)
+        What leaves by each end.
+    states : int
+    tape : list of records
+    """
+
+    out: Scaled
+    states: int
+    tape: list[_Record]
+
+    def gradient(self, sign: float) -> Gradient:
+        """Return the derivative of ln of the reward, times `sign`; row 0 is the source, the last end the reward."""
+        b, k = self.out.shape
+        by_ends = zeros((b, self.states + 1, k + 1))
+        by_ends[:, 0, k] = sign
+        return _back(self.tape, {(): zeros((b, self.states + 1, self.states))}, by_ends, 1, 0)
+
+
+def _between(
+    passages: Sequence[Passage],
+    records: Sequence[_Record],
+    exits: FloatArray,
+    source: Scaled,
+    reward: Scaled,
+) -> Between:
+    """Pass on what arrives and what it is worth, state by state, along an elimination that has been done."""
+    b, k = len(source.mantissa), len(exits)
+    kind = type(source)
+    arriving, worth = source.copy(), reward.copy()
+    out, answer = kind.zeros((b, k)), kind.zeros((b,))
+    tape: list[_Record] = []
+    for passage, record in zip(passages, records, strict=True):
+        rows, columns, ends, n = record.rows, record.columns, record.end_columns, record.n
+        here = arriving[:, n][:, np.newaxis]
+        term = worth[:, n] / passage.leaving
+        gain = arriving[:, n] * term
+        total = answer + gain
+        out[:, ends] = out[:, ends] + passage.ends * here
+        old, added = worth[:, rows], passage.into * term[:, np.newaxis]
+        worth[:, rows] = old + added
+        before, onward = arriving[:, columns], passage.out * here
+        arriving[:, columns] = before + onward
+        old_share, added_share = fraction(old, worth[:, rows]), fraction(added, worth[:, rows])
+        kept, to_ends = (
+            zeros((b, 1 + len(rows), len(columns))),
+            zeros((b, 1 + len(rows), len(ends) + 1)),
+        )
+        through, ends_kept = zeros(kept.shape), zeros(to_ends.shape)
+        for bordered, own in ((kept, record.kept), (to_ends, record.to_ends)):
+            if () in own:
+                bordered[:, 1:, : own[()].shape[2]] = own[()]
+        for *_, share in record.through:
+            through[:, 1:] = share
+        ends_kept[:, 1:, :-1] = record.ends_kept
+        kept[:, 0] = fraction(before, arriving[:, columns])
+        through[:, 0] = fraction(onward, arriving[:, columns])
+        ends_kept[:, 1:, -1], to_ends[:, 1:, -1] = old_share, added_share
+        ends_kept[:, 0, -1], to_ends[:, 0, -1] = fraction(answer, total), fraction(gain, total)
+        shares_end = zeros((b, len(ends) + 1))
+        shares_end[:, :-1] = record.shares_end
+        tape.append(
+            _Record(
+                n=n,
+                rows=np.append(0, rows + 1),
+                columns=columns,
+                end_columns=np.append(ends, k),
+                shares_out=record.shares_out,
+                shares_end=shares_end,
+                through=[((), (), (), through)],
+                kept={(): kept},
+                runs=[],
+                to_ends={(): to_ends},
+                ends_kept=ends_kept,
+                reward_kept=None,
+            )
+        )
+        answer = total
+    return Between(out, worth.shape[1], tape)
+
+
+def _back(
+    tape: Sequence[_Record],
+    by_ways: dict[Label, FloatArray],
+    by_ends: FloatArray,
+    sources: int,
+    reward: int,
+) -> Gradient:
+    """Take derivatives by what is left back along a tape, in place."""
+    worths: dict[Label, FloatArray] = {}
+    for record in reversed(tape):
+        _back_through(record, by_ways, by_ends, worths, sources + record.n, reward)
+    return Gradient(by_ways, by_ends, worths)
+
+
+def _back_through(
+    record: _Record,
+    by_ways: dict[Label, FloatArray],
+    by_ends: FloatArray,
+    worths: dict[Label, FloatArray],
+    row: int,
+    reward: int,
+) -> None:
+    rows, columns, end_columns = record.rows, record.columns, record.end_columns
+    b = len(by_ends)
+    leaving = np.zeros(b)
+    into = {label: zeros((b, len(rows))) for label in by_ways}
+    out = {label: zeros((b, len(columns))) for label in by_ways}
+    if record.reward_kept is not None:
+        gain = by_ends[:, rows, reward]
+        by_ends[:, rows, reward] = gain * record.reward_kept
+        for label_in, label_out, label, in_rows, in_columns, share in record.runs:
+            term = gain[:, in_rows] * share
+            into[label_in][:, in_rows] += term
+            out[label_out][:, in_columns] += term
+            total = term.sum(axis=1)
+            leaving -= total
+            worths[label] = worths.get(label, np.zeros(b)) + total
+    block = (slice(None), rows[:, np.newaxis], columns[np.newaxis, :])
+    weights = {label: by_ways[label][block] for label in record.kept}
+    for label, share in record.kept.items():
+        by_ways[label][block] = weights[label] * share
+    for label_in, label_out, label, share in record.through:
+        term = weights[label] * share
+        into[label_in] += term.sum(axis=2)
+        by_column = term.sum(axis=1)
+        out[label_out] += by_column
+        leaving -= by_column.sum(axis=1)
+    end_block = (slice(None), rows[:, np.newaxis], end_columns[np.newaxis, :])
+    weight = by_ends[end_block]
+    by_ends[end_block] = weight * record.ends_kept
+    ends = zeros((b, len(end_columns)))
+    for label, share in record.to_ends.items():
+        term = weight * share
+        into[label] += term.sum(axis=2)
+        by_end = term.sum(axis=1)
+        ends += by_end
+        leaving -= by_end.sum(axis=1)
+    for label, share in record.shares_out.items():
+        out[label] += leaving[:, np.newaxis] * share
+    ends += leaving[:, np.newaxis] * record.shares_end
+    for label in by_ways:
+        by_ways[label][:, rows, record.n] = into[label]
+        by_ways[label][:, row, columns] = out[label]
+    by_ends[:, row, end_columns] = ends
 
 
 def _present(mantissas: Sequence[FloatArray]) -> Indices:

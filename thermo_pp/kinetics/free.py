@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, count_end, from_edges, log_drive
 from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.network import Network
@@ -32,7 +33,11 @@ class Amount:
 
 
 def per_free_reactant(
-    network: Network, reactant: int, products: Sequence[int], amounts: Sequence[Amount | None]
+    network: Network,
+    reactant: int,
+    products: Sequence[int],
+    amounts: Sequence[Amount | None],
+    drained: Drained | None = None,
 ) -> tuple[LogRate, FloatArray]:
     """Rate over the free reactant, the intermediates at steady state, the network in balance.
 
@@ -45,6 +50,8 @@ def per_free_reactant(
         States.
     amounts : sequence of Amount or None
         Of each product; None where there is none of it.
+    drained : Drained, optional
+        The network eliminated to the reactant, where that is known already.
 
     Returns
     -------
@@ -52,11 +59,8 @@ def per_free_reactant(
     shape (b, k)
         What goes from the reactant to each product, over the rate.
     """
-    inside = network.members(reactant, products)
-    edges = EdgeMatrix(network, inside, products)
-    k = len(products)
-    reduced = Reduction(edges.ways, edges.ends, np.ones(k))
-    reduced.eliminate_to(1)
+    drained = drained or Drained.of(network, reactant, products)
+    edges, reduced, k = drained.edges, drained.reduced, len(products)
     partial = reduced.ends[:, 0, :]
     b = len(network.temperature_k)
     net, driving = [], []

@@ -14,6 +14,7 @@ from thermo_pp.conditions import Conditions, Held, Treatment
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.closed import decays, relaxation
 from thermo_pp.kinetics.cycle import Turn, alike, per_cycle, turns
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.free import Amount, per_free_reactant
 from thermo_pp.kinetics.network import Network, check_loops, linear_network
@@ -212,12 +213,16 @@ class Rates:
         asked = self.network, self.start, self.products, self.amounts()
         if self.model.conditions.driven:
             return per_free_reactant_driven(*asked)
-        return per_free_reactant(*asked)[0]
+        return per_free_reactant(*asked, self._drained)[0]
+
+    @cached_property
+    def _drained(self) -> Drained:
+        return Drained.of(self.network, self.start, self.products)
 
     @cached_property
     def pool(self) -> Pool:
         """Slowest decay of the pool."""
-        return per_pool(self.network, self.start, self.products)
+        return per_pool(self.network, self.start, self.products, self._drained)
 
     @cached_property
     def pool_decays(self) -> list[Spectrum]:

@@ -298,8 +298,8 @@ def _with_numbers(
 ) -> Network:
     t = energies.temperature_k
     rt = GAS_J_MOL_K * t
-    potential = np.empty((len(t), len(species)), np.longdouble)
-    slope = np.empty((len(t), len(species)))
+    potential = np.empty((len(t), len(species)), np.longdouble, order="F")
+    slope = np.empty((len(t), len(species)), order="F")
     for column, name in enumerate(species):
         potential[:, column] = energies.reduced[:, energies.index(name)]
         slope[:, column] = energies.slope_j_mol[:, energies.index(name)]
@@ -336,10 +336,13 @@ def _with_numbers(
     saddle_slope = rates.saddle_slope_j_mol[:, steps]
     logs, slopes = [], []
     for way in (0, 1):
-        log = frequency + potential @ counts[way].T.astype(np.longdouble) - saddle
+        log, energy = frequency - saddle, rt[:, np.newaxis] + saddle_slope
+        for number, column in np.argwhere(counts[way]):  # a step has few of the species
+            log[:, number] += counts[way, number, column] * potential[:, column]
+            energy[:, number] -= counts[way, number, column] * slope[:, column]
         log[:, missing[way]] = -np.inf
         logs.append(log)
-        slopes.append(rt[:, np.newaxis] + saddle_slope - slope @ counts[way].T)
+        slopes.append(energy)
     return Network(
         temperature_k=t,
         states=states,

@@ -8,8 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.kinetics.drained import Drained
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges
-from thermo_pp.kinetics.elimination import Indices, Reduction
+from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
 
@@ -78,13 +79,11 @@ class Pool:
         """
         answers = []
         for row in range(len(self.slow_share)):
-            times = self.times[row : row + 1]
-            similar, scale = _similar(times)
+            start, similar, scale = _similar(self.times[row : row + 1])
             values, vectors = np.linalg.eig(similar[0])
             order = np.argsort(-np.abs(values))
             left = np.linalg.inv(vectors)[order]
             vectors, values = vectors[:, order], values[order]
-            start = times.sum(axis=2)
             weights = fraction(start[0, :1], start[0])  # what the similarity does to 1
             shares = vectors[0] * (left @ weights)
             with np.errstate(divide="ignore"):
@@ -96,37 +95,30 @@ class Pool:
 _WORST_CONDITION = 1e8
 
 
-def per_pool(network: Network, reactant: int, products: Sequence[int]) -> Pool:
-    """Slowest decay of the pool, from the positive inverse of its rate matrix."""
-    inside = network.members(reactant, products)
-    edges = EdgeMatrix(network, inside, products)
-    times = mean_times(edges.ways[()], edges.ends)
+def per_pool(
+    network: Network, reactant: int, products: Sequence[int], drained: Drained | None = None
+) -> Pool:
+    """Slowest decay of the pool, from the positive inverse of its rate matrix.
+
+    `drained` is the network eliminated to the reactant, where that is known already.
+    """
+    drained = drained or Drained.of(network, reactant, products)
+    edges = drained.edges
+    times = mean_times(drained.reduced)
     right, left, log_longest = _longest(times)
-    b, n, k = edges.ends.shape
-    # 1/lambda = left . times . right with both vectors fixed: one elimination gives its derivative
-    source = network.numbers.zeros((b, n + 1, n))
-    source[:, 1:, :] = edges.ways[()]
-    source[:, 0, :] = left
-    ends = network.numbers.zeros((b, n + 1, k + 1))
-    ends[:, 1:, :k] = edges.ends
-    ends[:, 1:, k] = right
-    exits = np.append(np.ones(k), 0.0)
-    reduced = Reduction({(): source}, ends, exits, sources=1)
-    reduced.eliminate_to(0)
-    seed = np.zeros((b, 1, k + 1))
-    seed[:, 0, k] = -1.0
-    gradient = reduced.gradient({}, seed)
+    # 1/lambda = left . times . right with both vectors fixed: the elimination gives its derivative
+    between = drained.reduced.between(left, right)
+    gradient = between.gradient(-1.0)
     forward, reverse = edges.back(gradient.ways, gradient.ends, offset=1)
     total = left.sum(axis=1)
     weight = (left * right).sum(axis=1)
-    out = reduced.ends[:, 0, :k]
     return Pool(
         rate=from_edges(network, -log_longest, forward, reverse),
-        members=tuple(inside),
+        members=drained.inside,
         slow_share=fraction(right[:, 0] * total, weight),
         populations=fraction(left, total[:, np.newaxis]),
         log_inverse_mean_time=-times[:, 0, :].sum(axis=1).log(),
-        branching=fraction(out, out.sum(axis=1)[:, np.newaxis]),
+        branching=fraction(between.out, between.out.sum(axis=1)[:, np.newaxis]),
         times=times,
         ways=edges.ways[()],
         ends=edges.ends,
@@ -142,102 +134,108 @@ def log_slowest(
     reduced = Reduction(edges.ways, edges.ends, np.ones(len(products)))
     reduced.eliminate_to(len(order) - 1, tape=False)
     left = reduced.left
-    times = mean_times(reduced.ways[()][:, :left, :left], reduced.ends[:, :left])
-    return -_longest(times)[2]
+    others = Reduction(
+        {(): reduced.ways[()][:, :left, :left]}, reduced.ends[:, :left], reduced.exits
+    )
+    others.eliminate_to(1, tape=False)
+    return -_longest(mean_times(others))[2]
 
 
-def mean_times(ways: Scaled, ends: Scaled) -> Scaled:
-    """Return the mean time spent in state j after a start in i, shape (b, n, n): the inverse, all positive."""
-    b, n, k = ends.shape
-    kind = type(ends)
-    rewards = kind.zeros((b, n, k + n))
-    rewards[:, :, :k] = ends
-    square = np.arange(n)
-    rewards[:, square, k + square] = kind.from_float(np.ones((b, n)))
-    reduced = Reduction({(): ways}, rewards, np.append(np.ones(k), np.zeros(n)))
-    passages = reduced.eliminate_to(1, tape=False)
-    first = reduced.ends[:, 0, :]
+def mean_times(reduced: Reduction) -> Scaled:
+    """Return the mean time spent in state j after a start in i, shape (b, n, n): the inverse, all positive.
+
+    From an elimination to the first state, without sources.
+    """
+    passages = reduced.passages
+    b, _, n = reduced.ways[()].shape
+    kind = type(reduced.ends)
     times = kind.zeros((b, n, n))
-    times[:, 0, :] = first[:, k:] / first[:, :k].sum(axis=1)[:, np.newaxis]
+    square = np.arange(n)
+    times[:, square, square] = kind.from_float(np.ones((b, n)))
+    # forth: a unit reward for each state; rewards of states beyond those that lead to it stay nothing
+    worth = [np.array([state]) for state in range(n)]
+    for row in range(n - 1, 0, -1):
+        passage, columns = passages[row - 1], worth[row]
+        own = times[:, row, columns] / passage.leaving[:, np.newaxis]
+        times[:, row, columns] = own
+        block = (slice(None), passage.rows[:, np.newaxis], columns[np.newaxis, :])
+        times[block] = times[block] + passage.into[:, :, np.newaxis] * own[:, np.newaxis, :]
+        for other in passage.rows:
+            worth[other] = np.union1d(worth[other], columns)
+    leaving = reduced.ends[:, 0, np.flatnonzero(reduced.exits)].sum(axis=1)
+    times[:, 0, :] = times[:, 0, :] / leaving[:, np.newaxis]
     for row, passage in enumerate(passages, start=1):
-        own = passage.end_columns >= k
-        times[:, row, passage.end_columns[own] - k] = passage.ends[:, np.flatnonzero(own)]
-        if len(passage.columns):
-            onward = passage.out[:, :, np.newaxis] * times[:, passage.columns, :]
-            times[:, row, :] = times[:, row, :] + onward.sum(axis=1)
+        for place, column in enumerate(passage.columns):
+            onward = passage.out[:, place][:, np.newaxis] * times[:, column, :]
+            times[:, row, :] = times[:, row, :] + onward
     return times
 
 
 def _longest(times: Scaled) -> tuple[Scaled, Scaled, FloatArray]:
     """Return the right and left vectors of the largest eigenvalue of a positive matrix, and its logarithm."""
-    start = times.sum(axis=2)
-    plain, top = _similar(times)
-    right, left, unsettled = _iterate(plain)
-    if len(unsettled):
-        right[unsettled], left[unsettled] = _square(plain[unsettled])
-    value = np.einsum("bi,bij,bj->b", left, plain, right) / np.einsum("bi,bi->b", left, right)
+    start, similar, top = _similar(times)
+    plain = np.ascontiguousarray(
+        similar
+    )  # products of small matrices want each matrix in one piece
+    right, left = _rank_one(plain)
+    onward = (plain @ right[:, :, np.newaxis])[:, :, 0]
+    left = (left[:, np.newaxis, :] @ plain)[:, 0, :]
+    value = np.einsum("bi,bi->b", left, onward) / np.einsum("bi,bi->b", left, right)
     log = np.log(value) + top * np.log(2.0)
+    right, left = (
+        np.asfortranarray(vector / vector.max(axis=1, keepdims=True)) for vector in (onward, left)
+    )
     kind = type(times)
     return kind.from_float(right) * start, kind.from_float(left) / start, log
 
 
-MOST_ITERATIONS = 64
-"""Plain iterations before the matrix is squared: enough for decays whose ratio is above 2."""
+MOST_SQUARINGS = 60
+"""Squarings of the matrix of mean times; 60 tell apart decays whose ratio is 1 + 1e-16."""
+SETTLED = 1e-12
+"""Change of the vectors by a squaring at which the next is exact: it squares what is left of the others."""
 
 
-def _iterate(plain: FloatArray) -> tuple[FloatArray, FloatArray, Indices]:
-    """Return right and left vectors by iteration, and the rows that have not settled to the last digit."""
-    b, n, _ = plain.shape
-    all_right, all_left = np.ones((b, n)), np.ones((b, n))
-    rows = np.arange(b)
-    right, left = np.ones((b, n)), np.ones((b, n))
+def _rank_one(plain: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return the right and left vectors by squaring each matrix until it has rank 1, shape (b, n) each."""
     power = plain @ plain
-    power = power @ power  # four steps at once
-    for _ in range(MOST_ITERATIONS // 8):
-        right, left = _step(power, right, left)
-        before = right, left
-        right, left = _step(power, right, left)
-        change = np.maximum(np.abs(right - before[0]), np.abs(left - before[1])).max(axis=1)
-        all_right[rows], all_left[rows] = right, left
-        unsettled = change > 1e-15
-        rows, right, left = rows[unsettled], right[unsettled], left[unsettled]
-        if not len(rows):
-            break
-        power = power[unsettled]
-    return *_step(plain, all_right, all_left), rows
-
-
-def _step(matrix: FloatArray, right: FloatArray, left: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return the vectors times the matrix, the largest entry 1."""
-    right = np.einsum("bij,bj->bi", matrix, right)
-    left = np.einsum("bi,bij->bj", left, matrix)
-    right /= right.max(axis=1, keepdims=True)
-    left /= left.max(axis=1, keepdims=True)
-    return right, left
-
-
-def _square(plain: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return right and left vectors by squaring the matrix until it has rank 1."""
-    power = plain
+    power = power @ power  # row sums are close to each other, so that nothing leaves the range yet
+    margins = _margins(power)
+    rows, last = np.arange(len(plain)), margins.copy()
     for _ in range(MOST_SQUARINGS):
         power = power @ power
         power /= power.max(axis=(1, 2), keepdims=True)
-        spread = power.sum(axis=1, keepdims=True) * power.sum(axis=2, keepdims=True)
-        spread /= power.sum(axis=(1, 2))[:, np.newaxis, np.newaxis]
-        if np.all(np.abs(power - spread) <= 1e-15 * spread.max(axis=(1, 2), keepdims=True)):
+        new = _margins(power)
+        margins[rows] = new
+        unsettled = np.flatnonzero(np.abs(new - last).max(axis=1) > SETTLED)
+        if not len(unsettled):
             break
-    return _step(plain, power.sum(axis=2), power.sum(axis=1))
+        if len(unsettled) < 0.9 * len(rows):
+            rows, power, new = rows[unsettled], power[unsettled], new[unsettled]
+        last = new
+    n = plain.shape[1]
+    return margins[:, :n], margins[:, n:]
 
 
-def _similar(times: Scaled) -> tuple[FloatArray, NDArray[np.int32]]:
+def _margins(matrix: FloatArray) -> FloatArray:
+    """Return the sums of the rows, then those of the columns, the largest of each 1; shape (b, 2 n)."""
+    b, n, _ = matrix.shape
+    if n < _SHORT:  # NumPy's sum is slow over an axis that is short, one product of matrices is not
+        unit = np.eye(n)
+        add_up = np.hstack([np.repeat(unit, n, axis=0), np.tile(unit, (n, 1))])
+        sums = (matrix.reshape(b, n * n) @ add_up).reshape(b, 2, n)
+    else:
+        sums = np.stack([matrix.sum(axis=2), matrix.sum(axis=1)], axis=1)
+    return np.asarray((sums / sums.max(axis=2, keepdims=True)).reshape(b, 2 * n))
+
+
+_SHORT = 16
+
+
+def _similar(times: Scaled) -> tuple[Scaled, FloatArray, NDArray[np.int32]]:
     """Scale a positive matrix by its row sums, which are close to the right vector, into ordinary numbers.
 
-    Returns D^-1 A D / 2**exponent, D the row sums, and the exponent.
+    Returns the row sums D, D^-1 A D / 2**exponent, and the exponent.
     """
     start = times.sum(axis=2)
     similar = times * start[:, np.newaxis, :] / start[:, :, np.newaxis]
-    return similar.levelled()
-
-
-MOST_SQUARINGS = 60
-"""Squarings of the matrix of mean times; 60 tell apart decays whose ratio is 1 + 1e-16."""
+    return start, *similar.levelled()

@@ -2,6 +2,9 @@
 
 Effective rates of a mechanism span hundreds of orders of magnitude. Only additions, products and
 quotients of numbers of one sign are needed; each costs one rounding, whatever the size.
+
+The first axis is the batch (temperatures, samples). Where it is the longest it is contiguous in
+memory, so that each step of an elimination is one pass over contiguous numbers.
 """
 
 from __future__ import annotations
@@ -15,6 +18,11 @@ FloatArray = NDArray[np.float64]
 _LN2 = np.log(np.longdouble(2.0))
 _ZERO_EXPONENT = -(2**26)
 """Exponent of a zero: below that of any number, so that it never sets the scale of a sum."""
+
+
+def zeros(shape: tuple[int, ...]) -> FloatArray:
+    """Return zeros, the first axis contiguous where it is longer than the last."""
+    return np.zeros(shape, order="F" if shape[0] > shape[-1] else "C")
 
 
 class Scaled:
@@ -59,7 +67,8 @@ class Scaled:
     @classmethod
     def zeros(cls, shape: tuple[int, ...]) -> Scaled:
         """Return an array of zeros."""
-        return cls(np.zeros(shape), np.full(shape, _ZERO_EXPONENT, np.int32))
+        mantissa = zeros(shape)
+        return cls(mantissa, np.full_like(mantissa, _ZERO_EXPONENT, np.int32))
 
     @property
     def shape(self) -> tuple[int, ...]:
@@ -144,7 +153,7 @@ class Ordinary(Scaled):
     @classmethod
     def zeros(cls, shape: tuple[int, ...]) -> Ordinary:
         """Return an array of zeros."""
-        return cls(np.zeros(shape))
+        return cls(zeros(shape))
 
     def __getitem__(self, key: Any) -> Ordinary:
         return Ordinary(self.mantissa[key])
@@ -195,9 +204,11 @@ _NO_EXPONENT = np.zeros(0, np.int32)
 
 def fraction(part: Scaled, whole: Scaled) -> FloatArray:
     """Return part/whole as ordinary numbers, 0 where both are 0."""
+    nothing = whole.mantissa == 0.0
     with np.errstate(divide="ignore", invalid="ignore", over="ignore", under="ignore"):
         ratio = part.mantissa / whole.mantissa
-        ratio = np.where(whole.mantissa == 0.0, 0.0, ratio)
+        if nothing.any():
+            ratio = np.where(nothing, 0.0, ratio)
         if isinstance(part, Ordinary):
             return np.asarray(ratio)
         return np.asarray(np.ldexp(ratio, part.exponent - whole.exponent))

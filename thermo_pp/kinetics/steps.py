@@ -183,8 +183,8 @@ def elementary_rates(
     """
     t = energies.temperature_k
     b, n = len(t), len(mechanism.steps)
-    reduced = np.empty((b, n), np.longdouble)
-    slope = np.empty((b, n))
+    reduced = np.empty((b, n), np.longdouble, order="F")
+    slope = np.empty((b, n), order="F")
     forward, reverse = np.empty((b, n)), np.empty((b, n))
     limited = np.zeros((b, n), np.bool_)
     log_kappa, kappa_energy = np.zeros((b, n)), np.zeros((b, n))
@@ -264,9 +264,12 @@ def elementary_rates(
 
 
 def _side(counts: Mapping[str, int], energies: Energetics) -> Side:
-    columns = [energies.index(name) for name in counts]
-    weights = np.array(list(counts.values()), dtype=np.float64)
-    return energies.reduced[:, columns] @ weights, energies.slope_j_mol[:, columns] @ weights
+    reduced = np.zeros(len(energies.temperature_k), np.longdouble)
+    slope = np.zeros(len(energies.temperature_k))
+    for name, count in counts.items():
+        reduced += count * energies.reduced[:, energies.index(name)]
+        slope += count * energies.slope_j_mol[:, energies.index(name)]
+    return reduced, slope
 
 
 def rate_unit(counts: Mapping[str, int]) -> str:
