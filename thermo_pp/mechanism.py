@@ -92,6 +92,30 @@ class Step:
 
 
 @dataclass(frozen=True)
+class RatePoint:
+    """Where the rate of a network that need not be linear is asked for.
+
+    Attributes
+    ----------
+    text : str
+        As the study has it: ``"start"``, ``"steady state"`` or a percentage.
+    conversion : float or None
+        Share of the reactant that is lost there, 0 at the start; None at the steady state of the flow.
+    law : mapping of str to int
+        The rate is divided by these concentrations to these powers; empty: it is the rate itself.
+    """
+
+    text: str
+    conversion: float | None
+    law: Mapping[str, int] = field(default_factory=dict)
+
+    @property
+    def order(self) -> int:
+        """Overall order of the constant that the law makes of the rate; 0 is the rate itself."""
+        return sum(self.law.values())
+
+
+@dataclass(frozen=True)
 class Mechanism:
     """Steps and what the question is.
 
@@ -112,6 +136,8 @@ class Mechanism:
         Names of the declared paths, as many as `paths`.
     where : str
         The study file, for messages.
+    point : RatePoint or None
+        Where the rate is asked for, beside the constants of a linear network.
     """
 
     steps: tuple[Step, ...]
@@ -123,6 +149,7 @@ class Mechanism:
     charge: Mapping[str, int] = field(default_factory=dict)
     path_names: tuple[str, ...] = ()
     where: str = "the mechanism"
+    point: RatePoint | None = None
 
     @property
     def saddles(self) -> tuple[str, ...]:

@@ -26,7 +26,8 @@ Constant = Literal["concentration", "pressure"]
 """What of a gas stays when the temperature changes."""
 Broadening = Literal["lindemann", "troe", "iupac", "jpl"]
 """How a rate constant is broadened between its limits of low and high pressure."""
-Definition = Literal["free", "pool", "relaxation", "cycle"]
+Definition = Literal["free", "pool", "relaxation", "cycle", "point"]
+"""What a rate is the rate of; ``point``: at one declared point of a network that need not be linear."""
 SelectivityKind = Literal["products", "enantiomeric", "diastereomeric", "isotopic"]
 PolynomialForm = Literal["nasa7", "nasa9", "shomate"]
 
@@ -43,7 +44,9 @@ ENERGY_UNITS: tuple[EnergyUnit, ...] = get_args(EnergyUnit)
 FORMATS: tuple[Format, ...] = get_args(Format)
 DUPLICATES: tuple[Duplicates, ...] = get_args(Duplicates)
 THERMAL: tuple[Thermal, ...] = get_args(Thermal)
-DEFINITIONS: tuple[Definition, ...] = get_args(Definition)
+DEFINITIONS: tuple[Definition, ...] = ("free", "pool", "relaxation", "cycle")
+"""Those that are constants of a network."""
+ALL_DEFINITIONS: tuple[Definition, ...] = get_args(Definition)
 POLYNOMIAL_FORMS: tuple[PolynomialForm, ...] = get_args(PolynomialForm)
 
 DEFAULT_LOW_MODES: LowModes = "rotor-entropy"

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
@@ -17,6 +17,15 @@ if TYPE_CHECKING:
     import pandas as pd
 
 FloatArray = NDArray[np.float64]
+
+
+USUAL_K = 298.15
+
+
+def course_temperatures(temperature_k: Sequence[float]) -> tuple[float, ...]:
+    """Return where time courses are followed: both ends and the one nearest to 298.15 K."""
+    usual = min(temperature_k, key=lambda t: abs(t - USUAL_K))
+    return tuple(sorted({min(temperature_k), usual, max(temperature_k)}))
 
 
 @dataclass(frozen=True, eq=False)

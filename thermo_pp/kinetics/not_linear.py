@@ -10,9 +10,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import StudyError
+from thermo_pp.kinetics.courses import USUAL_K
 from thermo_pp.kinetics.mass_action import log_held
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.network import NotLinear
+from thermo_pp.kinetics.point import point_rate
 from thermo_pp.kinetics.results import EffectiveRate, Rate, StepRate
 from thermo_pp.kinetics.start import check_balance
 from thermo_pp.kinetics.steps import rate_unit
@@ -22,6 +24,7 @@ from thermo_pp.names import DEFINITIONS, Definition
 
 if TYPE_CHECKING:
     from thermo_pp.kinetics.asked import StudyLike
+    from thermo_pp.mechanism import RatePoint
 
 FloatArray = NDArray[np.float64]
 
@@ -70,14 +73,31 @@ def not_linear(study: StudyLike, model: Model, rates: Rates, error: NotLinear) -
         findings=tuple(dict.fromkeys((*study.findings, *rates.steps.findings))),
     )
     if found["cycle"] is None:
-        return replace(
-            result,
-            words=(
-                f"{error.what[0].upper()}{error.what[1:]}: no constant alone describes it; the time "
-                "course and the steady state of a flow do.",
-            ),
+        said: tuple[str, ...] = (
+            f"{error.what[0].upper()}{error.what[1:]}: no constant alone describes it; the time "
+            "course and the steady state of a flow do.",
         )
+        if mechanism.point is not None:
+            said += (_point_words(model, mechanism.point),)
+        return replace(result, words=said)
     return replace(result, words=words(result))
+
+
+def _point_words(model: Model, point: RatePoint) -> str:
+    """Say what the rate at the declared point is, at the temperature nearest to 298.15 K."""
+    kelvin = min(model.conditions.temperature_k, key=lambda t: abs(t - USUAL_K))
+    at = point_rate(model.at(np.array([kelvin])))
+    by = max(at.saddles, key=lambda name: float(at.control[name][0]))
+    law = " ".join(f"[{n}]" if p == 1 else f"[{n}]^{p}" for n, p in point.law.items())
+    over = f" over {law}" if law else ""
+    place = "the start" if point.text == "start" else f"a conversion of {point.text}"
+    if point.conversion is None:
+        place = "the steady state of the flow"
+    return (
+        f"At {place} and {kelvin:g} K the loss of {model.mechanism.reactant}{over} is "
+        f"{at.sign[0] * np.exp(at.log[0]):.4g} {at.unit}, E_a {at.energy_j_mol[0] / 1000.0:.4g} kJ/mol; "
+        f"{by} controls it most (X {at.control[by][0]:.3g})."
+    )
 
 
 def step_rates(rates: Rates, reversibility: Mapping[int, FloatArray]) -> tuple[StepRate, ...]:

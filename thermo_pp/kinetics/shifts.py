@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import controls_of
 from thermo_pp.names import Definition
 from thermo_pp.species import SaddleMember
 from thermo_pp.units import GAS_J_MOL_K
@@ -72,16 +73,37 @@ class Slope:
     energy_kj_mol: FloatArray
 
 
+def kappa_slopes(rates: Rates) -> dict[int, tuple[FloatArray, FloatArray]]:
+    """Return how tunnelling factors follow the energies: species column -> d ln kappa/dE and its part of dE_a/dE.
+
+    Per kJ/mol, shape (b, n) each; empty where no barrier is an Eckart one.
+    """
+    found: dict[int, tuple[FloatArray, FloatArray]] = {}
+    through: set[str] = set()
+    for step in rates.model.mechanism.steps:
+        if step.tunnelling == "eckart":
+            through |= {*step.species, str(step.through)}
+    for column, name in enumerate(rates.energies.names):
+        if name not in through:
+            continue
+        direction = np.zeros(len(rates.energies.names))
+        direction[column] = _STEP_KJ_MOL
+        up, down = (shifted(rates, sign * direction).steps for sign in (1.0, -1.0))
+        found[column] = (
+            (up.log_kappa - down.log_kappa) / (2.0 * _STEP_KJ_MOL),
+            (up.kappa_energy_j_mol - down.kappa_energy_j_mol) / (2.0 * _STEP_KJ_MOL),
+        )
+    return found
+
+
 def slope(rates: Rates, definition: Definition) -> Slope:
     """Return the rate in one definition with its slope by every electronic energy.
 
     The network's part is exact (the controls); that of the effective saddles by the energies, where
     limits join and tunnelling changes, is differenced step by step, outside the network.
     """
-    log_rate, network, energies = rates.rate(definition), rates.network, rates.energies
-    by_step = np.zeros((len(log_rate.log), len(rates.steps.names)))
-    for number, edge in enumerate(network.edges):
-        by_step[:, edge.step] += log_rate.saddles[:, number]
+    log_rate, by_step, species = controls_of(rates, definition)
+    energies = rates.energies
     per_rt = 1000.0 / (GAS_J_MOL_K * energies.temperature_k)
     found = np.zeros((len(log_rate.log), len(energies.names)))
     for column, name in enumerate(energies.names):
@@ -91,8 +113,8 @@ def slope(rates: Rates, definition: Definition) -> Slope:
         down = shifted(rates, -direction).steps.saddle_reduced
         follows = ((up - down) / (2.0 * _STEP_KJ_MOL)).astype(np.float64)
         found[:, column] = -(by_step * follows).sum(axis=1)
-        if name in network.species:
-            found[:, column] += log_rate.species[:, network.species.index(name)] * per_rt
+        if name in species:
+            found[:, column] -= species[name] * per_rt
     return Slope(log_rate.log, log_rate.sign, found, log_rate.energy_j_mol / 1000.0)
 
 

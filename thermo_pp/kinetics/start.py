@@ -13,7 +13,7 @@ from thermo_pp.conditions import Conditions, Held
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.mass_action import System, log_held, mass_action
 from thermo_pp.kinetics.network import CLOSED_WITHIN
-from thermo_pp.kinetics.steps import Energetics, elementary_rates, energetics
+from thermo_pp.kinetics.steps import ElementaryRates, Energetics, elementary_rates, energetics
 from thermo_pp.loops import equilibrium_of, held_loops
 from thermo_pp.mechanism import Mechanism
 from thermo_pp.units import GAS_J_MOL_K
@@ -65,17 +65,30 @@ def systems(
     StudyError
         The study says nothing of what there is, or holds species that are out of balance.
     """
-    mechanism, conditions = study.mechanism, study.conditions
+    mechanism = study.mechanism
+    names = (*mechanism.species, *mechanism.saddles)
+    energies = energetics({name: study.species[name] for name in names}, temperature_k)
+    rates = elementary_rates(mechanism, energies, study.treatment, study.conditions)
+    return starts(mechanism, study.conditions, energies, rates, flowing=flowing)
+
+
+def starts(
+    mechanism: Mechanism,
+    conditions: Conditions,
+    energies: Energetics,
+    rates: ElementaryRates,
+    *,
+    flowing: bool = False,
+) -> tuple[Start, ...]:
+    """Return the start at each of b temperatures, from energies that are known; else as `systems`."""
     given = {**conditions.initial, **conditions.total}
+    temperature_k = energies.temperature_k
     if not given and not (flowing and conditions.flow):
         raise StudyError(
             "a time course needs to know what there is at the start",
             where=f"{mechanism.where} [conditions]",
             mend='add initial = { A = "0.1 mol/L" }, with every species that is there at the start',
         )
-    names = (*mechanism.species, *mechanism.saddles)
-    energies = energetics({name: study.species[name] for name in names}, temperature_k)
-    rates = elementary_rates(mechanism, energies, study.treatment, conditions)
     equilibrium = equilibrium_of(mechanism, conditions.held, driven=conditions.driven)
     held = log_held(conditions.held, equilibrium, energies)
     if not conditions.driven:

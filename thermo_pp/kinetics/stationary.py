@@ -46,6 +46,8 @@ class Steady:
         Derivatives of the rate by what else was asked for.
     lifetimes_s : shape (r,), complex
         Of small deviations; the real parts of a stable state are positive.
+    moved : shape (s, p)
+        Derivatives of the concentrations by the responses.
     """
 
     concentration: FloatArray
@@ -53,6 +55,7 @@ class Steady:
     response: FloatArray
     pushed: FloatArray
     lifetimes_s: NDArray[np.complex128]
+    moved: FloatArray
 
 
 def settle(system: System, start: FloatArray) -> FloatArray:
@@ -149,4 +152,5 @@ def at_rest(
         moved_by = way.change @ solve_scaled(matrix, -(way.mix @ pushes))
         pushed = over @ pushes + (over @ slopes) @ moved_by
     rate = float(over @ (forward - reverse))
-    return Steady(concentration, rate, response, pushed, lifetimes(system, concentration))
+    lives = lifetimes(system, concentration)
+    return Steady(concentration, rate, response, pushed, lives, moved)

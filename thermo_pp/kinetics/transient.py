@@ -99,7 +99,7 @@ def _course(
     there = whole.present(start.concentration)
     system, now = whole.only(there), start.concentration[there]
     response = np.column_stack([start.response[there], np.zeros(len(now))])
-    clocked = _with_clock(system)
+    clocked = with_clock(system)
     end, even = _end(system, now)
     fastest = fastest_rate(system, now)
     reason = _no_end(system, end)
@@ -166,7 +166,7 @@ def _product_share(
     return dict(zip(competing, shares, strict=True))
 
 
-def _with_clock(system: System) -> System:
+def with_clock(system: System) -> System:
     """Return the system with one more response: all steps faster at once, as if time ran faster."""
     ones = np.ones((len(system.left), 1))
     return replace(

@@ -7,7 +7,7 @@ catalyst it holds, and the order in the total catalyst is a result.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import TYPE_CHECKING
@@ -21,6 +21,7 @@ from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.extents import conserved
 from thermo_pp.kinetics.mass_action import System, mass_action
 from thermo_pp.kinetics.net_reaction import write_side
+from thermo_pp.kinetics.point_rate import PointRate
 from thermo_pp.kinetics.results import Rate, SignChange
 from thermo_pp.kinetics.stationary import NoSteadyState, Steady, at_rest, rest, settle
 from thermo_pp.kinetics.windows import crossings, sign_changes
@@ -50,7 +51,9 @@ class Turnover:
 
 
 @dataclass(frozen=True, eq=False)
-class _Rested:
+class Rested:
+    """The catalyst at rest at one temperature."""
+
     system: System
     steady: Steady
     weights: FloatArray
@@ -67,26 +70,15 @@ def turnover(model: Model, rates: Rates) -> Turnover:
         No total is given, the product does not follow from the total, or nothing comes to rest.
     """
     t = rates.energies.temperature_k
-    rested = _rested(model, rates)
-    sign = np.array([np.sign(one.steady.rate) for one in rested])
-    log = np.array([np.log(abs(one.steady.rate) / one.total) for one in rested])
-    relative = np.array([one.steady.response / one.steady.rate for one in rested])
-    first = rested[0].system
-    energy = relative[:, -1]
-    control = {name: relative[:, k] for k, name in enumerate(first.responses[:-1])}
-    for name, how in model.conditions.held.items():
-        if how.form == "equilibrium":
-            control.setdefault(name, np.zeros(len(t)))
-    orders = {name: 0.0 - control[name] for name in first.held}
+    rested = rests(model, rates)
+    found = turned(model, rested)
+    log, sign, energy = found.log, found.sign, found.energy_j_mol
+    control, orders = (
+        found.control,
+        {name: 0.0 - found.control[name] for name in rested[0].system.held},
+    )
     log_rate = LogRate(log, sign, np.zeros((len(t), 0)), np.zeros((len(t), 0)), energy)
     states = {name: model.species[name].at(t[:1]).standard_state for name in orders}
-    shares = {
-        name: np.array([one.weights[k] * one.steady.concentration[k] / one.total for one in rested])
-        for k, name in enumerate(first.names)
-        if rested[0].weights[k] > 0.0
-    }
-    names = list(shares)
-    best = np.argmax(np.stack(list(shares.values())), axis=0)
     rate = Rate(
         definition="cycle",
         rate_constant=sign * np.exp(log),
@@ -96,17 +88,41 @@ def turnover(model: Model, rates: Rates) -> Turnover:
         standard_activation=standard_activation(log_rate, orders, t, model.conditions, states),
         sign_changes=_sign_changes(model, t),
         control=control,
-        saddles=first.saddles,
+        saddles=found.saddles,
         orders=orders,
-        populations=shares,
-        resting_state=tuple(names[int(k)] for k in best),
+        populations=found.populations,
+        resting_state=tuple(found.states[int(k)] for k in found.resting),
         catalyst_order=np.array([one.steady.pushed[0] / one.steady.rate for one in rested]),
     )
     reversibility = _reversibility(rested, len(model.mechanism.steps))
     return Turnover(rate, _net(model, rested[-1]), reversibility)
 
 
-def _rested(model: Model, rates: Rates) -> list[_Rested]:
+def turned(model: Model, rested: Sequence[Rested]) -> PointRate:
+    """Return the turnover of a catalyst at rest, its controls, and where the catalyst is."""
+    relative = np.array([one.steady.response / one.steady.rate for one in rested])
+    first = rested[0].system
+    control = {name: relative[:, k] for k, name in enumerate(first.responses[:-1])}
+    for name, how in model.conditions.held.items():
+        if how.form == "equilibrium":
+            control.setdefault(name, np.zeros(len(rested)))
+    populations = {
+        name: np.array([one.weights[k] * one.steady.concentration[k] / one.total for one in rested])
+        for k, name in enumerate(first.names)
+        if rested[0].weights[k] > 0.0
+    }
+    return PointRate(
+        log=np.array([np.log(abs(one.steady.rate) / one.total) for one in rested]),
+        sign=np.array([np.sign(one.steady.rate) for one in rested]),
+        energy_j_mol=relative[:, -1],
+        control=control,
+        saddles=first.saddles,
+        unit="s^-1",
+        populations=populations,
+    )
+
+
+def rests(model: Model, rates: Rates) -> list[Rested]:
     """Return the catalyst at rest at each temperature."""
     mechanism, conditions = model.mechanism, model.conditions
     where = f"{mechanism.where} [conditions] total"
@@ -119,7 +135,7 @@ def _rested(model: Model, rates: Rates) -> list[_Rested]:
             mend=f'give its total: total = {{ {catalyst} = "1e-3 mol/L" }}',
         )
     absent = tuple(name for name in mechanism.products if name not in conditions.held)
-    found: list[_Rested] = []
+    found: list[Rested] = []
     at_each = mass_action(
         mechanism, conditions, rates.energies, rates.steps, rates.equilibrium, absent
     )
@@ -154,7 +170,7 @@ def _rested(model: Model, rates: Rates) -> list[_Rested]:
                 where=f"{mechanism.where} [effective] product",
                 mend="add the step that makes it, or hold what the cycle uses",
             )
-        found.append(_Rested(system, steady, weights, float(own.sum()), np.flatnonzero(kept)))
+        found.append(Rested(system, steady, weights, float(own.sum()), np.flatnonzero(kept)))
     return found
 
 
@@ -175,7 +191,7 @@ def _weights(system: System, now: FloatArray, own: FloatArray, where: str) -> Fl
     return np.where(np.abs(weights) < 1e-9, 0.0, weights)
 
 
-def _settled(system: System, now: FloatArray, before: _Rested | None) -> FloatArray | None:
+def _settled(system: System, now: FloatArray, before: Rested | None) -> FloatArray | None:
     """Return the state at rest: near that of the temperature before, or by following it in time."""
     if before is not None and before.system.names == system.names:
         here = np.maximum(before.steady.concentration, 0.0)
@@ -195,14 +211,14 @@ def _sign_changes(model: Model, temperature_k: FloatArray) -> tuple[SignChange, 
         return ()
 
     def energies(t: FloatArray) -> FloatArray:
-        rested = _rested(model, model.at(t))
+        rested = rests(model, model.at(t))
         return np.array([[one.steady.response[-1] / one.steady.rate] for one in rested])
 
     scan = 1.0 / np.linspace(1.0 / low, 1.0 / high, _SCAN)
     return sign_changes(crossings(energies, scan, energies(scan))[0])
 
 
-def _reversibility(rested: list[_Rested], steps: int) -> dict[int, FloatArray]:
+def _reversibility(rested: list[Rested], steps: int) -> dict[int, FloatArray]:
     """Return the smaller over the larger one-way flux of each step."""
     found = {step: np.full(len(rested), np.nan) for step in range(steps)}
     for k, one in enumerate(rested):
@@ -212,7 +228,7 @@ def _reversibility(rested: list[_Rested], steps: int) -> dict[int, FloatArray]:
     return found
 
 
-def _net(model: Model, one: _Rested) -> str:
+def _net(model: Model, one: Rested) -> str:
     """Return what one turnover uses and makes, as it runs at the last temperature."""
     mechanism, system = model.mechanism, one.system
     changes = {}

@@ -8,6 +8,7 @@ expression's own form), and enters once, with the covariance of these parameters
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Protocol
@@ -22,6 +23,7 @@ from thermo_pp.kinetics.controls import sensitivity
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.network import NotLinear
+from thermo_pp.kinetics.point import definitions, is_linear, rate_of
 from thermo_pp.kinetics.shifts import Slope, shifted, slope
 from thermo_pp.measured.rows import Expression, Point, Row
 from thermo_pp.mechanism import write_sum
@@ -74,6 +76,8 @@ class Curve:
                 mend="check the amounts held: a measured rate constant is above 0",
             )
         log, energy = found.log, found.energy_kj_mol
+        if self.row.definition == "point":  # a constant of its own order by its law
+            return replace(found, log=log, energy_kj_mol=energy)
         for name, order in self.row.orders.items():
             held = rates.model.conditions.held[name]
             log = log - order * np.log(held.concentration_mol_l(t))
@@ -83,6 +87,10 @@ class Curve:
     def orders(self) -> dict[str, FloatArray]:
         """Return the computed orders in the held species."""
         rates = self.rates
+        if not is_linear(rates):
+            control = rate_of(rates, self.row.definition).control
+            held = rates.model.conditions.held
+            return {n: 0.0 - control[n] for n in held if held[n].form != "equilibrium"}
         rate = rates.rate(self.row.definition)
         return sensitivity(rate, rates.network, rates.steps.names).orders
 
@@ -103,7 +111,8 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
         not linear.
     """
     stated = [name for name, one in study.conditions.held.items() if one.form != "equilibrium"]
-    for name in (*held, *row.orders):
+    at_point = row.definition == "point"
+    for name in held if at_point else (*held, *row.orders):
         if name not in stated:
             raise StudyError(
                 f"{name!r} is not held at a stated amount by the study",
@@ -113,15 +122,16 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
     conditions = replace(study.conditions, held={**study.conditions.held, **held})
     model = Model(study.mechanism, conditions, study.treatment, study.species)
     rates = model.at(np.asarray(temperature_k, dtype=np.float64))
-    try:
+    known = definitions(rates)
+    if is_linear(rates):
         rates.check()
-        known = rates.definitions()
-    except NotLinear as error:
+    elif not known:
         raise StudyError(
-            f"{error.what}: no rate constant alone describes the study, so none can be set against this one",
+            f"{_why(rates)}: no rate constant alone describes the study, so none can be set against this one",
             where=row.where,
-            mend=f"{error.mend}; a rate constant is compared with networks that are linear",
-        ) from None
+            mend='say where its rate is asked for and over what: [effective] at = "start" and rate_law = '
+            '{ A = 1, B = 1 }; the definition of the measured constant is "point" then',
+        )
     if row.definition not in known:
         raise StudyError(
             f"the study has no rate of the definition {row.definition!r}",
@@ -129,6 +139,9 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
             mend=f"use one of: {', '.join(known)}",
         )
     found = Curve(rates, row)
+    if at_point:
+        _check_law(study, row)
+        return found
     computed = found.orders()
     for name, order in row.orders.items():
         worst = computed[name][np.argmax(np.abs(computed[name] - order))]
@@ -141,6 +154,42 @@ def curve(study: StudyLike, row: Row, held: Mapping[str, Held], temperature_k: F
                 "or mend the unit and the orders",
             )
     return found
+
+
+def _why(rates: Rates) -> str:
+    """Say why a network is not linear."""
+    try:
+        _ = rates.network
+    except NotLinear as error:
+        return error.what
+    raise ValueError("the network is linear")
+
+
+def _check_law(study: StudyLike, row: Row) -> None:
+    """Refuse a constant that is not of the rate law that the study has for its point."""
+    mechanism = study.mechanism
+    assert mechanism.point is not None
+    assert mechanism.reactant is not None
+    law = dict(mechanism.point.law)
+    measured = Counter({mechanism.reactant: 1}) + Counter(row.orders)
+    if not law:
+        raise StudyError(
+            f"the study asks for the rate itself at its point, in mol/(L s), and a rate constant in "
+            f"{row.unit.text} cannot be set against that",
+            where=row.where,
+            mend=f"say what the rate is over: [effective] rate_law = {_as_table(measured)}",
+        )
+    if law != dict(measured):
+        raise StudyError(
+            f"a rate constant in {row.unit.text} over {write_sum(measured)} is of another order than the "
+            f"study's rate law, which is over {write_sum(law)}: their dimensions or meanings differ",
+            where=row.where,
+            mend='mend the unit, the column "orders" (what stands beside the reactant), or [effective] rate_law',
+        )
+
+
+def _as_table(counts: Mapping[str, int]) -> str:
+    return f"{{ {', '.join(f'{name} = {count}' for name, count in counts.items())} }}"
 
 
 @dataclass(frozen=True, eq=False)

@@ -13,7 +13,7 @@ from thermo_pp.measured.columns import AMOUNT, Cells, read_columns
 from thermo_pp.measured.rows import Expression, Measurements, Point
 from thermo_pp.measured.units import RateUnit, rate_unit
 from thermo_pp.mechanism import parse_sum
-from thermo_pp.names import DEFINITIONS
+from thermo_pp.names import ALL_DEFINITIONS
 from thermo_pp.nearest import suggestion
 from thermo_pp.units import GAS_J_MOL_K, convert
 
@@ -134,9 +134,9 @@ def _expression(cells: Cells) -> Expression:
 
 def _common(cells: Cells, value: str) -> dict[str, Any]:
     """Return what points and expressions have in common; the unit is that of the column `value`."""
-    definition = cells.text("definition", f"write one of: {', '.join(DEFINITIONS)}")
-    if definition not in DEFINITIONS:
-        mend = suggestion(definition, DEFINITIONS, "definitions")
+    definition = cells.text("definition", f"write one of: {', '.join(ALL_DEFINITIONS)}")
+    if definition not in ALL_DEFINITIONS:
+        mend = suggestion(definition, ALL_DEFINITIONS, "definitions")
         raise StudyError(f"unknown definition {definition!r}", where=cells.where, mend=mend)
     unit = rate_unit(cells.units[value], where=cells.where)
     return {

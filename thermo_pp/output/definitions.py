@@ -9,10 +9,12 @@ KEYS: dict[Definition, str] = {
     "pool": "per_pool",
     "relaxation": "relaxation",
     "cycle": "cycle",
+    "point": "point",
 }
 TITLES: dict[Definition, str] = {
     "free": "Rate per free reactant",
     "pool": "Rate per pool (reactant and intermediates)",
     "relaxation": "Relaxation to equilibrium",
     "cycle": "Turnover of the catalyst",
+    "point": "Rate at the point asked for",
 }

@@ -13,7 +13,16 @@ from thermo_pp.kinetics.doubt.results import QUANTILES, Answer, Doubt, RateDoubt
 from thermo_pp.names import Definition, EnergyUnit
 from thermo_pp.output.definitions import KEYS
 from thermo_pp.output.notes import kelvin, some, usual
-from thermo_pp.output.tables import Block, Cell, Column, Table, defined, energy_column, in_unit
+from thermo_pp.output.tables import (
+    Block,
+    Cell,
+    Column,
+    Table,
+    defined,
+    energy_column,
+    in_unit,
+    unit_heading,
+)
 from thermo_pp.units import ENERGY_PER_KJ_MOL, GAS_J_MOL_K
 
 SHOWN_TEMPERATURES = 5
@@ -25,6 +34,7 @@ _OF: dict[Definition, str] = {
     "pool": "rate per pool",
     "relaxation": "relaxation",
     "cycle": "turnover",
+    "point": "rate at the point asked for",
 }
 
 
@@ -66,6 +76,7 @@ def _rate_keys(rate: RateDoubt) -> dict[str, Any]:
             if name != "energies_kj_mol"  # one number a sample: for figures
         }
     return {
+        "unit": rate.unit,
         **vars(rate.answer),
         "first_order_log_deviation": rate.first_order_log_deviation,
         "first_order_energy_deviation_kj_mol": rate.first_order_energy_deviation_kj_mol,
@@ -230,7 +241,7 @@ def _bands(
 ) -> Table:
     columns = [
         Column("T", "K", "$T$"),
-        *(Column("k 2.5 %", "s⁻¹", digits=2), Column("k 97.5 %", "s⁻¹", digits=2)),
+        *(Column(f"k {q} %", unit_heading(rate.unit), digits=2) for q in ("2.5", "97.5")),
         *(Column("SD ln k", decimals=2), Column("first order", decimals=2)),
         *(energy_column("Eₐ 2.5 %", unit), energy_column("Eₐ 97.5 %", unit)),
         *(Column("P(Eₐ<0)", decimals=4), Column("same answer", decimals=4)),
@@ -316,7 +327,7 @@ def _alternatives(result: Doubt, k: int, unit: EnergyUnit) -> Table:
     columns = [Column("Choice"), Column("instead")]
     for name in shown:
         columns += [
-            Column(f"k, {name}", "s⁻¹", digits=3),
+            Column(f"k, {name}", unit_heading(result.rates[name].unit), digits=3),
             energy_column(f"Eₐ, {name}", unit),
         ]
     columns += [Column("controls"), Column("rests")]

@@ -13,7 +13,7 @@ from thermo_pp import conditions as made
 from thermo_pp.amounts import Surroundings, check_total
 from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import StudyError
-from thermo_pp.mechanism import Step, parse_equation
+from thermo_pp.mechanism import RatePoint, Step, parse_equation
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Phase, Tunnelling
 from thermo_pp.nearest import suggestion
 from thermo_pp.rate_laws import Arrhenius
@@ -27,6 +27,7 @@ from thermo_pp.study.keys import (
     StudyKeys,
     TreatmentKeys,
 )
+from thermo_pp.study.points import make_point
 from thermo_pp.study.rate_laws import (
     make_arrhenius,
     make_falloff,
@@ -44,6 +45,7 @@ class Question(TypedDict):
     catalyst: str | None
     paths: tuple[tuple[int, ...], ...]
     path_names: tuple[str, ...]
+    point: RatePoint | None
 
 
 def make_treatment(keys: TreatmentKeys, file: str) -> Treatment:
@@ -398,7 +400,9 @@ def _check_viscosity(step: Step, phase: Phase) -> None:
 
 def make_question(keys: StudyKeys, steps: Sequence[Step], file: str) -> Question:
     """Turn ``[effective]`` and ``[[paths]]`` into what is asked of the mechanism."""
-    question = Question(reactant=None, products=(), catalyst=None, paths=(), path_names=())
+    question = Question(
+        reactant=None, products=(), catalyst=None, paths=(), path_names=(), point=None
+    )
     effective = keys.effective
     known = list(dict.fromkeys(name for step in steps for name in step.species))
     if not isinstance(effective, UnsetType):
@@ -426,6 +430,7 @@ def make_question(keys: StudyKeys, steps: Sequence[Step], file: str) -> Question
         question["reactant"] = start if given[0] == "reactant" else None
         question["catalyst"] = start if given[0] == "catalyst" else None
         question["products"] = tuple(products)
+        question["point"] = make_point(effective, known, file)
     for number, path in enumerate(keys.paths):
         where = place(file, "paths", number, "steps")
         for entry in path.steps:

@@ -388,6 +388,8 @@ class _Run:
         if not conditions.initial and not self.times_s:
             self.left_out["transient"] = "the study has no [conditions] initial, only a total"
             return None
+        from thermo_pp.kinetics.courses import course_temperatures
+
         kelvin = course_temperatures(conditions.temperature_k)
         return self.study.transient(times_s=self.times_s, temperature_k=kelvin)
 
@@ -468,12 +470,6 @@ def standard_states(own: StandardState) -> tuple[StandardState, ...]:
 
 
 _BAR = StandardState("pressure", BAR_PA, "1 bar")
-
-
-def course_temperatures(temperature_k: Sequence[float]) -> tuple[float, ...]:
-    """Return where time courses are followed: both ends and the one nearest to 298.15 K."""
-    usual = min(temperature_k, key=lambda t: abs(t - USUAL_K))
-    return tuple(sorted({min(temperature_k), usual, max(temperature_k)}))
 
 
 def _inputs(study: Study, measured: Measured | None) -> tuple[InputFile, ...]:

@@ -13,6 +13,7 @@ from thermo_pp.kinetics.doubt.results import Answer
 from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.model import Rates
 from thermo_pp.kinetics.net_reaction import write_side
+from thermo_pp.kinetics.point import is_linear, rate_of
 from thermo_pp.kinetics.products import formation
 from thermo_pp.names import Definition
 
@@ -38,6 +39,8 @@ class Found:
     products : tuple of str or None
         Where several compete.
     branching : shape (b, k) or None
+    unit : str
+        Of the rate.
     """
 
     rate: LogRate
@@ -48,10 +51,13 @@ class Found:
     resting: Numbers | None
     products: tuple[str, ...] | None
     branching: FloatArray | None
+    unit: str = "s^-1"
 
 
-def find(rates: Rates, definition: Definition) -> Found:
-    """Return what one definition says."""
+def find(rates: Rates, definition: Definition, *, each: bool = True) -> Found:
+    """Return what one definition says; nan where a point is not reached, unless `each` has to."""
+    if definition == "point" or not is_linear(rates):
+        return _find_at_point(rates, definition, each)
     rate = rates.rate(definition)
     sensed = sensitivity(rate, rates.network, rates.steps.names)
     by_saddle = np.stack([sensed.control[name] for name in sensed.saddles])
@@ -83,9 +89,30 @@ def find(rates: Rates, definition: Definition) -> Found:
     )
 
 
+def _find_at_point(rates: Rates, definition: Definition, each: bool) -> Found:
+    """Return what a network that need not be linear says."""
+    at = rate_of(rates, definition, each=each)
+    none = np.zeros((len(at.log), 0))
+    return Found(
+        rate=LogRate(at.log, at.sign, none, none, at.energy_j_mol),
+        control=dict(at.control),
+        saddles=at.saddles,
+        controlling=np.argmax(np.stack([at.control[name] for name in at.saddles]), axis=0),
+        states=at.states or None,
+        resting=at.resting if at.populations else None,
+        products=None,
+        branching=None,
+        unit=at.unit,
+    )
+
+
 def answer(rates: Rates, definition: Definition) -> Answer:
     """Return the answer in one definition over the temperatures of `rates`."""
-    found = find(rates, definition)
+    return answer_of(find(rates, definition))
+
+
+def answer_of(found: Found) -> Answer:
+    """Return the answer from what a definition says."""
     preferred = None if found.branching is None else np.argmax(found.branching, axis=1)
     return Answer(
         log_rate=found.rate.log,

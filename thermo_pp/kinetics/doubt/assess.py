@@ -8,14 +8,16 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.kinetics.doubt.answers import answer
+from thermo_pp.kinetics.doubt.answers import answer, answer_of, find
 from thermo_pp.kinetics.doubt.first_order import both_ways, deviation, narrowing, slopes
 from thermo_pp.kinetics.doubt.moved import moved
 from thermo_pp.kinetics.doubt.results import AlternativeAnswer, Doubt, RateDoubt, Spread
 from thermo_pp.kinetics.doubt.sampling import sample
 from thermo_pp.kinetics.doubt.words import words
+from thermo_pp.kinetics.mass_action import log_held
 from thermo_pp.kinetics.model import Model, Rates
-from thermo_pp.kinetics.network import NotLinear
+from thermo_pp.kinetics.point import affordable, definitions, is_linear, temperatures
+from thermo_pp.kinetics.start import check_balance
 from thermo_pp.units import GAS_J_MOL_K
 
 if TYPE_CHECKING:
@@ -55,7 +57,9 @@ def assess(
 
     with threadpool_limits(1), np.errstate(over="ignore"):
         rates, found = _rates(study, uncertainty)
+        kelvin = temperatures(study.mechanism, study.conditions.temperature_k)
     own = list(findings)
+    samples = uncertainty.samples if found is None else affordable(found, uncertainty.samples)
     if not rates:
         own.append(
             Finding(
@@ -63,8 +67,22 @@ def assess(
                 "warning",
                 study.mechanism.where,
                 None,
-                "the network is not linear, so the doubt about its answers is not worked out",
-                "hold all but one species of each side, or run the study with energies moved by hand",
+                "the network is not linear: it has no rate constant, and the study names no point at which "
+                "its rate is asked for, so there is no answer to doubt",
+                'name one: [effective] at = "start", "10 %" (a conversion) or "steady state" (of the flow)',
+            )
+        )
+    elif samples < uncertainty.samples:
+        own.append(
+            Finding(
+                "doubt-fewer-samples",
+                "note",
+                study.mechanism.where,
+                None,
+                f"{samples} samples of the energies instead of {uncertainty.samples}: each takes "
+                f"{_each(study)} at each of {len(kelvin)} temperatures",
+                "see the first-order deviations beside; the errors of the probabilities say what the "
+                "samples are worth",
             )
         )
     if found is not None and np.any(found.steps.log_kappa != 0.0):
@@ -79,6 +97,18 @@ def assess(
             )
         )
     for definition, rate in rates.items():
+        if rate.spread is not None and rate.spread.not_reached:
+            own.append(
+                Finding(
+                    "doubt-not-reached",
+                    "warning",
+                    study.mechanism.where,
+                    None,
+                    f"{rate.spread.not_reached} of {samples} samples do not come to the point asked for; bands "
+                    "and probabilities are those of the others",
+                    "ask for a smaller conversion",
+                )
+            )
         if rate.spread is not None and np.any(rate.spread.backwards.value > 0.0):
             own.append(
                 Finding(
@@ -93,11 +123,11 @@ def assess(
                 )
             )
     result = Doubt(
-        temperature_k=np.array(study.conditions.temperature_k),
+        temperature_k=kelvin,
         names=uncertainty.names,
         deviation_kj_mol=uncertainty.deviation_kj_mol,
         correlation=uncertainty.correlation,
-        samples=uncertainty.samples,
+        samples=samples,
         seed=uncertainty.seed,
         rates=rates,
         alternatives=tuple(alternatives),
@@ -112,41 +142,53 @@ def answers(study: StudyLike) -> dict[Definition, Answer]:
 
     with threadpool_limits(1), np.errstate(over="ignore"):
         rates = _base(study)
-        rates.check()
-        return {name: answer(rates, name) for name in rates.definitions()}
+        if is_linear(rates):
+            rates.check()
+        elif not definitions(rates):
+            _ = rates.network  # says why there is no answer
+        return {name: answer(rates, name) for name in definitions(rates)}
 
 
 def _base(study: StudyLike) -> Rates:
     model = Model(study.mechanism, study.conditions, study.treatment, study.species)
-    return model.at(np.array(study.conditions.temperature_k))
+    return model.at(temperatures(study.mechanism, study.conditions.temperature_k))
+
+
+def _each(study: StudyLike) -> str:
+    point = study.mechanism.point
+    if point is None or point.conversion is None:
+        return "a steady state"
+    return "a time course" if point.conversion else "a start"
 
 
 def _rates(
     study: StudyLike, uncertainty: Uncertainty
 ) -> tuple[Mapping[Definition, RateDoubt], Rates | None]:
-    """Return the doubt about each definition, and the rates without shifts; nothing where not linear."""
+    """Return the doubt about each definition, and the rates without shifts; nothing where there is none."""
     base = _base(study)
-    try:
-        _ = base.network
-    except NotLinear:
+    known = definitions(base)
+    if not known:
         return {}, None
-    base.check()
-    definitions = base.definitions()
+    if is_linear(base):
+        base.check()
     _check_balance(base, uncertainty)
-    sampled: tuple[Definition, ...] = tuple(d for d in definitions if d != "relaxation")
+    uncertainty = replace(uncertainty, samples=affordable(base, uncertainty.samples))
+    sampled: tuple[Definition, ...] = tuple(d for d in known if d != "relaxation")
     spreads: Mapping[Definition, Spread] = sample(base, uncertainty, sampled)
     around = both_ways(base, uncertainty)
     found: dict[Definition, RateDoubt] = {}
-    for definition in definitions:
+    for definition in known:
         by_log, by_energy = slopes(base, around, uncertainty, definition)
         by_first = deviation(by_log, uncertainty)
+        stands = find(base, definition)
         found[definition] = RateDoubt(
-            answer=answer(base, definition),
+            answer=answer_of(stands),
             first_order_log_deviation=by_first,
             first_order_energy_deviation_kj_mol=deviation(by_energy, uncertainty),
             gibbs_deviation_kj_mol=by_first * GAS_J_MOL_K * base.energies.temperature_k / 1000.0,
             narrowing=narrowing(by_log, by_energy, uncertainty),
             spread=spreads.get(definition),
+            unit=stands.unit,
         )
     return found, base
 
@@ -154,7 +196,12 @@ def _rates(
 def _check_balance(base: Rates, uncertainty: Uncertainty) -> None:
     """Refuse held species that are in balance with each other only as the energies are."""
     try:
-        moved(base, uncertainty, uncertainty.drawn()[:1]).check()
+        once = moved(base, uncertainty, uncertainty.drawn()[:1])
+        if is_linear(once):
+            once.check()
+        elif not once.model.conditions.driven:
+            amounts = log_held(once.model.conditions.held, once.equilibrium, once.energies)
+            check_balance(once.model.mechanism, once.model.conditions, amounts, once.energies)
     except StudyError as error:
         raise StudyError(
             "held species are in balance at their stated amounts only as long as no energy is moved "

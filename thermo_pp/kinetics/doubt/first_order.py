@@ -5,10 +5,12 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_pp.kinetics.doubt.answers import find
 from thermo_pp.kinetics.doubt.moved import moved
 from thermo_pp.kinetics.doubt.results import Narrowing
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import controls_of
 from thermo_pp.names import Definition
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -41,18 +43,15 @@ def slopes(
     definition : str
     """
     t, v = len(base.energies.temperature_k), len(uncertainty.names)
-    rate, network = base.rate(definition), base.network
-    by_step = np.zeros((t, len(base.steps.names)))
-    for number, edge in enumerate(network.edges):
-        by_step[:, edge.step] += rate.saddles[:, number]
+    _, by_step, species = controls_of(base, definition)
     saddles = around.steps.saddle_reduced.reshape(2, v, t, -1)
     follows = np.asarray((saddles[0] - saddles[1]) / (2.0 * STEP_KJ_MOL), dtype=np.float64)
     by_log = -(follows * by_step).sum(axis=2).T
     per_rt = 1000.0 / (GAS_J_MOL_K * base.energies.temperature_k)
     for column, name in enumerate(uncertainty.names):
-        if name in network.species:
-            by_log[:, column] += rate.species[:, network.species.index(name)] * per_rt
-    energies = around.rate(definition).energy_j_mol.reshape(2, v, t) / 1000.0
+        if name in species:
+            by_log[:, column] -= species[name] * per_rt
+    energies = find(around, definition).rate.energy_j_mol.reshape(2, v, t) / 1000.0
     return by_log, ((energies[0] - energies[1]) / (2.0 * STEP_KJ_MOL)).T
 
 

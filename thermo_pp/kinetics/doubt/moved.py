@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.shifts import kappa_slopes
 from thermo_pp.kinetics.steps import Energetics, elementary_rates
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -21,7 +22,8 @@ def moved(base: Rates, uncertainty: Uncertainty, shift_kj_mol: FloatArray) -> Ra
     """Return the rates of n sets of shifted energies at t temperatures, as a batch of n t.
 
     An energy is shifted wherever it counts: in its own free energy, and in the effective saddle of a
-    limit or a declared rate constant that starts from it. Tunnelling and crossing factors stay as they are.
+    limit or a declared rate constant that starts from it. Tunnelling factors follow to first order,
+    crossing factors stay as they are.
 
     Parameters
     ----------
@@ -49,7 +51,8 @@ def moved(base: Rates, uncertainty: Uncertainty, shift_kj_mol: FloatArray) -> Ra
         energies.grounds_kj_mol,
         {},
     )
-    factors = base.steps.repeated_factors(n)
+    _, crossing = base.steps.repeated_factors(n)
+    factors = _tunnelling(base, own), crossing
     steps = elementary_rates(model.mechanism, batch, model.treatment, model.conditions, factors)
     if by_step.any():
         over_rt = np.broadcast_to(
@@ -61,6 +64,24 @@ def moved(base: Rates, uncertainty: Uncertainty, shift_kj_mol: FloatArray) -> Ra
             saddle_slope_j_mol=steps.saddle_slope_j_mol + 1000.0 * np.repeat(by_step, t, axis=0),
         )
     return Rates(model, batch, steps)
+
+
+def _tunnelling(base: Rates, own: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return ln of the tunnelling factors and what they add to E_a with energies shifted, (n t, steps) each.
+
+    To first order in the shifts (n, s) of the species; a Wigner factor does not depend on them.
+    """
+    n, steps = len(own), base.steps
+    log, energy = (
+        np.repeat(values[np.newaxis], n, axis=0)
+        for values in (steps.log_kappa, steps.kappa_energy_j_mol)
+    )
+    for column, (by_log, by_energy) in kappa_slopes(base).items():
+        shift = own[:, column, np.newaxis, np.newaxis]
+        log += shift * by_log
+        energy += shift * by_energy
+    flat = -1, log.shape[2]
+    return log.reshape(flat), energy.reshape(flat)
 
 
 def _over_rt(shift_kj_mol: FloatArray, temperature_k: FloatArray) -> FloatArray:

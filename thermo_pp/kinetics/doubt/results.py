@@ -29,7 +29,7 @@ class Answer:
     Attributes
     ----------
     log_rate : shape (t,)
-        ln of the size of k / s^-1.
+        ln of the size of k / s^-1; of a rate at a point in the unit of that.
     arrhenius_energy_kj_mol : shape (t,)
     controlling_saddle : tuple of str
         The one with the largest control.
@@ -138,6 +138,9 @@ class Spread:
         E_a of every sample at the temperature nearest to 298.15 K, for a figure.
     branching_bands : mapping of str to shape (q, t), or None
         Quantiles of each product's share.
+    not_reached : int
+        Samples in which the point asked for is not reached at some temperature; all of the above is
+        of the others.
     """
 
     log_bands: FloatArray
@@ -155,6 +158,7 @@ class Spread:
     same_answer: Probability
     energies_kj_mol: FloatArray
     branching_bands: Mapping[str, FloatArray] | None = None
+    not_reached: int = 0
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -179,6 +183,8 @@ class RateDoubt:
     narrowing : Narrowing
     spread : Spread or None
         None for the relaxation, which is not sampled.
+    unit : str
+        Of the rate.
     """
 
     answer: Answer
@@ -187,6 +193,7 @@ class RateDoubt:
     gibbs_deviation_kj_mol: FloatArray
     narrowing: Narrowing
     spread: Spread | None
+    unit: str = "s^-1"
 
     def __post_init__(self) -> None:
         freeze_arrays(self)
@@ -216,13 +223,15 @@ class Doubt:
     Attributes
     ----------
     temperature_k : shape (t,)
+        A few of the study's only where each answer takes a time course.
     names : tuple of str
         The energies that are in doubt.
     deviation_kj_mol : shape (v,)
     correlation : shape (v, v)
     samples, seed : int
+        Fewer samples than the study asks for where each takes a steady state or a time course.
     rates : mapping of definition to RateDoubt
-        Empty where the network is not linear.
+        Empty where the network is not linear and the study names no point of it.
     alternatives : tuple of AlternativeAnswer
     words : tuple of str
         A sentence each, made from the fields above.

@@ -14,6 +14,7 @@ from thermo_pp.kinetics.doubt.results import QUANTILES, Probability, Spread
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
 from thermo_pp.kinetics.given import REFERENCE_K
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import is_linear
 from thermo_pp.kinetics.scaled import Ordinary
 from thermo_pp.names import Definition
 
@@ -50,6 +51,18 @@ class _Gathered:
             {name: np.zeros((2, shape[1])) for name in found.control},
         )
 
+    def only(self, rows: NDArray[np.bool_]) -> _Gathered:
+        """Return what is kept of some of the samples; the sums are of these already."""
+        return replace(
+            self,
+            log=self.log[rows],
+            energy=self.energy[rows],
+            backwards=self.backwards[rows],
+            controlling=self.controlling[rows],
+            resting=None if self.resting is None else self.resting[rows],
+            branching=None if self.branching is None else self.branching[rows],
+        )
+
     def take(self, rows: slice, found: Found) -> None:
         """Keep a block of samples."""
         shape = -1, self.log.shape[1]
@@ -61,8 +74,9 @@ class _Gathered:
             self.resting[rows] = found.resting.reshape(shape)
         if self.branching is not None and found.branching is not None:
             self.branching[rows] = found.branching.reshape(*shape, self.branching.shape[2])
+        reached = np.isfinite(self.log[rows]).all(axis=1)
         for name, values in found.control.items():
-            block = values.reshape(shape)
+            block = values.reshape(shape)[reached]
             self.sums[name] += np.stack([block.sum(axis=0), (block**2).sum(axis=0)])
 
 
@@ -73,11 +87,14 @@ def sample(
 
     Memory: 22 bytes a sample, temperature and definition, and 8 for each of several products.
     """
+    if not definitions:
+        return {}
     shifts = uncertainty.drawn()
     gathered = {
         name: _Gathered.empty(find(base, name), uncertainty.samples) for name in definitions
     }
-    size = len(base.energies.temperature_k) * len(base.network.states) ** 2
+    states = len(base.network.states if is_linear(base) else base.model.mechanism.species)
+    size = len(base.energies.temperature_k) * states**2
     at_once = max(1, BLOCK_ENTRIES // size)
     for first in range(0, len(shifts), at_once):
         rows = slice(first, first + at_once)
@@ -92,12 +109,16 @@ def _found(rates: Rates, definitions: Sequence[Definition]) -> dict[Definition, 
     """Return what a batch says, in ordinary numbers where nothing leaves their range."""
     try:
         fast = replace(rates, numbers=Ordinary)
-        return {name: find(fast, name) for name in definitions}
+        return {name: find(fast, name, each=False) for name in definitions}
     except FloatingPointError:
-        return {name: find(rates, name) for name in definitions}
+        return {name: find(rates, name, each=False) for name in definitions}
 
 
 def _spread(kept: _Gathered, usual: int) -> Spread:
+    drawn = len(kept.log)
+    reached = np.asarray(np.isfinite(kept.log).all(axis=1))
+    if not reached.all():
+        kept = kept.only(reached)
     found, samples = kept.found, len(kept.log)
     same = kept.controlling == found.controlling
     same_all = same
@@ -134,6 +155,7 @@ def _spread(kept: _Gathered, usual: int) -> Spread:
         same_answer=_probability(same_all),
         energies_kj_mol=kept.energy[:, usual],
         branching_bands=bands,
+        not_reached=drawn - samples,
     )
 
 

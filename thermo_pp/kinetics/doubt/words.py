@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.kinetics.doubt.results import Answer, Doubt, Probability, RateDoubt
-from thermo_pp.names import DEFINITIONS, Definition
+from thermo_pp.names import ALL_DEFINITIONS, Definition
 
 FloatArray = NDArray[np.float64]
 _OF: dict[Definition, str] = {
@@ -14,6 +14,7 @@ _OF: dict[Definition, str] = {
     "pool": "per pool",
     "relaxation": "of relaxation",
     "cycle": "of the cycle",
+    "point": "at the point asked for",
 }
 _CLOSE_K = 298.15
 
@@ -27,7 +28,7 @@ def words(result: Doubt) -> tuple[str, ...]:
         f"Doubt: {result.samples} samples of the energies, whose standard deviations are "
         f"{_range(result.deviation_kj_mol)} kJ/mol by the study's own word."
     ]
-    for definition in DEFINITIONS:
+    for definition in ALL_DEFINITIONS:
         rate = result.rates.get(definition)
         if rate is not None and rate.spread is not None:
             sentences += _of_rate(result, definition, rate, k)
@@ -42,7 +43,7 @@ def _of_rate(result: Doubt, definition: Definition, rate: RateDoubt, k: int) -> 
     energy = spread.energy_bands_kj_mol[:, k]
     of = _OF[definition]
     found = [
-        f"The rate {of} lies between {low:.2g} and {high:.2g} s^-1 {at} in two of three samples, E_a "
+        f"The rate {of} lies between {low:.2g} and {high:.2g} {rate.unit} {at} in two of three samples, E_a "
         f"between {energy[1]:.1f} and {energy[3]:.1f} kJ/mol (in 95 % between {energy[0]:.1f} and "
         f"{energy[4]:.1f}).",
         f"E_a {of} is negative {_how_often(spread.negative_energy, result)}.",
@@ -94,7 +95,7 @@ def _alternatives(result: Doubt, k: int) -> list[str]:
         return []
     found = []
     at = f"at {result.temperature_k[k]:g} K"
-    for definition in ("pool", "cycle", "free"):
+    for definition in ("pool", "cycle", "point", "free"):
         if definition not in result.rates:
             continue
         own = result.rates[definition].answer
@@ -109,8 +110,8 @@ def _alternatives(result: Doubt, k: int) -> list[str]:
         energies = np.array([other.arrhenius_energy_kj_mol[k] for other in others.values()])
         found.append(
             f"With other choices, {len(others)} in all, the rate {_OF[definition]} is "
-            f"{np.exp(logs.min()):.3g} to {np.exp(logs.max()):.3g} s^-1 {at} and E_a {_range(energies)} "
-            "kJ/mol; they are alternatives, not samples."
+            f"{np.exp(logs.min()):.3g} to {np.exp(logs.max()):.3g} {result.rates[definition].unit} {at} "
+            f"and E_a {_range(energies)} kJ/mol; they are alternatives, not samples."
         )
         turned = [name for name, other in others.items() if _differs(own, other, k)]
         if turned:

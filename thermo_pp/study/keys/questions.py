@@ -71,6 +71,20 @@ class EffectiveKeys(Keys, frozen=True, kw_only=True):
         str | Annotated[list[str], Meta(min_length=1)],
         Meta(description="what is made: one species, or a list"),
     ]
+    at: Annotated[
+        str | UnsetType,
+        Meta(
+            description="where the rate of a network that is not linear is asked for: `start`, a conversion "
+            "of the reactant (`10 %`), or `steady state` (of the flow)"
+        ),
+    ] = UNSET
+    rate_law: Annotated[
+        dict[str, Annotated[int, Meta(ge=1)]],
+        Meta(
+            description="what that rate is divided by, so that it is a constant of this order: "
+            "`{ A = 1, B = 1 }`; without it the rate is in mol/(L s)"
+        ),
+    ] = {}
 
 
 class IsotopologueKeys(Keys, frozen=True, kw_only=True):
