@@ -293,7 +293,7 @@ def test_barrier_shows_it(tmp_path: Path) -> None:
     doubt = answer["doubt"]
     assert doubt["samples"] == 200
     assert len(doubt["rates"]["per_pool"]["samples"]["log_bands"]) == 5
-    assert doubt["rates"]["relaxation"]["samples"] is None
+    assert doubt["rates"]["relaxation"]["samples"]["samples"] == 200
     assert "E_a per pool is negative" in answer["words"]
 
 

@@ -130,7 +130,7 @@ def test_samples_that_do_not_come_to_the_point(tmp_path: Path) -> None:
     assert 0 < spread.not_reached < 20
     assert "doubt-not-reached" in [finding.code for finding in result.findings]
     assert np.isfinite(spread.log_bands).all()
-    with pytest.raises(NotReached, match="does not come to a conversion of 99.99 %"):
+    with pytest.raises(NotReached, match=r"does not come to a conversion of 99\.99 %"):
         at_point(asked(tmp_path, "99.99 %", conditions=INITIAL, moved=("P", 60.0)))
 
 
@@ -228,7 +228,67 @@ def test_points_that_cannot_be_asked_for(
 
 def test_barrier_says_it(tmp_path: Path) -> None:
     said = asked(tmp_path, "steady state").effective().words[1]
-    assert said.startswith("At the steady state of the flow and 300 K the loss of A over [A] [B] is")
+    assert said.startswith(
+        "At the steady state of the flow and 300 K the loss of A over [A] [B] is"
+    )
     assert "L mol^-1 s^-1, E_a" in said
-    model = Model(*(getattr(asked(tmp_path), n) for n in ("mechanism", "conditions", "treatment", "species")))
+    model = Model(
+        *(getattr(asked(tmp_path), n) for n in ("mechanism", "conditions", "treatment", "species"))
+    )
     assert rate_of(model.at(np.array([T])), "point").saddles == ("T1", "T2")
+
+
+def as_gas(one: Study, amounts: str, instead: str) -> Study:
+    """Return a study in the gas phase, with other amounts in place of its own."""
+    file = Path(one.mechanism.where)
+    text = file.read_text()
+    assert amounts in text
+    gas = text.replace(amounts, instead).replace('phase = "solution"', 'phase = "gas"')
+    file.write_text(gas)
+    return Study.load(file)
+
+
+@pytest.mark.parametrize(
+    ("fractions", "pressures", "at"),
+    [
+        (
+            'initial = { A = "1 %", B = "30000 ppm" }',
+            'initial = { A = "0.02 bar", B = "0.06 bar" }',
+            "20 %",
+        ),
+        (
+            'flow = { residence_time = "1e6 s", feed = { A = "1 %", B = "0.03 mol/mol" } }',
+            'flow = { residence_time = "1e6 s", feed = { A = "0.02 bar", B = "0.06 bar" } }',
+            "steady state",
+        ),
+    ],
+)
+def test_mole_fractions_of_a_total_pressure(
+    fractions: str, pressures: str, at: str, tmp_path: Path
+) -> None:
+    """Of 2 bar: the same rate and the same E_a, which thins out on heating in both."""
+
+    def of(instead: str, kelvin: float = T) -> PointRate:
+        one = asked(tmp_path, at, law="", kelvin=kelvin)
+        return at_point(as_gas(one, PLACES[at], instead))
+
+    whole = f'total_pressure = "2 bar"\n{fractions}'
+    ours, same = of(whole), of(pressures)
+    assert ours.log == pytest.approx(same.log, abs=1e-12)
+    assert ours.energy_j_mol == pytest.approx(same.energy_j_mol, rel=1e-10)
+    energy = GAS_J_MOL_K * T**2 * (of(whole, T + 0.02).log[0] - of(whole, T - 0.02).log[0]) / 0.04
+    assert ours.energy_j_mol[0] == pytest.approx(energy, abs=3.0)
+    with pytest.raises(StudyError, match="is a mole fraction, and there is no total pressure"):
+        of(fractions)
+
+
+def test_a_total_is_no_mole_fraction(tmp_path: Path) -> None:
+    """How much catalyst there is must not change with temperature: refused as a share of a pressure."""
+    members = [("K", "H", 0.0, 100.0), ("K2", "H2", -80.0, 110.0), ("S", "CO", 0.0, 150.0),
+               ("P", "CO", -30.0, 150.0), ("T1", "CHO", 50.0, 150.0)]  # fmt: skip
+    steps = [("K + K = K2", 'rate = "1e9 L/mol/s"'), ("K + S = K + P", 'through = "T1"')]
+    total = 'total = { K = "1e-4 mol/L" }'
+    conditions = f'temperatures = [{T}]\nheld = {{ S = "0.1 mol/L" }}\n{total}'
+    one = study(tmp_path, conditions, members, steps, 'catalyst = "K"\nproduct = "P"')
+    with pytest.raises(StudyError, match="'50 ppm' is not a concentration"):
+        as_gas(one, total, 'total_pressure = "2 bar"\ntotal = { K = "50 ppm" }')

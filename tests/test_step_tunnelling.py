@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -12,6 +13,9 @@ from exact_study import Line, Member, Plan
 
 from thermo_pp.errors import StudyError
 from thermo_pp.formulas.tunnelling import eckart, wigner
+from thermo_pp.kinetics.doubt.moved import moved
+from thermo_pp.kinetics.doubt.uncertain import Uncertainty
+from thermo_pp.kinetics.model import Model
 from thermo_pp.kinetics.results import EffectiveRate, Rate
 from thermo_pp.kinetics.tunnelling import tunnelling
 from thermo_pp.mechanism import Step
@@ -221,3 +225,21 @@ def test_shares_stand_in_tables_and_json(tmp_path: Path) -> None:
     bare = with_step("none").load(tmp_path).effective()
     text = str(barrier_tables.tables(bare, study.treatment, "kJ/mol"))
     assert "κ" not in text
+
+
+def test_samples_move_the_factor(tmp_path: Path) -> None:
+    """A batch of moved energies has the Eckart factor of the moved barrier, to first order in the move."""
+    base = Model(*_parts(PLAN.load(tmp_path))).at(np.array(PLAN.temperatures))
+    names = ("C", "P", "T2")
+    uncertainty = Uncertainty(names, np.ones(3), np.eye(3), 100, 1, "here")
+    shift = np.array([0.02, -0.03, 0.05])
+    batch = moved(base, uncertainty, shift[np.newaxis]).steps
+    heights = 1000.0 * (46.0 + shift[2] - shift[0]), 1000.0 * (90.0 + shift[2] - shift[1])
+    kappa, energy = eckart(np.array(PLAN.temperatures), 1500.0, *heights)
+    assert batch.log_kappa[:, 1] == pytest.approx(kappa, rel=1e-6)
+    assert batch.kappa_energy_j_mol[:, 1] == pytest.approx(energy, rel=1e-5)
+    assert np.all(np.abs(kappa / base.steps.log_kappa[:, 1] - 1.0) > 1e-5)  # they do move
+
+
+def _parts(study: Study) -> tuple[Any, ...]:
+    return study.mechanism, study.conditions, study.treatment, study.species

@@ -198,6 +198,8 @@ tunnelling = "none"
 reactant = "A"
 catalyst = "A"
 product = ["W"]
+at = "10 %"
+rate_law = { A = 1 }
 [isotopologues.A]
 all = { H = "D" }
 species.W = { 2 = "T" }

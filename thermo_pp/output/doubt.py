@@ -64,17 +64,15 @@ def doubt_keys(result: Doubt) -> dict[str, Any]:
 
 def _rate_keys(rate: RateDoubt) -> dict[str, Any]:
     narrowing = vars(rate.narrowing)
-    spread = None
-    if rate.spread is not None:
-        probabilities = (
-            *("negative_energy", "backwards", "same_saddle", "same_resting", "same_product"),
-            "same_answer",
-        )
-        spread = {
-            name: value if name not in probabilities or value is None else vars(value)
-            for name, value in vars(rate.spread).items()
-            if name != "energies_kj_mol"  # one number a sample: for figures
-        }
+    probabilities = (
+        *("negative_energy", "backwards", "same_saddle", "same_resting", "same_product"),
+        "same_answer",
+    )
+    spread = {
+        name: value if name not in probabilities or value is None else vars(value)
+        for name, value in vars(rate.spread).items()
+        if name != "energies_kj_mol"  # one number a sample: for figures
+    }
     return {
         "unit": rate.unit,
         **vars(rate.answer),
@@ -125,7 +123,7 @@ def doubt_tables(result: Doubt, unit: EnergyUnit) -> list[Block]:
     blocks: list[Block] = []
     k = usual(result.temperature_k)
     for definition, rate in result.rates.items():
-        if rate.spread is None:
+        if definition == "relaxation":
             continue
         blocks.append(_bands(result, definition, rate, rate.spread, unit))
         blocks += _branching(result, definition, rate.spread)
@@ -154,20 +152,15 @@ def doubt_wide(result: Doubt, unit: EnergyUnit) -> list[Block]:
         spread, answer, narrow = rate.spread, rate.answer, rate.narrowing
         for k, temperature in enumerate(result.temperature_k):
             head: list[Cell] = [definition, float(temperature)]
-            none: list[Cell] = [None] * len(percent)
             rows.append(
                 [
                     *(*head, defined(answer.log_rate[k])),
-                    *(none if spread is None else map(defined, spread.log_bands[:, k])),
-                    None if spread is None else defined(spread.log_deviation[k]),
+                    *map(defined, spread.log_bands[:, k]),
+                    defined(spread.log_deviation[k]),
                     defined(rate.first_order_log_deviation[k]),
                     in_unit(answer.arrhenius_energy_kj_mol[k], unit),
-                    *(
-                        none
-                        if spread is None
-                        else [in_unit(e, unit) for e in spread.energy_bands_kj_mol[:, k]]
-                    ),
-                    None if spread is None else in_unit(spread.energy_deviation_kj_mol[k], unit),
+                    *[in_unit(e, unit) for e in spread.energy_bands_kj_mol[:, k]],
+                    in_unit(spread.energy_deviation_kj_mol[k], unit),
                     in_unit(rate.first_order_energy_deviation_kj_mol[k], unit),
                     *_probabilities(spread, k),
                     answer.controlling_saddle[k],
@@ -226,9 +219,7 @@ def doubt_wide(result: Doubt, unit: EnergyUnit) -> list[Block]:
     ]
 
 
-def _probabilities(spread: Spread | None, k: int) -> list[Cell]:
-    if spread is None:
-        return [None] * 4
+def _probabilities(spread: Spread, k: int) -> list[Cell]:
     return [
         float(values[k])
         for probability in (spread.negative_energy, spread.same_answer)
@@ -259,7 +250,7 @@ def _bands(
     ]
     error = max(spread.negative_energy.error.max(), spread.same_answer.error.max())
     notes = [
-        f"{result.samples} samples of the energies (seed {result.seed}), normal, with the standard "
+        f"{spread.samples} samples of the energies (seed {result.seed}), normal, with the standard "
         "deviations and correlations of [doubt].",
         "same answer: the same controlling saddle, resting state and main product as without shifts; "
         f"standard error of the probabilities {error:.1g} at most.",

@@ -93,7 +93,7 @@ def _of_doubt(answers: Answers) -> Iterator[tuple[str, Figure]]:
         return
     k = usual(answers.doubt.temperature_k)
     for definition, rate in answers.doubt.rates.items():
-        if rate.spread is None:
+        if definition == "relaxation":
             continue
         figure, (ax,) = figures.new_figure()
         figures.doubt.draw(

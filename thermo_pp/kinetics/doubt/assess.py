@@ -11,12 +11,18 @@ from thermo_pp.errors import Finding, StudyError
 from thermo_pp.kinetics.doubt.answers import answer, answer_of, find
 from thermo_pp.kinetics.doubt.first_order import both_ways, deviation, narrowing, slopes
 from thermo_pp.kinetics.doubt.moved import moved
-from thermo_pp.kinetics.doubt.results import AlternativeAnswer, Doubt, RateDoubt, Spread
+from thermo_pp.kinetics.doubt.results import AlternativeAnswer, Doubt, RateDoubt
 from thermo_pp.kinetics.doubt.sampling import sample
 from thermo_pp.kinetics.doubt.words import words
 from thermo_pp.kinetics.mass_action import log_held
 from thermo_pp.kinetics.model import Model, Rates
-from thermo_pp.kinetics.point import affordable, definitions, is_linear, temperatures
+from thermo_pp.kinetics.point import (
+    FEWEST_SAMPLES,
+    affordable,
+    definitions,
+    is_linear,
+    temperatures,
+)
 from thermo_pp.kinetics.start import check_balance
 from thermo_pp.units import GAS_J_MOL_K
 
@@ -27,6 +33,10 @@ if TYPE_CHECKING:
     from thermo_pp.kinetics.doubt.results import Answer
     from thermo_pp.kinetics.doubt.uncertain import Uncertainty
     from thermo_pp.names import Definition
+
+
+RELAXATIONS = 2_000
+"""How many decays of closed networks, found one at a time, the samples may take."""
 
 
 def assess(
@@ -85,19 +95,19 @@ def assess(
                 "samples are worth",
             )
         )
-    if found is not None and np.any(found.steps.log_kappa != 0.0):
+    if found is not None and any(step.tunnelling == "eckart" for step in study.mechanism.steps):
         own.append(
             Finding(
-                "doubt-tunnelling-kept",
+                "doubt-tunnelling-first-order",
                 "note",
                 study.mechanism.where,
                 None,
-                "tunnelling factors are kept as they are in every sample of the energies",
+                "Eckart tunnelling factors follow the heights of their barriers to first order in every sample",
                 'compare with tunnelling = "none" to see what they are worth',
             )
         )
     for definition, rate in rates.items():
-        if rate.spread is not None and rate.spread.not_reached:
+        if rate.spread.not_reached:
             own.append(
                 Finding(
                     "doubt-not-reached",
@@ -109,7 +119,7 @@ def assess(
                     "ask for a smaller conversion",
                 )
             )
-        if rate.spread is not None and np.any(rate.spread.backwards.value > 0.0):
+        if np.any(rate.spread.backwards.value > 0.0):
             own.append(
                 Finding(
                     "doubt-direction",
@@ -173,8 +183,12 @@ def _rates(
         base.check()
     _check_balance(base, uncertainty)
     uncertainty = replace(uncertainty, samples=affordable(base, uncertainty.samples))
-    sampled: tuple[Definition, ...] = tuple(d for d in known if d != "relaxation")
-    spreads: Mapping[Definition, Spread] = sample(base, uncertainty, sampled)
+    batched: tuple[Definition, ...] = tuple(d for d in known if d != "relaxation")
+    spreads = dict(sample(base, uncertainty, batched))
+    if "relaxation" in known:
+        few = max(FEWEST_SAMPLES, RELAXATIONS // len(base.energies.temperature_k))
+        fewer = replace(uncertainty, samples=min(few, uncertainty.samples))
+        spreads |= sample(base, fewer, ("relaxation",))
     around = both_ways(base, uncertainty)
     found: dict[Definition, RateDoubt] = {}
     for definition in known:
@@ -187,7 +201,7 @@ def _rates(
             first_order_energy_deviation_kj_mol=deviation(by_energy, uncertainty),
             gibbs_deviation_kj_mol=by_first * GAS_J_MOL_K * base.energies.temperature_k / 1000.0,
             narrowing=narrowing(by_log, by_energy, uncertainty),
-            spread=spreads.get(definition),
+            spread=spreads[definition],
             unit=stands.unit,
         )
     return found, base

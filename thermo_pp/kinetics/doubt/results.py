@@ -138,6 +138,8 @@ class Spread:
         E_a of every sample at the temperature nearest to 298.15 K, for a figure.
     branching_bands : mapping of str to shape (q, t), or None
         Quantiles of each product's share.
+    samples : int
+        How many there are.
     not_reached : int
         Samples in which the point asked for is not reached at some temperature; all of the above is
         of the others.
@@ -157,6 +159,7 @@ class Spread:
     same_product: Probability | None
     same_answer: Probability
     energies_kj_mol: FloatArray
+    samples: int
     branching_bands: Mapping[str, FloatArray] | None = None
     not_reached: int = 0
 
@@ -181,8 +184,8 @@ class RateDoubt:
     gibbs_deviation_kj_mol : shape (t,)
         The former times RT: the doubt about the effective barrier.
     narrowing : Narrowing
-    spread : Spread or None
-        None for the relaxation, which is not sampled.
+    spread : Spread
+        The relaxation's from fewer samples: its decays are found one network at a time.
     unit : str
         Of the rate.
     """
@@ -192,7 +195,7 @@ class RateDoubt:
     first_order_energy_deviation_kj_mol: FloatArray
     gibbs_deviation_kj_mol: FloatArray
     narrowing: Narrowing
-    spread: Spread | None
+    spread: Spread
     unit: str = "s^-1"
 
     def __post_init__(self) -> None:
@@ -269,11 +272,10 @@ class Doubt:
                         rate.first_order_energy_deviation_kj_mol[k]
                     ),
                 }
-                if rate.spread is not None:
-                    row["log_deviation"] = rate.spread.log_deviation[k]
-                    row["energy_deviation_kj_mol"] = rate.spread.energy_deviation_kj_mol[k]
-                    row["negative_energy"] = rate.spread.negative_energy.value[k]
-                    row["same_answer"] = rate.spread.same_answer.value[k]
+                row["log_deviation"] = rate.spread.log_deviation[k]
+                row["energy_deviation_kj_mol"] = rate.spread.energy_deviation_kj_mol[k]
+                row["negative_energy"] = rate.spread.negative_energy.value[k]
+                row["same_answer"] = rate.spread.same_answer.value[k]
                 rows.append(row)
         return pd.DataFrame(rows)
 

@@ -154,6 +154,7 @@ def _spread(kept: _Gathered, usual: int) -> Spread:
         same_product=same_product,
         same_answer=_probability(same_all),
         energies_kj_mol=kept.energy[:, usual],
+        samples=samples,
         branching_bands=bands,
         not_reached=drawn - samples,
     )

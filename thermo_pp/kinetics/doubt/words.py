@@ -30,14 +30,13 @@ def words(result: Doubt) -> tuple[str, ...]:
     ]
     for definition in ALL_DEFINITIONS:
         rate = result.rates.get(definition)
-        if rate is not None and rate.spread is not None:
+        if rate is not None and definition != "relaxation":
             sentences += _of_rate(result, definition, rate, k)
     return (*sentences, *_alternatives(result, k))
 
 
 def _of_rate(result: Doubt, definition: Definition, rate: RateDoubt, k: int) -> list[str]:
     spread = rate.spread
-    assert spread is not None
     at = f"at {result.temperature_k[k]:g} K"
     low, high = np.exp(spread.log_bands[1, k]), np.exp(spread.log_bands[3, k])
     energy = spread.energy_bands_kj_mol[:, k]
@@ -53,7 +52,7 @@ def _of_rate(result: Doubt, definition: Definition, rate: RateDoubt, k: int) -> 
         what += f" and {rate.answer.resting_state[k]} as the resting state"
     if rate.answer.preferred_product is not None:
         what += f" and {rate.answer.preferred_product[k]} as the main product"
-    found.append(f"{_one(spread.same_answer, k, result.samples).capitalize()} {at} keep {what}.")
+    found.append(f"{_one(spread.same_answer, k, spread.samples).capitalize()} {at} keep {what}.")
     total = rate.first_order_log_deviation[k]
     narrow = rate.narrowing
     best = narrow.best_for_log()[k]
