@@ -292,3 +292,24 @@ def test_a_total_is_no_mole_fraction(tmp_path: Path) -> None:
     one = study(tmp_path, conditions, members, steps, 'catalyst = "K"\nproduct = "P"')
     with pytest.raises(StudyError, match="'50 ppm' is not a concentration"):
         as_gas(one, total, 'total_pressure = "2 bar"\ntotal = { K = "50 ppm" }')
+
+
+def test_a_turnover_has_both_energies_and_what_its_limits_do(tmp_path: Path) -> None:
+    """In a gas: E_a at constant concentration and pressure differ by n RT; limits slow it as its steps."""
+    members = [("K", "H", 0.0, 100.0), ("K2", "H2", -80.0, 110.0), ("S", "CO", 0.0, 150.0),
+               ("P", "CO", -30.0, 150.0), ("T1", "CHO", 0.0, 210.0)]  # fmt: skip
+    steps = [("K + K = K2", 'rate = "1e9 L/mol/s"'), ("K + S = K + P", 'through = "T1"')]
+    total = 'total = { K = "1e-4 mol/L" }'
+    conditions = f'temperatures = [{T}]\nheld = {{ S = "1e-3 mol/L" }}\n{total}'
+    one = study(tmp_path, conditions, members, steps, 'catalyst = "K"\nproduct = "P"')
+    cycle = as_gas(one, total, total).effective().rates["cycle"]
+    assert cycle is not None
+    both = cycle.arrhenius_energy_constant_kj_mol
+    assert both is not None
+    assert cycle.orders["S"][0] == pytest.approx(1.0, abs=1e-9)
+    assert both["concentration"] == pytest.approx(cycle.arrhenius_energy_kj_mol, rel=1e-12)
+    assert both["concentration"] - both["pressure"] == pytest.approx(
+        GAS_J_MOL_K * T / 1000.0, rel=1e-9
+    )
+    assert cycle.log_limit is not None
+    assert cycle.log_limit[0] < -1e-3

@@ -12,9 +12,10 @@ from declared_study import TEXT
 
 from thermo_pp.conditions import standard_state
 from thermo_pp.errors import StudyError
+from thermo_pp.kinetics.courses import course_temperatures
 from thermo_pp.names import LOW_MODES
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, Measured, answer, course_temperatures, standard_states
+from thermo_pp.study.run import Answers, Measured, answer, standard_states
 
 ROOT = Path(__file__).parents[1]
 BUNDLED = ROOT / "fixtures" / "stack-plume" / "study.toml"

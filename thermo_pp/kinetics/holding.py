@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import sensed
 from thermo_pp.kinetics.results import Rate
 from thermo_pp.names import Constant, Definition
 
@@ -42,7 +43,8 @@ def with_holding(
         and replace(
             rate,
             arrhenius_energy_constant_kj_mol={
-                name: other.rate(definition).energy_j_mol / 1000.0 for name, other in seen.items()
+                name: sensed(other, definition)[0].energy_j_mol / 1000.0
+                for name, other in seen.items()
             },
         )
         for definition, rate in found.items()

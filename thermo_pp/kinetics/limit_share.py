@@ -7,8 +7,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from thermo_pp.kinetics.controls import sensitivity
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import sensed
 from thermo_pp.kinetics.results import Rate
 from thermo_pp.names import Definition
 
@@ -38,11 +38,11 @@ def with_limits(
         if rate is None:
             with_shares[name] = None
             continue
-        own, other = rates.rate(name), bare.rate(name)
+        (own, _), (other, control) = sensed(rates, name), sensed(bare, name)
         with_shares[name] = replace(
             rate,
             log_limit=own.log - other.log,
             limit_energy_kj_mol=(own.energy_j_mol - other.energy_j_mol) / 1000.0,
-            control_without_limit=sensitivity(other, bare.network, bare.steps.names).control,
+            control_without_limit=control,
         )
     return with_shares

@@ -11,6 +11,8 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.courses import USUAL_K
+from thermo_pp.kinetics.holding import with_holding
+from thermo_pp.kinetics.limit_share import with_limits
 from thermo_pp.kinetics.mass_action import log_held
 from thermo_pp.kinetics.model import Model, Rates
 from thermo_pp.kinetics.network import NotLinear
@@ -18,6 +20,7 @@ from thermo_pp.kinetics.point import point_rate
 from thermo_pp.kinetics.results import EffectiveRate, Rate, StepRate
 from thermo_pp.kinetics.start import check_balance
 from thermo_pp.kinetics.steps import rate_unit
+from thermo_pp.kinetics.tunnelling_share import with_tunnelling
 from thermo_pp.kinetics.turnover import turnover
 from thermo_pp.kinetics.words import words
 from thermo_pp.names import DEFINITIONS, Definition
@@ -61,6 +64,7 @@ def not_linear(study: StudyLike, model: Model, rates: Rates, error: NotLinear) -
             check_balance(mechanism, conditions, logs, rates.energies)
         turned = turnover(model, rates)
         found["cycle"], net, reversibility = turned.rate, turned.net_reaction, turned.reversibility
+        found = with_limits(with_holding(with_tunnelling(found, rates), rates), rates)
     result = EffectiveRate(
         temperature_k=rates.energies.temperature_k,
         subject=mechanism.catalyst or mechanism.reactant or "",

@@ -8,7 +8,7 @@ compared where the same share of the reactant is lost; at rest the composition f
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -16,6 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import StudyError
+from thermo_pp.kinetics.controls import sensitivity
 from thermo_pp.kinetics.courses import course_temperatures
 from thermo_pp.kinetics.edges import LogRate
 from thermo_pp.kinetics.equilibrium import balanced, equilibrium
@@ -86,6 +87,16 @@ def temperatures(mechanism: Mechanism, temperature_k: Sequence[float]) -> FloatA
     return np.array(course_temperatures(temperature_k))
 
 
+def sensed(rates: Rates, definition: Definition) -> tuple[LogRate, Mapping[str, FloatArray]]:
+    """Return a rate, linear or not, and its controls by name."""
+    if definition == "point" or not is_linear(rates):
+        at = rate_of(rates, definition)
+        none = np.zeros((len(at.log), 0))
+        return LogRate(at.log, at.sign, none, none, at.energy_j_mol), at.control
+    rate = rates.rate(definition)
+    return rate, sensitivity(rate, rates.network, rates.steps.names).control
+
+
 def controls_of(
     rates: Rates, definition: Definition
 ) -> tuple[LogRate, FloatArray, dict[str, FloatArray]]:
@@ -93,14 +104,10 @@ def controls_of(
     names = rates.steps.names
     by_step = np.zeros((len(rates.energies.temperature_k), len(names)))
     if definition == "point" or not is_linear(rates):
-        at = rate_of(rates, definition)
-        for name in dict.fromkeys(names):
-            by_step[:, names.index(name)] = at.control[
-                name
-            ]  # a saddle of several steps counts once
-        none = np.zeros((len(by_step), 0))
-        log_rate = LogRate(at.log, at.sign, none, none, at.energy_j_mol)
-        return log_rate, by_step, {n: x for n, x in at.control.items() if n not in names}
+        log_rate, control = sensed(rates, definition)
+        for name in dict.fromkeys(names):  # a saddle of several steps counts once
+            by_step[:, names.index(name)] = control[name]
+        return log_rate, by_step, {n: x for n, x in control.items() if n not in names}
     rate, network = rates.rate(definition), rates.network
     for number, edge in enumerate(network.edges):
         by_step[:, edge.step] += rate.saddles[:, number]

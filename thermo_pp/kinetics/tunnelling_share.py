@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from thermo_pp.kinetics.model import Rates
+from thermo_pp.kinetics.point import sensed
 from thermo_pp.kinetics.results import Rate
 from thermo_pp.names import Definition
 
@@ -32,7 +33,7 @@ def with_tunnelling(
         if rate is None:
             with_shares[name] = None
             continue
-        own, other = rates.rate(name), bare.rate(name)
+        own, other = sensed(rates, name)[0], sensed(bare, name)[0]
         with_shares[name] = replace(
             rate,
             log_tunnelling=own.log - other.log,
