@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import pytest
 
 if TYPE_CHECKING:
-    from thermo_pp.study.run import Answers
+    from thermo_pp.study.answers import Answers
 
 
 @pytest.fixture(autouse=True, scope="session")

@@ -12,8 +12,9 @@ import thermo_pp as tp
 from thermo_pp.output.exports import write_exports
 from thermo_pp.output.exports.qcschema import lacking
 from thermo_pp.output.exports.structures import file_stem
+from thermo_pp.study.answers import Answers
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, answer
+from thermo_pp.study.run import answer
 
 ROOT = Path(__file__).parents[1]
 

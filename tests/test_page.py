@@ -21,8 +21,9 @@ from thermo_pp.output.page import page_text, write_page
 from thermo_pp.output.page.contents import LESS, contents
 from thermo_pp.output.page.document import DRAWING_SHA256, SCRIPTS
 from thermo_pp.output.results_file import results_keys
+from thermo_pp.study.answers import Answers
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, answer
+from thermo_pp.study.run import answer
 
 BROWSER, DRIVER = shutil.which("chromium"), shutil.which("chromedriver")
 HOSTILE = '<b>&_%$"x'

@@ -27,8 +27,9 @@ from thermo_pp.output.parts import in_parts
 from thermo_pp.output.report_tables import shown, write_tables
 from thermo_pp.output.tables import Column, Table
 from thermo_pp.output.workbook import workbook
+from thermo_pp.study.answers import Answers
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, answer
+from thermo_pp.study.run import answer
 
 ROOT = Path(__file__).parents[1]
 STUDY = ROOT / "fixtures/stack-plume/study.toml"

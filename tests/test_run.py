@@ -14,8 +14,9 @@ from thermo_pp.conditions import standard_state
 from thermo_pp.errors import StudyError
 from thermo_pp.kinetics.courses import course_temperatures
 from thermo_pp.names import LOW_MODES
+from thermo_pp.study.answers import Answers
 from thermo_pp.study.load import Study
-from thermo_pp.study.run import Answers, Measured, answer, standard_states
+from thermo_pp.study.run import Measured, answer, standard_states
 
 ROOT = Path(__file__).parents[1]
 BUNDLED = ROOT / "fixtures" / "stack-plume" / "study.toml"

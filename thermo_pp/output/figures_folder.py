@@ -11,7 +11,7 @@ from thermo_pp.output import figures
 from thermo_pp.output.exports.structures import file_stem
 from thermo_pp.output.figures.saving import FORMATS
 from thermo_pp.output.notes import usual
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure

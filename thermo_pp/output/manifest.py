@@ -13,7 +13,7 @@ from typing import Any
 from thermo_pp import __version__
 from thermo_pp.errors import StudyError
 from thermo_pp.output.json_text import json_text
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 FORMAT = "thermo-pp/manifest/1"
 NAME = "manifest.json"

@@ -12,7 +12,7 @@ from thermo_pp.ensemble import Ensemble
 from thermo_pp.names import Origin
 from thermo_pp.records import Calculation
 from thermo_pp.species import ElectronicEnergy, SpeciesModel, Structure
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 
 def provenance(answers: Answers) -> list[dict[str, Any]]:

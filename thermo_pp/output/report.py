@@ -14,7 +14,7 @@ from thermo_pp.output.manifest import NAME, manifest_text
 from thermo_pp.output.page import write_page
 from thermo_pp.output.report_tables import write_tables
 from thermo_pp.output.results_file import results_text
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 Maker = Callable[..., None]
 """Called with the answers and the folder; those of `TABLES` with the columns too."""

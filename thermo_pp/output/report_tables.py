@@ -31,7 +31,7 @@ from thermo_pp.output.notes import for_a_report
 from thermo_pp.output.plain import markdown
 from thermo_pp.output.tables import Block, Table
 from thermo_pp.output.workbook import workbook
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 _INPUTS = r"\input{%s-body}"
 

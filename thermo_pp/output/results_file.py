@@ -28,7 +28,7 @@ from thermo_pp.output.provenance import provenance
 from thermo_pp.rate_laws import Arrhenius, Crossing
 from thermo_pp.species import Declared, SpeciesModel
 from thermo_pp.species.result import ModeTable
-from thermo_pp.study.run import Answers, SpeciesAnswer
+from thermo_pp.study.answers import Answers, SpeciesAnswer
 
 FORMAT = "thermo-pp/results/1"
 _COMMON = ("format", "treatment", "standard_state", "findings", "energies")

@@ -20,7 +20,7 @@ from thermo_pp.output.tables import (
 )
 from thermo_pp.records import hill_text
 from thermo_pp.species import SpeciesModel, Structure
-from thermo_pp.study.run import SpeciesAnswer
+from thermo_pp.study.answers import SpeciesAnswer
 from thermo_pp.units import HARTREE_KJ_MOL
 
 _WHAT = "\N{GREEK SMALL LETTER SIGMA}"

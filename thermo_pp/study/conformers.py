@@ -14,9 +14,11 @@ from thermo_pp.names import Duplicates
 from thermo_pp.study.check import check_keys
 from thermo_pp.study.crossings import crossing_points
 from thermo_pp.study.energies import check_levels, known_level
-from thermo_pp.study.load import read_data
 from thermo_pp.study.members import make_species
-from thermo_pp.study.parts import given, make_temperatures, make_treatment
+from thermo_pp.study.reading import read_data
+from thermo_pp.study.surroundings import make_temperatures
+from thermo_pp.study.treatment import make_treatment
+from thermo_pp.study.values import given
 
 
 @dataclass(frozen=True, eq=False)

@@ -7,7 +7,7 @@ from thermo_pp.errors import StudyError
 from thermo_pp.names import DEFAULT_TEMPERATURE_K, Kind
 from thermo_pp.species import Declared, SpeciesModel, parse_composition
 from thermo_pp.study.keys import StructureKeys
-from thermo_pp.study.parts import above_zero, given
+from thermo_pp.study.values import above_zero, given
 from thermo_pp.units import quantity
 
 

@@ -38,7 +38,7 @@ from thermo_pp.study.keys import (
     StructureKeys,
     StudyKeys,
 )
-from thermo_pp.study.parts import given
+from thermo_pp.study.values import given
 from thermo_pp.units import quantity
 
 Read = Callable[[str, str], Calculation]

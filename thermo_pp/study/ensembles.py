@@ -14,7 +14,7 @@ from thermo_pp.names import Duplicates, Thermal
 from thermo_pp.records import Calculation
 from thermo_pp.species import SpeciesModel
 from thermo_pp.study.keys import ConformerFileKeys, ConformerKeys, SpeciesKeys
-from thermo_pp.study.parts import given
+from thermo_pp.study.values import given
 
 INHERITED = ("charge", "multiplicity", "levels", "symmetry_number", "isotopes", "imaginary")
 """Keys that a species may say for all its conformers."""

@@ -13,7 +13,7 @@ from thermo_pp.names import DEFAULT_TEMPERATURE_K
 from thermo_pp.nearest import suggestion
 from thermo_pp.study.check import place
 from thermo_pp.study.keys import FormationKeys, ReferenceKeys, SpeciesKeys
-from thermo_pp.study.parts import given
+from thermo_pp.study.values import given
 from thermo_pp.units import quantity
 
 

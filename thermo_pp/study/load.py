@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 import os
-import re
-import tomllib
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -14,15 +12,13 @@ from typing import TYPE_CHECKING, Any
 from thermo_pp.conditions import Conditions, Treatment
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.functions.formation import FormationQuestion
-from thermo_pp.graph import check_reach
 from thermo_pp.kinetics.doubt.uncertain import Uncertainty
-from thermo_pp.loops import equilibrium_of
 from thermo_pp.mechanism import Mechanism, check_mechanism, check_names
 from thermo_pp.names import Duplicates, PolynomialForm
-from thermo_pp.paths import find_paths
 from thermo_pp.records import Calculation
 from thermo_pp.rich import shown
 from thermo_pp.species import ElectronicEnergy, SpeciesModel
+from thermo_pp.study.asked import make_question
 from thermo_pp.study.changes import changed_data
 from thermo_pp.study.check import check_keys, missing
 from thermo_pp.study.crossings import crossing_points
@@ -30,10 +26,16 @@ from thermo_pp.study.energies import check_levels, known_level
 from thermo_pp.study.formation import make_formation
 from thermo_pp.study.labels import Labels, labelled, make_labels
 from thermo_pp.study.members import make_species
-from thermo_pp.study.parts import given, make_conditions, make_question, make_steps, make_treatment
+from thermo_pp.study.network_checks import check_electrons, check_network
+from thermo_pp.study.origin import Origin, is_read, with_keys
 from thermo_pp.study.questions import make_regimes, make_selectivity
 from thermo_pp.study.reactions import anchor_species
+from thermo_pp.study.reading import read_data, table_of
+from thermo_pp.study.steps import make_steps
+from thermo_pp.study.surroundings import make_conditions
+from thermo_pp.study.treatment import make_treatment
 from thermo_pp.study.uncertainty import check_unused, make_uncertainty
+from thermo_pp.study.values import given
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -52,8 +54,6 @@ if TYPE_CHECKING:
     from thermo_pp.measured.rows import Measurements
     from thermo_pp.profile import Profile
     from thermo_pp.study.choices import Choices
-
-_AT_LINE = re.compile(r"\s*\(at (?:line (\d+), column \d+|end of document)\)")
 
 
 @dataclass(frozen=True, eq=False)
@@ -117,7 +117,7 @@ class Study:
     selectivity_question: SelectivityQuestion | None = None
     uncertainty: Uncertainty | None = None
     with_alternatives: bool = False
-    _origin: _Origin | None = field(default=None, repr=False)
+    _origin: Origin | None = field(default=None, repr=False)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "species", MappingProxyType(dict(self.species)))
@@ -153,11 +153,11 @@ class Study:
         """
         file = os.fspath(path)
         data = read_data(file, treatment)
-        origin = _Origin(data, file, None if temperatures is None else tuple(temperatures), {})
+        origin = Origin(data, file, None if temperatures is None else tuple(temperatures), {})
         return cls._made(origin, level)
 
     @classmethod
-    def _made(cls, origin: _Origin, level: str | None) -> Study:
+    def _made(cls, origin: Origin, level: str | None) -> Study:
         """Make a study of what was read, at a named level or, with None, as the file has it."""
         file, temperatures = origin.file, origin.temperatures
         keys = check_keys(origin.data, file)
@@ -200,7 +200,7 @@ class Study:
         )
         check_electrons(conditions, mechanism)
         findings = [*members.findings, *measured, *check_mechanism(mechanism)]
-        findings += _check_network(mechanism, conditions)
+        findings += check_network(mechanism, conditions)
         doubt = given(keys.doubt)
         if doubt is None:
             check_unused(keys.species, file)
@@ -247,7 +247,7 @@ class Study:
     def read_species(self) -> tuple[str, ...]:
         """The species that stand on outputs of their own."""
         tables = {} if self._origin is None else self._origin.data["species"]
-        return tuple(name for name, keys in tables.items() if _is_read(keys))
+        return tuple(name for name, keys in tables.items() if is_read(keys))
 
     @property
     def calculations(self) -> Mapping[str, Calculation]:
@@ -293,13 +293,13 @@ class Study:
         if self._origin is None:
             raise ValueError("a study that was not loaded from a file has no keys to change")
         data = dict(self._origin.data)
-        data["treatment"] = _with(_table(data, "treatment"), treatment)
+        data["treatment"] = with_keys(table_of(data, "treatment"), treatment)
         data["species"] = dict(data["species"])
         for name, keys in species.items():
-            data["species"][name] = _with(data["species"][name], keys)
+            data["species"][name] = with_keys(data["species"][name], keys)
         data["steps"] = list(data.get("steps", ()))
         for number, keys in (steps or {}).items():
-            data["steps"][number] = _with(data["steps"][number], keys)
+            data["steps"][number] = with_keys(data["steps"][number], keys)
         only = self._origin.lowest_only or lowest_only
         origin = replace(self._origin, data=data, lowest_only=only)
         return self._made(origin, level or self.level)
@@ -324,7 +324,7 @@ class Study:
         """Check the keys of changes, not their values; StudyError where one is wrong."""
         self._changed_origin(changes)
 
-    def _changed_origin(self, changes: Mapping[str, Any]) -> _Origin:
+    def _changed_origin(self, changes: Mapping[str, Any]) -> Origin:
         if self._origin is None:
             raise ValueError("a study that was not loaded from a file has no keys to change")
         if self._origin.temperatures is not None and any(
@@ -350,7 +350,7 @@ class Study:
     def from_recipe(cls, recipe: tuple[Any, ...]) -> Study:
         """Make a study of what `recipe` of another one returned."""
         *origin, level = recipe
-        return cls._made(_Origin(*origin), level)
+        return cls._made(Origin(*origin), level)
 
     def table(self) -> pd.DataFrame:
         """Return one row a species, as plain values.
@@ -537,125 +537,3 @@ class Study:
         from thermo_pp.kinetics.flow import flow
 
         return flow(self, **options)
-
-
-@dataclass(frozen=True, eq=False)
-class _Origin:
-    """What a study is made of: the file's tables with the options, and the outputs read so far.
-
-    With `lowest_only`, of several conformers the lowest counts alone.
-    """
-
-    data: Mapping[str, Any]
-    file: str
-    temperatures: tuple[Any, ...] | None
-    read: dict[str, Calculation]
-    lowest_only: bool = False
-
-
-_EMPTY: dict[str, Any] = {"species": {}, "steps": [{"equation": ""}]}
-"""What a study must have, for checking options alone."""
-
-
-def read_data(file: str, treatment: Mapping[str, Any] | None) -> dict[str, Any]:
-    """Read the tables of a study file.
-
-    Parameters
-    ----------
-    file : str
-    treatment : mapping or None
-        Keys of ``[treatment]`` in place of the file's.
-
-    Raises
-    ------
-    StudyError
-        As `read_toml`; an option that is none.
-    """
-    data = read_toml(Path(file), file)
-    if treatment:
-        options = {"treatment": dict(treatment)}
-        check_keys({**options, **_EMPTY}, "options")
-        data = {**data, "treatment": {**_table(data, "treatment"), **options["treatment"]}}
-    return data
-
-
-def _is_read(keys: Mapping[str, Any]) -> bool:
-    """Tell whether the table of a species that was checked names outputs."""
-    listed = keys.get("conformers", [])
-    return (
-        "frequencies" in keys
-        or isinstance(listed, Mapping)
-        or any("composition" not in one for one in listed)
-    )
-
-
-def _with(table: Mapping[str, Any], keys: Mapping[str, Any]) -> dict[str, Any]:
-    """Return a table with other keys; None takes one out."""
-    return {key: value for key, value in {**table, **keys}.items() if value is not None}
-
-
-def _table(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
-    """Return a table of the file, an empty one where it is missing or, for the check to see, none."""
-    table = data.get(name, {})
-    return table if isinstance(table, Mapping) else {}
-
-
-def check_electrons(conditions: Conditions, mechanism: Mechanism) -> None:
-    """Check that nothing but electrons is held at a potential."""
-    for name, held in conditions.held.items():
-        is_electron = not mechanism.composition[name] and mechanism.charge.get(name) == -1
-        if held.form == "potential" and not is_electron:
-            raise StudyError(
-                f"{held.text!r} is a potential, and {name} is no electron",
-                where=f"{mechanism.where} [conditions] held.{name}",
-                mend='write a concentration; electrons have composition = "e-"',
-            )
-
-
-def _check_network(mechanism: Mechanism, conditions: Conditions) -> tuple[Finding, ...]:
-    """Check what needs no energies: equilibrium species, declared paths, the way to the product."""
-    equilibrium_of(mechanism, conditions.held, driven=conditions.driven)
-    catalyst = mechanism.catalyst
-    if catalyst in conditions.held:
-        raise StudyError(
-            f"the catalyst {catalyst!r} is held",
-            where=f"{mechanism.where} [conditions] held.{catalyst}",
-            mend="take it out of held: a turnover frequency is per total catalyst",
-        )
-    if mechanism.paths or catalyst is not None:
-        find_paths(mechanism, conditions.held, most=1)
-    return check_reach(mechanism, conditions.held)
-
-
-def read_toml(path: Path, file: str) -> dict[str, Any]:
-    """Read a TOML file; StudyError with its line where it is none."""
-    try:
-        data = path.read_bytes()
-    except OSError as error:
-        raise StudyError(
-            f"the study file cannot be read: {error.strerror or error}",
-            where=file,
-            mend="name a study file (TOML); docs/study-file.md shows one",
-        ) from None
-    try:
-        text = data.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise StudyError(
-            f"byte 0x{data[error.start]:02x} is not UTF-8",
-            where=f"{file}:{line}",
-            mend="save the file as UTF-8",
-        ) from None
-    try:
-        return tomllib.loads(text)
-    except (ValueError, RecursionError) as error:
-        reason = str(error) if isinstance(error, ValueError) else "tables too deep in each other"
-        found = _AT_LINE.search(reason)
-        place = file
-        if found is not None:
-            place = f"{file}:{found.group(1) or len(text.splitlines())}"
-        raise StudyError(
-            f"not TOML: {_AT_LINE.sub('', reason)}",
-            where=place,
-            mend="mend the syntax of this line; texts stand in quotes, lists in brackets",
-        ) from None

@@ -11,7 +11,7 @@ from thermo_pp.species import parse_composition
 from thermo_pp.study.check import place
 from thermo_pp.study.ensembles import is_read
 from thermo_pp.study.keys import ConformerKeys, SpeciesKeys, StructureKeys
-from thermo_pp.study.parts import given
+from thermo_pp.study.values import given
 
 _READ_ONLY = (
     "energy",

@@ -23,13 +23,13 @@ from thermo_pp.study.ensembles import Making, Reading, make_ensemble
 from thermo_pp.study.keys import ConformerKeys, SpeciesKeys, StudyKeys
 from thermo_pp.study.member_checks import check_conformer, check_member
 from thermo_pp.study.outputs import Outputs
-from thermo_pp.study.parts import given
 from thermo_pp.study.structures import (
     Structures,
     conformer_energy,
     make_structure,
     species_structure,
 )
+from thermo_pp.study.values import given
 
 
 @dataclass(frozen=True, eq=False)

@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
-from types import MappingProxyType
 from typing import TYPE_CHECKING, TypeVar
 
 import numpy as np
@@ -15,15 +14,13 @@ from thermo_pp.conditions import MOLAR, StandardState
 from thermo_pp.errors import Finding, StudyError, each_once
 from thermo_pp.names import LOW_MODES, LowModes
 from thermo_pp.profile import Choice, Profile, profiles
-from thermo_pp.species import Thermochemistry, low_mode_spread_kj_mol
-from thermo_pp.study.key_lines import DeclaredNumber, declared_numbers
+from thermo_pp.species import low_mode_spread_kj_mol
+from thermo_pp.study.answers import Answers, InputFile, SpeciesAnswer
+from thermo_pp.study.key_lines import declared_numbers
 from thermo_pp.units import BAR_PA
 
 if TYPE_CHECKING:
-    from numpy.typing import NDArray
-
     from thermo_pp.ensemble import Ensembles
-    from thermo_pp.functions.curves import Functions
     from thermo_pp.functions.formation import Formations
     from thermo_pp.functions.phase import GasPhase
     from thermo_pp.kinetics.courses import Transient
@@ -44,125 +41,6 @@ Progress = Callable[[int, int, str], None]
 USUAL_K = 298.15
 REGIME_FACTOR, REGIME_POINTS = 100.0, 25
 """How far a map of regimes goes to either side of the amount held, and its points."""
-
-
-@dataclass(frozen=True)
-class InputFile:
-    """One file that the answers stand on.
-
-    Attributes
-    ----------
-    path : str
-        As it was named.
-    sha256 : str
-        Of its bytes.
-    program, program_version : str or None
-        What made it; None for the study file and for tables of numbers.
-    level : str or None
-        Method and basis set.
-    """
-
-    path: str
-    sha256: str
-    program: str | None = None
-    program_version: str | None = None
-    level: str | None = None
-
-
-@dataclass(frozen=True, eq=False)
-class SpeciesAnswer:
-    """H, S and G of one species over the study's temperatures, with the study's own treatment.
-
-    Attributes
-    ----------
-    result : Thermochemistry
-    functions : Functions
-    low_mode_spread_kj_mol : shape (t,)
-        Largest less smallest G over the four soft-mode treatments.
-    """
-
-    result: Thermochemistry
-    functions: Functions
-    low_mode_spread_kj_mol: NDArray[np.float64]
-
-
-@dataclass(frozen=True, eq=False)
-class Answers:
-    """Everything that a report of a study shows.
-
-    A part that does not apply is None (or an empty mapping), and `left_out` says why.
-
-    Attributes
-    ----------
-    study : Study
-    species : mapping of str to SpeciesAnswer
-        Saddle points included, in the order of the study.
-    profiles : mapping of (low_modes, standard state) to Profile
-        All soft-mode treatments with the study's standard state, 1 bar and 1 mol/L.
-    own : (low_modes, standard state)
-        The study's own choice, a key of `profiles`.
-    profile_at_conditions : Profile or None
-        With the study's own treatment, held species at their concentrations.
-    effective : EffectiveRate or None
-    effective_by_treatment : mapping of str to EffectiveRate
-        By soft-mode treatment, the study's own included.
-    selectivity : Selectivity or None
-    regimes : Regimes or None
-        As ``[regimes]`` asks, else over a hundredth to a hundred times the first amount that is held.
-    doubt : Doubt or None
-        Where the study has ``[doubt]``.
-    transient : Transient or None
-    flow : FlowState or None
-    isotopes : tuple of IsotopeEffects
-    choices : Choices or None
-    comparison : Comparison or None
-        With the measured rate constants that were named.
-    ensembles : Ensembles or None
-        The species that consist of conformers.
-    formation : Formations or None
-    phase : GasPhase or None
-        The minima as a gas, fitted by NASA polynomials.
-    inputs : tuple of InputFile
-        The study file first.
-    declared : tuple of DeclaredNumber
-        Every number of the study file.
-    left_out : mapping of str to str
-        Part -> why it is not there.
-    findings : tuple of Finding
-        Of all parts.
-    """
-
-    study: Study
-    species: Mapping[str, SpeciesAnswer]
-    profiles: Mapping[Choice, Profile]
-    own: Choice
-    profile_at_conditions: Profile | None
-    effective: EffectiveRate | None
-    effective_by_treatment: Mapping[LowModes, EffectiveRate]
-    selectivity: Selectivity | None
-    regimes: Regimes | None
-    doubt: Doubt | None
-    transient: Transient | None
-    flow: FlowState | None
-    isotopes: tuple[IsotopeEffects, ...]
-    choices: Choices | None
-    comparison: Comparison | None
-    ensembles: Ensembles | None
-    formation: Formations | None
-    phase: GasPhase | None
-    inputs: tuple[InputFile, ...]
-    declared: tuple[DeclaredNumber, ...]
-    left_out: Mapping[str, str] = field(default_factory=dict)
-    findings: tuple[Finding, ...] = ()
-
-    def __post_init__(self) -> None:
-        for name in ("species", "profiles", "effective_by_treatment", "left_out"):
-            object.__setattr__(self, name, MappingProxyType(dict(getattr(self, name))))
-
-    @property
-    def profile(self) -> Profile | None:
-        """The profile as the study has it."""
-        return self.profiles.get(self.own)
 
 
 @dataclass(frozen=True)

@@ -20,7 +20,6 @@ from thermo_pp.records import Calculation
 from thermo_pp.species import Seam, SeamPart
 from thermo_pp.study.keys import Quantity, SeamKeys
 from thermo_pp.study.outputs import Outputs
-from thermo_pp.study.parts import given
 from thermo_pp.study.seam_findings import (
     State,
     modes_along,
@@ -29,6 +28,7 @@ from thermo_pp.study.seam_findings import (
     turns_along,
     where_it_lies,
 )
+from thermo_pp.study.values import given
 from thermo_pp.units import HARTREE_KJ_MOL, quantity
 
 FloatArray = NDArray[np.float64]

@@ -23,9 +23,10 @@ from thermo_pp.study.keys import (
     StudyKeys,
 )
 from thermo_pp.study.outputs import Outputs
-from thermo_pp.study.parts import entropy_correction, given, real_below
 from thermo_pp.study.seams import make_seam
 from thermo_pp.study.torsions import make_torsions
+from thermo_pp.study.treatment import entropy_correction, real_below
+from thermo_pp.study.values import given
 
 SEAM_DOUBTS = {"mode-count", "imaginary-modes", "small-imaginary-mode"}
 """What the audit says of modes, where the modes of one state do not count."""

@@ -11,7 +11,7 @@ from thermo_pp.sources import Source
 from thermo_pp.species import parse_torsions
 from thermo_pp.species.potentials import TorsionChoice
 from thermo_pp.study.keys import TorsionKeys
-from thermo_pp.study.parts import given
+from thermo_pp.study.values import given
 
 
 def make_torsions(

@@ -13,7 +13,7 @@ from thermo_pp.output.document.references import bibtex
 from thermo_pp.output.document.tex import document_latex
 from thermo_pp.output.document.word import document_docx
 from thermo_pp.output.files import write_file
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 _NAME = "supporting-information"
 

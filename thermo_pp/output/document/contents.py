@@ -21,7 +21,7 @@ from thermo_pp.output.document.model import (
 from thermo_pp.output.document.references import REFERENCES
 from thermo_pp.output.report_tables import shown
 from thermo_pp.output.tables import Block, Cell, Column, Table
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 _CAUTIONS = (
     SAFETY,

@@ -10,7 +10,7 @@ from thermo_pp.names import LowModes
 from thermo_pp.output.document.geometries import Shape, shapes
 from thermo_pp.output.document.model import Paragraph
 from thermo_pp.output.notes import of_treatment
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 _SOFT: dict[LowModes, tuple[str, tuple[str, ...]]] = {
     "harmonic": ("Every mode was taken as a harmonic oscillator.", ()),

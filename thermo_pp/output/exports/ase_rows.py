@@ -8,7 +8,7 @@ from typing import Any
 from thermo_pp import __version__
 from thermo_pp.output.exports.structures import structures
 from thermo_pp.species import Structure
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 
 def ase_text(answers: Answers) -> str:

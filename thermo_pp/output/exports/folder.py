@@ -10,7 +10,7 @@ from thermo_pp.output.exports.qcschema import lacking, qcschema_text
 from thermo_pp.output.exports.structures import file_stem, structures
 from thermo_pp.output.files import write_file
 from thermo_pp.output.tables import printable
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 
 def write_exports(answers: Answers, folder: Path) -> None:

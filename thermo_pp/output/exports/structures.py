@@ -7,7 +7,7 @@ from collections.abc import Iterator
 
 from thermo_pp.ensemble import Ensemble
 from thermo_pp.species import SpeciesModel, Structure
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 _ODD = re.compile(r"[^A-Za-z0-9]+")
 

@@ -12,7 +12,7 @@ from pathlib import Path
 from thermo_pp.output.files import write_file
 from thermo_pp.output.page.document import page_text
 from thermo_pp.output.results_file import results_keys
-from thermo_pp.study.run import Answers
+from thermo_pp.study.answers import Answers
 
 __all__ = ["page_text", "write_page"]
 
