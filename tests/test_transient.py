@@ -265,6 +265,46 @@ def test_flow_of_one_irreversible_step(tmp_path: Path) -> None:
     assert result.findings == ()
 
 
+def gas(folder: Path, amounts: str, **options: object) -> Study:
+    """Write A + B = C = P in the gas phase."""
+    text = f'[treatment]\nphase = "gas"\nstandard_state = "1 bar"\n[conditions]\n{amounts}\n'
+    text += "".join(species(*member) for member in SECOND)
+    text += "".join(f'[[steps]]\nequation = "{one}"\n{how}\n' for one, how in SECOND_STEPS)
+    return load(folder, f"{text}[effective]\n{AP}\n", **options)
+
+
+def test_a_gas_has_its_energy_at_constant_concentration_and_at_constant_pressure(
+    tmp_path: Path,
+) -> None:
+    """Against studies that state the same amounts in the other way; at the start, rate ~ c_A c_B."""
+    pressure = 0.01 * 1000.0 * GAS_J_MOL_K * T  # Pa
+    by_concentration = gas(
+        tmp_path, f'temperatures = [{T}]\ninitial = {{ A = "0.01 mol/L", B = "0.01 mol/L" }}'
+    )
+    by_pressure = gas(
+        tmp_path,
+        f'temperatures = [{T}]\ninitial = {{ A = "{pressure!r} Pa", B = "{pressure!r} Pa" }}',
+    )
+    times = (0.0, 1.0, 1e3)
+    (first,), (second_one,) = (
+        each.transient(times_s=times).courses for each in (by_concentration, by_pressure)
+    )
+    for name, course in (("concentration", first), ("pressure", second_one)):
+        own = course.arrhenius_energy_kj_mol
+        assert own is not None
+        assert course.arrhenius_energy_constant_kj_mol[name] == pytest.approx(own, abs=1e-9)
+        for other in ("concentration", "pressure"):
+            assert first.arrhenius_energy_constant_kj_mol[other] == pytest.approx(
+                second_one.arrhenius_energy_constant_kj_mol[other], abs=1e-6
+            )
+    both = first.arrhenius_energy_constant_kj_mol
+    apart = both["concentration"][0] - both["pressure"][0]
+    assert apart == pytest.approx(2.0 * GAS_J_MOL_K * T / 1000.0, abs=1e-9)
+    shown = time_course_tables(by_pressure.transient(times_s=times), "kJ/mol")
+    assert isinstance(shown[0], Table)
+    assert any("constant pressure" in column.quantity for column in shown[0].columns)
+
+
 def test_several_steady_states_say_which_one(tmp_path: Path) -> None:
     """A + 2 B = 3 B with outflow: washed out, or burning."""
     members = [("A", "CO", 0.0, 100.0), ("B", "CO", -80.0, 100.0)]

@@ -24,6 +24,7 @@ Duplicates = Literal["count", "once"]
 Thermal = Literal["own", "nearest"]
 Constant = Literal["concentration", "pressure"]
 """What of a gas stays when the temperature changes."""
+CONSTANTS: tuple[Constant, ...] = ("concentration", "pressure")
 Broadening = Literal["lindemann", "troe", "iupac", "jpl"]
 """How a rate constant is broadened between its limits of low and high pressure."""
 Definition = Literal["free", "pool", "relaxation", "cycle", "point"]

@@ -44,6 +44,8 @@ class TimeCourse:
     arrhenius_energy_kj_mol : shape (t,) or None
         R T^2 d ln(rate)/dT at the same conversion; nan where what is still to change is less
         than a millionth of what is there.
+    arrhenius_energy_constant_kj_mol : mapping of {"concentration", "pressure"} to shape (t,)
+        The same with every amount of a gas (at the start or held) constant in that sense; empty in solution.
     order : shape (t,) or None
         d ln(rate)/d ln(free concentration of the followed species) along the course.
     control : mapping of str to shape (t,)
@@ -95,6 +97,7 @@ class TimeCourse:
     quasi_steady_rate_ratio: FloatArray | None = None
     quasi_steady_energy_kj_mol: FloatArray | None = None
     product_share: Mapping[str, FloatArray] = field(default_factory=dict)
+    arrhenius_energy_constant_kj_mol: Mapping[str, FloatArray] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         freeze_arrays(self)

@@ -8,9 +8,7 @@ from dataclasses import replace
 from thermo_pp.kinetics.model import Rates
 from thermo_pp.kinetics.point import sensed
 from thermo_pp.kinetics.results import Rate
-from thermo_pp.names import Constant, Definition
-
-_BOTH: tuple[Constant, Constant] = ("concentration", "pressure")
+from thermo_pp.names import CONSTANTS, Definition
 
 
 def with_holding(
@@ -36,7 +34,7 @@ def with_holding(
     t = rates.energies.temperature_k
     seen = {
         name: replace(model, conditions=replace(model.conditions, seen=name)).at(t)
-        for name in _BOTH
+        for name in CONSTANTS
     }
     return {
         definition: rate

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -16,6 +16,7 @@ from thermo_pp.kinetics.network import CLOSED_WITHIN
 from thermo_pp.kinetics.steps import ElementaryRates, Energetics, elementary_rates, energetics
 from thermo_pp.loops import equilibrium_of, held_loops
 from thermo_pp.mechanism import Mechanism
+from thermo_pp.names import Constant
 from thermo_pp.units import GAS_J_MOL_K
 
 if TYPE_CHECKING:
@@ -49,7 +50,11 @@ class Start:
 
 
 def systems(
-    study: StudyLike, temperature_k: FloatArray, *, flowing: bool = False
+    study: StudyLike,
+    temperature_k: FloatArray,
+    *,
+    flowing: bool = False,
+    seen: Constant | None = None,
 ) -> tuple[Start, ...]:
     """Return the start at each temperature.
 
@@ -59,6 +64,8 @@ def systems(
     temperature_k : shape (b,)
     flowing : bool
         With the study's flow.
+    seen : {"concentration", "pressure"} or None
+        What of a gas counts as constant in derivatives by temperature, in place of what the study says.
 
     Raises
     ------
@@ -68,8 +75,9 @@ def systems(
     mechanism = study.mechanism
     names = (*mechanism.species, *mechanism.saddles)
     energies = energetics({name: study.species[name] for name in names}, temperature_k)
-    rates = elementary_rates(mechanism, energies, study.treatment, study.conditions)
-    return starts(mechanism, study.conditions, energies, rates, flowing=flowing)
+    conditions = study.conditions if seen is None else replace(study.conditions, seen=seen)
+    rates = elementary_rates(mechanism, energies, study.treatment, conditions)
+    return starts(mechanism, conditions, energies, rates, flowing=flowing)
 
 
 def starts(
@@ -96,10 +104,10 @@ def starts(
     found = []
     for k, system in enumerate(mass_action(mechanism, conditions, energies, rates, equilibrium)):
         t = float(temperature_k[k])
-        amounts, response = _amounts(system, given, t)
+        amounts, response = _amounts(system, given, t, conditions.seen)
         feed = None
         if flowing and conditions.flow is not None:
-            feed, thinning = _amounts(system, conditions.flow.feed, t)
+            feed, thinning = _amounts(system, conditions.flow.feed, t, conditions.seen)
             with np.errstate(divide="ignore", invalid="ignore"):
                 slope = np.where(feed > 0.0, thinning[:, -1] / feed, 0.0)
             system = system.with_flow(feed, conditions.flow.residence_s, slope)
@@ -111,7 +119,7 @@ def starts(
 
 
 def _amounts(
-    system: System, given: Mapping[str, Held], temperature_k: float
+    system: System, given: Mapping[str, Held], temperature_k: float, seen: Constant | None
 ) -> tuple[FloatArray, FloatArray]:
     """Return concentrations, shape (s,), and their responses, shape (s, p)."""
     amounts = np.zeros(len(system.names))
@@ -119,8 +127,8 @@ def _amounts(
     for name, how in given.items():
         column = system.names.index(name)
         amounts[column] = float(how.concentration_mol_l(temperature_k))
-        if how.form == "pressure":
-            response[column, -1] = -GAS_J_MOL_K * temperature_k * amounts[column]
+        slope = float(how.log_slope(np.array(temperature_k), seen))
+        response[column, -1] = slope * GAS_J_MOL_K * temperature_k * amounts[column]
     return amounts, response
 
 

@@ -8,7 +8,7 @@ time course (`radau`), and the sum over the saddles is 1.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -24,6 +24,7 @@ from thermo_pp.kinetics.radau import Run, Unsolved, fastest_rate, integrate, lif
 from thermo_pp.kinetics.start import Start, systems
 from thermo_pp.kinetics.stationary import NoSteadyState, settle
 from thermo_pp.kinetics.transient_words import IMPOSSIBLE_MOL_L, findings, words
+from thermo_pp.names import CONSTANTS, Constant
 
 if TYPE_CHECKING:
     from thermo_pp.kinetics.asked import StudyLike
@@ -77,9 +78,21 @@ def transient(
         followed = ""
     with threadpool_limits(1), np.errstate(all="ignore"):
         starts = systems(study, np.array(kelvin))
+        seen: dict[Constant, tuple[Start, ...]] = {}
+        if study.treatment.phase == "gas":
+            seen = {name: systems(study, np.array(kelvin), seen=name) for name in CONSTANTS}
         courses = tuple(
-            _course(study, start, t, followed, forming, times_s, products or mechanism.products)
-            for start, t in zip(starts, kelvin, strict=True)
+            _course(
+                study,
+                start,
+                {name: others[k] for name, others in seen.items()},
+                t,
+                followed,
+                forming,
+                times_s,
+                products or mechanism.products,
+            )
+            for k, (start, t) in enumerate(zip(starts, kelvin, strict=True))
         )
     result = Transient(followed, forming, courses)
     result = replace(result, findings=findings(result, study.mechanism.where))
@@ -89,6 +102,7 @@ def transient(
 def _course(
     study: StudyLike,
     start: Start,
+    seen: Mapping[Constant, Start],
     temperature_k: float,
     followed: str,
     forming: bool,
@@ -98,8 +112,9 @@ def _course(
     whole, where = start.system, f"{study.mechanism.where} [conditions] initial"
     there = whole.present(start.concentration)
     system, now = whole.only(there), start.concentration[there]
-    response = np.column_stack([start.response[there], np.zeros(len(now))])
-    clocked = with_clock(system)
+    others = [one.response[there][:, -1] for one in seen.values()]
+    response = np.column_stack([start.response[there], *others, np.zeros(len(now))])
+    clocked = with_clock(_with_seen(system, {k: v.system.only(there) for k, v in seen.items()}))
     end, even = _end(system, now)
     fastest = fastest_rate(system, now)
     reason = _no_end(system, end)
@@ -164,6 +179,20 @@ def _product_share(
     total = columns.sum(axis=1)
     shares = np.where(total > 0.0, columns.T / np.where(total > 0.0, total, 1.0), np.nan)
     return dict(zip(competing, shares, strict=True))
+
+
+def _with_seen(system: System, seen: Mapping[Constant, System]) -> System:
+    """Return the system with a response to temperature for everything that may count as constant."""
+    return replace(
+        system,
+        responses=(*system.responses, *(f"{TEMPERATURE} at constant {name}" for name in seen)),
+        respond_forward=np.hstack(
+            [system.respond_forward, *(one.respond_forward[:, -1:] for one in seen.values())]
+        ),
+        respond_reverse=np.hstack(
+            [system.respond_reverse, *(one.respond_reverse[:, -1:] for one in seen.values())]
+        ),
+    )
 
 
 def with_clock(system: System) -> System:
@@ -274,12 +303,18 @@ def _with_rate(
     same = np.where(run.time_s[:, np.newaxis] > 0.0, relative - slope * moved, relative)
     left = np.abs(rate) * course.slowest_lifetime_s
     same[left <= _AT_REST * run.concentration[:, species]] = np.nan
-    named = {name: same[:, k] for k, name in enumerate(system.responses[:-2])}
+    heated = system.responses.index(TEMPERATURE)
+    named = {name: same[:, k] for k, name in enumerate(system.responses[:heated])}
+    seen = system.responses[heated + 1 : -1]
     order = np.where(np.isfinite(same[:, 0]), slope[:, 0] * run.concentration[:, species], np.nan)
     return replace(
         course,
         rate_mol_l_s=rate,
-        arrhenius_energy_kj_mol=same[:, system.responses.index(TEMPERATURE)] / 1000.0,
+        arrhenius_energy_kj_mol=same[:, heated] / 1000.0,
+        arrhenius_energy_constant_kj_mol={
+            name.removeprefix(f"{TEMPERATURE} at constant "): same[:, heated + 1 + k] / 1000.0
+            for k, name in enumerate(seen)
+        },
         order=order,
         control=named,
         saddles=system.saddles,

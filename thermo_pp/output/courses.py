@@ -29,10 +29,15 @@ def time_course_keys(result: Transient) -> dict[str, Any]:
     return {
         "followed": result.followed or None,
         "forming": result.forming,
-        "courses": [
-            {name: value for name, value in vars(course).items() if name != "saddles"}
-            for course in result.courses
-        ],
+        "courses": [_course_keys(course) for course in result.courses],
+    }
+
+
+def _course_keys(course: TimeCourse) -> dict[str, Any]:
+    left_out = ("saddles", "arrhenius_energy_constant_kj_mol")
+    return {name: value for name, value in vars(course).items() if name not in left_out} | {
+        f"arrhenius_energy_constant_{name}_kj_mol": values
+        for name, values in course.arrhenius_energy_constant_kj_mol.items()
     }
 
 
@@ -70,6 +75,11 @@ def time_course_tables(result: Transient, unit: EnergyUnit) -> list[Block]:
             ]
             for row, k in zip(rows, shown, strict=True):
                 row += _rate_cells(course, k, unit)
+            if both := _both(course):
+                columns += [energy_column(f"Eₐ, constant {name}", unit) for name in both]
+                for row, k in zip(rows, shown, strict=True):
+                    row += [in_unit(values[k], unit) for values in both.values()]
+                notes.append("constant: what of the gas stays on heating, at the start and held.")
             what = "net formation" if result.forming else "net loss"
             notes.append(
                 f"rate: {what} of {result.followed}; order: in its free concentration, along the "
@@ -113,6 +123,17 @@ def time_course_wide(result: Transient, unit: EnergyUnit) -> list[Block]:
         controls += [
             [course.temperature_k, float(time), "share of products", name, defined(share[k])]
             for name, share in course.product_share.items()
+            for k, time in enumerate(course.time_s)
+        ]
+        controls += [
+            [
+                course.temperature_k,
+                float(time),
+                "Ea / kJ mol-1",
+                f"constant {name}",
+                defined(values[k]),
+            ]
+            for name, values in course.arrhenius_energy_constant_kj_mol.items()
             for k, time in enumerate(course.time_s)
         ]
         ratios: dict[str, FloatArray] = dict(course.quasi_steady_ratio)
@@ -215,6 +236,13 @@ def _rate_cells(course: TimeCourse, k: int, unit: EnergyUnit) -> list[Cell]:
         in_unit(course.arrhenius_energy_kj_mol[k], unit),
         defined(course.order[k]),
     ]
+
+
+def _both(course: TimeCourse) -> Mapping[str, FloatArray]:
+    """Return E_a at constant concentration and pressure; empty where they are the same."""
+    both = course.arrhenius_energy_constant_kj_mol
+    first, last = list(both.values())[:1], list(both.values())[-1:]
+    return {} if np.allclose(first, last, rtol=0.0, atol=1e-6, equal_nan=True) else both
 
 
 def _most(concentrations: Mapping[str, FloatArray], shown: Sequence[int]) -> list[str]:
