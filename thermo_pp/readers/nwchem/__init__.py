@@ -44,6 +44,9 @@ _TITLE = b"Northwest Computational Chemistry Package (NWChem)"
 _BANNER = re.compile(rb"[ \t]+" + re.escape(_TITLE) + rb" (\S+)\r?\n[ \t]+-{20}")
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
+_SINGLE = ("energy", "gradient")
+_COUNTERPOISE = b"BSSE Module - Counter Poise Approach"
+_POINT_CHARGE = re.compile(rb"\n *\d+ +Bq( +-?\d+\.\d+){3} +charge +-?\d*\.?0*[1-9]")
 
 
 def sniff(head: bytes) -> bool:
@@ -76,6 +79,7 @@ def read(source: Source) -> Calculation:
     analysed = [task for task in all_tasks if task.kind == "frequencies"]
     main = analysed[-1] if analysed else all_tasks[-1]
     tasks.check_known(text, main)
+    _check_alone(text)
     blocks = Blocks(text)
     _check_no_modes(text, main.end if analysed else 0)
     modes: Vibrations | None = None
@@ -117,7 +121,7 @@ def read(source: Source) -> Calculation:
         at |= modes.at
         doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
     doubts += _ghosts(shape)
-    doubts += _left_out(blocks, [task for task in all_tasks if task not in (main, run)], shape)
+    doubts += _left_out(blocks, main, [task for task in all_tasks if task not in (main, run)], shape)
     banner = _banner(text.data)
     if banner is not None:
         at["program_version"] = banner.start(1)
@@ -164,6 +168,24 @@ def read(source: Source) -> Calculation:
         where={field: lines[field] for field in at},
         findings=as_findings(doubts, source.name, lines) + extra,
     )
+
+
+def _check_alone(text: Text) -> None:
+    """Refuse energies that are not those of the one molecule of the geometry."""
+    at = text.find(_COUNTERPOISE)
+    if at >= 0:
+        raise text.error(
+            at,
+            "a counterpoise task over fragments of the molecule, whose energies are not read",
+            mend="give single calculations, one of each fragment, with ghost atoms",
+        )
+    charge = _POINT_CHARGE.search(text.data)
+    if charge is not None:
+        raise text.error(
+            charge.start() + 1,
+            "point charges around the molecule, which are in its energy",
+            mend="point charges are not read; give a calculation of the molecule alone",
+        )
 
 
 def _check_no_modes(text: Text, start: int) -> None:
@@ -283,12 +305,18 @@ def _same_printed_level(text: Text, run: Task, own: State) -> bool:
     """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
     if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
+    dissolved = text.data.find(levels.CONTINUUM, run.start, run.end) >= 0
+    if dissolved != (own.level.solvent != "none"):
+        return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)
 
 
 def _words(state: State) -> str:
-    return "/".join(part for part in (state.level.method, state.level.basis) if part)
+    """Return method, basis and what is unusual about the level, for a finding."""
+    level = state.level
+    more = [part for part in (level.dispersion, level.solvent) if part not in (None, "none")]
+    return ", ".join(["/".join(part for part in (level.method, level.basis) if part), *more])
 
 
 def _ghosts(shape: Geometry) -> list[Doubt]:
@@ -305,8 +333,8 @@ def _ghosts(shape: Geometry) -> list[Doubt]:
     ]
 
 
-def _left_out(blocks: Blocks, others: list[Task], shape: Geometry) -> list[Doubt]:
-    """Return a finding where another task is of other atoms."""
+def _left_out(blocks: Blocks, main: Task, others: list[Task], shape: Geometry) -> list[Doubt]:
+    """Return a finding where another task is of other atoms, or a single point of another geometry."""
     for task in others:
         block = next(blocks.before(task.end), None)
         if block is not None and not block.same_atoms(shape):
@@ -317,6 +345,17 @@ def _left_out(blocks: Blocks, others: list[Task], shape: Geometry) -> list[Doubt
                     block.at,
                     "a task of another molecule stands in this file; it is left out",
                     "give each molecule a file of its own",
+                )
+            ]
+        single = task.kind in _SINGLE and main.kind in _SINGLE
+        if single and block is not None and not block.same(shape):
+            return [
+                Doubt(
+                    "last-of-several-structures",
+                    "note",
+                    block.at,
+                    "another geometry of the same atoms stands in this file; the last one is taken",
+                    "give a file with one geometry where another one is meant",
                 )
             ]
     return []

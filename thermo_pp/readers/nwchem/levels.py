@@ -6,7 +6,7 @@ import re
 from dataclasses import dataclass
 
 from thermo_pp.readers.level import Level
-from thermo_pp.readers.nwchem.energies import CORRELATED, Energy
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, scaling
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -14,23 +14,36 @@ from thermo_pp.readers.text import CUT_SHORT, Text
 _NAMED = re.compile(r"(\S.*\S) Method XC (?:Potential|Functional)")
 _PART = re.compile(r"(\S.*\S) +(\d+\.\d+)(?: (?:local|non-local))?")
 _RANGE = re.compile(r"(Alpha|Beta|Gamma|Short-Range HF) *: *(\S+)")
+_EXACT = "Hartree-Fock (Exact) Exchange"
 _PBE_X = "PerdewBurkeErnzerhof Exchange Functional"
 _PBE_C = {"Perdew 1991 LDA Correlation Functional": 1.0}
 _PBE_C |= {"PerdewBurkeErnz. Correlation Functional": 1.0}
 _BECKE, _LYP = "Becke 1988 Exchange Functional", "Lee-Yang-Parr Correlation Functional"
 _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
-    ("HF", {"Hartree-Fock (Exact) Exchange": 1.0}),
+    ("HF", {_EXACT: 1.0}),
     (
         "SVWN5",
         {"Slater Exchange Functional": 1.0, "VWN V Correlation Functional": 1.0},
     ),
     ("BLYP", {_BECKE: 1.0, _LYP: 1.0}),
+    (
+        "B3LYP",
+        {
+            _EXACT: 0.2,
+            "Slater Exchange Functional": 0.8,
+            _BECKE: 0.72,
+            _LYP: 0.81,
+            "VWN I RPA Correlation Functional": 0.19,
+        },
+    ),
     ("PBE", {_PBE_X: 1.0, **_PBE_C}),
-    ("PBE0", {"Hartree-Fock (Exact) Exchange": 0.25, _PBE_X: 0.75, **_PBE_C}),
+    ("PBE0", {_EXACT: 0.25, _PBE_X: 0.75, **_PBE_C}),
 )
 """Functionals that the program prints by their parts, too."""
 _SAME = {"PBE96": "PBE"}
 _BASIS_ROW = re.compile(r" ?(\S+) +(\S.*?) +(?:\d+ +\d+ +(\S+)|on all atoms) *")
+CONTINUUM = b"COSMO energy ="
+"""Stands beside every energy in a continuum."""
 _SUMMARY = b'Summary of "ao basis"'
 _SCF_STATE = re.compile(
     rb"(closed|alpha) (?:shells  |electrons) = +(\d+)\s+(open|beta) +(?:shells  |electrons) +?= *(\d+)"
@@ -49,7 +62,9 @@ _FROZEN_VIRTUALS = re.compile(
 )
 _DIRECT = re.compile(rb"Active occupied range: +(\d+) -")
 _RESOLVED = re.compile(rb"Nr\. of occupied MOs correlated: +(\d+)")
-_OCCUPIED = re.compile(rb"Total Occ: +(\d+\.\d+)")
+_SCALED = (1.0 / 3.0, 6.0 / 5.0)
+"""Factors of pairs of the same and of opposite spin, unless the input says otherwise."""
+_CONSTRAINED = b"CDFT multipliers:"
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
 
@@ -69,19 +84,22 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> LevelOf
     grid: str | None = None
     dispersion: str | None = "none"
     frozen: str | None = "none"
+    charge, multiplicity, electrons = _state(before, energy.solution.label, at)
+    alpha = None
+    if electrons is not None and multiplicity is not None:
+        alpha = (electrons + multiplicity - 1) // 2
     if energy.solution.label == "DFT":
-        method = _functional(before, at)
+        method = _constrained(before) + _functional(before, at)
         grid = _grid(before, at)
         dispersion = _dispersion(before, energy, at)
         if energy.at != energy.solution.at:
             method += " + MP2"
-            frozen = _frozen(text, energy, geometry, at)
+            frozen = _frozen(text, energy, geometry, alpha, at)
     else:
-        method = energy.label
+        method = energy.label + _factors(text, energy)
         if energy.rank >= CORRELATED:
-            frozen = _frozen(text, energy, geometry, at)
+            frozen = _frozen(text, energy, geometry, alpha, at)
     method = _relativistic(text, task, energy) + method
-    charge, multiplicity, electrons = _state(before, energy.solution.label, at)
     _check_electrons(text, geometry, charge, electrons, at)
     return LevelOfTask(
         method=method,
@@ -126,11 +144,34 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     for name, known in _FUNCTIONALS:
         if parts == known:
             return name
+    if set(parts) != {_EXACT}:
+        for kind in ("Exchange", "orrelation"):
+            if not any(kind in part for part in parts):
+                raise before.error(
+                    at["method"],
+                    f"a functional without {'exchange' if kind == 'Exchange' else 'correlation'}",
+                    mend=CUT_SHORT,
+                )
     text = " + ".join(f"{share:g} {part}" for part, share in parts.items())
     following = before.find(b"Grid Information", line)
     rest = before.data[line:following].decode("utf-8", "replace") if following >= 0 else ""
     ranges = ", ".join(f"{name} {value}" for name, value in _RANGE.findall(rest))
     return f"{text}; {ranges}" if ranges else text
+
+
+def _constrained(before: Text) -> str:
+    """Return the prefix of a calculation whose density is held to a constraint, which is no ground state."""
+    return "CDFT-" if before.find(_CONSTRAINED) >= 0 else ""
+
+
+def _factors(text: Text, energy: Energy) -> str:
+    """Return what a scaled second-order energy is scaled by, empty where it is as usual or not scaled."""
+    factors = scaling(text, energy)
+    if factors is None or all(
+        abs(mine - usual) < 1e-6 for mine, usual in zip(factors, _SCALED, strict=True)
+    ):
+        return ""
+    return f" (same spin {factors[0]:g}, opposite spin {factors[1]:g})"
 
 
 def _relativistic(text: Text, task: Task, energy: Energy) -> str:
@@ -174,9 +215,9 @@ def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str | None:
 
 def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     full = energy.solution.full
-    if before.data.find(b"COSMO energy =", full, full + 700) < 0:
+    if before.data.find(CONTINUUM, full, full + 700) < 0:
         return "none"
-    at["solvent"] = before.data.find(b"COSMO energy =", full)
+    at["solvent"] = before.data.find(CONTINUUM, full)
     near = before.data[max(0, full - 1500) : full + 1500]
     model = "SMD" if b"COSMO-SMD solvation results" in near else "COSMO"
     mark = b"dielectric constant -eps-     ="
@@ -191,8 +232,13 @@ def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     return f"{model}({solvent}dielectric {dielectric:g})"
 
 
-def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) -> str | None:
-    """Return "none" or "frozen", with what is unusual about it; None where the file does not say."""
+def _frozen(
+    text: Text, energy: Energy, geometry: Geometry, alpha: int | None, at: dict[str, int]
+) -> str | None:
+    """Return "none" or "frozen", with what is unusual about it; None where the file does not say.
+
+    `alpha` is how many electrons of spin up there are, None where the file does not say.
+    """
     start, end = energy.solution.at, energy.end
     count: int | None = None
     for pattern in _FROZEN:
@@ -202,11 +248,14 @@ def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) 
     else:
         if match := _DIRECT.search(text.data, start, end):
             count, at["frozen_core"] = int(match.group(1)) - 1, match.start()
-        elif match := _RESOLVED.search(text.data, start, end):
-            occupied = _OCCUPIED.search(text.data, start, end)
-            if occupied is not None:
-                count = round(float(occupied.group(1)) / 2.0) - int(match.group(1))
-                at["frozen_core"] = match.start()
+        elif alpha is not None and (match := _RESOLVED.search(text.data, start, end)):
+            count, at["frozen_core"] = alpha - int(match.group(1)), match.start()
+            if count < 0:
+                raise text.error(
+                    match.start(),
+                    f"{match.group(1).decode()} orbitals are correlated, of {alpha} occupied ones",
+                    mend=CUT_SHORT,
+                )
     if count is None:
         return None
     virtuals = _FROZEN_VIRTUALS.search(text.data, start, end)
@@ -216,6 +265,7 @@ def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) 
     if count == 0:
         return "none" + extra
     cores = sum(next(n for last, n in _CORES if z <= last) for z in geometry.numbers)
+    cores -= sum(replaced_cores(text, geometry)) // 2
     return ("frozen" if count == cores else f"frozen: {count} orbitals") + extra
 
 

@@ -13,6 +13,7 @@ from thermo_pp.readers.psi4.levels import Energy
 from thermo_pp.readers.psi4.vibrations import ANALYSIS
 from thermo_pp.readers.text import Text
 
+_CHARGES = b"=> External Potential Field:"
 _FRAGMENTS = (b"N-Body Interaction Abacus", b"==> N-Body")
 _ENERGY_STEP = 1.1e-8
 """The last digit of the energy that the thermochemistry prints, hartree."""
@@ -56,7 +57,7 @@ class Chosen:
 
 
 def check_asked(text: Text, asked: tuple[Asked, ...]) -> None:
-    """Refuse fragment jobs, methods not known here, and what was asked for but is not there."""
+    """Refuse fragment jobs, external charges, methods not known here, and what was asked for but is not there."""
     for mark in _FRAGMENTS:
         at = text.find(mark)
         if at >= 0:
@@ -65,6 +66,13 @@ def check_asked(text: Text, asked: tuple[Asked, ...]) -> None:
                 "a job over fragments of the molecule, whose energies are not read",
                 mend="give single calculations, one of each molecule",
             )
+    charges = text.find(_CHARGES)
+    if charges >= 0:
+        raise text.error(
+            charges,
+            "charges or fields around the molecule, which are in its energy",
+            mend="they are not read; give a calculation of the molecule alone",
+        )
     for one in asked:
         lacking = _lacking(text, one)
         if lacking is not None:
@@ -136,7 +144,8 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
     """Return the best energy at the geometry of `base` and the evaluation it is of.
 
     Of equally good energies the last one counts. An evaluation beside `base` whose SCF did not
-    converge is passed over; if `base` is one, that is the error.
+    converge is passed over; if `base` is one, that is the error. One that holds its occupations to
+    those of a start (MOM) is most often an excited state, and counts where there is no other.
     """
     shape = tasks.shapes[base]
     found: list[tuple[Text, Energy]] = []
@@ -144,7 +153,8 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
         part = text.part(one.start, one.end)
         if one is base or (shape.same(tasks.shapes[one]) and levels.unconverged(part) is None):
             found.append((part, levels.best_energy(part)))
-    return max(found, key=lambda pair: (pair[1].rank, pair[1].at))
+    free = [pair for pair in found if levels.held(pair[0]) is None]
+    return max(free or found, key=lambda pair: (pair[1].rank, pair[1].at))
 
 
 def _check_bottom(analysis: Text, lowest: Energy) -> None:

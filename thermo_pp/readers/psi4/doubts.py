@@ -11,12 +11,14 @@ from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import Evaluation
 from thermo_pp.readers.text import Text
 
+_ROTATIONS = b"un-projected rotation-like modes"
+
 
 def findings(text: Text, chosen: Chosen) -> tuple[Finding, ...]:
     """Return the findings about what was chosen of the file."""
     found = [*_ghosts(text, chosen), *_unconverged(text, chosen), *_left_out(text, chosen)]
     if chosen.analysis is not None:
-        found += _levels(text, chosen)
+        found += [*_rotations(text, chosen.analysis), *_levels(text, chosen)]
     return tuple(found)
 
 
@@ -48,7 +50,31 @@ def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
             what = "a task of another molecule stands in this file; it is left out"
             mend = "give each molecule a file of its own"
             return [_finding(text, "note", "other-molecule-left-out", one.start, what, mend)]
-    return []
+    if levels.held(chosen.part) is None:
+        for one in chosen.tasks.real:
+            at = levels.held(text.part(one.start, one.end))
+            if at is not None and chosen.tasks.shapes[one].same(chosen.shape):
+                what = "an SCF with occupations held to those of a start (MOM) is left out"
+                mend = "nothing, if the ground state is meant"
+                return [_finding(text, "note", "excited-state-left-out", at, what, mend)]
+    if chosen.tasks.runs or chosen.analysis is not None:
+        return []
+    others = [one for one in chosen.tasks.real if not chosen.tasks.shapes[one].same(chosen.shape)]
+    if not others:
+        return []
+    what = f"energies at other geometries stand in this file, {len(others)} of them; the last one is taken"
+    mend = "give a file with one geometry where another one is meant"
+    code = "last-of-several-structures"
+    return [_finding(text, "note", code, others[0].start, what, mend)]
+
+
+def _rotations(text: Text, analysis: Text) -> list[Finding]:
+    at = analysis.find(_ROTATIONS)
+    if at < 0:
+        return []
+    what = "the program did not take rotations out of its vibrations: too far from a stationary point"
+    mend = "optimise at the level of the frequencies first"
+    return [_finding(text, "warning", "not-stationary", at, what, mend)]
 
 
 def _levels(text: Text, chosen: Chosen) -> list[Finding]:
