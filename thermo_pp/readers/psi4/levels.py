@@ -292,7 +292,7 @@ def level(part: Text, energy: Energy, numbers: NDArray[np.int64]) -> Level:
 
 def _basis(part: Text, primary: int, at: dict[str, int]) -> str | None:
     """Return the name of the basis set below its heading, a longer table where much is printed."""
-    detailed = part.find(b"-AO BASIS SET INFORMATION:", primary, primary + 120) >= 0
+    detailed = b"-AO BASIS SET INFORMATION:" in part.data[primary : primary + 120]
     separator = "=" if detailed else ":"
     name, blend = (b"    Name  ", b"    Blend  ") if detailed else (b"Basis Set:", b"Blend:")
     at["basis"] = part.need(name, primary, lacking="no name of the basis set")
