@@ -11,7 +11,7 @@ from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
 
-_NAMED = re.compile(r"(\S.*\S) Method XC (?:Potential|Functional)")
+_NAMED = re.compile(r"(\S.*\S) +Method XC (?:Potential|Functional)")
 _PART = re.compile(r"(\S.*\S) +(\d+\.\d+)(?: (?:local|non-local))?")
 _RANGE = re.compile(r"(Alpha|Beta|Gamma|Short-Range HF) *: *(\S+)")
 _EXACT = "Hartree-Fock (Exact) Exchange"
@@ -26,6 +26,14 @@ _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
         {"Slater Exchange Functional": 1.0, "VWN V Correlation Functional": 1.0},
     ),
     ("BLYP", {_BECKE: 1.0, _LYP: 1.0}),
+    (
+        "BP86",
+        {
+            _BECKE: 1.0,
+            "Perdew 1981 Correlation Functional": 1.0,
+            "Perdew 1986 Correlation Functional": 1.0,
+        },
+    ),
     (
         "B3LYP",
         {
@@ -144,14 +152,13 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     for name, known in _FUNCTIONALS:
         if parts == known:
             return name
-    if set(parts) != {_EXACT}:
-        for kind in ("Exchange", "orrelation"):
-            if not any(kind in part for part in parts):
-                raise before.error(
-                    at["method"],
-                    f"a functional without {'exchange' if kind == 'Exchange' else 'correlation'}",
-                    mend=CUT_SHORT,
-                )
+    for name, known in _FUNCTIONALS:
+        if parts.items() < known.items():
+            raise before.error(
+                at["method"],
+                f"a part of the functional {name}, without the rest of it",
+                mend="the output is damaged here; rerun or re-copy it, or name the functional whole",
+            )
     text = " + ".join(f"{share:g} {part}" for part, share in parts.items())
     following = before.find(b"Grid Information", line)
     rest = before.data[line:following].decode("utf-8", "replace") if following >= 0 else ""
