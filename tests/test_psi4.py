@@ -553,3 +553,28 @@ def test_psi4_1_7() -> None:
         2 * 38866.987, abs=2e-3
     )  # printed, line 42181
     assert ring.printed["entropy"].text == "385.266"
+
+
+def test_frozen_virtual_orbitals_are_told() -> None:
+    calc = calculation(BY_NAME["water_ccsd_frozen_virtuals_energy"])
+    assert calc.frozen_core == "frozen, 2 virtual orbitals too"
+
+
+def test_second_order_energy_on_the_way_to_optimised_orbitals_is_the_canonical_one() -> None:
+    energies = calculation(BY_NAME["oh_uhf_df_omp2_energy"]).method_energies
+    assert energies["MP2"].value_hartree == pytest.approx(-75.05441953047676, abs=1e-12, rel=0.0)
+
+
+@pytest.mark.parametrize(
+    ("name", "code", "line"),
+    [
+        ("water_mom_energies", "excited-state-left-out", 295),
+        ("water_three_geometries_energy", "last-of-several-structures", 79),
+        ("water_mp2_freq_fd_energies_far", "not-stationary", 2650),
+        ("hydrogen_peroxide_fixed_dihedral", "not-stationary", 1886),
+    ],
+)
+def test_what_is_doubtful(name: str, code: str, line: int) -> None:
+    (found,) = calculation(BY_NAME[name]).findings
+    assert found.code == code
+    assert found.line == line

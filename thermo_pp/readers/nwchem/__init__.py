@@ -44,6 +44,7 @@ _TITLE = b"Northwest Computational Chemistry Package (NWChem)"
 _BANNER = re.compile(rb"[ \t]+" + re.escape(_TITLE) + rb" (\S+)\r?\n[ \t]+-{20}")
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
+_FROZEN = re.compile(rb"Number of frozen variables = +[1-9]")
 _SINGLE = ("energy", "gradient")
 _COUNTERPOISE = b"BSSE Module - Counter Poise Approach"
 _POINT_CHARGE = re.compile(rb"\n *\d+ +Bq( +-?\d+\.\d+){3} +charge +-?\d*\.?0*[1-9]")
@@ -105,8 +106,7 @@ def read(source: Source) -> Calculation:
     optimised = None
     if run is not None:
         optimised, at["optimised"] = _outcome(text, run)
-        if not optimised:
-            doubts.append(_not_converged(at["optimised"]))
+        doubts += _held(text, run) if optimised else [_not_converged(at["optimised"])]
     hessian = None if modes is None else modes.hessian_hartree_bohr2
     extra: tuple[Finding, ...] = ()
     beside = None if modes is None else joined.beside(text)
@@ -121,7 +121,9 @@ def read(source: Source) -> Calculation:
         at |= modes.at
         doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
     doubts += _ghosts(shape)
-    doubts += _left_out(blocks, main, [task for task in all_tasks if task not in (main, run)], shape)
+    doubts += _left_out(
+        blocks, main, [task for task in all_tasks if task not in (main, run)], shape
+    )
     banner = _banner(text.data)
     if banner is not None:
         at["program_version"] = banner.start(1)
@@ -221,6 +223,21 @@ def _outcome(text: Text, run: Task) -> tuple[bool, int]:
     if at < 0 and run.failed is None:
         raise text.error(run.end, "this optimisation does not say how it ended", mend=CUT_SHORT)
     return False, run.failed_at if at < 0 else at
+
+
+def _held(text: Text, run: Task) -> list[Doubt]:
+    held = _FROZEN.search(text.data, run.start, run.end)
+    if held is None:
+        return []
+    return [
+        Doubt(
+            "not-stationary",
+            "warning",
+            held.start(),
+            "the geometry was optimised with coordinates held: no stationary point",
+            "nothing, for a point of a scan; else optimise without constraints",
+        )
+    ]
 
 
 def _not_converged(at: int) -> Doubt:

@@ -271,8 +271,10 @@ def _frozen(
         extra = f", {int(virtuals.group(1))} virtual orbitals too"
     if count == 0:
         return "none" + extra
-    cores = sum(next(n for last, n in _CORES if z <= last) for z in geometry.numbers)
-    cores -= sum(replaced_cores(text, geometry)) // 2
+    cores = sum(
+        max(0, next(n for last, n in _CORES if z <= last) - replaced // 2)
+        for z, replaced in zip(geometry.numbers, replaced_cores(text, geometry), strict=True)
+    )
     return ("frozen" if count == cores else f"frozen: {count} orbitals") + extra
 
 

@@ -11,12 +11,18 @@ from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import Evaluation
 from thermo_pp.readers.text import Text
 
+_HELD = (b"Fixed value    =", b"to adjust frozen coordinates")
 _ROTATIONS = b"un-projected rotation-like modes"
 
 
 def findings(text: Text, chosen: Chosen) -> tuple[Finding, ...]:
     """Return the findings about what was chosen of the file."""
-    found = [*_ghosts(text, chosen), *_unconverged(text, chosen), *_left_out(text, chosen)]
+    found = [
+        *_ghosts(text, chosen),
+        *_unconverged(text, chosen),
+        *_held(text, chosen),
+        *_left_out(text, chosen),
+    ]
     if chosen.analysis is not None:
         found += [*_rotations(text, chosen.analysis), *_levels(text, chosen)]
     return tuple(found)
@@ -42,6 +48,20 @@ def _unconverged(text: Text, chosen: Chosen) -> list[Finding]:
     what = "the optimisation did not reach its thresholds"
     mend = "optimise on from the last geometry, with more steps"
     return [_finding(text, "warning", "optimisation-not-converged", chosen.run.at, what, mend)]
+
+
+def _held(text: Text, chosen: Chosen) -> list[Finding]:
+    """Return a finding where the optimiser held coordinates at its last steps."""
+    if chosen.run is None or not chosen.run.converged:
+        return []
+    before = [one for one in chosen.tasks.real if one.start < chosen.run.last.start]
+    part = text.part((before or [chosen.run.last])[-1].start, chosen.run.at)
+    places = [at for mark in _HELD if (at := part.find(mark)) >= 0]
+    if not places:
+        return []
+    what = "the geometry was optimised with coordinates held: no stationary point"
+    mend = "nothing, for a point of a scan; else optimise without constraints"
+    return [_finding(text, "warning", "not-stationary", min(places), what, mend)]
 
 
 def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
@@ -72,7 +92,9 @@ def _rotations(text: Text, analysis: Text) -> list[Finding]:
     at = analysis.find(_ROTATIONS)
     if at < 0:
         return []
-    what = "the program did not take rotations out of its vibrations: too far from a stationary point"
+    what = (
+        "the program did not take rotations out of its vibrations: too far from a stationary point"
+    )
     mend = "optimise at the level of the frequencies first"
     return [_finding(text, "warning", "not-stationary", at, what, mend)]
 

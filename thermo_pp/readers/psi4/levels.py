@@ -91,7 +91,7 @@ _LEBEDEV = frozenset(
     )
 )
 """Sizes of the angular grids that exist (Lebedev and Laikov, Doklady Mathematics 59 (1999) 477), from memory."""
-_OCCUPIED = ("FC", "OCC", "#FZDC", "#DOCC", "#SOCC")
+_OCCUPIED = ("FC", "OCC", "AOCC", "#FZDC", "#DOCC", "#SOCC")
 _FROZEN_UNOCCUPIED = ("FV", "#FZVR")
 _FROZEN_VIRTUALS = re.compile(rb"Number of frozen virtual orbitals:\s*(\d+)")
 _REPLACED = re.compile(rb"Number of ECP core electrons:\s*(\d+)")
@@ -400,7 +400,7 @@ def _frozen_core(part: Text, numbers: NDArray[np.int64], at: dict[str, int]) -> 
     usual = sum(next(core for last, core in _CORES if z <= last) for z in numbers)
     replaced = _REPLACED.search(part.data, part.start, part.end)
     if replaced is not None:
-        usual -= int(replaced.group(1)) // 2
+        usual = max(0, usual - int(replaced.group(1)) // 2)
     return ("frozen" if count == usual else f"frozen: {count} orbitals") + extra
 
 
@@ -415,8 +415,8 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> tuple[int, int] | None:
     if place >= 0:
         at["frozen_core"] = place
         row = part.next_line(place)
-        words = part.floats(row, 6, "numbers of orbitals", skip=1)
-        frozen, occupied, active, virtual_active, virtual, virtual_frozen = words
+        counts = part.floats(row, 6, "numbers of orbitals", skip=1)
+        frozen, occupied, active, virtual_active, virtual, virtual_frozen = counts
         if frozen + active != occupied or virtual_active + virtual_frozen != virtual:
             raise part.expected(row, "frozen and active orbitals that add up to all of them")
         return int(frozen), int(virtual_frozen)
@@ -433,7 +433,7 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> tuple[int, int] | None:
     total = filled = virtuals = 0
     unoccupied = [i for i, name in enumerate(columns) if name in _FROZEN_UNOCCUPIED]
     line = first = part.next_line(rule)
-    while len(part.rest(line).split()) == len(columns):
+    while len(words := part.rest(line).split()) == len(columns) and words[-1].isdigit():
         total += int(part.floats(line, 1, "a number of frozen orbitals", skip=column)[0])
         filled += sum(int(part.floats(line, 1, "a number of orbitals", skip=i)[0]) for i in filling)
         for i in unoccupied:

@@ -84,7 +84,10 @@ def modes(part: Text, atoms: int) -> tuple[FloatArray, FloatArray, int]:
     removed = _REMOVED.search(part.data, part.start, part.end)
     overall = {int(removed.group(1))} if removed else {1: {3}, 2: {5}}.get(atoms, {5, 6})
     if _UNNAMED.search(part.data, part.start, part.end):
-        overall |= {5, 6}  # null modes that it did not take out are left out of the table all the same
+        overall |= {
+            5,
+            6,
+        }  # null modes that it did not take out are left out of the table all the same
     if 3 * atoms - len(wavenumbers) not in overall:
         expected = " or ".join(str(3 * atoms - count) for count in sorted(overall))
         raise part.error(
