@@ -347,7 +347,7 @@ def test_unconverged_optimisation(ending: str) -> None:
         (b"energy('mp2')", b"energy('mp2/cc-pv[tq]z')", "but no extrapolated energy is in the"),
         (b"==> DF-MP2 Energies <==", b"==> DF-MP9 Energies <==", "but no MP2 energy is in the"),
         (b"==> DF-MP2 En", b"==> N-Body <==\n==> DF-MP2 En", "a job over fragments"),
-        (b"\t Total Energy  ", b"  * QCISD total energy = -76.9\n\t Total Energy  ", "'QCISD'"),
+        (b"\t Total Energy  ", b"  * BCCD total energy = -76.9\n\t Total Energy  ", "'BCCD'"),
     ],
 )
 def test_what_was_asked_for_must_be_there_and_known(old: bytes, new: bytes, message: str) -> None:

@@ -24,11 +24,14 @@ RANKS: dict[str, int] = {
     "MP2": 1,
     "OMP2": 2,
     "CC2": 2,
+    "MP2.5": 2,
     "MP3": 3,
     "CISD": 3,
     "MP4(SDQ)": 4,
     "MP4(SDTQ)": 5,
+    "QCISD": 6,
     "CCSD": 6,
+    "QCISD(T)": 7,
     "CC3": 7,
     "CCSD(T)": 7,
     "CBS": 8,
@@ -41,10 +44,13 @@ CALLED: dict[str, str | None] = {
     "mp2": "MP2",
     "omp2": "OMP2",
     "cc2": "CC2",
+    "mp2.5": "MP2.5",
     "mp3": "MP3",
     "cisd": "CISD",
     "mp4(sdq)": "MP4(SDQ)",
     "mp4": "MP4(SDTQ)",
+    "qcisd": "QCISD",
+    "qcisd(t)": "QCISD(T)",
     "ccsd": "CCSD",
     "cc3": "CC3",
     "ccsd(t)": "CCSD(T)",
@@ -60,7 +66,7 @@ _TOTALS = (
     (re.compile(rb"[ \t]*(?:DF-|CD-)?(\S+) Total Energy \(a\.u\.\)"), b" Total Energy (a.u.)"),
 )
 """The lines of correlated energies, starred or in a table, and the mark of each."""
-_ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
+_ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
 _HELD = b"MOM enabled."
@@ -409,8 +415,8 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> tuple[int, int] | None:
     counted = _FROZEN_COUNT.search(part.data, part.start, part.end)
     if counted is not None:
         at["frozen_core"] = counted.start()
-        virtuals = _FROZEN_VIRTUALS.search(part.data, counted.end(), part.end)
-        return int(counted.group(1)), 0 if virtuals is None else int(virtuals.group(1))
+        unused = _FROZEN_VIRTUALS.search(part.data, counted.end(), part.end)
+        return int(counted.group(1)), 0 if unused is None else int(unused.group(1))
     place = part.find(b"CLASS    FOCC")
     if place >= 0:
         at["frozen_core"] = place
