@@ -772,3 +772,12 @@ def test_a_continuum_of_the_frequencies_alone_is_another_level() -> None:
     (found,) = calculation(good("hydrogen_gas_optimize_cosmo_freq")).findings
     assert found.code == "frequencies-of-another-level"
     assert "with HF/sto-3g, the frequencies are HF/sto-3g, COSMO(h2o" in found.what
+
+
+def test_a_basis_set_by_element_needs_a_row_for_each() -> None:
+    source = open_source(good("water_custom_basis_energy"))
+    lines = source.data.split(b"\n")
+    rows = [i for i, line in enumerate(lines) if line.startswith(b" O ") and b"cc-pvdz" in line]
+    assert rows
+    damaged = b"\n".join(line for i, line in enumerate(lines) if i not in rows)
+    assert nwchem.read(Source("damaged.out", damaged)).basis is None

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import random
 import re
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -14,6 +15,8 @@ from fixture_files import FIXTURES, expected, file_id, files
 from thermo_pp.errors import ReadError
 from thermo_pp.formulas import partition, vibration
 from thermo_pp.readers import psi4, read_source
+from thermo_pp.readers.psi4 import jobs
+from thermo_pp.readers.text import Text
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source, open_source
 
@@ -578,3 +581,14 @@ def test_what_is_doubtful(name: str, code: str, line: int) -> None:
     (found,) = calculation(BY_NAME[name]).findings
     assert found.code == code
     assert found.line == line
+
+
+def test_an_energy_with_ghosts_is_no_better_energy_of_the_molecule() -> None:
+    """MP2 of the molecule with ghost atoms, then HF of the same geometry without: HF it is."""
+    ghost = BY_NAME["water_ghost_atom_hf_energy"].read_text()
+    atoms = jobs.geometry(
+        Text(Source("x.out", ghost.encode())), ghost.index("    Geometry (in") + 4
+    )
+    assert atoms.ghosts
+    assert not atoms.same(replace(atoms, ghosts=0))
+    assert atoms.same(replace(atoms, at=0))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.level import Level
 from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, scaling
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
@@ -335,6 +336,15 @@ def _whole(before: Text, place: int, what: str) -> int:
     return int(value)
 
 
+def _covered(tags: set[str], geometry: Geometry) -> bool:
+    """Tell whether a table of basis sets by name of centre has a row for every atom."""
+    if "*" in tags:
+        return True
+    rows = {tag.lower() for tag in tags} | {element(tag, geometry) for tag in tags}
+    real = zip(geometry.tags, geometry.numbers, strict=True)
+    return all(tag.lower() in rows or SYMBOLS[z].lower() in rows for tag, z in real if z)
+
+
 def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
     """Return the library's name of the basis set, or the name by element; None where one has no name."""
     place = before.last(_SUMMARY)
@@ -353,7 +363,7 @@ def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
             return None
         polarised = polarised or row.group(3) is None or not set("dfghi").isdisjoint(row.group(3))
         names[row.group(1)] = row.group(2)
-    if not names or "user specified" in names.values():
+    if not names or "user specified" in names.values() or not _covered(set(names), geometry):
         return None
     at["basis"] = before.next_line(place, 4)
     real = {tag: name for tag, name in names.items() if tag[:2].lower() != "bq"}

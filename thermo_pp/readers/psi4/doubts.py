@@ -82,7 +82,7 @@ def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
     others = [one for one in chosen.tasks.real if not chosen.tasks.shapes[one].same(chosen.shape)]
     if not others:
         return []
-    what = f"energies at other geometries stand in this file, {len(others)} of them; the last one is taken"
+    what = f"{len(others)} other geometries or charges of these atoms stand in this file; the last is taken"
     mend = "give a file with one geometry where another one is meant"
     code = "last-of-several-structures"
     return [_finding(text, "note", code, others[0].start, what, mend)]

@@ -94,8 +94,9 @@ class Geometry:
     table_at: int
 
     def same(self, other: Geometry) -> bool:
-        """Tell whether `other` is the same molecule in the same state, and in shape to 1e-5 A."""
-        if (self.charge, self.multiplicity) != (other.charge, other.multiplicity):
+        """Tell whether `other` is the same molecule in the same state, in shape to 1e-5 A, with as many ghosts."""
+        mine = (self.charge, self.multiplicity, self.ghosts)
+        if mine != (other.charge, other.multiplicity, other.ghosts):
             return False
         if not np.array_equal(self.numbers, other.numbers):
             return False
