@@ -61,6 +61,7 @@ _SCS_ONLY = b"SCS Correlation energy"
 """Stands where the scaled energy is the module's only one."""
 _SCS_TAKEN = b"SCS-MP2               = T"
 """Stands where the input asks for scaled energies and gradients; the scaled total itself is always printed."""
+_USUAL = (1.0 / 3.0, 6.0 / 5.0)
 _SCS_PARTS = re.compile(
     rb"Same spin pairs +(\S+)\s+Same spin scaling factor +(\S+)\s+"
     rb"Opposite spin pairs +(\S+)\s+Opposite spin scaling fact\. +(\S+)\s+SCS-MP2 correlation energy"
@@ -75,6 +76,7 @@ _CC_TOTALS = {
 }
 _TCE_MARK = b" total energy / hartree"
 _TCE_TOTAL = re.compile(rb"\n (\S+) total energy / hartree +=")
+_TCE_PARTS = re.compile(rb"\n (\S+) correlation energy / hartree +=")
 _TCE_CORRECTION = re.compile(rb"Perturbative correction : (\S+)")
 _TCE_NAMES = {"MBPT(2)": "MP2", "MBPT(3)": "MP3", "MBPT(4)": "MP4"}
 _STEP = 1e-11
@@ -290,6 +292,14 @@ def _second_order(text: Text, solution: Solution, label: str, end: int) -> Energ
         mark, label = _SCS_TOTAL, f"SCS-{label}"
     if at < 0:
         raise _missing(text, solution, label)
+    factors = _factors(_SCS_PARTS.search(text.data, solution.at, end))
+    if factors is not None and not usual(factors):
+        raise text.error(
+            at,
+            f"factors of {factors[0]:g} and {factors[1]:g} for a scaled energy, but no word that it is "
+            f"the one asked for (looked for {_SCS_TAKEN.decode()!r})",
+            mend=CUT_SHORT,
+        )
     value = _value(text, at, mark, f"the {label} energy")
     part = text.data.rfind(b"orrelation energy", solution.at, at)
     parts = [_value(text, part, b"orrelation energy", "the correlation energy")]
@@ -321,8 +331,16 @@ def scaling(text: Text, found: Energy) -> tuple[float, float] | None:
     """Return the factors of pairs of the same and of opposite spin of a scaled energy, None of any other."""
     if not found.label.startswith("SCS-"):
         return None
-    parts = _SCS_PARTS.search(text.data, found.solution.at, found.at)
+    return _factors(_SCS_PARTS.search(text.data, found.solution.at, found.at))
+
+
+def _factors(parts: re.Match[bytes] | None) -> tuple[float, float] | None:
     return None if parts is None else (_float(parts.group(2)), _float(parts.group(4)))
+
+
+def usual(factors: tuple[float, float]) -> bool:
+    """Tell whether these are the factors that the program takes unless the input says otherwise."""
+    return all(abs(one - known) < 1e-6 for one, known in zip(factors, _USUAL, strict=True))
 
 
 def _coupled(text: Text, solution: Solution, start: int, end: int) -> Energy:
@@ -369,6 +387,11 @@ def _contracted(text: Text, solution: Solution, end: int) -> Energy:
             else:
                 _check(text, match.start(1), value, solution, [correlation])
         found.append(Energy(label, value, match.start(1), solution, end))
+    printed = [
+        name for name in _TCE_PARTS.findall(text.data, solution.at, end) if b"[T]" not in name
+    ]
+    if found and printed and text.data.rfind(printed[-1] + _TCE_MARK, solution.at, end) < 0:
+        raise _missing(text, solution, printed[-1].decode("utf-8", "replace"))
     correction = _TCE_CORRECTION.search(text.data, solution.at, end)
     if not found or (correction and b"(T)" in correction.group(1) and "(T)" not in found[-1].label):
         raise _missing(text, solution, "tensor contraction engine's")

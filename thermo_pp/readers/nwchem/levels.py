@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.level import Level
-from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, scaling
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, scaling, usual
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -71,8 +71,6 @@ _FROZEN_VIRTUALS = re.compile(
 )
 _DIRECT = re.compile(rb"Active occupied range: +(\d+) -")
 _RESOLVED = re.compile(rb"Nr\. of occupied MOs correlated: +(\d+)")
-_SCALED = (1.0 / 3.0, 6.0 / 5.0)
-"""Factors of pairs of the same and of opposite spin, unless the input says otherwise."""
 _CONSTRAINED = b"CDFT multipliers:"
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
@@ -98,7 +96,7 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> LevelOf
     if electrons is not None and multiplicity is not None:
         alpha = (electrons + multiplicity - 1) // 2
     if energy.solution.label == "DFT":
-        method = _constrained(before) + _functional(before, at)
+        method = _functional(before, at) + _constrained(before)
         grid = _grid(before, at)
         dispersion = _dispersion(before, energy, at)
         if energy.at != energy.solution.at:
@@ -153,6 +151,9 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     for name, known in _FUNCTIONALS:
         if parts == known:
             return name
+    firsts = {part.split()[0] for part in parts}
+    if len(parts) == 2 and len(firsts) == 1 and set(parts.values()) == {1.0}:
+        return firsts.pop().upper()  # exchange and correlation of one name
     for name, known in _FUNCTIONALS:
         if parts.items() < known.items():
             raise before.error(
@@ -168,16 +169,14 @@ def _functional(before: Text, at: dict[str, int]) -> str:
 
 
 def _constrained(before: Text) -> str:
-    """Return the prefix of a calculation whose density is held to a constraint, which is no ground state."""
-    return "CDFT-" if before.find(_CONSTRAINED) >= 0 else ""
+    """Return what marks a calculation whose density is held to a constraint, which is no ground state."""
+    return " (CDFT)" if before.find(_CONSTRAINED) >= 0 else ""
 
 
 def _factors(text: Text, energy: Energy) -> str:
     """Return what a scaled second-order energy is scaled by, empty where it is as usual or not scaled."""
     factors = scaling(text, energy)
-    if factors is None or all(
-        abs(mine - usual) < 1e-6 for mine, usual in zip(factors, _SCALED, strict=True)
-    ):
+    if factors is None or usual(factors):
         return ""
     return f" (same spin {factors[0]:g}, opposite spin {factors[1]:g})"
 

@@ -35,6 +35,7 @@ _READ = {
     *(b"Finite-difference Hessian", b"CPHF Module", b"Property Module"),
     b"Electrostatic Potential Fit Module",
 }
+_TOTALS = (b"Total SCF energy =", b"Total DFT energy =")
 _GROUND_STATE_STANDS = b"TDDFT Module"
 """The energy that this module's tasks print first is that of the ground state; of gradients that is not so."""
 
@@ -103,6 +104,11 @@ def tasks(text: Text) -> list[Task]:
         stop = headings[last][0] if last < len(headings) else len(text.data)
         if last > first + 1:
             found.append(_task(text, headings[first][0], stop, tuple(headings[first + 1 : last])))
+            continue
+        for mark in _TOTALS:
+            at = text.data.find(mark, headings[first][0], stop)
+            if at >= 0:
+                raise text.error(at, "an energy, but no heading of its module", mend=CUT_SHORT)
     if found and unconverged is not None:
         words = unconverged.group(1).decode("utf-8", "replace").strip()
         found[-1] = replace(found[-1], end=ended, failed=words, failed_at=ended)

@@ -145,7 +145,7 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
 
     Of equally good energies the last one counts. An evaluation beside `base` whose SCF did not
     converge is passed over; if `base` is one, that is the error. One that holds its occupations to
-    those of a start (MOM) is most often an excited state, and counts where there is no other.
+    those of a start (MOM) is most often an excited state: an error where there is no other.
     """
     shape = tasks.shapes[base]
     found: list[tuple[Text, Energy]] = []
@@ -154,7 +154,13 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
         if one is base or (shape.same(tasks.shapes[one]) and levels.unconverged(part) is None):
             found.append((part, levels.best_energy(part)))
     free = [pair for pair in found if levels.held(pair[0]) is None]
-    return max(free or found, key=lambda pair: (pair[1].rank, pair[1].at))
+    if not free:
+        raise text.error(
+            levels.held(found[-1][0]) or 0,
+            "an SCF with occupations held to those of a start (MOM), most often an excited state",
+            mend="give a calculation of the ground state, without mom_start",
+        )
+    return max(free, key=lambda pair: (pair[1].rank, pair[1].at))
 
 
 def _check_bottom(analysis: Text, lowest: Energy) -> None:

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import matches
+from thermo_pp.readers.psi4.jobs import REPLACED
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 RANKS: dict[str, int] = {
@@ -69,10 +70,12 @@ _TOTALS = (
 _ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
-_HELD = b"MOM enabled."
+_HELD = (b"MOM enabled.", b" DIIS/MOM", b" MOM\n")
 _FRACTIONAL = b"Fractional occupation enabled."
 _INVENTED = "ANONYMOUS"
 _FITTING = "AUX)"
+_BASIS_BYTES = 120
+"""A heading and the name of the basis set below it."""
 _MP2_TABLE = 800
 _EXTRAPOLATED = b"==> CBS <=="
 _DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
@@ -100,7 +103,6 @@ _LEBEDEV = frozenset(
 _OCCUPIED = ("FC", "OCC", "AOCC", "#FZDC", "#DOCC", "#SOCC")
 _FROZEN_UNOCCUPIED = ("FV", "#FZVR")
 _FROZEN_VIRTUALS = re.compile(rb"Number of frozen virtual orbitals:\s*(\d+)")
-_REPLACED = re.compile(rb"Number of ECP core electrons:\s*(\d+)")
 _ALPHA = re.compile(rb"\n[ \t]+Nalpha[ \t]+=[ \t]+(\d+)")
 _FROZEN_COUNT = re.compile(rb"Number of frozen core orbitals:\s*(\d+)")
 _FROZEN_TABLE = re.compile(
@@ -172,8 +174,8 @@ def unconverged(part: Text) -> int | None:
 
 def held(part: Text) -> int | None:
     """Return where the evaluation `part` holds its occupations to those of a start, None if nowhere."""
-    at = part.find(_HELD)
-    return at if at >= 0 else None
+    places = [at for mark in _HELD if (at := part.find(mark)) >= 0]
+    return min(places, default=None)
 
 
 def is_printed(text: Text, label: str) -> bool:
@@ -298,10 +300,12 @@ def level(part: Text, energy: Energy, numbers: NDArray[np.int64]) -> Level:
 
 def _basis(part: Text, primary: int, at: dict[str, int]) -> str | None:
     """Return the name of the basis set below its heading, a longer table where much is printed."""
-    detailed = b"-AO BASIS SET INFORMATION:" in part.data[primary : primary + 120]
+    detailed = b"-AO BASIS SET INFORMATION:" in part.data[primary : primary + _BASIS_BYTES]
     separator = "=" if detailed else ":"
     name, blend = (b"    Name  ", b"    Blend  ") if detailed else (b"Basis Set:", b"Blend:")
     at["basis"] = part.need(name, primary, lacking="no name of the basis set")
+    if at["basis"] - primary > _BASIS_BYTES:
+        raise part.expected(part.next_line(primary, 2), "the name of the basis set")
     basis = part.line(at["basis"]).partition(separator)[2].strip() or None
     if basis is not None and basis.endswith(_FITTING):
         raise part.expected(at["basis"], "the name of the basis set")
@@ -404,9 +408,11 @@ def _frozen_core(part: Text, numbers: NDArray[np.int64], at: dict[str, int]) -> 
     if count == 0:
         return "none" + extra
     usual = sum(next(core for last, core in _CORES if z <= last) for z in numbers)
-    replaced = _REPLACED.search(part.data, part.start, part.end)
+    replaced = REPLACED.search(part.data, part.start, part.end)
     if replaced is not None:
         usual = max(0, usual - int(replaced.group(1)) // 2)
+    elif part.find(b"ECP") >= 0:
+        return None
     return ("frozen" if count == usual else f"frozen: {count} orbitals") + extra
 
 
