@@ -350,6 +350,7 @@ def test_unconverged_optimisation(ending: str) -> None:
         (b"energy('mp2')", b"energy('mp2/cc-pv[tq]z')", "but no extrapolated energy is in the"),
         (b"==> DF-MP2 Energies <==", b"==> DF-MP9 Energies <==", "but no MP2 energy is in the"),
         (b"==> DF-MP2 En", b"==> N-Body <==\n==> DF-MP2 En", "a job over fragments"),
+        (b"==> DF-MP2 En", b"@IRC  **** Point  0 on\n==> DF-MP2 En", "a reaction path (IRC)"),
         (b"\t Total Energy  ", b"  * BCCD total energy = -76.9\n\t Total Energy  ", "'BCCD'"),
     ],
 )
@@ -573,6 +574,7 @@ def test_second_order_energy_on_the_way_to_optimised_orbitals_is_the_canonical_o
     [
         ("water_mom_energies", "excited-state-left-out", 295),
         ("water_three_geometries_energy", "last-of-several-structures", 79),
+        ("hydrogen_peroxide_two_structures", "last-of-several-structures", 1914),
         ("water_mp2_freq_fd_energies_far", "not-stationary", 2650),
         ("hydrogen_peroxide_fixed_dihedral", "not-stationary", 1886),
     ],

@@ -13,6 +13,7 @@ from thermo_pp.readers.psi4.levels import Energy
 from thermo_pp.readers.psi4.vibrations import ANALYSIS
 from thermo_pp.readers.text import Text
 
+_PATH = b"@IRC "
 _CHARGES = b"=> External Potential Field:"
 _FRAGMENTS = (b"N-Body Interaction Abacus", b"==> N-Body")
 _ENERGY_STEP = 1.1e-8
@@ -57,7 +58,7 @@ class Chosen:
 
 
 def check_asked(text: Text, asked: tuple[Asked, ...]) -> None:
-    """Refuse fragment jobs, external charges, methods not known here, and what was asked for but is not there."""
+    """Refuse what is no energy of the molecule alone, methods not known here, and what is not there."""
     for mark in _FRAGMENTS:
         at = text.find(mark)
         if at >= 0:
@@ -72,6 +73,13 @@ def check_asked(text: Text, asked: tuple[Asked, ...]) -> None:
             charges,
             "charges or fields around the molecule, which are in its energy",
             mend="they are not read; give a calculation of the molecule alone",
+        )
+    path = text.find(_PATH)
+    if path >= 0:
+        raise text.error(
+            path,
+            "a reaction path (IRC), whose last energy is of no stationary point",
+            mend="give a single point, an optimisation or frequencies of the geometry you want",
         )
     for one in asked:
         lacking = _lacking(text, one)

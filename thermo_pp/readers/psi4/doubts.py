@@ -6,11 +6,13 @@ import numpy as np
 
 from thermo_pp.errors import Finding
 from thermo_pp.names import Severity
-from thermo_pp.readers.psi4 import levels
+from thermo_pp.readers.psi4 import jobs, levels
 from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import Evaluation
 from thermo_pp.readers.text import Text
 
+_OTHER_ANGSTROM = 0.2
+"""Distances that differ by more are not those of one structure at two levels of theory."""
 _HELD = (b"Fixed value    =", b"to adjust frozen coordinates")
 _ROTATIONS = b"un-projected rotation-like modes"
 
@@ -78,7 +80,7 @@ def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
                 mend = "nothing, if the ground state is meant"
                 return [_finding(text, "note", "excited-state-left-out", at, what, mend)]
     if chosen.tasks.runs or chosen.analysis is not None:
-        return []
+        return _conformers(text, chosen)
     others = [one for one in chosen.tasks.real if not chosen.tasks.shapes[one].same(chosen.shape)]
     if not others:
         return []
@@ -86,6 +88,18 @@ def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
     mend = "give a file with one geometry where another one is meant"
     code = "last-of-several-structures"
     return [_finding(text, "note", code, others[0].start, what, mend)]
+
+
+def _conformers(text: Text, chosen: Chosen) -> list[Finding]:
+    """Return a finding where an optimisation led to another structure of the same atoms."""
+    for run in chosen.tasks.runs:
+        other = chosen.tasks.shapes[run.last]
+        if run.converged and jobs.furthest_apart(other, chosen.shape) > _OTHER_ANGSTROM:
+            what = "an optimisation of another structure of these atoms stands in this file"
+            mend = "give each structure a file of its own"
+            code = "last-of-several-structures"
+            return [_finding(text, "note", code, run.at, what, mend)]
+    return []
 
 
 def _rotations(text: Text, analysis: Text) -> list[Finding]:

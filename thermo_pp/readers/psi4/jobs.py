@@ -120,6 +120,11 @@ def _distances(geometry: Geometry) -> FloatArray:
     return np.asarray(np.linalg.norm(x[:, None, :] - x[None, :, :], axis=-1))
 
 
+def furthest_apart(one: Geometry, other: Geometry) -> float:
+    """Return by how much a distance differs at most between two geometries of the same atoms, in angstrom."""
+    return float(np.max(np.abs(_distances(one) - _distances(other))))
+
+
 def check_repulsion(part: Text, geometry: Geometry) -> None:
     """Check the geometry against the nuclear repulsion energy that is printed with it.
 
