@@ -28,12 +28,14 @@ ANALYTIC = b"Analytic Hessian"
 _NUMERICAL = b"Numerical Gradients Module"
 CORRELATED = frozenset((MP2, RIMP2, TCE, _NUMERICAL))
 """Coupled clusters without a heading of their own are optimised by numerical gradients."""
+_CHARGES_FIT = b"Electrostatic Potential Fit Module"
+"""A task of its own, which computes no energy."""
 _GRADIENTS = (b"DFT Gradient Module", b"Gradients Module", _NUMERICAL)
 LEVEL = CORRELATED | {SCF, DFT}
 _READ = {
     *(_FREQUENCIES, _OPTIMISATION, *_GRADIENTS, SCF, DFT, MP2, RIMP2, TCE, ANALYTIC),
     *(b"Finite-difference Hessian", b"CPHF Module", b"Property Module"),
-    b"Electrostatic Potential Fit Module",
+    _CHARGES_FIT,
 }
 _TOTALS = (b"Total SCF energy =", b"Total DFT energy =")
 _GROUND_STATE_STANDS = b"TDDFT Module"
@@ -118,7 +120,7 @@ def tasks(text: Text) -> list[Task]:
             "the program ended, but no task was run before",
             mend="check the input file: the program may have stopped reading it",
         )
-    return found
+    return [task for task in found if task.names != {_CHARGES_FIT}] or found
 
 
 def _task(text: Text, start: int, stop: int, headings: tuple[tuple[int, bytes], ...]) -> Task:
