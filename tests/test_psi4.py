@@ -350,7 +350,7 @@ def test_unconverged_optimisation(ending: str) -> None:
         (b"energy('mp2')", b"energy('mp2/cc-pv[tq]z')", "but no extrapolated energy is in the"),
         (b"==> DF-MP2 Energies <==", b"==> DF-MP9 Energies <==", "but no MP2 energy is in the"),
         (b"==> DF-MP2 En", b"==> N-Body <==\n==> DF-MP2 En", "a job over fragments"),
-        (b"==> DF-MP2 En", b"@IRC  **** Point  0 on\n==> DF-MP2 En", "a reaction path (IRC)"),
+        (b"==> DF-MP2 En", b"IRC data object created\n==> DF-MP2 En", "a reaction path (IRC)"),
         (b"\t Total Energy  ", b"  * BCCD total energy = -76.9\n\t Total Energy  ", "'BCCD'"),
     ],
 )

@@ -25,7 +25,16 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
-from thermo_pp.readers.nwchem import geometry, gradients, joined, levels, states, tasks, vibrations
+from thermo_pp.readers.nwchem import (
+    energies,
+    geometry,
+    gradients,
+    joined,
+    levels,
+    states,
+    tasks,
+    vibrations,
+)
 from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
 from thermo_pp.readers.nwchem.states import State
@@ -44,6 +53,7 @@ _TITLE = b"Northwest Computational Chemistry Package (NWChem)"
 _BANNER = re.compile(rb"[ \t]+" + re.escape(_TITLE) + rb" (\S+)\r?\n[ \t]+-{20}")
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
+_FIRST_STEP = b"Step   0"
 _FROZEN = re.compile(rb"Number of frozen variables = +[1-9]")
 _SINGLE = ("energy", "gradient")
 _COUNTERPOISE = b"BSSE Module - Counter Poise Approach"
@@ -80,7 +90,7 @@ def read(source: Source) -> Calculation:
     analysed = [task for task in all_tasks if task.kind == "frequencies"]
     main = analysed[-1] if analysed else all_tasks[-1]
     tasks.check_known(text, main)
-    _check_alone(text)
+    _check_alone(text, all_tasks)
     blocks = Blocks(text)
     _check_no_modes(text, main.end if analysed else 0)
     modes: Vibrations | None = None
@@ -172,22 +182,27 @@ def read(source: Source) -> Calculation:
     )
 
 
-def _check_alone(text: Text) -> None:
-    """Refuse energies that are not those of the one molecule of the geometry."""
-    at = text.find(_COUNTERPOISE)
-    if at >= 0:
-        raise text.error(
-            at,
-            "a counterpoise task over fragments of the molecule, whose energies are not read",
-            mend="give single calculations, one of each fragment, with ghost atoms",
-        )
-    charge = _POINT_CHARGE.search(text.data)
-    if charge is not None:
-        raise text.error(
-            charge.start() + 1,
-            "point charges around the molecule, which are in its energy",
-            mend="point charges are not read; give a calculation of the molecule alone",
-        )
+def _check_alone(text: Text, all_tasks: list[Task]) -> None:
+    """Refuse energies that are not those of the one molecule of the geometry.
+
+    What tells it stands before the heading of a task's first module.
+    """
+    for task in all_tasks:
+        first = task.headings[0][0]
+        at = text.data.find(_COUNTERPOISE, task.start, first)
+        if at >= 0:
+            raise text.error(
+                at,
+                "a counterpoise task over fragments of the molecule, whose energies are not read",
+                mend="give single calculations, one of each fragment, with ghost atoms",
+            )
+        charge = _POINT_CHARGE.search(text.data, task.start, first)
+        if charge is not None:
+            raise text.error(
+                charge.start() + 1,
+                "point charges around the molecule, which are in its energy",
+                mend="point charges are not read; give a calculation of the molecule alone",
+            )
 
 
 def _check_no_modes(text: Text, start: int) -> None:
@@ -226,7 +241,8 @@ def _outcome(text: Text, run: Task) -> tuple[bool, int]:
 
 
 def _held(text: Text, run: Task) -> list[Doubt]:
-    held = _FROZEN.search(text.data, run.start, run.end)
+    first = text.data.find(_FIRST_STEP, run.start, run.end)
+    held = _FROZEN.search(text.data, run.start, first if first >= 0 else run.end)
     if held is None:
         return []
     return [
@@ -322,8 +338,8 @@ def _same_printed_level(text: Text, run: Task, own: State) -> bool:
     """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
     if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
-    dissolved = text.data.find(levels.CONTINUUM, run.start, run.end) >= 0
-    if dissolved != (own.level.solvent != "none"):
+    last = next(energies.solutions(text, run, backwards=True))
+    if levels.dissolved(text, last) != (own.level.solvent != "none"):
         return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)

@@ -70,8 +70,13 @@ _TOTALS = (
 _ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
+_ALGORITHM = b"==> Algorithm <=="
+_CHARGES = b"=> External Potential Field:"
 _HELD = (b"MOM enabled.", b" DIIS/MOM", b" MOM\n")
+_FREE = b"MOM disabled."
 _FRACTIONAL = b"Fractional occupation enabled."
+_SETTINGS_BYTES = 1000
+"""The settings of an SCF below their heading."""
 _INVENTED = "ANONYMOUS"
 _FITTING = "AUX)"
 _BASIS_BYTES = 120
@@ -174,7 +179,23 @@ def unconverged(part: Text) -> int | None:
 
 def held(part: Text) -> int | None:
     """Return where the evaluation `part` holds its occupations to those of a start, None if nowhere."""
-    places = [at for mark in _HELD if (at := part.find(mark)) >= 0]
+    settings = max(part.find(_ALGORITHM), part.start)
+    if part.data.find(_FREE, settings, settings + _SETTINGS_BYTES) >= 0:
+        return None
+    return _in_scf(part, *_HELD)
+
+
+def charged(part: Text) -> int | None:
+    """Return where the evaluation `part` lists charges or fields around the molecule, None if nowhere."""
+    return _in_scf(part, _CHARGES)
+
+
+def _in_scf(part: Text, *marks: bytes) -> int | None:
+    """Return where one of the marks stands between the heading of the SCF and its energy, None if nowhere."""
+    start = max(part.find(_ALGORITHM), part.start)
+    end = part.find(b" Final Energy:", start)
+    end = part.end if end < 0 else end
+    places = [at for mark in marks if (at := part.data.find(mark, start, end)) >= 0]
     return min(places, default=None)
 
 
@@ -234,7 +255,8 @@ def _scf_energy(part: Text) -> Energy:
             "the SCF did not converge, so there is no energy",
             mend="rerun with more iterations or another starting guess",
         )
-    fractional = part.find(_FRACTIONAL)
+    settings = max(part.find(_ALGORITHM), part.start)
+    fractional = part.data.find(_FRACTIONAL, settings, settings + _SETTINGS_BYTES)
     if fractional >= 0:
         raise part.error(
             fractional,
