@@ -179,24 +179,21 @@ def unconverged(part: Text) -> int | None:
 
 def held(part: Text) -> int | None:
     """Return where the evaluation `part` holds its occupations to those of a start, None if nowhere."""
-    settings = max(part.find(_ALGORITHM), part.start)
+    end = part.last(b" Final Energy:")
+    settings = max(part.last(_ALGORITHM, end if end >= 0 else None), part.start)
     if part.data.find(_FREE, settings, settings + _SETTINGS_BYTES) >= 0:
         return None
-    return _in_scf(part, *_HELD)
+    end = end if end >= 0 else part.end
+    places = [at for mark in _HELD if (at := part.data.find(mark, settings, end)) >= 0]
+    return min(places, default=None)
 
 
 def charged(part: Text) -> int | None:
     """Return where the evaluation `part` lists charges or fields around the molecule, None if nowhere."""
-    return _in_scf(part, _CHARGES)
-
-
-def _in_scf(part: Text, *marks: bytes) -> int | None:
-    """Return where one of the marks stands between the heading of the SCF and its energy, None if nowhere."""
     start = max(part.find(_ALGORITHM), part.start)
     end = part.find(b" Final Energy:", start)
-    end = part.end if end < 0 else end
-    places = [at for mark in marks if (at := part.data.find(mark, start, end)) >= 0]
-    return min(places, default=None)
+    at = part.data.find(_CHARGES, start, end if end >= 0 else part.end)
+    return at if at >= 0 else None
 
 
 def is_printed(text: Text, label: str) -> bool:
