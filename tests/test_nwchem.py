@@ -283,15 +283,19 @@ def test_ghost_atoms_are_left_out_and_said_so() -> None:
 def test_nothing_else_is_doubted() -> None:
     told = {
         "formaldehyde_hf_b3lyp_mp2_tasks",
+        "hydrogen_gas_optimize_cosmo_freq",
         "methanol_hf_freq_after_unconverged_optimize",
         "methanol_hf_optimize_unconverged",
         "methanol_hf_optimize_unconverged_ignore",
         "two_molecules_hf",
         "water_b3lyp_opt_freq_then_energy",
         "water_b3lyp_optimize_and_hf_freq_mixed",
+        "water_gas_freq_cosmo_energy",
         "water_ghost_atom_hf_energy",
+        "water_held_bond_optimize",
         "water_hf_freq_mass_list",
         "water_hf_opt_freq_ccsdt_energy",
+        "water_two_geometries_energy",
     }
     assert {path.stem for path in GOOD if calculation(path).findings} == told
 
@@ -726,3 +730,54 @@ def test_rows() -> None:
         values, end = Text(Source("a.out", data)).rows(0, [2, 2], "numbers")
         assert values == [1.0, 2.0, 3.0, 4.0]
         assert data[end:].strip() == b"x"
+
+
+@pytest.mark.parametrize(
+    ("name", "code", "line"),
+    [
+        ("water_held_bond_optimize", "not-stationary", 226),
+        ("water_two_geometries_energy", "last-of-several-structures", 104),
+    ],
+)
+def test_what_the_geometry_is_no_more(name: str, code: str, line: int) -> None:
+    """Coordinates held in an optimisation, and single points of other geometries."""
+    (found,) = calculation(good(name)).findings
+    assert (found.code, found.line) == (code, line)
+
+
+def test_the_words_for_two_levels_tell_them_apart() -> None:
+    (found,) = calculation(good("water_gas_freq_cosmo_energy")).findings
+    assert found.code == "energy-of-another-task"
+    assert "HF/3-21g, COSMO(h2o, dielectric 78.4), the modes are HF/3-21g:" in found.what
+
+
+def test_scaled_second_order_energy_is_checked_against_its_pairs() -> None:
+    path = good("water_sos_mp2_energy")
+    factor = b"Opposite spin scaling fact.          1."
+    source = changed(path, factor + b"3", factor + b"2")
+    with pytest.raises(ReadError, match="is not the sum of its scaled parts") as caught:
+        nwchem.read(source)
+    assert caught.value.where == f"{path.name}:563"
+
+
+def test_part_of_a_functional_is_refused() -> None:
+    """A lost line of a functional that is printed by its parts leaves another functional."""
+    path = good("water_bp86_energy")
+    lost = b"                Perdew 1986 Correlation Functional  1.000 non-local\n"
+    with pytest.raises(ReadError, match="a part of the functional BP86, without the rest of it"):
+        nwchem.read(changed(path, lost, b""))
+
+
+def test_a_continuum_of_the_frequencies_alone_is_another_level() -> None:
+    (found,) = calculation(good("hydrogen_gas_optimize_cosmo_freq")).findings
+    assert found.code == "frequencies-of-another-level"
+    assert "with HF/sto-3g, the frequencies are HF/sto-3g, COSMO(h2o" in found.what
+
+
+def test_a_basis_set_by_element_needs_a_row_for_each() -> None:
+    source = open_source(good("water_custom_basis_energy"))
+    lines = source.data.split(b"\n")
+    rows = [i for i, line in enumerate(lines) if line.startswith(b" O ") and b"cc-pvdz" in line]
+    assert rows
+    damaged = b"\n".join(line for i, line in enumerate(lines) if i not in rows)
+    assert nwchem.read(Source("damaged.out", damaged)).basis is None

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import random
 import re
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -14,6 +15,8 @@ from fixture_files import FIXTURES, expected, file_id, files
 from thermo_pp.errors import ReadError
 from thermo_pp.formulas import partition, vibration
 from thermo_pp.readers import psi4, read_source
+from thermo_pp.readers.psi4 import jobs
+from thermo_pp.readers.text import Text
 from thermo_pp.records import Calculation
 from thermo_pp.sources import Source, open_source
 
@@ -347,7 +350,8 @@ def test_unconverged_optimisation(ending: str) -> None:
         (b"energy('mp2')", b"energy('mp2/cc-pv[tq]z')", "but no extrapolated energy is in the"),
         (b"==> DF-MP2 Energies <==", b"==> DF-MP9 Energies <==", "but no MP2 energy is in the"),
         (b"==> DF-MP2 En", b"==> N-Body <==\n==> DF-MP2 En", "a job over fragments"),
-        (b"\t Total Energy  ", b"  * QCISD total energy = -76.9\n\t Total Energy  ", "'QCISD'"),
+        (b"==> DF-MP2 En", b"IRC data object created\n==> DF-MP2 En", "a reaction path (IRC)"),
+        (b"\t Total Energy  ", b"  * BCCD total energy = -76.9\n\t Total Energy  ", "'BCCD'"),
     ],
 )
 def test_what_was_asked_for_must_be_there_and_known(old: bytes, new: bytes, message: str) -> None:
@@ -553,3 +557,40 @@ def test_psi4_1_7() -> None:
         2 * 38866.987, abs=2e-3
     )  # printed, line 42181
     assert ring.printed["entropy"].text == "385.266"
+
+
+def test_frozen_virtual_orbitals_are_told() -> None:
+    calc = calculation(BY_NAME["water_ccsd_frozen_virtuals_energy"])
+    assert calc.frozen_core == "frozen, 2 virtual orbitals too"
+
+
+def test_second_order_energy_on_the_way_to_optimised_orbitals_is_the_canonical_one() -> None:
+    energies = calculation(BY_NAME["oh_uhf_df_omp2_energy"]).method_energies
+    assert energies["MP2"].value_hartree == pytest.approx(-75.05441953047676, abs=1e-12, rel=0.0)
+
+
+@pytest.mark.parametrize(
+    ("name", "code", "line"),
+    [
+        ("water_mom_energies", "excited-state-left-out", 295),
+        ("water_three_geometries_energy", "last-of-several-structures", 79),
+        ("hydrogen_peroxide_two_structures", "last-of-several-structures", 1914),
+        ("water_mp2_freq_fd_energies_far", "not-stationary", 2650),
+        ("hydrogen_peroxide_fixed_dihedral", "not-stationary", 1886),
+    ],
+)
+def test_what_is_doubtful(name: str, code: str, line: int) -> None:
+    (found,) = calculation(BY_NAME[name]).findings
+    assert found.code == code
+    assert found.line == line
+
+
+def test_an_energy_with_ghosts_is_no_better_energy_of_the_molecule() -> None:
+    """MP2 of the molecule with ghost atoms, then HF of the same geometry without: HF it is."""
+    ghost = BY_NAME["water_ghost_atom_hf_energy"].read_text()
+    atoms = jobs.geometry(
+        Text(Source("x.out", ghost.encode())), ghost.index("    Geometry (in") + 4
+    )
+    assert atoms.ghosts
+    assert not atoms.same(replace(atoms, ghosts=0))
+    assert atoms.same(replace(atoms, at=0))

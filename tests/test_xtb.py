@@ -304,3 +304,25 @@ def test_divinylbenzene_of_xtb_6_6_1() -> None:
     companion = calculation(SHARED / row["path"].replace("dvb_ir.out", "g98.out"))
     assert companion.wavenumbers_cm is not None
     assert companion.wavenumbers_cm == pytest.approx(calc.wavenumbers_cm, abs=0.006, rel=0.0)
+
+
+@pytest.mark.parametrize(("oxygen", "hydrogen"), [("8", "1"), ("O1", "D"), ("o", "T")])
+def test_elements_of_a_coordinate_file(tmp_path: Path, oxygen: str, hydrogen: str) -> None:
+    """By number, and the names of hydrogen's isotopes, which xtb takes for hydrogen."""
+    folder = JOBS / "water_triplet"
+    geometry = (folder / "water.xyz").read_text()
+    written = re.sub(r"(?m)^O ", f"{oxygen} ", re.sub(r"(?m)^H ", f"{hydrogen} ", geometry))
+    assert written != geometry
+    (tmp_path / "water.xyz").write_text(written)
+    (tmp_path / "job.out").write_bytes((folder / "job.out").read_bytes())
+    assert calculation(tmp_path / "job.out").numbers.tolist() == [8, 1, 1]
+
+
+@pytest.mark.parametrize("word", ["0", "119", "8888", "Xx"])
+def test_no_element_in_a_coordinate_file(tmp_path: Path, word: str) -> None:
+    folder = JOBS / "water_triplet"
+    geometry = (folder / "water.xyz").read_text()
+    (tmp_path / "water.xyz").write_text(re.sub(r"(?m)^O ", f"{word} ", geometry))
+    (tmp_path / "job.out").write_bytes((folder / "job.out").read_bytes())
+    with pytest.raises(ReadError, match="the element and position of atom 1"):
+        calculation(tmp_path / "job.out")

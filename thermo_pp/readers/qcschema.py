@@ -39,6 +39,8 @@ TOTALS = {
     "CCSD(T)": "ccsd_prt_pr_total_energy",
 }
 """Which property is the total energy of a method; it must agree with `return_energy`."""
+EXCITED = ("EOM-", "SF-", "ADC", "TD-", "TDSCF", "TDDFT", "LR-")
+"""How the names of methods for excited states begin."""
 
 _SNIFF = re.compile(rb'"schema_name"\s*:\s*"qc_?schema')
 _MEND = "write the result again with the program that made it, as JSON of QCSchema version 1 or 2"
@@ -79,6 +81,12 @@ def read(source: Source) -> Calculation:
     numbers, positions = _geometry(document)
     _check_repulsion(document, numbers, positions)
     masses, origin = _masses(document, numbers)
+    if method.startswith(EXCITED):
+        raise document.error(
+            (*specification, "model", "method"),
+            f"{method}: the energy of an excited state",
+            mend="give the result of the ground state",
+        )
     energy, energy_keys = _energy(document, driver, method)
     modes = hessian = None
     if driver == "hessian":

@@ -135,6 +135,12 @@ def read(source: Source) -> Calculation:
     keywords, keywords_at = aux.quoted("KEYWORDS")
     keys = job.words(keywords)
     job.check(text, keywords_at, keys)
+    translation = aux.find("INITIAL_TRANS_VECTS")
+    if translation is not None:
+        raise job.periodic(text, translation.start())
+    ends = text.all(b" ATOM_X_OPT:")
+    if len(ends) > 1:
+        raise job.path(text, ends[1])
     method, method_at = aux.quoted("METHOD")
     version, version_at = aux.quoted("MOPAC_VERSION")
     numbers = _elements(aux)

@@ -7,7 +7,7 @@ import re
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.errors import Finding
+from thermo_pp.errors import Finding, ReadError
 from thermo_pp.formulas.partition import rotor_kind
 from thermo_pp.formulas.superposition import superpose
 from thermo_pp.readers.text import Text
@@ -24,7 +24,7 @@ SPINS = {
     "SINGLET": 1, "DOUBLET": 2, "TRIPLET": 3, "QUARTET": 4, "QUINTET": 5, "SEXTET": 6, "SEPTET": 7,
     "OCTET": 8, "NONET": 9,
 }  # fmt: skip
-_STATES = re.compile(r"^(EXCITED|ROOT=|C\.I\.|CIS|MECI|OPEN\(|MICROS)")
+_STATES = re.compile(r"^(EXCITED|ROOT=|C\.I\.|CIS|MECI|OPEN\(|MICROS|BIRADICAL)")
 _PATHS = re.compile(r"^(IRC|DRC|STEP|POINT|SADDLE|LOCATE-TS|PATH)")
 
 
@@ -48,6 +48,30 @@ def check(text: Text, at: int, keys: list[str]) -> None:
                 f"{key}: a path, whose last energy is of no geometry that is read",
                 mend="give a single point, an optimisation or a FORCE job of the geometry you want",
             )
+        if key == "FORCETS":
+            raise text.error(
+                at,
+                f"{key}: the vibrations of some of the atoms only",
+                mend="give a FORCE job of the whole molecule",
+            )
+
+
+def periodic(text: Text, at: int) -> ReadError:
+    """Return the error that the system is no molecule."""
+    return text.error(
+        at,
+        "translation vectors (Tv): a polymer, a layer or a solid, which is no molecule",
+        mend="give a calculation of a molecule",
+    )
+
+
+def path(text: Text, at: int) -> ReadError:
+    """Return the error that the input drives a coordinate along a path."""
+    return text.error(
+        at,
+        "a reaction coordinate: a path, whose last energy is of no geometry that is read",
+        mend="give a single point, an optimisation or a FORCE job of the geometry you want",
+    )
 
 
 def charge(keys: list[str]) -> int:

@@ -64,6 +64,8 @@ _FIELD = re.compile(rb"^[ \t]+SCF FIELD WAS ACHIEVED", re.MULTILINE)
 _DONE = (b"OPTIMISED USING", b"OPTIMIZED USING", b"WAS SATISFIED", b"TEST SATISFIED")
 _SAME_ANGSTROM = 4e-4
 """Two prints of one distance: four decimals of each coordinate."""
+_TRANSLATION = re.compile(rb"^[ \t]+\d+[ \t]+Tv[ \t]+-?\d+\.\d+", re.MULTILINE)
+_COORDINATE = re.compile(rb"^[ \t]+(?:FOR )?REACTION COORDINATE[ \t]+=", re.MULTILINE)
 _LARGE_GRADIENT = b"GRADIENT IS VERY LARGE"
 
 
@@ -88,6 +90,10 @@ def read(source: Source) -> Calculation:
 def _calculation(source: Source, whole: Text, part: Text, head: re.Match[bytes]) -> Calculation:
     keys, keys_at = _keywords(part)
     job.check(part, keys_at, keys)
+    for mark, refusal in ((_TRANSLATION, job.periodic), (_COORDINATE, job.path)):
+        found_at = mark.search(part.data, part.start, part.end)
+        if found_at is not None:
+            raise refusal(part, found_at.start())
     optimised, optimised_at = _outcome(part)
     numbers, positions, shape_at = _geometry(part)
     masses, masses_at = _masses(part, numbers)

@@ -25,7 +25,16 @@ from numpy.typing import NDArray
 from thermo_pp.errors import Finding
 from thermo_pp.readers import joined_hessian
 from thermo_pp.readers.doubts import Doubt, as_findings, doubt_places
-from thermo_pp.readers.nwchem import geometry, gradients, joined, levels, states, tasks, vibrations
+from thermo_pp.readers.nwchem import (
+    energies,
+    geometry,
+    gradients,
+    joined,
+    levels,
+    states,
+    tasks,
+    vibrations,
+)
 from thermo_pp.readers.nwchem.constants import PRINTED_CONSTANTS
 from thermo_pp.readers.nwchem.geometry import Blocks, Geometry
 from thermo_pp.readers.nwchem.states import State
@@ -44,6 +53,11 @@ _TITLE = b"Northwest Computational Chemistry Package (NWChem)"
 _BANNER = re.compile(rb"[ \t]+" + re.escape(_TITLE) + rb" (\S+)\r?\n[ \t]+-{20}")
 _CONVERGED = b"Optimization converged"
 _UNCONVERGED = b"Failed to converge in maximum number"
+_FIRST_STEP = b"Step   0"
+_FROZEN = re.compile(rb"Number of frozen variables = +[1-9]")
+_SINGLE = ("energy", "gradient")
+_COUNTERPOISE = b"BSSE Module - Counter Poise Approach"
+_POINT_CHARGE = re.compile(rb"\n *\d+ +Bq( +-?\d+\.\d+){3} +charge +-?\d*\.?0*[1-9]")
 
 
 def sniff(head: bytes) -> bool:
@@ -76,6 +90,7 @@ def read(source: Source) -> Calculation:
     analysed = [task for task in all_tasks if task.kind == "frequencies"]
     main = analysed[-1] if analysed else all_tasks[-1]
     tasks.check_known(text, main)
+    _check_alone(text, all_tasks)
     blocks = Blocks(text)
     _check_no_modes(text, main.end if analysed else 0)
     modes: Vibrations | None = None
@@ -101,8 +116,7 @@ def read(source: Source) -> Calculation:
     optimised = None
     if run is not None:
         optimised, at["optimised"] = _outcome(text, run)
-        if not optimised:
-            doubts.append(_not_converged(at["optimised"]))
+        doubts += _held(text, run) if optimised else [_not_converged(at["optimised"])]
     hessian = None if modes is None else modes.hessian_hartree_bohr2
     extra: tuple[Finding, ...] = ()
     beside = None if modes is None else joined.beside(text)
@@ -117,7 +131,9 @@ def read(source: Source) -> Calculation:
         at |= modes.at
         doubts += _modes_doubts(text, blocks, modes, masses, taken, own, run if optimised else None)
     doubts += _ghosts(shape)
-    doubts += _left_out(blocks, [task for task in all_tasks if task not in (main, run)], shape)
+    doubts += _left_out(
+        blocks, main, [task for task in all_tasks if task not in (main, run)], shape
+    )
     banner = _banner(text.data)
     if banner is not None:
         at["program_version"] = banner.start(1)
@@ -166,6 +182,29 @@ def read(source: Source) -> Calculation:
     )
 
 
+def _check_alone(text: Text, all_tasks: list[Task]) -> None:
+    """Refuse energies that are not those of the one molecule of the geometry.
+
+    What tells it stands before the heading of a task's first module.
+    """
+    for task in all_tasks:
+        first = task.headings[0][0]
+        at = text.data.find(_COUNTERPOISE, task.start, first)
+        if at >= 0:
+            raise text.error(
+                at,
+                "a counterpoise task over fragments of the molecule, whose energies are not read",
+                mend="give single calculations, one of each fragment, with ghost atoms",
+            )
+        charge = _POINT_CHARGE.search(text.data, task.start, first)
+        if charge is not None:
+            raise text.error(
+                charge.start() + 1,
+                "point charges around the molecule, which are in its energy",
+                mend="point charges are not read; give a calculation of the molecule alone",
+            )
+
+
 def _check_no_modes(text: Text, start: int) -> None:
     """Refuse modes from `start` on, outside any frequency task: its heading is lost."""
     at = text.find(b"NORMAL MODE EIGENVECTORS IN CARTESIAN COORDINATES", start)
@@ -199,6 +238,22 @@ def _outcome(text: Text, run: Task) -> tuple[bool, int]:
     if at < 0 and run.failed is None:
         raise text.error(run.end, "this optimisation does not say how it ended", mend=CUT_SHORT)
     return False, run.failed_at if at < 0 else at
+
+
+def _held(text: Text, run: Task) -> list[Doubt]:
+    first = text.data.find(_FIRST_STEP, run.start, run.end)
+    held = _FROZEN.search(text.data, run.start, first if first >= 0 else run.end)
+    if held is None:
+        return []
+    return [
+        Doubt(
+            "not-stationary",
+            "warning",
+            held.start(),
+            "the geometry was optimised with coordinates held: no stationary point",
+            "nothing, for a point of a scan; else optimise without constraints",
+        )
+    ]
 
 
 def _not_converged(at: int) -> Doubt:
@@ -283,12 +338,18 @@ def _same_printed_level(text: Text, run: Task, own: State) -> bool:
     """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
     if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
+    last = next(energies.solutions(text, run, backwards=True))
+    if levels.dissolved(text, last) != (own.level.solvent != "none"):
+        return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)
 
 
 def _words(state: State) -> str:
-    return "/".join(part for part in (state.level.method, state.level.basis) if part)
+    """Return method, basis and what is unusual about the level, for a finding."""
+    level = state.level
+    more = [part for part in (level.dispersion, level.solvent) if part not in (None, "none")]
+    return ", ".join(["/".join(part for part in (level.method, level.basis) if part), *more])
 
 
 def _ghosts(shape: Geometry) -> list[Doubt]:
@@ -305,8 +366,8 @@ def _ghosts(shape: Geometry) -> list[Doubt]:
     ]
 
 
-def _left_out(blocks: Blocks, others: list[Task], shape: Geometry) -> list[Doubt]:
-    """Return a finding where another task is of other atoms."""
+def _left_out(blocks: Blocks, main: Task, others: list[Task], shape: Geometry) -> list[Doubt]:
+    """Return a finding where another task is of other atoms, or a single point of another geometry."""
     for task in others:
         block = next(blocks.before(task.end), None)
         if block is not None and not block.same_atoms(shape):
@@ -317,6 +378,17 @@ def _left_out(blocks: Blocks, others: list[Task], shape: Geometry) -> list[Doubt
                     block.at,
                     "a task of another molecule stands in this file; it is left out",
                     "give each molecule a file of its own",
+                )
+            ]
+        single = task.kind in _SINGLE and main.kind in _SINGLE
+        if single and block is not None and not block.same(shape):
+            return [
+                Doubt(
+                    "last-of-several-structures",
+                    "note",
+                    block.at,
+                    "another geometry of the same atoms stands in this file; the last one is taken",
+                    "give a file with one geometry where another one is meant",
                 )
             ]
     return []

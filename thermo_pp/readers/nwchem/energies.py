@@ -59,6 +59,14 @@ _MP2_TOTAL = b"Total MP2 energy  "
 _SCS_TOTAL = b"Total SCS-MP2 energy"
 _SCS_ONLY = b"SCS Correlation energy"
 """Stands where the scaled energy is the module's only one."""
+_SCS_TAKEN = b"SCS-MP2               = T"
+"""Stands where the input asks for scaled energies and gradients; the scaled total itself is always printed."""
+_USUAL = (1.0 / 3.0, 6.0 / 5.0)
+_SCS_PARTS = re.compile(
+    rb"Same spin pairs +(\S+)\s+Same spin scaling factor +(\S+)\s+"
+    rb"Opposite spin pairs +(\S+)\s+Opposite spin scaling fact\. +(\S+)\s+SCS-MP2 correlation energy"
+)
+_CONFIGURATIONS = b"Configuration Driven CI Program"
 _CC_PROGRAM = b"the segmented parallel ccsd program"
 _CC_LEVEL = b"level of theory "
 _CC_TOTALS = {
@@ -68,6 +76,7 @@ _CC_TOTALS = {
 }
 _TCE_MARK = b" total energy / hartree"
 _TCE_TOTAL = re.compile(rb"\n (\S+) total energy / hartree +=")
+_TCE_PARTS = re.compile(rb"\n (\S+) correlation energy / hartree +=")
 _TCE_CORRECTION = re.compile(rb"Perturbative correction : (\S+)")
 _TCE_NAMES = {"MBPT(2)": "MP2", "MBPT(3)": "MP3", "MBPT(4)": "MP4"}
 _STEP = 1e-11
@@ -226,6 +235,13 @@ def energy(text: Text, task: Task, solution: Solution) -> Energy:
             mend="rerun with more iterations, another guess or a level shift",
         )
     start, end = solution.at, task.end
+    if solution.label == "DFT" and TCE in task.names:
+        at = next(at for at, name in task.headings if name == TCE)
+        raise text.error(
+            at,
+            "a correlated energy on orbitals of a density functional, which is not read",
+            mend="give a calculation on Hartree-Fock orbitals, or one of the functional alone",
+        )
     own = Energy(solution.label, solution.value_hartree, solution.at, solution, end)
     if ANALYTIC in task.names or (solution.label == "DFT" and MP2 not in task.names):
         return own
@@ -252,6 +268,9 @@ def energy(text: Text, task: Task, solution: Solution) -> Energy:
         return _second_order(text, solution, "MP2", end)
     if text.data.find(b" Direct MP2", behind, end) >= 0:
         raise _missing(text, solution, "MP2")
+    selected = text.data.find(_CONFIGURATIONS, behind, end)
+    if selected >= 0:
+        raise _unknown(text, selected, "selected CI")
     return own
 
 
@@ -264,6 +283,8 @@ def _double_hybrid(text: Text, solution: Solution, end: int) -> Energy:
 
 
 def _second_order(text: Text, solution: Solution, label: str, end: int) -> Energy:
+    if text.data.find(_SCS_TAKEN, solution.at, end) >= 0:
+        return _scaled(text, solution, f"SCS-{label}", end)
     at = text.data.find(_MP2_TOTAL, solution.at, end)
     mark = _MP2_TOTAL
     if at < 0 and text.data.find(_SCS_ONLY, solution.at, end) >= 0:
@@ -271,11 +292,55 @@ def _second_order(text: Text, solution: Solution, label: str, end: int) -> Energ
         mark, label = _SCS_TOTAL, f"SCS-{label}"
     if at < 0:
         raise _missing(text, solution, label)
+    factors = _factors(_SCS_PARTS.search(text.data, solution.at, end))
+    if factors is not None and not usual(factors):
+        raise text.error(
+            at,
+            f"factors of {factors[0]:g} and {factors[1]:g} for a scaled energy, but no word that it is "
+            f"the one asked for (looked for {_SCS_TAKEN.decode()!r})",
+            mend=CUT_SHORT,
+        )
     value = _value(text, at, mark, f"the {label} energy")
     part = text.data.rfind(b"orrelation energy", solution.at, at)
     parts = [_value(text, part, b"orrelation energy", "the correlation energy")]
     _check(text, at, value, solution, parts)
     return Energy(label, value, at, solution, end)
+
+
+def _scaled(text: Text, solution: Solution, label: str, end: int) -> Energy:
+    """Return the spin-component-scaled energy of a task that uses it, gradients and Hessians included."""
+    at = text.data.find(_SCS_TOTAL, solution.at, end)
+    if at < 0:
+        raise _missing(text, solution, label)
+    value = _value(text, at, _SCS_TOTAL, f"the {label} energy")
+    parts = _SCS_PARTS.search(text.data, solution.at, at)
+    if parts is None:
+        raise text.error(at, "no pairs and scaling factors before this energy", mend=CUT_SHORT)
+    same, same_factor, opposite, opposite_factor = map(_float, parts.groups())
+    total = solution.value_hartree + same * same_factor + opposite * opposite_factor
+    if not abs(total - value) <= _rounding(value, total):
+        raise text.error(
+            at,
+            f"the total energy {value:.9f} is not the sum of its scaled parts, {total:.9f}",
+            mend=CUT_SHORT,
+        )
+    return Energy(label, value, at, solution, end)
+
+
+def scaling(text: Text, found: Energy) -> tuple[float, float] | None:
+    """Return the factors of pairs of the same and of opposite spin of a scaled energy, None of any other."""
+    if not found.label.startswith("SCS-"):
+        return None
+    return _factors(_SCS_PARTS.search(text.data, found.solution.at, found.at))
+
+
+def _factors(parts: re.Match[bytes] | None) -> tuple[float, float] | None:
+    return None if parts is None else (_float(parts.group(2)), _float(parts.group(4)))
+
+
+def usual(factors: tuple[float, float]) -> bool:
+    """Tell whether these are the factors that the program takes unless the input says otherwise."""
+    return all(abs(one - known) < 1e-6 for one, known in zip(factors, _USUAL, strict=True))
 
 
 def _coupled(text: Text, solution: Solution, start: int, end: int) -> Energy:
@@ -303,6 +368,7 @@ def _coupled(text: Text, solution: Solution, start: int, end: int) -> Energy:
 def _contracted(text: Text, solution: Solution, end: int) -> Energy:
     """Return the energy of the tensor contraction engine: the last method, its (T) over its [T]."""
     found: list[Energy] = []
+    orders: list[float] = []
     for match in _TCE_TOTAL.finditer(text.data, solution.at, end):
         name = match.group(1).decode("utf-8", "replace")
         if name.endswith("[T]"):
@@ -315,8 +381,17 @@ def _contracted(text: Text, solution: Solution, end: int) -> Energy:
         part = text.data.rfind(mark, solution.at, match.start())
         if part >= 0:
             correlation = _value(text, part, mark, "the correlation energy")
-            _check(text, match.start(1), value, solution, [correlation])
+            if name.startswith("MBPT("):  # that of the order alone
+                orders.append(correlation)
+                _check(text, match.start(1), value, solution, orders)
+            else:
+                _check(text, match.start(1), value, solution, [correlation])
         found.append(Energy(label, value, match.start(1), solution, end))
+    printed = [
+        name for name in _TCE_PARTS.findall(text.data, solution.at, end) if b"[T]" not in name
+    ]
+    if found and printed and text.data.rfind(printed[-1] + _TCE_MARK, solution.at, end) < 0:
+        raise _missing(text, solution, printed[-1].decode("utf-8", "replace"))
     correction = _TCE_CORRECTION.search(text.data, solution.at, end)
     if not found or (correction and b"(T)" in correction.group(1) and "(T)" not in found[-1].label):
         raise _missing(text, solution, "tensor contraction engine's")

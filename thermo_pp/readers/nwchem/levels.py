@@ -5,32 +5,54 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.level import Level
-from thermo_pp.readers.nwchem.energies import CORRELATED, Energy
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, Solution, scaling, usual
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
 
-_NAMED = re.compile(r"(\S.*\S) Method XC (?:Potential|Functional)")
+_NAMED = re.compile(r"(\S.*\S) +Method XC (?:Potential|Functional)")
 _PART = re.compile(r"(\S.*\S) +(\d+\.\d+)(?: (?:local|non-local))?")
 _RANGE = re.compile(r"(Alpha|Beta|Gamma|Short-Range HF) *: *(\S+)")
+_EXACT = "Hartree-Fock (Exact) Exchange"
 _PBE_X = "PerdewBurkeErnzerhof Exchange Functional"
 _PBE_C = {"Perdew 1991 LDA Correlation Functional": 1.0}
 _PBE_C |= {"PerdewBurkeErnz. Correlation Functional": 1.0}
 _BECKE, _LYP = "Becke 1988 Exchange Functional", "Lee-Yang-Parr Correlation Functional"
 _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
-    ("HF", {"Hartree-Fock (Exact) Exchange": 1.0}),
+    ("HF", {_EXACT: 1.0}),
     (
         "SVWN5",
         {"Slater Exchange Functional": 1.0, "VWN V Correlation Functional": 1.0},
     ),
     ("BLYP", {_BECKE: 1.0, _LYP: 1.0}),
+    (
+        "BP86",
+        {
+            _BECKE: 1.0,
+            "Perdew 1981 Correlation Functional": 1.0,
+            "Perdew 1986 Correlation Functional": 1.0,
+        },
+    ),
+    (
+        "B3LYP",
+        {
+            _EXACT: 0.2,
+            "Slater Exchange Functional": 0.8,
+            _BECKE: 0.72,
+            _LYP: 0.81,
+            "VWN I RPA Correlation Functional": 0.19,
+        },
+    ),
     ("PBE", {_PBE_X: 1.0, **_PBE_C}),
-    ("PBE0", {"Hartree-Fock (Exact) Exchange": 0.25, _PBE_X: 0.75, **_PBE_C}),
+    ("PBE0", {_EXACT: 0.25, _PBE_X: 0.75, **_PBE_C}),
 )
 """Functionals that the program prints by their parts, too."""
 _SAME = {"PBE96": "PBE"}
 _BASIS_ROW = re.compile(r" ?(\S+) +(\S.*?) +(?:\d+ +\d+ +(\S+)|on all atoms) *")
+_CONTINUUM = b"COSMO energy ="
+"""Stands beside every energy in a continuum."""
 _SUMMARY = b'Summary of "ao basis"'
 _SCF_STATE = re.compile(
     rb"(closed|alpha) (?:shells  |electrons) = +(\d+)\s+(open|beta) +(?:shells  |electrons) +?= *(\d+)"
@@ -49,7 +71,7 @@ _FROZEN_VIRTUALS = re.compile(
 )
 _DIRECT = re.compile(rb"Active occupied range: +(\d+) -")
 _RESOLVED = re.compile(rb"Nr\. of occupied MOs correlated: +(\d+)")
-_OCCUPIED = re.compile(rb"Total Occ: +(\d+\.\d+)")
+_CONSTRAINED = b"CDFT multipliers:"
 _CORES = ((2, 0), (10, 1), (18, 5), (36, 9), (54, 18), (86, 27), (118, 43))
 """Up to which atomic number an atom has how many core orbitals."""
 
@@ -69,19 +91,24 @@ def level(text: Text, task: Task, energy: Energy, geometry: Geometry) -> LevelOf
     grid: str | None = None
     dispersion: str | None = "none"
     frozen: str | None = "none"
+    charge, multiplicity, electrons = _state(before, energy.solution.label, at)
+    alpha = None
+    if electrons is not None and multiplicity is not None:
+        alpha = (electrons + multiplicity - 1) // 2
     if energy.solution.label == "DFT":
         method = _functional(before, at)
+        if before.data.find(_CONSTRAINED, at["method"], energy.solution.at) >= 0:
+            method += " (CDFT)"  # held to a constraint: no ground state
         grid = _grid(before, at)
         dispersion = _dispersion(before, energy, at)
         if energy.at != energy.solution.at:
             method += " + MP2"
-            frozen = _frozen(text, energy, geometry, at)
+            frozen = _frozen(text, energy, geometry, alpha, at)
     else:
-        method = energy.label
+        method = energy.label + _factors(text, energy)
         if energy.rank >= CORRELATED:
-            frozen = _frozen(text, energy, geometry, at)
+            frozen = _frozen(text, energy, geometry, alpha, at)
     method = _relativistic(text, task, energy) + method
-    charge, multiplicity, electrons = _state(before, energy.solution.label, at)
     _check_electrons(text, geometry, charge, electrons, at)
     return LevelOfTask(
         method=method,
@@ -126,11 +153,29 @@ def _functional(before: Text, at: dict[str, int]) -> str:
     for name, known in _FUNCTIONALS:
         if parts == known:
             return name
+    firsts = {part.split()[0] for part in parts}
+    if len(parts) == 2 and len(firsts) == 1 and set(parts.values()) == {1.0}:
+        return firsts.pop().upper()  # exchange and correlation of one name
+    for name, known in _FUNCTIONALS:
+        if parts.items() < known.items():
+            raise before.error(
+                at["method"],
+                f"a part of the functional {name}, without the rest of it",
+                mend="the output is damaged here; rerun or re-copy it, or name the functional whole",
+            )
     text = " + ".join(f"{share:g} {part}" for part, share in parts.items())
     following = before.find(b"Grid Information", line)
     rest = before.data[line:following].decode("utf-8", "replace") if following >= 0 else ""
     ranges = ", ".join(f"{name} {value}" for name, value in _RANGE.findall(rest))
     return f"{text}; {ranges}" if ranges else text
+
+
+def _factors(text: Text, energy: Energy) -> str:
+    """Return what a scaled second-order energy is scaled by, empty where it is as usual or not scaled."""
+    factors = scaling(text, energy)
+    if factors is None or usual(factors):
+        return ""
+    return f" (same spin {factors[0]:g}, opposite spin {factors[1]:g})"
 
 
 def _relativistic(text: Text, task: Task, energy: Energy) -> str:
@@ -172,11 +217,16 @@ def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str | None:
     return "XDM" if exchange_hole >= 0 else None
 
 
+def dissolved(text: Text, solution: Solution) -> bool:
+    """Tell whether a solution is one in a continuum."""
+    return text.data.find(_CONTINUUM, solution.full, solution.full + 700) >= 0
+
+
 def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     full = energy.solution.full
-    if before.data.find(b"COSMO energy =", full, full + 700) < 0:
+    if before.data.find(_CONTINUUM, full, full + 700) < 0:
         return "none"
-    at["solvent"] = before.data.find(b"COSMO energy =", full)
+    at["solvent"] = before.data.find(_CONTINUUM, full)
     near = before.data[max(0, full - 1500) : full + 1500]
     model = "SMD" if b"COSMO-SMD solvation results" in near else "COSMO"
     mark = b"dielectric constant -eps-     ="
@@ -191,8 +241,13 @@ def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     return f"{model}({solvent}dielectric {dielectric:g})"
 
 
-def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) -> str | None:
-    """Return "none" or "frozen", with what is unusual about it; None where the file does not say."""
+def _frozen(
+    text: Text, energy: Energy, geometry: Geometry, alpha: int | None, at: dict[str, int]
+) -> str | None:
+    """Return "none" or "frozen", with what is unusual about it; None where the file does not say.
+
+    `alpha` is how many electrons of spin up there are, None where the file does not say.
+    """
     start, end = energy.solution.at, energy.end
     count: int | None = None
     for pattern in _FROZEN:
@@ -202,11 +257,14 @@ def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) 
     else:
         if match := _DIRECT.search(text.data, start, end):
             count, at["frozen_core"] = int(match.group(1)) - 1, match.start()
-        elif match := _RESOLVED.search(text.data, start, end):
-            occupied = _OCCUPIED.search(text.data, start, end)
-            if occupied is not None:
-                count = round(float(occupied.group(1)) / 2.0) - int(match.group(1))
-                at["frozen_core"] = match.start()
+        elif alpha is not None and (match := _RESOLVED.search(text.data, start, end)):
+            count, at["frozen_core"] = alpha - int(match.group(1)), match.start()
+            if count < 0:
+                raise text.error(
+                    match.start(),
+                    f"{match.group(1).decode()} orbitals are correlated, of {alpha} occupied ones",
+                    mend=CUT_SHORT,
+                )
     if count is None:
         return None
     virtuals = _FROZEN_VIRTUALS.search(text.data, start, end)
@@ -215,7 +273,10 @@ def _frozen(text: Text, energy: Energy, geometry: Geometry, at: dict[str, int]) 
         extra = f", {int(virtuals.group(1))} virtual orbitals too"
     if count == 0:
         return "none" + extra
-    cores = sum(next(n for last, n in _CORES if z <= last) for z in geometry.numbers)
+    cores = sum(
+        max(0, next(n for last, n in _CORES if z <= last) - replaced // 2)
+        for z, replaced in zip(geometry.numbers, replaced_cores(text, geometry), strict=True)
+    )
     return ("frozen" if count == cores else f"frozen: {count} orbitals") + extra
 
 
@@ -276,6 +337,15 @@ def _whole(before: Text, place: int, what: str) -> int:
     return int(value)
 
 
+def _covered(tags: set[str], geometry: Geometry) -> bool:
+    """Tell whether a table of basis sets by name of centre has a row for every atom."""
+    if "*" in tags:
+        return True
+    rows = {tag.lower() for tag in tags} | {element(tag, geometry) for tag in tags}
+    real = zip(geometry.tags, geometry.numbers, strict=True)
+    return all(tag.lower() in rows or SYMBOLS[z].lower() in rows for tag, z in real if z)
+
+
 def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
     """Return the library's name of the basis set, or the name by element; None where one has no name."""
     place = before.last(_SUMMARY)
@@ -294,7 +364,7 @@ def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
             return None
         polarised = polarised or row.group(3) is None or not set("dfghi").isdisjoint(row.group(3))
         names[row.group(1)] = row.group(2)
-    if not names or "user specified" in names.values():
+    if not names or "user specified" in names.values() or not _covered(set(names), geometry):
         return None
     at["basis"] = before.next_line(place, 4)
     real = {tag: name for tag, name in names.items() if tag[:2].lower() != "bq"}

@@ -28,13 +28,16 @@ ANALYTIC = b"Analytic Hessian"
 _NUMERICAL = b"Numerical Gradients Module"
 CORRELATED = frozenset((MP2, RIMP2, TCE, _NUMERICAL))
 """Coupled clusters without a heading of their own are optimised by numerical gradients."""
+_CHARGES_FIT = b"Electrostatic Potential Fit Module"
+"""A task of its own, which computes no energy."""
 _GRADIENTS = (b"DFT Gradient Module", b"Gradients Module", _NUMERICAL)
 LEVEL = CORRELATED | {SCF, DFT}
 _READ = {
     *(_FREQUENCIES, _OPTIMISATION, *_GRADIENTS, SCF, DFT, MP2, RIMP2, TCE, ANALYTIC),
     *(b"Finite-difference Hessian", b"CPHF Module", b"Property Module"),
-    b"Electrostatic Potential Fit Module",
+    _CHARGES_FIT,
 }
+_TOTALS = (b"Total SCF energy =", b"Total DFT energy =")
 _GROUND_STATE_STANDS = b"TDDFT Module"
 """The energy that this module's tasks print first is that of the ground state; of gradients that is not so."""
 
@@ -103,6 +106,11 @@ def tasks(text: Text) -> list[Task]:
         stop = headings[last][0] if last < len(headings) else len(text.data)
         if last > first + 1:
             found.append(_task(text, headings[first][0], stop, tuple(headings[first + 1 : last])))
+            continue
+        for mark in _TOTALS:
+            at = text.data.find(mark, headings[first][0], stop)
+            if at >= 0:
+                raise text.error(at, "an energy, but no heading of its module", mend=CUT_SHORT)
     if found and unconverged is not None:
         words = unconverged.group(1).decode("utf-8", "replace").strip()
         found[-1] = replace(found[-1], end=ended, failed=words, failed_at=ended)
@@ -112,7 +120,7 @@ def tasks(text: Text) -> list[Task]:
             "the program ended, but no task was run before",
             mend="check the input file: the program may have stopped reading it",
         )
-    return found
+    return [task for task in found if task.names != {_CHARGES_FIT}] or found
 
 
 def _task(text: Text, start: int, stop: int, headings: tuple[tuple[int, bytes], ...]) -> Task:

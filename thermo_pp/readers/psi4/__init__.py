@@ -127,6 +127,6 @@ def _kinds(chosen: Chosen) -> tuple[str, ...]:
     if chosen.analysis is not None:
         kinds.append("frequencies")
     if not kinds:
-        gradient = chosen.part.has(b"-Total Gradient:")
+        gradient = any(chosen.part.has(mark) for mark in (b"-Total Gradient:", b"-Total gradient:"))
         kinds.append("gradient" if gradient else "energy")
     return tuple(kinds)

@@ -13,6 +13,7 @@ from thermo_pp.readers.psi4.levels import Energy
 from thermo_pp.readers.psi4.vibrations import ANALYSIS
 from thermo_pp.readers.text import Text
 
+_PATH = b"IRC data object created"
 _FRAGMENTS = (b"N-Body Interaction Abacus", b"==> N-Body")
 _ENERGY_STEP = 1.1e-8
 """The last digit of the energy that the thermochemistry prints, hartree."""
@@ -56,7 +57,7 @@ class Chosen:
 
 
 def check_asked(text: Text, asked: tuple[Asked, ...]) -> None:
-    """Refuse fragment jobs, methods not known here, and what was asked for but is not there."""
+    """Refuse what is no energy of the molecule alone, methods not known here, and what is not there."""
     for mark in _FRAGMENTS:
         at = text.find(mark)
         if at >= 0:
@@ -106,13 +107,34 @@ def tasks(text: Text, echoes: list[tuple[int, int]]) -> Tasks:
 
 
 def choose(text: Text, tasks: Tasks) -> Chosen:
-    """Return what is taken of the tasks."""
+    """Return what is taken of the tasks; ReadError where that is not of the molecule alone, or a path."""
+    _check_path(text, tasks)
     analysis, base = _last_analysis(text, tasks)
     if analysis is not None:
         _check_bottom(analysis, levels.best_energy(text.part(base.start, base.end)))
     shape = tasks.shapes[base]
     part, energy = _best_energy(text, tasks, base)
+    charges = levels.charged(part)
+    if charges is not None:
+        raise text.error(
+            charges,
+            "charges or fields around the molecule, which are in its energy",
+            mend="they are not read; give a calculation of the molecule alone",
+        )
     return Chosen(tasks, analysis, base, shape, part, energy, _own_run(tasks, shape))
+
+
+def _check_path(text: Text, tasks: Tasks) -> None:
+    """Refuse a reaction path, which its optimiser announces after the first evaluation."""
+    first = tasks.real[0]
+    for one in {first, *(run.last for run in tasks.runs)}:
+        path = text.data.find(_PATH, one.start, one.end)
+        if path >= 0:
+            raise text.error(
+                path,
+                "a reaction path (IRC), whose last energy is of no stationary point",
+                mend="give a single point, an optimisation or frequencies of the geometry you want",
+            )
 
 
 def _last_analysis(text: Text, tasks: Tasks) -> tuple[Text | None, Evaluation]:
@@ -136,7 +158,8 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
     """Return the best energy at the geometry of `base` and the evaluation it is of.
 
     Of equally good energies the last one counts. An evaluation beside `base` whose SCF did not
-    converge is passed over; if `base` is one, that is the error.
+    converge is passed over; if `base` is one, that is the error. One that holds its occupations to
+    those of a start (MOM) is most often an excited state: an error where there is no other.
     """
     shape = tasks.shapes[base]
     found: list[tuple[Text, Energy]] = []
@@ -144,7 +167,14 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
         part = text.part(one.start, one.end)
         if one is base or (shape.same(tasks.shapes[one]) and levels.unconverged(part) is None):
             found.append((part, levels.best_energy(part)))
-    return max(found, key=lambda pair: (pair[1].rank, pair[1].at))
+    free = [pair for pair in found if levels.held(pair[0]) is None]
+    if not free:
+        raise text.error(
+            levels.held(found[-1][0]) or found[-1][0].start,
+            "an SCF with occupations held to those of a start (MOM), most often an excited state",
+            mend="give a calculation of the ground state, without mom_start",
+        )
+    return max(free, key=lambda pair: (pair[1].rank, pair[1].at))
 
 
 def _check_bottom(analysis: Text, lowest: Energy) -> None:

@@ -6,17 +6,27 @@ import numpy as np
 
 from thermo_pp.errors import Finding
 from thermo_pp.names import Severity
-from thermo_pp.readers.psi4 import levels
+from thermo_pp.readers.psi4 import jobs, levels
 from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import Evaluation
 from thermo_pp.readers.text import Text
 
+_OTHER_ANGSTROM = 0.2
+"""Distances that differ by more are not those of one structure at two levels of theory."""
+_HELD = (b"Fixed value    =", b"to adjust frozen coordinates")
+_ROTATIONS = b"un-projected rotation-like modes"
+
 
 def findings(text: Text, chosen: Chosen) -> tuple[Finding, ...]:
     """Return the findings about what was chosen of the file."""
-    found = [*_ghosts(text, chosen), *_unconverged(text, chosen), *_left_out(text, chosen)]
+    found = [
+        *_ghosts(text, chosen),
+        *_unconverged(text, chosen),
+        *_held(text, chosen),
+        *_left_out(text, chosen),
+    ]
     if chosen.analysis is not None:
-        found += _levels(text, chosen)
+        found += [*_rotations(text, chosen.analysis), *_levels(text, chosen)]
     return tuple(found)
 
 
@@ -42,13 +52,65 @@ def _unconverged(text: Text, chosen: Chosen) -> list[Finding]:
     return [_finding(text, "warning", "optimisation-not-converged", chosen.run.at, what, mend)]
 
 
+def _held(text: Text, chosen: Chosen) -> list[Finding]:
+    """Return a finding where the optimiser held coordinates at its last steps."""
+    if chosen.run is None or not chosen.run.converged:
+        return []
+    before = [one for one in chosen.tasks.real if one.start < chosen.run.last.start]
+    part = text.part((before or [chosen.run.last])[-1].start, chosen.run.at)
+    places = [at for mark in _HELD if (at := part.find(mark)) >= 0]
+    if not places:
+        return []
+    what = "the geometry was optimised with coordinates held: no stationary point"
+    mend = "nothing, for a point of a scan; else optimise without constraints"
+    return [_finding(text, "warning", "not-stationary", min(places), what, mend)]
+
+
 def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
     for one in chosen.tasks.real:
         if not np.array_equal(chosen.tasks.shapes[one].numbers, chosen.shape.numbers):
             what = "a task of another molecule stands in this file; it is left out"
             mend = "give each molecule a file of its own"
             return [_finding(text, "note", "other-molecule-left-out", one.start, what, mend)]
+    if levels.held(chosen.part) is None:
+        for one in chosen.tasks.real:
+            at = levels.held(text.part(one.start, one.end))
+            if at is not None and chosen.tasks.shapes[one].same(chosen.shape):
+                what = "an SCF with occupations held to those of a start (MOM) is left out"
+                mend = "nothing, if the ground state is meant"
+                return [_finding(text, "note", "excited-state-left-out", at, what, mend)]
+    if chosen.tasks.runs or chosen.analysis is not None:
+        return _conformers(text, chosen)
+    others = [one for one in chosen.tasks.real if not chosen.tasks.shapes[one].same(chosen.shape)]
+    if not others:
+        return []
+    what = f"{len(others)} other geometries or charges of these atoms stand in this file; the last is taken"
+    mend = "give a file with one geometry where another one is meant"
+    code = "last-of-several-structures"
+    return [_finding(text, "note", code, others[0].start, what, mend)]
+
+
+def _conformers(text: Text, chosen: Chosen) -> list[Finding]:
+    """Return a finding where an optimisation led to another structure of the same atoms."""
+    for run in chosen.tasks.runs:
+        other = chosen.tasks.shapes[run.last]
+        if run.converged and jobs.furthest_apart(other, chosen.shape) > _OTHER_ANGSTROM:
+            what = "an optimisation of another structure of these atoms stands in this file"
+            mend = "give each structure a file of its own"
+            code = "last-of-several-structures"
+            return [_finding(text, "note", code, run.at, what, mend)]
     return []
+
+
+def _rotations(text: Text, analysis: Text) -> list[Finding]:
+    at = analysis.find(_ROTATIONS)
+    if at < 0:
+        return []
+    what = (
+        "the program did not take rotations out of its vibrations: too far from a stationary point"
+    )
+    mend = "optimise at the level of the frequencies first"
+    return [_finding(text, "warning", "not-stationary", at, what, mend)]
 
 
 def _levels(text: Text, chosen: Chosen) -> list[Finding]:

@@ -49,6 +49,9 @@ _GEOMETRY = re.compile(
     rb"Geometry \(in (Angstrom|Bohr)\), charge = (-?\d{1,3}), multiplicity = (\d{1,3}):"
 )
 _RUNNING = re.compile(rb"  Running in \S+ symmetry")
+REPLACED = re.compile(rb"Number of ECP core electrons:\s*(\d+)")
+"""How many electrons effective core potentials replace."""
+_ELECTRONS = re.compile(rb"\n[ \t]+Electrons[ \t]+=[ \t]+(\d+)")
 _SYMBOL = re.compile(r"([A-Za-z]{1,2})(?:[\d_]\w*)?")
 _GHOST = re.compile(r"Gh\(|\(Gh\)")
 _DIFFERENCES = b"\n  Using finite-differences of"
@@ -94,8 +97,9 @@ class Geometry:
     table_at: int
 
     def same(self, other: Geometry) -> bool:
-        """Tell whether `other` is the same molecule in the same state, and in shape to 1e-5 A."""
-        if (self.charge, self.multiplicity) != (other.charge, other.multiplicity):
+        """Tell whether `other` is the same molecule in the same state, in shape to 1e-5 A, with as many ghosts."""
+        mine = (self.charge, self.multiplicity, self.ghosts)
+        if mine != (other.charge, other.multiplicity, other.ghosts):
             return False
         if not np.array_equal(self.numbers, other.numbers):
             return False
@@ -116,13 +120,21 @@ def _distances(geometry: Geometry) -> FloatArray:
     return np.asarray(np.linalg.norm(x[:, None, :] - x[None, :, :], axis=-1))
 
 
+def furthest_apart(one: Geometry, other: Geometry) -> float:
+    """Return by how much a distance differs at most between two geometries of the same atoms, in angstrom."""
+    return float(np.max(np.abs(_distances(one) - _distances(other))))
+
+
 def check_repulsion(part: Text, geometry: Geometry) -> None:
     """Check the geometry against the nuclear repulsion energy that is printed with it.
 
-    Not done where effective core potentials change the nuclear charges.
+    Effective core potentials change the nuclear charges: there the electrons are counted.
     """
     at = part.find(_REPULSION)
-    if at < 0 or part.find(b"ECP") >= 0:
+    if at < 0:
+        return
+    if part.find(b"ECP") >= 0:
+        _check_electrons(part, geometry)
         return
     printed = part.number_text(at, "the nuclear repulsion energy")
     why = repulsion.differs(
@@ -139,6 +151,22 @@ def check_repulsion(part: Text, geometry: Geometry) -> None:
                 "of it (looked for 'Running in ... symmetry')",
                 mend=CUT_SHORT,
             )
+
+
+def _check_electrons(part: Text, geometry: Geometry) -> None:
+    """Check the atoms against the electrons, those in effective core potentials left out."""
+    replaced = REPLACED.search(part.data, part.start, part.end)
+    electrons = _ELECTRONS.search(part.data, part.start, part.end)
+    if replaced is None or electrons is None:
+        return
+    count = int(geometry.numbers.sum()) - geometry.charge - int(replaced.group(1))
+    if count != int(electrons.group(1)):
+        raise part.error(
+            geometry.at,
+            f"{count} electrons by the atoms and the charge, {electrons.group(1).decode()} on line "
+            f"{part.line_number(electrons.start(1))}",
+            mend=CUT_SHORT,
+        )
 
 
 def check_end(text: Text) -> bool:

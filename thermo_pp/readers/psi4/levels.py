@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.readers.level import Level
 from thermo_pp.readers.line_marks import matches
+from thermo_pp.readers.psi4.jobs import REPLACED
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 RANKS: dict[str, int] = {
@@ -23,10 +24,16 @@ RANKS: dict[str, int] = {
     "DFT": 0,
     "MP2": 1,
     "OMP2": 2,
+    "CC2": 2,
+    "MP2.5": 2,
     "MP3": 3,
+    "CISD": 3,
     "MP4(SDQ)": 4,
     "MP4(SDTQ)": 5,
+    "QCISD": 6,
     "CCSD": 6,
+    "QCISD(T)": 7,
+    "CC3": 7,
     "CCSD(T)": 7,
     "CBS": 8,
 }
@@ -37,10 +44,16 @@ CALLED: dict[str, str | None] = {
     "dft": None,
     "mp2": "MP2",
     "omp2": "OMP2",
+    "cc2": "CC2",
+    "mp2.5": "MP2.5",
     "mp3": "MP3",
+    "cisd": "CISD",
     "mp4(sdq)": "MP4(SDQ)",
     "mp4": "MP4(SDTQ)",
+    "qcisd": "QCISD",
+    "qcisd(t)": "QCISD(T)",
     "ccsd": "CCSD",
+    "cc3": "CC3",
     "ccsd(t)": "CCSD(T)",
 }
 """What an input calls a method, and which energy must then be in the output; functionals beside."""
@@ -54,11 +67,20 @@ _TOTALS = (
     (re.compile(rb"[ \t]*(?:DF-|CD-)?(\S+) Total Energy \(a\.u\.\)"), b" Total Energy (a.u.)"),
 )
 """The lines of correlated energies, starred or in a table, and the mark of each."""
-_ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF", "MP2.5")
+_ASIDE = ("SCS", "SOS", "SCSN", "HF", "SCF", "REF")
 """First part of the labels of energies that are printed beside the wanted one."""
 _UNCONVERGED = (b"did not converge, but proceeding anyway", b"Failed to converge.")
+_ALGORITHM = b"==> Algorithm <=="
+_CHARGES = b"=> External Potential Field:"
+_HELD = (b"MOM enabled.", b" DIIS/MOM", b" MOM\n")
+_FREE = b"MOM disabled."
+_FRACTIONAL = b"Fractional occupation enabled."
+_SETTINGS_BYTES = 1000
+"""The settings of an SCF below their heading."""
 _INVENTED = "ANONYMOUS"
 _FITTING = "AUX)"
+_BASIS_BYTES = 120
+"""A heading and the name of the basis set below it."""
 _MP2_TABLE = 800
 _EXTRAPOLATED = b"==> CBS <=="
 _DOUBLE_HYBRID = b"@Final double-hybrid DFT total energy"
@@ -83,7 +105,9 @@ _LEBEDEV = frozenset(
     )
 )
 """Sizes of the angular grids that exist (Lebedev and Laikov, Doklady Mathematics 59 (1999) 477), from memory."""
-_OCCUPIED = ("FC", "OCC", "#FZDC", "#DOCC", "#SOCC")
+_OCCUPIED = ("FC", "OCC", "AOCC", "#FZDC", "#DOCC", "#SOCC")
+_FROZEN_UNOCCUPIED = ("FV", "#FZVR")
+_FROZEN_VIRTUALS = re.compile(rb"Number of frozen virtual orbitals:\s*(\d+)")
 _ALPHA = re.compile(rb"\n[ \t]+Nalpha[ \t]+=[ \t]+(\d+)")
 _FROZEN_COUNT = re.compile(rb"Number of frozen core orbitals:\s*(\d+)")
 _FROZEN_TABLE = re.compile(
@@ -140,6 +164,10 @@ def energies(part: Text) -> list[Energy]:
             found.append(Energy(label, value, match.end()))
     for start in part.all(b"==> DF-MP2 Energies <=="):
         found.append(_density_fitted(part, start))
+    if any(one.label == "OMP2" for one in found):
+        # MP2 is printed once more with the optimised orbitals, which is no MP2 energy
+        first = next((one for one in found if one.label == "MP2"), None)
+        found = [one for one in found if one.label != "MP2" or one is first]
     return found
 
 
@@ -147,6 +175,25 @@ def unconverged(part: Text) -> int | None:
     """Return where the evaluation `part` says that its SCF did not converge, None if nowhere."""
     places = [part.find(mark) for mark in _UNCONVERGED]
     return max(places) if max(places) >= 0 else None
+
+
+def held(part: Text) -> int | None:
+    """Return where the evaluation `part` holds its occupations to those of a start, None if nowhere."""
+    end = part.last(b" Final Energy:")
+    settings = max(part.last(_ALGORITHM, end if end >= 0 else None), part.start)
+    if part.data.find(_FREE, settings, settings + _SETTINGS_BYTES) >= 0:
+        return None
+    end = end if end >= 0 else part.end
+    places = [at for mark in _HELD if (at := part.data.find(mark, settings, end)) >= 0]
+    return min(places, default=None)
+
+
+def charged(part: Text) -> int | None:
+    """Return where the evaluation `part` lists charges or fields around the molecule, None if nowhere."""
+    start = max(part.find(_ALGORITHM), part.start)
+    end = part.find(b" Final Energy:", start)
+    at = part.data.find(_CHARGES, start, end if end >= 0 else part.end)
+    return at if at >= 0 else None
 
 
 def is_printed(text: Text, label: str) -> bool:
@@ -205,6 +252,14 @@ def _scf_energy(part: Text) -> Energy:
             "the SCF did not converge, so there is no energy",
             mend="rerun with more iterations or another starting guess",
         )
+    settings = max(part.find(_ALGORITHM), part.start)
+    fractional = part.data.find(_FRACTIONAL, settings, settings + _SETTINGS_BYTES)
+    if fractional >= 0:
+        raise part.error(
+            fractional,
+            "an SCF with fractional occupations, which is no state of the molecule",
+            mend="give a calculation with whole occupations",
+        )
     finals = matches(_SCF, b" Final Energy:", part, part.start, part.end)
     if not finals:
         raise part.error(
@@ -258,14 +313,25 @@ def level(part: Text, energy: Energy, numbers: NDArray[np.int64]) -> Level:
         method, basis = _extrapolation(part)
         at["basis"] = at["method"] = part.find(_EXTRAPOLATED)
     elif primary >= 0:
-        at["basis"] = part.need(b"Basis Set:", primary, lacking="no name of the basis set")
-        basis = part.line(at["basis"]).partition(":")[2].strip() or None
-        if basis is not None and basis.endswith(_FITTING):
-            raise part.expected(at["basis"], "the name of the basis set")
-        if basis is not None and basis.startswith(_INVENTED):
-            at["basis"] = part.need(b"Blend:", primary, lacking="no names of the basis sets")
-            basis = part.line(at["basis"]).partition(":")[2].strip() or None
+        basis = _basis(part, primary, at)
     return Level(method, basis, _dispersion(part, at), _solvent(part, at), grid, frozen, at)
+
+
+def _basis(part: Text, primary: int, at: dict[str, int]) -> str | None:
+    """Return the name of the basis set below its heading, a longer table where much is printed."""
+    detailed = b"-AO BASIS SET INFORMATION:" in part.data[primary : primary + _BASIS_BYTES]
+    separator = "=" if detailed else ":"
+    name, blend = (b"    Name  ", b"    Blend  ") if detailed else (b"Basis Set:", b"Blend:")
+    at["basis"] = part.need(name, primary, lacking="no name of the basis set")
+    if at["basis"] - primary > _BASIS_BYTES:
+        raise part.expected(part.next_line(primary, 2), "the name of the basis set")
+    basis = part.line(at["basis"]).partition(separator)[2].strip() or None
+    if basis is not None and basis.endswith(_FITTING):
+        raise part.expected(at["basis"], "the name of the basis set")
+    if basis is not None and basis.startswith(_INVENTED):
+        at["basis"] = part.need(blend, primary, lacking="no names of the basis sets")
+        basis = part.line(at["basis"]).partition(separator)[2].strip() or None
+    return basis
 
 
 def _extrapolation(part: Text) -> tuple[str, str]:
@@ -353,27 +419,38 @@ def _frozen_core(part: Text, numbers: NDArray[np.int64], at: dict[str, int]) -> 
 
     None where the file does not say. The usual core is the noble gas before each atom.
     """
-    count = _frozen_orbitals(part, at)
-    if count is None or count == 0:
-        return None if count is None else "none"
+    found = _frozen_orbitals(part, at)
+    if found is None:
+        return None
+    count, virtual = found
+    extra = f", {virtual} virtual orbitals too" if virtual else ""
+    if count == 0:
+        return "none" + extra
     usual = sum(next(core for last, core in _CORES if z <= last) for z in numbers)
-    return "frozen" if count == usual else f"frozen: {count} orbitals"
+    replaced = REPLACED.search(part.data, part.start, part.end)
+    if replaced is not None:
+        usual = max(0, usual - int(replaced.group(1)) // 2)
+    elif part.find(b"ECP") >= 0:
+        return None
+    return ("frozen" if count == usual else f"frozen: {count} orbitals") + extra
 
 
-def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
-    """Return how many orbitals are frozen; each of Psi4's correlation modules has its own table."""
+def _frozen_orbitals(part: Text, at: dict[str, int]) -> tuple[int, int] | None:
+    """Return how many occupied and virtual orbitals are frozen; each module has its own table."""
     counted = _FROZEN_COUNT.search(part.data, part.start, part.end)
     if counted is not None:
         at["frozen_core"] = counted.start()
-        return int(counted.group(1))
+        unused = _FROZEN_VIRTUALS.search(part.data, counted.end(), part.end)
+        return int(counted.group(1)), 0 if unused is None else int(unused.group(1))
     place = part.find(b"CLASS    FOCC")
     if place >= 0:
         at["frozen_core"] = place
         row = part.next_line(place)
-        frozen, occupied, active = part.floats(row, 3, "numbers of orbitals", skip=1)
-        if frozen + active != occupied:
-            raise part.expected(row, "frozen and active orbitals that add up to the occupied ones")
-        return int(frozen)
+        counts = part.floats(row, 6, "numbers of orbitals", skip=1)
+        frozen, occupied, active, virtual_active, virtual, virtual_frozen = counts
+        if frozen + active != occupied or virtual_active + virtual_frozen != virtual:
+            raise part.expected(row, "frozen and active orbitals that add up to all of them")
+        return int(frozen), int(virtual_frozen)
     table = _FROZEN_TABLE.search(part.data, part.start, part.end)
     if table is None:
         return None
@@ -384,11 +461,14 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
     if part.rest(rule).strip(b"-= \t\r"):
         raise part.expected(rule, "a rule below the headings of the orbitals")
     filling = [i for i, name in enumerate(columns) if name in _OCCUPIED]
-    total = filled = 0
+    total = filled = virtuals = 0
+    unoccupied = [i for i, name in enumerate(columns) if name in _FROZEN_UNOCCUPIED]
     line = first = part.next_line(rule)
-    while len(part.rest(line).split()) == len(columns):
+    while len(words := part.rest(line).split()) == len(columns) and words[-1].isdigit():
         total += int(part.floats(line, 1, "a number of frozen orbitals", skip=column)[0])
         filled += sum(int(part.floats(line, 1, "a number of orbitals", skip=i)[0]) for i in filling)
+        for i in unoccupied:
+            virtuals += int(part.floats(line, 1, "a number of orbitals", skip=i)[0])
         line = part.next_line(line)
     if line == first:
         raise part.expected(line, "a row of numbers of orbitals")
@@ -400,4 +480,4 @@ def _frozen_orbitals(part: Text, at: dict[str, int]) -> int | None:
             f"electrons on line {part.line_number(alpha.start(1))}",
             mend=CUT_SHORT,
         )
-    return total
+    return total, virtuals

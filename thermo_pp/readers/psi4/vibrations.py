@@ -43,6 +43,7 @@ _ENTROPIES = {
     "heat_capacity_v": b"  Total Cv ",
 }
 _REMOVED = re.compile(rb"removed ([356]) degrees of freedom")
+_UNNAMED = re.compile(rb"post-proj low-frequency mode:[^\n]*\(-\)")
 _JOULE = re.compile(rb"(-?\d+\.\d+) \[J/\(mol K\)\]")
 _HARTREE = re.compile(rb"(-?\d+\.\d+) \[Eh\]")
 _TEMPERATURE = re.compile(rb"at\s+(\d+\.\d+) \[K\]")
@@ -82,6 +83,11 @@ def modes(part: Text, atoms: int) -> tuple[FloatArray, FloatArray, int]:
         columns.append(np.array(rows).reshape(atoms, len(words), 3).transpose(1, 0, 2))
     removed = _REMOVED.search(part.data, part.start, part.end)
     overall = {int(removed.group(1))} if removed else {1: {3}, 2: {5}}.get(atoms, {5, 6})
+    if _UNNAMED.search(part.data, part.start, part.end):
+        overall |= {
+            5,
+            6,
+        }  # null modes that it did not take out are left out of the table all the same
     if 3 * atoms - len(wavenumbers) not in overall:
         expected = " or ".join(str(3 * atoms - count) for count in sorted(overall))
         raise part.error(

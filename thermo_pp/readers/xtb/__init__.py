@@ -54,6 +54,10 @@ _NOT_ONE_GEOMETRY = (
     (re.compile(rb"\|[ \t]+(?:Mode Following|M O D E F|Conformational search)", re.I), "a search"),
     (re.compile(rb"\|[ \t]+Automated Docking|\baISS\b.*started", re.I), "a docking run"),
 )
+_NOT_ONE_LEVEL = (
+    (re.compile(rb"^Initializing high level method", re.MULTILINE), "ONIOM, of two levels"),
+    (re.compile(rb"^Fukui index Calculation", re.MULTILINE), "Fukui indices, of three charges"),
+)
 _CONVERGED = re.compile(rb"^[ \t]*\*\*\* GEOMETRY OPTIMIZATION CONVERGED", re.MULTILINE)
 _UNCONVERGED = re.compile(rb"^[ \t]*\*\*\* FAILED TO CONVERGE GEOMETRY OPTIMIZATION", re.MULTILINE)
 
@@ -259,6 +263,14 @@ def _check_run(text: Text) -> re.Match[bytes] | None:
                 match.start(),
                 f"{what}, whose last energy is of no geometry in this file",
                 mend="give a single point, an optimisation or a Hessian of the geometry you want",
+            )
+    for mark, what in _NOT_ONE_LEVEL:
+        match = mark.search(text.data)
+        if match is not None:
+            raise text.error(
+                match.start(),
+                f"{what}: several energies that this reader does not tell apart",
+                mend="give a job of one method and one charge",
             )
     return _VERSION.search(text.data)
 

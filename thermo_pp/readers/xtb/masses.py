@@ -37,7 +37,9 @@ MASSES_U: tuple[float, ...] = (
 """Average mass by atomic number, u, as xtb 6.5.1 prints it."""
 
 _CHANGED = re.compile(
-    rb"^\s*mass of (?:elements? '\s*(\w+)\s*'|atom\s+(\d+))\s+changed to\s+(\d+\.\d+)", re.MULTILINE
+    rb"^\s*mass of (?:elements? '\s*(\w+)\s*'|atom\s+(\d+)|elements with Z=(\d+))\s+changed to"
+    rb"\s+(\d+\.\d+)",
+    re.MULTILINE,
 )
 _ANY_CHANGE = re.compile(rb"^\s*mass of .*changed", re.MULTILINE)
 _TOTAL = b"      molecular mass/u    :"
@@ -64,10 +66,12 @@ def masses(text: Text, numbers: NDArray[np.int64]) -> tuple[FloatArray, int | No
     found = np.array([MASSES_U[z] for z in numbers])
     at = None
     for change in _CHANGED.finditer(text.data, text.start, text.end):
-        at, mass = change.start(3), float(change.group(3))
+        at, mass = change.start(4), float(change.group(4))
         if change.group(1) is not None:
             symbol = change.group(1).decode().capitalize()
             found[[SYMBOLS[z] == symbol for z in numbers]] = mass
+        elif change.group(3) is not None:
+            found[numbers == int(change.group(3))] = mass
         elif 1 <= int(change.group(2)) <= len(found):
             found[int(change.group(2)) - 1] = mass
         else:

@@ -114,13 +114,24 @@ def _turbomole(text: Text, head: re.Match[bytes]) -> tuple[IntArray, FloatArray]
     return numbers, positions if unit == [b"angs"] else positions * BOHR_ANGSTROM
 
 
+def _element(word: bytes) -> int | None:
+    """Return the atomic number that a word of a coordinate file means to xtb, None where it means none.
+
+    D and T are hydrogen, of hydrogen's mass.
+    """
+    if word.isdigit():
+        return int(word) if len(word) < 4 and 0 < int(word) < len(SYMBOLS) else None
+    match = _SYMBOL.fullmatch(word)
+    symbol = "" if match is None else match.group(1).decode().capitalize()
+    return NUMBERS.get({"D": "H", "T": "H"}.get(symbol, symbol))
+
+
 def _rows(text: Text, at: int, count: int, symbol: int) -> tuple[IntArray, FloatArray]:
     """Return `count` atoms, a line each: three numbers and a symbol, which is word `symbol`."""
     numbers, positions = [], []
     for row in range(count):
         words = text.rest(at).split()
-        match = _SYMBOL.fullmatch(words[symbol]) if len(words) > 3 else None
-        element = None if match is None else NUMBERS.get(match.group(1).decode().capitalize())
+        element = _element(words[symbol]) if len(words) > 3 else None
         if element is None:
             raise text.expected(at, f"the element and position of atom {row + 1}")
         numbers.append(element)
