@@ -313,3 +313,10 @@ def test_a_turnover_has_both_energies_and_what_its_limits_do(tmp_path: Path) -> 
     )
     assert cycle.log_limit is not None
     assert cycle.log_limit[0] < -1e-3
+
+
+def test_a_point_of_a_linear_network_is_said_to_change_nothing(tmp_path: Path) -> None:
+    held = 'held = { B = "0.3 mol/L" }'
+    found = asked(tmp_path, conditions=held, law="").effective()
+    assert [one.code for one in found.findings].count("point-not-used") == 1
+    assert found.rates["free"] is not None

@@ -41,6 +41,7 @@ from thermo_pp.kinetics.results import (
 from thermo_pp.kinetics.tunnelling_share import with_tunnelling
 from thermo_pp.kinetics.windows import LOCATED_K, crossings, scan_temperatures, sign_changes
 from thermo_pp.kinetics.words import words
+from thermo_pp.mechanism import Mechanism
 from thermo_pp.names import DEFINITIONS, Definition, Severity
 
 if TYPE_CHECKING:
@@ -99,6 +100,7 @@ def _effective(study: StudyLike) -> EffectiveRate:
     findings = (
         *study.findings,
         *rates.steps.findings,
+        *_unused_point(study.mechanism),
         *_findings(found, rates, study.mechanism.where),
     )
     net, coefficient = net_reaction(rates)
@@ -377,6 +379,23 @@ def _findings(
                     "at low pressure declare a fall-off rate constant for it",
                 )
     return tuple(findings)
+
+
+def _unused_point(mechanism: Mechanism) -> tuple[Finding, ...]:
+    """Say of a linear network that the point which the study asks for changes nothing."""
+    if mechanism.point is None:
+        return ()
+    return (
+        Finding(
+            code="point-not-used",
+            severity="note",
+            file=mechanism.where,
+            line=None,
+            what=f"the network is linear: its rate constants are the same at {mechanism.point.text!r} "
+            "as at any other point",
+            mend="take at (and rate_law) out of [effective]",
+        ),
+    )
 
 
 def _temperatures(values: FloatArray) -> str:
