@@ -196,7 +196,8 @@ def _check_alone(text: Text, all_tasks: list[Task]) -> None:
                 "a counterpoise task over fragments of the molecule, whose energies are not read",
                 mend="give single calculations, one of each fragment, with ghost atoms",
             )
-        charge = _POINT_CHARGE.search(text.data, task.start, first)
+        centres = text.data.find(b" Bq ", task.start, first)
+        charge = None if centres < 0 else _POINT_CHARGE.search(text.data, task.start, first)
         if charge is not None:
             raise text.error(
                 charge.start() + 1,
@@ -338,8 +339,11 @@ def _same_printed_level(text: Text, run: Task, own: State) -> bool:
     """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
     if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
-    last = next(energies.solutions(text, run, backwards=True))
-    if levels.dissolved(text, last) != (own.level.solvent != "none"):
+    dissolved = text.data.rfind(levels.CONTINUUM, run.start, run.end) >= 0
+    if dissolved:  # once; the last solution may be another
+        last = next(energies.solutions(text, run, backwards=True))
+        dissolved = levels.dissolved(text, last)
+    if dissolved != (own.level.solvent != "none"):
         return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)

@@ -11,6 +11,7 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 
+from thermo_pp.readers.line_marks import matches
 from thermo_pp.readers.nwchem.tasks import ANALYTIC, DFT, MP2, RIMP2, SCF, TCE, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
 
@@ -76,7 +77,7 @@ _CC_TOTALS = {
 }
 _TCE_MARK = b" total energy / hartree"
 _TCE_TOTAL = re.compile(rb"\n (\S+) total energy / hartree +=")
-_TCE_PARTS = re.compile(rb"\n (\S+) correlation energy / hartree +=")
+_TCE_PARTS = re.compile(rb" (\S+) correlation energy / hartree +=")
 _TCE_CORRECTION = re.compile(rb"Perturbative correction : (\S+)")
 _TCE_NAMES = {"MBPT(2)": "MP2", "MBPT(3)": "MP3", "MBPT(4)": "MP4"}
 _STEP = 1e-11
@@ -387,9 +388,8 @@ def _contracted(text: Text, solution: Solution, end: int) -> Energy:
             else:
                 _check(text, match.start(1), value, solution, [correlation])
         found.append(Energy(label, value, match.start(1), solution, end))
-    printed = [
-        name for name in _TCE_PARTS.findall(text.data, solution.at, end) if b"[T]" not in name
-    ]
+    parts = matches(_TCE_PARTS, b" correlation energy / hartree", text, solution.at, end)
+    printed = [part.group(1) for part in parts if b"[T]" not in part.group(1)]
     if found and printed and text.data.rfind(printed[-1] + _TCE_MARK, solution.at, end) < 0:
         raise _missing(text, solution, printed[-1].decode("utf-8", "replace"))
     correction = _TCE_CORRECTION.search(text.data, solution.at, end)

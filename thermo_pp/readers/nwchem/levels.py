@@ -51,7 +51,7 @@ _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
 """Functionals that the program prints by their parts, too."""
 _SAME = {"PBE96": "PBE"}
 _BASIS_ROW = re.compile(r" ?(\S+) +(\S.*?) +(?:\d+ +\d+ +(\S+)|on all atoms) *")
-_CONTINUUM = b"COSMO energy ="
+CONTINUUM = b"COSMO energy ="
 """Stands beside every energy in a continuum."""
 _SUMMARY = b'Summary of "ao basis"'
 _SCF_STATE = re.compile(
@@ -219,14 +219,14 @@ def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str | None:
 
 def dissolved(text: Text, solution: Solution) -> bool:
     """Tell whether a solution is one in a continuum."""
-    return text.data.find(_CONTINUUM, solution.full, solution.full + 700) >= 0
+    return text.data.find(CONTINUUM, solution.full, solution.full + 700) >= 0
 
 
 def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     full = energy.solution.full
-    if before.data.find(_CONTINUUM, full, full + 700) < 0:
+    if before.data.find(CONTINUUM, full, full + 700) < 0:
         return "none"
-    at["solvent"] = before.data.find(_CONTINUUM, full)
+    at["solvent"] = before.data.find(CONTINUUM, full)
     near = before.data[max(0, full - 1500) : full + 1500]
     model = "SMD" if b"COSMO-SMD solvation results" in near else "COSMO"
     mark = b"dielectric constant -eps-     ="
@@ -341,9 +341,12 @@ def _covered(tags: set[str], geometry: Geometry) -> bool:
     """Tell whether a table of basis sets by name of centre has a row for every atom."""
     if "*" in tags:
         return True
-    rows = {tag.lower() for tag in tags} | {element(tag, geometry) for tag in tags}
-    real = zip(geometry.tags, geometry.numbers, strict=True)
-    return all(tag.lower() in rows or SYMBOLS[z].lower() in rows for tag, z in real if z)
+    rows = {tag.lower() for tag in tags}
+    real = zip(geometry.tags, geometry.numbers.tolist(), strict=True)
+    missing = {(tag.lower(), SYMBOLS[z].lower()) for tag, z in real if z}
+    missing = {names for names in missing if rows.isdisjoint(names)}
+    elements = {element(tag, geometry) for tag in tags} if missing else set()
+    return all(symbol in elements or tag in elements for tag, symbol in missing)
 
 
 def _basis(before: Text, geometry: Geometry, at: dict[str, int]) -> str | None:
