@@ -339,11 +339,7 @@ def _same_printed_level(text: Text, run: Task, own: State) -> bool:
     """Tell whether two tasks ran the same modules with the same printed functional and basis set."""
     if run.names & tasks.LEVEL != own.task.names & tasks.LEVEL:
         return False
-    dissolved = text.data.rfind(levels.CONTINUUM, run.start, run.end) >= 0
-    if dissolved:  # once; the last solution may be another
-        last = next(energies.solutions(text, run, backwards=True))
-        dissolved = levels.dissolved(text, last)
-    if dissolved != (own.level.solvent != "none"):
+    if levels.dissolved(text, energies.first(text, run)) != (own.level.solvent != "none"):
         return False
     mine = levels.printed_level(text, own.task, own.energy.at)
     return mine == levels.printed_level(text, run, run.end)

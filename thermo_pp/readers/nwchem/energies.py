@@ -151,6 +151,11 @@ def solutions(text: Text, task: Task, *, backwards: bool = False) -> Iterator[So
         at = find(mark, task.start, at) if backwards else find(mark, at + 1, task.end)
 
 
+def first(text: Text, task: Task) -> int:
+    """Return where the first solution of a task is printed, with its parts."""
+    return text.data.find(_mark(text, task), task.start, task.end)
+
+
 def _mark(text: Text, task: Task) -> bytes:
     mine = [name for name in _TOTALS if name in task.names]
     if len(mine) != 1:

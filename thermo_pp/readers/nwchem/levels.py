@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.readers.level import Level
-from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, Solution, scaling, usual
+from thermo_pp.readers.nwchem.energies import CORRELATED, Energy, scaling, usual
 from thermo_pp.readers.nwchem.geometry import Geometry, element, replaced_cores
 from thermo_pp.readers.nwchem.tasks import DFT, SCF, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
@@ -51,7 +51,7 @@ _FUNCTIONALS: tuple[tuple[str, dict[str, float]], ...] = (
 """Functionals that the program prints by their parts, too."""
 _SAME = {"PBE96": "PBE"}
 _BASIS_ROW = re.compile(r" ?(\S+) +(\S.*?) +(?:\d+ +\d+ +(\S+)|on all atoms) *")
-CONTINUUM = b"COSMO energy ="
+_CONTINUUM = b"COSMO energy ="
 """Stands beside every energy in a continuum."""
 _SUMMARY = b'Summary of "ao basis"'
 _SCF_STATE = re.compile(
@@ -217,16 +217,16 @@ def _dispersion(before: Text, energy: Energy, at: dict[str, int]) -> str | None:
     return "XDM" if exchange_hole >= 0 else None
 
 
-def dissolved(text: Text, solution: Solution) -> bool:
-    """Tell whether a solution is one in a continuum."""
-    return text.data.find(CONTINUUM, solution.full, solution.full + 700) >= 0
+def dissolved(text: Text, full: int) -> bool:
+    """Tell whether the solution that is printed with its parts at an offset is one in a continuum."""
+    return text.data.find(_CONTINUUM, full, full + 700) >= 0
 
 
 def _solvent(before: Text, energy: Energy, at: dict[str, int]) -> str:
     full = energy.solution.full
-    if before.data.find(CONTINUUM, full, full + 700) < 0:
+    if before.data.find(_CONTINUUM, full, full + 700) < 0:
         return "none"
-    at["solvent"] = before.data.find(CONTINUUM, full)
+    at["solvent"] = before.data.find(_CONTINUUM, full)
     near = before.data[max(0, full - 1500) : full + 1500]
     model = "SMD" if b"COSMO-SMD solvation results" in near else "COSMO"
     mark = b"dielectric constant -eps-     ="
