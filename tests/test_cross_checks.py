@@ -33,6 +33,12 @@ LOST = [
     ("orca/good/water_scaled_excited_modes.out", b"VIBRATIONAL FREQ", 0, "without their wavenumb"),
     ("psi4/good/water_ccsdt_energy.out", b" A1\t   11\t    1", 0, "alpha electrons on line"),
     ("psi4/good/water_ccsdt_energy.out", b"-----\t-----\t------", 0, "expected a rule"),
+    (
+        "psi4/good/water_pbe0_mixed_basis_energy.out",
+        b"    Blend: 6-31G",
+        0,
+        "names of the basis sets",
+    ),
     ("psi4/good/water_b97d_energy.out", b"Grimme's -D2", 0, "the name of the dispersion"),
     (
         "psi4/good/argon_mp2_energy.out",

@@ -329,7 +329,10 @@ def _basis(part: Text, primary: int, at: dict[str, int]) -> str | None:
     if basis is not None and basis.endswith(_FITTING):
         raise part.expected(at["basis"], "the name of the basis set")
     if basis is not None and basis.startswith(_INVENTED):
-        at["basis"] = part.need(blend, primary, lacking="no names of the basis sets")
+        below = part.need(blend, primary, lacking="no names of the basis sets")
+        if below - primary > _BASIS_BYTES:  # those of another, auxiliary set
+            raise part.expected(part.next_line(at["basis"]), "the names of the basis sets")
+        at["basis"] = below
         basis = part.line(at["basis"]).partition(separator)[2].strip() or None
     return basis
 
