@@ -39,6 +39,12 @@ LOST = [
         0,
         "names of the basis sets",
     ),
+    (
+        "nwchem/good/water_b3lyp_opt_freq.out",
+        b"NWChem DFT Module",
+        -1,
+        "no heading of its module",
+    ),
     ("psi4/good/water_b97d_energy.out", b"Grimme's -D2", 0, "the name of the dispersion"),
     (
         "psi4/good/argon_mp2_energy.out",

@@ -12,7 +12,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 from thermo_pp.readers.line_marks import matches
-from thermo_pp.readers.nwchem.tasks import ANALYTIC, DFT, MP2, RIMP2, SCF, TCE, Task
+from thermo_pp.readers.nwchem.tasks import ANALYTIC, DFT, MP2, RIMP2, SCF, TCE, TOTALS, Task
 from thermo_pp.readers.text import CUT_SHORT, Text
 
 RANKS: dict[str, int] = {
@@ -41,7 +41,6 @@ RANKS: dict[str, int] = {
 """The energies that are read, and which is the better one of one geometry."""
 CORRELATED = RANKS["SCS-MP2"]
 
-_TOTALS = {SCF: b"Total SCF energy =", DFT: b"Total DFT energy ="}
 _PARTS = frozenset(
     (
         *(b"One electron energy", b"Two electron energy", b"One-electron energy"),
@@ -157,7 +156,7 @@ def first(text: Text, task: Task) -> int:
 
 
 def _mark(text: Text, task: Task) -> bytes:
-    mine = [name for name in _TOTALS if name in task.names]
+    mine = [name for name in TOTALS if name in task.names]
     if len(mine) != 1:
         what = "no SCF and no DFT module" if not mine else "both the SCF and the DFT module"
         raise text.error(
@@ -165,12 +164,12 @@ def _mark(text: Text, task: Task) -> bytes:
             f"a task with {what}, whose energy is not read",
             mend="give a file with the energy, optimisation or frequency task alone",
         )
-    return _TOTALS[mine[0]]
+    return TOTALS[mine[0]]
 
 
 def _solution(text: Text, mark: bytes, at: int, end: int) -> Solution:
     value = _value(text, at, mark, "the total energy")
-    label = "DFT" if mark == _TOTALS[DFT] else "HF"
+    label = "DFT" if mark == TOTALS[DFT] else "HF"
     full, repulsion = at, _repulsion(text, at, mark, value)
     if repulsion is None:
         # "already converged": the same digits stand with their parts in an earlier solution
@@ -254,7 +253,7 @@ def energy(text: Text, task: Task, solution: Solution) -> Energy:
     if solution.end >= 0:
         end = solution.end
     else:
-        following = text.data.find(_TOTALS[DFT if solution.label == "DFT" else SCF], start + 1, end)
+        following = text.data.find(TOTALS[DFT if solution.label == "DFT" else SCF], start + 1, end)
         end = end if following < 0 else following
     if solution.label == "DFT":
         return _double_hybrid(text, solution, end)

@@ -31,13 +31,14 @@ CORRELATED = frozenset((MP2, RIMP2, TCE, _NUMERICAL))
 _CHARGES_FIT = b"Electrostatic Potential Fit Module"
 """A task of its own, which computes no energy."""
 _GRADIENTS = (b"DFT Gradient Module", b"Gradients Module", _NUMERICAL)
+TOTALS = {SCF: b"Total SCF energy =", DFT: b"Total DFT energy ="}
+"""How the energy of each module is printed."""
 LEVEL = CORRELATED | {SCF, DFT}
 _READ = {
     *(_FREQUENCIES, _OPTIMISATION, *_GRADIENTS, SCF, DFT, MP2, RIMP2, TCE, ANALYTIC),
     *(b"Finite-difference Hessian", b"CPHF Module", b"Property Module"),
     _CHARGES_FIT,
 }
-_TOTALS = (b"Total SCF energy =", b"Total DFT energy =")
 _GROUND_STATE_STANDS = b"TDDFT Module"
 """The energy that this module's tasks print first is that of the ground state; of gradients that is not so."""
 
@@ -104,13 +105,18 @@ def tasks(text: Text) -> list[Task]:
     found = []
     for first, last in zip(inputs, [*inputs[1:], len(headings)], strict=True):
         stop = headings[last][0] if last < len(headings) else len(text.data)
-        if last > first + 1:
-            found.append(_task(text, headings[first][0], stop, tuple(headings[first + 1 : last])))
-            continue
-        for mark in _TOTALS:
+        own = tuple(headings[first + 1 : last])
+        names = {name for _, name in own}
+        for module, mark in TOTALS.items() if names <= _READ - {*TOTALS} else ():
             at = text.data.find(mark, headings[first][0], stop)
             if at >= 0:
-                raise text.error(at, "an energy, but no heading of its module", mend=CUT_SHORT)
+                raise text.error(
+                    at,
+                    f"an energy, but no heading of its module (looked for 'NWChem {module.decode()}')",
+                    mend=CUT_SHORT,
+                )
+        if own:
+            found.append(_task(text, headings[first][0], stop, own))
     if found and unconverged is not None:
         words = unconverged.group(1).decode("utf-8", "replace").strip()
         found[-1] = replace(found[-1], end=ended, failed=words, failed_at=ended)
