@@ -197,3 +197,12 @@ def test_a_wavenumber_that_is_not_finite_is_printed_nowhere(number: bytes) -> No
     assert damaged != data
     with pytest.raises(ReadError, match="is not printed in this file"):
         read_source(Source("x", damaged))
+
+
+def test_electrons_that_give_no_multiplicity_are_damage() -> None:
+    pytest.importorskip("cclib")
+    data = (FIXTURES / "cclib/good/water_molpro.out").read_bytes()
+    assert read_source(Source("x", data)).where["charge"] == 17
+    damaged = data.replace(b"5+    5-", b"5+    8-", 1)
+    with pytest.raises(ReadError, match="multiplicity -2 that cclib reads do not fit"):
+        read_source(Source("x", damaged))

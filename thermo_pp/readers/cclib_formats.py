@@ -40,13 +40,17 @@ LOOKS_FOR = (
 
 
 class Format(NamedTuple):
-    """A program: its name, cclib's parser, its heading, its mark of a normal end (None: cclib says), its masses."""
+    """A program: its name, cclib's parser, its heading, its mark of a normal end (None: cclib says), its masses.
+
+    `electrons` are the lines of which cclib makes charge and multiplicity, where they are known.
+    """
 
     program: str
     parser: str
     heading: re.Pattern[bytes]
     end: bytes | None = None
     average_masses: bool = False
+    electrons: tuple[bytes, bytes] | None = None
 
 
 _CHECKPOINT = "formatted checkpoint"
@@ -57,7 +61,12 @@ FORMATS: tuple[Format, ...] = (
     Format("GAMESS-UK", "GAMESSUK", re.compile(rb"G A M E S S - U K")),
     Format("Jaguar", "Jaguar", re.compile(rb"^ *\|? *Jaguar version \d", re.MULTILINE)),
     Format("Molcas", "Molcas", re.compile(rb"^ *This run of MOLCAS", re.M), b"Happy landing"),
-    Format("Molpro", "Molpro", re.compile(rb"\*\*\* +PROGRAM SYSTEM MOLPRO +\*\*\*")),
+    Format(
+        "Molpro",
+        "Molpro",
+        re.compile(rb"\*\*\* +PROGRAM SYSTEM MOLPRO +\*\*\*"),
+        electrons=(b"\n NUMBER OF ELECTRONS:", b"\n NUMBER OF ELECTRONS:"),
+    ),
     Format(
         "Turbomole",
         "Turbomole",
@@ -71,6 +80,7 @@ FORMATS: tuple[Format, ...] = (
         re.compile(
             rb"\A[^\n]*\n(?:SP|FOpt|Freq|POpt|FTS|Force|Mixed|Scan)\b[^\n]*\nNumber of atoms +I +\d+\r?\n"
         ),
+        electrons=(b"\nCharge  ", b"\nMultiplicity  "),
     ),
 )
 
@@ -161,6 +171,9 @@ def _calculation(text: Text, form: Format, data: Any, metadata: dict[str, Any]) 
     energy, label, energy_at = _energy(text, form, data, metadata, geometries)
     masses, origin = _masses(text, form, data, numbers)
     at = {} if energy_at is None else {"energy_hartree": energy_at}
+    for name, mark in zip(("charge", "multiplicity"), form.electrons or (), strict=False):
+        if (place := text.last(mark)) >= 0:
+            at[name] = place + 1
     placed = checks.positions_at(text, positions)
     if placed is not None:
         at["positions_angstrom"] = placed
@@ -242,7 +255,8 @@ def _state(text: Text, data: Any, numbers: NDArray[np.int64]) -> tuple[int | Non
     charge, multiplicity = getattr(data, "charge", None), getattr(data, "mult", None)
     if charge is not None and multiplicity is not None:
         electrons = int(numbers.sum()) - int(charge)
-        if electrons < 0 or (electrons - int(multiplicity) + 1) % 2:
+        unpaired = int(multiplicity) - 1
+        if not 0 <= unpaired <= electrons or (electrons - unpaired) % 2:
             raise text.error(
                 0,
                 f"charge {charge} and multiplicity {multiplicity} that cclib reads do not fit the atoms",
