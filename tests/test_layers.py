@@ -26,6 +26,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
         "mechanism",
         "conditions",
         "amounts",
+        "text_file",
     ),  # 2
     ("readers",),  # 3
     ("collect", "scans", "species", "isotopes"),  # 4

@@ -14,7 +14,7 @@ from thermo_pp.errors import Finding, StudyError
 from thermo_pp.kinetics.equilibrium import balanced, equilibrium
 from thermo_pp.kinetics.mass_action import System
 from thermo_pp.kinetics.results import freeze_arrays
-from thermo_pp.kinetics.start import Start, systems
+from thermo_pp.kinetics.start import Start, energies_of, systems
 from thermo_pp.kinetics.stationary import NoSteadyState, Steady, at_rest, settle
 from thermo_pp.rich import shown
 
@@ -128,7 +128,7 @@ def flow(study: StudyLike, *, temperature_k: Sequence[float] | None = None) -> F
     if followed in conditions.held:
         followed = ""
     with threadpool_limits(1), np.errstate(all="ignore"):
-        starts = systems(study, kelvin, flowing=True)
+        starts = systems(study, energies_of(study, kelvin), flowing=True)
         tanks = [
             _tank(start, float(t), followed, forming, mechanism.where)
             for start, t in zip(starts, kelvin, strict=True)

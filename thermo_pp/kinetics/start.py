@@ -49,9 +49,15 @@ class Start:
     held_mol_l: Mapping[str, float]
 
 
+def energies_of(study: StudyLike, temperature_k: FloatArray) -> Energetics:
+    """Return the energies of all species and saddles of a study at b temperatures."""
+    names = (*study.mechanism.species, *study.mechanism.saddles)
+    return energetics({name: study.species[name] for name in names}, temperature_k)
+
+
 def systems(
     study: StudyLike,
-    temperature_k: FloatArray,
+    energies: Energetics,
     *,
     flowing: bool = False,
     seen: Constant | None = None,
@@ -61,7 +67,8 @@ def systems(
     Parameters
     ----------
     study : StudyLike
-    temperature_k : shape (b,)
+    energies : Energetics
+        Of `energies_of`, at b temperatures.
     flowing : bool
         With the study's flow.
     seen : {"concentration", "pressure"} or None
@@ -73,8 +80,6 @@ def systems(
         The study says nothing of what there is, or holds species that are out of balance.
     """
     mechanism = study.mechanism
-    names = (*mechanism.species, *mechanism.saddles)
-    energies = energetics({name: study.species[name] for name in names}, temperature_k)
     conditions = study.conditions if seen is None else replace(study.conditions, seen=seen)
     rates = elementary_rates(mechanism, energies, study.treatment, conditions)
     return starts(mechanism, conditions, energies, rates, flowing=flowing)

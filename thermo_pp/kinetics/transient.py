@@ -21,7 +21,7 @@ from thermo_pp.kinetics.equilibrium import balanced, equilibrium
 from thermo_pp.kinetics.mass_action import TEMPERATURE, System
 from thermo_pp.kinetics.quasi_steady import quasi_steady
 from thermo_pp.kinetics.radau import Run, Unsolved, fastest_rate, integrate, lifetimes
-from thermo_pp.kinetics.start import Start, systems
+from thermo_pp.kinetics.start import Start, energies_of, systems
 from thermo_pp.kinetics.stationary import NoSteadyState, settle
 from thermo_pp.kinetics.transient_words import IMPOSSIBLE_MOL_L, findings, words
 from thermo_pp.names import CONSTANTS, Constant
@@ -77,10 +77,11 @@ def transient(
     if followed in study.conditions.held:
         followed = ""
     with threadpool_limits(1), np.errstate(all="ignore"):
-        starts = systems(study, np.array(kelvin))
+        energies = energies_of(study, np.array(kelvin))
+        starts = systems(study, energies)
         seen: dict[Constant, tuple[Start, ...]] = {}
         if study.treatment.phase == "gas":
-            seen = {name: systems(study, np.array(kelvin), seen=name) for name in CONSTANTS}
+            seen = {name: systems(study, energies, seen=name) for name in CONSTANTS}
         courses = tuple(
             _course(
                 study,

@@ -11,6 +11,7 @@ from pathlib import Path
 
 from thermo_pp.errors import StudyError
 from thermo_pp.nearest import suggestion
+from thermo_pp.text_file import read_text
 from thermo_pp.units import split_quantity
 
 NAMES = (
@@ -80,7 +81,12 @@ def read_columns(path: Path, file: str) -> list[Cells]:
         Not readable, no heading, an unknown or double heading, a heading without its unit, a row
         with more or fewer cells than headings.
     """
-    lines = _lines(path, file)
+    lines = read_text(
+        path,
+        file,
+        "the measurements",
+        "name a CSV file; docs/cli.md (compare) says what it holds",
+    )
     rows = list(_rows(lines, file))
     if not rows:
         raise StudyError("the file is empty", where=file, mend="write a row of headings and data")
@@ -101,26 +107,6 @@ def read_columns(path: Path, file: str) -> list[Cells]:
     if not found:
         raise StudyError("there is no row below the headings", where=file, mend="add the data")
     return found
-
-
-def _lines(path: Path, file: str) -> str:
-    try:
-        data = path.read_bytes()
-    except OSError as error:
-        raise StudyError(
-            f"the measurements cannot be read: {error.strerror or error}",
-            where=file,
-            mend="name a CSV file; docs/cli.md (compare) says what it holds",
-        ) from None
-    try:
-        return data.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise StudyError(
-            f"byte 0x{data[error.start]:02x} is not UTF-8",
-            where=f"{file}:{line}",
-            mend="save the file as UTF-8",
-        ) from None
 
 
 def _rows(text: str, file: str) -> Iterator[tuple[int, list[str]]]:

@@ -166,6 +166,22 @@ class Text:
             at = stop + 1
         return at
 
+    def lines_on(self, line: int, count: int) -> int:
+        """Return where the line `count` lines on begins; the end of the part where there are fewer.
+
+        Most often all of them are of one length, which is tried first.
+        """
+        guess = line + count * (self.data.find(b"\n", line, self.end) + 1 - line)
+        whole = line < guess <= self.end and self.data[guess - 1 : guess] == b"\n"
+        if whole and self.data.count(b"\n", line, guess) == count:
+            return guess
+        for _ in range(count):
+            stop = self.data.find(b"\n", line, self.end)
+            if stop < 0:
+                return self.end
+            line = stop + 1
+        return line
+
     def blank_line(self, at: int) -> int:
         """Return where the first empty line after `at` begins; the end of the part where there is none."""
         match = _BLANK_LINE.search(self.data, at, self.end)

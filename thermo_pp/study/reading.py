@@ -10,6 +10,7 @@ from typing import Any
 
 from thermo_pp.errors import StudyError
 from thermo_pp.study.check import check_keys
+from thermo_pp.text_file import read_text
 
 _AT_LINE = re.compile(r"\s*\(at (?:line (\d+), column \d+|end of document)\)")
 
@@ -48,23 +49,9 @@ def table_of(data: Mapping[str, Any], name: str) -> Mapping[str, Any]:
 
 def read_toml(path: Path, file: str) -> dict[str, Any]:
     """Read a TOML file; StudyError with its line where it is none."""
-    try:
-        data = path.read_bytes()
-    except OSError as error:
-        raise StudyError(
-            f"the study file cannot be read: {error.strerror or error}",
-            where=file,
-            mend="name a study file (TOML); docs/study-file.md shows one",
-        ) from None
-    try:
-        text = data.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise StudyError(
-            f"byte 0x{data[error.start]:02x} is not UTF-8",
-            where=f"{file}:{line}",
-            mend="save the file as UTF-8",
-        ) from None
+    text = read_text(
+        path, file, "the study file", "name a study file (TOML); docs/study-file.md shows one"
+    )
     try:
         return tomllib.loads(text)
     except (ValueError, RecursionError) as error:

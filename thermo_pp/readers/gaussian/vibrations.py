@@ -226,7 +226,7 @@ def _tables(
             found += list(whole)
             continue
         for start in starts:
-            table = _array(own, start, _lines_on(own, start, rows), rows, before + width)
+            table = _array(own, start, own.lines_on(start, rows), rows, before + width)
             if not np.array_equal(table[:, : len(order)].T, order):
                 raise own.expected(start, "displacements of all atoms")
             found.append(table[:, before:])
@@ -269,20 +269,6 @@ def _made(
     order = np.argsort(values, kind="stable")
     unit = displacements / lengths[:, None, None]
     return Vibrations(lines[0][0], values[order], unit[order].reshape(-1, atoms, 3))
-
-
-def _lines_on(own: Text, line: int, count: int) -> int:
-    """Return where the line `count` lines on begins; most often all lines are of one length."""
-    guess = line + count * (own.data.find(b"\n", line, own.end) + 1 - line)
-    whole = line < guess <= own.end and own.data[guess - 1 : guess] == b"\n"
-    if whole and own.data.count(b"\n", line, guess) == count:
-        return guess
-    for _ in range(count):
-        stop = own.data.find(b"\n", line, own.end)
-        if stop < 0:
-            return own.end
-        line = stop + 1
-    return line
 
 
 def _array(own: Text, start: int, end: int, rows: int, words: int) -> FloatArray:

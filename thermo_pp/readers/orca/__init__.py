@@ -74,7 +74,7 @@ def read(source: Source) -> Calculation:
         at |= modes.at
     if chosen.run is not None:
         at["optimised"] = chosen.run.at
-    doubts = _doubts(text, marks, chosen, value)
+    doubts = _doubts(text, chosen, value)
     printed = {} if modes is None else modes.printed
     written = joined.beside(text) if modes is not None and len(shape.numbers) > 1 else None
     hessian = None
@@ -140,10 +140,10 @@ def _kinds(text: Text, marks: layout.Layout, chosen: Chosen) -> tuple[str, ...]:
     return tuple(kinds)
 
 
-def _doubts(text: Text, marks: layout.Layout, chosen: Chosen, value: float | None) -> list[Doubt]:
+def _doubts(text: Text, chosen: Chosen, value: float | None) -> list[Doubt]:
     """Return what is doubtful about what was taken."""
     found: list[Doubt] = []
-    energy, own, modes, run = chosen.energy, chosen.own, chosen.modes, chosen.run
+    energy, modes, run = chosen.energy, chosen.modes, chosen.run
     if run is not None and not run.converged:
         found.append(
             Doubt(
@@ -223,7 +223,6 @@ def _doubts(text: Text, marks: layout.Layout, chosen: Chosen, value: float | Non
                 "give an output of the structure that is meant",
             )
         )
-    del own, marks
     return found
 
 

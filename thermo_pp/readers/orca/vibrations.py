@@ -194,7 +194,7 @@ def _modes(part: Text, heading: int, count: int) -> tuple[FloatArray, int]:
         if not width or header != [b"%d" % i for i in range(done, done + width)]:
             raise part.expected(line, f"numbers of the modes from {done} on")
         line = part.next_line(line)
-        end = _lines_on(part, line, count)
+        end = part.lines_on(line, count)
         try:
             table = np.array(part.data[line:end].split(), dtype=np.float64)
         except ValueError:
@@ -239,20 +239,6 @@ def _whole_table(part: Text, first: int, count: int) -> FloatArray | None:
         columns[done : done + len(numbers)] = across.reshape(-1, count)
         at, done = at + size, done + len(numbers)
     return columns
-
-
-def _lines_on(part: Text, line: int, count: int) -> int:
-    """Return where the line `count` lines on begins; most often all lines are of one length."""
-    guess = line + count * (part.data.find(b"\n", line, part.end) + 1 - line)
-    whole = line < guess <= part.end and part.data[guess - 1 : guess] == b"\n"
-    if whole and part.data.count(b"\n", line, guess) == count:
-        return guess
-    for _ in range(count):
-        stop = part.data.find(b"\n", line, part.end)
-        if stop < 0:
-            return part.end
-        line = stop + 1
-    return line
 
 
 def _check_used(
