@@ -22,7 +22,7 @@ from ase.thermochemistry import (
 from structures import made, masses
 
 import thermo_pp.units as own
-from thermo_pp.formulas.partition import principal_moments
+from thermo_pp.formulas.rotor import principal_moments
 from thermo_pp.formulas.vibration import MEAN_INERTIA_KG_M2, vibration
 from thermo_pp.records import Calculation
 from thermo_pp.species import thermochemistry

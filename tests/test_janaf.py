@@ -15,7 +15,8 @@ import numpy as np
 import pytest
 
 from thermo_pp.conditions import Treatment
-from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS, SPIN_WEIGHTS
+from thermo_pp.formulas.partition import SPIN_WEIGHTS
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS
 from thermo_pp.species.ideal_gas import IdealGas, shares, totals
 from thermo_pp.units import KELVIN_PER_CM
 

@@ -40,7 +40,7 @@ FLOORS: tuple[tuple[str, ...], ...] = (
 INSIDE: dict[str, tuple[str, ...]] = {
     # a folder whose files import each other: from left to right; __init__ comes last
     "formulas": (
-        "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
+        "rotor", "partition", "frames", "bonds", "vibration", "torsion", "symmetry", "superposition", "normal_modes",
         "seam", "turning", "rates", "falloff", "crossing", "tunnelling", "isotope_ratios", "extrapolation", "repulsion",
         "polynomials", "mixture",
     ),

@@ -12,7 +12,7 @@ from fixture_files import FIXTURES, expected, file_id, files
 
 from thermo_pp import units
 from thermo_pp.errors import ReadError
-from thermo_pp.formulas import partition, vibration
+from thermo_pp.formulas import partition, rotor, vibration
 from thermo_pp.formulas.normal_modes import normal_modes
 from thermo_pp.readers import nwchem, read_source
 from thermo_pp.readers.nwchem import constants
@@ -428,9 +428,9 @@ def nwchem_terms(calc: Calculation) -> dict[str, tuple[float, float]]:
     moving = float(partition.translation(t, masses.sum()).entropy_j_mol_k) * ratio + gas * (
         constants.TRANSLATIONAL - ours - math.log(units.ATM_PA / units.BAR_PA)
     )
-    kind = partition.rotor_kind(masses, calc.positions_angstrom)
+    kind = rotor.rotor_kind(masses, calc.positions_angstrom)
     sigma = calc.printed["symmetry_number"].value
-    moments = partition.principal_moments(masses, calc.positions_angstrom)
+    moments = rotor.principal_moments(masses, calc.positions_angstrom)
     bohr = constants.ANGSTROM_PER_BOHR
     turning, freedoms = 0.0, 3
     if kind == "linear":

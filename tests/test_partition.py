@@ -8,21 +8,23 @@ from structures import masses, turn
 
 from thermo_pp.formulas.partition import (
     SPIN_WEIGHTS,
-    RigidRotor,
     Share,
-    distance_from_axis,
     electronic,
     linear_rotation,
     linear_rotation_levels,
     nonlinear_correction,
     nonlinear_rotation,
-    principal_moments,
     quantum_rotor_changes,
-    rigid_rotor,
     rotation,
+    translation,
+)
+from thermo_pp.formulas.rotor import (
+    RigidRotor,
+    distance_from_axis,
+    principal_moments,
+    rigid_rotor,
     rotational_temperatures,
     rotor_kind,
-    translation,
 )
 from thermo_pp.units import GAS_J_MOL_K as R
 from thermo_pp.units import KELVIN_PER_CM

@@ -13,7 +13,7 @@ import pytest
 from fixture_files import FIXTURES, expected, file_id, files
 
 from thermo_pp.errors import ReadError
-from thermo_pp.formulas import partition, vibration
+from thermo_pp.formulas import partition, rotor, vibration
 from thermo_pp.readers import psi4, read_source
 from thermo_pp.readers.psi4 import jobs
 from thermo_pp.readers.text import Text
@@ -128,7 +128,7 @@ def psi4_constants(monkeypatch: pytest.MonkeyPatch) -> dict[str, float]:
     k, h, light = (constants[name] for name in ("BOLTZMANN_J_K", "PLANCK_J_S", "LIGHT_M_S"))
     constants["KELVIN_PER_CM"] = h * light * 100.0 / k
     constants["_THETA_U_A2"] = h**2 / (8.0 * math.pi**2 * k * constants["ATOMIC_MASS_KG"] * 1e-20)
-    for module in (partition, vibration):
+    for module in (partition, rotor, vibration):
         for name, value in constants.items():
             if hasattr(module, name):
                 monkeypatch.setattr(module, name, value)
@@ -143,11 +143,11 @@ def test_psi4_prints_what_the_formulas_give(path: Path, psi4_constants: dict[str
     printed = calc.printed
     t, pressure = printed["temperature"].value, printed["pressure"].value
     gas = psi4_constants["GAS_J_MOL_K"]
-    rotor = partition.rigid_rotor(
+    turned = rotor.rigid_rotor(
         calc.masses_u, calc.positions_angstrom, int(printed["symmetry_number"].value)
     )
     moving = partition.translation(t, calc.masses_u.sum())
-    turning = partition.rotation(t, rotor.kind, rotor.theta_k, rotor.symmetry_number, False)
+    turning = partition.rotation(t, turned.kind, turned.theta_k, turned.symmetry_number, False)
     shaking = vibration.vibration(t, calc.wavenumbers_cm[calc.wavenumbers_cm > 0.0])
     assert calc.multiplicity is not None
     entropies = {

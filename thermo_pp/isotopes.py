@@ -11,7 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.isotope_ratios import log_product_residual, log_reduced_ratio
 from thermo_pp.formulas.normal_modes import normal_modes
-from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS, rigid_rotor
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS, rigid_rotor
 from thermo_pp.formulas.symmetry import rotational_symmetry
 from thermo_pp.names import Rotor
 from thermo_pp.records import Calculation

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.partition import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
+from thermo_pp.formulas.rotor import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
 from thermo_pp.names import Severity
 from thermo_pp.records import Calculation
 

@@ -17,12 +17,8 @@ from numpy.typing import NDArray
 
 from thermo_pp import units
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.partition import (
-    linear_rotation,
-    nonlinear_rotation,
-    rigid_rotor,
-    translation,
-)
+from thermo_pp.formulas.partition import linear_rotation, nonlinear_rotation, translation
+from thermo_pp.formulas.rotor import rigid_rotor
 from thermo_pp.formulas.vibration import oscillator
 from thermo_pp.readers import READERS
 from thermo_pp.records import Calculation, Printed

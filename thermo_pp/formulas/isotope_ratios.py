@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from thermo_pp.formulas.partition import principal_moments, rotor_kind
+from thermo_pp.formulas.rotor import principal_moments, rotor_kind
 from thermo_pp.units import KELVIN_PER_CM
 
 FloatArray = NDArray[np.float64]

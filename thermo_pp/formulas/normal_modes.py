@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from thermo_pp.formulas.partition import rotor_kind
+from thermo_pp.formulas.rotor import rotor_kind
 from thermo_pp.units import ATOMIC_MASS_KG, BOHR_M, HARTREE_J, LIGHT_M_S
 
 FloatArray = NDArray[np.float64]

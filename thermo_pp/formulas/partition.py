@@ -9,12 +9,12 @@ symmetry number, levels) broadcasts against them, with its own last axis where i
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS, RigidRotor, positive
 from thermo_pp.names import RotorKind
 from thermo_pp.units import (
     ATOMIC_MASS_KG,
@@ -27,13 +27,10 @@ from thermo_pp.units import (
 
 FloatArray = NDArray[np.float64]
 
-LINEAR_ANGSTROM = 0.03
-"""A structure is linear where no atom lies farther than this from its axis."""
 AUTO_TEMPERATURE_K = 298.15
 AUTO_GIBBS_J_MOL = 10.0
 """The classical rotor is replaced where that changes G at `AUTO_TEMPERATURE_K` by more."""
 
-NO_SPIN_WEIGHTS = (1.0, 1.0)
 SPIN_WEIGHTS: dict[int, tuple[float, float]] = {
     1: (1 / 2, 3 / 2),
     2: (4 / 3, 2 / 3),
@@ -44,7 +41,6 @@ SPIN_WEIGHTS: dict[int, tuple[float, float]] = {
 No other rotor is light enough at ordinary temperatures for its nuclear spins to matter.
 """
 
-_THETA_U_A2 = PLANCK_J_S**2 / (8.0 * math.pi**2 * BOLTZMANN_J_K * ATOMIC_MASS_KG * 1e-20)
 _LEVELS_BELOW = 60.0
 """Rotor levels are summed up to this many kT: the rest is below 1e-23 of the sum."""
 
@@ -63,43 +59,6 @@ class Share(NamedTuple):
     enthalpy_j_mol: FloatArray
     entropy_j_mol_k: FloatArray
     heat_capacity_j_mol_k: FloatArray
-
-
-@dataclass(frozen=True)
-class RigidRotor:
-    """A rigid rotor.
-
-    Attributes
-    ----------
-    kind : {"atom", "linear", "nonlinear"}
-    theta_k : tuple of float
-        Rotational temperatures h c B / k, K, the largest first: none, one or three.
-    symmetry_number : int
-    quantum : bool
-        Whether the level sum (linear) or the quantum correction (nonlinear) replaces the
-        classical rotor.
-    spin_weights : (float, float)
-        Weights of even and odd levels in the level sum, their mean 1.
-    distortion_k : float
-        Centrifugal distortion h c D/k of a linear rotor, K.
-    spin_shares : (float, float) or None
-        Shares of the molecules in even and in odd levels where these do not turn into each other;
-        None at equilibrium.
-    """
-
-    kind: RotorKind
-    theta_k: tuple[float, ...]
-    symmetry_number: int = 1
-    quantum: bool = False
-    spin_weights: tuple[float, float] = NO_SPIN_WEIGHTS
-    distortion_k: float = 0.0
-    spin_shares: tuple[float, float] | None = None
-
-    def __post_init__(self) -> None:
-        if len(self.theta_k) != {"atom": 0, "linear": 1, "nonlinear": 3}[self.kind]:
-            raise ValueError(f"{len(self.theta_k)} rotational temperatures for rotor {self.kind!r}")
-        if any(not theta > 0.0 for theta in self.theta_k) or self.symmetry_number < 1:
-            raise ValueError("rotational temperatures and symmetry number must be above 0")
 
 
 def translation(temperature_k: ArrayLike, mass_u: ArrayLike) -> Share:
@@ -125,28 +84,12 @@ def translation(temperature_k: ArrayLike, mass_u: ArrayLike) -> Share:
     ValueError
         At or below 0.
     """
-    t, m = _positive(temperature_k, "temperature"), _positive(mass_u, "mass")
+    t, m = positive(temperature_k, "temperature"), positive(mass_u, "mass")
     volume = BOLTZMANN_J_K * t / BAR_PA
     log_q = 1.5 * np.log(2.0 * math.pi * ATOMIC_MASS_KG * m * BOLTZMANN_J_K * t / PLANCK_J_S**2)
     entropy = GAS_J_MOL_K * (log_q + np.log(volume) + 2.5)
     heat_capacity = np.full_like(entropy, 2.5 * GAS_J_MOL_K)
     return Share(heat_capacity * t, entropy, heat_capacity)
-
-
-def rotational_temperatures(moments_u_a2: ArrayLike) -> FloatArray:
-    """Return h^2 / (8 pi^2 I k) of each moment of inertia.
-
-    Parameters
-    ----------
-    moments_u_a2 : shape (...)
-        u A^2, above 0.
-
-    Returns
-    -------
-    shape (...)
-        K.
-    """
-    return np.asarray(_THETA_U_A2 / _positive(moments_u_a2, "moment of inertia"))
 
 
 def linear_rotation(
@@ -165,8 +108,8 @@ def linear_rotation(
     -------
     Share of shape (...)
     """
-    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
-    sigma = _positive(symmetry_number, "symmetry number")
+    t, theta = positive(temperature_k, "temperature"), positive(theta_k, "rotational temperature")
+    sigma = positive(symmetry_number, "symmetry number")
     entropy = GAS_J_MOL_K * (np.log(t / (theta * sigma)) + 1.0)
     heat_capacity = np.full_like(entropy, GAS_J_MOL_K)
     return Share(heat_capacity * t, entropy, heat_capacity)
@@ -204,8 +147,8 @@ def linear_rotation_levels(
     -------
     Share of shape (...)
     """
-    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
-    sigma = _positive(symmetry_number, "symmetry number")
+    t, theta = positive(temperature_k, "temperature"), positive(theta_k, "rotational temperature")
+    sigma = positive(symmetry_number, "symmetry number")
     widest = float(np.max(t, initial=1.0)) / float(np.min(theta, initial=1e6))
     count = math.ceil(math.sqrt(_LEVELS_BELOW * widest)) + 3
     if distortion_k > 0.0:
@@ -245,9 +188,9 @@ def nonlinear_rotation(
     -------
     Share of shape (...)
     """
-    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    t, theta = positive(temperature_k, "temperature"), positive(theta_k, "rotational temperature")
     log_q = 0.5 * (np.log(math.pi) + 3.0 * np.log(t) - np.log(theta).sum(axis=-1))
-    sigma = _positive(symmetry_number, "symmetry number")
+    sigma = positive(symmetry_number, "symmetry number")
     entropy = GAS_J_MOL_K * (log_q - np.log(sigma) + 1.5)
     heat_capacity = np.full_like(entropy, 1.5 * GAS_J_MOL_K)
     return Share(heat_capacity * t, entropy, heat_capacity)
@@ -270,7 +213,7 @@ def nonlinear_correction(temperature_k: ArrayLike, theta_k: ArrayLike) -> Share:
     -------
     Share of shape (...)
     """
-    t, theta = _positive(temperature_k, "temperature"), _positive(theta_k, "rotational temperature")
+    t, theta = positive(temperature_k, "temperature"), positive(theta_k, "rotational temperature")
     product = theta.prod(axis=-1)
     a = (2.0 * theta.sum(axis=-1) - product * (theta**-2.0).sum(axis=-1)) / 12.0
     enthalpy = -GAS_J_MOL_K * a * t / (t + a)
@@ -308,7 +251,7 @@ def rotation(
     -------
     Share of shape (...)
     """
-    t, theta = _positive(temperature_k, "temperature"), np.asarray(theta_k, dtype=np.float64)
+    t, theta = positive(temperature_k, "temperature"), np.asarray(theta_k, dtype=np.float64)
     if kind == "atom":
         none = np.zeros(np.broadcast_shapes(t.shape, theta.shape[:-1], np.shape(symmetry_number)))
         return Share(none, none, none)
@@ -359,73 +302,8 @@ def electronic(temperature_k: ArrayLike, degeneracies: ArrayLike, levels_cm: Arr
     -------
     Share of shape (...)
     """
-    t, g = _positive(temperature_k, "temperature"), _positive(degeneracies, "degeneracy")
+    t, g = positive(temperature_k, "temperature"), positive(degeneracies, "degeneracy")
     return level_share(t, g, KELVIN_PER_CM * np.asarray(levels_cm, dtype=np.float64))
-
-
-def principal_moments(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> FloatArray:
-    """Return the three principal moments of inertia.
-
-    Parameters
-    ----------
-    masses_u : shape (n,)
-    positions_angstrom : shape (n, 3)
-
-    Returns
-    -------
-    shape (3,)
-        u A^2, ascending, never below 0.
-    """
-    return _inertia(masses_u, positions_angstrom)[0]
-
-
-def rotor_kind(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> RotorKind:
-    """Tell an atom, a linear and a nonlinear structure apart.
-
-    Linear means that no atom lies farther than `LINEAR_ANGSTROM` from the axis of the smallest
-    moment of inertia.
-
-    Parameters
-    ----------
-    masses_u : shape (n,)
-    positions_angstrom : shape (n, 3)
-    """
-    x = np.asarray(positions_angstrom, dtype=np.float64)
-    if len(x) == 1:
-        return "atom"
-    return "linear" if distance_from_axis(masses_u, x) <= LINEAR_ANGSTROM else "nonlinear"
-
-
-def distance_from_axis(masses_u: ArrayLike, positions_angstrom: ArrayLike) -> float:
-    """Return the largest distance of an atom from the axis of the smallest moment of inertia, A."""
-    _, axes, x = _inertia(masses_u, positions_angstrom)
-    across = x - np.outer(x @ axes[:, 0], axes[:, 0])
-    return float(np.sqrt((across**2).sum(axis=1)).max())
-
-
-def rigid_rotor(
-    masses_u: ArrayLike, positions_angstrom: ArrayLike, symmetry_number: int = 1
-) -> RigidRotor:
-    """Return a structure's classical rotor; if linear, of the mean of the two large moments."""
-    kind = rotor_kind(masses_u, positions_angstrom)
-    if kind == "atom":
-        return RigidRotor(kind, (), symmetry_number)
-    moments = principal_moments(masses_u, positions_angstrom)
-    if kind == "linear":
-        moments = moments[1:].mean(keepdims=True)
-    return RigidRotor(kind, tuple(rotational_temperatures(moments).tolist()), symmetry_number)
-
-
-def _inertia(
-    masses_u: ArrayLike, positions_angstrom: ArrayLike
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Return moments, axes (columns) and the positions from the centre of mass."""
-    m = _positive(masses_u, "mass")
-    x = np.asarray(positions_angstrom, dtype=np.float64)
-    x = x - (m @ x) / m.sum()
-    second = (x * m[:, np.newaxis]).T @ x
-    moments, axes = np.linalg.eigh(np.trace(second) * np.eye(3) - second)
-    return np.maximum(moments, 0.0), axes, x
 
 
 def level_share(
@@ -445,10 +323,3 @@ def level_share(
         np.asarray(GAS_J_MOL_K * (np.log(q / np.asarray(divisor)) + mean)),
         np.asarray(GAS_J_MOL_K * variance),
     )
-
-
-def _positive(value: ArrayLike, what: str) -> FloatArray:
-    array = np.asarray(value, dtype=np.float64)
-    if not np.all(array > 0.0):
-        raise ValueError(f"{what} must be above 0, got {array[~(array > 0.0)].flat[0]}")
-    return array

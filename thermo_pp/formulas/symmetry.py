@@ -16,7 +16,7 @@ from thermo_pp.formulas.frames import (
     kabsch,
     nearest,
 )
-from thermo_pp.formulas.partition import rotor_kind
+from thermo_pp.formulas.rotor import rotor_kind
 
 TOLERANCE_ANGSTROM = 0.05
 """Default: how far a turned atom may come to lie from the atom whose place it takes."""

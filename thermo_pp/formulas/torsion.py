@@ -26,7 +26,8 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from thermo_pp.formulas.partition import level_share, rotational_temperatures
+from thermo_pp.formulas.partition import level_share
+from thermo_pp.formulas.rotor import rotational_temperatures
 from thermo_pp.units import GAS_J_MOL_K, KELVIN_PER_CM, WAVENUMBER_KJ_MOL
 
 FloatArray = NDArray[np.float64]

@@ -10,9 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.kinetics.edges import EdgeMatrix, LogRate, from_edges, log_drive
-from thermo_pp.kinetics.elimination import Label, Reduction
+from thermo_pp.kinetics.elimination import Reduction
 from thermo_pp.kinetics.network import Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
+from thermo_pp.kinetics.tape import Label
 
 FloatArray = NDArray[np.float64]
 

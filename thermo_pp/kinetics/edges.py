@@ -8,9 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_pp.kinetics.elimination import Label
 from thermo_pp.kinetics.network import End, Network
 from thermo_pp.kinetics.scaled import Scaled, fraction
+from thermo_pp.kinetics.tape import Label
 
 FloatArray = NDArray[np.float64]
 

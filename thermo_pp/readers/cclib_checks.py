@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.formulas.normal_modes import normal_modes
-from thermo_pp.formulas.partition import rotor_kind
+from thermo_pp.formulas.rotor import rotor_kind
 from thermo_pp.readers.text import Text
 from thermo_pp.units import BOHR_ANGSTROM, HARTREE_J, LIGHT_M_S, PLANCK_J_S
 

@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
 from thermo_pp.errors import Finding
-from thermo_pp.formulas.partition import rotor_kind
+from thermo_pp.formulas.rotor import rotor_kind
 
 FloatArray = NDArray[np.float64]
 

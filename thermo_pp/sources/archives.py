@@ -204,7 +204,7 @@ class ZipFile:
         _check_directory(file, where)
         try:
             self._zip = zipfile.ZipFile(file)
-        except Exception as error:  # BadZipFile, struct.error, NotImplementedError, ...
+        except Exception as error:  # of many kinds: what a damaged directory makes of its numbers
             raise damaged(f"damaged zip archive ({error})", where) from error
         last: dict[str, Member] = {}
         for info in self._zip.infolist():

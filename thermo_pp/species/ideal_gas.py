@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from thermo_pp.conditions import Treatment
-from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS, Share, electronic, rotation, translation
+from thermo_pp.formulas.partition import Share, electronic, rotation, translation
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS
 from thermo_pp.formulas.torsion import HinderedRotor, TorsionShare, torsion
 from thermo_pp.formulas.vibration import Vibration, vibration
 from thermo_pp.names import LowModes, RotorKind

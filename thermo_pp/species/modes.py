@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding, StudyError
 from thermo_pp.formulas.normal_modes import normal_modes
-from thermo_pp.formulas.partition import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
+from thermo_pp.formulas.rotor import LINEAR_ANGSTROM, distance_from_axis, rotor_kind
 from thermo_pp.names import Kind, UsedAs
 from thermo_pp.records import Calculation
 from thermo_pp.species.ideal_gas import seal

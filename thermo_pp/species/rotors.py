@@ -10,13 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.formulas.partition import (
-    NO_SPIN_WEIGHTS,
-    SPIN_WEIGHTS,
-    RigidRotor,
-    quantum_rotor_changes,
-    rigid_rotor,
-)
+from thermo_pp.formulas.partition import SPIN_WEIGHTS, quantum_rotor_changes
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS, RigidRotor, rigid_rotor
 from thermo_pp.names import NUCLEAR_SPINS, NuclearSpins, Rotor
 from thermo_pp.nearest import suggestion
 from thermo_pp.records import Calculation

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.conditions import StandardState, Treatment
-from thermo_pp.formulas.partition import NO_SPIN_WEIGHTS
+from thermo_pp.formulas.rotor import NO_SPIN_WEIGHTS
 from thermo_pp.names import LowModes
 from thermo_pp.species.energy import Added
 from thermo_pp.species.ideal_gas import IdealGas, Shares

@@ -13,7 +13,7 @@ from numpy.typing import ArrayLike, NDArray
 from thermo_pp.conditions import StandardState, Treatment
 from thermo_pp.data.elements import SYMBOLS
 from thermo_pp.errors import Finding, StudyError
-from thermo_pp.formulas.partition import RigidRotor
+from thermo_pp.formulas.rotor import RigidRotor
 from thermo_pp.formulas.seam import CrossingCoordinate
 from thermo_pp.formulas.symmetry import Symmetry, rotational_symmetry
 from thermo_pp.names import Kind, LowModes, NuclearSpins, Origin, UsedAs

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.errors import Finding, ReadError
-from thermo_pp.formulas.partition import rotor_kind
+from thermo_pp.formulas.rotor import rotor_kind
 from thermo_pp.formulas.superposition import superpose
 from thermo_pp.readers.text import Text
 from thermo_pp.units import BOHR_M, EV_KJ_MOL, HARTREE_J, HARTREE_KJ_MOL

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from thermo_pp.data.elements import ISOTOPES, MOST_ABUNDANT, SYMBOLS
 from thermo_pp.names import Origin
 from thermo_pp.readers import joined_hessian
-from thermo_pp.readers.psi4 import choice, doubts, jobs, joined, levels, vibrations
+from thermo_pp.readers.psi4 import choice, doubts, energies, jobs, joined, levels, vibrations
 from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import BANNER, Geometry
 from thermo_pp.readers.psi4.vibrations import PRINTED_CONSTANTS
@@ -95,7 +95,7 @@ def read(source: Source) -> Calculation:
         energy_label=energy.label,
         method_energies={
             one.label: MethodEnergy(one.value, text.line_number(one.at))
-            for one in levels.energies(chosen.part)
+            for one in energies.energies(chosen.part)
             if one.rank <= energy.rank
         },
         wavenumbers_cm=wavenumbers,

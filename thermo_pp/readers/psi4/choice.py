@@ -7,9 +7,9 @@ from itertools import pairwise
 
 import numpy as np
 
-from thermo_pp.readers.psi4 import jobs, levels, vibrations
+from thermo_pp.readers.psi4 import energies, jobs, vibrations
+from thermo_pp.readers.psi4.energies import Energy
 from thermo_pp.readers.psi4.jobs import Asked, Evaluation, Geometry, Optimisation
-from thermo_pp.readers.psi4.levels import Energy
 from thermo_pp.readers.psi4.vibrations import ANALYSIS
 from thermo_pp.readers.text import Text
 
@@ -81,14 +81,14 @@ def _lacking(text: Text, one: Asked) -> str | None:
     if one.task.startswith("freq") and text.find(ANALYSIS) < 0:
         return f"no vibrations are in the output (looked for {ANALYSIS.decode()!r})"
     method = one.method.partition("/")[0].removeprefix("df-").removeprefix("cd-")
-    if levels.is_functional(text, method):
+    if energies.is_functional(text, method):
         return None
-    if method not in levels.CALLED:
-        return f"only {', '.join(levels.CALLED)} and density functionals are known to this reader"
-    label = levels.CALLED[method]
-    if label is not None and not levels.is_printed(text, label):
+    if method not in energies.CALLED:
+        return f"only {', '.join(energies.CALLED)} and density functionals are known to this reader"
+    label = energies.CALLED[method]
+    if label is not None and not energies.is_printed(text, label):
         return f"no {label} energy is in the output"
-    if "[" in one.method and not levels.is_extrapolated(text):
+    if "[" in one.method and not energies.is_extrapolated(text):
         return "no extrapolated energy is in the output"
     return None
 
@@ -111,10 +111,10 @@ def choose(text: Text, tasks: Tasks) -> Chosen:
     _check_path(text, tasks)
     analysis, base = _last_analysis(text, tasks)
     if analysis is not None:
-        _check_bottom(analysis, levels.best_energy(text.part(base.start, base.end)))
+        _check_bottom(analysis, energies.best_energy(text.part(base.start, base.end)))
     shape = tasks.shapes[base]
     part, energy = _best_energy(text, tasks, base)
-    charges = levels.charged(part)
+    charges = energies.charged(part)
     if charges is not None:
         raise text.error(
             charges,
@@ -165,12 +165,12 @@ def _best_energy(text: Text, tasks: Tasks, base: Evaluation) -> tuple[Text, Ener
     found: list[tuple[Text, Energy]] = []
     for one in tasks.real:
         part = text.part(one.start, one.end)
-        if one is base or (shape.same(tasks.shapes[one]) and levels.unconverged(part) is None):
-            found.append((part, levels.best_energy(part)))
-    free = [pair for pair in found if levels.held(pair[0]) is None]
+        if one is base or (shape.same(tasks.shapes[one]) and energies.unconverged(part) is None):
+            found.append((part, energies.best_energy(part)))
+    free = [pair for pair in found if energies.held(pair[0]) is None]
     if not free:
         raise text.error(
-            levels.held(found[-1][0]) or found[-1][0].start,
+            energies.held(found[-1][0]) or found[-1][0].start,
             "an SCF with occupations held to those of a start (MOM), most often an excited state",
             mend="give a calculation of the ground state, without mom_start",
         )

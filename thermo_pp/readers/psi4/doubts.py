@@ -6,7 +6,7 @@ import numpy as np
 
 from thermo_pp.errors import Finding
 from thermo_pp.names import Severity
-from thermo_pp.readers.psi4 import jobs, levels
+from thermo_pp.readers.psi4 import energies, jobs, levels
 from thermo_pp.readers.psi4.choice import Chosen
 from thermo_pp.readers.psi4.jobs import Evaluation
 from thermo_pp.readers.text import Text
@@ -72,9 +72,9 @@ def _left_out(text: Text, chosen: Chosen) -> list[Finding]:
             what = "a task of another molecule stands in this file; it is left out"
             mend = "give each molecule a file of its own"
             return [_finding(text, "note", "other-molecule-left-out", one.start, what, mend)]
-    if levels.held(chosen.part) is None:
+    if energies.held(chosen.part) is None:
         for one in chosen.tasks.real:
-            at = levels.held(text.part(one.start, one.end))
+            at = energies.held(text.part(one.start, one.end))
             if at is not None and chosen.tasks.shapes[one].same(chosen.shape):
                 what = "an SCF with occupations held to those of a start (MOM) is left out"
                 mend = "nothing, if the ground state is meant"
@@ -137,5 +137,5 @@ def _levels(text: Text, chosen: Chosen) -> list[Finding]:
 
 def _words(text: Text, chosen: Chosen, one: Evaluation) -> str:
     part = text.part(one.start, one.end)
-    level = levels.level(part, levels.best_energy(part), chosen.shape.numbers)
+    level = levels.level(part, energies.best_energy(part), chosen.shape.numbers)
     return f"{level.method}/{level.basis}"

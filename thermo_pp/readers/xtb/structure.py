@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_pp.data.elements import NUMBERS, SYMBOLS
-from thermo_pp.formulas.partition import rigid_rotor
+from thermo_pp.formulas.rotor import rigid_rotor
 from thermo_pp.readers.text import CUT_SHORT, Text
 from thermo_pp.sources import Source
 from thermo_pp.units import BOHR_ANGSTROM
